@@ -1,0 +1,43 @@
+"""Arrays of frozen types: copied in, read-only out."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from types import MappingProxyType
+from typing import Any
+
+import numpy as np
+from numpy.typing import ArrayLike, DTypeLike, NDArray
+
+Array = NDArray[Any]
+
+
+def frozen(values: ArrayLike, dtype: DTypeLike = None, *, shape: tuple[int | None, ...] | None = None) -> Array:
+    """A read-only, contiguous copy of ``values``; ``shape`` (None = any length) is asserted.
+
+    An array that is already read-only and owns its data is passed through, so that copies are made once.
+    """
+    source = np.asarray(values)
+    wanted = np.dtype(dtype) if dtype is not None else source.dtype
+    if (
+        source.dtype == wanted
+        and not source.flags.writeable
+        and source.flags.owndata
+        and source.flags.c_contiguous
+    ):
+        array = source
+    else:
+        array = np.array(source, dtype=wanted, order="C", copy=True)
+        array.flags.writeable = False
+    if shape is not None and (
+        array.ndim != len(shape) or any(w is not None and w != g for w, g in zip(shape, array.shape, strict=True))
+    ):
+        raise ValueError(f"array of shape {array.shape}, expected {shape}")
+    return array
+
+
+def frozen_map(values: Mapping[str, Any], dtype: DTypeLike = None) -> Mapping[str, Any]:
+    """A read-only mapping whose array values are frozen (only when ``dtype`` is given)."""
+    if dtype is None:
+        return MappingProxyType(dict(values))
+    return MappingProxyType({key: frozen(value, dtype) for key, value in values.items()})

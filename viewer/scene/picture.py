@@ -1,0 +1,130 @@
+"""What a picture shows, as plain data: the one thing that scene makes and stage draws. Picklable, SI.
+
+A picture is one mode of one design ("single"), or two designs "side" by side or "overlay"; it is drawn at any
+phase. Drawn displacement of a body at phase p is ``factor * Re(shape * exp(1j * p))`` in metres.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from viewer.model.arrays import Array, frozen
+from viewer.model.mesh import Mesh
+
+
+@dataclass(frozen=True, eq=False)
+class SupportMark:
+    """Held nodes: drawn as pegs that bite the held edge."""
+
+    name: str
+    rows: Array
+
+
+@dataclass(frozen=True, eq=False)
+class MassMark:
+    """A lumped mass: a bead with three great circles and dashed legs to its footprint.
+
+    motion  (6,) translation of the centre and rotation, in units of the shape (complex for complex shapes)
+    """
+
+    name: str
+    mass: float
+    position: Array
+    footprint: Array
+    motion: Array
+
+
+@dataclass(frozen=True, eq=False)
+class PointMark:
+    """A functional point with its sensitive direction: ring and double arrow, with a label."""
+
+    label: str
+    position: Array
+    direction: Array
+    motion: Array
+
+
+@dataclass(frozen=True, eq=False)
+class Body:
+    """One design in one mode.
+
+    shape    (n_nodes, 3) float64 or complex128, rows as in ``mesh.points``
+    factor   drawn metres per unit of the shape
+    density  (n_cells,) strain-energy density ÷ the body's mean by cell row, or None: plain body
+    """
+
+    name: str
+    mesh: Mesh
+    shape: Array
+    factor: float
+    freq_hz: float
+    density: Array | None = None
+    supports: tuple[SupportMark, ...] = ()
+    masses: tuple[MassMark, ...] = ()
+    points: tuple[PointMark, ...] = ()
+
+    def __post_init__(self) -> None:
+        object.__setattr__(self, "shape", frozen(self.shape, shape=(self.mesh.n_nodes, 3)))
+        if self.density is not None:
+            object.__setattr__(self, "density", frozen(self.density, np.float64, shape=(self.mesh.n_cells,)))
+
+
+@dataclass(frozen=True)
+class Note:
+    """The scale note's texts. ``drawing`` is set in ink, ``condition`` in soft text; each item is one statement,
+    joined by " · " and broken into lines by the layout. ``below_pixel``: the statement added when true-scale
+    motion is smaller than a pixel is made by the layout itself, since only it knows the size of a pixel."""
+
+    title: str
+    frequency: str
+    drawing: tuple[str, ...]
+    condition: tuple[str, ...] = ()
+
+
+@dataclass(frozen=True, eq=False)
+class Magnified:
+    """What the magnifier disc of a true-scale picture shows: one place's motion along its own line."""
+
+    place: str
+    position: Array
+    direction: Array
+    amplitude: float               # m, half swing
+
+
+@dataclass(frozen=True, eq=False)
+class View:
+    """A parallel camera: unit vectors from the focus to the eye, and up. Fitting is done by the stage."""
+
+    toward_eye: tuple[float, float, float] = (-0.55, -0.75, 0.42)
+    up: tuple[float, float, float] = (0.0, 0.0, 1.0)
+
+
+@dataclass(frozen=True, eq=False)
+class Picture:
+    """Everything needed to draw one mode, or one pair of modes, at any phase.
+
+    magnification  drawn ÷ real, 1.0 at true scale, None when the size is arbitrary (no second ruler line)
+    energy_top     top of the colour scale (a perfect square), one for all bodies; None: no colour bar
+    energy_words   title of the colour bar
+    """
+
+    bodies: tuple[Body, ...]
+    note: Note
+    layout: str = "single"                     # "single", "side", "overlay"
+    magnification: float | None = None
+    energy_top: float | None = None
+    energy_words: str = "strain energy density ÷ mean"
+    energy_caution: str = ""                   # one short line under the bar when energies are not trusted
+    magnified: Magnified | None = None
+    view: View = View()
+    theme: str = "light"
+    width: int = 960
+    height: int = 720
+    ghost: bool = True
+    mesh_edges: bool = False
+
+    def with_(self, **changes) -> Picture:
+        """A copy with some fields replaced."""
+        return replace(self, **changes)
