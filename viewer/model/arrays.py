@@ -2,8 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
-from types import MappingProxyType
+from collections.abc import Iterator, Mapping
 from typing import Any
 
 import numpy as np
@@ -36,8 +35,29 @@ def frozen(values: ArrayLike, dtype: DTypeLike = None, *, shape: tuple[int | Non
     return array
 
 
-def frozen_map(values: Mapping[str, Any], dtype: DTypeLike = None) -> Mapping[str, Any]:
-    """A read-only mapping whose array values are frozen (only when ``dtype`` is given)."""
+class FrozenMap(Mapping[Any, Any]):
+    """A read-only mapping that, unlike the standard library's proxy, can be pickled."""
+
+    __slots__ = ("_items",)
+
+    def __init__(self, items: Mapping[Any, Any]) -> None:
+        self._items = dict(items)
+
+    def __getitem__(self, key: Any) -> Any:
+        return self._items[key]
+
+    def __iter__(self) -> Iterator[Any]:
+        return iter(self._items)
+
+    def __len__(self) -> int:
+        return len(self._items)
+
+    def __repr__(self) -> str:
+        return f"FrozenMap({self._items!r})"
+
+
+def frozen_map(values: Mapping[Any, Any], dtype: DTypeLike = None) -> FrozenMap:
+    """A read-only copy of a mapping; with ``dtype`` its values are frozen arrays."""
     if dtype is None:
-        return MappingProxyType(dict(values))
-    return MappingProxyType({key: frozen(value, dtype) for key, value in values.items()})
+        return FrozenMap(values)
+    return FrozenMap({key: frozen(value, dtype) for key, value in values.items()})
