@@ -1,0 +1,7 @@
+"""The one owner of reading, solving and caching."""
+
+from viewer.workspace.store import Cache
+from viewer.workspace.study import Study, study
+from viewer.workspace.workspace import OpenDossier, Workspace
+
+__all__ = ["Cache", "OpenDossier", "Study", "Workspace", "study"]

@@ -1,0 +1,68 @@
+"""Hingelight explains vibration mode shapes: see ``viewer.open_dossier`` and README.md.
+
+This public face is lazy: nothing heavy is imported before it is used.
+"""
+
+from __future__ import annotations
+
+from importlib import import_module
+from typing import TYPE_CHECKING
+
+__version__ = "0.1.0"
+
+_WHERE = {
+    "HingelightError": "viewer.errors",
+    "open_dossier": "viewer.script",
+    "read_mesh": "viewer.script",
+    "read_modes": "viewer.script",
+    "solve": "viewer.script",
+    "energies": "viewer.script",
+    "animate": "viewer.script",
+    "still": "viewer.script",
+    "mac": "viewer.insight.correlate",
+    "Material": "viewer.model.design",
+    "Assignment": "viewer.model.design",
+    "Selector": "viewer.model.design",
+    "Support": "viewer.model.design",
+    "Spring": "viewer.model.design",
+    "LumpedMass": "viewer.model.design",
+    "FunctionalPoint": "viewer.model.design",
+    "Physics": "viewer.model.design",
+    "Design": "viewer.model.design",
+    "Mesh": "viewer.model.mesh",
+    "CellBlock": "viewer.model.mesh",
+    "ModeSet": "viewer.model.modes",
+    "ArrayShapes": "viewer.model.modes",
+    "write_interchange": "viewer.loaders",
+}
+
+__all__ = ["__version__", *_WHERE]
+
+if TYPE_CHECKING:
+    from viewer.errors import HingelightError
+    from viewer.insight.correlate import mac
+    from viewer.loaders import write_interchange
+    from viewer.model.design import (
+        Assignment,
+        Design,
+        FunctionalPoint,
+        LumpedMass,
+        Material,
+        Physics,
+        Selector,
+        Spring,
+        Support,
+    )
+    from viewer.model.mesh import CellBlock, Mesh
+    from viewer.model.modes import ArrayShapes, ModeSet
+    from viewer.script import animate, energies, open_dossier, read_mesh, read_modes, solve, still
+
+
+def __getattr__(name: str) -> object:
+    if name not in _WHERE:
+        raise AttributeError(f"module 'viewer' has no attribute '{name}'")
+    return getattr(import_module(_WHERE[name]), name)
+
+
+def __dir__() -> list[str]:
+    return sorted(__all__)

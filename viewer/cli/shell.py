@@ -1,0 +1,112 @@
+"""What all commands share: options, the progress bar, JSON, and turning errors into one line and an exit code.
+
+Exit 0 done, 1 bad input, 2 usage, 130 stopped by Ctrl-C.
+"""
+
+from __future__ import annotations
+
+import functools
+import json
+import sys
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
+from pathlib import Path
+from typing import TYPE_CHECKING, Annotated, Any
+
+import typer
+
+from viewer.errors import Cancelled, HingelightError
+
+if TYPE_CHECKING:
+    from viewer.jobs import Progress
+
+DossierPath = Annotated[Path, typer.Argument(help="dossier.toml, or the folder that holds it.")]
+Json = Annotated[bool, typer.Option("--json", help="Print one JSON document instead of text.")]
+NoCache = Annotated[bool, typer.Option("--no-cache", help="Neither read nor write the cache of solved modes.")]
+Theme = Annotated[str, typer.Option(help="Colours: light or dark.")]
+Width = Annotated[int, typer.Option(min=320, max=3840, help="Width of pictures in pixels.")]
+
+
+def command(body: Callable[..., Any]) -> Callable[..., Any]:
+    """Wrap a command's body: an error of our tree is one line (or one JSON object) and exit 1; Ctrl-C is 130."""
+
+    @functools.wraps(body)
+    def run(*args: Any, **options: Any) -> None:
+        as_json = bool(options.get("as_json"))
+        try:
+            body(*args, **options)
+        except (KeyboardInterrupt, Cancelled):
+            _fail({"error": "Cancelled", "problem": "stopped; nothing half-written is left"}, as_json, "")
+            raise typer.Exit(130) from None
+        except HingelightError as error:
+            _fail(error.to_dict(), as_json, str(error))
+            raise typer.Exit(1) from None
+        except MemoryError:
+            text = "memory ran out; do: use a coarser mesh, fewer modes or a machine with more memory"
+            _fail({"error": "MemoryError", "problem": text}, as_json, text)
+            raise typer.Exit(1) from None
+
+    return run
+
+
+def _fail(parts: dict[str, Any], as_json: bool, text: str) -> None:
+    if as_json:
+        answer(parts)
+    else:
+        typer.echo(f"hingelight: {text or parts['problem']}", err=True)
+
+
+def answer(document: Any) -> None:
+    """Print one JSON document; NaN and infinity become null, since JSON has no word for them."""
+    typer.echo(json.dumps(_plain(document), indent=2, ensure_ascii=False, allow_nan=False))
+
+
+def _plain(value: Any) -> Any:
+    if isinstance(value, dict):
+        return {str(k): _plain(v) for k, v in value.items()}
+    if isinstance(value, list | tuple):
+        return [_plain(v) for v in value]
+    if hasattr(value, "tolist"):
+        return _plain(value.tolist())
+    if isinstance(value, float):
+        return value if value == value and abs(value) != float("inf") else None
+    return str(value) if isinstance(value, Path) else value
+
+
+@contextmanager
+def progress_bar() -> Iterator[Progress]:
+    """A progress sink that draws on standard error when that is a terminal, else stays silent."""
+    from viewer.jobs import SILENT, Progress
+
+    if not sys.stderr.isatty():
+        yield SILENT
+        return
+    from rich.console import Console
+    from rich.progress import BarColumn, TextColumn, TimeElapsedColumn
+    from rich.progress import Progress as Bar
+
+    with Bar(
+        TextColumn("{task.description}"), BarColumn(30), TextColumn("{task.fields[count]}"), TimeElapsedColumn(),
+        console=Console(stderr=True), transient=True,
+    ) as bar:
+        task = bar.add_task("", total=None, count="")
+
+        def show(stage: str, done: int, total: int) -> None:
+            bar.update(
+                task, description=stage, completed=done, total=total or None, count=f"{done}/{total}" if total else ""
+            )
+
+        yield Progress(show)
+
+
+def workspace(no_cache: bool) -> Any:
+    """The run's workspace."""
+    from viewer.workspace import Workspace
+
+    return Workspace(cache=None) if no_cache else Workspace()
+
+
+def theme_checked(theme: str) -> str:
+    if theme not in ("light", "dark"):
+        raise typer.BadParameter(f"'{theme}' is neither light nor dark", param_hint="--theme")
+    return theme

@@ -1,0 +1,84 @@
+"""One design with its modes, energies and stated sizes: everything a picture or a table is made from."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+
+import numpy as np
+
+from viewer.errors import ModelError
+from viewer.insight.scale import CarriedPoint, Scale, carried_points, scale_mode
+from viewer.jobs import SILENT, Progress
+from viewer.mechanics.energy import Energies, energies
+from viewer.model.arrays import Array
+from viewer.model.design import Design
+from viewer.model.dossier import StatedAmplitude
+from viewer.model.modes import ModeSet
+
+
+@dataclass(frozen=True, eq=False)
+class Study:
+    """A design, its mode set, the element energies of every mode, and the stated amplitudes by mode number.
+
+    energies    None when the design has no (usable) physics; ``no_energies`` then says why
+    condition   words that stand in every scale note ("clamped root, camera 1.2 kg")
+    """
+
+    design: Design
+    modes: ModeSet
+    energies: Energies | None
+    no_energies: str = ""
+    amplitudes: Mapping[int, StatedAmplitude] = field(default_factory=dict)
+    condition: str = ""
+
+    @property
+    def count(self) -> int:
+        return self.modes.count
+
+    @property
+    def carried(self) -> tuple[CarriedPoint, ...]:
+        return carried_points(self.design)
+
+    def name(self, index: int) -> str:
+        """The user's name of mode ``index`` (from 0), or empty."""
+        return self.design.mode_names.get(index + 1, "")
+
+    def scale(self, index: int, *, true_scale: bool = False, peak_percent: float | None = None) -> Scale:
+        """How mode ``index`` (from 0) is drawn."""
+        return scale_mode(
+            self.design,
+            self.modes.shape(index),
+            index + 1,
+            self.amplitudes.get(index + 1),
+            true_scale=true_scale,
+            peak_percent=peak_percent,
+        )
+
+    def turned_shape(self, index: int, turn: complex) -> Array:
+        """The shape times a unit complex factor; a real shape stays real (its factor is a sign)."""
+        shape = self.modes.shape(index)
+        if np.iscomplexobj(shape):
+            return shape * turn
+        return -shape if turn.real < 0 else shape
+
+
+def study(
+    design: Design,
+    modes: ModeSet,
+    amplitudes: Mapping[int, StatedAmplitude] | None = None,
+    condition: str = "",
+    progress: Progress = SILENT,
+) -> Study:
+    """Form the energies of all modes; a design without materials is still studied, without energies."""
+    found, why = None, ""
+    if not design.physics.assignments:
+        why = f"design '{design.name}' states no materials, so it has no energies: add materials and assign them"
+    else:
+        try:
+            found = energies(design, modes, progress=progress)
+        except ModelError as error:
+            if modes.origin == "computed":
+                raise   # it was solved a moment ago: this would be our own fault
+            why = str(error)
+    return Study(design, modes, found, why, amplitudes or {}, condition)

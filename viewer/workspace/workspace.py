@@ -1,0 +1,129 @@
+"""Reading, solving and caching for one run: memory first, then the cache on disk, then the work itself."""
+
+from __future__ import annotations
+
+import tempfile
+from dataclasses import dataclass, field, replace
+from pathlib import Path
+
+from viewer.jobs import SILENT, Progress, in_child
+from viewer.loaders import read_dossier, read_mesh, read_modes
+from viewer.mechanics.eigen import solve
+from viewer.model.design import Design
+from viewer.model.dossier import DesignPlan, Dossier, StatedAmplitude
+from viewer.model.modes import ModeSet
+from viewer.workspace.keys import design_key
+from viewer.workspace.store import Cache, read_modes_npz, write_modes_npz
+from viewer.workspace.study import Study, study
+
+IN_CHILD_ABOVE = 20_000   # nodes; smaller designs solve in the time a child process needs to start
+
+
+@dataclass
+class Workspace:
+    """One owner of load, solve and cache. ``cache`` None: nothing is kept on disk."""
+
+    cache: Cache | None = field(default_factory=Cache)
+    _designs: dict[tuple[Path, str], Design] = field(default_factory=dict)
+    _modes: dict[str, ModeSet] = field(default_factory=dict)
+
+    def open(self, path: str | Path) -> OpenDossier:
+        """Read and check ``dossier.toml`` (or a folder that holds one); meshes stay on disk until asked for."""
+        return OpenDossier(self, read_dossier(_dossier_file(path)))
+
+    def design(self, dossier: Dossier, name: str, progress: Progress = SILENT) -> Design:
+        """The named design with its mesh read."""
+        plan = dossier.plan(name)
+        key = (dossier.path, name)
+        if key not in self._designs:
+            mesh = read_mesh(plan.mesh_file, length_unit=plan.length_unit, progress=progress)
+            self._designs[key] = plan.build(mesh)
+        return self._designs[key]
+
+    def modes(
+        self, design: Design, plan: DesignPlan | None = None, count: int | None = None, progress: Progress = SILENT
+    ) -> ModeSet:
+        """The mode set that the plan's file gives, or the first ``count`` modes solved (cached by content)."""
+        if plan is not None and plan.modes_file is not None:
+            key = f"{plan.modes_file}:{plan.length_unit}:{design.mesh.source}"
+            if key not in self._modes:
+                self._modes[key] = read_modes(
+                    plan.modes_file, design.mesh, length_unit=plan.length_unit, progress=progress
+                )
+            return self._modes[key]
+        return self.solve(design, count or (plan.mode_count if plan else 6), progress)
+
+    def solve(self, design: Design, count: int, progress: Progress = SILENT) -> ModeSet:
+        """The first ``count`` modes of ``design``; large ones in a process that can be killed."""
+        key = design_key(design, count)
+        found = self._modes.get(key) or (self.cache.get(key) if self.cache else None)
+        if found is None:
+            found = self._solved(design, count, key, progress)
+        self._modes[key] = found
+        return found
+
+    def _solved(self, design: Design, count: int, key: str, progress: Progress) -> ModeSet:
+        stage = f"solving {design.name}"
+        progress.tick(stage)
+        if design.mesh.n_nodes <= IN_CHILD_ABOVE:
+            modes = solve(design, count, progress)
+            if self.cache:
+                write_modes_npz(self.cache.path(key), modes)
+                self.cache.trim()
+            return modes
+        if self.cache:
+            path = in_child(_solve_into, design, count, self.cache.path(key), progress=progress, stage=stage)
+            self.cache.trim()
+            return read_modes_npz(path)
+        with tempfile.TemporaryDirectory() as folder:
+            return read_modes_npz(
+                in_child(_solve_into, design, count, Path(folder) / "modes.npz", progress=progress, stage=stage)
+            )
+
+
+@dataclass(frozen=True)
+class OpenDossier:
+    """A dossier whose designs are read when asked for: ``dossier["baseline"]``."""
+
+    workspace: Workspace
+    dossier: Dossier
+
+    @property
+    def names(self) -> tuple[str, ...]:
+        return tuple(plan.name for plan in self.dossier.plans)
+
+    def __getitem__(self, name: str) -> Design:
+        return self.design(name)
+
+    def design(self, name: str, progress: Progress = SILENT) -> Design:
+        return self.workspace.design(self.dossier, name, progress)
+
+    def modes(self, name: str, count: int | None = None, progress: Progress = SILENT) -> ModeSet:
+        """The mode set of the named design: from its file, or solved."""
+        design = self.design(name, progress)
+        return self.workspace.modes(design, self.dossier.plan(name), count, progress)
+
+    def study(self, name: str, count: int | None = None, progress: Progress = SILENT) -> Study:
+        """The named design with modes, energies and stated sizes."""
+        design = self.design(name, progress)
+        modes = self.modes(name, count, progress)
+        return study(design, modes, self._amplitudes(name, modes), self.dossier.condition, progress)
+
+    def _amplitudes(self, name: str, modes: ModeSet) -> dict[int, StatedAmplitude]:
+        found = {}
+        for item in self.dossier.amplitudes:
+            if item.design != name:
+                continue
+            if item.mode <= modes.count:
+                found[item.mode] = item if item.condition else replace(item, condition=self.dossier.condition)
+        return found
+
+
+def _dossier_file(path: str | Path) -> Path:
+    path = Path(path)
+    return path / "dossier.toml" if path.is_dir() else path
+
+
+def _solve_into(design: Design, count: int, path: Path) -> Path:
+    """Runs in the child: solve, write where the parent said, return the path."""
+    return write_modes_npz(path, solve(design, count))
