@@ -1,0 +1,94 @@
+"""Jacobians, volumes, areas, lengths and the orientation of cells."""
+
+from __future__ import annotations
+
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from viewer.cells.kinds import KINDS
+
+Array = NDArray[Any]
+_CHUNK = 20_000      # cells at a time: bounds memory to some tens of MB for every kind
+
+
+def jacobians(kind: str, xyz: Array, xi: Array) -> Array:
+    """(b, q, 3, dim) derivatives of position by reference coordinate, of cells ``xyz`` (b, n, 3) at ``xi`` (q, dim)."""
+    cell = KINDS[kind]
+    gradient = cell.gradient(xi).transpose(1, 0, 2).reshape(cell.n_nodes, -1)
+    flat = np.ascontiguousarray(np.swapaxes(xyz, 1, 2)).reshape(-1, cell.n_nodes) @ gradient
+    return flat.reshape(len(xyz), 3, len(xi), cell.dim).swapaxes(1, 2)
+
+
+def _densities(kind: str, xyz: Array, xi: Array) -> Array:
+    """(b, q) measure per unit of reference measure; signed for solids."""
+    j = jacobians(kind, xyz, xi)
+    if KINDS[kind].dim == 3:
+        return np.einsum("bqi,bqi->bq", np.cross(j[..., 0], j[..., 1]), j[..., 2])
+    if KINDS[kind].dim == 2:
+        return np.linalg.norm(np.cross(j[..., 0], j[..., 1]), axis=-1)
+    return np.linalg.norm(j[..., 0], axis=-1)
+
+
+def _order(kind: str) -> int:
+    """Degree that integrates a solid's Jacobian exactly; curved surfaces and lines, whose root is no polynomial,
+    take five more."""
+    cell = KINDS[kind]
+    simplex = cell.family in ("line", "tri", "tet")
+    exact = cell.dim * (cell.degree - 1) if simplex else cell.dim * cell.degree - 1
+    return exact if cell.dim == 3 or exact == 0 else exact + 5
+
+
+def measures(kind: str, xyz: Array) -> Array:
+    """(b,) volume (m³, negative when inside out), area (m²) or length (m) of cells ``xyz`` (b, n, 3); 0 for vertices.
+
+    Exact for solids and straight-sided flat cells, quadrature for curved surfaces and lines.
+    """
+    xyz = np.asarray(xyz, float)
+    if KINDS[kind].dim == 0:
+        return np.zeros(len(xyz))
+    points, weights = KINDS[kind].rule(_order(kind))
+    out = np.empty(len(xyz))
+    for start in range(0, len(xyz), _CHUNK):
+        part = slice(start, start + _CHUNK)
+        out[part] = _densities(kind, xyz[part], points) @ weights
+    return out
+
+
+def inverted(kind: str, xyz: Array) -> Array:
+    """Rows of the solid cells ``xyz`` (b, n, 3) whose Jacobian is not positive at some point of a 3-point rule.
+
+    Positive means above 1e-12 of the largest in the same cell. For surfaces and lines: cells of no measure.
+    """
+    xyz = np.asarray(xyz, float)
+    if KINDS[kind].dim == 0:
+        return np.empty(0, np.int64)
+    points, _ = KINDS[kind].rule(4)
+    bad = np.zeros(len(xyz), bool)
+    for start in range(0, len(xyz), _CHUNK):
+        part = slice(start, start + _CHUNK)
+        density = _densities(kind, xyz[part], points)
+        bad[part] = ~(density.min(axis=1) > 1e-12 * np.abs(density).max(axis=1))
+    return np.nonzero(bad)[0]
+
+
+def repair_orientation(kind: str, points: Array, nodes: Array) -> tuple[Array, int]:
+    """Turn solid cells of negative volume right side out by mirroring their node order.
+
+    points (p, 3), nodes (b, n) rows of points. Returns the nodes (a copy when anything changed) and the number
+    of cells turned. Files in the wild carry wedges of both windings; the sign of the volume decides.
+    Surfaces and lines come back as they are: their side is a matter of choice.
+    """
+    nodes = np.asarray(nodes)
+    if KINDS[kind].dim < 3 or len(nodes) == 0:
+        return nodes, 0
+    turned = np.zeros(len(nodes), bool)
+    for start in range(0, len(nodes), _CHUNK):
+        part = slice(start, start + _CHUNK)
+        turned[part] = measures(kind, points[nodes[part]]) < 0
+    if not turned.any():
+        return nodes, 0
+    nodes = nodes.copy()
+    nodes[turned] = nodes[turned][:, KINDS[kind].mirror]
+    return nodes, int(turned.sum())
