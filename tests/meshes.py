@@ -36,7 +36,7 @@ def plate_mesh(kind: str, counts, size, distort: float = 0.0, seed: int = 0) -> 
     return _structured(kind, tuple(counts), np.asarray(size, float), distort, seed)
 
 
-def distorted_cells(kind: str, count: int = 6, amount: float = 0.15, curved: bool = True, seed: int = 0) -> np.ndarray:
+def distorted_cells(kind: str, count: int = 6, amount: float = 0.15, curved: bool = True, seed: int = 0):
     """(count, n, 3) single solid cells: the reference cell turned, stretched and with every node moved.
 
     ``curved`` moves mid-side nodes on their own, otherwise only corners move and edges stay straight.

@@ -14,7 +14,7 @@ _CHUNK = 20_000      # cells at a time: bounds memory to some tens of MB for eve
 
 
 def jacobians(kind: str, xyz: Array, xi: Array) -> Array:
-    """(b, q, 3, dim) derivatives of position by reference coordinate, of cells ``xyz`` (b, n, 3) at ``xi`` (q, dim)."""
+    """(b, q, 3, dim) derivatives of position by reference coordinate; cells ``xyz`` (b, n, 3), at ``xi`` (q, dim)."""
     cell = KINDS[kind]
     gradient = cell.gradient(xi).transpose(1, 0, 2).reshape(cell.n_nodes, -1)
     flat = np.ascontiguousarray(np.swapaxes(xyz, 1, 2)).reshape(-1, cell.n_nodes) @ gradient

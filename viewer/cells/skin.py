@@ -1,7 +1,8 @@
-"""The drawable outside of a mesh: exterior faces of solids, all surface cells, line cells, as triangles and segments."""
+"""The drawable outside of a mesh, as triangles and segments: outer faces of solids, surface cells, line cells."""
 
 from __future__ import annotations
 
+import itertools
 from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
@@ -67,7 +68,7 @@ def skin(blocks: Sequence[tuple[str, Array]]) -> Skin:
         count += len(rows)
         for a, b, *mid in KINDS[kind].edges:
             chain = (a, *mid, b)
-            sides += [nodes[:, list(pair)] for pair in zip(chain[:-1], chain[1:], strict=True)]
+            sides += [nodes[:, list(pair)] for pair in itertools.pairwise(chain)]
     return Skin(
         np.concatenate(triangles), np.concatenate(cells), np.concatenate(faces), _once(np.concatenate(sides)),
         np.concatenate(segments), np.concatenate(segment_cells),
