@@ -1,0 +1,102 @@
+"""Colour of energy and of gain: ramps linear in OKLab, the square-root scale and its top.
+
+OKLab: B. Ottosson, "A perceptual color space for image processing", 2020 (matrices as published there);
+sRGB transfer function: IEC 61966-2-1.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from viewer.model.arrays import Array
+from viewer.scene.tokens import THEMES, rgb
+
+_LMS = np.array([
+    [0.4122214708, 0.5363325363, 0.0514459929],
+    [0.2119034982, 0.6806995451, 0.1073969566],
+    [0.0883024619, 0.2817188376, 0.6299787005],
+])
+_LAB = np.array([
+    [0.2104542553, 0.7936177850, -0.0040720468],
+    [1.9779984951, -2.4285922050, 0.4505937099],
+    [0.0259040371, 0.7827717662, -0.8086757660],
+])
+ENTRIES = 256
+PERCENTILE = 99.5
+
+
+def to_oklab(colours: Array) -> Array:
+    """(n, 3) sRGB components in 0…1 → OKLab (L, a, b)."""
+    c = np.asarray(colours, float)
+    linear = np.where(c <= 0.04045, c / 12.92, ((c + 0.055) / 1.055) ** 2.4)
+    return np.cbrt(linear @ _LMS.T) @ _LAB.T
+
+
+def from_oklab(lab: Array) -> Array:
+    """(n, 3) OKLab → sRGB components, clipped to 0…1."""
+    linear = (np.asarray(lab, float) @ np.linalg.inv(_LAB).T) ** 3 @ np.linalg.inv(_LMS).T
+    linear = np.clip(linear, 0.0, 1.0)
+    return np.where(linear <= 0.0031308, 12.92 * linear, 1.055 * linear ** (1 / 2.4) - 0.055)
+
+
+def ramp(stops: Sequence[str], entries: int = ENTRIES) -> Array:
+    """(entries, 3) uint8: evenly spaced ``#RRGGBB`` stops joined by straight lines in OKLab."""
+    lab = to_oklab(np.array([rgb(stop) for stop in stops]))
+    at = np.linspace(0.0, len(stops) - 1.0, entries)
+    mixed = np.stack([np.interp(at, np.arange(len(stops)), lab[:, k]) for k in range(3)], axis=1)
+    return np.round(from_oklab(mixed) * 255).astype(np.uint8)
+
+
+def energy_ramp(theme: str) -> Array:
+    """(256, 3) uint8 from zero energy (body base) to the top of the scale."""
+    return ramp(THEMES[theme].energy)
+
+
+def gain_ramp(theme: str) -> Array:
+    """(256, 3) uint8 from "lighten" over zero (body base) to "stiffen"."""
+    return ramp(THEMES[theme].gain)
+
+
+def energy_top(densities: Sequence[Array], areas: Sequence[Array]) -> float:
+    """Top of the colour scale for all compared designs: a perfect square, at least 1.
+
+    densities  per design (n,) strain-energy density ÷ mean
+    areas      per design (n,) drawn area of the same cells, m²; cells that are not drawn have zero
+
+    The area-weighted 99.5th percentile over everything drawn, rounded up; a peak of a few small cells
+    (a re-entrant corner) therefore does not wash out the rest.
+    """
+    value = np.concatenate([np.asarray(d, float).ravel() for d in densities])
+    weight = np.concatenate([np.asarray(a, float).ravel() for a in areas])
+    good = np.isfinite(value) & (weight > 0)
+    if not good.any():
+        return 1.0
+    order = np.argsort(value[good])
+    value, weight = value[good][order], np.cumsum(weight[good][order])
+    at = value[min(np.searchsorted(weight, PERCENTILE / 100 * weight[-1]), len(value) - 1)]
+    return float(max(np.ceil(np.sqrt(max(at, 0.0)) - 1e-9), 1.0) ** 2)
+
+
+def energy_share(density: Array, top: float) -> Array:
+    """Place of a density on the bar, 0…1 up to ``top`` and beyond: √(density ÷ top); unknown counts as zero."""
+    return np.sqrt(np.clip(np.nan_to_num(density), 0.0, None) / top)
+
+
+def gain_share(gain: Array, top: float) -> Array:
+    """Place of a signed gain on its bar: 0 at −top, ½ at zero, 1 at +top, by signed root."""
+    gain = np.nan_to_num(gain)
+    return 0.5 + 0.5 * np.sign(gain) * np.sqrt(np.abs(gain) / top)
+
+
+def pick(colours: Array, share: Array) -> Array:
+    """(n, 3) uint8 of a ramp at ``share`` (n,) in 0…1."""
+    return colours[np.clip(np.round(np.asarray(share) * (len(colours) - 1)), 0, len(colours) - 1).astype(np.intp)]
+
+
+def mix(base: str, tint: str, amount: float) -> str:
+    """``base`` with ``amount`` (0…1) of ``tint`` blended in OKLab, ``#RRGGBB``."""
+    lab = to_oklab(np.array([rgb(base), rgb(tint)]))
+    r, g, b = np.round(from_oklab((1 - amount) * lab[0] + amount * lab[1]) * 255).astype(int)
+    return f"#{r:02X}{g:02X}{b:02X}"

@@ -1,0 +1,206 @@
+"""The drawn surface of a mesh: skin triangles, split at creases for shading, with edge adjacency made once.
+
+Everything runs over *skin nodes*: the ascending mesh rows that some drawn triangle or line uses. A *vertex* is a
+skin node within one smooth patch: a node on a crease has one vertex for each side, so that neither light nor
+colour bleeds over the crease.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+from scipy.sparse import csr_matrix
+from scipy.sparse.csgraph import connected_components
+
+from viewer.cells import Skin, skin
+from viewer.model.arrays import Array
+from viewer.model.mesh import Mesh
+from viewer.scene.tokens import CREASE_DEGREES
+
+
+@dataclass(frozen=True, eq=False)
+class Edges:
+    """Edges between skin triangles.
+
+    nodes    (e, 2) skin nodes
+    faces    (e, 2) the two triangles; the second is −1 at a boundary
+    feature  (e,) bool: always drawn (boundary, crease, or three and more triangles meeting)
+    """
+
+    nodes: Array
+    faces: Array
+    feature: Array
+
+
+@dataclass(frozen=True, eq=False)
+class Surface:
+    """What is drawn of one mesh. Float arrays at a phase are (skin nodes, 3).
+
+    nodes      (s,) mesh rows of the skin nodes, ascending
+    triangles  (t, 3) vertices, consistently wound where the surface allows
+    vertex     (v,) skin node of each vertex
+    cells      (t,) cell row of each triangle
+    areas      (t,) m², undeformed
+    outline    (m, 2) skin nodes: the mesh lines of the drawn cell faces
+    lines      (l, 2) skin nodes of line cells; ``line_cells`` (l,) their cell rows
+    """
+
+    nodes: Array
+    triangles: Array
+    vertex: Array
+    cells: Array
+    areas: Array
+    edges: Edges
+    outline: Array
+    lines: Array
+    line_cells: Array
+
+    @property
+    def n_vertices(self) -> int:
+        return len(self.vertex)
+
+    @cached_property
+    def node_triangles(self) -> Array:
+        """(t, 3) skin nodes of the triangles."""
+        return self.vertex[self.triangles]
+
+    @cached_property
+    def _spread(self) -> csr_matrix:
+        """(v, t) float32 ones: a sum over each vertex's triangles."""
+        t = len(self.triangles)
+        columns = np.repeat(np.arange(t, dtype=np.int32), 3)
+        ones = np.ones(3 * t, np.float32)
+        return csr_matrix((ones, (self.triangles.ravel(), columns)), shape=(self.n_vertices, t))
+
+    def face_normals(self, points: Array) -> Array:
+        """(t, 3) normals of length twice the area at ``points`` (s, 3)."""
+        return cross_of(points, self.node_triangles)
+
+    def vertex_normals(self, face_normals: Array) -> Array:
+        """(v, 3) unit normals: area-weighted mean over each smooth patch."""
+        normals = self._spread @ face_normals
+        length = np.sqrt(np.einsum("ij,ij->i", normals, normals))
+        length[length == 0] = 1
+        normals /= length[:, None]
+        return normals
+
+    def vertex_values(self, values: Array) -> Array:
+        """(v,) area-weighted mean over each vertex's smooth patch of a value by cell row; unknown counts as 0."""
+        weight = self.areas + 1e-12 * (self.areas.max(initial=0.0) or 1.0)  # zero-area slivers still carry a value
+        value = np.nan_to_num(np.asarray(values, float))[self.cells] * weight
+        total = self._spread @ np.stack([value, weight], axis=1)
+        return total[:, 0] / total[:, 1]
+
+    def cell_areas(self, n_cells: int) -> Array:
+        """(n_cells,) drawn area of each cell, m²; zero for those inside."""
+        return np.bincount(self.cells, self.areas, minlength=n_cells)
+
+
+def surface_of(mesh: Mesh) -> Surface:
+    """The drawn surface of ``mesh``, from the skin of its cells; creases are those of the undeformed shape."""
+    return build(mesh.points, skin([(block.kind, block.nodes) for block in mesh.blocks]))
+
+
+def build(points: Array, found: Skin) -> Surface:
+    """A surface from a skin over the rows of ``points`` (n, 3), m."""
+    nodes, compact = np.unique(np.concatenate([found.faces.ravel(), found.edges.ravel()]), return_inverse=True)
+    tri, lines = compact[: found.faces.size].reshape(-1, 3), compact[found.faces.size :].reshape(-1, 2)
+    real = (tri[:, 0] != tri[:, 1]) & (tri[:, 1] != tri[:, 2]) & (tri[:, 2] != tri[:, 0])
+    tri, cells = tri[real], found.cell[real]
+
+    pairs, beside, direction, count = _adjacency(tri, len(nodes))
+    two = np.nonzero(count == 2)[0]
+    flip = _flips(beside[two], direction[two, 0] == direction[two, 1], len(tri))
+    tri[flip] = tri[flip][:, ::-1]
+
+    normals = cross_of(points[nodes], tri)
+    length = np.linalg.norm(normals, axis=1)
+    feature = count != 2
+    a, b = beside[two].T
+    turn = np.einsum("ij,ij->i", normals[a], normals[b])
+    product = length[a] * length[b]
+    feature[two] = (turn < np.cos(np.radians(CREASE_DEGREES)) * product) & (product > 0)
+    torn = (direction[two, 0] == direction[two, 1]) ^ flip[a] ^ flip[b]   # one-sided surfaces cannot be wound
+    feature[two[torn]] = True
+
+    corners, vertex = _patches(tri, pairs[~feature], beside[~feature])
+    edges = Edges(pairs.astype(np.int32), beside.astype(np.int32), feature)
+    outline = np.searchsorted(nodes, found.outline).astype(np.int32)
+    return Surface(
+        nodes, corners, vertex, cells, 0.5 * length, edges, outline, lines.astype(np.int32), found.edge_cell
+    )
+
+
+def cross_of(points: Array, triangles: Array) -> Array:
+    """(t, 3) cross products of two sides: normals of length twice the area. Column-wise: fast."""
+    x, y, z = np.ascontiguousarray(points.T)
+    i, j, k = triangles.T
+    ux, uy, uz = x[j] - x[i], y[j] - y[i], z[j] - z[i]
+    vx, vy, vz = x[k] - x[i], y[k] - y[i], z[k] - z[i]
+    normals = np.empty((len(triangles), 3), points.dtype)
+    normals[:, 0] = uy * vz - uz * vy
+    normals[:, 1] = uz * vx - ux * vz
+    normals[:, 2] = ux * vy - uy * vx
+    return normals
+
+
+def _adjacency(tri: Array, n: int) -> tuple[Array, Array, Array, Array]:
+    """Edges (e, 2), their first two triangles (e, 2, −1 if none), whether these run low→high, their number."""
+    start, end = tri.ravel(), tri[:, [1, 2, 0]].ravel()
+    key = np.minimum(start, end).astype(np.int64) * n + np.maximum(start, end)
+    order = np.argsort(key, kind="stable")
+    first = np.nonzero(np.diff(key[order], prepend=-1))[0]
+    count = np.diff(first, append=len(key))
+    low_high = start < end
+    beside = np.full((len(first), 2), -1, np.int64)
+    direction = np.zeros((len(first), 2), bool)
+    for side in (0, 1):
+        has = count > side
+        half = order[first[has] + side]
+        beside[has, side] = half // 3
+        direction[has, side] = low_high[half]
+    edge_key = key[order[first]] if len(first) else key
+    return np.stack([edge_key // n, edge_key % n], axis=1), beside, direction, count
+
+
+def _flips(beside: Array, same: Array, n_faces: int) -> Array:
+    """(t,) bool: triangles to turn over so that neighbours are wound alike.
+
+    Each triangle has an upright and a turned copy; an edge run in the ``same`` sense by both neighbours joins
+    unlike copies. Of the two mirror images of a connected piece, the one that leaves its first triangle is taken.
+    """
+    if not same.any():
+        return np.zeros(n_faces, bool)
+    a, b = beside.T
+    other = np.where(same, n_faces, 0)
+    rows, columns = np.concatenate([a, a + n_faces]), np.concatenate([b + other, b + n_faces - other])
+    n = 2 * n_faces
+    _, mark = connected_components(csr_matrix((np.ones(len(rows), np.int8), (rows, columns)), (n, n)), directed=False)
+    pieces, piece = connected_components(
+        csr_matrix((np.ones(len(a), np.int8), (a, b)), (n_faces, n_faces)), directed=False
+    )
+    first = np.full(pieces, n_faces)
+    np.minimum.at(first, piece, np.arange(n_faces))
+    return mark[:n_faces] != mark[first[piece]]
+
+
+def _patches(tri: Array, pairs: Array, beside: Array) -> tuple[Array, Array]:
+    """Vertices of corners (t, 3) and skin node of each vertex: corners joined over smooth edges share one."""
+    t = len(tri)
+    if t == 0:
+        return np.empty((0, 3), np.int32), np.empty(0, np.int32)
+    joins = []
+    for column in (0, 1):
+        node = pairs[:, column]
+        joins.append([3 * face + np.argmax(tri[face] == node[:, None], axis=1) for face in beside.T])
+    rows, columns = (np.concatenate([join[side] for join in joins]) for side in (0, 1))
+    graph = csr_matrix((np.ones(len(rows), np.int8), (rows, columns)), (3 * t, 3 * t))
+    count, label = connected_components(graph, directed=False)
+    node_of = np.empty(count, np.int64)
+    node_of[label] = tri.ravel()
+    order = np.argsort(node_of, kind="stable")          # vertices ordered by node: memory is read in order
+    rank = np.empty(count, np.int64)
+    rank[order] = np.arange(count)
+    return rank[label].reshape(t, 3).astype(np.int32), node_of[order].astype(np.int32)
