@@ -17,7 +17,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from viewer.errors import ModelError
-from viewer.mechanics import shell_quad
+from viewer.mechanics import shell_quad, shell_tri
 from viewer.model.arrays import Array
 from viewer.model.design import Material, Property
 
@@ -119,17 +119,14 @@ def _mean_plane(xyz: Array) -> tuple[Array, Array]:
 
 
 def _reject_flat(kind: str, xyz: Array, xy: Array) -> None:
-    if xyz.shape[1] == 4:
-        area = shell_quad.determinants(xy).min(axis=1)
-    else:
-        edges = xy[:, 1:] - xy[:, :1]
-        area = np.linalg.det(edges)
-    bad = np.nonzero(~(area > 0))[0]
+    area = (shell_quad if kind == "quad4" else shell_tri).determinants(xy)
+    bad = np.nonzero(~(area > 0).all(axis=1))[0]
     if len(bad):
         x, y, z = xyz[bad[0]].mean(axis=0)
         raise ModelError(
-            f"{len(bad)} {kind} cell(s) have no area or are folded over", found=f"the first near ({x:g}, {y:g}, {z:g}) m",
-            expected="convex cells with an area", do="repair the mesh there",
+            f"{len(bad)} {kind} cell(s) have no area or are folded over",
+            found=f"the first near ({x:g}, {y:g}, {z:g}) m", expected="convex cells with an area",
+            do="repair the mesh there",
         )
 
 
@@ -152,8 +149,7 @@ def _surface(xyz: Array) -> tuple[Array, Array, Array]:
         values, gradient = shell_quad.shape(shell_quad.POINTS)
         weight = 1.0
     else:
-        values = np.full((3, 3), 1 / 6) + 0.5 * np.eye(3)
-        gradient = np.tile([[-1.0, -1.0], [1.0, 0.0], [0.0, 1.0]], (3, 1, 1))
+        values, gradient = shell_tri.shape()
         weight = 1 / 6
     tangent = np.einsum("qni,bnj->bqij", gradient, xyz)
     normal = np.cross(tangent[:, :, 0], tangent[:, :, 1])
@@ -168,4 +164,6 @@ def _symmetric(matrix: Array) -> Array:
 SHELLS: tuple[ShellFormulation, ...] = (
     ShellFormulation("quad4-mitc4", "quad4", shell_quad.flat_parts),
     ShellFormulation("quad4-mitc4-mindlin", "quad4", shell_quad.flat_parts, kappa=SHEAR_MINDLIN),
+    ShellFormulation("tri3-dkmt", "tri3", shell_tri.flat_parts),
+    ShellFormulation("tri3-dkmt-mindlin", "tri3", shell_tri.flat_parts, kappa=SHEAR_MINDLIN),
 )
