@@ -16,10 +16,13 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from viewer.cells import KINDS
+from viewer.cells.measures import jacobians
 from viewer.errors import ModelError
 from viewer.mechanics import shell_quad, shell_tri
+from viewer.mechanics.materials import plane_stress, shear_modulus
 from viewer.model.arrays import Array
-from viewer.model.design import Material, Property
+from viewer.model.design import Property
 
 SPIN_INERTIA = 1e-4
 PARTS = ("membrane", "bending", "shear", "drilling")
@@ -59,7 +62,7 @@ class ShellFormulation:
     def mass(self, xyz: Array, prop: Property) -> Array:
         """(b, nd, nd) consistent mass of cells ``xyz`` (b, n, 3) m, kg and kg·m²."""
         thickness = _thickness(self.kind, prop)
-        values, area, normal = _surface(xyz)
+        values, area, normal = _surface(self.kind, xyz)
         density = prop.material.density * thickness
         pairs = np.einsum("bq,qi,qj->bqij", area, values, values)
         across = np.eye(3) - (1 - SPIN_INERTIA) * normal[..., :, None] * normal[..., None, :]
@@ -78,17 +81,6 @@ class ShellFormulation:
         material = prop.material
         flat = self._flat(corners[..., :2], plane_stress(material), self.kappa * shear_modulus(material), thickness)
         return flat, _placing(axes, corners[..., 2])
-
-
-def plane_stress(material: Material) -> Array:
-    """(3, 3) plane-stress matrix in the order xx, yy, xy (engineering shear), Pa."""
-    nu = material.poisson
-    return material.youngs_modulus / (1 - nu**2) * np.array([[1, nu, 0], [nu, 1, 0], [0, 0, (1 - nu) / 2]])
-
-
-def shear_modulus(material: Material) -> float:
-    """G = E / 2(1 + ν), Pa."""
-    return material.youngs_modulus / (2 * (1 + material.poisson))
 
 
 def _thickness(kind: str, prop: Property) -> float:
@@ -143,18 +135,13 @@ def _placing(axes: Array, offset: Array) -> Array:
     return turn.reshape(batch, 6 * n, 6 * n)
 
 
-def _surface(xyz: Array) -> tuple[Array, Array, Array]:
+def _surface(kind: str, xyz: Array) -> tuple[Array, Array, Array]:
     """Shape functions (q, n), area weights (b, q) and unit normals (b, q, 3) of the true surface."""
-    if xyz.shape[1] == 4:
-        values, gradient = shell_quad.shape(shell_quad.POINTS)
-        weight = 1.0
-    else:
-        values, gradient = shell_tri.shape()
-        weight = 1 / 6
-    tangent = np.einsum("qni,bnj->bqij", gradient, xyz)
-    normal = np.cross(tangent[:, :, 0], tangent[:, :, 1])
+    points, weights = KINDS[kind].rule(2)
+    tangents = jacobians(kind, xyz, points)
+    normal = np.cross(tangents[..., 0], tangents[..., 1])
     length = np.linalg.norm(normal, axis=-1)
-    return values, weight * length, normal / length[..., None]
+    return KINDS[kind].shape(points), weights * length, normal / length[..., None]
 
 
 def _symmetric(matrix: Array) -> Array:

@@ -14,24 +14,17 @@ from __future__ import annotations
 
 import numpy as np
 
+from viewer.cells import KINDS
 from viewer.model.arrays import Array
 
-CORNERS = np.array([(-1.0, -1.0), (1.0, -1.0), (1.0, 1.0), (-1.0, 1.0)])
-POINTS = CORNERS / np.sqrt(3.0)             # the 2 × 2 Gauss rule, all weights 1
-U, V, W, RX, RY, RZ = (slice(i, None, 6) for i in range(6))
-
-
-def shape(xi: Array) -> tuple[Array, Array]:
-    """Bilinear functions (q, 4) and their gradients (q, 4, 2) at natural coordinates ``xi`` (q, 2)."""
-    one = 1.0 + xi[:, None, :] * CORNERS
-    values = 0.25 * one[..., 0] * one[..., 1]
-    gradient = 0.25 * CORNERS * one[..., ::-1]
-    return values, gradient
+QUAD = KINDS["quad4"]
+POINTS = QUAD.rule(2)[0]                # the 2 × 2 Gauss rule, all weights 1
+U, V, _, RX, RY, RZ = (slice(i, None, 6) for i in range(6))
 
 
 def determinants(xy: Array) -> Array:
     """(b, 4) Jacobian determinants at the Gauss points of corners ``xy`` (b, 4, 2), m²."""
-    return np.linalg.det(np.einsum("qni,bnj->bqij", shape(POINTS)[1], xy))
+    return np.linalg.det(np.einsum("qni,bnj->bqij", QUAD.gradient(POINTS), xy))
 
 
 def flat_parts(xy: Array, membrane: Array, shear: float, thickness: float) -> dict[str, Array]:
@@ -42,7 +35,7 @@ def flat_parts(xy: Array, membrane: Array, shear: float, thickness: float) -> di
     shear      shear modulus × shear correction factor, Pa
     thickness  m
     """
-    values, gradient = shape(POINTS)
+    values, gradient = QUAD.shape(POINTS), QUAD.gradient(POINTS)
     jacobian = np.einsum("qni,bnj->bqij", gradient, xy)
     area = np.linalg.det(jacobian)
     inverse = np.linalg.inv(jacobian)
@@ -83,7 +76,7 @@ def _in_plane(xy: Array, values: Array, slopes: Array, area: Array, moduli: Arra
     misfit[..., 0, RZ] = values
 
     # modes 1 − ξ² and 1 − η², gradients through the Jacobian at the centre: constant stress does no work on them
-    centre = np.einsum("ni,bnj->bij", shape(np.zeros((1, 2)))[1][0], xy)
+    centre = np.einsum("ni,bnj->bij", QUAD.gradient(np.zeros((1, 2)))[0], xy)
     natural = np.zeros((4, 2, 2))
     natural[:, 0, 0], natural[:, 1, 1] = -2 * POINTS[:, 0], -2 * POINTS[:, 1]
     extra = np.einsum("bji,qmi->bqmj", np.linalg.inv(centre), natural)

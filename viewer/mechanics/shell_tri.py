@@ -16,20 +16,17 @@ from __future__ import annotations
 
 import numpy as np
 
+from viewer.cells import KINDS
 from viewer.mechanics.shell_quad import RX, RY, integrate
 from viewer.model.arrays import Array
 
-POINTS = np.full((3, 3), 1 / 6) + 0.5 * np.eye(3)      # area coordinates of the rule exact for quadratics
+TRIANGLE = KINDS["tri3"]
+POINTS = TRIANGLE.shape(TRIANGLE.rule(2)[0])            # area coordinates of the rule exact for quadratics
 EDGES = ((0, 1), (1, 2), (2, 0))
 BASIC = 1.5                                             # α_b of the optimal triangle
 PATTERN = np.array([[(1, 2, 1), (0, 1, -1), (-1, -1, -2)],
                     [(-2, -1, -1), (1, 1, 2), (-1, 0, 1)],
                     [(1, -1, 0), (-1, -2, -1), (2, 1, 1)]], float)   # β1…β9 as the three corners see them
-
-
-def shape() -> tuple[Array, Array]:
-    """Linear functions (3, 3) at ``POINTS`` and their gradients (3, 3, 2) by natural coordinates."""
-    return POINTS, np.tile([[-1.0, -1.0], [1.0, 0.0], [0.0, 1.0]], (3, 1, 1))
 
 
 def determinants(xy: Array) -> Array:
@@ -100,7 +97,7 @@ def _bending(xy: Array, area: Array, softness: float) -> tuple[Array, Array]:
     ``softness`` = 12 × bending over shear stiffness, m²: over an edge's length squared it is the edge's φ.
     """
     batch = len(xy)
-    natural = np.array([[-1.0, -1.0], [1.0, 0.0], [0.0, 1.0]])
+    natural = TRIANGLE.gradient(np.zeros((1, 2)))[0]
     slopes = np.einsum("bji,ni->bnj", np.linalg.inv(xy[:, 1:] - xy[:, :1]), natural)
     curvature = np.zeros((batch, 3, 3, 18))
     curvature[..., 0, RY] = slopes[:, None, :, 0]
