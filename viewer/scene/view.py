@@ -114,7 +114,7 @@ def fit(picture: Picture, band_height: float = tokens.BAND_HEIGHT) -> tuple[Came
     return Camera(focus, right, up, eye, scale), boxes
 
 
-def shown_box(picture: Picture, camera: Camera, index: int) -> Array:
+def shown_box(picture: Picture, index: int) -> Array:
     """(2, 3) bounding box in m of body ``index`` at both extremes, for clipping planes."""
     body = picture.bodies[index]
     move = abs(body.factor) * np.abs(body.shape)

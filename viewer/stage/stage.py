@@ -1,0 +1,185 @@
+"""The stage: draws a picture at any phase with the plotter it is given, or off the screen.
+
+Renderer layers: 0 bodies, 1 marks (always over bodies), 2 the sheet of words and figures. Each body of a
+side-by-side picture has a viewport of its own; all viewports share one camera.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+import pyvista as pv
+from vtkmodules.util.numpy_support import vtk_to_numpy
+from vtkmodules.vtkCommonCore import vtkUnsignedCharArray
+from vtkmodules.vtkRenderingCore import vtkLight, vtkRenderer
+
+from viewer.model.arrays import Array
+from viewer.scene import view
+from viewer.scene.picture import Picture
+from viewer.scene.surface import Surface, surface_of
+from viewer.scene.tokens import BASE_WIDTH, THEMES, rgb
+from viewer.stage.body_actors import BodyActors, DashedBody
+from viewer.stage.windows import off_screen
+
+SUPERSAMPLE = 2
+# camera lights: position about the focus with the camera at (0, 0, 1); brightness
+LIGHTS = (((-0.45, 0.80, 0.75), 0.92), ((0.85, 0.10, 0.75), 0.36), ((0.10, 0.90, -0.90), 0.15))
+
+
+class Stage:
+    """A picture being drawn.
+
+    plotter  a pyvista plotter whose window is drawn into; None: an off-screen one, at twice the picture's size,
+             that :meth:`image` reduces
+    """
+
+    def __init__(self, picture: Picture, plotter: pv.Plotter | None = None) -> None:
+        self.picture = picture
+        self._own = plotter is None
+        if plotter is None:
+            plotter = off_screen(SUPERSAMPLE * picture.width, SUPERSAMPLE * picture.height)
+        self.plotter = plotter
+        self._window = plotter.render_window
+        self._window.SetMultiSamples(0)
+        self._window.SetNumberOfLayers(3)
+        self._added: list[vtkRenderer] = []
+        self._build({})
+
+    def show(self, picture: Picture, *, keep_camera: bool = False) -> None:
+        """Replace the picture; surfaces of meshes that were already shown are kept."""
+        known = {id(body.mesh): surface for body, surface in zip(self.picture.bodies, self._surfaces, strict=True)}
+        camera = self.camera() if keep_camera else None
+        self._clear()
+        self.picture = picture
+        self._build(known)
+        if camera is not None:
+            self._aim(camera)
+
+    def draw(self, phase: float) -> None:
+        """Move everything to ``phase`` (rad), without rendering."""
+        camera = self.camera()
+        for actors in self._bodies:
+            actors.draw(phase, camera)
+
+    def image(self, phase: float | None = None) -> Array:
+        """(h, w, 3) uint8 sRGB at the picture's size, top row first; ``phase`` draws first when given."""
+        if phase is not None:
+            self.draw(phase)
+        self._window.Render()
+        width, height = self._window.GetSize()
+        pixels = vtkUnsignedCharArray()
+        self._window.GetPixelData(0, 0, width - 1, height - 1, 0, pixels, 0)
+        image = vtk_to_numpy(pixels).reshape(height, width, 3)[::-1]
+        return reduce(image) if self._own else np.ascontiguousarray(image)
+
+    def close(self) -> None:
+        """Take everything off the plotter; an off-screen plotter is closed."""
+        self._clear()
+        if self._own:
+            self.plotter.close()
+
+    def __enter__(self) -> Stage:
+        return self
+
+    def __exit__(self, *error: object) -> None:
+        self.close()
+
+    def camera(self) -> view.Camera:
+        """The camera as it stands now: in a window the user may have turned it."""
+        camera = self._panes[0].GetActiveCamera()
+        toward = -np.array(camera.GetDirectionOfProjection())
+        right, up, toward = view.axes(view.View(tuple(toward), tuple(camera.GetViewUp())))
+        _, top, _, bottom = self._boxes[0]
+        scale = 2 * camera.GetParallelScale() / (bottom - top)
+        return view.Camera(np.array(camera.GetFocalPoint()), right, up, toward, scale)
+
+    # ------------------------------------------------------------------ building
+
+    def _build(self, known: dict[int, Surface]) -> None:
+        picture = self.picture
+        for body in picture.bodies:
+            if id(body.mesh) not in known:
+                known[id(body.mesh)] = surface_of(body.mesh)
+        self._surfaces = [known[id(body.mesh)] for body in picture.bodies]
+        camera, self._boxes = view.fit(picture)
+        self._lay_renderers()
+        self._aim(camera)
+        scale = self._window.GetSize()[0] / BASE_WIDTH
+        self._bodies: list[BodyActors | DashedBody] = []
+        if picture.layout == "overlay" and len(picture.bodies) > 1:
+            theme = THEMES[picture.theme]
+            below, over = picture.bodies[0], picture.bodies[1]
+            first, second = self._surfaces[:2]
+            self._bodies.append(BodyActors(self._panes[0], picture, over, second, scale, theme.modified))
+            self._bodies.append(DashedBody(self._panes[0], self._marks[0], below, first, scale, theme.baseline))
+        else:
+            for pane, body, surface in zip(self._panes, picture.bodies, self._surfaces, strict=True):
+                self._bodies.append(BodyActors(pane, picture, body, surface, scale))
+
+    def _lay_renderers(self) -> None:
+        """One renderer for each viewport in layers 0 and 1, the whole window in layer 2."""
+        width, height = view.sheet_size(self.picture.width, self.picture.height)
+        boxes = list(dict.fromkeys(self._boxes))
+        self._panes, self._marks = [], []
+        for number, (left, top, right, bottom) in enumerate(boxes):
+            pane = self.plotter.renderer if number == 0 else self._renderer(0)
+            mark = self._renderer(1)
+            for renderer in (pane, mark):
+                renderer.SetViewport(left / width, 1 - bottom / height, right / width, 1 - top / height)
+                renderer.SetActiveCamera(self.plotter.renderer.GetActiveCamera())
+                light(renderer)
+            pane.SetBackground(*rgb(THEMES[self.picture.theme].background))
+            pane.GradientBackgroundOff()
+            self._panes.append(pane)
+            self._marks.append(mark)
+        self._sheet = self._renderer(2)
+
+    def _renderer(self, layer: int) -> vtkRenderer:
+        renderer = vtkRenderer()
+        renderer.SetLayer(layer)
+        if layer:
+            renderer.InteractiveOff()
+        self._window.AddRenderer(renderer)
+        self._added.append(renderer)
+        return renderer
+
+    def _clear(self) -> None:
+        for renderer in self._added:
+            renderer.RemoveAllViewProps()
+            self._window.RemoveRenderer(renderer)
+        self._added = []
+        self.plotter.renderer.RemoveAllViewProps()
+
+    def _aim(self, camera: view.Camera) -> None:
+        """Point the shared camera; its clipping planes hold both extremes from any side."""
+        boxes = [view.shown_box(self.picture, k) for k in range(len(self.picture.bodies))]
+        low, high = np.min([b[0] for b in boxes], axis=0), np.max([b[1] for b in boxes], axis=0)
+        radius = float(np.linalg.norm(high - low) + np.linalg.norm((high + low) / 2 - camera.focus)) or 1.0
+        _, top, _, bottom = self._boxes[0]
+        eye = self._panes[0].GetActiveCamera()
+        eye.ParallelProjectionOn()
+        eye.SetFocalPoint(*camera.focus)
+        eye.SetPosition(*(camera.focus + 2 * radius * camera.toward_eye))
+        eye.SetViewUp(*camera.up)
+        eye.SetParallelScale((bottom - top) / 2 * camera.metres_per_pixel)
+        eye.SetClippingRange(radius, 3 * radius)
+
+
+def light(renderer: vtkRenderer) -> None:
+    """The three camera lights, in place of whatever light there was."""
+    renderer.RemoveAllLights()
+    renderer.AutomaticLightCreationOff()
+    for position, brightness in LIGHTS:
+        lamp = vtkLight()
+        lamp.SetLightTypeToCameraLight()
+        lamp.SetPosition(*position)
+        lamp.SetFocalPoint(0, 0, 0)
+        lamp.SetIntensity(brightness)
+        renderer.AddLight(lamp)
+
+
+def reduce(image: Array) -> Array:
+    """(h, w, 3) uint8: the mean of each 2 × 2 box of a (2h, 2w, 3) image, rounded."""
+    total = image[0::2, 0::2].astype(np.uint16)
+    for part in (image[1::2, 0::2], image[0::2, 1::2], image[1::2, 1::2]):
+        total += part
+    return ((total + 2) >> 2).astype(np.uint8)
