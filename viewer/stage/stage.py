@@ -8,12 +8,14 @@ from __future__ import annotations
 
 import numpy as np
 import pyvista as pv
+from PIL import Image
 from vtkmodules.util.numpy_support import vtk_to_numpy
 from vtkmodules.vtkCommonCore import vtkUnsignedCharArray
 from vtkmodules.vtkRenderingCore import vtkLight, vtkRenderer
 
 from viewer.model.arrays import Array
 from viewer.scene import view
+from viewer.scene.note_layout import note_height
 from viewer.scene.picture import Picture
 from viewer.scene.surface import Surface, surface_of
 from viewer.scene.tokens import BASE_WIDTH, THEMES, rgb
@@ -100,7 +102,7 @@ class Stage:
             if id(body.mesh) not in known:
                 known[id(body.mesh)] = surface_of(body.mesh)
         self._surfaces = [known[id(body.mesh)] for body in picture.bodies]
-        camera, self._boxes = view.fit(picture)
+        camera, self._boxes = view.fit(picture, note_height(picture))
         self._lay_renderers()
         self._aim(camera)
         scale = self._window.GetSize()[0] / BASE_WIDTH
@@ -179,7 +181,4 @@ def light(renderer: vtkRenderer) -> None:
 
 def reduce(image: Array) -> Array:
     """(h, w, 3) uint8: the mean of each 2 × 2 box of a (2h, 2w, 3) image, rounded."""
-    total = image[0::2, 0::2].astype(np.uint16)
-    for part in (image[1::2, 0::2], image[0::2, 1::2], image[1::2, 1::2]):
-        total += part
-    return ((total + 2) >> 2).astype(np.uint8)
+    return np.asarray(Image.fromarray(image).reduce(SUPERSAMPLE))
