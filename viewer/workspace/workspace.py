@@ -7,7 +7,7 @@ from dataclasses import dataclass, field, replace
 from pathlib import Path
 
 from viewer.jobs import SILENT, Progress, in_child
-from viewer.loaders import read_dossier, read_mesh, read_modes
+from viewer.loaders import ReadReport, read_dossier_report, read_mesh_report, read_modes
 from viewer.mechanics.eigen import solve
 from viewer.model.design import Design
 from viewer.model.dossier import DesignPlan, Dossier, StatedAmplitude
@@ -26,19 +26,27 @@ class Workspace:
     cache: Cache | None = field(default_factory=Cache)
     _designs: dict[tuple[Path, str], Design] = field(default_factory=dict)
     _modes: dict[str, ModeSet] = field(default_factory=dict)
+    _reports: dict[tuple[Path, str], ReadReport] = field(default_factory=dict)
 
     def open(self, path: str | Path) -> OpenDossier:
         """Read and check ``dossier.toml`` (or a folder that holds one); meshes stay on disk until asked for."""
-        return OpenDossier(self, read_dossier(_dossier_file(path)))
+        dossier, warnings = read_dossier_report(_dossier_file(path))
+        return OpenDossier(self, dossier, warnings)
 
     def design(self, dossier: Dossier, name: str, progress: Progress = SILENT) -> Design:
         """The named design with its mesh read."""
         plan = dossier.plan(name)
         key = (dossier.path, name)
         if key not in self._designs:
-            mesh = read_mesh(plan.mesh_file, length_unit=plan.length_unit, progress=progress)
+            mesh, report = read_mesh_report(plan.mesh_file, length_unit=plan.length_unit, progress=progress)
             self._designs[key] = plan.build(mesh)
+            self._reports[key] = report
         return self._designs[key]
+
+    def report(self, dossier: Dossier, name: str, progress: Progress = SILENT) -> ReadReport:
+        """What reading the named design's mesh had to notice."""
+        self.design(dossier, name, progress)
+        return self._reports[dossier.path, name]
 
     def modes(
         self, design: Design, plan: DesignPlan | None = None, count: int | None = None, progress: Progress = SILENT
@@ -87,6 +95,7 @@ class OpenDossier:
 
     workspace: Workspace
     dossier: Dossier
+    warnings: tuple[str, ...] = ()
 
     @property
     def names(self) -> tuple[str, ...]:
@@ -108,6 +117,15 @@ class OpenDossier:
         design = self.design(name, progress)
         modes = self.modes(name, count, progress)
         return study(design, modes, self._amplitudes(name, modes), self.dossier.condition, progress)
+
+    def partner(self, first: str, mode: int, second: str) -> int:
+        """Number of the mode of ``second`` that the dossier pairs with mode ``mode`` of ``first``; else the same."""
+        for pair in self.dossier.pairs:
+            here, there = (pair.first_design, pair.first_mode), (pair.second_design, pair.second_mode)
+            for mine, theirs in ((here, there), (there, here)):
+                if mine == (first, mode) and theirs[0] == second:
+                    return theirs[1]
+        return mode
 
     def _amplitudes(self, name: str, modes: ModeSet) -> dict[int, StatedAmplitude]:
         found = {}

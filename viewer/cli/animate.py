@@ -1,0 +1,89 @@
+"""``hingelight animate``: one loop, still or phase strip of one mode, or of one mode in two designs."""
+
+from __future__ import annotations
+
+from pathlib import Path
+from typing import Annotated
+
+import typer
+
+from viewer.cli.shell import (
+    DossierPath,
+    Json,
+    NoCache,
+    Theme,
+    Width,
+    answer,
+    command,
+    progress_bar,
+    theme_checked,
+    workspace,
+)
+
+
+@command
+def animate(
+    dossier: DossierPath,
+    mode: Annotated[int, typer.Argument(min=1, help="Number of the mode, from 1.")],
+    out: Annotated[Path | None, typer.Option(help="File to write: .gif for a loop, .png for a still.")] = None,
+    design: Annotated[str, typer.Option(help="Design to draw; the dossier's first by default.")] = "",
+    against: Annotated[str, typer.Option(help="Compare with this design: NAME, or NAME:MODE.")] = "",
+    overlay: Annotated[bool, typer.Option(help="Draw compared designs over one another, not side by side.")] = False,
+    true_scale: Annotated[bool, typer.Option("--true-scale", help="Draw at ×1; needs a stated amplitude.")] = False,
+    phase: Annotated[float, typer.Option(help="Phase of a still, degrees.")] = 0.0,
+    strip: Annotated[bool, typer.Option("--strip", help="Draw a strip of five phases (.png).")] = False,
+    peak: Annotated[float | None, typer.Option(min=0.01, max=50, help="Drawn peak in % of the diagonal.")] = None,
+    no_energy: Annotated[bool, typer.Option("--no-energy", help="Leave out the energy colours.")] = False,
+    no_ghost: Annotated[bool, typer.Option("--no-ghost", help="Leave out the undeformed outline.")] = False,
+    mesh_edges: Annotated[bool, typer.Option("--mesh-edges", help="Draw the edges of elements.")] = False,
+    theme: Theme = "light",
+    width: Width = 960,
+    as_json: Json = False,
+    no_cache: NoCache = False,
+) -> None:
+    """Draw one mode as a loop, a still or a phase strip; or the same mode of two designs together."""
+    from viewer.errors import InputError
+    from viewer.export import save_gif, save_png, save_strip
+    from viewer.scene.compose import pair_picture, single_picture
+
+    theme_checked(theme)
+    opened = workspace(no_cache).open(dossier)
+    first = design or opened.names[0]
+    target = out or Path(f"{first}_mode_{mode:02d}{'.png' if strip else '.gif'}")
+    suffix = target.suffix.lower()
+    if suffix not in (".gif", ".png") or (strip and suffix != ".png"):
+        raise InputError(
+            "cannot tell what to draw", file=target, found=f"the ending '{target.suffix}'",
+            expected=".png for a strip" if strip else ".gif for a loop or .png for a still",
+        )
+    options = {"theme": theme, "width": width, "ghost": not no_ghost, "mesh_edges": mesh_edges}
+    with progress_bar() as progress:
+        study = opened.study(first, None, progress)
+        if against:
+            other, _, number = against.partition(":")
+            second = opened.study(other, None, progress)
+            theirs = opened.partner(first, mode, other) if not number else _number(number)
+            picture = pair_picture(
+                study, mode, second, theirs, layout="overlay" if overlay else "side", true_scale=true_scale,
+                energy=not no_energy, **options,
+            )
+        else:
+            picture = single_picture(
+                study, mode, true_scale=true_scale, peak_percent=peak, energy=not no_energy, **options
+            )
+        if strip:
+            save_strip(picture, target, progress)
+        elif suffix == ".png":
+            save_png(picture, target, phase * 3.141592653589793 / 180, progress)
+        else:
+            save_gif(picture, target, progress)
+    if as_json:
+        answer({"file": target, "note": picture.note.__dict__, "magnification": picture.magnification})
+        return
+    typer.echo(str(target))
+
+
+def _number(text: str) -> int:
+    if not text.isdigit() or int(text) < 1:
+        raise typer.BadParameter(f"'{text}' is not a mode number", param_hint="--against")
+    return int(text)
