@@ -1,0 +1,236 @@
+"""The layout of ``dossier.toml``: which tables and keys exist and of what type. Units and references come later.
+
+Every number is in the units that ``[units]`` declares, SI when it says nothing::
+
+    title = "Camera boom"
+    condition = "clamped root, camera 1.2 kg"
+
+    [units]                     # all optional
+    length = "mm"               # thickness, positions, boxes
+    amplitude = "um"            # stated amplitudes; default: as length
+    modulus = "GPa"
+    density = "kg/m3"
+    mass = "kg"
+    stiffness = "N/mm"          # springs; turning springs are always N·m/rad
+
+    [materials.aluminium]
+    youngs_modulus = 70
+    poisson = 0.33
+    density = 2700
+
+    [[designs]]
+    name = "baseline"
+    mesh = "boom.vtu"           # relative to this file
+    length_unit = "mm"          # of the mesh and mode files; default "m"
+    solve = 8                   # number of modes to compute, or: modes = "boom_modes.vtu"
+    assign = [{target = "*", material = "aluminium", thickness = 2}]
+    supports = [{name = "root", group = "root"}]          # held = ["ux", "uy", "uz"]; default: all six
+    springs = [{name = "strap", group = "eye", stiffness = [100, 0, 0]}]
+    masses = [{name = "camera", group = "pad", mass = 1.2, position = [0, 0, 500]}]
+    mode_names = {1 = "boom nods"}
+
+    [[points]]                  # of all designs; a design's own `points` add to them or replace by name
+    name = "camera lens"
+    group = "pad"               # or: nodes = [12, 13]; box = [[…], […]]; near = [x, y, z]
+    direction = "+y"            # or [0, 1, 0]
+    effect = "image blur"
+
+    [[amplitudes]]
+    design = "baseline"
+    mode = 1
+    point = "camera lens"       # or a place of its own: group, nodes, box, near, and direction
+    value = 180
+    statistic = "peak"          # "rms", "3 sigma"
+    condition = "belt drive at 12 Hz"
+
+    [[pairs]]
+    first = {design = "baseline", mode = 1}
+    second = {design = "modified", mode = 2}
+"""
+
+from __future__ import annotations
+
+from typing import Annotated, Literal
+
+from pydantic import BaseModel, ConfigDict, Field, model_validator
+
+Name = Annotated[str, Field(min_length=1)]
+Positive = Annotated[float, Field(gt=0)]
+NotNegative = Annotated[float, Field(ge=0)]
+Vector = Annotated[list[float], Field(min_length=3, max_length=3)]
+ModeNumber = Annotated[int, Field(ge=1)]
+Held = Literal["ux", "uy", "uz", "rx", "ry", "rz"]
+
+LENGTHS = {"m": 1.0, "cm": 1e-2, "mm": 1e-3, "um": 1e-6, "in": 0.0254, "ft": 0.3048}
+MODULI = {"Pa": 1.0, "kPa": 1e3, "MPa": 1e6, "N/mm2": 1e6, "GPa": 1e9}
+DENSITIES = {"kg/m3": 1.0, "g/cm3": 1e3, "t/m3": 1e3, "t/mm3": 1e12}
+MASSES = {"kg": 1.0, "g": 1e-3, "t": 1e3}
+STIFFNESSES = {"N/m": 1.0, "kN/m": 1e3, "N/mm": 1e3, "kN/mm": 1e6}
+
+Length = Literal["m", "cm", "mm", "um", "in", "ft"]
+
+
+class Table(BaseModel):
+    """Strict: unknown keys, wrong types, NaN and infinities are errors."""
+
+    model_config = ConfigDict(extra="forbid", strict=True, allow_inf_nan=False, frozen=True)
+
+
+class Units(Table):
+    length: Length = "m"
+    amplitude: Length | None = None
+    modulus: Literal["Pa", "kPa", "MPa", "N/mm2", "GPa"] = "Pa"
+    density: Literal["kg/m3", "g/cm3", "t/m3", "t/mm3"] = "kg/m3"
+    mass: Literal["kg", "g", "t"] = "kg"
+    stiffness: Literal["N/m", "kN/m", "N/mm", "kN/mm"] = "N/m"
+
+
+class MaterialTable(Table):
+    youngs_modulus: Positive
+    poisson: Annotated[float, Field(ge=0, lt=0.5)]
+    density: Positive
+
+
+class Place(Table):
+    """Which nodes: at most one of the four; the tables that need one say so."""
+
+    group: Name | None = None
+    nodes: Annotated[list[int], Field(min_length=1)] | None = None
+    box: Annotated[list[Vector], Field(min_length=2, max_length=2)] | None = None
+    near: Vector | None = None
+
+    @model_validator(mode="after")
+    def _one_place(self):
+        given = self.given_places()
+        if len(given) > 1:
+            raise ValueError(f"says {' and '.join(given)}, expected only one of group, nodes, box, near")
+        if not given and self._needs_place:
+            raise ValueError("says no place, expected one of group, nodes, box, near")
+        return self
+
+    @property
+    def _needs_place(self) -> bool:
+        return True
+
+    def given_places(self) -> list[str]:
+        return [name for name in ("group", "nodes", "box", "near") if getattr(self, name) is not None]
+
+
+class OtherPlace(Place):
+    """The second end of a spring."""
+
+
+class AssignTable(Table):
+    target: Name = "*"
+    material: Name
+    thickness: Positive | None = None
+    formulation: str = ""
+
+
+class SupportTable(Place):
+    name: Name | None = None
+    held: Annotated[list[Held], Field(min_length=1)] | None = None
+
+
+class SpringTable(Place):
+    name: Name | None = None
+    to: OtherPlace | None = None
+    stiffness: Annotated[list[NotNegative], Field(min_length=3, max_length=6)] | None = None
+    axis: Vector | None = None
+    axial: Positive | None = None
+
+    @model_validator(mode="after")
+    def _stiffness(self):
+        if (self.axis is None) != (self.axial is None):
+            raise ValueError("says only one of axis and axial, expected both together")
+        if (self.stiffness is None) == (self.axis is None):
+            raise ValueError("expected either stiffness = [kx, ky, kz] or axis = [x, y, z] with axial = k")
+        if self.stiffness is not None and len(self.stiffness) not in (3, 6):
+            raise ValueError("stiffness has 4 or 5 numbers, expected 3 (x y z) or 6 (x y z and turning about x y z)")
+        return self
+
+
+class MassTable(Place):
+    name: Name | None = None
+    mass: Positive
+    position: Vector | None = None
+    inertia: list[float] | list[Vector] | None = None
+
+
+class PointTable(Place):
+    name: Name
+    direction: Vector | str
+    position: Vector | None = None
+    effect: str = ""
+    direction_word: str = ""
+
+
+class DesignTable(Table):
+    name: Name
+    mesh: Name
+    length_unit: Length | Positive = "m"
+    modes: Name | None = None
+    solve: ModeNumber | None = None
+    assign: list[AssignTable] = []
+    supports: list[SupportTable] = []
+    springs: list[SpringTable] = []
+    masses: list[MassTable] = []
+    points: list[PointTable] = []
+    mode_names: dict[str, Name] = {}
+    note: str = ""
+
+    @model_validator(mode="after")
+    def _one_origin(self):
+        if self.modes is not None and self.solve is not None:
+            raise ValueError("says both modes and solve, expected one: a file of modes, or a number of modes to compute")
+        if self.modes is None and not self.assign:
+            raise ValueError(
+                'says neither modes nor assign, expected modes = "FILE", or '
+                'assign = [{target = "*", material = "NAME"}] so that modes can be computed'
+            )
+        return self
+
+
+class AmplitudeTable(Place):
+    design: Name
+    mode: ModeNumber
+    value: Positive
+    point: Name | None = None
+    direction: Vector | str | None = None
+    statistic: Literal["peak", "rms", "3 sigma"] = "peak"
+    relative: bool = False
+    condition: str = ""
+    place: str = ""
+
+    @property
+    def _needs_place(self) -> bool:
+        return False
+
+    @model_validator(mode="after")
+    def _where(self):
+        if (self.point is None) == (not self.given_places()):
+            raise ValueError("expected either point = \"NAME\" or a place of its own: one of group, nodes, box, near")
+        if self.point is None and self.direction is None:
+            raise ValueError("says no direction, expected one, since no functional point gives it")
+        return self
+
+
+class ModeReference(Table):
+    design: Name
+    mode: ModeNumber
+
+
+class PairTable(Table):
+    first: ModeReference
+    second: ModeReference
+
+
+class DossierTable(Table):
+    title: Name
+    condition: str = ""
+    units: Units = Units()
+    materials: dict[str, MaterialTable] = {}
+    designs: Annotated[list[DesignTable], Field(min_length=1)]
+    points: list[PointTable] = []
+    amplitudes: list[AmplitudeTable] = []
+    pairs: list[PairTable] = []

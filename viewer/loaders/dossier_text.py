@@ -1,0 +1,107 @@
+"""A ready dossier for a mesh that has none: what was found, and marked places for what only the user knows."""
+
+from __future__ import annotations
+
+import os
+from collections.abc import Mapping
+from pathlib import Path
+
+import numpy as np
+
+from viewer.cells import KINDS
+from viewer.model.arrays import Array
+from viewer.model.mesh import Mesh
+
+_SHOWN = 20
+
+
+def bare_dossier(mesh: Mesh, mesh_path: str | os.PathLike[str]) -> str:
+    """Text of a ``dossier.toml`` to be saved beside the mesh file.
+
+    Found facts stand in comments; the material, thickness and supports are marked TO FILL IN. As printed, with the
+    material's numbers filled in, it reads; nothing physical is invented.
+    """
+    name = Path(mesh_path).name
+    size = np.ptp(mesh.points, axis=0)
+    counts: dict[str, int] = {}
+    for block in mesh.blocks:
+        counts[block.kind] = counts.get(block.kind, 0) + len(block)
+    shells = any(KINDS[kind].dim == 2 for kind in counts)
+    kinds = ", ".join(f"{number} {kind}" for kind, number in counts.items())
+    assign = '# assign = [{target = "*", material = "material", thickness = }]' if shells else (
+        'assign = [{target = "*", material = "material"}]')
+    node_group = next(iter([*mesh.node_groups, *mesh.cell_groups]), "")
+    held = f'group = {_quoted(node_group)}' if node_group else _lowest_nodes(mesh)
+    middle = ", ".join(f"{x:.6g}" for x in mesh.points.mean(axis=0))
+    lines = [
+        f"# Dossier for {_quoted(name)}. Lines marked TO FILL IN need your numbers; the rest may stay.",
+        f"# Found: {mesh.n_nodes} nodes; {kinds}; {size[0]:.4g} × {size[1]:.4g} × {size[2]:.4g} m as read.",
+        *_group_lines("node groups", mesh.node_groups),
+        *_group_lines("cell groups", mesh.cell_groups),
+        "",
+        f"title = {_quoted(Path(name).stem)}",
+        'condition = ""                 # words for the pictures: "clamped root, camera 1.2 kg"',
+        "",
+        "[units]                        # of every number in this file",
+        'length = "m"',
+        'modulus = "GPa"',
+        'density = "kg/m3"',
+        "",
+        "[materials.material]           # TO FILL IN: remove the # and put your material's values",
+        "# youngs_modulus = ",
+        "# poisson = ",
+        "# density = ",
+        "",
+        "[[designs]]",
+        'name = "baseline"',
+        f"mesh = {_quoted(name)}",
+        'length_unit = "m"              # TO FILL IN: the unit of the mesh file, "mm", "m", "in"',
+        "solve = 6                      # or, for modes that you have: modes = \"FILE\"",
+        "# TO FILL IN" + (": the sheet thickness, and one entry per group where it differs" if shells else
+                          ": one entry per group where the material differs"),
+        assign,
+        "# TO FILL IN where it is held; a body without supports is free and has six rigid-body modes first",
+        f'# supports = [{{name = "root", {held}}}]',
+        f'# masses = [{{name = "camera", {held}, mass = 1.2}}]',
+        "",
+        "# A point whose motion matters, and the direction that hurts:",
+        "# [[points]]",
+        '# name = "camera lens"',
+        f"# near = [{middle}]",
+        '# direction = "+y"',
+        '# effect = "image blur"',
+        "",
+        "# A measured motion gives a mode its real size:",
+        "# [[amplitudes]]",
+        '# design = "baseline"',
+        "# mode = 1",
+        '# point = "camera lens"',
+        "# value = 0.0002",
+        '# condition = "belt drive at 12 Hz"',
+        "",
+    ]
+    return "\n".join(lines)
+
+
+def _group_lines(word: str, groups: Mapping[str, Array]) -> list[str]:
+    if not groups:
+        return [f"# Found no {word}."]
+    shown = [f"{_quoted(name)} ({len(rows)})" for name, rows in list(groups.items())[:_SHOWN]]
+    more = f" and {len(groups) - _SHOWN} more" if len(groups) > _SHOWN else ""
+    return [f"# Found {word}: {', '.join(shown)}{more}"]
+
+
+def _lowest_nodes(mesh: Mesh) -> str:
+    """A box around the lowest end of the longest side, as an example of a place."""
+    low, high = mesh.points.min(axis=0), mesh.points.max(axis=0)
+    axis = int(np.argmax(high - low))
+    high = high.copy()
+    high[axis] = low[axis]
+    corner = lambda p: "[" + ", ".join(f"{x:.6g}" for x in p) + "]"  # noqa: E731
+    return f"box = [{corner(low)}, {corner(high)}]"
+
+
+def _quoted(text: str) -> str:
+    """A TOML basic string."""
+    escaped = text.replace("\\", "\\\\").replace('"', '\\"')
+    return '"' + "".join(c if c.isprintable() else f"\\u{ord(c):04x}" for c in escaped) + '"'
