@@ -92,8 +92,8 @@ class RigidPatch:
         whole[:, :, :3] = from_translations.reshape(6, count, 3)
         blind = np.eye(3) - self._seen_axes @ self._seen_axes.T
         whole[3:, :, 3:] = blind[:, None, :] / count
-        whole = whole.reshape(6, 6 * count)
-        return frozen(self._about_position(whole[:3], whole[3:]))
+        flat = whole.reshape(6, 6 * count)
+        return frozen(self._about_position(flat[:3], flat[3:]))
 
     def motion(self, translations: ArrayLike, rotations: ArrayLike | None = None) -> Array:
         """(…, 6) rigid motion about ``position`` from nodal translations (…, k, 3), m, real or complex.

@@ -1,0 +1,327 @@
+"""Degrees of freedom, element groups, and the stiffness and mass matrices.
+
+Degrees of freedom come in triples: the translations of a node, then its rotations where a shell or beam needs
+them. Every element matrix is therefore made of 3 × 3 blocks, the sparsity pattern is that of the triples, and the
+place of a block's row in the data of the CSR matrix follows from the pattern alone: stiffness and mass share it.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+import scipy.sparse as sp
+
+from viewer.cells import inverted, measures
+from viewer.cells.kinds import KINDS
+from viewer.errors import ModelError
+from viewer.jobs import SILENT, Progress
+from viewer.mechanics.constraints import (
+    Attachment,
+    held_dofs,
+    mass_attachment,
+    some_ids,
+    spring_attachment,
+    spring_nodes,
+    turns,
+)
+from viewer.mechanics.formulations import FORMULATIONS, Formulation, formulation_for
+from viewer.mechanics.materials import check
+from viewer.mechanics.pattern import Pattern
+from viewer.model.arrays import Array, frozen
+from viewer.model.design import DIRECTIONS, Design, Property
+from viewer.model.mesh import Mesh
+
+_CHUNK = 2**21      # entries of element matrices at a time, 16 MB: kernels stay in reach of the cache
+
+
+@dataclass(frozen=True, eq=False)
+class ElementGroup:
+    """Cells of one block that share formulation and property.
+
+    cells (b,) cell rows; nodes (b, n) node rows; dofs (b, nd) degrees of freedom in the order of the
+    formulation's matrices.
+    """
+
+    formulation: Formulation
+    prop: Property
+    cells: Array
+    nodes: Array
+    dofs: Array
+
+    @property
+    def kind(self) -> str:
+        return self.formulation.kind
+
+    def __len__(self) -> int:
+        return len(self.cells)
+
+    def chunks(self, limit: int = _CHUNK) -> Iterator[slice]:
+        """Slices of rows whose element matrices have at most ``limit`` entries."""
+        size = max(1, limit // self.dofs.shape[1] ** 2)
+        for start in range(0, len(self), size):
+            yield slice(start, min(start + size, len(self)))
+
+    def volumes(self, points: Array) -> Array:
+        """(b,) m³; area times thickness for shells."""
+        size = measures(self.kind, points[self.nodes])
+        return size if KINDS[self.kind].dim == 3 else size * (self.prop.thickness or 0.0)
+
+    def stiffness(self, points: Array, part: slice) -> Array:
+        """(c, nd, nd) of the cells in ``part``."""
+        return self.formulation.stiffness(points[self.nodes[part]], self.prop)
+
+    def mass(self, points: Array, part: slice) -> Array:
+        """(c, n, n) when the formulation's mass is scalar, else (c, nd, nd)."""
+        return self.formulation.mass(points[self.nodes[part]], self.prop)
+
+
+@dataclass(frozen=True, eq=False)
+class Layout:
+    """A design ready for matrices.
+
+    dof       (n_nodes, 6) number of ux uy uz rx ry rz, −1 where the node has none
+    held      (n_dof,) True where a support holds
+    blocks    element groups
+    springs, masses   one attachment per entry of the design's physics, in its order
+    cautions  what a reader of the results must know
+    """
+
+    design: Design
+    dof: Array
+    n_dof: int
+    held: Array
+    blocks: tuple[ElementGroup, ...]
+    springs: tuple[Attachment, ...]
+    masses: tuple[Attachment, ...]
+    cautions: tuple[str, ...]
+
+    @property
+    def points(self) -> Array:
+        return self.design.mesh.points
+
+    @property
+    def has_rotations(self) -> bool:
+        return bool((self.dof[:, 3:] >= 0).any())
+
+    def gather(self, moved: Array, turned: Array | None = None) -> Array:
+        """(…, n_dof) from nodal translations and rotations (…, n_nodes, 3); rotations None: zero."""
+        moved = np.asarray(moved)
+        out = np.zeros((*moved.shape[:-2], self.n_dof), np.result_type(moved, float))
+        for values, numbers in ((moved, self.dof[:, :3]), (turned, self.dof[:, 3:])):
+            if values is not None:
+                there = numbers >= 0
+                out[..., numbers[there]] = np.asarray(values)[..., there]
+        return out
+
+    def spread(self, vectors: Array) -> tuple[Array, Array | None]:
+        """Nodal translations and rotations (…, n_nodes, 3) of the vectors (…, n_dof); zero where a node has no
+        such degree of freedom, rotations None when no node has any."""
+        padded = np.concatenate([vectors, np.zeros((*vectors.shape[:-1], 1), vectors.dtype)], axis=-1)
+        turned = padded[..., self.dof[:, 3:]] if self.has_rotations else None
+        return padded[..., self.dof[:, :3]], turned
+
+
+@dataclass(frozen=True, eq=False)
+class System(Layout):
+    """A layout with its matrices over all degrees of freedom, held ones too: K N/m and M kg (CSR, symmetric)."""
+
+    K: sp.csr_array
+    M: sp.csr_array
+
+
+def lay_out(design: Design, progress: Progress = SILENT) -> Layout:
+    """Number the degrees of freedom and resolve groups, springs, masses and supports.
+
+    Raises ``ModelError`` that names the group or cells and what to put into the dossier.
+    """
+    progress.tick("numbering")
+    mesh, physics = design.mesh, design.physics
+    parts, cautions = _element_parts(design)
+    has = np.zeros((mesh.n_nodes, 2), bool)  # translations, rotations
+    for formulation, _, _, nodes in parts:
+        has[nodes, 0] = True
+        if formulation.rotations:
+            has[nodes, 1] = True
+    cautions += _mixed_caution(parts, has)
+    for spring in physics.springs:
+        for rows in spring_nodes(spring, mesh):
+            if rows is not None:
+                lone = rows[~has[rows, 0]]
+                has[lone, 0] = True
+                has[lone, 1] = turns(spring)
+    number = np.where(has.ravel(), np.cumsum(has.ravel()) - 1, -1).reshape(-1, 2)
+    dof = np.where(number[:, :, None] >= 0, 3 * number[:, :, None] + np.arange(3), -1).reshape(-1, 6)
+    n_dof = 3 * int(has.sum())
+    if n_dof == 0:
+        raise ModelError(
+            f"design '{design.name}' has no cell with a material and no spring", file=mesh.source or None,
+            do="assign a material to the cells, for instance to '*'",
+        )
+    blocks = tuple(
+        ElementGroup(formulation, prop, frozen(cells), frozen(nodes), frozen(
+            dof[nodes][:, :, : 6 if formulation.rotations else 3].reshape(len(nodes), -1)))
+        for formulation, prop, cells, nodes in parts
+    )
+    for group in blocks:
+        progress.tick("checking cells")
+        _check_shape(group, mesh)
+    springs, masses = [], []
+    for spring in physics.springs:
+        attachment, caution = spring_attachment(spring, design, dof)
+        springs.append(attachment)
+        cautions += [caution] if caution else []
+    for mass in physics.masses:
+        attachment, caution = mass_attachment(mass, design, dof)
+        masses.append(attachment)
+        cautions += [caution] if caution else []
+    held = held_dofs(physics.supports, design, dof, n_dof)
+    return Layout(
+        design, frozen(dof), n_dof, frozen(held), blocks, tuple(springs), tuple(masses),
+        tuple(dict.fromkeys(cautions)),
+    )
+
+
+def assemble(design: Design, progress: Progress = SILENT) -> System:
+    """Stiffness and mass of the design, springs and lumped masses included.
+
+    Raises ``ModelError`` when the design lacks something or a free degree of freedom has neither stiffness nor
+    mass. Memory: the two matrices and about half a gigabyte.
+    """
+    layout = lay_out(design, progress)
+    pattern = Pattern(layout)
+    stiffness = pattern.matrix(layout, "stiffness", progress)
+    mass = pattern.matrix(layout, "mass", progress)
+    stiffness = _with_attachments(stiffness, layout.springs)
+    mass = _with_attachments(mass, layout.masses)
+    _check_attached(layout, stiffness, mass)
+    fields = {name: getattr(layout, name) for name in Layout.__dataclass_fields__}
+    return System(**fields, K=stiffness, M=mass)
+
+
+def _with_attachments(matrix: sp.csr_array, attachments: tuple[Attachment, ...]) -> sp.csr_array:
+    if not attachments:
+        return matrix
+    pieces = [(item.dofs, item.matrix()) for item in attachments]
+    rows = np.concatenate([dofs[piece.row] for dofs, piece in pieces])
+    columns = np.concatenate([dofs[piece.col] for dofs, piece in pieces])
+    values = np.concatenate([piece.data for _, piece in pieces])
+    total = sp.csr_array(matrix + sp.coo_array((values, (rows, columns)), shape=matrix.shape).tocsr())
+    total.sort_indices()
+    return total
+
+
+Part = tuple[Formulation, Property, Array, Array]
+
+
+def _element_parts(design: Design) -> tuple[list[Part], list[str]]:
+    """(formulation, property, cell rows, node rows) of every group that carries stiffness, and cautions.
+
+    Cells without material, thickness or formulation are left out, with a caution, when every one of their nodes
+    belongs to a cell that has them: meshes bring such edges and faces along as names. Otherwise they are an error.
+    """
+    mesh = design.mesh
+    properties, index = design.properties
+    parts: list[Part] = []
+    idle: list[tuple[str, Property | None, Array, Array]] = []
+    for block, start in zip(mesh.blocks, mesh.block_starts[:-1], strict=True):
+        chosen = index[start : start + len(block)]
+        for which in np.unique(chosen):
+            rows = np.nonzero(chosen == which)[0]
+            cells, nodes = start + rows, block.nodes[rows]
+            prop = properties[which] if which >= 0 else None
+            sheet = KINDS[block.kind].dim == 2
+            if prop is None or block.kind not in FORMULATIONS or (sheet and prop.thickness is None):
+                idle.append((block.kind, prop, cells, nodes))
+            else:
+                _check_property(prop, block.kind, mesh, cells)
+                parts.append((formulation_for(block.kind, prop.formulation), prop, cells, nodes))
+    carried = np.zeros(mesh.n_nodes, bool)
+    for _, _, _, nodes in parts:
+        carried[nodes] = True
+    cautions = [f"{f.kind}: {f.caution}" for f, _, _, _ in parts if f.caution]
+    for kind, prop, cells, nodes in idle:
+        if KINDS[kind].dim == 0:
+            continue
+        loose = ~carried[nodes].all(axis=1)
+        if loose.any() or KINDS[kind].dim == 3:
+            raise _idle_error(design, kind, prop, cells if not loose.any() else cells[loose])
+        cautions.append(f"{name_cells(mesh, kind, cells)} carry no stiffness: they are taken as names of places")
+    return parts, cautions
+
+
+def name_cells(mesh: Mesh, kind: str, cells: Array) -> str:
+    """"12 cells tri3 (ids 4, 5 … in group 'web')" for messages."""
+    groups = [name for name, rows in mesh.cell_groups.items() if np.isin(cells, rows).any()]
+    inside = f" in group {', '.join(repr(name) for name in groups[:3])}" if groups else ""
+    return f"{len(cells)} cells {kind} (ids {some_ids(mesh.cell_ids[cells])}{inside})"
+
+
+def _idle_error(design: Design, kind: str, prop: Property | None, cells: Array) -> ModelError:
+    mesh = design.mesh
+    what = f"design '{design.name}': {name_cells(mesh, kind, cells)}"
+    parts: dict[str, Any] = {"file": mesh.source or None}
+    if kind not in FORMULATIONS:
+        return ModelError(
+            f"{what} have no element formulation", expected=f"kinds: {', '.join(sorted(FORMULATIONS))}",
+            do="mesh this region with one of these kinds, or leave the cells out of the mesh", **parts,
+        )
+    if prop is None:
+        return ModelError(
+            f"{what} have no material",
+            do="add an assignment whose target is their group, their kind or '*'", **parts,
+        )
+    return ModelError(
+        f"{what} are shells without thickness", do="give 'thickness' in their assignment", **parts,
+    )
+
+
+def _check_property(prop: Property, kind: str, mesh: Mesh, cells: Array) -> None:
+    try:
+        check(prop.material)
+    except ModelError as error:
+        raise error.at(file=mesh.source or None, place=name_cells(mesh, kind, cells)) from None
+    if KINDS[kind].dim == 2 and not 0.0 < (prop.thickness or 0.0) < np.inf:
+        raise ModelError(
+            f"{name_cells(mesh, kind, cells)} have an impossible thickness", found=str(prop.thickness),
+            expected="above 0 m", do="give 'thickness' in their assignment",
+        )
+
+
+def _check_shape(group: ElementGroup, mesh: Mesh) -> None:
+    bad = inverted(group.kind, mesh.points[group.nodes])
+    if len(bad):
+        raise ModelError(
+            f"{name_cells(mesh, group.kind, group.cells[bad])} have a Jacobian that is zero or negative",
+            file=mesh.source or None, expected="cells that are not inside out, folded or flat",
+            do="repair the mesh there; if every cell is listed, its node order is that of another convention",
+        )
+
+
+def _mixed_caution(parts: list[Part], has: Array) -> list[str]:
+    solid = np.zeros(len(has), bool)
+    for formulation, _, _, nodes in parts:
+        if not formulation.rotations:
+            solid[nodes] = True
+    shared = int((solid & has[:, 1]).sum())
+    if not shared:
+        return []
+    return [
+        f"shells meet solids at {shared} nodes: solids have no rotations, so that the joint can turn like a hinge "
+        "unless the shell lies on the solid's face"
+    ]
+
+
+def _check_attached(layout: Layout, stiffness: sp.csr_array, mass: sp.csr_array) -> None:
+    """A free direction without stiffness and mass would make the eigen-problem meaningless."""
+    idle = (stiffness.diagonal() == 0) & (mass.diagonal() == 0) & ~layout.held
+    if not idle.any():
+        return
+    node, direction = np.nonzero(np.isin(layout.dof, np.nonzero(idle)[0]))
+    raise ModelError(
+        f"design '{layout.design.name}': {int(idle.sum())} free directions have neither stiffness nor mass",
+        found=f"{DIRECTIONS[direction[0]]} of node {layout.design.mesh.node_ids[node[0]]}",
+        do="hold them in a support, or attach the nodes to cells, springs or masses",
+    )
