@@ -21,7 +21,7 @@ def mac(a: Array, b: Array) -> Array:
     cross = np.abs(a.conj() @ b.T) ** 2
     aa, bb = (np.abs(a) ** 2).sum(axis=1), (np.abs(b) ** 2).sum(axis=1)
     size = np.outer(aa, bb)
-    return np.divide(cross, size, out=np.zeros_like(cross), where=size > 0)
+    return np.divide(cross, size, out=np.zeros(cross.shape), where=size > 0)
 
 
 def modal_scale_factor(a: Array, b: Array) -> complex:

@@ -10,10 +10,10 @@ from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
+from viewer.mechanics.patch import RigidPatch
 
 from viewer.cells import measures
 from viewer.errors import RefusedError
-from viewer.mechanics.patch import RigidPatch
 from viewer.mechanics.turning import cell_rotations
 from viewer.model.arrays import Array
 from viewer.model.cycle import cycle_peaks, steadiest_turn
@@ -77,8 +77,8 @@ class Scale:
             )
         base = "relative to the base" if self.relative else "absolute"
         return (
-            f"Mode {self.mode} really moves {self.largest_real:.3g} m ({self.statistic}, {base}) at {self.largest_place}, "
-            f"{self.largest_word}; it is drawn {self.magnification:.3g} times larger."
+            f"Mode {self.mode} really moves {self.largest_real:.3g} m ({self.statistic}, {base}) at "
+            f"{self.largest_place}, {self.largest_word}; it is drawn {self.magnification:.3g} times larger."
         )
 
     def to_dict(self) -> dict[str, object]:
@@ -146,7 +146,7 @@ def scale_mode(
         stated = _stated_motion(design, shape, amplitude, carried)
         if abs(stated) < LEAST_MOTION * peak.size:
             raise RefusedError(
-                f"the stated point of mode {mode} of '{design.name}' hardly moves, so its value says little about the mode",
+                f"the stated point of mode {mode} of '{design.name}' hardly moves, so it says little about the mode",
                 found=f"{100 * abs(stated) / peak.size:.2g} % of the mode's largest motion",
                 expected=f"at least {100 * LEAST_MOTION:.0f} %",
                 do="state the amplitude at a point that takes part in this mode, along the way it moves",
@@ -156,7 +156,7 @@ def scale_mode(
     elif true_scale:
         raise RefusedError(
             f"mode {mode} of '{design.name}' cannot be drawn at true scale: a mode shape has no size of its own",
-            do="state a measured amplitude for it in the dossier ([[amplitudes]]: design, mode, point, direction, value)",
+            do="state a measured amplitude in the dossier ([[amplitudes]]: design, mode, point, direction, value)",
         )
     if true_scale:
         factor, limited = float(real_per_shape or 0.0), "true scale"
@@ -283,7 +283,8 @@ def _stated_motion(
                 return complex(point.motion(shape)[:3] @ amplitude.direction)
         raise RefusedError(
             f"the stated amplitude of mode {amplitude.mode} names the point '{amplitude.point}', "
-            f"which '{design.name}' does not have", expected=", ".join(c.name for c in carried) or "no point is declared",
+            f"which '{design.name}' does not have",
+            expected=", ".join(c.name for c in carried) or "no point is declared",
         )
     if amplitude.where is None:
         raise RefusedError(f"the stated amplitude of mode {amplitude.mode} names no place", do="give point or where")

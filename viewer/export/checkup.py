@@ -1,0 +1,113 @@
+"""``check``: does a dossier hold together; or a ready dossier for a bare mesh."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+from viewer.errors import HingelightError
+from viewer.jobs import SILENT, Progress
+from viewer.loaders import bare_dossier, read_mesh_report, read_modes
+from viewer.mechanics.assembly import assemble
+from viewer.mechanics.energy import energies
+from viewer.model.mesh import Mesh
+from viewer.workspace import OpenDossier
+
+
+@dataclass(frozen=True)
+class Checkup:
+    """What was found: statements, cautions, errors; ``draft`` is a ready dossier for a bare mesh."""
+
+    statements: tuple[str, ...]
+    cautions: tuple[str, ...] = ()
+    errors: tuple[str, ...] = ()
+    draft: str = ""
+
+    @property
+    def sound(self) -> bool:
+        return not self.errors
+
+    @property
+    def text(self) -> str:
+        if self.draft:   # a dossier is printed so that it can be saved as it stands
+            return "\n".join([*(f"# {line}" for line in (*self.statements, *self.cautions)), self.draft])
+        lines = [*self.statements, *(f"caution: {c}" for c in self.cautions), *(f"error: {e}" for e in self.errors)]
+        lines.append("the dossier is sound" if self.sound else f"{len(self.errors)} error(s)")
+        return "\n".join(lines)
+
+    def to_dict(self) -> dict[str, Any]:
+        return {
+            "sound": self.sound,
+            "statements": list(self.statements),
+            "cautions": list(self.cautions),
+            "errors": list(self.errors),
+            "draft_dossier": self.draft or None,
+        }
+
+
+def check_dossier(opened: OpenDossier, progress: Progress = SILENT) -> Checkup:
+    """Read every mesh and mode set, assemble every design that has physics, and say what was found.
+
+    An error in one design does not hide those of the next.
+    """
+    statements, cautions, errors = [], list(opened.warnings), []
+    for name in opened.names:
+        progress.tick(f"checking {name}")
+        try:
+            found, doubts = _check_design(opened, name, progress)
+            statements += found
+            cautions += doubts
+        except HingelightError as error:
+            errors.append(f"design '{name}': {error}")
+    return Checkup(tuple(statements), tuple(dict.fromkeys(cautions)), tuple(errors))
+
+
+def _check_design(opened: OpenDossier, name: str, progress: Progress) -> tuple[list[str], list[str]]:
+    design = opened.design(name, progress)
+    plan = opened.dossier.plan(name)
+    report = opened.workspace.report(opened.dossier, name)
+    statements = [f"{name}: {mesh_words(design.mesh)}"]
+    cautions = [f"{name}: {note}" for note in report.notes]
+    for carrier in design.points:
+        carrier.where.rows(design.mesh, f"point '{carrier.name}'")
+    for amplitude in opened.dossier.amplitudes:
+        if amplitude.design == name and amplitude.where is not None:
+            amplitude.where.rows(design.mesh, f"stated amplitude of mode {amplitude.mode}")
+    if design.physics.assignments:
+        system = assemble(design, progress)
+        free = int((~system.held).sum())
+        mass = system.total_mass
+        statements.append(f"{name}: {system.n_dof} degrees of freedom, {free} free; mass {mass:.4g} kg")
+        cautions += [f"{name}: {caution}" for caution in system.cautions]
+    if plan.modes_file is not None:
+        modes = opened.modes(name, None, progress)
+        span = f"{modes.freq_hz.min():.4g} to {modes.freq_hz.max():.4g} Hz" if modes.count else "none"
+        statements.append(f"{name}: {modes.count} modes from {plan.modes_file.name}, {span}")
+        if design.physics.assignments:
+            found = energies(design, modes, progress=progress)
+            statements += [f"{name}: {found.sentence(i)}" for i in range(modes.count)]
+    return statements, cautions
+
+
+def check_mesh(path: Path, modes_path: Path | None, progress: Progress = SILENT) -> Checkup:
+    """Read a bare mesh (and its mode set) and write a dossier to start from."""
+    mesh, report = read_mesh_report(path, progress=progress)
+    statements = [mesh_words(mesh)]
+    if modes_path is not None:
+        modes = read_modes(modes_path, mesh, progress=progress)
+        statements.append(f"{modes.count} modes in {modes_path.name}")
+    return Checkup(tuple(statements), tuple(report.notes), (), bare_dossier(mesh, path, modes_path))
+
+
+def mesh_words(mesh: Mesh) -> str:
+    """ "1204 nodes, 1150 quad4, size 0.9 × 0.1 × 0.08 m, 6 groups" """
+    counts: dict[str, int] = {}
+    for block in mesh.blocks:
+        counts[block.kind] = counts.get(block.kind, 0) + len(block)
+    kinds = ", ".join(f"{n} {kind}" for kind, n in counts.items()) or "no cells"
+    size = (mesh.points.max(axis=0) - mesh.points.min(axis=0)) if mesh.n_nodes else (0, 0, 0)
+    groups = len(mesh.node_groups) + len(mesh.cell_groups)
+    return "{} nodes, {}, size {} m, {} groups".format(
+        mesh.n_nodes, kinds, " × ".join(f"{s:.4g}" for s in size), groups
+    )

@@ -1,0 +1,161 @@
+"""The rows of every table: one owner for which figures are shown, so that terminal, CSV, JSON and page agree."""
+
+from __future__ import annotations
+
+from typing import Any
+
+import numpy as np
+
+from viewer.errors import RefusedError
+from viewer.insight.correlate import common_support, mac
+from viewer.model.arrays import Array
+from viewer.model.cycle import cycle_peaks
+from viewer.model.design import FunctionalPoint
+from viewer.workspace import Study
+
+Row = dict[str, Any]
+_WHOLE = 0.95       # a group that holds more of the body than this says nothing about where
+
+
+def mode_rows(study: Study) -> list[Row]:
+    """One row a mode: frequency, energies and how far they are trusted, largest motion, size."""
+    return [_mode_row(study, index) for index in range(study.count)]
+
+
+def _mode_row(study: Study, index: int) -> Row:
+    found, modes = study.energies, study.modes
+    scale = study.scale(index)
+    row: Row = {
+        "design": study.design.name,
+        "mode": index + 1,
+        "name": study.name(index),
+        "frequency_hz": float(modes.freq_hz[index]),
+        "damping_ratio": None if modes.damping is None else float(modes.damping[index]),
+        "origin": modes.origin,
+        "largest_motion_at": scale.largest_place,
+        "largest_motion_direction": scale.largest_word,
+        "largest_real_m": scale.largest_real,
+        "size_statistic": scale.statistic if scale.largest_real is not None else None,
+        "magnification": scale.magnification,
+        "drawn_peak_percent_of_diagonal": scale.drawn_percent,
+        "drawn_limited_by": scale.limited_by,
+        "strain_energy_most_in": None,
+        "strain_energy_most_percent": None,
+        "kinetic_energy_most_in": None,
+        "kinetic_energy_most_percent": None,
+        "springs_strain_percent": None,
+        "masses_kinetic_percent": None,
+        "closure": None,
+        "residual_share": None,
+        "energies_trusted": None,
+    }
+    if found is not None:
+        for word, values in (("strain", found.strain[index]), ("kinetic", found.kinetic[index])):
+            name, share = _most(study, values, found.volumes)
+            row[f"{word}_energy_most_in"], row[f"{word}_energy_most_percent"] = name, share
+        row["springs_strain_percent"] = 100 * found.spring_share(index)
+        row["masses_kinetic_percent"] = 100 * found.mass_share(index)
+        row["closure"] = _number(found.closure[index])
+        row["residual_share"] = _number(found.residual[index])
+        row["energies_trusted"] = bool(found.trusted[index])
+    return row
+
+
+def group_rows(study: Study) -> list[Row]:
+    """One row for each mode and cell group: its shares of strain energy, kinetic energy and volume, in percent of
+    what the cells hold (springs and lumped masses apart)."""
+    found = study.energies
+    if found is None:
+        return []
+    rows = []
+    for index in range(study.count):
+        for name, cells in study.design.mesh.cell_groups.items():
+            rows.append(
+                {
+                    "design": study.design.name,
+                    "mode": index + 1,
+                    "group": name,
+                    "strain_energy_percent": _percent(found.strain[index], cells),
+                    "kinetic_energy_percent": _percent(found.kinetic[index], cells),
+                    "volume_percent": _percent(found.volumes, cells),
+                }
+            )
+    return rows
+
+
+def point_rows(study: Study) -> list[Row]:
+    """One row for each mode and functional point: its motion along the sensitive direction, against the mode's
+    largest motion and in metres where the mode's size is known."""
+    rows = []
+    for index in range(study.count):
+        shape = study.modes.shape(index)
+        scale = study.scale(index)
+        peak = float(cycle_peaks(shape[study.design.mesh.used_nodes]).max())
+        for carried in study.carried:
+            if not isinstance(carried.item, FunctionalPoint):
+                continue
+            along = float(abs(carried.motion(shape)[:3] @ carried.item.direction))
+            real = scale.real_per_shape
+            rows.append(
+                {
+                    "design": study.design.name,
+                    "mode": index + 1,
+                    "point": carried.name,
+                    "effect": carried.item.effect,
+                    "direction": carried.item.direction_word or _vector(carried.item.direction),
+                    "motion_percent_of_largest": 100 * along / peak,
+                    "real_motion_m": None if real is None else along * real,
+                    "size_statistic": None if real is None else scale.statistic,
+                }
+            )
+    return rows
+
+
+def pair_row(first: Study, first_mode: int, second: Study, second_mode: int, paired_by: str) -> Row:
+    """What became of one mode: both frequencies, the change, and how alike the shapes are on the common support."""
+    one = float(first.modes.freq_hz[first_mode - 1])
+    two = float(second.modes.freq_hz[second_mode - 1])
+    return {
+        "first_design": first.design.name,
+        "first_mode": first_mode,
+        "first_name": first.name(first_mode - 1),
+        "second_design": second.design.name,
+        "second_mode": second_mode,
+        "second_name": second.name(second_mode - 1),
+        "first_hz": one,
+        "second_hz": two,
+        "change_percent": 100 * (two / one - 1) if one > 0 else None,
+        "mac_common_support": _mac(first, first_mode - 1, second, second_mode - 1),
+        "paired_by": paired_by,
+    }
+
+
+def _mac(first: Study, i: int, second: Study, j: int) -> float | None:
+    try:
+        mine, theirs = common_support(first.design.mesh, second.design.mesh)
+    except RefusedError:
+        return None
+    return float(mac(first.modes.shape(i)[mine].ravel(), second.modes.shape(j)[theirs].ravel())[0, 0])
+
+
+def _most(study: Study, values: Array, volumes: Array) -> tuple[str | None, float | None]:
+    """The group that holds most of ``values``, and its share in percent."""
+    best, share = None, 0.0
+    for name, cells in study.design.mesh.cell_groups.items():
+        held = _percent(values, cells)
+        if held is not None and held > share and volumes[cells].sum() < _WHOLE * volumes.sum():
+            best, share = name, held
+    return best, share if best else None
+
+
+def _percent(values: Array, cells: Array) -> float | None:
+    total = float(np.sum(values))
+    return 100 * float(np.sum(values[cells])) / total if total > 0 else None
+
+
+def _number(value: float) -> float | None:
+    return float(value) if np.isfinite(value) else None
+
+
+def _vector(direction: Array) -> str:
+    return "({})".format(", ".join(f"{c:.2g}" for c in direction))

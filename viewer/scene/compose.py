@@ -1,0 +1,199 @@
+"""From a study to a picture: what is drawn, at which size, in which colours, and what its scale note says."""
+
+from __future__ import annotations
+
+from typing import Any
+
+import numpy as np
+
+from viewer.errors import InputError
+from viewer.insight.correlate import shared_turn
+from viewer.insight.scale import Scale, common_scale
+from viewer.model.design import LumpedMass
+from viewer.scene.figures import digits
+from viewer.scene.note_layout import scale_note
+from viewer.scene.palette import energy_top
+from viewer.scene.picture import Body, Magnified, MassMark, Picture, PointMark, SupportMark
+from viewer.workspace import Study
+
+# Height ÷ width, so that 960 wide gives multiples of 16 (video needs them).
+SINGLE, SIDE, OVERLAY = 720 / 960, 576 / 960, 640 / 960
+SPRINGS_WORTH_SAYING = 0.005     # share of the strain energy
+
+
+def single_picture(
+    study: Study,
+    mode: int,
+    *,
+    true_scale: bool = False,
+    peak_percent: float | None = None,
+    energy: bool = True,
+    width: int = 960,
+    **look: Any,
+) -> Picture:
+    """The picture of mode number ``mode`` (from 1). ``look``: theme, ghost, mesh_edges, view of ``Picture``.
+
+    ``RefusedError`` when true scale is asked for and no size is known; ``InputError`` for a mode that is not there.
+    """
+    index = _index(study, mode)
+    scale = study.scale(index, true_scale=true_scale, peak_percent=peak_percent)
+    body = _body(study, index, scale, scale.turn, energy)
+    note = scale_note(
+        mode,
+        study.name(index),
+        float(study.modes.freq_hz[index]),
+        scale,
+        [study.condition, *_energy_remarks(study, index, energy)],
+    )
+    return Picture(
+        bodies=(body,),
+        note=note,
+        magnification=scale.magnification,
+        energy_top=_top([study], [body]),
+        energy_caution=_caution([study], [index], [body]),
+        magnified=_magnified(scale) if true_scale else None,
+        width=width,
+        height=_height(width, SINGLE),
+        **look,
+    )
+
+
+def pair_picture(
+    first: Study,
+    first_mode: int,
+    second: Study,
+    second_mode: int,
+    *,
+    layout: str = "side",
+    true_scale: bool = False,
+    energy: bool = True,
+    width: int = 960,
+    paired_by: str = "",
+    **look: Any,
+) -> Picture:
+    """The picture of two modes of two designs, ``layout`` "side" or "overlay", on one colour scale.
+
+    ``paired_by`` says in the note who or what decided that these two correspond.
+    """
+    studies, modes = (first, second), (first_mode, second_mode)
+    indices = [_index(study, mode) for study, mode in zip(studies, modes, strict=True)]
+    found = [study.scale(i, true_scale=true_scale) for study, i in zip(studies, indices, strict=True)]
+    masses = [study.modal_mass(i) for study, i in zip(studies, indices, strict=True)]
+    turn = shared_turn(
+        first.design.mesh, first.modes.shape(indices[0]), second.design.mesh, second.modes.shape(indices[1])
+    )
+    scales = common_scale(found, masses, [1.0, turn])
+    energy = energy and layout == "side"        # an overlay shows form; two energy fields would hide one another
+    bodies = tuple(
+        _body(study, i, scale, scale.turn, energy) for study, i, scale in zip(studies, indices, scales, strict=True)
+    )
+    coloured = [body for body in bodies if body.density is not None]
+    remarks = [first.condition, second.condition, paired_by]
+    remarks += [
+        f"{study.design.name}: {remark}"
+        for study, i in zip(studies, indices, strict=True)
+        for remark in _energy_remarks(study, i, energy)
+    ]
+    note = scale_note(
+        modes,
+        first.name(indices[0]) or second.name(indices[1]),
+        None,
+        (scales[0], scales[1]),
+        remarks,
+        names=(first.design.name, second.design.name),
+        one_colour_scale=len(coloured) == 2,
+    )
+    return Picture(
+        bodies=bodies,
+        note=note,
+        layout=layout,
+        magnification=scales[0].magnification,
+        energy_top=_top(studies, bodies),
+        energy_words="strain energy density ÷ own mean",
+        energy_caution=_caution(studies, indices, bodies),
+        width=width,
+        height=_height(width, SIDE if layout == "side" else OVERLAY),
+        **look,
+    )
+
+
+def _index(study: Study, mode: int) -> int:
+    if not 1 <= mode <= study.count:
+        raise InputError(
+            f"design '{study.design.name}' has no mode {mode}", expected=f"1 to {study.count}",
+            do="choose another mode, or raise solve in the dossier",
+        )
+    return mode - 1
+
+
+def _body(study: Study, index: int, scale: Scale, turn: complex, energy: bool) -> Body:
+    design, shape = study.design, study.turned_shape(index, turn)
+    supports = tuple(
+        SupportMark(item.name, item.where.rows(design.mesh, f"support '{item.name}'"))
+        for item in design.physics.supports
+    )
+    masses, points = [], []
+    for carried in study.carried:
+        motion = carried.motion(shape)
+        if isinstance(carried.item, LumpedMass):
+            masses.append(MassMark(carried.name, carried.item.mass, carried.position, carried.rows, motion))
+        else:
+            point = carried.item
+            label = ": ".join(part for part in (point.effect or point.name, point.direction_word) if part)
+            points.append(PointMark(label, carried.position, point.direction, motion))
+    density = None
+    if energy and study.energies is not None and np.any(study.energies.strain[index] > 0):
+        density = study.energies.density(index)
+    return Body(
+        design.name,
+        design.mesh,
+        shape,
+        scale.factor,
+        float(study.modes.freq_hz[index]),
+        density,
+        supports,
+        tuple(masses),
+        tuple(points),
+    )
+
+
+def _top(studies: Any, bodies: Any) -> float | None:
+    coloured = [(s, b) for s, b in zip(studies, bodies, strict=True) if b.density is not None]
+    if not coloured:
+        return None
+    return energy_top([b.density for _, b in coloured], [s.energies.volumes for s, _ in coloured])
+
+
+def _caution(studies: Any, indices: Any, bodies: Any) -> str:
+    """One short line under the colour bar when a body's energies are not trusted."""
+    doubtful = [
+        study.design.name
+        for study, index, body in zip(studies, indices, bodies, strict=True)
+        if body.density is not None and not study.energies.trusted[index]
+    ]
+    if not doubtful:
+        return ""
+    return "energies not trusted" if len(bodies) == 1 else f"not trusted: {', '.join(doubtful)}"
+
+
+def _energy_remarks(study: Study, index: int, energy: bool) -> list[str]:
+    if not energy or study.energies is None:
+        return []
+    remarks = []
+    springs = study.energies.spring_share(index)
+    if springs >= SPRINGS_WORTH_SAYING:
+        remarks.append(f"springs hold {digits(100 * springs)} % of the strain energy")
+    if not study.energies.trusted[index]:
+        remarks.append(study.energies.doubt(index))
+    return remarks
+
+
+def _magnified(scale: Scale) -> Magnified:
+    motion = np.array(scale.largest_motion)
+    return Magnified(
+        scale.largest_place, np.array(scale.largest_at), motion / np.linalg.norm(motion), scale.largest_real or 0.0
+    )
+
+
+def _height(width: int, ratio: float) -> int:
+    return 16 * round(width * ratio / 16)

@@ -1,0 +1,83 @@
+"""The functions of ``import viewer``. Modes are counted from 1 here, as everywhere a user sees them."""
+
+from __future__ import annotations
+
+import os
+from collections.abc import Sequence
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+from viewer.errors import InputError
+from viewer.jobs import SILENT, Progress
+from viewer.loaders import read_mesh, read_modes
+from viewer.mechanics.energy import Energies
+from viewer.mechanics.energy import energies as form_energies
+from viewer.model.design import Design
+from viewer.model.dossier import StatedAmplitude
+from viewer.model.modes import ModeSet
+from viewer.scene.picture import Picture
+from viewer.workspace import OpenDossier, Workspace, study
+
+__all__ = ["animate", "energies", "open_dossier", "read_mesh", "read_modes", "solve", "still"]
+
+
+def open_dossier(path: str | os.PathLike[str], *, cache: bool = True) -> OpenDossier:
+    """Open ``dossier.toml`` (or its folder): ``dossier["baseline"]``, ``dossier.modes("baseline")``."""
+    return _workspace(cache).open(Path(path))
+
+
+def solve(design: Design, count: int = 6, *, cache: bool = True, progress: Progress = SILENT) -> ModeSet:
+    """The first ``count`` modes of ``design``, mass-normalised (m/√kg), from the cache when solved before."""
+    return _workspace(cache).solve(design, count, progress)
+
+
+def energies(design: Design, modes: ModeSet, progress: Progress = SILENT) -> Energies:
+    """Element strain and kinetic energies of every mode, with closure and trust."""
+    return form_energies(design, modes, progress=progress)
+
+
+@dataclass(frozen=True, eq=False)
+class Loop:
+    """A picture that can be saved: ``save("loop.gif")``, ``save("still.png")``."""
+
+    picture: Picture
+
+    def save(self, path: str | os.PathLike[str], *, phase: float = 0.0, progress: Progress = SILENT) -> Path:
+        """Write a loop (.gif) or a still at ``phase`` rad (.png); returns the path."""
+        from viewer.export import save_gif, save_png
+
+        target = Path(path)
+        if target.suffix.lower() == ".gif":
+            return save_gif(self.picture, target, progress)
+        if target.suffix.lower() == ".png":
+            return save_png(self.picture, target, phase, progress)
+        raise InputError(
+            "cannot tell what to draw", file=target, found=f"the ending '{target.suffix}'", expected=".gif or .png"
+        )
+
+
+def animate(
+    design: Design,
+    modes: ModeSet,
+    mode: int,
+    *,
+    amplitudes: Sequence[StatedAmplitude] = (),
+    condition: str = "",
+    **options: Any,
+) -> Loop:
+    """The loop of mode number ``mode``; ``options`` are those of ``viewer.scene.compose.single_picture``:
+    true_scale, peak_percent, energy, theme, width, ghost, mesh_edges, view."""
+    from viewer.scene.compose import single_picture
+
+    stated = {a.mode: a for a in amplitudes}
+    return Loop(single_picture(study(design, modes, stated, condition), mode, **options))
+
+
+def still(design: Design, modes: ModeSet, mode: int, path: str | os.PathLike[str], **options: Any) -> Path:
+    """Write a still of mode number ``mode`` at its extreme; options as in :func:`animate`."""
+    return animate(design, modes, mode, **options).save(path)
+
+
+def _workspace(cache: bool) -> Workspace:
+    return Workspace() if cache else Workspace(cache=None)
