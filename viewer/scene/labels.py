@@ -1,0 +1,313 @@
+"""Where labels stand: beside the body, off each other and off everything else on the sheet; the same every time.
+
+A label is placed once, from the rest position, clear of all that the body sweeps over in a cycle. It stands still;
+only the leader's far end follows the mark.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from viewer.cells import skin
+from viewer.model.arrays import Array
+from viewer.scene import marks
+from viewer.scene.figures import kilograms
+from viewer.scene.motion import displacement, is_standing, positions
+from viewer.scene.picture import Body, Picture
+from viewer.scene.primitives import Box, Frame, Line, Point, Primitive, Text
+from viewer.scene.tokens import THEMES
+from viewer.scene.typeface import text_width
+
+SIZE, LEADING = 15.0, 20.5       # label text, distance of its lines
+EDGE = 14.0                      # least distance to the frame's edge
+NEAR = 34.0                      # wished distance from the rim of the mark
+CELL = 6                         # px, grain of the map of what the body covers
+_STEP = 6                        # px, grain of the places tried
+_SHORT_LIST = 400               # places whose leaders are looked at
+_PAD = 5.0                       # free border of a label
+_LEADER = 1.3
+
+
+@dataclass(frozen=True, eq=False)
+class Anchor:
+    """The point of a mark that a label belongs to.
+
+    body   index of the body
+    at     (3,) m at rest; ``move`` its drawn displacement as an amplitude (3,), m
+    clear  px from there to the rim of the mark
+    """
+
+    body: int
+    at: Array
+    move: Array
+    clear: float
+
+    def seen(self, frame: Frame, phase: float) -> Point:
+        """Where it is in the picture at a phase."""
+        x, y = frame.project((self.at + displacement(self.move, 1.0, phase))[None], self.body)[0]
+        return float(x), float(y)
+
+    def rest(self, frame: Frame) -> Point:
+        x, y = frame.project(np.asarray(self.at, float)[None], self.body)[0]
+        return float(x), float(y)
+
+
+@dataclass(frozen=True, eq=False)
+class Label:
+    """Lines of (words, bold) in one colour that belong to an anchor."""
+
+    lines: tuple[tuple[str, bool], ...]
+    colour: str
+    anchor: Anchor
+
+    @property
+    def size(self) -> tuple[float, float]:
+        width = max(text_width(words, SIZE, bold) for words, bold in self.lines)
+        return width, SIZE + LEADING * (len(self.lines) - 1)
+
+
+@dataclass(frozen=True, eq=False)
+class Placed:
+    """A label with its place; ``start`` is the fixed end of its leader."""
+
+    label: Label
+    box: Box
+    start: Point
+
+    def texts(self) -> list[Primitive]:
+        """The label's lines, set to the side where its leader starts nearer to an edge: left."""
+        left, top = self.box[0], self.box[1]
+        return [
+            Text(left, top + 0.8 * SIZE + LEADING * k, words, self.label.colour, SIZE, bold)
+            for k, (words, bold) in enumerate(self.label.lines)
+        ]
+
+    def leader(self, frame: Frame, phase: float) -> Line | None:
+        """From the label to the rim of the mark at a phase; None when the mark is beside the label."""
+        return leader(self.start, self.label.anchor.seen(frame, phase), self.label.anchor.clear, self.label.colour)
+
+
+def leader(start: Point, end: Point, clear: float, colour: str, width: float = _LEADER) -> Line | None:
+    """A line from ``start`` toward ``end`` that stops ``clear`` px before it."""
+    away = np.subtract(end, start)
+    long = float(np.hypot(*away))
+    if long < clear + 6:
+        return None
+    x, y = np.asarray(start) + away * (1 - clear / long)
+    return Line((start, (float(x), float(y))), colour, width)
+
+
+def picture_labels(picture: Picture, frame: Frame) -> list[Label]:
+    """Functional points, then masses; of two compared bodies only the first, or in an overlay the one in front."""
+    tokens = THEMES[picture.theme]
+    index = 1 if picture.layout == "overlay" else 0
+    body = picture.bodies[index]
+    unit = max(b.mesh.diagonal for b in picture.bodies) / frame.metres_per_pixel
+    found = [
+        Label(
+            ((mark.label, False),), tokens.point,
+            Anchor(index, mark.position, body.factor * mark.motion[:3], (marks.RING + marks.RING_TUBE) * unit),
+        )
+        for mark in body.points
+    ]
+    heaviest = max((mark.mass for b in picture.bodies for mark in b.masses), default=0.0)
+    for mass in body.masses if picture.layout == "single" else ():
+        clear = marks.bead_radius(mass.mass, heaviest, unit)
+        anchor = Anchor(index, mass.position, body.factor * mass.motion[:3], clear)
+        found.append(Label(((mass.name, True), (kilograms(mass.mass), False)), tokens.ink, anchor))
+    return found
+
+
+# ---- what is taken
+
+
+@dataclass(frozen=True, eq=False)
+class Cover:
+    """How much of any box the bodies and marks sweep over, from running sums over a grid of ``CELL`` px."""
+
+    sums: Array
+
+    def cells(self, boxes: Array) -> Array:
+        """(n,) covered cells in boxes (n, 4) of left, top, right, bottom px."""
+        rows, columns = self.sums.shape
+        low = np.floor(boxes[:, :2] / CELL).astype(int)
+        high = np.ceil(boxes[:, 2:] / CELL).astype(int)
+        x0, x1 = (np.clip(v, 0, columns - 1) for v in (low[:, 0], high[:, 0]))
+        y0, y1 = (np.clip(v, 0, rows - 1) for v in (low[:, 1], high[:, 1]))
+        s = self.sums
+        return s[y1, x1] - s[y0, x1] - s[y1, x0] + s[y0, x0]
+
+    @property
+    def map(self) -> Array:
+        """(rows, columns) bool of covered cells."""
+        return np.diff(np.diff(self.sums, axis=0), axis=1) > 0
+
+
+def cover(picture: Picture, frame: Frame) -> Cover:
+    """Everything that bodies and marks sweep over in a cycle."""
+    rows, columns = int(np.ceil(frame.height / CELL)), int(np.ceil(frame.width / CELL))
+    grid = np.zeros((rows, columns), bool)
+    for index, (body, pieces) in enumerate(zip(picture.bodies, marks.mark_pieces(picture), strict=True)):
+        drawn = skin([(block.kind, block.nodes) for block in body.mesh.blocks])
+        for phase in cycle_phases(body):
+            at = frame.project(positions(body.mesh.points, body.shape, body.factor, phase), index)
+            _fill(grid, at, drawn.faces)
+            _fill(grid, at, drawn.edges[:, [0, 1, 1]])
+            for piece in pieces:
+                seen = frame.project(piece.at(phase), index)
+                _fill(grid, seen, piece.triangles)
+                _fill(grid, seen, piece.lines[:, [0, 1, 1]])
+    return Cover(np.pad(np.cumsum(np.cumsum(grid, axis=0), axis=1), ((1, 0), (1, 0))))
+
+
+def cycle_phases(body: Body) -> tuple[float, ...]:
+    """Rest and the extremes of a standing mode; four quarters of a travelling one."""
+    if is_standing(body.shape):
+        return 0.0, np.pi / 2, np.pi
+    return 0.0, np.pi / 2, np.pi, 3 * np.pi / 2
+
+
+def _fill(grid: Array, points: Array, triangles: Array) -> None:
+    """Mark the cells that triangles (t, 3) of points (n, 2) px lie on: each is cut into four until it is smaller
+    than a cell; corners stand for the rest."""
+    limit = np.array(grid.shape[::-1]) * CELL
+    a, b, c = (points[triangles[:, k]] for k in range(3))
+    for corner in (a, b, c):
+        _stamp(grid, corner)
+    for _ in range(10):
+        low, high = np.minimum(np.minimum(a, b), c), np.maximum(np.maximum(a, b), c)
+        split = ((high - low > CELL).any(axis=1)) & (high >= 0).all(axis=1) & (low < limit).all(axis=1)
+        if not split.any():
+            return
+        a, b, c = a[split], b[split], c[split]
+        ab, bc, ca = (a + b) / 2, (b + c) / 2, (c + a) / 2
+        for middle in (ab, bc, ca):
+            _stamp(grid, middle)
+        a, b, c = np.concatenate([a, ab, ca, ab]), np.concatenate([ab, b, bc, bc]), np.concatenate([ca, bc, c, ca])
+
+
+def _stamp(grid: Array, points: Array) -> None:
+    points = points[np.isfinite(points).all(axis=1)]
+    column, row = np.floor(points / CELL).astype(int).T
+    good = (row >= 0) & (row < grid.shape[0]) & (column >= 0) & (column < grid.shape[1])
+    grid[row[good], column[good]] = True
+
+
+# ---- choosing places
+
+
+@dataclass(frozen=True, eq=False)
+class Wish:
+    """A box of ``size`` px to be placed near ``target``.
+
+    hub    where in the box the leader starts, as shares of its size; None: the nearest point of its border
+    near   wished distance from the target; ``clear`` px of it are the mark itself
+    """
+
+    size: tuple[float, float]
+    target: Point
+    clear: float
+    near: float = NEAR
+    hub: Point | None = None
+
+
+def choose_place(wish: Wish, region: Box, covered: Cover, taken: Sequence[Box], leaders: Sequence[Line]) -> Box:
+    """The best box inside ``region``: off taken boxes before all, then off the body, then near its mark, below
+    rather than above, with a leader that crosses little. Ties go to the place further left, then further up."""
+    width, height = wish.size
+    xs = np.arange(region[0] + EDGE, region[2] - EDGE - width + 1e-6, _STEP)
+    ys = np.arange(region[1] + EDGE, region[3] - EDGE - height + 1e-6, _STEP)
+    if not len(xs) or not len(ys):
+        xs, ys = np.array([max(region[0], 0.0)]), np.array([max(region[1], 0.0)])
+    x, y = (v.ravel() for v in np.meshgrid(xs, ys, indexing="ij"))
+    boxes = np.stack([x, y, x + width, y + height], axis=1)
+    padded = boxes + np.array([-_PAD, -_PAD, _PAD, _PAD])
+    start = leader_start(boxes, wish.target, wish.hub)
+    away = np.hypot(start[:, 0] - wish.target[0], start[:, 1] - wish.target[1])
+    cost = np.abs(away - wish.clear - wish.near)
+    cost += 60.0 * (away < wish.clear + 8)
+    cost += 12.0 * covered.cells(padded)
+    cost += 10.0 * (y + height / 2 < wish.target[1])
+    for box in taken:
+        wide = np.minimum(padded[:, 2], box[2]) - np.maximum(padded[:, 0], box[0])
+        high = np.minimum(padded[:, 3], box[3]) - np.maximum(padded[:, 1], box[1])
+        cost += np.where((wide > 0) & (high > 0), 1e4 + wide * high, 0.0)
+    short = np.argsort(np.round(cost, 6), kind="stable")[:_SHORT_LIST]
+    cost, boxes, start = cost[short], boxes[short], start[short]
+    cost += _crossings(start, wish, covered, taken, leaders)
+    for line in leaders:
+        cost += 400.0 * _touches(padded[short], np.array(line.points))
+    best = int(np.argmin(np.round(cost, 6)))
+    left, top, right, foot = (float(v) for v in boxes[best])
+    return left, top, right, foot
+
+
+def leader_start(boxes: Array, target: Point, hub: Point | None = None) -> Array:
+    """(n, 2) where leaders leave boxes (n, 4): at the point nearest to the target, a little outside the box and not
+    at its very corner."""
+    low, high = boxes[:, :2], boxes[:, 2:]
+    if hub is not None:
+        return low + np.asarray(hub) * (high - low)
+    inset = np.minimum(10.0, (high - low) / 2)
+    point = np.clip(np.asarray(target, float), low + inset, high - inset)
+    beyond = np.asarray(target) - point
+    # leave through the side that faces the target
+    level = np.abs(beyond[:, 0]) * (high - low)[:, 1] > np.abs(beyond[:, 1]) * (high - low)[:, 0]
+    x = np.where(level, np.where(beyond[:, 0] > 0, high[:, 0] + 4, low[:, 0] - 4), point[:, 0])
+    y = np.where(level, point[:, 1], np.where(beyond[:, 1] > 0, high[:, 1] + 4, low[:, 1] - 4))
+    return np.stack([x, y], axis=1)
+
+
+def _crossings(start: Array, wish: Wish, covered: Cover, taken: Sequence[Box], leaders: Sequence[Line]) -> Array:
+    """(n,) cost of what leaders from ``start`` run over: the body a little, labels and other leaders a lot."""
+    share = np.linspace(0.02, 0.98, 25)[None, :, None]
+    away = np.asarray(wish.target) - start
+    long = np.maximum(np.hypot(away[:, 0], away[:, 1]), 1e-9)
+    line = start[:, None] + share * (away * np.maximum(1 - wish.clear / long, 0.0)[:, None])[:, None]
+    grid = covered.map
+    column = np.clip((line[..., 0] / CELL).astype(int), 0, grid.shape[1] - 1)
+    row = np.clip((line[..., 1] / CELL).astype(int), 0, grid.shape[0] - 1)
+    cost = 0.35 * grid[row, column].mean(axis=1) * long
+    for box in taken:
+        inside = (line[..., 0] > box[0]) & (line[..., 0] < box[2]) & (line[..., 1] > box[1]) & (line[..., 1] < box[3])
+        cost += 500.0 * inside.any(axis=1)
+    for other in leaders:
+        cost += 200.0 * _cross(start, np.asarray(wish.target, float), *np.array(other.points))
+    return cost
+
+
+def _cross(a: Array, b: Array, c: Array, d: Array) -> Array:
+    """(n,) whether the segments from a (n, 2) to b cross the one from c to d."""
+    side = lambda p, q, r: (q[..., 0] - p[..., 0]) * (r[..., 1] - p[..., 1]) - (q[..., 1] - p[..., 1]) * (  # noqa: E731
+        r[..., 0] - p[..., 0]
+    )
+    return (side(a, b, c) * side(a, b, d) < 0) & (side(c, d, a) * side(c, d, b) < 0)
+
+
+def _touches(boxes: Array, line: Array) -> Array:
+    """(n,) whether a segment (2, 2) runs through boxes (n, 4)."""
+    points = line[0] + np.linspace(0, 1, 60)[:, None] * (line[1] - line[0])
+    x, y = points[:, 0], points[:, 1]
+    inside = (
+        (x >= boxes[:, :1]) & (x <= boxes[:, 2:3]) & (y >= boxes[:, 1:2]) & (y <= boxes[:, 3:])
+    )
+    return inside.any(axis=1)
+
+
+def place_label(
+    label: Label, frame: Frame, region: Box, covered: Cover, taken: list[Box], leaders: list[Line]
+) -> Placed:
+    """Place one label and note its box and leader among those taken."""
+    target = label.anchor.rest(frame)
+    wish = Wish(label.size, target, label.anchor.clear)
+    box = choose_place(wish, region, covered, taken, leaders)
+    x, y = leader_start(np.array([box]), target)[0]
+    placed = Placed(label, box, (float(x), float(y)))
+    line = leader(placed.start, target, label.anchor.clear, label.colour)
+    if line is not None:
+        leaders.append(line)
+    taken.append(box)
+    return placed
