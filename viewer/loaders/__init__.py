@@ -4,8 +4,8 @@
 ``read_dossier_report``, ``save_mode_name``, ``bare_dossier``.
 """
 
-from viewer.loaders.dossier_file import read_dossier, read_dossier_report, save_mode_name
-from viewer.loaders.dossier_text import bare_dossier
+from viewer.loaders.dossier_file import read_dossier, read_dossier_report
+from viewer.loaders.dossier_text import bare_dossier, save_mode_name
 from viewer.loaders.raw_data import ReadReport
 from viewer.loaders.registry import read_mesh, read_mesh_report, read_modes, write_interchange
 

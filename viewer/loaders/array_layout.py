@@ -53,7 +53,9 @@ def mesh_of(arrays: Mapping[str, StoredArray], path: Path) -> RawMesh:
     """The mesh that the arrays describe. Raises ``LoadError``."""
     points = _need(arrays, "points", path)
     if len(points.shape) != 2 or points.shape[1] != 3:
-        raise LoadError("points have a wrong shape", file=path, place="points", found=str(points.shape), expected="(n, 3)")
+        raise LoadError(
+            "points have a wrong shape", file=path, place="points", found=str(points.shape), expected="(n, 3)"
+        )
     n, blocks = points.shape[0], []
     for name in arrays:
         match = _CELLS.fullmatch(name)
@@ -63,8 +65,11 @@ def mesh_of(arrays: Mapping[str, StoredArray], path: Path) -> RawMesh:
     cells = sum(len(block.nodes) for block in blocks)
     node_id = arrays.get("node_id")
     return RawMesh(
-        points.read(), blocks, None if node_id is None else node_id.read(),
-        dict(_groups(arrays, "node_", n, path)), dict(_groups(arrays, "cell_", cells, path)),
+        points.read(),
+        blocks,
+        None if node_id is None else node_id.read(),
+        dict(_groups(arrays, "node_", n, path)),
+        dict(_groups(arrays, "cell_", cells, path)),
     )
 
 
@@ -72,25 +77,43 @@ def modes_of(arrays: Mapping[str, StoredArray], path: Path) -> RawModes:
     """The mode shapes that the arrays describe, left in the file where possible. Raises ``LoadError``."""
     moved, turned = _need(arrays, "modes", path), arrays.get("rotations")
     if len(moved.shape) != 3 or moved.shape[2] != 3 or moved.dtype.kind not in "fc":
-        raise LoadError("mode shapes have a wrong shape", file=path, place="modes",
-                        found=f"{moved.shape} of {moved.dtype}", expected="(modes, nodes, 3) of float or complex")
+        raise LoadError(
+            "mode shapes have a wrong shape",
+            file=path,
+            place="modes",
+            found=f"{moved.shape} of {moved.dtype}",
+            expected="(modes, nodes, 3) of float or complex",
+        )
     if turned is not None and turned.shape != moved.shape:
-        raise LoadError("rotations do not fit the modes", file=path, place="rotations", found=str(turned.shape),
-                        expected=str(moved.shape))
+        raise LoadError(
+            "rotations do not fit the modes",
+            file=path,
+            place="rotations",
+            found=str(turned.shape),
+            expected=str(moved.shape),
+        )
     stretches, turned_stretches = _stretches(moved), None if turned is None else _stretches(turned)
     shapes: FileShapes | ArrayShapes
     if stretches and (turned is None or turned_stretches):
         shapes = FileShapes(str(path.resolve()), stamp_of(path), moved.shape[1], stretches, turned_stretches)
     else:
         shapes = ArrayShapes(moved.read(), None if turned is None else turned.read())
-    field = {name: arrays[name].read() for name in ("freq_hz", "damping", "node_id", "mass_normalised") if name in arrays}
+    field = {
+        name: arrays[name].read() for name in ("freq_hz", "damping", "node_id", "mass_normalised") if name in arrays
+    }
     normalised = field.get("mass_normalised")
-    return RawModes(shapes, field.get("freq_hz"), field.get("damping"), field.get("node_id"),
-                    normalised is not None and normalised.size > 0 and bool(np.all(normalised)))
+    return RawModes(
+        shapes,
+        field.get("freq_hz"),
+        field.get("damping"),
+        field.get("node_id"),
+        normalised is not None and normalised.size > 0 and bool(np.all(normalised)),
+    )
 
 
 def arrays_to_write(mesh: Mesh, modes: ModeSet | None) -> Iterator[tuple[str, tuple[int, ...], np.dtype, Callable]]:
     """(name, shape, dtype, parts) of every array; ``parts()`` iterates over it along the first axis in pieces."""
+
     def whole(name: str, values: Array):
         return name, values.shape, values.dtype, lambda: iter((values,))
 
@@ -102,7 +125,10 @@ def arrays_to_write(mesh: Mesh, modes: ModeSet | None) -> Iterator[tuple[str, tu
         tail = block.kind + ("" if seen[block.kind] == 1 else f"_{seen[block.kind]}")
         yield whole(f"cells_{tail}", block.nodes)
         yield whole(f"elem_id_{tail}", block.ids)
-    for prefix, groups, count in (("node_", mesh.node_groups, mesh.n_nodes), ("cell_", mesh.cell_groups, mesh.n_cells)):
+    for prefix, groups, count in (
+        ("node_", mesh.node_groups, mesh.n_nodes),
+        ("cell_", mesh.cell_groups, mesh.n_cells),
+    ):
         for name, rows in groups.items():
             yield whole(prefix + group_array(name), mask(rows, count))
     if modes is None:
@@ -128,8 +154,13 @@ def _groups(arrays: Mapping[str, StoredArray], prefix: str, count: int, path: Pa
         group = group_name(name.removeprefix(prefix)) if name.startswith(prefix) else ""
         if group:
             if array.shape != (count,):
-                raise LoadError("a group's mask has a wrong length", file=path, place=name, found=str(array.shape),
-                                expected=f"({count},)")
+                raise LoadError(
+                    "a group's mask has a wrong length",
+                    file=path,
+                    place=name,
+                    found=str(array.shape),
+                    expected=f"({count},)",
+                )
             yield group, np.nonzero(array.read())[0]
 
 

@@ -20,7 +20,7 @@ def group_array(name: str) -> str:
 
 def group_name(array: str) -> str:
     """The group that an array name stands for, "" when it is none."""
-    return unquote(array[len(GROUP):]) if array.startswith(GROUP) else ""
+    return unquote(array[len(GROUP) :]) if array.startswith(GROUP) else ""
 
 
 def mode_array(index: int, turned: bool = False, part: str = "") -> str:

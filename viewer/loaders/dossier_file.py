@@ -1,4 +1,4 @@
-"""``dossier.toml`` in and out: parse, check, convert to SI; write back the names that a user gives to modes.
+"""``dossier.toml`` as data in SI: units, references, duplicates, files and plausible values are checked here.
 
 The layout stands in :mod:`viewer.loaders.dossier_schema`.
 """
@@ -7,17 +7,15 @@ from __future__ import annotations
 
 import difflib
 import os
-import tomllib
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable
 from pathlib import Path
-from typing import Any, NoReturn
+from typing import Any
 
 import numpy as np
-from pydantic import BaseModel, ValidationError
 
 from viewer.errors import DossierError
-from viewer.jobs import write_text
 from viewer.loaders import dossier_schema as schema
+from viewer.loaders.dossier_parse import parsed, short
 from viewer.model.design import (
     DIRECTIONS,
     Assignment,
@@ -32,7 +30,6 @@ from viewer.model.design import (
 from viewer.model.dossier import DesignPlan, Dossier, ModePair, StatedAmplitude
 
 DEFAULT_MODE_COUNT = 6
-_LARGEST_FILE = 10_000_000
 # Outside these bounds a value is no error but is flagged: most often a unit was mixed up. Softest foams lie near
 # 1e4 Pa and 10 kg/m³, diamond near 1.2e12 Pa, osmium near 22 600 kg/m³ (handbook values, rounded outwards).
 _PLAUSIBLE = {
@@ -55,148 +52,10 @@ def read_dossier(path: str | os.PathLike[str]) -> Dossier:
 def read_dossier_report(path: str | os.PathLike[str]) -> tuple[Dossier, tuple[str, ...]]:
     """As :func:`read_dossier`, with warnings in words for values that are possible but implausible."""
     path = Path(path)
-    _, table = _parsed(path)
+    _, table = parsed(path)
     reader = _Reader(path, table)
     return reader.dossier(), tuple(reader.warnings)
 
-
-def save_mode_name(path: str | os.PathLike[str], design: str, mode: int, name: str) -> None:
-    """Write the user's name for mode ``mode`` (number from 1) of ``design`` into the dossier, keeping comments,
-    order and layout; an empty name removes it. Atomic. Raises ``DossierError``."""
-    import tomlkit
-
-    path = Path(path)
-    text, _ = _parsed(path)
-    if mode < 1:
-        raise DossierError("a mode number counts from 1", file=path, found=str(mode))
-    document = tomlkit.parse(text)
-    tables: Any = document["designs"]
-    for table in tables:
-        if table["name"] == design:
-            break
-    else:
-        names = ", ".join(str(t["name"]) for t in tables)
-        raise DossierError(f"no design named '{design}'", file=path, expected=f"one of: {names}")
-    if "mode_names" not in table:
-        if not name:
-            return
-        table["mode_names"] = tomlkit.inline_table()
-    names_table = table["mode_names"]
-    if name:
-        names_table[str(mode)] = name
-    elif str(mode) in names_table:
-        del names_table[str(mode)]
-    write_text(path, tomlkit.dumps(document))
-
-
-def _parsed(path: Path) -> tuple[str, schema.DossierTable]:
-    """The text and the checked tables."""
-    try:
-        if path.is_dir():
-            raise DossierError("is a folder", file=path, expected="a dossier file", do="name the .toml file in it")
-        if path.stat().st_size > _LARGEST_FILE:
-            raise DossierError("is too large for a dossier", file=path, found=f"{path.stat().st_size} bytes")
-        text = path.read_bytes().decode("utf-8-sig")
-    except FileNotFoundError:
-        raise DossierError("there is no such file", file=path, do="check the path") from None
-    except UnicodeDecodeError as error:
-        raise DossierError("is not UTF-8 text", file=path, place=f"byte {error.start}", do="save as UTF-8") from None
-    except OSError as error:
-        raise DossierError("cannot be opened", file=path, found=error.strerror or str(error)) from None
-    try:
-        data = tomllib.loads(text)
-    except (tomllib.TOMLDecodeError, RecursionError) as error:
-        raise DossierError("is not valid TOML", file=path, found=str(error), do="mend the line named") from None
-    try:
-        return text, schema.DossierTable.model_validate(data)
-    except ValidationError as error:
-        _raise_translated(path, data, error)
-
-
-# --- pydantic's words into ours ---
-
-def _raise_translated(path: Path, data: Any, error: ValidationError) -> NoReturn:
-    issues = error.errors(include_url=False)
-    # unknown keys first: a misspelt key explains the "missing" one beside it
-    issues.sort(key=lambda issue: issue["type"] != "extra_forbidden")
-    issue = issues[0]
-    location = [part for part in issue["loc"] if not (isinstance(part, str) and _is_branch(part))]
-    kind, context = issue["type"], issue.get("ctx", {})
-    more = f" (and {len(issues) - 1} more)" if len(issues) > 1 else ""
-    key = str(location[-1]) if location else ""
-    given = _short(issue["input"])
-    if kind == "extra_forbidden":
-        known = list(_model_at(location[:-1]).model_fields)
-        close = difflib.get_close_matches(key, known, 1)
-        raise DossierError(
-            f"unknown key '{key}'{more}", file=path, place=_place(data, location[:-1]),
-            expected=f"one of: {', '.join(known)}", do=f"did you mean '{close[0]}'?" if close else "remove it",
-        )
-    if kind == "missing":
-        raise DossierError(f"'{key}' is missing{more}", file=path, place=_place(data, location[:-1]))
-    if kind == "value_error":
-        words, _, expected = str(context["error"]).partition("expected ")
-        raise DossierError(
-            (words.strip(" ,") or "is not complete") + more, file=path, place=_place(data, location), expected=expected
-        )
-    message = issue["msg"][0].lower() + issue["msg"][1:]
-    for theirs, ours in (("input should be ", ""), ("a valid ", "a "), ("dictionary", "table"), ("list", "list […]"),
-                         (" an instance of", ""), (" after validation", "")):
-        message = message.replace(theirs, ours)
-    raise DossierError(
-        f"'{key}' has a wrong value{more}", file=path, place=_place(data, location), found=given, expected=message
-    )
-
-
-def _is_branch(part: str) -> bool:
-    """Names that pydantic puts into a location for a member of a union, not for a key."""
-    return "[" in part or part in ("str", "float", "int", "bool") or part.startswith("literal")
-
-
-def _model_at(location: Sequence[int | str]) -> type[BaseModel]:
-    """The table type that a location of keys and indices leads to."""
-    model: Any = schema.DossierTable
-    for part in location:
-        if isinstance(part, int):
-            continue
-        if isinstance(model, type) and part in model.model_fields:
-            model = _inner_table(model.model_fields[part].annotation)
-    return model
-
-
-def _inner_table(annotation: Any) -> Any:
-    if isinstance(annotation, type) and issubclass(annotation, BaseModel):
-        return annotation
-    for inner in getattr(annotation, "__args__", ()):
-        found = _inner_table(inner)
-        if found is not None:
-            return found
-    return None
-
-
-def _place(data: Any, location: Sequence[int | str]) -> str:
-    """``designs 2 ("modified"), assign 1, thickness``: counted from 1, named where there is a name."""
-    words: list[str] = []
-    for part in location:
-        try:
-            data = data[part]
-        except (KeyError, IndexError, TypeError):
-            data = None
-        if isinstance(part, int) and words:
-            words[-1] += f" {part + 1}"
-            if isinstance(data, dict) and isinstance(data.get("name"), str):
-                words[-1] += f' ("{data["name"]}")'
-        else:
-            words.append(str(part))
-    return ", ".join(words)
-
-
-def _short(value: Any) -> str:
-    text = repr(value)
-    return text if len(text) <= 60 else text[:57] + "…"
-
-
-# --- from checked tables to frozen types in SI ---
 
 class _Reader:
     """One pass over the tables; collects warnings."""
@@ -214,12 +73,16 @@ class _Reader:
         self.no_duplicates("designs", [design.name for design in table.designs])
         self.no_duplicates("points", [point.name for point in table.points])
         materials = {name: self.material(name, item) for name, item in table.materials.items()}
-        points = {item.name: self.point(item, f'points {n} ("{item.name}")') for n, item in enumerate(table.points, 1)}
+        points = {
+            item.name: self.point(item, f'points {n} ("{item.name}")') for n, item in enumerate(table.points, 1)
+        }
         plans = tuple(
             self.plan(item, f'designs {n} ("{item.name}")', materials, points)
             for n, item in enumerate(table.designs, 1)
         )
-        amplitudes = tuple(self.amplitude(item, f"amplitudes {n}", plans) for n, item in enumerate(table.amplitudes, 1))
+        amplitudes = tuple(
+            self.amplitude(item, f"amplitudes {n}", plans) for n, item in enumerate(table.amplitudes, 1)
+        )
         self.no_duplicates("amplitudes", [f"{a.design}, mode {a.mode}" for a in amplitudes])
         pairs = tuple(self.pair(item, f"pairs {n}", plans) for n, item in enumerate(table.pairs, 1))
         return Dossier(table.title, self.path, plans, amplitudes, pairs, table.condition)
@@ -243,7 +106,9 @@ class _Reader:
         )
 
     def physics(self, item: schema.DesignTable, place: str, materials: dict[str, Material]) -> Physics:
-        assignments = tuple(self.assignment(a, f"{place}, assign {n}", materials) for n, a in enumerate(item.assign, 1))
+        assignments = tuple(
+            self.assignment(a, f"{place}, assign {n}", materials) for n, a in enumerate(item.assign, 1)
+        )
         supports = tuple(self.support(s, f"{place}, supports {n}", n) for n, s in enumerate(item.supports, 1))
         springs = tuple(self.spring(s, f"{place}, springs {n}", n) for n, s in enumerate(item.springs, 1))
         masses = tuple(self.mass(m, f"{place}, masses {n}", n) for n, m in enumerate(item.masses, 1))
@@ -286,8 +151,11 @@ class _Reader:
     def mass(self, item: schema.MassTable, place: str, number: int) -> LumpedMass:
         value = self.plausible("mass", item.mass * self.mass_unit, place)
         return LumpedMass(
-            item.name or item.group or f"mass {number}", self.selector(item, place), value,
-            self.position(item.position), self.inertia(item.inertia, f"{place}, inertia"),
+            item.name or item.group or f"mass {number}",
+            self.selector(item, place),
+            value,
+            self.position(item.position),
+            self.inertia(item.inertia, f"{place}, inertia"),
         )
 
     def inertia(self, given: Any, place: str) -> np.ndarray:
@@ -295,21 +163,31 @@ class _Reader:
         matrix = np.diag(values) if values.shape == (3,) else values
         if matrix.shape != (3, 3):
             raise DossierError(
-                "wrong number of values", file=self.path, place=place, found=_short(given),
+                "wrong number of values",
+                file=self.path,
+                place=place,
+                found=short(given),
                 expected="three values about x, y, z, or a 3 × 3 matrix",
             )
         moments = np.linalg.eigvalsh((matrix + matrix.T) / 2)
         if not np.allclose(matrix, matrix.T) or moments[0] < -1e-9 * max(moments[-1], 0.0) or moments[0] < -1e-300:
             raise DossierError(
-                "is no inertia of a real body", file=self.path, place=place, found=_short(given),
+                "is no inertia of a real body",
+                file=self.path,
+                place=place,
+                found=short(given),
                 expected="a symmetric matrix without negative principal moments",
             )
         return matrix * self.mass_unit * self.length**2
 
     def point(self, item: schema.PointTable, place: str) -> FunctionalPoint:
         return FunctionalPoint(
-            item.name, self.selector(item, place), self.direction(item.direction, f"{place}, direction"),
-            self.position(item.position), item.effect, item.direction_word,
+            item.name,
+            self.selector(item, place),
+            self.direction(item.direction, f"{place}, direction"),
+            self.position(item.position),
+            item.effect,
+            item.direction_word,
         )
 
     def amplitude(self, item: schema.AmplitudeTable, place: str, plans: tuple[DesignPlan, ...]) -> StatedAmplitude:
@@ -322,9 +200,16 @@ class _Reader:
                 direction = points[item.point].direction
         value = self.plausible("amplitude", item.value * self.amplitude_unit, place)
         return StatedAmplitude(
-            item.design, item.mode, value, self.direction(direction, f"{place}, direction"), item.point or "",
+            item.design,
+            item.mode,
+            value,
+            self.direction(direction, f"{place}, direction"),
+            item.point or "",
             self.selector(item, place) if item.given_places() else None,
-            item.statistic, item.relative, item.condition, item.place,
+            item.statistic,
+            item.relative,
+            item.condition,
+            item.place,
         )
 
     def pair(self, item: schema.PairTable, place: str, plans: tuple[DesignPlan, ...]) -> ModePair:
@@ -338,8 +223,11 @@ class _Reader:
         box = None if item.box is None else np.array(item.box) * self.length
         if box is not None and (box[0] > box[1]).any():
             raise DossierError(
-                "the lower corner of the box lies above the upper one", file=self.path, place=f"{place}, box",
-                found=_short(item.box), expected="[[xmin, ymin, zmin], [xmax, ymax, zmax]]",
+                "the lower corner of the box lies above the upper one",
+                file=self.path,
+                place=f"{place}, box",
+                found=short(item.box),
+                expected="[[xmin, ymin, zmin], [xmax, ymax, zmax]]",
             )
         near = None if item.near is None else np.array(item.near) * self.length
         return Selector(item.group or "", item.nodes, box, near)  # type: ignore[arg-type]
@@ -353,14 +241,17 @@ class _Reader:
             sign, axis = (-1.0 if word[:1] == "-" else 1.0), word.lstrip("+-")
             if axis not in ("x", "y", "z") or len(word) - len(axis) > 1:
                 raise DossierError(
-                    "is no direction", file=self.path, place=place, found=_short(given),
+                    "is no direction",
+                    file=self.path,
+                    place=place,
+                    found=short(given),
                     expected='three components, or a word such as "x", "-z"',
                 )
             return sign * np.eye(3)["xyz".index(axis)]
         vector = np.asarray(given, float)
         size = float(np.linalg.norm(vector))
         if not size > 0 or not np.isfinite(size):
-            raise DossierError("a direction has no length", file=self.path, place=place, found=_short(given))
+            raise DossierError("a direction has no length", file=self.path, place=place, found=short(given))
         return vector / size
 
     def mode_names(self, item: schema.DesignTable, place: str) -> dict[int, str]:
@@ -368,8 +259,11 @@ class _Reader:
         for key, name in item.mode_names.items():
             if not key.isascii() or not key.isdigit() or int(key) < 1:
                 raise DossierError(
-                    "a mode is named by its number from 1", file=self.path, place=f"{place}, mode_names",
-                    found=f"'{key}'", expected='1 = "name"',
+                    "a mode is named by its number from 1",
+                    file=self.path,
+                    place=f"{place}, mode_names",
+                    found=f"'{key}'",
+                    expected='1 = "name"',
                 )
             names[int(key)] = name
         return names
@@ -380,8 +274,11 @@ class _Reader:
         plan = known[design]
         if plan.modes_file is None and mode > plan.mode_count:
             raise DossierError(
-                f"design '{design}' has no mode {mode}", file=self.path, place=f"{place}, mode",
-                expected=f"1 to {plan.mode_count}", do=f"raise solve in that design to {mode} or more",
+                f"design '{design}' has no mode {mode}",
+                file=self.path,
+                place=f"{place}, mode",
+                expected=f"1 to {plan.mode_count}",
+                do=f"raise solve in that design to {mode} or more",
             )
         return plan
 
@@ -389,8 +286,12 @@ class _Reader:
         path = self.path.parent / name
         if not path.is_file():
             raise DossierError(
-                "is a folder" if path.is_dir() else "there is no such file", file=self.path, place=place,
-                found=str(path), expected="a file; paths are relative to the dossier", do="check the path",
+                "is a folder" if path.is_dir() else "there is no such file",
+                file=self.path,
+                place=place,
+                found=str(path),
+                expected="a file; paths are relative to the dossier",
+                do="check the path",
             )
         return path
 
@@ -399,7 +300,9 @@ class _Reader:
         if name not in among:
             close = difflib.get_close_matches(name, among, 1)
             raise DossierError(
-                f"no {word} named '{name}'", file=self.path, place=place,
+                f"no {word} named '{name}'",
+                file=self.path,
+                place=place,
                 expected=f"one of: {', '.join(among)}" if among else f"a {word}, none is declared",
                 do=f"did you mean '{close[0]}'?" if close else "",
             )
@@ -408,14 +311,18 @@ class _Reader:
         for i, name in enumerate(names):
             if name in names[:i]:
                 raise DossierError(
-                    f"'{name}' is given twice", file=self.path, place=place, expected="each once", do="rename one",
+                    f"'{name}' is given twice",
+                    file=self.path,
+                    place=place,
+                    expected="each once",
+                    do="rename one",
                 )
 
     def plausible(self, what: str, value: float, place: str) -> float:
         low, high, unit = _PLAUSIBLE[what]
         if not low <= value <= high:
             self.warnings.append(
-                f"{place}: {what.replace('_', ' ').replace('youngs', 'Young’s')} of {value:.3g} {unit} is implausible "
+                f"{place}: {what.replace('_', ' ')} of {value:.3g} {unit} is implausible "
                 f"(usual: {low:.3g} to {high:.3g} {unit}); check [units]"
             )
         return value

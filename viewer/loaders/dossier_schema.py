@@ -182,7 +182,9 @@ class DesignTable(Table):
     @model_validator(mode="after")
     def _one_origin(self):
         if self.modes is not None and self.solve is not None:
-            raise ValueError("says both modes and solve, expected one: a file of modes, or a number of modes to compute")
+            raise ValueError(
+                "says both modes and solve, expected one: a file of modes, or a number of modes to compute"
+            )
         if self.modes is None and not self.assign:
             raise ValueError(
                 'says neither modes nor assign, expected modes = "FILE", or '
@@ -209,7 +211,7 @@ class AmplitudeTable(Place):
     @model_validator(mode="after")
     def _where(self):
         if (self.point is None) == (not self.given_places()):
-            raise ValueError("expected either point = \"NAME\" or a place of its own: one of group, nodes, box, near")
+            raise ValueError('expected either point = "NAME" or a place of its own: one of group, nodes, box, near')
         if self.point is None and self.direction is None:
             raise ValueError("says no direction, expected one, since no functional point gives it")
         return self

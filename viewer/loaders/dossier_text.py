@@ -1,14 +1,19 @@
-"""A ready dossier for a mesh that has none: what was found, and marked places for what only the user knows."""
+"""Text of a dossier: a ready one for a mesh that has none, and names of modes written into an existing one."""
 
 from __future__ import annotations
 
 import os
 from collections.abc import Mapping
 from pathlib import Path
+from typing import Any
 
 import numpy as np
+import tomlkit
 
 from viewer.cells import KINDS
+from viewer.errors import DossierError
+from viewer.jobs import write_text
+from viewer.loaders.dossier_parse import parsed
 from viewer.model.arrays import Array
 from viewer.model.mesh import Mesh
 
@@ -28,10 +33,13 @@ def bare_dossier(mesh: Mesh, mesh_path: str | os.PathLike[str]) -> str:
         counts[block.kind] = counts.get(block.kind, 0) + len(block)
     shells = any(KINDS[kind].dim == 2 for kind in counts)
     kinds = ", ".join(f"{number} {kind}" for kind, number in counts.items())
-    assign = '# assign = [{target = "*", material = "material", thickness = }]' if shells else (
-        'assign = [{target = "*", material = "material"}]')
+    assign = (
+        '# assign = [{target = "*", material = "material", thickness = }]'
+        if shells
+        else ('assign = [{target = "*", material = "material"}]')
+    )
     node_group = next(iter([*mesh.node_groups, *mesh.cell_groups]), "")
-    held = f'group = {_quoted(node_group)}' if node_group else _lowest_nodes(mesh)
+    held = f"group = {_quoted(node_group)}" if node_group else _lowest_nodes(mesh)
     middle = ", ".join(f"{x:.6g}" for x in mesh.points.mean(axis=0))
     lines = [
         f"# Dossier for {_quoted(name)}. Lines marked TO FILL IN need your numbers; the rest may stay.",
@@ -56,9 +64,13 @@ def bare_dossier(mesh: Mesh, mesh_path: str | os.PathLike[str]) -> str:
         'name = "baseline"',
         f"mesh = {_quoted(name)}",
         'length_unit = "m"              # TO FILL IN: the unit of the mesh file, "mm", "m", "in"',
-        "solve = 6                      # or, for modes that you have: modes = \"FILE\"",
-        "# TO FILL IN" + (": the sheet thickness, and one entry per group where it differs" if shells else
-                          ": one entry per group where the material differs"),
+        'solve = 6                      # or, for modes that you have: modes = "FILE"',
+        "# TO FILL IN"
+        + (
+            ": the sheet thickness, and one entry per group where it differs"
+            if shells
+            else ": one entry per group where the material differs"
+        ),
         assign,
         "# TO FILL IN where it is held; a body without supports is free and has six rigid-body modes first",
         f'# supports = [{{name = "root", {held}}}]',
@@ -81,6 +93,33 @@ def bare_dossier(mesh: Mesh, mesh_path: str | os.PathLike[str]) -> str:
         "",
     ]
     return "\n".join(lines)
+
+
+def save_mode_name(path: str | os.PathLike[str], design: str, mode: int, name: str) -> None:
+    """Write the user's name for mode ``mode`` (number from 1) of ``design`` into the dossier, keeping comments,
+    order and layout; an empty name removes it. Atomic. Raises ``DossierError``."""
+    path = Path(path)
+    text, _ = parsed(path)
+    if mode < 1:
+        raise DossierError("a mode number counts from 1", file=path, found=str(mode))
+    document = tomlkit.parse(text)
+    tables: Any = document["designs"]
+    for table in tables:
+        if table["name"] == design:
+            break
+    else:
+        names = ", ".join(str(t["name"]) for t in tables)
+        raise DossierError(f"no design named '{design}'", file=path, expected=f"one of: {names}")
+    if "mode_names" not in table:
+        if not name:
+            return
+        table["mode_names"] = tomlkit.inline_table()
+    names_table = table["mode_names"]
+    if name:
+        names_table[str(mode)] = name
+    elif str(mode) in names_table:
+        del names_table[str(mode)]
+    write_text(path, tomlkit.dumps(document))
 
 
 def _group_lines(word: str, groups: Mapping[str, Array]) -> list[str]:

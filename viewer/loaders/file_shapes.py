@@ -21,7 +21,7 @@ class Stretch(NamedTuple):
     dtype: str
 
 
-Parts = tuple[Stretch, ...]   # one stretch, or the real and the imaginary one
+Parts = tuple[Stretch, ...]  # one stretch, or the real and the imaginary one
 
 
 def stamp_of(path: str | os.PathLike[str]) -> tuple[int, int]:
@@ -110,11 +110,20 @@ class FileShapes:
         stream.seek(stretch.offset)
         got = stream.readinto(values.view(np.uint8).reshape(-1).data) if self.n_rows else 0
         if got != values.nbytes:
-            raise LoadError("ends early", file=self.path, place=f"mode {index + 1}", found=f"{got} bytes",
-                            expected=f"{values.nbytes} bytes")
+            raise LoadError(
+                "ends early",
+                file=self.path,
+                place=f"mode {index + 1}",
+                found=f"{got} bytes",
+                expected=f"{values.nbytes} bytes",
+            )
         finite = np.isfinite(values)
         if not finite.all():
             row = int(np.nonzero(~finite.all(axis=1))[0][0])
-            raise LoadError("holds a number that is not finite", file=self.path,
-                            place=f"mode {index + 1}, row {row + 1}", found=str(values[row]))
+            raise LoadError(
+                "holds a number that is not finite",
+                file=self.path,
+                place=f"mode {index + 1}, row {row + 1}",
+                found=str(values[row]),
+            )
         return values

@@ -42,17 +42,32 @@ class _Member:
             self.shape, self.fortran, self.dtype = read(stream)
             self._start = stream.tell()
         if self.dtype.hasobject or self.dtype.names is not None:
-            raise LoadError("holds Python objects, which are never read", file=path, place=place,
-                            expected="plain arrays of numbers", do="save numeric arrays with numpy.savez")
+            raise LoadError(
+                "holds Python objects, which are never read",
+                file=path,
+                place=place,
+                expected="plain arrays of numbers",
+                do="save numeric arrays with numpy.savez",
+            )
         expected = self.dtype.itemsize
         for length in self.shape:
             expected *= int(length)
         if info.file_size - self._start != expected:
-            raise LoadError("an array's size does not fit its header", file=path, place=place,
-                            found=f"{info.file_size - self._start} bytes", expected=f"{expected} bytes")
+            raise LoadError(
+                "an array's size does not fit its header",
+                file=path,
+                place=place,
+                found=f"{info.file_size - self._start} bytes",
+                expected=f"{expected} bytes",
+            )
         if expected > _BOMB_SIZE and expected > _BOMB_RATIO * max(info.compress_size, 1):
-            raise LoadError("an array inflates to far more than numbers do", file=path, place=place,
-                            found=f"{info.compress_size} bytes for {expected}", do="save it without compression")
+            raise LoadError(
+                "an array inflates to far more than numbers do",
+                file=path,
+                place=place,
+                found=f"{info.compress_size} bytes for {expected}",
+                do="save it without compression",
+            )
 
     def read(self) -> Array:
         with self.archive.open(self.info) as stream:
@@ -89,7 +104,7 @@ def write(path: str | os.PathLike[str], mesh: Mesh, modes: ModeSet | None, progr
             progress.tick(f"writing {name}")
             with archive.open(f"{name}.npy", "w", force_zip64=True) as stream:
                 header = {"descr": np.lib.format.dtype_to_descr(dtype), "fortran_order": False, "shape": shape}
-                np.lib.format.write_array_header_1_0(stream, header)  # type: ignore[arg-type]
+                np.lib.format.write_array_header_1_0(stream, header)
                 for values in parts():
                     progress.tick(f"writing {name}")
                     stream.write(np.ascontiguousarray(values, dtype).reshape(-1).view(np.uint8).data)
@@ -101,8 +116,13 @@ def _members(path: Path) -> Iterator[dict[str, _Member]]:
         with zipfile.ZipFile(path) as archive:
             yield {
                 info.filename.removesuffix(".npy"): _Member(path, archive, info)
-                for info in archive.infolist() if info.filename.endswith(".npy")
+                for info in archive.infolist()
+                if info.filename.endswith(".npy")
             }
     except (zipfile.BadZipFile, zlib.error, EOFError, ValueError, NotImplementedError, RuntimeError) as error:
-        raise LoadError("the archive is damaged or no .npz file", file=path, found=str(error)[:200],
-                        do="write it again; it may be cut short") from None
+        raise LoadError(
+            "the archive is damaged or no .npz file",
+            file=path,
+            found=str(error)[:200],
+            do="write it again; it may be cut short",
+        ) from None

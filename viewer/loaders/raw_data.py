@@ -69,8 +69,9 @@ def finish_mesh(raw: RawMesh, path: str | os.PathLike[str], length_unit: float) 
     """Check, orient and scale. Raises ``LoadError``."""
     points = _numbers(raw.points, "points", path)
     if points.ndim != 2 or points.shape[1] != 3 or len(points) == 0:
-        raise LoadError("has no usable points", file=path, found=f"an array of shape {points.shape}",
-                        expected="n rows of x, y, z")
+        raise LoadError(
+            "has no usable points", file=path, found=f"an array of shape {points.shape}", expected="n rows of x, y, z"
+        )
     finite = np.isfinite(points).all(axis=1)
     if not finite.all():
         row = int(np.argmin(finite))
@@ -85,13 +86,21 @@ def finish_mesh(raw: RawMesh, path: str | os.PathLike[str], length_unit: float) 
         _numbered(blocks, path, notes),
         node_ids,
         {name: _group(rows, len(points), f"node group '{name}'", path) for name, rows in raw.node_groups.items()},
-        {name: _group(rows, sum(len(b.nodes) for b in blocks), f"cell group '{name}'", path)
-         for name, rows in raw.cell_groups.items()},
+        {
+            name: _group(rows, sum(len(b.nodes) for b in blocks), f"cell group '{name}'", path)
+            for name, rows in raw.cell_groups.items()
+        },
         source=str(path),
     )
     unused = mesh.n_nodes - len(mesh.used_nodes)
     if unused:
         notes.append(f"{unused} of {mesh.n_nodes} nodes belong to no cell")
+    astray = _astray_mid_nodes(mesh)
+    if astray:
+        warnings.append(
+            f"{astray} mid-side nodes lie far from the middle of their edge: the order of nodes in the file is "
+            "probably another one than its format says"
+        )
     low, high = _PLAUSIBLE_DIAGONAL
     if not low <= mesh.diagonal <= high:
         warnings.append(
@@ -108,8 +117,13 @@ def finish_modes(raw: RawModes, mesh: Mesh, path: str | os.PathLike[str], length
         raise LoadError("holds no mode", file=path)
     freq = _per_mode(raw.freq_hz, "freq_hz", shapes.count, path)
     if (freq < 0).any():
-        raise LoadError("a frequency is negative", file=path, place=f"freq_hz {int(np.argmax(freq < 0)) + 1}",
-                        found=str(freq[freq < 0][0]), expected="zero or more, Hz")
+        raise LoadError(
+            "a frequency is negative",
+            file=path,
+            place=f"freq_hz {int(np.argmax(freq < 0)) + 1}",
+            found=str(freq[freq < 0][0]),
+            expected="zero or more, Hz",
+        )
     damping = None if raw.damping is None else _per_mode(raw.damping, "damping", shapes.count, path)
     n_rows = shapes.n_rows if isinstance(shapes, FileShapes) else shapes.moved.shape[1]
     ids = _ids(raw.node_ids, n_rows, "node", path, [])
@@ -136,12 +150,17 @@ def finite_shapes(values: Array, what: str, path: object) -> Array:
     finite = np.isfinite(values)
     if not finite.all():
         mode, row = np.argwhere(~finite.all(axis=2))[0]
-        raise LoadError("holds a number that is not finite", file=path, place=f"{what}, mode {mode + 1}, row {row + 1}",
-                        found=str(values[mode, row]))
+        raise LoadError(
+            "holds a number that is not finite",
+            file=path,
+            place=f"{what}, mode {mode + 1}, row {row + 1}",
+            found=str(values[mode, row]),
+        )
     return values
 
 
 # --- checks ---
+
 
 def _numbers(values: Array, what: str, path: object) -> Array:
     if values.dtype.kind not in "fiu":
@@ -154,20 +173,31 @@ def _checked_blocks(blocks: Sequence[RawBlock], points: Array, path: object) -> 
     for number, block in enumerate(blocks, 1):
         place = f"cells {number} ({block.kind})"
         if block.kind not in KINDS:
-            raise LoadError(f"unknown kind of cell '{block.kind}'", file=path, place=place,
-                            expected=f"one of: {', '.join(KINDS)}")
+            raise LoadError(
+                f"unknown kind of cell '{block.kind}'", file=path, place=place, expected=f"one of: {', '.join(KINDS)}"
+            )
         size = KINDS[block.kind].n_nodes
         nodes = block.nodes
         if nodes.dtype.kind not in "iu":
             raise LoadError("connectivity is not of whole numbers", file=path, place=place, found=str(nodes.dtype))
         if nodes.ndim != 2 or nodes.shape[1] != size:
-            raise LoadError("wrong number of nodes per cell", file=path, place=place, found=str(nodes.shape),
-                            expected=f"(cells, {size})")
+            raise LoadError(
+                "wrong number of nodes per cell",
+                file=path,
+                place=place,
+                found=str(nodes.shape),
+                expected=f"(cells, {size})",
+            )
         if nodes.size and (int(nodes.min()) < 0 or int(nodes.max()) >= len(points)):
             bad = (nodes < 0) | (nodes >= len(points))
             cell, corner = np.argwhere(bad)[0]
-            raise LoadError("a cell names a point that does not exist", file=path, place=f"{place}, cell {cell + 1}",
-                            found=f"index {nodes[cell, corner]}", expected=f"0 to {len(points) - 1}")
+            raise LoadError(
+                "a cell names a point that does not exist",
+                file=path,
+                place=f"{place}, cell {cell + 1}",
+                found=f"index {nodes[cell, corner]}",
+                expected=f"0 to {len(points) - 1}",
+            )
         if not len(nodes):
             continue
         right, n_flipped = repair_orientation(block.kind, points, nodes.astype(np.int64))
@@ -182,13 +212,25 @@ def _numbered(blocks: list[RawBlock], path: object, notes: list[str]) -> tuple[C
     if any(block.ids is None for block in blocks):
         given, total = None, sum(len(block.nodes) for block in blocks)
     else:
-        given = np.concatenate([block.ids for block in blocks])  # type: ignore[misc]
+        given = np.concatenate([block.ids for block in blocks])
         total = len(given)
         if total != sum(len(block.nodes) for block in blocks):
             raise LoadError("cells and element ids differ in number", file=path)
     ids = _ids(given, total, "element", path, notes)
     cuts = np.cumsum([len(block.nodes) for block in blocks])[:-1]
     return tuple(CellBlock(b.kind, b.nodes, i) for b, i in zip(blocks, np.split(ids, cuts), strict=True))
+
+
+def _astray_mid_nodes(mesh: Mesh) -> int:
+    """Number of mid-side nodes further from the middle of their edge than half its length."""
+    count = 0
+    for block in mesh.blocks:
+        for edge in KINDS[block.kind].edges:
+            if len(edge) == 3:
+                first, second, middle = (mesh.points[block.nodes[:, node]] for node in edge)
+                away = np.linalg.norm(middle - (first + second) / 2, axis=1)
+                count += int((away > 0.5 * np.linalg.norm(second - first, axis=1)).sum())
+    return count
 
 
 def _ids(given: Array | None, count: int, word: str, path: object, notes: list[str]) -> Array:
@@ -205,33 +247,47 @@ def _ids(given: Array | None, count: int, word: str, path: object, notes: list[s
     order = np.sort(ids)
     twice = np.nonzero(order[1:] == order[:-1])[0]
     if len(twice):
-        raise LoadError(f"{word} ids repeat", file=path, found=f"{word} {order[twice[0]]} more than once",
-                        expected="each id once")
+        raise LoadError(
+            f"{word} ids repeat", file=path, found=f"{word} {order[twice[0]]} more than once", expected="each id once"
+        )
     return ids
 
 
 def _group(rows: Array, count: int, what: str, path: object) -> Array:
     rows = np.unique(rows).astype(np.int64)
     if len(rows) and (rows[0] < 0 or rows[-1] >= count):
-        raise LoadError(f"{what} reaches outside", file=path, found=f"row {rows[-1] if rows[-1] >= count else rows[0]}",
-                        expected=f"0 to {count - 1}")
+        raise LoadError(
+            f"{what} reaches outside",
+            file=path,
+            found=f"row {rows[-1] if rows[-1] >= count else rows[0]}",
+            expected=f"0 to {count - 1}",
+        )
     return rows
 
 
 def _per_mode(values: Array | None, name: str, count: int, path: object) -> Array:
     if values is None:
         raise LoadError(
-            "the frequencies of the modes are missing", file=path, expected=f"an array {name} with one value a mode",
+            "the frequencies of the modes are missing",
+            file=path,
+            expected=f"an array {name} with one value a mode",
             do=f"add the array, or put a table {os.path.splitext(os.path.basename(str(path)))[0]}_frequencies.csv "
             "with the columns mode, freq_hz beside the file",
         )
     values = _numbers(values, name, path).reshape(-1)
     if len(values) != count:
-        raise LoadError(f"{name} does not fit the modes", file=path, found=f"{len(values)} values",
-                        expected=f"{count}, one a mode")
+        raise LoadError(
+            f"{name} does not fit the modes",
+            file=path,
+            found=f"{len(values)} values",
+            expected=f"{count}, one a mode",
+        )
     if not np.isfinite(values).all():
-        raise LoadError(f"{name} holds a number that is not finite", file=path,
-                        place=f"mode {int(np.argmin(np.isfinite(values))) + 1}")
+        raise LoadError(
+            f"{name} holds a number that is not finite",
+            file=path,
+            place=f"mode {int(np.argmin(np.isfinite(values))) + 1}",
+        )
     return values
 
 
@@ -243,11 +299,18 @@ def _join(ids: Array, mesh: Mesh, path: object, numbered: bool) -> Array:
     missing = mesh.node_ids[ids[rows] != mesh.node_ids]
     extra = np.setdiff1d(ids, mesh.node_ids)
     if len(missing) or len(extra):
-        told = [f"{len(some)} nodes only in the {where} ({_few(some)})"
-                for some, where in ((missing, "mesh"), (extra, "mode file")) if len(some)]
+        told = [
+            f"{len(some)} nodes only in the {where} ({_few(some)})"
+            for some, where in ((missing, "mesh"), (extra, "mode file"))
+            if len(some)
+        ]
         why = "; the mode file has no node ids, so they were taken as 1 to n" if numbered else ""
-        raise LoadError("the mode shapes are not those of this mesh", file=path, found=", ".join(told) + why,
-                        expected=f"the {mesh.n_nodes} node ids of {mesh.source or 'the mesh'}")
+        raise LoadError(
+            "the mode shapes are not those of this mesh",
+            file=path,
+            found=", ".join(told) + why,
+            expected=f"the {mesh.n_nodes} node ids of {mesh.source or 'the mesh'}",
+        )
     return rows
 
 

@@ -22,7 +22,10 @@ from viewer.model.modes import ModeSet
 _OWN = {".vtu": "vtu_files", ".npz": "npz_files", ".h5": "hdf5_files", ".hdf5": "hdf5_files", ".csv": "csv_tables"}
 _WORKER = "meshio_files"
 # First bytes that give a container away, whatever the suffix says.
-_SIGNATURES = ((b"PK\x03\x04", "a zip archive (.npz)", (".npz",)), (b"\x89HDF\r\n\x1a\n", "an HDF5 file", (".h5", ".hdf5", ".med")))
+_SIGNATURES = (
+    (b"PK\x03\x04", "a zip archive (.npz)", (".npz",)),
+    (b"\x89HDF\r\n\x1a\n", "an HDF5 file", (".h5", ".hdf5", ".med")),
+)
 
 
 def read_mesh(path: str | os.PathLike[str], length_unit: float = 1.0, progress: Progress = SILENT) -> Mesh:
@@ -34,6 +37,7 @@ def read_mesh_report(
     path: str | os.PathLike[str], length_unit: float = 1.0, progress: Progress = SILENT
 ) -> tuple[Mesh, ReadReport]:
     """As :func:`read_mesh`, with what was noticed in words: cells put right, kinds left out, implausible size."""
+
     def work(file: Path) -> tuple[Mesh, ReadReport]:
         raw: RawMesh = _through(file, "read_mesh", progress)
         progress.tick("checking the mesh")
@@ -51,6 +55,7 @@ def read_modes(
     is not finite) then shows when that mode is asked for. Frequencies that the file lacks come from a table
     ``NAME_frequencies.csv`` beside it (columns mode, freq_hz and perhaps damping). Raises ``LoadError``.
     """
+
     def work(file: Path) -> ModeSet:
         raw: RawModes = _through(file, "read_modes", progress)
         if raw.freq_hz is None:
@@ -75,12 +80,16 @@ def write_interchange(
     target = Path(path)
     name = _OWN.get(target.suffix.lower())
     if name is None:
-        raise LoadError("cannot be written in this format", file=target, found=target.suffix or "no suffix",
-                        expected=f"one of: {', '.join(_OWN)}")
-    if modes is not None and (
-        len(modes.node_ids) != mesh.n_nodes or not (modes.node_ids == mesh.node_ids).all()
-    ):
-        raise LoadError("the mode shapes are not those of the mesh", file=target, expected="equal node ids in equal order")
+        raise LoadError(
+            "cannot be written in this format",
+            file=target,
+            found=target.suffix or "no suffix",
+            expected=f"one of: {', '.join(_OWN)}",
+        )
+    if modes is not None and (len(modes.node_ids) != mesh.n_nodes or not (modes.node_ids == mesh.node_ids).all()):
+        raise LoadError(
+            "the mode shapes are not those of the mesh", file=target, expected="equal node ids in equal order"
+        )
     _module(name).write(target, mesh, modes, progress)
     return target
 
@@ -93,8 +102,8 @@ def _through(file: Path, what: str, progress: Progress) -> Any:
     """Call ``what`` of the module that reads ``file``."""
     suffix = file.suffix.lower()
     name = _OWN.get(suffix, _WORKER)
-    if name == _WORKER and suffix not in _module(_WORKER).SUFFIXES:
-        known = ", ".join(sorted({*_OWN, *_module(_WORKER).SUFFIXES}))
+    if name == _WORKER and suffix not in _module(_WORKER).suffixes():
+        known = ", ".join(sorted({*_OWN, *_module(_WORKER).suffixes()}))
         raise LoadError("unknown format", file=file, found=suffix or "no suffix", expected=f"one of: {known}")
     progress.tick(f"reading {file.name}")
     try:
@@ -115,13 +124,17 @@ def _guarded(path: str | os.PathLike[str], work: Callable[[Path], Any]) -> Any:
     except MemoryError:
         raise LoadError("needs more memory than there is", file=file, do="read it on a larger machine") from None
     except (Exception, SystemExit) as error:
-        raise LoadError("cannot be read", file=file, found=f"{type(error).__name__}: {error}"[:300],
-                        do="check that the file is complete and of the format that its suffix says") from error
+        raise LoadError(
+            "cannot be read",
+            file=file,
+            found=f"{type(error).__name__}: {error}"[:300],
+            do="check that the file is complete and of the format that its suffix says",
+        ) from error
 
 
 def _check_file(file: Path) -> None:
     if file.suffix.lower() == ".csv" and not file.exists() and _module("csv_tables").has_tables(file):
-        return                      # a set of tables is named by what their names have in common
+        return  # a set of tables is named by what their names have in common
     if file.is_dir():
         raise LoadError("is a folder", expected="a file", do="name a file in it")
     if not file.exists():
@@ -135,6 +148,10 @@ def _check_file(file: Path) -> None:
     suffix = file.suffix.lower()
     for signature, words, suffixes in _SIGNATURES:
         if head.startswith(signature) != (suffix in suffixes) and (suffix in suffixes or suffix in _OWN):
-            raise LoadError("its content is not what its suffix says", place="first bytes",
-                            found=words if head.startswith(signature) else repr(head[:8]),
-                            expected=f"a {suffix} file", do="rename it, or write it again")
+            raise LoadError(
+                "its content is not what its suffix says",
+                place="first bytes",
+                found=words if head.startswith(signature) else repr(head[:8]),
+                expected=f"a {suffix} file",
+                do="rename it, or write it again",
+            )

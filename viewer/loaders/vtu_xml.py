@@ -25,8 +25,16 @@ from viewer.loaders.file_shapes import Stretch
 from viewer.model.arrays import Array
 
 _TYPES = {
-    "Int8": "i1", "UInt8": "u1", "Int16": "i2", "UInt16": "u2", "Int32": "i4", "UInt32": "u4",
-    "Int64": "i8", "UInt64": "u8", "Float32": "f4", "Float64": "f8",
+    "Int8": "i1",
+    "UInt8": "u1",
+    "Int16": "i2",
+    "UInt16": "u2",
+    "Int32": "i4",
+    "UInt32": "u4",
+    "Int64": "i8",
+    "UInt64": "u8",
+    "Float32": "f4",
+    "Float64": "f8",
 }
 _SECTIONS = ("Points", "Cells", "PointData", "CellData", "FieldData")
 # Deflate cannot do better than about 1032 : 1 (zlib's own documentation), lzma can.
@@ -45,7 +53,7 @@ class DataArray:
     section: str
     dtype: str
     components: int
-    tuples: int | None             # declared on field arrays
+    tuples: int | None  # declared on field arrays
     format: str
     offset: int | None
     text: list[bytes] = field(default_factory=list)
@@ -89,7 +97,7 @@ class VtuFile:
         self._stream.close()
 
     def error(self, problem: str, **parts: str) -> LoadError:
-        return LoadError(problem, file=self.path, **parts)  # type: ignore[arg-type]
+        return LoadError(problem, file=self.path, **parts)
 
     def read(self, array: DataArray, tuples: int) -> Array:
         """The values, (tuples,) or (tuples, components), in native byte order."""
@@ -128,21 +136,34 @@ class VtuFile:
         return f"{array.section}, array '{array.name}'"
 
     def _misfit(self, array: DataArray, found: int, expected: int) -> LoadError:
-        return self.error("an array's size does not fit its declaration", place=self._place(array),
-                          found=f"{found} bytes", expected=f"{expected} bytes")
+        return self.error(
+            "an array's size does not fit its declaration",
+            place=self._place(array),
+            found=f"{found} bytes",
+            expected=f"{expected} bytes",
+        )
 
     def _raw_start(self, array: DataArray, expected: int) -> int:
         at, size = self._appended + (array.offset or 0), self._header.itemsize
         if not self._appended or at + size > len(self._map):
-            raise self.error("the file ends before an array", place=self._place(array), found=f"{len(self._map)} bytes",
-                             expected=f"at least {at + size + expected}", do="the file is cut short: write it again")
+            raise self.error(
+                "the file ends before an array",
+                place=self._place(array),
+                found=f"{len(self._map)} bytes",
+                expected=f"at least {at + size + expected}",
+                do="the file is cut short: write it again",
+            )
         found = int(np.frombuffer(self._map[at : at + size], self._header)[0])
         if found != expected:
             raise self._misfit(array, found, expected)
         if at + size + found > len(self._map):
-            raise self.error("the file ends inside an array", place=self._place(array),
-                             found=f"{len(self._map)} bytes", expected=f"at least {at + size + found}",
-                             do="the file is cut short: write it again")
+            raise self.error(
+                "the file ends inside an array",
+                place=self._place(array),
+                found=f"{len(self._map)} bytes",
+                expected=f"at least {at + size + found}",
+                do="the file is cut short: write it again",
+            )
         return at + size
 
     def _payload(self, array: DataArray, expected: int) -> bytes:
@@ -152,7 +173,9 @@ class VtuFile:
                 start = self._raw_start(array, expected)
                 return self._map[start : start + expected]
             at = self._appended + (array.offset or 0)
-            return self._inflated(array, expected, lambda start, size: self._map[at + start : at + start + size], True)
+            return self._inflated(
+                array, expected, lambda start, size: self._map[at + start : at + start + size], True
+            )
         if array.format == "appended":
             at = self._appended + (array.offset or 0)
             text_at: Callable[[int, int], bytes] = lambda start, size: self._map[at + start : at + start + size]  # noqa: E731
@@ -168,7 +191,7 @@ class VtuFile:
         found = int(np.frombuffer(first, self._header, 1)[0])
         if found != expected:
             raise self._misfit(array, found, expected)
-        if text_at(0, _base64_length(size)).endswith(b"="):     # header and data encoded one after the other
+        if text_at(0, _base64_length(size)).endswith(b"="):  # header and data encoded one after the other
             data = self._decoded(array, text_at(_base64_length(size), _base64_length(expected)))
         else:
             data = self._decoded(array, text_at(0, _base64_length(size + expected)))[size:]
@@ -176,9 +199,7 @@ class VtuFile:
             raise self._misfit(array, len(data), expected)
         return data
 
-    def _inflated(
-        self, array: DataArray, expected: int, bytes_at: Callable[[int, int], bytes], raw: bool
-    ) -> bytes:
+    def _inflated(self, array: DataArray, expected: int, bytes_at: Callable[[int, int], bytes], raw: bool) -> bytes:
         """Blocks: header of (blocks, size of one, size of the last or 0, compressed sizes …), then the blocks."""
         size = self._header.itemsize
 
@@ -205,8 +226,11 @@ class VtuFile:
             raise self._misfit(array, len(self._map), head)
         packed = numbers(fetch(0, head), 3 + blocks)[3:]
         if sum(packed) > len(self._map) or found > _LARGEST_RATIO[self._compressor] * max(sum(packed), 1) + 65536:
-            raise self.error("an array declares more than its compressed bytes can hold", place=self._place(array),
-                             found=f"{sum(packed)} bytes for {found}")
+            raise self.error(
+                "an array declares more than its compressed bytes can hold",
+                place=self._place(array),
+                found=f"{sum(packed)} bytes for {found}",
+            )
         data = fetch(head if raw else _base64_length(head), sum(packed))
         pieces, at = [], 0
         for number, length in enumerate(packed, 1):
@@ -229,19 +253,31 @@ class VtuFile:
         try:
             return base64.b64decode(text, validate=True)
         except binascii.Error as error:
-            raise self.error("base64 text is damaged or cut short", place=self._place(array), found=str(error)) from None
+            raise self.error(
+                "base64 text is damaged or cut short", place=self._place(array), found=str(error)
+            ) from None
 
     def _ascii(self, array: DataArray, count: int) -> Array:
         words = b"".join(array.text).split()
         if len(words) != count:
-            raise self.error("an array's size does not fit its declaration", place=self._place(array),
-                             found=f"{len(words)} numbers", expected=f"{count}")
+            raise self.error(
+                "an array's size does not fit its declaration",
+                place=self._place(array),
+                found=f"{len(words)} numbers",
+                expected=f"{count}",
+            )
         kind = np.dtype(array.dtype)
         try:
-            values = np.array(words, "S").astype(np.float64 if kind.kind == "f" else kind) if count else np.empty(0, kind)
+            values = (
+                np.array(words, "S").astype(np.float64 if kind.kind == "f" else kind) if count else np.empty(0, kind)
+            )
         except (ValueError, OverflowError) as error:
-            raise self.error("an array holds something that is no number", place=self._place(array),
-                             found=str(error), expected=f"numbers of {array.dtype}") from None
+            raise self.error(
+                "an array holds something that is no number",
+                place=self._place(array),
+                found=str(error),
+                expected=f"numbers of {array.dtype}",
+            ) from None
         return values.astype(kind)
 
 
@@ -271,8 +307,13 @@ class _Head:
         try:
             parser.Parse(text, True)
         except xml.parsers.expat.ExpatError as error:
-            raise self.owner.error("is not a complete XML file", place=f"line {error.lineno}", found=str(error),
-                                   expected="a .vtu file", do="write it again; it may be cut short") from None
+            raise self.owner.error(
+                "is not a complete XML file",
+                place=f"line {error.lineno}",
+                found=str(error),
+                expected="a .vtu file",
+                do="write it again; it may be cut short",
+            ) from None
         if self._pieces == 0:
             raise self.owner.error("holds no mesh", expected="VTKFile, UnstructuredGrid, Piece")
 
@@ -300,8 +341,11 @@ class _Head:
 
     def _root(self, tag: str, given: dict[str, str]) -> None:
         if tag != "VTKFile" or given.get("type") != "UnstructuredGrid":
-            raise self.owner.error("is not an unstructured grid", found=f"<{tag} type=\"{given.get('type', '')}\">",
-                                   expected='<VTKFile type="UnstructuredGrid">')
+            raise self.owner.error(
+                "is not an unstructured grid",
+                found=f'<{tag} type="{given.get("type", "")}">',
+                expected='<VTKFile type="UnstructuredGrid">',
+            )
         self.order = ">" if given.get("byte_order") == "BigEndian" else "<"
         header = given.get("header_type", "UInt32")
         if header not in ("UInt32", "UInt64"):
@@ -319,7 +363,7 @@ class _Head:
         section, kind = self._stack[-1], given.get("type", "")
         name = given.get("Name", "Points" if section == "Points" else "")
         if kind not in _TYPES:
-            return                                   # strings and bits are nothing we need
+            return  # strings and bits are nothing we need
         numbers = {}
         for key, default in (("NumberOfComponents", "1"), ("NumberOfTuples", ""), ("offset", "")):
             text = given.get(key, default)
@@ -329,8 +373,15 @@ class _Head:
         format_ = given.get("format", "ascii")
         if format_ not in ("ascii", "binary", "appended"):
             raise self.owner.error("unknown format", place=f"{section}, array '{name}'", found=format_)
-        array = DataArray(name, section, _TYPES[kind], numbers["NumberOfComponents"] or 1, numbers["NumberOfTuples"],
-                          format_, numbers["offset"])
+        array = DataArray(
+            name,
+            section,
+            _TYPES[kind],
+            numbers["NumberOfComponents"] or 1,
+            numbers["NumberOfTuples"],
+            format_,
+            numbers["offset"],
+        )
         if name in self.arrays[section]:
             raise self.owner.error("an array is given twice", place=f"{section}, array '{name}'")
         self.arrays[section][name] = self._open = array

@@ -13,9 +13,17 @@ from viewer.model.arrays import Array, frozen
 class ShapeSource(Protocol):
     """Where shapes come from: an array, or a file and an offset. Picklable."""
 
-    count: int
-    has_rotations: bool
-    is_complex: bool
+    @property
+    def count(self) -> int:
+        """Number of modes."""
+
+    @property
+    def has_rotations(self) -> bool:
+        """Whether every mode has rotations."""
+
+    @property
+    def is_complex(self) -> bool:
+        """Whether shapes are complex."""
 
     def translations(self, index: int) -> Array:
         """(n_nodes, 3) float64 or complex128, read-only."""

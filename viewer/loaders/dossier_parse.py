@@ -1,0 +1,136 @@
+"""From the text of ``dossier.toml`` to checked tables, and pydantic's words into ours."""
+
+from __future__ import annotations
+
+import difflib
+import tomllib
+from collections.abc import Sequence
+from pathlib import Path
+from typing import Any, NoReturn
+
+from pydantic import BaseModel, ValidationError
+
+from viewer.errors import DossierError
+from viewer.loaders import dossier_schema as schema
+
+_LARGEST_FILE = 10_000_000
+
+
+def parsed(path: Path) -> tuple[str, schema.DossierTable]:
+    """The text and the checked tables."""
+    try:
+        if path.is_dir():
+            raise DossierError("is a folder", file=path, expected="a dossier file", do="name the .toml file in it")
+        if path.stat().st_size > _LARGEST_FILE:
+            raise DossierError("is too large for a dossier", file=path, found=f"{path.stat().st_size} bytes")
+        text = path.read_bytes().decode("utf-8-sig")
+    except FileNotFoundError:
+        raise DossierError("there is no such file", file=path, do="check the path") from None
+    except UnicodeDecodeError as error:
+        raise DossierError("is not UTF-8 text", file=path, place=f"byte {error.start}", do="save as UTF-8") from None
+    except OSError as error:
+        raise DossierError("cannot be opened", file=path, found=error.strerror or str(error)) from None
+    try:
+        data = tomllib.loads(text)
+    except (tomllib.TOMLDecodeError, RecursionError) as error:
+        raise DossierError("is not valid TOML", file=path, found=str(error), do="mend the line named") from None
+    try:
+        return text, schema.DossierTable.model_validate(data)
+    except ValidationError as error:
+        _raise_translated(path, data, error)
+
+
+# --- pydantic's words into ours ---
+
+
+def _raise_translated(path: Path, data: Any, error: ValidationError) -> NoReturn:
+    issues = error.errors(include_url=False)
+    # unknown keys first: a misspelt key explains the "missing" one beside it
+    issues.sort(key=lambda issue: issue["type"] != "extra_forbidden")
+    issue = issues[0]
+    location = [part for part in issue["loc"] if not (isinstance(part, str) and _is_branch(part))]
+    kind, context = issue["type"], issue.get("ctx", {})
+    more = f" (and {len(issues) - 1} more)" if len(issues) > 1 else ""
+    key = str(location[-1]) if location else ""
+    given = short(issue["input"])
+    if kind == "extra_forbidden":
+        known = list(_model_at(location[:-1]).model_fields)
+        close = difflib.get_close_matches(key, known, 1)
+        raise DossierError(
+            f"unknown key '{key}'{more}",
+            file=path,
+            place=_place(data, location[:-1]),
+            expected=f"one of: {', '.join(known)}",
+            do=f"did you mean '{close[0]}'?" if close else "remove it",
+        )
+    if kind == "missing":
+        raise DossierError(f"'{key}' is missing{more}", file=path, place=_place(data, location[:-1]))
+    if kind == "value_error":
+        words, _, expected = str(context["error"]).partition("expected ")
+        raise DossierError(
+            (words.strip(" ,") or "is not complete") + more,
+            file=path,
+            place=_place(data, location),
+            expected=expected,
+        )
+    message = issue["msg"][0].lower() + issue["msg"][1:]
+    for theirs, ours in (
+        ("input should be ", ""),
+        ("a valid ", "a "),
+        ("dictionary", "table"),
+        ("list", "list […]"),
+        (" an instance of", ""),
+        (" after validation", ""),
+    ):
+        message = message.replace(theirs, ours)
+    raise DossierError(
+        f"'{key}' has a wrong value{more}", file=path, place=_place(data, location), found=given, expected=message
+    )
+
+
+def _is_branch(part: str) -> bool:
+    """Names that pydantic puts into a location for a member of a union, not for a key."""
+    return "[" in part or part in ("str", "float", "int", "bool") or part.startswith("literal")
+
+
+def _model_at(location: Sequence[int | str]) -> type[BaseModel]:
+    """The table type that a location of keys and indices leads to."""
+    model: Any = schema.DossierTable
+    for part in location:
+        if isinstance(part, int):
+            continue
+        if hasattr(model, "model_fields") and part in model.model_fields:
+            model = _inner_table(model.model_fields[part].annotation)
+    return model
+
+
+def _inner_table(annotation: Any) -> Any:
+    if isinstance(annotation, type) and issubclass(annotation, BaseModel):
+        return annotation
+    for inner in getattr(annotation, "__args__", ()):
+        found = _inner_table(inner)
+        if found is not None:
+            return found
+    return None
+
+
+def _place(data: Any, location: Sequence[int | str]) -> str:
+    """``designs 2 ("modified"), assign 1, thickness``: counted from 1, named where there is a name."""
+    words: list[str] = []
+    for part in location:
+        try:
+            data = data[part]
+        except (KeyError, IndexError, TypeError):
+            data = None
+        if isinstance(part, int) and words:
+            words[-1] += f" {part + 1}"
+            if isinstance(data, dict) and isinstance(data.get("name"), str):
+                words[-1] += f' ("{data["name"]}")'
+        else:
+            words.append(str(part))
+    return ", ".join(words)
+
+
+def short(value: Any) -> str:
+    text = repr(value)
+    return text if len(text) <= 60 else text[:57] + "…"

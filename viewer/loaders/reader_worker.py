@@ -1,0 +1,340 @@
+"""The process in which meshio and VTK read files: ``python -m viewer.loaders.reader_worker``.
+
+These readers can end the process, abort, crash or fill the memory on a bad file; here that costs nothing but the
+worker. A request is one line of JSON on standard input: ``{"path", "how": "meshio" | "vtk", "folder"}``. The answer
+is one line of JSON on the standard output that the process was started with: ``{"arrays": [[section, name], …],
+"notes": […]}`` with ``arrays.npz`` in the folder, or ``{"error": {…}}``. Whatever the libraries print goes nowhere.
+
+Both readers hand over what a ``.vtu`` file would hold (VTK's cell arrays, groups as masks), so that one piece of
+code gives it a meaning: :mod:`viewer.loaders.vtu_files`.
+"""
+
+from __future__ import annotations
+
+import contextlib
+import json
+import mmap
+import os
+import re
+import sys
+from collections.abc import Iterable, Iterator
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+
+from viewer.errors import HingelightError, LoadError
+from viewer.loaders.array_names import group_array, mask
+
+_SMALLEST_LIMIT, _SHARE_OF_MEMORY = 4 << 30, 0.75
+_XML_SUFFIXES = (".xml", ".xdmf", ".xmf", ".vtu", ".vtp")
+# Things in text decks that meshio skips in silence and that change the meaning of what follows.
+_NOT_UNDERSTOOD = re.compile(
+    rb"^\s*(\*?INCLUDE\b|\*(?:TRANSFORM|SYSTEM)\b|CORD[12][RCS]\b)[^\r\n]{0,60}", re.I | re.M
+)
+_LEGACY_COUNT = re.compile(
+    rb"(?:^|\n)(POINTS|CELLS|CELL_TYPES|POLYGONS|VERTICES|LINES|TRIANGLE_STRIPS|POINT_DATA|CELL_DATA)[ \t]+(-?\d+)"
+)
+
+
+class Arrays:
+    """Named arrays by section, as in a ``.vtu`` file."""
+
+    def __init__(self) -> None:
+        self.values: dict[tuple[str, str], np.ndarray] = {}
+        self.notes: list[str] = []
+
+    def put(self, section: str, name: str, values: Any) -> None:
+        array = np.asarray(values)
+        if array.dtype.kind in "fiub":
+            array = array.astype(np.uint8) if array.dtype.kind == "b" else array
+            self.values[section, name] = array.astype(array.dtype.newbyteorder("="))
+
+
+def read_by_meshio(path: Path) -> Arrays:
+    """Any mesh that meshio reads."""
+    import meshio
+
+    _check_text(path)
+    arrays = Arrays()
+    tags: list[np.ndarray] = []
+    with _node_tags_into(tags):
+        # the first reader that meshio tries for .msh is another one and may never end
+        mesh = meshio.read(path, file_format="gmsh" if path.suffix.lower() == ".msh" else None)
+    points = np.asarray(mesh.points, float)
+    if points.ndim == 2 and points.shape[1] == 2:
+        points = np.column_stack([points, np.zeros(len(points))])
+        arrays.notes.append("the file is two-dimensional: z was taken as 0")
+    arrays.put("Points", "Points", points)
+    _put_cells(arrays, mesh.cells)
+    if tags and len(tags[-1]) == len(points):
+        arrays.put("PointData", "node_id", tags[-1])
+    for name, values in mesh.point_data.items():
+        arrays.put("PointData", name, values)
+    for name in ("freq_hz", "damping"):
+        if name in mesh.field_data:
+            arrays.put("FieldData", name, mesh.field_data[name])
+    for name, rows in mesh.point_sets.items():
+        arrays.put("PointData", group_array(name), mask(np.asarray(rows, np.int64), len(points)))
+    for name, members in _cell_groups(mesh):
+        arrays.put("CellData", group_array(name), members)
+    for number, names in getattr(mesh, "point_tags", {}).items():
+        for name in names:
+            _join(arrays, "PointData", name, np.asarray(mesh.point_data["point_tags"]) == number)
+    return arrays
+
+
+def read_by_vtk(path: Path) -> Arrays:
+    """Legacy .vtk files and VTK's XML files."""
+    import pyvista
+    from vtkmodules.vtkCommonCore import vtkOutputWindow, vtkStringOutputWindow
+    from vtkmodules.vtkIOLegacy import vtkGenericDataObjectReader
+    from vtkmodules.vtkIOXML import vtkXMLPolyDataReader, vtkXMLUnstructuredGridReader
+
+    suffix = path.suffix.lower()
+    reader: Any
+    _check_text(path)
+    if suffix == ".vtk":
+        declared = _check_legacy(path)
+        reader = vtkGenericDataObjectReader()
+        for what in ("Scalars", "Vectors", "Tensors", "Normals", "Fields", "TCoords", "ColorScalars"):
+            getattr(reader, f"ReadAll{what}On")()
+    else:
+        declared = None
+        reader = vtkXMLPolyDataReader() if suffix == ".vtp" else vtkXMLUnstructuredGridReader()
+    said, errors = vtkStringOutputWindow(), []
+    vtkOutputWindow.SetInstance(said)
+    reader.AddObserver("ErrorEvent", lambda *_: errors.append(1))
+    reader.SetFileName(str(path))
+    reader.Update()
+    words = said.GetOutput()
+    if errors or "ERR|" in words or reader.GetErrorCode():
+        text = re.sub(r"\s+", " ", words.split("): ", 1)[-1])[:160] or f"error code {reader.GetErrorCode()}"
+        raise LoadError("VTK's reader reports an error", found=text, do="the file may be cut short: write it again")
+    data = reader.GetOutput()
+    if data is None or not hasattr(data, "GetPointData") or data.GetNumberOfPoints() == 0:
+        raise LoadError("holds no mesh with points", found="nothing" if data is None else data.GetClassName())
+    if declared is not None and data.IsA("vtkPointSet") and declared != data.GetNumberOfPoints():
+        raise LoadError(
+            "the number of points is not the one declared",
+            found=str(data.GetNumberOfPoints()),
+            expected=str(declared),
+        )
+    grid = pyvista.wrap(data)
+    grid = grid if isinstance(grid, pyvista.UnstructuredGrid) else grid.cast_to_unstructured_grid()
+    arrays = Arrays()
+    arrays.put("Points", "Points", grid.points)
+    arrays.put("Cells", "types", grid.celltypes)
+    arrays.put("Cells", "offsets", grid.offset[1:])
+    arrays.put("Cells", "connectivity", grid.cell_connectivity)
+    for section, source in (
+        ("PointData", grid.point_data),
+        ("CellData", grid.cell_data),
+        ("FieldData", grid.field_data),
+    ):
+        for name in source:
+            arrays.put(section, name, source[name])
+    return arrays
+
+
+def _put_cells(arrays: Arrays, blocks: Iterable[Any]) -> None:
+    from viewer.cells import by_meshio
+
+    types, sizes, nodes, unknown = [], [], [np.empty(0, np.int64)], []
+    for block in blocks:
+        kind, data = by_meshio(block.type), np.asarray(block.data)
+        known = kind is not None and data.dtype.kind in "iu" and data.ndim == 2
+        if not known:
+            unknown.append(f"{len(block.data)} of type {block.type}")
+        types.append(np.full(len(block.data), kind.vtk_type if known and kind else 0, np.int64))
+        sizes.append(np.full(len(block.data), data.shape[1] if known else 0, np.int64))
+        nodes.append(data.ravel() if known else np.empty(0, np.int64))
+    if unknown:
+        arrays.notes.append(f"cells left out, their kind is not known here: {', '.join(unknown)}")
+    arrays.put("Cells", "types", np.concatenate([*types, np.empty(0, np.int64)]))
+    arrays.put("Cells", "offsets", np.cumsum(np.concatenate([*sizes, np.empty(0, np.int64)])))
+    arrays.put("Cells", "connectivity", np.concatenate(nodes))
+
+
+def _cell_groups(mesh: Any) -> Iterator[tuple[str, np.ndarray]]:
+    """Names and masks over all cells: cell sets, physical groups, families."""
+    lengths = [len(block.data) for block in mesh.cells]
+    found: dict[str, np.ndarray] = {}
+
+    def add(name: str, number: int, members: np.ndarray) -> None:
+        total = found.setdefault(name, np.zeros(sum(lengths), np.uint8))
+        start = sum(lengths[:number])
+        total[start : start + lengths[number]][members] = 1
+
+    for name, parts in mesh.cell_sets.items():
+        if not name.startswith("gmsh:"):
+            for number, rows in enumerate(parts):
+                if rows is not None and len(rows):
+                    add(name, number, np.asarray(rows, np.int64))
+    names = {(int(v[0]), int(v[1])): k for k, v in mesh.field_data.items() if np.size(v) == 2}
+    families = getattr(mesh, "cell_tags", {})
+    for number, block in enumerate(mesh.cells):
+        for key, word in (("gmsh:physical", "physical"), ("medit:ref", "reference"), ("cell_tags", "")):
+            if key not in mesh.cell_data:
+                continue
+            values = np.asarray(mesh.cell_data[key][number])
+            for tag in np.unique(values[values != 0]).tolist():
+                if key == "cell_tags":
+                    labels = families.get(tag, [])
+                elif key == "gmsh:physical":
+                    labels = [names.get((tag, block.dim), f"{word} {tag}")]
+                else:
+                    labels = [f"{word} {tag}"]
+                for label in labels:
+                    add(label, number, values == tag)
+    yield from found.items()
+
+
+def _join(arrays: Arrays, section: str, name: str, members: np.ndarray) -> None:
+    key = (section, group_array(name))
+    arrays.values[key] = (arrays.values.get(key, np.zeros(len(members), np.uint8)) | members).astype(np.uint8)
+
+
+@contextlib.contextmanager
+def _node_tags_into(tags: list[np.ndarray]) -> Iterator[None]:
+    """Keeps the node tags of .msh files, which meshio reads and throws away. Without effect when meshio changes."""
+    from meshio import gmsh
+
+    kept = []
+    for module in (getattr(gmsh, "_gmsh41", None), getattr(gmsh, "_gmsh40", None), getattr(gmsh, "_gmsh22", None)):
+        original = getattr(module, "_read_nodes", None)
+        if original is None:
+            continue
+
+        def listening(*args: Any, _original: Any = original, **named: Any) -> Any:
+            answer = _original(*args, **named)
+            if isinstance(answer, tuple) and len(answer) > 1 and np.ndim(answer[1]) == 1:
+                tags.append(np.asarray(answer[1]))
+            return answer
+
+        kept.append((module, original))
+        module._read_nodes = listening  # type: ignore[union-attr]
+    try:
+        yield
+    finally:
+        for module, original in kept:
+            module._read_nodes = original  # type: ignore[union-attr]
+
+
+# --- guards: look before a library does ---
+
+
+def _check_text(path: Path) -> None:
+    suffix = path.suffix.lower()
+    with path.open("rb") as stream, mmap.mmap(stream.fileno(), 0, access=mmap.ACCESS_READ) as data:
+        if suffix in _XML_SUFFIXES:
+            if re.search(rb"<!(DOCTYPE|ENTITY)", data):
+                raise LoadError("declares a document type or entities", do="remove them")
+            for reference in re.findall(rb"[>\s]([^<>\s]+\.(?:h5|hdf5|bin|raw))\b", data):
+                name = reference.decode("utf-8", "replace")
+                if os.path.isabs(name) or ".." in Path(name).parts or ":" in name.split(".h5")[0]:
+                    raise LoadError(
+                        "refers to a file outside its folder",
+                        found=name[:120],
+                        do="put the files together into one folder",
+                    )
+        elif suffix in (".stl", ".ply"):
+            _check_surface(suffix, data)
+        elif data[:4096].count(b"\0") == 0:
+            match = _NOT_UNDERSTOOD.search(data)
+            if match:
+                line = data[: match.start(1)].count(b"\n") + 1
+                raise LoadError(
+                    "holds something that is not understood and would change the mesh",
+                    place=f"line {line}",
+                    found=match[0].decode("ascii", "replace").strip(),
+                    do="resolve includes and local coordinate systems, or export .vtu or .msh",
+                )
+
+
+def _check_surface(suffix: str, data: mmap.mmap) -> None:
+    if suffix == ".stl" and not data[:512].lstrip().startswith(b"solid"):
+        count = int.from_bytes(data[80:84], "little")
+        if len(data) != 84 + 50 * count:
+            raise LoadError(
+                "the number of triangles does not fit the file",
+                found=f"{len(data)} bytes",
+                expected=f"{84 + 50 * count} bytes for {count} triangles",
+            )
+    for count in re.findall(rb"\nelement \w+ (\d+)", data[:8192]) if suffix == ".ply" else ():
+        if int(count) > len(data):
+            raise LoadError("declares more than the file can hold", found=count.decode())
+
+
+def _check_legacy(path: Path) -> int | None:
+    """Every declared count against the file's size; the number of points declared, if it is."""
+    points = None
+    with path.open("rb") as stream, mmap.mmap(stream.fileno(), 0, access=mmap.ACCESS_READ) as data:
+        if not data[:256].lower().startswith(b"# vtk datafile"):
+            raise LoadError("is no legacy VTK file", found=repr(data[:20]), expected="# vtk DataFile Version …")
+        for match in _LEGACY_COUNT.finditer(data):
+            word, count = match[1].decode(), int(match[2])
+            if count < 0 or count > len(data):
+                raise LoadError(
+                    "declares more than the file can hold", place=word, found=str(count), expected=f"0 to {len(data)}"
+                )
+            if word == "POINTS" and points is None:
+                points = count
+    return points
+
+
+# --- the loop ---
+
+
+def _limit_memory() -> None:
+    with contextlib.suppress(ImportError, ValueError, OSError, AttributeError):
+        import resource
+
+        physical = os.sysconf("SC_PAGE_SIZE") * os.sysconf("SC_PHYS_PAGES")
+        limit = max(_SMALLEST_LIMIT, int(physical * _SHARE_OF_MEMORY))
+        resource.setrlimit(resource.RLIMIT_AS, (limit, limit))
+        resource.setrlimit(resource.RLIMIT_CORE, (0, 0))
+
+
+def _answer(request: dict[str, str]) -> dict[str, Any]:
+    path = Path(request["path"])
+    try:
+        arrays = {"meshio": read_by_meshio, "vtk": read_by_vtk}[request["how"]](path)
+        keys = list(arrays.values)
+        np.savez(Path(request["folder"]) / "arrays.npz", *arrays.values.values())
+        return {"arrays": keys, "notes": arrays.notes}
+    except HingelightError as error:
+        return {"error": error.to_dict()}
+    except MemoryError:
+        return {"error": {"problem": "needs more memory than a reader may take"}}
+    except BaseException as error:  # SystemExit is how meshio answers a bad file
+        return {
+            "error": {
+                "problem": "cannot be read",
+                "found": _words(error),
+                "do": "check that the file is complete and of the format that its suffix says",
+            }
+        }
+
+
+def _words(error: BaseException) -> str:
+    text = re.sub(r"\s+", " ", str(error)).strip()
+    if isinstance(error, SystemExit):
+        return "meshio gave the file up"
+    return f"{type(error).__name__}: {text}"[:200] if text else type(error).__name__
+
+
+def main() -> None:
+    """Answer requests until standard input ends."""
+    answers = os.fdopen(os.dup(1), "w", encoding="utf-8")
+    nowhere = os.open(os.devnull, os.O_WRONLY)
+    os.dup2(nowhere, 1)
+    os.dup2(nowhere, 2)
+    _limit_memory()
+    for line in sys.stdin:
+        answers.write(json.dumps(_answer(json.loads(line))) + "\n")
+        answers.flush()
+
+
+if __name__ == "__main__":
+    main()
