@@ -15,7 +15,7 @@ _HOME = {
     "save_png": "stills",
     "save_strip": "strip",
 }
-__all__ = ["RenderRequest", "image", "save_gif", "save_png", "save_strip"]  # noqa: F822 (found by __getattr__)
+__all__ = ["RenderRequest", "image", "save_gif", "save_png", "save_strip"]
 
 
 def __getattr__(name: str) -> Any:

@@ -96,7 +96,6 @@ def pick(colours: Array, share: Array) -> Array:
 
 
 def mix(base: str, tint: str, amount: float) -> str:
-    """``base`` with ``amount`` (0…1) of ``tint`` blended in OKLab, ``#RRGGBB``."""
-    lab = to_oklab(np.array([rgb(base), rgb(tint)]))
-    r, g, b = np.round(from_oklab((1 - amount) * lab[0] + amount * lab[1]) * 255).astype(int)
+    """``base`` with ``amount`` (0…1) of ``tint`` laid over it, as a pane of that opacity would: ``#RRGGBB``."""
+    r, g, b = (round(255 * ((1 - amount) * x + amount * y)) for x, y in zip(rgb(base), rgb(tint), strict=True))
     return f"#{r:02X}{g:02X}{b:02X}"

@@ -8,14 +8,14 @@ import numpy as np
 
 from viewer.model.arrays import Array
 from viewer.scene import tokens
+from viewer.scene.marks import mark_pieces
 from viewer.scene.motion import swing
-from viewer.scene.picture import Body, Picture, View
+from viewer.scene.picture import Picture, View
 from viewer.scene.primitives import Box, Frame, sheet_size
 
 WIDE = 3.0                     # a body wider than this on the screen is compared stacked, not left and right
 KEY_TOP = 60                   # side by side: the title key's height
 BAR_ROOM = 84                  # side by side: room for the colour bar below the body
-MARK_ROOM = 0.02               # pegs and beads around the nodes they mark, as a share of the diagonal
 
 
 @dataclass(frozen=True, eq=False)
@@ -33,11 +33,20 @@ class Camera:
     toward_eye: Array
     metres_per_pixel: float
 
+    def same_as(self, other: Camera) -> bool:
+        """Whether pictures from both look the same, rounding apart."""
+        near = 1e-6 * self.metres_per_pixel
+        return (
+            abs(self.metres_per_pixel - other.metres_per_pixel) < near
+            and bool(np.allclose([self.right, self.up], [other.right, other.up], rtol=0, atol=1e-9))
+            and bool(np.allclose(self.focus, other.focus, rtol=1e-12, atol=near))
+        )
+
     def project(self, points: Array, box: Box) -> Array:
         """(k, 2) pixels in ``box`` of points (k, 3) in metres."""
         away = np.atleast_2d(points) - self.focus
-        x, y = (box[0] + box[2]) / 2, (box[1] + box[3]) / 2
-        return np.stack([x + away @ self.right / self.metres_per_pixel, y - away @ self.up / self.metres_per_pixel], 1)
+        middle = np.array([box[0] + box[2], box[1] + box[3]]) / 2
+        return middle + away @ np.stack([self.right, -self.up], axis=1) / self.metres_per_pixel
 
 
 def axes(view: View) -> tuple[Array, Array, Array]:
@@ -51,30 +60,34 @@ def axes(view: View) -> tuple[Array, Array, Array]:
     return right, np.cross(eye, right), eye
 
 
-def reach(body: Body, right: Array, up: Array) -> Array:
-    """(2, 2) lower and upper corner along ``right`` and ``up``, m, of everything drawn of a body over a cycle."""
-    mesh = body.mesh
-    rows = mesh.used_nodes if len(mesh.used_nodes) else np.arange(mesh.n_nodes)
-    extent = []
-    for axis in (right, up):
-        rest = mesh.points[rows] @ axis
-        move = abs(body.factor) * swing(body.shape[rows], axis)
-        low, high = [np.min(rest - move)], [np.max(rest + move)]
-        room = MARK_ROOM * mesh.diagonal
-        for mark in (*body.masses, *body.points):
-            at = float(mark.position @ axis)
-            swung = abs(body.factor) * float(swing(mark.motion[:3], axis)) + room
-            low.append(at - swung)
-            high.append(at + swung)
-        extent.append((min(low), max(high)))
-    return np.array(extent).T
-
-
 def scene_box(picture: Picture) -> Array:
-    """(2, 2) lower and upper corner of all bodies over a cycle, along right and up of the picture's view, m."""
+    """(2, 2) lower and upper corner, along right and up of the picture's view in m, of everything drawn of all
+    bodies and their marks over a cycle: exact, since each node's largest motion along an axis is."""
     right, up, _ = axes(picture.view)
-    boxes = np.array([reach(body, right, up) for body in picture.bodies])
-    return np.array([boxes[:, 0].min(axis=0), boxes[:, 1].max(axis=0)])
+    low, high = np.full(2, np.inf), np.full(2, -np.inf)
+    for points, move in _drawn(picture):
+        for k, axis in enumerate((right, up)):
+            rest, reach = points @ axis, swing(move, axis)
+            low[k] = min(low[k], np.min(rest - reach))
+            high[k] = max(high[k], np.max(rest + reach))
+    return np.array([low, high])
+
+
+def shown_box(picture: Picture) -> Array:
+    """(2, 3) bounding box in m of everything drawn over a cycle, for clipping planes."""
+    drawn = _drawn(picture)
+    low = np.min([np.min(points - np.abs(move), axis=0) for points, move in drawn], axis=0)
+    return np.array([low, np.max([np.max(points + np.abs(move), axis=0) for points, move in drawn], axis=0)])
+
+
+def _drawn(picture: Picture) -> list[tuple[Array, Array]]:
+    """(points (n, 3), drawn amplitude (n, 3)), m, of bodies and marks."""
+    found = [(piece.points, piece.move) for pieces in mark_pieces(picture) for piece in pieces]
+    for body in picture.bodies:
+        rows = body.mesh.used_nodes
+        if len(rows):
+            found.append((body.mesh.points[rows], body.factor * body.shape[rows]))
+    return found or [(np.zeros((1, 3)), np.zeros((1, 3)))]
 
 
 def panes(picture: Picture, band_height: float, wide: bool = False) -> tuple[Box, ...]:
@@ -109,16 +122,9 @@ def fit(picture: Picture, band_height: float = tokens.BAND_HEIGHT) -> tuple[Came
     scale = float(np.max(size / room))
     middle = (low + high) / 2
     middle[1] += (top - bottom) / 2 * scale            # the body sits in the middle of what is left free
-    depth = np.mean([eye @ (b.mesh.points.min(axis=0) + b.mesh.points.max(axis=0)) / 2 for b in picture.bodies])
+    depth = float(eye @ shown_box(picture).mean(axis=0))
     focus = middle[0] * right + middle[1] * up + depth * eye
     return Camera(focus, right, up, eye, scale), boxes
-
-
-def shown_box(picture: Picture, index: int) -> Array:
-    """(2, 3) bounding box in m of body ``index`` at both extremes, for clipping planes."""
-    body = picture.bodies[index]
-    move = abs(body.factor) * np.abs(body.shape)
-    return np.array([(body.mesh.points - move).min(axis=0), (body.mesh.points + move).max(axis=0)])
 
 
 def frame(picture: Picture, camera: Camera, boxes: tuple[Box, ...]) -> Frame:

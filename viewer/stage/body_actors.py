@@ -23,7 +23,7 @@ GHOST_LIFT = 0.5               # px: less, so that the contour wins where body a
 
 
 class Motion:
-    """Skin nodes of a body at a phase, float32 about a local origin, so that far-off coordinates keep their digits."""
+    """Skin nodes of a body at a phase, float32 about a local origin: far-off coordinates keep their digits."""
 
     def __init__(self, body: Body, surface: Surface) -> None:
         points = body.mesh.points[surface.nodes]

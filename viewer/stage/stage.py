@@ -6,6 +6,8 @@ side-by-side picture has a viewport of its own; all viewports share one camera.
 
 from __future__ import annotations
 
+from typing import Any
+
 import numpy as np
 import pyvista as pv
 from PIL import Image
@@ -15,11 +17,14 @@ from vtkmodules.vtkRenderingCore import vtkLight, vtkRenderer
 
 from viewer.model.arrays import Array
 from viewer.scene import view
-from viewer.scene.note_layout import note_height
-from viewer.scene.picture import Picture
+from viewer.scene.marks import mark_pieces
+from viewer.scene.picture import Picture, View
+from viewer.scene.sheet import SheetPlan, note_height, plan_sheet
 from viewer.scene.surface import Surface, surface_of
 from viewer.scene.tokens import BASE_WIDTH, THEMES, rgb
 from viewer.stage.body_actors import BodyActors, DashedBody
+from viewer.stage.mark_actors import MarkActors
+from viewer.stage.sheet_actors import SheetActors
 from viewer.stage.windows import off_screen
 
 SUPERSAMPLE = 2
@@ -37,13 +42,12 @@ class Stage:
     def __init__(self, picture: Picture, plotter: pv.Plotter | None = None) -> None:
         self.picture = picture
         self._own = plotter is None
-        if plotter is None:
-            plotter = off_screen(SUPERSAMPLE * picture.width, SUPERSAMPLE * picture.height)
-        self.plotter = plotter
-        self._window = plotter.render_window
+        self.plotter = plotter or off_screen(SUPERSAMPLE * picture.width, SUPERSAMPLE * picture.height)
+        self._window: Any = self.plotter.render_window
         self._window.SetMultiSamples(0)
         self._window.SetNumberOfLayers(3)
         self._added: list[vtkRenderer] = []
+        self._plan: tuple[view.Camera, SheetPlan] | None = None
         self._build({})
 
     def show(self, picture: Picture, *, keep_camera: bool = False) -> None:
@@ -61,6 +65,11 @@ class Stage:
         camera = self.camera()
         for actors in self._bodies:
             actors.draw(phase, camera)
+        for marks in self._marks:
+            marks.draw(phase)
+        if self._plan is None or not camera.same_as(self._plan[0]):
+            self._plan = camera, plan_sheet(self.picture, view.frame(self.picture, camera, self._boxes))
+        self._sheet.show(self._plan[1].at(phase))
 
     def image(self, phase: float | None = None) -> Array:
         """(h, w, 3) uint8 sRGB at the picture's size, top row first; ``phase`` draws first when given."""
@@ -88,8 +97,8 @@ class Stage:
     def camera(self) -> view.Camera:
         """The camera as it stands now: in a window the user may have turned it."""
         camera = self._panes[0].GetActiveCamera()
-        toward = -np.array(camera.GetDirectionOfProjection())
-        right, up, toward = view.axes(view.View(tuple(toward), tuple(camera.GetViewUp())))
+        x, y, z = camera.GetDirectionOfProjection()
+        right, up, toward = view.axes(View((-x, -y, -z), camera.GetViewUp()))
         _, top, _, bottom = self._boxes[0]
         scale = 2 * camera.GetParallelScale() / (bottom - top)
         return view.Camera(np.array(camera.GetFocalPoint()), right, up, toward, scale)
@@ -107,33 +116,39 @@ class Stage:
         self._aim(camera)
         scale = self._window.GetSize()[0] / BASE_WIDTH
         self._bodies: list[BodyActors | DashedBody] = []
+        self._marks: list[MarkActors] = []
+        pieces = mark_pieces(picture)
         if picture.layout == "overlay" and len(picture.bodies) > 1:
             theme = THEMES[picture.theme]
-            below, over = picture.bodies[0], picture.bodies[1]
-            first, second = self._surfaces[:2]
-            self._bodies.append(BodyActors(self._panes[0], picture, over, second, scale, theme.modified))
-            self._bodies.append(DashedBody(self._panes[0], self._marks[0], below, first, scale, theme.baseline))
+            pane, over = self._panes[0], self._over[0]
+            (baseline, modified), (first, second) = picture.bodies[:2], self._surfaces[:2]
+            self._bodies.append(BodyActors(pane, picture, modified, second, scale, theme.modified))
+            self._bodies.append(DashedBody(pane, over, baseline, first, scale, theme.baseline))
+            self._marks.append(MarkActors(pane, over, pieces[1], picture.theme, scale))
         else:
-            for pane, body, surface in zip(self._panes, picture.bodies, self._surfaces, strict=True):
-                self._bodies.append(BodyActors(pane, picture, body, surface, scale))
+            for k, (pane, over) in enumerate(zip(self._panes, self._over, strict=True)):
+                self._bodies.append(BodyActors(pane, picture, picture.bodies[k], self._surfaces[k], scale))
+                self._marks.append(MarkActors(pane, over, pieces[k], picture.theme, scale))
+        self._sheet = SheetActors(self._renderer(2))
+        self._plan = None
 
     def _lay_renderers(self) -> None:
-        """One renderer for each viewport in layers 0 and 1, the whole window in layer 2."""
+        """One renderer for each viewport in layer 0 and in layer 1."""
         width, height = view.sheet_size(self.picture.width, self.picture.height)
         boxes = list(dict.fromkeys(self._boxes))
-        self._panes, self._marks = [], []
+        self._panes: list[vtkRenderer] = []
+        self._over: list[vtkRenderer] = []
         for number, (left, top, right, bottom) in enumerate(boxes):
             pane = self.plotter.renderer if number == 0 else self._renderer(0)
-            mark = self._renderer(1)
-            for renderer in (pane, mark):
+            over = self._renderer(1)
+            for renderer in (pane, over):
                 renderer.SetViewport(left / width, 1 - bottom / height, right / width, 1 - top / height)
                 renderer.SetActiveCamera(self.plotter.renderer.GetActiveCamera())
                 light(renderer)
             pane.SetBackground(*rgb(THEMES[self.picture.theme].background))
             pane.GradientBackgroundOff()
             self._panes.append(pane)
-            self._marks.append(mark)
-        self._sheet = self._renderer(2)
+            self._over.append(over)
 
     def _renderer(self, layer: int) -> vtkRenderer:
         renderer = vtkRenderer()
@@ -153,8 +168,7 @@ class Stage:
 
     def _aim(self, camera: view.Camera) -> None:
         """Point the shared camera; its clipping planes hold both extremes from any side."""
-        boxes = [view.shown_box(self.picture, k) for k in range(len(self.picture.bodies))]
-        low, high = np.min([b[0] for b in boxes], axis=0), np.max([b[1] for b in boxes], axis=0)
+        low, high = view.shown_box(self.picture)
         radius = float(np.linalg.norm(high - low) + np.linalg.norm((high + low) / 2 - camera.focus)) or 1.0
         _, top, _, bottom = self._boxes[0]
         eye = self._panes[0].GetActiveCamera()
