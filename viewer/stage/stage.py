@@ -28,6 +28,7 @@ from viewer.stage.sheet_actors import SheetActors
 from viewer.stage.windows import off_screen
 
 SUPERSAMPLE = 2
+WHITE = "#FFFFFF"
 # camera lights: position about the focus with the camera at (0, 0, 1); brightness
 LIGHTS = (((-0.45, 0.80, 0.75), 0.92), ((0.85, 0.10, 0.75), 0.36), ((0.10, 0.90, -0.90), 0.15))
 
@@ -37,10 +38,13 @@ class Stage:
 
     plotter  a pyvista plotter whose window is drawn into; None: an off-screen one, at twice the picture's size,
              that :meth:`image` reduces
+    bare     when set: bodies and marks alone, on white and without a sheet, for figures that bring their own words;
+             line widths are those of a picture ``bare`` times 960 wide, however small this one is
     """
 
-    def __init__(self, picture: Picture, plotter: pv.Plotter | None = None) -> None:
+    def __init__(self, picture: Picture, plotter: pv.Plotter | None = None, *, bare: float | None = None) -> None:
         self.picture = picture
+        self._bare = bare
         self._own = plotter is None
         self.plotter = plotter or off_screen(SUPERSAMPLE * picture.width, SUPERSAMPLE * picture.height)
         self._window: Any = self.plotter.render_window
@@ -67,6 +71,8 @@ class Stage:
             actors.draw(phase, camera)
         for marks in self._marks:
             marks.draw(phase)
+        if self._bare is not None:
+            return
         if self._plan is None or not camera.same_as(self._plan[0]):
             self._plan = camera, plan_sheet(self.picture, view.frame(self.picture, camera, self._boxes))
         self._sheet.show(self._plan[1].at(phase))
@@ -111,10 +117,11 @@ class Stage:
             if id(body.mesh) not in known:
                 known[id(body.mesh)] = surface_of(body.mesh)
         self._surfaces = [known[id(body.mesh)] for body in picture.bodies]
-        camera, self._boxes = view.fit(picture, note_height(picture))
+        camera, self._boxes = view.fit(picture, note_height(picture) if self._bare is None else 0.0)
         self._lay_renderers()
         self._aim(camera)
-        scale = self._window.GetSize()[0] / BASE_WIDTH
+        width = picture.width if self._bare is None else self._bare * BASE_WIDTH
+        scale = self._window.GetSize()[0] / picture.width * width / BASE_WIDTH
         self._bodies: list[BodyActors | DashedBody] = []
         self._marks: list[MarkActors] = []
         pieces = mark_pieces(picture)
@@ -145,7 +152,7 @@ class Stage:
                 renderer.SetViewport(left / width, 1 - bottom / height, right / width, 1 - top / height)
                 renderer.SetActiveCamera(self.plotter.renderer.GetActiveCamera())
                 light(renderer)
-            pane.SetBackground(*rgb(THEMES[self.picture.theme].background))
+            pane.SetBackground(*rgb(THEMES[self.picture.theme].background if self._bare is None else WHITE))
             pane.GradientBackgroundOff()
             self._panes.append(pane)
             self._over.append(over)
