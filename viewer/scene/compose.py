@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import Any
 
 import numpy as np
@@ -78,7 +79,7 @@ def pair_picture(
     studies, modes = (first, second), (first_mode, second_mode)
     indices = [_index(study, mode) for study, mode in zip(studies, modes, strict=True)]
     found = [study.scale(i, true_scale=true_scale) for study, i in zip(studies, indices, strict=True)]
-    masses = [study.modal_mass(i) for study, i in zip(studies, indices, strict=True)]
+    masses, basis = _sizes(studies, indices)
     turn = shared_turn(
         first.design.mesh, first.modes.shape(indices[0]), second.design.mesh, second.modes.shape(indices[1])
     )
@@ -102,6 +103,7 @@ def pair_picture(
         remarks,
         names=(first.design.name, second.design.name),
         one_colour_scale=len(coloured) == 2,
+        size_basis=basis,
     )
     return Picture(
         bodies=bodies,
@@ -115,6 +117,15 @@ def pair_picture(
         height=_height(width, SIDE if layout == "side" else OVERLAY),
         **look,
     )
+
+
+def _sizes(studies: Sequence[Study], indices: Sequence[int]) -> tuple[list[float], str]:
+    """What makes two shapes of unknown size equally large: modal masses, or without masses mean square motion."""
+    masses = [study.modal_mass(i) for study, i in zip(studies, indices, strict=True)]
+    if all(mass is not None for mass in masses):
+        return [float(mass or 0.0) for mass in masses], "modal mass"
+    moved = [s.modes.shape(i)[s.design.mesh.used_nodes] for s, i in zip(studies, indices, strict=True)]
+    return [float(np.mean(np.sum(np.abs(m) ** 2, axis=1))) for m in moved], "mean square motion"
 
 
 def _index(study: Study, mode: int) -> int:
@@ -142,7 +153,7 @@ def _body(study: Study, index: int, scale: Scale, turn: complex, energy: bool) -
             label = ": ".join(part for part in (point.effect or point.name, point.direction_word) if part)
             points.append(PointMark(label, carried.position, point.direction, motion))
     density = None
-    if energy and study.energies is not None and np.any(study.energies.strain[index] > 0):
+    if energy and study.has_strain(index):
         density = study.energies.density(index)
     return Body(
         design.name,
@@ -157,19 +168,21 @@ def _body(study: Study, index: int, scale: Scale, turn: complex, energy: bool) -
     )
 
 
-def _top(studies: Any, bodies: Any) -> float | None:
-    coloured = [(s, b) for s, b in zip(studies, bodies, strict=True) if b.density is not None]
-    if not coloured:
-        return None
-    return energy_top([b.density for _, b in coloured], [s.energies.volumes for s, _ in coloured])
+def _top(studies: Sequence[Study], bodies: Sequence[Body]) -> float | None:
+    coloured = [
+        (body.density, study.energies.volumes)
+        for study, body in zip(studies, bodies, strict=True)
+        if body.density is not None and study.energies is not None
+    ]
+    return energy_top([d for d, _ in coloured], [v for _, v in coloured]) if coloured else None
 
 
-def _caution(studies: Any, indices: Any, bodies: Any) -> str:
+def _caution(studies: Sequence[Study], indices: Sequence[int], bodies: Sequence[Body]) -> str:
     """One short line under the colour bar when a body's energies are not trusted."""
     doubtful = [
         study.design.name
         for study, index, body in zip(studies, indices, bodies, strict=True)
-        if body.density is not None and not study.energies.trusted[index]
+        if body.density is not None and study.energies is not None and not study.energies.trusted[index]
     ]
     if not doubtful:
         return ""
@@ -177,14 +190,19 @@ def _caution(studies: Any, indices: Any, bodies: Any) -> str:
 
 
 def _energy_remarks(study: Study, index: int, energy: bool) -> list[str]:
-    if not energy or study.energies is None:
+    found = study.energies
+    if not energy or found is None or not study.has_strain(index):
         return []
     remarks = []
-    springs = study.energies.spring_share(index)
+    springs = found.spring_share(index)
     if springs >= SPRINGS_WORTH_SAYING:
         remarks.append(f"springs hold {digits(100 * springs)} % of the strain energy")
-    if not study.energies.trusted[index]:
-        remarks.append(study.energies.doubt(index))
+    if not found.trusted[index]:
+        figures = found.to_dict(index)
+        said = f"energies not trusted: closure {figures['closure']:.2f}"
+        if figures["residual"] is not None:
+            said += f", residual {digits(100 * figures['residual'])} %"
+        remarks.append(said)
     return remarks
 
 

@@ -41,6 +41,7 @@ def scale_note(
     *,
     names: tuple[str, str] = ("baseline", "modified"),
     one_colour_scale: bool = False,
+    size_basis: str = "modal mass",
 ) -> Note:
     """The note of one mode, or of one mode compared in two designs.
 
@@ -50,13 +51,14 @@ def scale_note(
     scales            one finding, or two in the order of ``names``
     condition         what the picture holds for, after the conditions that the findings themselves state
     one_colour_scale  compared bodies are coloured, on one scale
+    size_basis        what is made equal when compared sizes are unknown
     """
     stated = [condition] if isinstance(condition, str) else list(condition)
     if isinstance(scales, Scale):
         drawing = _single(scales)
         stated = [scales.condition, *stated]
     else:
-        drawing = _compared(scales, names, one_colour_scale)
+        drawing = _compared(scales, names, one_colour_scale, size_basis)
         stated = [scales[0].condition, scales[1].condition, *stated]
     parts = [part.strip() for text in stated for part in text.split(" · ")]
     kept = tuple(dict.fromkeys(part for part in parts if part))
@@ -87,11 +89,13 @@ def _single(scale: Scale) -> list[str]:
     return [f"drawn {_larger(scale.magnification)}", largest, *([EXAGGERATED] if scale.magnification > 1 else [])]
 
 
-def _compared(scales: tuple[Scale, Scale], names: tuple[str, str], one_colour_scale: bool) -> list[str]:
+def _compared(
+    scales: tuple[Scale, Scale], names: tuple[str, str], one_colour_scale: bool, size_basis: str
+) -> list[str]:
     first, second = (scale.magnification for scale in scales)
     if first is None and second is None:
         return [
-            "size arbitrary, both drawn at equal modal mass, sign and phase by the modal scale factor, same camera"
+            f"size arbitrary, both drawn at equal {size_basis}, sign and phase by the modal scale factor, same camera"
             + (", one colour scale" if one_colour_scale else ""),
             EXAGGERATED,
         ]

@@ -40,6 +40,29 @@ class Study:
     def carried(self) -> tuple[CarriedPoint, ...]:
         return carried_points(self.design)
 
+    @property
+    def cautions(self) -> tuple[str, ...]:
+        """What a reader of any figure of this study must know."""
+        words = list(self.energies.cautions) if self.energies is not None else [self.no_energies]
+        if self.energies is not None:
+            doubtful = [i + 1 for i in range(self.count) if self.has_strain(i) and not self.energies.trusted[i]]
+            if doubtful:
+                listed = ", ".join(str(n) for n in doubtful)
+                words.append(f"energies of mode {listed} are not trusted: see closure and residual")
+        return tuple(f"{self.design.name}: {w}" for w in words)
+
+    def has_strain(self, index: int) -> bool:
+        """Whether mode ``index`` has strain energy to show: it has physics and is no rigid-body mode."""
+        return self.energies is not None and bool(np.isfinite(self.energies.closure[index]))
+
+    def modal_mass(self, index: int) -> float | None:
+        """φᵀMφ of the shape as given, kg·(shape unit)²; None when neither masses nor normalisation are known."""
+        if self.modes.normalisation == "mass":
+            return 1.0
+        if self.energies is None or not self.modes.freq_hz[index] > 0:
+            return None
+        return 2 * float(self.energies.total_kinetic[index]) / self.modes.omega(index) ** 2
+
     def name(self, index: int) -> str:
         """The user's name of mode ``index`` (from 0), or empty."""
         return self.design.mode_names.get(index + 1, "")
