@@ -13,22 +13,46 @@ Array = NDArray[Any]
 _CHUNK = 20_000      # cells at a time: bounds memory to some tens of MB for every kind
 
 
+def jacobian_components(kind: str, xyz: Array, xi: Array) -> Array:
+    """(3, dim, b, q) derivatives of position by reference coordinate; cells ``xyz`` (b, n, 3), at ``xi`` (q, dim).
+
+    Component first: every entry is one contiguous (b, q) array, on which the algebra of 3 × 3 matrices is quick.
+    """
+    gradient = KINDS[kind].gradient(xi).transpose(2, 1, 0)
+    return np.ascontiguousarray(np.moveaxis(xyz, 2, 0))[:, None] @ np.ascontiguousarray(gradient)
+
+
 def jacobians(kind: str, xyz: Array, xi: Array) -> Array:
-    """(b, q, 3, dim) derivatives of position by reference coordinate; cells ``xyz`` (b, n, 3), at ``xi`` (q, dim)."""
-    cell = KINDS[kind]
-    gradient = cell.gradient(xi).transpose(1, 0, 2).reshape(cell.n_nodes, -1)
-    flat = np.ascontiguousarray(np.swapaxes(xyz, 1, 2)).reshape(-1, cell.n_nodes) @ gradient
-    return flat.reshape(len(xyz), 3, len(xi), cell.dim).swapaxes(1, 2)
+    """(b, q, 3, dim): ``jacobian_components`` with the matrices last."""
+    return np.moveaxis(jacobian_components(kind, xyz, xi), (0, 1), (2, 3))
+
+
+def cofactors(j: Array) -> Array:
+    """(3, 3, …) cofactors of 3 × 3 matrices given component first: [i, d] = det J · ∂ξ_d/∂x_i."""
+    out = np.empty(j.shape)
+    for d in range(3):
+        out[:, d] = cross(j[:, (d + 1) % 3], j[:, (d + 2) % 3])
+    return out
+
+
+def cross(a: Array, b: Array) -> Array:
+    """Cross product over the first axis (3, …)."""
+    return np.stack([a[1] * b[2] - a[2] * b[1], a[2] * b[0] - a[0] * b[2], a[0] * b[1] - a[1] * b[0]])
+
+
+def determinants(j: Array) -> Array:
+    """(…) determinants of 3 × 3 matrices given component first."""
+    first = cross(j[:, 1], j[:, 2])
+    return j[0, 0] * first[0] + j[1, 0] * first[1] + j[2, 0] * first[2]
 
 
 def _densities(kind: str, xyz: Array, xi: Array) -> Array:
     """(b, q) measure per unit of reference measure; signed for solids."""
-    j = jacobians(kind, xyz, xi)
+    j = jacobian_components(kind, xyz, xi)
     if KINDS[kind].dim == 3:
-        return np.einsum("bqi,bqi->bq", np.cross(j[..., 0], j[..., 1]), j[..., 2])
-    if KINDS[kind].dim == 2:
-        return np.linalg.norm(np.cross(j[..., 0], j[..., 1]), axis=-1)
-    return np.linalg.norm(j[..., 0], axis=-1)
+        return determinants(j)
+    side = cross(j[:, 0], j[:, 1]) if KINDS[kind].dim == 2 else j[:, 0]
+    return np.sqrt((side**2).sum(axis=0))
 
 
 def _order(kind: str) -> int:

@@ -15,17 +15,18 @@ Every kind goes through one class; what differs is the quadrature and whether th
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from dataclasses import dataclass
 
 import numpy as np
 
-from viewer.cells import KINDS, jacobians
+from viewer.cells import KINDS, cofactors, determinants, jacobian_components
 from viewer.errors import ModelError
 from viewer.mechanics import materials
 from viewer.model.arrays import Array
 from viewer.model.design import Property
 
-_WORK = 1 << 17      # doubles in the gradients of one chunk of cells: stays in the processor's cache
+_WORK = 1 << 17      # doubles in gradients and matrices of one chunk of cells: about what the processor's cache holds
 
 
 @dataclass(frozen=True)
@@ -55,13 +56,13 @@ class SolidFormulation:
         points, weights = KINDS[self.kind].rule(self.stiffness_order)
         kept = 3 * xyz.shape[1]
         out = np.empty((len(xyz), kept, kept))
-        for part in _chunks(len(xyz), len(points) * kept):
-            slopes, volume = self._slopes(xyz[part], points, weights)
-            matrix = _elastic(slopes, volume, first, second)
+        for part in _chunks(len(xyz), (len(points) + kept) * kept):
+            matrix = _elastic(self._slopes(xyz[part], points, weights), first, second)
             if self.incompatible:
                 inner = matrix[:, kept:]
                 freed = np.linalg.solve(inner[:, :, kept:], inner[:, :, :kept])
                 matrix = matrix[:, :kept, :kept] - matrix[:, :kept, kept:] @ freed
+                matrix = (matrix + np.swapaxes(matrix, 1, 2)) / 2      # symmetric to the last digit, as the others
             out[part] = matrix
         return out
 
@@ -75,25 +76,24 @@ class SolidFormulation:
         pairs = (density * weights[:, None, None] * values[:, :, None] * values[:, None, :]).reshape(-1, n * n)
         out = np.empty((len(xyz), n * n))
         for part in _chunks(len(xyz), 9 * len(points)):
-            out[part] = self._determinants(jacobians(self.kind, xyz[part], points)) @ pairs
+            out[part] = self._determinants(jacobian_components(self.kind, xyz[part], points)) @ pairs
         return out.reshape(-1, n, n)
 
-    def _slopes(self, xyz: Array, points: Array, weights: Array) -> tuple[Array, Array]:
-        """Global gradients (b, q, modes, 3) of the shape functions (and incompatible modes); volumes (b, q)."""
-        cell = KINDS[self.kind]
-        jacobian = jacobians(self.kind, xyz, points)
+    def _slopes(self, xyz: Array, points: Array, weights: Array) -> Array:
+        """(3, b, q, modes) global gradients, times the root of the volume of each integration point, of the shape
+        functions and, behind them, the incompatible modes."""
+        jacobian = jacobian_components(self.kind, xyz, points)
         determinant = self._determinants(jacobian)
-        inverse = _cofactors(jacobian) / determinant[..., None, None]
-        slopes = _mapped(cell.gradient(points), inverse)
-        if self.incompatible:
-            centre = jacobians(self.kind, xyz, np.zeros((1, 3)))
-            ratio = 1 / determinant[..., None, None]           # det J₀ / det J over det J₀ of the inverse
-            bubbles = -2 * points[:, :, None] * np.eye(3)      # ∂(1 − ξ²)/∂ξ, in each direction
-            slopes = np.concatenate([slopes, _mapped(bubbles, _cofactors(centre) * ratio)], axis=2)
-        return slopes, determinant * weights
+        scale = np.sqrt(weights / determinant)                 # √(w det J) over the determinant of the inverse
+        slopes = _mapped(KINDS[self.kind].gradient(points), cofactors(jacobian) * scale)
+        if not self.incompatible:
+            return slopes
+        centre = jacobian_components(self.kind, xyz, np.zeros((1, 3)))
+        bubbles = -2 * points[:, :, None] * np.eye(3)          # ∂(1 − ξ²)/∂ξ in each direction
+        return np.concatenate([slopes, _mapped(bubbles, cofactors(centre) * scale)], axis=-1)
 
     def _determinants(self, jacobian: Array) -> Array:
-        determinant = np.einsum("bqi,bqi->bq", jacobian[..., 0], _cross(jacobian[..., 1], jacobian[..., 2]))
+        determinant = determinants(jacobian)
         smallest = determinant.min(initial=np.inf)
         if not smallest > 0:
             count = int((~(determinant.min(axis=1) > 0)).sum())
@@ -105,46 +105,37 @@ class SolidFormulation:
         return determinant
 
 
-def _chunks(count: int, doubles_per_cell: int):
+def _chunks(count: int, doubles_per_cell: int) -> Iterator[slice]:
     size = max(1, _WORK // doubles_per_cell)
     return (slice(start, start + size) for start in range(0, count, size))
 
 
-def _cross(a: Array, b: Array) -> Array:
-    """Cross product over the last axis; ``np.cross`` spends most of its time on moving axes."""
-    out = np.empty(np.broadcast_shapes(a.shape, b.shape))
-    for i, j, k in ((0, 1, 2), (1, 2, 0), (2, 0, 1)):
-        np.multiply(a[..., j], b[..., k], out=out[..., i])
-        out[..., i] -= a[..., k] * b[..., j]
-    return out
-
-
-def _cofactors(jacobian: Array) -> Array:
-    """(…, dim, 3) rows of the inverse times the determinant: [d, i] = det J · ∂ξ_d/∂x_i."""
-    columns = [jacobian[..., d] for d in range(3)]
-    return np.stack([_cross(columns[(d + 1) % 3], columns[(d + 2) % 3]) for d in range(3)], axis=-2)
-
-
 def _mapped(reference: Array, inverse: Array) -> Array:
-    """Global gradients (b, q, n, 3) from reference gradients (q, n, 3) and ∂ξ/∂x (b, q, 3, 3)."""
-    out = reference[:, :, 0, None] * inverse[:, :, 0, None, :]
+    """(3, b, q, n) global gradients from reference gradients (q, n, 3) and ∂ξ_d/∂x_i (i, d, b, q)."""
+    out = inverse[:, 0, :, :, None] * reference[:, :, 0]
     for d in (1, 2):
-        out += reference[:, :, d, None] * inverse[:, :, d, None, :]
+        out += inverse[:, d, :, :, None] * reference[:, :, d]
     return out
 
 
-def _elastic(slopes: Array, volume: Array, first: float, second: float) -> Array:
-    """(b, 3m, 3m) isotropic stiffness from gradients (b, q, m, 3), volumes (b, q) and Lamé's constants."""
-    batch, _, modes, _ = slopes.shape
-    flat = (slopes * np.sqrt(volume)[..., None, None]).reshape(batch, -1, 3 * modes)
-    product = (np.swapaxes(flat, 1, 2) @ flat).reshape(batch, modes, 3, modes, 3)
-    trace = second * (product[:, :, 0, :, 0] + product[:, :, 1, :, 1] + product[:, :, 2, :, 2])
-    matrix = first * product
-    product *= second
-    matrix += np.swapaxes(product, 2, 4)
+def _elastic(slopes: Array, first: float, second: float) -> Array:
+    """(b, 3m, 3m) isotropic stiffness from weighted gradients (3, b, q, m) and Lamé's constants.
+
+    Direction by direction, since NumPy is slow on axes of length three.
+    """
+    _, batch, _, modes = slopes.shape
+    out = np.empty((batch, modes, 3, modes, 3))
+    turned = np.swapaxes(slopes, 2, 3)
+    squares = [turned[i] @ slopes[i] for i in range(3)]
+    trace = second * (squares[0] + squares[1] + squares[2])
     for i in range(3):
-        matrix[:, :, i, :, i] += trace
-    return matrix.reshape(batch, 3 * modes, 3 * modes)
+        out[:, :, i, :, i] = (first + second) * squares[i] + trace
+        for j in range(i):
+            product = turned[i] @ slopes[j]
+            block = first * product + second * np.swapaxes(product, 1, 2)
+            out[:, :, i, :, j] = block
+            out[:, :, j, :, i] = np.swapaxes(block, 1, 2)
+    return out.reshape(batch, 3 * modes, 3 * modes)
 
 
 _STIFF = (
