@@ -113,7 +113,7 @@ class _Reader:
         springs = tuple(self.spring(s, f"{place}, springs {n}", n) for n, s in enumerate(item.springs, 1))
         masses = tuple(self.mass(m, f"{place}, masses {n}", n) for n, m in enumerate(item.masses, 1))
         for word, things in (("supports", supports), ("springs", springs), ("masses", masses)):
-            self.no_duplicates(f"{place}, {word}", [thing.name for thing in things])  # type: ignore[attr-defined]
+            self.no_duplicates(f"{place}, {word}", [thing.name for thing in things])
         used = {a.material for a in assignments}
         return Physics({n: m for n, m in materials.items() if n in used}, assignments, supports, springs, masses)
 

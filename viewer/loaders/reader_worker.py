@@ -17,6 +17,7 @@ import mmap
 import os
 import re
 import sys
+import tempfile
 from collections.abc import Iterable, Iterator
 from pathlib import Path
 from typing import Any
@@ -25,6 +26,7 @@ import numpy as np
 
 from viewer.errors import HingelightError, LoadError
 from viewer.loaders.array_names import group_array, mask
+from viewer.loaders.msh_views import NodeView, split_views
 
 _SMALLEST_LIMIT, _SHARE_OF_MEMORY = 4 << 30, 0.75
 _XML_SUFFIXES = (".xml", ".xdmf", ".xmf", ".vtu", ".vtp")
@@ -58,17 +60,26 @@ def read_by_meshio(path: Path) -> Arrays:
     _check_text(path)
     arrays = Arrays()
     tags: list[np.ndarray] = []
-    with _node_tags_into(tags):
-        # the first reader that meshio tries for .msh is another one and may never end
-        mesh = meshio.read(path, file_format="gmsh" if path.suffix.lower() == ".msh" else None)
+    views: list[NodeView] = []
+    if path.suffix.lower() == ".msh":
+        with _node_tags_into(tags), tempfile.TemporaryDirectory(prefix="hingelight-") as folder:
+            plain = Path(folder) / "plain.msh"
+            text, views = split_views(path.read_bytes())
+            plain.write_bytes(text)
+            # named, since the first reader that meshio tries for .msh is another one and may never end
+            mesh = meshio.read(plain, file_format="gmsh")
+    else:
+        mesh = meshio.read(path)
     points = np.asarray(mesh.points, float)
     if points.ndim == 2 and points.shape[1] == 2:
         points = np.column_stack([points, np.zeros(len(points))])
         arrays.notes.append("the file is two-dimensional: z was taken as 0")
     arrays.put("Points", "Points", points)
     _put_cells(arrays, mesh.cells)
-    if tags and len(tags[-1]) == len(points):
-        arrays.put("PointData", "node_id", tags[-1])
+    node_ids = tags[-1] if tags and len(tags[-1]) == len(points) else np.arange(1, len(points) + 1)
+    if tags and node_ids is tags[-1]:
+        arrays.put("PointData", "node_id", node_ids)
+    _put_views(arrays, views, node_ids)
     for name, values in mesh.point_data.items():
         arrays.put("PointData", name, values)
     for name in ("freq_hz", "damping"):
@@ -137,6 +148,20 @@ def read_by_vtk(path: Path) -> Arrays:
     return arrays
 
 
+def _put_views(arrays: Arrays, views: list[NodeView], node_ids: np.ndarray) -> None:
+    """Views of three components that cover every node, as vector arrays; equal names get a number."""
+    order = np.argsort(node_ids, kind="stable")
+    for number, view in enumerate(views, 1):
+        rows = order[np.minimum(np.searchsorted(node_ids, view.tags, sorter=order), len(order) - 1)]
+        if view.values.shape[1] != 3 or (node_ids[rows] != view.tags).any() or len(np.unique(rows)) != len(node_ids):
+            arrays.notes.append(f"view '{view.name}' left out: it is no vector on every node")
+            continue
+        values = np.empty((len(node_ids), 3))
+        values[rows] = view.values
+        taken = ("PointData", view.name) in arrays.values
+        arrays.put("PointData", f"{view.name} {number}" if taken else view.name, values)
+
+
 def _put_cells(arrays: Arrays, blocks: Iterable[Any]) -> None:
     from viewer.cells import by_meshio
 
@@ -201,15 +226,16 @@ def _node_tags_into(tags: list[np.ndarray]) -> Iterator[None]:
     from meshio import gmsh
 
     kept = []
-    for module in (getattr(gmsh, "_gmsh41", None), getattr(gmsh, "_gmsh40", None), getattr(gmsh, "_gmsh22", None)):
+    for version, first in (("_gmsh41", 0), ("_gmsh40", 1), ("_gmsh22", 1)):     # tags there count from 0 or 1
+        module = getattr(gmsh, version, None)
         original = getattr(module, "_read_nodes", None)
         if original is None:
             continue
 
-        def listening(*args: Any, _original: Any = original, **named: Any) -> Any:
+        def listening(*args: Any, _original: Any = original, _add: int = 1 - first, **named: Any) -> Any:
             answer = _original(*args, **named)
             if isinstance(answer, tuple) and len(answer) > 1 and np.ndim(answer[1]) == 1:
-                tags.append(np.asarray(answer[1]))
+                tags.append(np.asarray(answer[1]).astype(np.int64) + _add)
             return answer
 
         kept.append((module, original))
