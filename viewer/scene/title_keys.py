@@ -5,7 +5,7 @@ from __future__ import annotations
 from viewer.scene.figures import change, hertz
 from viewer.scene.picture import Picture
 from viewer.scene.primitives import Frame, Line, Primitive, Text
-from viewer.scene.tokens import THEMES, Tokens
+from viewer.scene.tokens import BASE_WIDTH, THEMES, Tokens
 from viewer.scene.typeface import wrap
 
 SIZE, SMALL = 17.0, 16.0
@@ -18,33 +18,47 @@ def title_key_items(picture: Picture, frame: Frame) -> list[Primitive]:
     """One key at the top left of each viewport (name, frequency below); in an overlay one line for each body."""
     if picture.layout == "single":
         return []
-    first, second = picture.bodies
     tokens = THEMES[picture.theme]
-    shift = change(second.freq_hz, first.freq_hz)
-    said = [hertz(first.freq_hz), hertz(second.freq_hz) + (f"  ({shift})" if shift else "")]
-    items: list[Primitive] = []
     if picture.layout == "overlay":
+        items: list[Primitive] = []
         y = frame.boxes[0][1] + _FIRST
-        for index, body in enumerate(picture.bodies):
-            words = f"{body.name}  {said[index]}"
-            lines = wrap((words,), frame.width - TEXT_AT - LEFT, SIZE, True)
-            items += _key(tokens, index, LEFT, y, lines)
-            y += _LINE * len(lines) + 1
+        for index in range(len(picture.bodies)):
+            found = key(picture, index, LEFT, y)
+            items += found
+            y += _LINE * (len(found) - 1) + 1
         return items
+    items = []
     for index, body in enumerate(picture.bodies):
         left, top, right, _ = frame.boxes[index]
         lines = wrap((body.name,), right - left - TEXT_AT - LEFT, SIZE, True)
-        items += _key(tokens, index, left + LEFT, top + _FIRST, lines)
-        items.append(Text(left + TEXT_AT, top + _FIRST + _LINE * len(lines), said[index], tokens.ink, SMALL))
+        items += _key(tokens, index, left + LEFT, top + _FIRST, lines, 1.0)
+        frequency = frequency_words(picture, index)
+        items.append(Text(left + TEXT_AT, top + _FIRST + _LINE * len(lines), frequency, tokens.ink, SMALL))
     left, top, right, foot = frame.boxes[1]
     rule = ((left, top), (left, foot)) if left > frame.boxes[0][0] else ((left, top), (right, top))
     return [Line(rule, tokens.rule), *items]
 
 
-def _key(tokens: Tokens, index: int, left: float, y: float, lines: list[str]) -> list[Primitive]:
+def key(picture: Picture, index: int, left: float, y: float, scale: float = 1.0) -> list[Primitive]:
+    """The key of one body with its frequency in the same line: the sample, then the lines of text."""
+    words = f"{picture.bodies[index].name}  {frequency_words(picture, index)}"
+    lines = wrap((words,), BASE_WIDTH - TEXT_AT - LEFT, SIZE, True)
+    return _key(THEMES[picture.theme], index, left, y, lines, scale)
+
+
+def frequency_words(picture: Picture, index: int) -> str:
+    """ "84.6 Hz"; for the second body with the change: "104.1 Hz  (+23 %)"."""
+    freq_hz = picture.bodies[index].freq_hz
+    shift = change(freq_hz, picture.bodies[0].freq_hz) if index else ""
+    return hertz(freq_hz) + (f"  ({shift})" if shift else "")
+
+
+def _key(tokens: Tokens, index: int, left: float, y: float, lines: list[str], scale: float) -> list[Primitive]:
     colour = (tokens.baseline, tokens.modified)[index]
-    sample = ((left, y - 4.5), (left + SAMPLE, y - 4.5))
+    level = y - 4.5 * scale
+    dash = tuple(part * scale for part in _DASH) if index == 0 else ()
+    at = left + (TEXT_AT - LEFT) * scale
     return [
-        Line(sample, colour, 4.0, _DASH if index == 0 else ()),
-        *(Text(left + TEXT_AT - LEFT, y + _LINE * k, words, colour, SIZE, True) for k, words in enumerate(lines)),
+        Line(((left, level), (left + SAMPLE * scale, level)), colour, 4.0 * scale, dash),
+        *(Text(at, y + _LINE * scale * k, words, colour, SIZE * scale, True) for k, words in enumerate(lines)),
     ]

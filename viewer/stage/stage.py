@@ -11,8 +11,6 @@ from typing import Any
 import numpy as np
 import pyvista as pv
 from PIL import Image
-from vtkmodules.util.numpy_support import vtk_to_numpy
-from vtkmodules.vtkCommonCore import vtkUnsignedCharArray
 from vtkmodules.vtkRenderingCore import vtkLight, vtkRenderer
 
 from viewer.model.arrays import Array
@@ -25,7 +23,7 @@ from viewer.scene.tokens import BASE_WIDTH, THEMES, rgb
 from viewer.stage.body_actors import BodyActors, DashedBody
 from viewer.stage.mark_actors import MarkActors
 from viewer.stage.sheet_actors import SheetActors
-from viewer.stage.windows import off_screen
+from viewer.stage.windows import off_screen, pixels
 
 SUPERSAMPLE = 2
 WHITE = "#FFFFFF"
@@ -81,12 +79,8 @@ class Stage:
         """(h, w, 3) uint8 sRGB at the picture's size, top row first; ``phase`` draws first when given."""
         if phase is not None:
             self.draw(phase)
-        self._window.Render()
-        width, height = self._window.GetSize()
-        pixels = vtkUnsignedCharArray()
-        self._window.GetPixelData(0, 0, width - 1, height - 1, 0, pixels, 0)
-        image = vtk_to_numpy(pixels).reshape(height, width, 3)[::-1]
-        return reduce(image) if self._own else np.ascontiguousarray(image)
+        image = pixels(self._window)
+        return reduce(image) if self._own else image
 
     def close(self) -> None:
         """Take everything off the plotter; an off-screen plotter is closed."""

@@ -1,0 +1,95 @@
+"""The phase strip: five phases of a mode side by side on white, for print."""
+
+from __future__ import annotations
+
+import os
+from pathlib import Path
+
+import numpy as np
+from PIL import Image
+
+from viewer.jobs import SILENT, Progress, atomic_path
+from viewer.model.arrays import Array
+from viewer.scene import view
+from viewer.scene.picture import Picture
+from viewer.scene.primitives import Box, Sheet
+from viewer.scene.strip_sheet import ROW, WIDTH, Strip, strip_layout
+from viewer.scene.tokens import BASE_WIDTH
+from viewer.stage import Stage
+from viewer.stage.sheet_actors import SheetActors
+from viewer.stage.stage import SUPERSAMPLE, reduce
+from viewer.stage.windows import off_screen, pixels
+
+LINES = 0.8                # line widths, of those of a picture 960 wide
+
+
+def save_strip(picture: Picture, path: str | os.PathLike[str], progress: Progress = SILENT) -> Path:
+    """Write the strip of a picture as PNG, 1600 wide; returns the path.
+
+    500 high; taller when the note has more lines, or with a second row of bodies when they are compared side by
+    side. Raises ``ExportError`` when the file cannot be written, ``Cancelled`` when asked to stop.
+    """
+    with atomic_path(path) as part:
+        Image.fromarray(strip_image(picture, progress)).save(part, format="PNG", dpi=(300, 300))
+    return Path(path)
+
+
+def strip_image(picture: Picture, progress: Progress = SILENT) -> Array:
+    """(h, 1600, 3) uint8 of the strip."""
+    strip = strip_layout(picture)
+    image = _sheet_image(strip.sheet)
+    rows = _drawings(picture, strip, progress)
+    for cells, drawings in zip(strip.cells, rows, strict=True):
+        _paste(image, cells, drawings)
+    return image
+
+
+def _drawings(picture: Picture, strip: Strip, progress: Progress) -> list[list[Array]]:
+    """By row and phase the bare drawings; one camera and one scale for all."""
+    wide = round(WIDTH / len(strip.phases))
+    bare = picture.with_(theme="light", width=wide, height=ROW, magnified=None)
+    if len(strip.cells) > 1:
+        # viewports left and right, or below one another: either way each becomes as wide as a cell
+        bare = bare.with_(width=len(strip.cells) * wide, height=ROW)
+        stacked = len({box[1] for box in view.fit(bare, 0.0)[1]}) > 1
+        if stacked:
+            bare = bare.with_(width=wide, height=len(strip.cells) * ROW)
+    found: list[list[Array]] = [[] for _ in strip.cells]
+    scale = bare.width / BASE_WIDTH
+    boxes = [tuple(round(edge * scale) for edge in box) for box in view.fit(bare, 0.0)[1]]
+    with Stage(bare, bare=LINES) as stage:
+        for done, phase in enumerate(strip.phases):
+            progress.tick("drawing phases", done, len(strip.phases))
+            image = stage.image(phase)
+            for row, drawings in enumerate(found):
+                left, top, right, foot = boxes[row]
+                drawings.append(image[top:foot, left:right])
+    progress.tick("drawing phases", len(strip.phases), len(strip.phases))
+    return found
+
+
+def _paste(image: Array, cells: tuple[Box, ...], drawings: list[Array]) -> None:
+    """Put the drawings of a row into their cells: all cut to the same box, the one that holds what any of them shows,
+    so that bodies keep their place relative to one another."""
+    shown = np.any([np.any(drawing != 255, axis=2) for drawing in drawings], axis=0)
+    rows, columns = np.nonzero(shown.any(axis=1))[0], np.nonzero(shown.any(axis=0))[0]
+    if not len(rows):
+        return
+    cut = slice(rows[0], rows[-1] + 1), slice(columns[0], columns[-1] + 1)
+    for (left, top, right, foot), drawing in zip(cells, drawings, strict=True):
+        part = drawing[cut]
+        y = round((top + foot - part.shape[0]) / 2)
+        x = round((left + right - part.shape[1]) / 2)
+        image[y : y + part.shape[0], x : x + part.shape[1]] = part
+
+
+def _sheet_image(sheet: Sheet) -> Array:
+    """(h, w, 3) uint8 of a sheet alone, on white; one sheet pixel is one pixel."""
+    plotter = off_screen(SUPERSAMPLE * round(sheet.width), SUPERSAMPLE * int(np.ceil(sheet.height)))
+    try:
+        plotter.set_background("white")
+        plotter.render_window.SetMultiSamples(0)
+        SheetActors(plotter.renderer).show(sheet)
+        return np.array(reduce(pixels(plotter.render_window)))
+    finally:
+        plotter.close()
