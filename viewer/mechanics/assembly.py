@@ -7,7 +7,7 @@ place of a block's row in the data of the CSR matrix follows from the pattern al
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from typing import Any
 
@@ -132,14 +132,17 @@ class System(Layout):
     M: sp.csr_array
 
 
-def lay_out(design: Design, progress: Progress = SILENT) -> Layout:
+def lay_out(
+    design: Design, progress: Progress = SILENT, *, formulations: Mapping[str, str] | None = None
+) -> Layout:
     """Number the degrees of freedom and resolve groups, springs, masses and supports.
 
+    formulations  cell kind → name of the formulation to take instead of the design's own
     Raises ``ModelError`` that names the group or cells and what to put into the dossier.
     """
     progress.tick("numbering")
     mesh, physics = design.mesh, design.physics
-    parts, cautions = _element_parts(design)
+    parts, cautions = _element_parts(design, formulations or {})
     has = np.zeros((mesh.n_nodes, 2), bool)  # translations, rotations
     for formulation, _, _, nodes in parts:
         has[nodes, 0] = True
@@ -190,7 +193,11 @@ def assemble(design: Design, progress: Progress = SILENT) -> System:
     Raises ``ModelError`` when the design lacks something or a free degree of freedom has neither stiffness nor
     mass. Memory: the two matrices and about half a gigabyte.
     """
-    layout = lay_out(design, progress)
+    return assemble_layout(lay_out(design, progress), progress)
+
+
+def assemble_layout(layout: Layout, progress: Progress = SILENT) -> System:
+    """The matrices of a layout; see :func:`assemble`."""
     pattern = Pattern(layout)
     stiffness = pattern.matrix(layout, "stiffness", progress)
     mass = pattern.matrix(layout, "mass", progress)
@@ -216,7 +223,7 @@ def _with_attachments(matrix: sp.csr_array, attachments: tuple[Attachment, ...])
 Part = tuple[Formulation, Property, Array, Array]
 
 
-def _element_parts(design: Design) -> tuple[list[Part], list[str]]:
+def _element_parts(design: Design, instead: Mapping[str, str]) -> tuple[list[Part], list[str]]:
     """(formulation, property, cell rows, node rows) of every group that carries stiffness, and cautions.
 
     Cells without material, thickness or formulation are left out, with a caution, when every one of their nodes
@@ -235,9 +242,10 @@ def _element_parts(design: Design) -> tuple[list[Part], list[str]]:
             sheet = KINDS[block.kind].dim == 2
             if prop is None or block.kind not in FORMULATIONS or (sheet and prop.thickness is None):
                 idle.append((block.kind, prop, cells, nodes))
-            else:
-                _check_property(prop, block.kind, mesh, cells)
-                parts.append((formulation_for(block.kind, prop.formulation), prop, cells, nodes))
+                continue
+            _check_property(prop, block.kind, mesh, cells)
+            formulation = formulation_for(block.kind, instead.get(block.kind, prop.formulation))
+            parts.append((formulation, prop, cells, nodes))
     carried = np.zeros(mesh.n_nodes, bool)
     for _, _, _, nodes in parts:
         carried[nodes] = True

@@ -18,7 +18,7 @@ import scipy.sparse.linalg as spla
 from viewer.errors import ModelError, SolveError
 from viewer.jobs import SILENT, Progress
 from viewer.mechanics.assembly import System, assemble
-from viewer.mechanics.factor import Factor, factorise
+from viewer.mechanics.factor import Factor, SuperLU, factorise
 from viewer.mechanics.patch import rigid_fields
 from viewer.mechanics.settle import settle_modes
 from viewer.model.arrays import Array
@@ -179,8 +179,6 @@ class _Problem:
         Counted at a point between clusters of the modes found; with massless directions as well, since these
         eigenvalues lie at +∞ of the pencil only when K is positive definite on them, as it is here.
         """
-        from viewer.mechanics.factor import SuperLU
-
         if isinstance(self.factor, SuperLU) and self.K.shape[0] > _COUNT_LIMIT:
             return 0
         last = values[-1]

@@ -1,0 +1,79 @@
+"""How far given shapes are from being modes of our matrices, and where: the residual of Kφ − λMφ.
+
+With r that residual on the free directions and A = K + αM (α the lowest elastic λ given, so that free bodies work),
+the residual is rᵀA⁻¹r / φᵀAφ. Written in the model's own modes, φ = Σ cᵢφᵢ, this is Σ cᵢ²(λᵢ − λ)²/(λᵢ + α) over
+Σ cᵢ²(λᵢ + α): a share of energy that does not belong to a mode of that frequency. It does not depend on the size of
+the shape, is second order in small errors, and cannot cancel, as closure can. The inverse is needed: weighed by the
+diagonal of K instead, the residual of a smooth wrong shape shrinks with the mesh.
+
+x = A⁻¹r is the displacement by which the shape misses being a mode; the energy of x by cell shows where.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+import scipy.sparse as sp
+import scipy.sparse.linalg as spla
+
+from viewer.jobs import SILENT, Progress
+from viewer.mechanics.assembly import Layout, assemble_layout
+from viewer.mechanics.factor import factorise
+from viewer.mechanics.patch import rigid_fields
+from viewer.mechanics.sums import cell_energies, real_parts
+from viewer.model.arrays import Array
+
+FACTOR_LIMIT = 200_000  # free directions up to which A is factorised; beyond, conjugate gradients
+_STEPS = 300            # of conjugate gradients
+
+
+def flexible_share(layout: Layout, vectors: Array) -> Array:
+    """(k,) share of the mean square translation of the nodes that is beyond their best rigid motion."""
+    nodes = np.nonzero(layout.dof[:, 0] >= 0)[0]
+    fields = rigid_fields(layout.points[nodes], layout.points[nodes].mean(axis=0)).reshape(-1, 6)
+    fields /= np.maximum(np.linalg.norm(fields, axis=0), 1e-300)
+    basis, strength, _ = np.linalg.svd(fields, full_matrices=False)
+    basis = basis[:, strength > 1e-9 * strength[0]]
+    moved = vectors[:, layout.dof[nodes, :3].ravel()]
+    rest = moved - (moved @ basis) @ basis.T
+    return np.sum(np.abs(rest) ** 2, axis=1) / np.maximum(np.sum(np.abs(moved) ** 2, axis=1), 1e-300)
+
+
+def residuals(layout: Layout, vectors: Array, omega: Array, progress: Progress = SILENT) -> tuple[Array, Array]:
+    """Residuals (k,) of the vectors (k, n_dof) as elastic modes of ω (k,) rad/s, and by cell (k, n_cells).
+
+    The cells' shares add up to the residual but for what springs and lumped masses hold. Beyond 200 000 free
+    directions A⁻¹ is replaced by conjugate gradients that may stop early; the figure is then a lower bound.
+    """
+    system = assemble_layout(layout, progress)
+    free = np.nonzero(~layout.held)[0]
+    alpha = float(omega.min()) ** 2
+    shifted = sp.csr_array(system.K + alpha * system.M)
+    # A shape that moves where the design is held cannot be its mode: that motion is taken away, and what it leaves
+    # behind shows as residual beside the support.
+    parts = real_parts(np.where(layout.held, 0.0, vectors))              # (p, k, n_dof)
+    right = np.stack([system.K @ p.T - (system.M @ p.T) * omega**2 for p in parts])[:, free]  # (p, n_free, k)
+    whole = sum(np.einsum("kn,nk->k", p, shifted @ p.T) for p in parts)
+    inner = sp.csr_array(shifted[free][:, free])
+    progress.tick("residual")
+    flat = np.moveaxis(right, 1, 0).reshape(len(free), -1)
+    direct = len(free) <= FACTOR_LIMIT
+    found = factorise(inner, definite=True).solve(flat) if direct else _iterate(inner, flat, progress)
+    # 2xᵀr − xᵀAx: equal to rᵀA⁻¹r for the exact x and below it for any other.
+    gain = 2 * np.sum(flat * found, axis=0) - np.sum(found * (inner @ found), axis=0)
+    missed = np.zeros((flat.shape[1], layout.n_dof))
+    missed[:, free] = found.T
+    by_cell = cell_energies(layout, missed, "stiffness", progress)
+    by_cell += alpha * cell_energies(layout, missed, "mass", progress)
+    shares = gain.reshape(len(parts), -1).sum(axis=0) / whole
+    return shares, 2 * by_cell.reshape(len(parts), len(vectors), -1).sum(axis=0) / whole[:, None]
+
+
+def _iterate(matrix: sp.csr_array, right: Array, progress: Progress) -> Array:
+    scale = sp.diags_array(1 / matrix.diagonal())
+    out = np.empty_like(right)
+    for column in range(right.shape[1]):
+        out[:, column], _ = spla.cg(
+            matrix, right[:, column], rtol=1e-3, maxiter=_STEPS, M=scale,
+            callback=lambda _: progress.tick("residual", column, right.shape[1]),  # noqa: B023
+        )
+    return out
