@@ -20,6 +20,7 @@ from viewer.stage.segments import Segments
 
 LIFT = 1.5                     # px: lines stand this far before the surface, so that they do not sink into it
 GHOST_LIFT = 0.5               # px: less, so that the contour wins where body and ghost coincide
+DASHED_LIFT = 3.0              # px: more, so that the compared contour wins where both designs coincide
 
 
 class Motion:
@@ -177,7 +178,7 @@ class DashedBody:
         edges = surface.edges
         turning = contour.silhouettes(edges, surface.face_normals(points), camera.toward_eye) & ~edges.feature
         moving = self._cut(points, edges.nodes[turning])
-        lift = (LIFT * camera.metres_per_pixel * camera.toward_eye).astype(np.float32)
+        lift = (DASHED_LIFT * camera.metres_per_pixel * camera.toward_eye).astype(np.float32)
         ends = np.concatenate([self._fixed.segments(points), moving.segments(points)]) + lift
         self._seen.show(ends)
         self._hidden.show(ends)
