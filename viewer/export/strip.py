@@ -13,21 +13,21 @@ from viewer.model.arrays import Array
 from viewer.scene import view
 from viewer.scene.picture import Picture
 from viewer.scene.primitives import Box, Sheet
-from viewer.scene.strip_sheet import ROW, WIDTH, Strip, strip_layout
+from viewer.scene.strip_sheet import Strip, strip_layout
 from viewer.scene.tokens import BASE_WIDTH
 from viewer.stage import Stage
 from viewer.stage.sheet_actors import SheetActors
 from viewer.stage.stage import SUPERSAMPLE, reduce
 from viewer.stage.windows import off_screen, pixels
 
-LINES = 0.8                # line widths, of those of a picture 960 wide
+LINES = 1.0                # line widths, of those of a picture 960 wide
 
 
 def save_strip(picture: Picture, path: str | os.PathLike[str], progress: Progress = SILENT) -> Path:
     """Write the strip of a picture as PNG, 1600 wide; returns the path.
 
-    500 high; taller when the note has more lines, or with a second row of bodies when they are compared side by
-    side. Raises ``ExportError`` when the file cannot be written, ``Cancelled`` when asked to stop.
+    500 high; taller when the note needs it, or with a second row of bodies when they are compared side by side.
+    Raises ``ExportError`` when the file cannot be written, ``Cancelled`` when asked to stop.
     """
     with atomic_path(path) as part:
         Image.fromarray(strip_image(picture, progress)).save(part, format="PNG", dpi=(300, 300))
@@ -46,14 +46,15 @@ def strip_image(picture: Picture, progress: Progress = SILENT) -> Array:
 
 def _drawings(picture: Picture, strip: Strip, progress: Progress) -> list[list[Array]]:
     """By row and phase the bare drawings; one camera and one scale for all."""
-    wide = round(WIDTH / len(strip.phases))
-    bare = picture.with_(theme="light", width=wide, height=ROW, magnified=None)
+    left, top, right, foot = strip.cells[0][0]
+    wide, tall = round(right - left), round(foot - top)
+    bare = picture.with_(theme="light", width=wide, height=tall, magnified=None)
     if len(strip.cells) > 1:
         # viewports left and right, or below one another: either way each becomes as wide as a cell
-        bare = bare.with_(width=len(strip.cells) * wide, height=ROW)
+        bare = bare.with_(width=len(strip.cells) * wide)
         stacked = len({box[1] for box in view.fit(bare, 0.0)[1]}) > 1
         if stacked:
-            bare = bare.with_(width=wide, height=len(strip.cells) * ROW)
+            bare = bare.with_(width=wide, height=len(strip.cells) * tall)
     found: list[list[Array]] = [[] for _ in strip.cells]
     scale = bare.width / BASE_WIDTH
     boxes = [tuple(round(edge * scale) for edge in box) for box in view.fit(bare, 0.0)[1]]
@@ -85,7 +86,7 @@ def _paste(image: Array, cells: tuple[Box, ...], drawings: list[Array]) -> None:
 
 def _sheet_image(sheet: Sheet) -> Array:
     """(h, w, 3) uint8 of a sheet alone, on white; one sheet pixel is one pixel."""
-    plotter = off_screen(SUPERSAMPLE * round(sheet.width), SUPERSAMPLE * int(np.ceil(sheet.height)))
+    plotter = off_screen(SUPERSAMPLE * round(sheet.width), SUPERSAMPLE * round(sheet.height))
     try:
         plotter.set_background("white")
         plotter.render_window.SetMultiSamples(0)

@@ -16,6 +16,7 @@ TIP = 10.0
 COMPARED_WIDTH = 200.0
 _TITLE, _BAR, _TICKS = 28.0, 39.0, 68.0        # title baseline, top of the bar, tick baseline
 _CAUTION_LINE = 19.0
+CAUTION_ROOM = 370.0
 _MOST_STEPS = 7
 
 
@@ -32,9 +33,18 @@ def squares(top: float) -> list[float]:
 
 
 def colour_bar_items(
-    title: str, top: float, caution: str, theme: str, right: float, y: float, width: float, scale: float = 1.0
+    title: str,
+    top: float,
+    caution: str,
+    theme: str,
+    right: float,
+    y: float,
+    width: float,
+    scale: float = 1.0,
+    caution_room: float = CAUTION_ROOM,
 ) -> list[Primitive]:
-    """The bar with its tip ending at ``right`` and its title's line beginning at ``y``; ``scale`` sizes all."""
+    """The bar with its tip ending at ``right`` and its title's line beginning at ``y``; ``scale`` sizes all.
+    ``caution_room`` is the width in which the caution is broken into lines."""
     tokens = THEMES[theme]
     bar, foot, tip = y + (_BAR - 14) * scale, y + (_BAR - 14 + BAR_HEIGHT) * scale, TIP * scale
     left, edge = right - tip - width, right - tip
@@ -53,7 +63,7 @@ def colour_bar_items(
         items.append(Line(((x, foot), (x, foot + 4 * scale)), tokens.soft, scale))
         baseline = y + (_TICKS - 14) * scale
         items.append(Text(x, baseline, digits(value, 4, trim=True), tokens.ink, BAR_TICK * scale, anchor="middle"))
-    lines = wrap((caution,), 1.6 * width, BAR_TICK * scale) if caution else []
+    lines = wrap((caution,), caution_room, BAR_TICK * scale) if caution else []
     for k, words in enumerate(lines):
         baseline = y + (_TICKS - 14 + _CAUTION_LINE * (k + 1)) * scale
         items.append(Text(right, baseline, words, tokens.ink, BAR_TICK * scale, anchor="right"))
@@ -67,6 +77,6 @@ def picture_bar(picture: Picture, frame: Frame, band_top: float) -> list[Primiti
     right, words, caution = frame.width - SIDE, picture.energy_words, picture.energy_caution
     if picture.layout == "single":
         return colour_bar_items(words, picture.energy_top, caution, picture.theme, right, 14.0, float(BAR_WIDTH))
-    lines = len(wrap((caution,), 1.6 * COMPARED_WIDTH, BAR_TICK)) if caution else 0
+    lines = len(wrap((caution,), CAUTION_ROOM, BAR_TICK)) if caution else 0
     y = band_top - 68.0 - _CAUTION_LINE * lines
     return colour_bar_items(words, picture.energy_top, caution, picture.theme, right, y, COMPARED_WIDTH)

@@ -17,7 +17,7 @@ from viewer.scene import marks
 from viewer.scene.figures import kilograms
 from viewer.scene.motion import displacement, is_standing, positions
 from viewer.scene.picture import Body, Picture
-from viewer.scene.primitives import Box, Frame, Line, Point, Primitive, Text
+from viewer.scene.primitives import Box, Frame, Line, Point, Primitive, Text, grown
 from viewer.scene.tokens import THEMES
 from viewer.scene.typeface import text_width
 
@@ -78,7 +78,7 @@ class Placed:
     start: Point
 
     def texts(self) -> list[Primitive]:
-        """The label's lines, set to the side where its leader starts nearer to an edge: left."""
+        """The label's lines, set flush left."""
         left, top = self.box[0], self.box[1]
         return [
             Text(left, top + 0.8 * SIZE + LEADING * k, words, self.label.colour, SIZE, bold)
@@ -309,5 +309,5 @@ def place_label(
     line = leader(placed.start, target, label.anchor.clear, label.colour)
     if line is not None:
         leaders.append(line)
-    taken.append(box)
+    taken.append(grown(box, _PAD))
     return placed

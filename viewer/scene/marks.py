@@ -29,6 +29,8 @@ ARROW, ARROW_SHAFT = 0.058, 0.0027         # half length tip to tip, radius
 HEAD, HEAD_RADIUS = 0.022, 0.0095
 LONGEST_ARROW = 2.0         # an arrow seen at a slant is drawn longer, at most so much
 
+_INNER = 0.2                # "corner" measure below which a held point may be inside a held area
+_FEW = 4                    # neighbours that a point inside an area has at least
 _WORLD = np.eye(3)
 
 
@@ -105,16 +107,19 @@ def bead_radius(mass: float, heaviest: float, diagonal: float) -> float:
 def peg_places(mesh: Mesh, rows: Array, diagonal: float) -> list[tuple[Array, Array]]:
     """(centre, outward unit vector) of each peg along held nodes, spread by at least ``PEG_STEP``.
 
-    Held nodes are thinned by farthest-point selection, so that corners and ends of an edge get their peg first
-    and the rest fall evenly between. A peg sits on the side of the held nodes where no cell is, found from the
-    cells around; a line held within a sheet has none, and its pegs all sit on the sheet's lower side.
+    Of a held area only the outline gets pegs. Held nodes are thinned by farthest-point selection, so that corners
+    and ends of an edge get their peg first and the rest fall evenly between. A peg sits on the side of the held
+    nodes where no cell is, found from the cells around; a line held within a sheet has none, and its pegs all sit
+    on the sheet's lower side.
     """
     rows = np.unique(np.asarray(rows, np.int64))
     size, held = PEG * diagonal, mesh.points[rows]
+    corner, inner = _surroundings(held, PEG_STEP * diagonal)
     inward, count = _inward(mesh, rows)
     centres: list[Array] = []
     found = []
-    for k in spread(held, PEG_STEP * diagonal, favour=_cornerness(held, PEG_STEP * diagonal)):
+    edge = np.nonzero(~inner)[0]
+    for k in edge[spread(held[edge], PEG_STEP * diagonal, favour=corner[edge])]:
         near = np.linalg.norm(held - held[k], axis=1) <= 1.2 * size
         at = _middle_of_thickness(held, k, 0.5 * size)
         outward = -inward[near].sum(axis=0)
@@ -128,7 +133,7 @@ def peg_places(mesh: Mesh, rows: Array, diagonal: float) -> list[tuple[Array, Ar
     return found
 
 
-def spread(points: Array, step: float, most: int = 60, favour: Array | None = None) -> list[int]:
+def spread(points: Array, step: float, most: int = 160, favour: Array | None = None) -> list[int]:
     """Rows of ``points`` chosen one by one, each the farthest from those before, until all lie within ``step``.
 
     The first is the farthest from the centroid; ties go to the lower row (differences below 1e-9 of the extent
@@ -146,14 +151,25 @@ def spread(points: Array, step: float, most: int = 60, favour: Array | None = No
     return chosen
 
 
-def _cornerness(points: Array, reach: float) -> Array:
-    """(n,) how far each point is from the middle of those within ``reach``, in ``reach``: 0 along a straight line,
-    about ⅓ at a right angle, ½ at an end."""
+def _surroundings(points: Array, reach: float) -> tuple[Array, Array]:
+    """How held points lie among those within ``reach``, or further where they are few.
+
+    corner  (n,) distance from the middle of those around, in ``reach``: 0 along a straight line, about ⅓ at a right
+            angle, ½ at an end
+    inner   (n,) bool: others lie all around in two directions, so that the point is inside a held area, not on its
+            outline; never all of them
+    """
+    corner, inner = np.zeros(len(points)), np.zeros(len(points), bool)
     tree = cKDTree(points)
-    found = np.zeros(len(points))
+    if len(points) > _FEW:
+        reach = max(reach, 1.5 * float(np.median(tree.query(points, [_FEW + 1])[0])))
     for k, near in enumerate(tree.query_ball_point(points, reach)):
-        found[k] = np.linalg.norm(points[near].mean(axis=0) - points[k]) / reach
-    return found
+        away = points[near] - points[k]
+        corner[k] = np.linalg.norm(away.mean(axis=0)) / reach
+        if corner[k] < _INNER and len(near) > _FEW:
+            widths = np.linalg.svd(away, compute_uv=False)
+            inner[k] = widths[1] > 0.5 * widths[0]
+    return corner, inner if not inner.all() else ~inner
 
 
 def _inward(mesh: Mesh, rows: Array) -> tuple[Array, Array]:
@@ -215,7 +231,7 @@ def _axes(first: Array) -> Array:
 
 
 def _bead(body: Body, mark: MassMark, radius: float, diagonal: float, toward_eye: Array) -> list[Piece]:
-    """The bead, its legs, and its rim: a circle that stays visible when the bead is inside the body."""
+    """The bead, its rim, the rim again in dashes that stay visible when the bead is inside the body, and its legs."""
     centre = np.asarray(mark.position, float)
     motion = body.factor * np.asarray(mark.motion)
     unit, triangles = sphere(40, 20)
@@ -230,11 +246,12 @@ def _bead(body: Body, mark: MassMark, radius: float, diagonal: float, toward_eye
         points, _carried(points, centre, motion), triangles, lines, "mass", "body_edge", 1.3,
         normals=np.concatenate([unit, (rings - centre) / (1.006 * radius)]),
     )
-    circle = centre + radius * (flat @ _axes(toward_eye)[[1, 2, 0]])
-    moved = np.broadcast_to(motion[:3], circle.shape)
-    rim = Piece(circle, moved, np.empty((0, 3), np.int64), around, "mass", "body_edge", 1.3, on_top=True)
+    circle = centre + 1.006 * radius * (flat @ _axes(toward_eye)[[1, 2, 0]])
+    moved, none = np.broadcast_to(motion[:3], circle.shape), np.empty((0, 3), np.int64)
+    rim = Piece(circle, moved, none, around, "mass", "body_edge", 1.3)
+    hidden = Piece(circle, moved, none, around[np.arange(64) % 4 < 2], "mass", "body_edge", 1.3, on_top=True)
     legs = _legs(body, mark, centre, motion, radius, diagonal)
-    return [bead, rim] if legs is None else [bead, rim, legs]
+    return [bead, rim, hidden] if legs is None else [bead, rim, hidden, legs]
 
 
 def _legs(body: Body, mark: MassMark, centre: Array, motion: Array, radius: float, diagonal: float) -> Piece | None:

@@ -6,6 +6,7 @@ Here one sheet pixel is one pixel of a strip 1600 wide; type is 1.5 times that o
 from __future__ import annotations
 
 from dataclasses import dataclass
+from math import ceil
 
 import numpy as np
 
@@ -21,7 +22,7 @@ from viewer.scene.typeface import wrap
 
 TYPE = 1.5
 WIDTH, HEIGHT = 1600, 500
-ROW = 262                          # height of one row of bodies
+ROW, LEAST_ROW = 262.0, 222.0       # height of a row of bodies; less, when that keeps the strip 500 high
 _WORD, _GAUGE, _RULE = 35.0, 58.0, 88.0       # baseline, line and rule below the last row
 _FIRST, _SECOND, _STEP = 44.0, 86.0, 38.0     # baselines below the rule, distance of further lines
 _FOOT = 26.0                       # below the last baseline
@@ -55,6 +56,8 @@ def strip_layout(picture: Picture) -> Strip:
     phases, words = strip_phases(picture)
     wide = WIDTH / len(phases)
     keys = 38.0 * (1 if picture.layout == "side" else len(picture.bodies)) if compared else 0.0
+    note_height = _note(picture, 0.0, [])
+    tall = min(max(HEIGHT - _RULE - note_height, LEAST_ROW), ROW) if rows == 1 and not keys else ROW
     items: list[Primitive] = []
     cells = []
     y = 0.0
@@ -63,8 +66,8 @@ def strip_layout(picture: Picture) -> Strip:
             for k in (row,) if rows > 1 else range(len(picture.bodies)):
                 items += key(picture, k, _SIDE, y + 34.0 + 38.0 * (0 if rows > 1 else k), TYPE)
         y += keys
-        cells.append(tuple((k * wide, y, (k + 1) * wide, y + ROW) for k in range(len(phases))))
-        y += ROW
+        cells.append(tuple((k * wide, y, (k + 1) * wide, y + tall) for k in range(len(phases))))
+        y += tall
     for k, (phase, word) in enumerate(zip(phases, words, strict=True)):
         middle = (k + 0.5) * wide
         ends = middle - _SWING / 2, middle + _SWING / 2
@@ -73,7 +76,8 @@ def strip_layout(picture: Picture) -> Strip:
         items.append(knob(*ends, y + _GAUGE, phase, tokens, TYPE))
     rule = y + _RULE
     items.append(Line(((0.0, rule), (float(WIDTH), rule)), tokens.rule, TYPE))
-    height = max(rule + _note(picture, rule, items), rule + HEIGHT - (ROW + _RULE))
+    _note(picture, rule, items)
+    height = float(ceil(rule + max(note_height, HEIGHT - ROW - _RULE)))
     return Strip(phases, tuple(cells), Sheet(float(WIDTH), height, tuple(items)))
 
 
@@ -119,6 +123,6 @@ def _note(picture: Picture, rule: float, items: list[Primitive]) -> float:
     if picture.energy_top is not None:
         items += colour_bar_items(
             picture.energy_words, picture.energy_top, picture.energy_caution, "light",
-            WIDTH - 28.0, rule + 20.0, BAR_WIDTH * TYPE, TYPE,
+            WIDTH - 28.0, rule + 20.0, BAR_WIDTH * TYPE, TYPE, caution_room=BAR_WIDTH * TYPE,
         )
     return y - _STEP + _FOOT - rule
