@@ -18,7 +18,7 @@ class Formulation(Protocol):
 
     rotations    True: six freedoms a node (ux uy uz rx ry rz), otherwise three (ux uy uz); nd in all
     scalar_mass  True: ``mass`` gives one (b, n, n) matrix that holds for each of the three displacements
-    caution      a sentence when the formulation is known to be poor in bending, else ""
+    caution      a sentence when the formulation has a known weakness (poor in bending), else ""
     """
 
     @property

@@ -34,7 +34,7 @@ class SolidFormulation:
     """One solid element formulation.
 
     ``stiffness_order`` and ``mass_order`` are degrees of quadrature (``CellKind.rule``); ``incompatible`` adds the
-    condensed modes above. ``caution`` is not empty when the element is known to be poor in bending.
+    condensed modes above. ``caution`` is not empty when the element has a weakness to warn of, above all in bending.
     """
 
     name: str
@@ -142,6 +142,10 @@ _STIFF = (
     "{} cells are too stiff in bending: frequencies of thin parts come out high however fine the sheet is meshed; "
     "use {}"
 )
+_LOOSE = (
+    "hex20-reduced: a row of single cells keeps motions that store no energy; mesh two cells wide in two directions "
+    "or use hex20-full"
+)
 
 SOLIDS: tuple[SolidFormulation, ...] = (
     SolidFormulation("tet4-constant", "tet4", 0, 2, caution=_STIFF.format("4-node tetrahedra", "tet10")),
@@ -149,7 +153,7 @@ SOLIDS: tuple[SolidFormulation, ...] = (
     SolidFormulation("hex8-incompatible", "hex8", 3, 5, incompatible=True),
     SolidFormulation("hex8-full", "hex8", 3, 5, caution=_STIFF.format("plain 8-node hexahedra", "hex8-incompatible")),
     SolidFormulation("hex20-full", "hex20", 5, 7),
-    SolidFormulation("hex20-reduced", "hex20", 3, 7),
+    SolidFormulation("hex20-reduced", "hex20", 3, 7, caution=_LOOSE),
     SolidFormulation("hex27-full", "hex27", 5, 7),
     SolidFormulation("wedge6-full", "wedge6", 2, 4, caution=_STIFF.format("6-node wedges", "wedge15 or hex8")),
     SolidFormulation("wedge15-full", "wedge15", 4, 6),
