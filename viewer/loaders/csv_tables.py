@@ -62,6 +62,8 @@ def read_mesh(path: Path, progress: Progress = SILENT) -> RawMesh:
     """The mesh of ``NAME_nodes.csv`` and ``NAME_elements.csv``. Raises ``LoadError``."""
     nodes = Table(_table_path(path, "_nodes"))
     nodes.need("node", "x", "y", "z")
+    if not len(nodes):
+        raise nodes.error("holds no node")
     progress.tick("reading elements")
     elements = Table(_table_path(path, "_elements"))
     elements.need("element", "kind", "n1")

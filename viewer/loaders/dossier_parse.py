@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import difflib
+import re
 import tomllib
 from collections.abc import Sequence
 from pathlib import Path
@@ -48,11 +49,11 @@ def _raise_translated(path: Path, data: Any, error: ValidationError) -> NoReturn
     # unknown keys first: a misspelt key explains the "missing" one beside it
     issues.sort(key=lambda issue: issue["type"] != "extra_forbidden")
     issue = issues[0]
-    location = [part for part in issue["loc"] if not (isinstance(part, str) and _is_branch(part))]
+    location = _key(issue["loc"])
     kind, context = issue["type"], issue.get("ctx", {})
-    more = f" (and {len(issues) - 1} more)" if len(issues) > 1 else ""
+    others = len({_key(other["loc"]) for other in issues}) - 1
+    more = f" (and {others} more)" if others else ""
     key = str(location[-1]) if location else ""
-    given = short(issue["input"])
     if kind == "extra_forbidden":
         known = list(_model_at(location[:-1]).model_fields)
         close = difflib.get_close_matches(key, known, 1)
@@ -73,24 +74,30 @@ def _raise_translated(path: Path, data: Any, error: ValidationError) -> NoReturn
             place=_place(data, location),
             expected=expected,
         )
-    message = issue["msg"][0].lower() + issue["msg"][1:]
-    for theirs, ours in (
-        ("input should be ", ""),
-        ("a valid ", "a "),
-        ("dictionary", "table"),
-        ("list", "list […]"),
-        (" an instance of", ""),
-        (" after validation", ""),
-    ):
-        message = message.replace(theirs, ours)
     raise DossierError(
-        f"'{key}' has a wrong value{more}", file=path, place=_place(data, location), found=given, expected=message
+        f"has a wrong value{more}",
+        file=path,
+        place=_place(data, location),
+        found=short(issue["input"]),
+        expected=_expectation(issue["msg"]),
     )
+
+
+def _expectation(message: str) -> str:
+    """pydantic's sentence as the words after "expected:"."""
+    message = re.sub(r"^(Input|List|Dictionary|String) should (be |have )?", "", message)
+    message = re.sub(r"( after validation)?, not \d+$", "", message)
+    return message.replace("a valid ", "a ").replace("dictionary", "table").replace(" an instance of", "")
+
+
+def _key(location: Sequence[int | str]) -> tuple[int | str, ...]:
+    """Keys and indices of a location, without the names that pydantic adds for members of a union."""
+    return tuple(part for part in location if not (isinstance(part, str) and _is_branch(part)))
 
 
 def _is_branch(part: str) -> bool:
     """Names that pydantic puts into a location for a member of a union, not for a key."""
-    return "[" in part or part in ("str", "float", "int", "bool") or part.startswith("literal")
+    return "[" in part or part in ("str", "float", "int", "bool") or part.startswith(("literal", "constrained"))
 
 
 def _model_at(location: Sequence[int | str]) -> type[BaseModel]:

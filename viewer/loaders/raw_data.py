@@ -209,13 +209,19 @@ def _checked_blocks(blocks: Sequence[RawBlock], points: Array, path: object) -> 
 
 
 def _numbered(blocks: list[RawBlock], path: object, notes: list[str]) -> tuple[CellBlock, ...]:
-    if any(block.ids is None for block in blocks):
-        given, total = None, sum(len(block.nodes) for block in blocks)
-    else:
-        given = np.concatenate([block.ids for block in blocks])
-        total = len(given)
-        if total != sum(len(block.nodes) for block in blocks):
-            raise LoadError("cells and element ids differ in number", file=path)
+    given = None
+    total = sum(len(block.nodes) for block in blocks)
+    known = [block.ids for block in blocks if block.ids is not None]
+    if len(known) == len(blocks):
+        for block in blocks:
+            if np.shape(block.ids) != (len(block.nodes),):
+                raise LoadError(
+                    f"wrong number of element ids for {block.kind}",
+                    file=path,
+                    found=str(np.shape(block.ids)),
+                    expected=f"({len(block.nodes)},)",
+                )
+        given = np.concatenate(known)
     ids = _ids(given, total, "element", path, notes)
     cuts = np.cumsum([len(block.nodes) for block in blocks])[:-1]
     return tuple(CellBlock(b.kind, b.nodes, i) for b, i in zip(blocks, np.split(ids, cuts), strict=True))
