@@ -1,10 +1,13 @@
 """How far given shapes are from being modes of our matrices, and where: the residual of Kφ − λMφ.
 
-With r that residual on the free directions and A = K + αM (α the lowest elastic λ given, so that free bodies work),
-the residual is rᵀA⁻¹r / φᵀAφ. Written in the model's own modes, φ = Σ cᵢφᵢ, this is Σ cᵢ²(λᵢ − λ)²/(λᵢ + α) over
-Σ cᵢ²(λᵢ + α): a share of energy that does not belong to a mode of that frequency. It does not depend on the size of
-the shape, is second order in small errors, and cannot cancel, as closure can. The inverse is needed: weighed by the
-diagonal of K instead, the residual of a smooth wrong shape shrinks with the mesh.
+With r that residual on the free directions and A = K + αM, the residual share is rᵀA⁻¹r / φᵀAφ. Written in the
+model's own modes, φ = Σ cᵢφᵢ, this is Σ cᵢ²(λᵢ − λ)²/(λᵢ + α) over Σ cᵢ²(λᵢ + α): the share of energy that does not
+belong to a mode of that frequency. It does not depend on the size of the shape, is second order in small errors,
+and cannot cancel, as closure can. The inverse is needed: weighed by the diagonal of K instead, the residual of a
+smooth wrong shape shrinks with the mesh. The term αM makes A regular for free bodies; with α about λ no part of the
+spectrum counts for more than its own share (were α small, a trace of a low mode in a high one would count manifold).
+α is λ rounded to a power of 4, so that a few factorisations serve many modes and a mode's figure does not depend on
+which others are asked for.
 
 x = A⁻¹r is the displacement by which the shape misses being a mode; the energy of x by cell shows where.
 """
@@ -16,7 +19,7 @@ import scipy.sparse as sp
 import scipy.sparse.linalg as spla
 
 from viewer.jobs import SILENT, Progress
-from viewer.mechanics.assembly import Layout, assemble_layout
+from viewer.mechanics.assembly import Layout, System, assemble_layout
 from viewer.mechanics.factor import factorise
 from viewer.mechanics.patch import rigid_fields
 from viewer.mechanics.sums import cell_energies, real_parts
@@ -45,14 +48,25 @@ def residuals(layout: Layout, vectors: Array, omega: Array, progress: Progress =
     directions A⁻¹ is replaced by conjugate gradients that may stop early; the figure is then a lower bound.
     """
     system = assemble_layout(layout, progress)
-    free = np.nonzero(~layout.held)[0]
-    alpha = float(omega.min()) ** 2
-    shifted = sp.csr_array(system.K + alpha * system.M)
     # A shape that moves where the design is held cannot be its mode: that motion is taken away, and what it leaves
     # behind shows as residual beside the support.
-    parts = real_parts(np.where(layout.held, 0.0, vectors))              # (p, k, n_dof)
+    vectors = np.where(layout.held, 0.0, vectors)
+    level = np.rint(np.log(omega**2) / np.log(4.0))
+    shares, by_cell = np.empty(len(vectors)), np.empty((len(vectors), layout.design.mesh.n_cells))
+    for power in np.unique(level):
+        which = np.nonzero(level == power)[0]
+        shares[which], by_cell[which] = _one_level(system, vectors[which], omega[which], 4.0**power, progress)
+    return shares, by_cell
+
+
+def _one_level(
+    system: System, vectors: Array, omega: Array, alpha: float, progress: Progress
+) -> tuple[Array, Array]:
+    free = np.nonzero(~system.held)[0]
+    shifted = sp.csr_array(system.K + alpha * system.M)
+    parts = real_parts(vectors)                                                                # (p, k, n_dof)
     right = np.stack([system.K @ p.T - (system.M @ p.T) * omega**2 for p in parts])[:, free]  # (p, n_free, k)
-    whole = sum(np.einsum("kn,nk->k", p, shifted @ p.T) for p in parts)
+    whole = np.sum([np.einsum("kn,nk->k", p, shifted @ p.T) for p in parts], axis=0)
     inner = sp.csr_array(shifted[free][:, free])
     progress.tick("residual")
     flat = np.moveaxis(right, 1, 0).reshape(len(free), -1)
@@ -60,10 +74,10 @@ def residuals(layout: Layout, vectors: Array, omega: Array, progress: Progress =
     found = factorise(inner, definite=True).solve(flat) if direct else _iterate(inner, flat, progress)
     # 2xᵀr − xᵀAx: equal to rᵀA⁻¹r for the exact x and below it for any other.
     gain = 2 * np.sum(flat * found, axis=0) - np.sum(found * (inner @ found), axis=0)
-    missed = np.zeros((flat.shape[1], layout.n_dof))
+    missed = np.zeros((flat.shape[1], system.n_dof))
     missed[:, free] = found.T
-    by_cell = cell_energies(layout, missed, "stiffness", progress)
-    by_cell += alpha * cell_energies(layout, missed, "mass", progress)
+    by_cell = cell_energies(system, missed, "stiffness", progress)
+    by_cell += alpha * cell_energies(system, missed, "mass", progress)
     shares = gain.reshape(len(parts), -1).sum(axis=0) / whole
     return shares, 2 * by_cell.reshape(len(parts), len(vectors), -1).sum(axis=0) / whole[:, None]
 
