@@ -1,6 +1,6 @@
 """Assembled stiffness and mass against scikit-fem (BSD licence) wherever both use the same element and quadrature.
 
-Its wedges are left out: version 12's rules on the reference wedge (volume ½) have weights that add up to ¼ (measured).
+Its wedges are left out: version 12's rules on the reference wedge (volume ½) have weights that add up to ¼, measured.
 """
 
 import numpy as np

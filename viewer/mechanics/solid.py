@@ -67,23 +67,30 @@ class SolidFormulation:
         return out
 
     def mass(self, xyz: Array, prop: Property) -> Array:
-        """(b, n, n) consistent mass, kg, of cells ``xyz`` (b, n, 3) m; errors as in ``stiffness``."""
+        """(b, n, n) consistent mass, kg, of cells ``xyz`` (b, n, 3) m.
+
+        ``ModelError`` for an unusable material or a cell without positive volume. A fold that no point of the
+        stiffness sees is let pass: its mass is still right in sum.
+        """
         xyz = np.asarray(xyz, float)
         density = materials.check(prop.material).density
         points, weights = KINDS[self.kind].rule(self.mass_order)
         values = KINDS[self.kind].shape(points)
         n = xyz.shape[1]
-        pairs = (density * weights[:, None, None] * values[:, :, None] * values[:, None, :]).reshape(-1, n * n)
+        pairs = ((values[:, :, None] * values[:, None, :]) * (density * weights[:, None, None])).reshape(-1, n * n)
         out = np.empty((len(xyz), n * n))
         for part in _chunks(len(xyz), 9 * len(points)):
-            out[part] = self._determinants(jacobian_components(self.kind, xyz[part], points)) @ pairs
+            stretch = determinants(jacobian_components(self.kind, xyz[part], points))
+            self._require_positive(stretch @ weights, "a volume")
+            out[part] = stretch @ pairs
         return out.reshape(-1, n, n)
 
     def _slopes(self, xyz: Array, points: Array, weights: Array) -> Array:
         """(3, b, q, modes) global gradients, times the root of the volume of each integration point, of the shape
         functions and, behind them, the incompatible modes."""
         jacobian = jacobian_components(self.kind, xyz, points)
-        determinant = self._determinants(jacobian)
+        determinant = determinants(jacobian)
+        self._require_positive(determinant.min(axis=1), "a Jacobian determinant at an integration point")
         scale = np.sqrt(weights / determinant)                 # √(w det J) over the determinant of the inverse
         slopes = _mapped(KINDS[self.kind].gradient(points), cofactors(jacobian) * scale)
         if not self.incompatible:
@@ -92,17 +99,14 @@ class SolidFormulation:
         bubbles = -2 * points[:, :, None] * np.eye(3)          # ∂(1 − ξ²)/∂ξ in each direction
         return np.concatenate([slopes, _mapped(bubbles, cofactors(centre) * scale)], axis=-1)
 
-    def _determinants(self, jacobian: Array) -> Array:
-        determinant = determinants(jacobian)
-        smallest = determinant.min(initial=np.inf)
-        if not smallest > 0:
-            count = int((~(determinant.min(axis=1) > 0)).sum())
+    def _require_positive(self, smallest: Array, what: str) -> None:
+        """``ModelError`` unless every cell's value in ``smallest`` (b,) is above 0 (and a number)."""
+        count = int((~(smallest > 0)).sum())
+        if count:
             raise ModelError(
                 f"{count} {self.kind} cell{'s are' if count > 1 else ' is'} inside out or collapsed",
-                found=f"a Jacobian determinant of {smallest:.3g} at an integration point",
-                expected="above 0 everywhere in the cell", do="repair the mesh there",
+                found=f"{what} of {smallest.min():.3g}", expected="above 0", do="repair the mesh there",
             )
-        return determinant
 
 
 def _chunks(count: int, doubles_per_cell: int) -> Iterator[slice]:
