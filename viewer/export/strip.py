@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import os
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 from PIL import Image
@@ -88,9 +89,10 @@ def _sheet_image(sheet: Sheet) -> Array:
     """(h, w, 3) uint8 of a sheet alone, on white; one sheet pixel is one pixel."""
     plotter = off_screen(SUPERSAMPLE * round(sheet.width), SUPERSAMPLE * round(sheet.height))
     try:
-        plotter.set_background("white")
-        plotter.render_window.SetMultiSamples(0)
+        plotter.renderer.SetBackground(1, 1, 1)
+        window: Any = plotter.render_window
+        window.SetMultiSamples(0)
         SheetActors(plotter.renderer).show(sheet)
-        return np.array(reduce(pixels(plotter.render_window)))
+        return np.array(reduce(pixels(window)))
     finally:
         plotter.close()

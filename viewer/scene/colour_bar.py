@@ -4,6 +4,8 @@ from __future__ import annotations
 
 from math import sqrt
 
+import numpy as np
+
 from viewer.scene.figures import digits
 from viewer.scene.palette import energy_ramp, energy_share
 from viewer.scene.picture import Picture
@@ -59,7 +61,7 @@ def colour_bar_items(
         Line(outline, tokens.soft, scale),
     ]
     for value in squares(top):
-        x = left + float(energy_share(value, top)) * width
+        x = left + float(energy_share(np.array(value), top)) * width
         items.append(Line(((x, foot), (x, foot + 4 * scale)), tokens.soft, scale))
         baseline = y + (_TICKS - 14) * scale
         items.append(Text(x, baseline, digits(value, 4, trim=True), tokens.ink, BAR_TICK * scale, anchor="middle"))

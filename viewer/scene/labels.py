@@ -17,7 +17,7 @@ from viewer.scene import marks
 from viewer.scene.figures import kilograms
 from viewer.scene.motion import displacement, is_standing, positions
 from viewer.scene.picture import Body, Picture
-from viewer.scene.primitives import Box, Frame, Line, Point, Primitive, Text, grown
+from viewer.scene.primitives import Box, Frame, Line, Point, Primitive, Text, bounds, grown
 from viewer.scene.tokens import THEMES
 from viewer.scene.typeface import text_width
 
@@ -298,12 +298,19 @@ def _touches(boxes: Array, line: Array) -> Array:
 
 
 def place_label(
-    label: Label, frame: Frame, region: Box, covered: Cover, taken: list[Box], leaders: list[Line]
+    label: Label,
+    frame: Frame,
+    region: Box,
+    covered: Cover,
+    taken: list[Box],
+    leaders: list[Line],
+    others: Sequence[Label] = (),
 ) -> Placed:
-    """Place one label and note its box and leader among those taken."""
+    """Place one label, off the marks of ``others`` too, and note its box and leader among those taken."""
+    marked = [bounds((other.anchor.rest(frame),), other.anchor.clear) for other in others if other is not label]
     target = label.anchor.rest(frame)
     wish = Wish(label.size, target, label.anchor.clear)
-    box = choose_place(wish, region, covered, taken, leaders)
+    box = choose_place(wish, region, covered, [*taken, *marked], leaders)
     x, y = leader_start(np.array([box]), target)[0]
     placed = Placed(label, box, (float(x), float(y)))
     line = leader(placed.start, target, label.anchor.clear, label.colour)

@@ -30,6 +30,7 @@ HEAD, HEAD_RADIUS = 0.022, 0.0095
 LONGEST_ARROW = 2.0         # an arrow seen at a slant is drawn longer, at most so much
 
 _INNER = 0.2                # "corner" measure below which a held point may be inside a held area
+_ONE_SIDED = 0.6            # share in which the cells around held nodes agree on the side where the body is
 _FEW = 4                    # neighbours that a point inside an area has at least
 _WORLD = np.eye(3)
 
@@ -123,7 +124,7 @@ def peg_places(mesh: Mesh, rows: Array, diagonal: float) -> list[tuple[Array, Ar
         near = np.linalg.norm(held - held[k], axis=1) <= 1.2 * size
         at = _middle_of_thickness(held, k, 0.5 * size)
         outward = -inward[near].sum(axis=0)
-        if np.linalg.norm(outward) < 0.25 * max(float(count[near].sum()), 1e-300):
+        if np.linalg.norm(outward) < _ONE_SIDED * max(float(count[near].sum()), 1e-300):
             outward = _lower_side(mesh, rows[near])
         outward = outward / np.linalg.norm(outward)
         centre = at + (0.5 - PEG_BITE) * size * outward
@@ -296,7 +297,8 @@ def _point(body: Body, mark: PointMark, diagonal: float, toward_eye: Array) -> P
     for axis in (direction, -direction):
         arms.append(_revolved(long * axis, [(RING / long, ARROW_SHAFT), (ARROW - HEAD, ARROW_SHAFT)]))
         arms.append(_revolved(long * axis, [(ARROW - HEAD, 0.0), (ARROW - HEAD, HEAD_RADIUS), (ARROW, 0.0)]))
-    points, triangles = [], []
+    points: list[Array] = []
+    triangles: list[Array] = []
     for part, faces in (ring, *arms):
         triangles.append(faces + sum(len(p) for p in points))
         points.append(centre + diagonal * part)
@@ -334,10 +336,7 @@ def sphere(around: int, down: int) -> tuple[Array, Array]:
 
 def _grid_triangles(rows: int, columns: int, wrap_rows: bool, wrap_columns: bool) -> Array:
     """Two triangles for each cell of a grid of points, closed on itself where asked."""
-    i, j = np.meshgrid(
-        np.arange(rows if wrap_rows else rows - 1), np.arange(columns if wrap_columns else columns - 1), indexing="ij"
-    )
-    i, j = i.ravel(), j.ravel()
-    at = lambda a, b: (a % rows) * columns + b % columns  # noqa: E731
-    a, b, c, d = at(i, j), at(i + 1, j), at(i + 1, j + 1), at(i, j + 1)
+    down, across = rows if wrap_rows else rows - 1, columns if wrap_columns else columns - 1
+    i, j = (index.ravel() for index in np.indices((down, across)))
+    a, b, c, d = (((i + p) % rows) * columns + (j + q) % columns for p, q in ((0, 0), (1, 0), (1, 1), (0, 1)))
     return np.concatenate([np.stack([a, b, c], axis=1), np.stack([a, c, d], axis=1)])

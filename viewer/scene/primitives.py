@@ -50,7 +50,12 @@ class Line:
 
     @property
     def box(self) -> Box:
-        return bounds(self.points, self.width / 2)
+        left, top, right, foot = bounds(self.points)
+        if len(self.points) > 2:                                     # corners may reach over on any side
+            return grown((left, top, right, foot), self.width / 2)
+        long = max(np.hypot(right - left, foot - top), 1e-300)
+        x, y = self.width / 2 * (foot - top) / long, self.width / 2 * (right - left) / long
+        return float(left - x), float(top - y), float(right + x), float(foot + y)
 
 
 @dataclass(frozen=True)

@@ -74,7 +74,7 @@ def plan_sheet(picture: Picture, frame: Frame) -> SheetPlan:
         for label in wanted:
             left, top, right, foot = frame.boxes[label.anchor.body]
             region = (left, top, right, min(foot, band_top))
-            labels.append(place_label(label, frame, region, covered, taken, leaders))
+            labels.append(place_label(label, frame, region, covered, taken, leaders, wanted))
     fixed = [*(magnifier.items() if magnifier is not None else []), *furniture, *note_items(picture, frame)]
     fixed += [text for placed in labels for text in placed.texts()]
     return SheetPlan(picture, frame, tuple(fixed), tuple(labels), magnifier)

@@ -26,6 +26,7 @@ ROW, LEAST_ROW = 262.0, 222.0       # height of a row of bodies; less, when that
 _WORD, _GAUGE, _RULE = 35.0, 58.0, 88.0       # baseline, line and rule below the last row
 _FIRST, _SECOND, _STEP = 44.0, 86.0, 38.0     # baselines below the rule, distance of further lines
 _FOOT = 26.0                       # below the last baseline
+_KEY, _KEY_LINE = 33.0, 42.0        # baseline and height of a title key
 _SIDE = 22.0
 _BAR_ROOM = 400.0
 _SWING = 164.0
@@ -55,7 +56,7 @@ def strip_layout(picture: Picture) -> Strip:
     compared = picture.layout != "single"
     phases, words = strip_phases(picture)
     wide = WIDTH / len(phases)
-    keys = 38.0 * (1 if picture.layout == "side" else len(picture.bodies)) if compared else 0.0
+    keys = _KEY_LINE * (1 if picture.layout == "side" else len(picture.bodies)) if compared else 0.0
     note_height = _note(picture, 0.0, [])
     tall = min(max(HEIGHT - _RULE - note_height, LEAST_ROW), ROW) if rows == 1 and not keys else ROW
     items: list[Primitive] = []
@@ -64,7 +65,7 @@ def strip_layout(picture: Picture) -> Strip:
     for row in range(rows):
         if compared:
             for k in (row,) if rows > 1 else range(len(picture.bodies)):
-                items += key(picture, k, _SIDE, y + 34.0 + 38.0 * (0 if rows > 1 else k), TYPE)
+                items += key(picture, k, _SIDE, y + _KEY + _KEY_LINE * (0 if rows > 1 else k), TYPE)
         y += keys
         cells.append(tuple((k * wide, y, (k + 1) * wide, y + tall) for k in range(len(phases))))
         y += tall
