@@ -37,6 +37,7 @@ class CellKind:
     triangles  of surface kinds: the cell cut into triangles that use every node
     mirror     (n,) permutation of the nodes that turns the cell inside out
     powers     (n, dim) exponents of the monomials spanned; apex_power (n,): divided by (1 − z) to this power
+    coefficients  (n, n) of the shape functions (columns) in those monomials (rows)
     """
 
     name: str
@@ -164,7 +165,7 @@ def _serendipity(dim: int) -> Powers:
 
 
 def _wedge(degree: int) -> Powers:
-    """Triangle degree ≤ ``degree`` times height, total degree within a triangle plus line Serendipity space."""
+    """Polynomials of the triangle times those of the height, without the products where both are quadratic."""
     for a, b in _total(2, degree):
         for c in range(degree + 1):
             if a + b < degree or c < degree or degree == 1:
@@ -173,7 +174,7 @@ def _wedge(degree: int) -> Powers:
 
 def _kind(
     name: str, vtk_type: int, meshio_name: str, powers: Powers, *, centres: tuple[Nodes, ...] = (),
-    rational: Powers = (),
+    rational: tuple[Nodes, ...] = (),
 ) -> CellKind:
     family_name = name.rstrip("0123456789")
     family = _FAMILIES[family_name]
@@ -186,8 +187,8 @@ def _kind(
     reference = np.array([corners[list(m)].mean(axis=0) for m in means])
     exponents = np.array([*powers, *rational], np.int64).reshape(n_nodes, dim)
     apex = np.zeros(n_nodes, np.int64)
-    apex[n_nodes - len(tuple(rational)):] = 1
-    vandermonde = _monomials(exponents, apex, reference)
+    apex[n_nodes - len(rational):] = 1
+    coefficients = np.linalg.inv(_monomials(exponents, apex, reference))
     swapped = reference[:, [1, 0, *range(2, dim)]] if dim > 1 else -reference
     mirror = np.linalg.norm(swapped[:, None] - reference, axis=2).argmin(axis=1)
     node_of = {frozenset(m): i for i, m in enumerate(means)}
@@ -197,14 +198,14 @@ def _kind(
         more = [node_of[s] for s in (*sides, frozenset(ring)) if s in node_of]
         return _FACE_KINDS[len(ring), len(ring) + len(more)], (*ring, *more)
 
-    for array in (reference, exponents, apex, mirror):
+    for array in (reference, exponents, apex, mirror, coefficients):
         array.flags.writeable = False
     return CellKind(
         name=name, family=family_name, dim=dim, degree=2 if quadratic else min(dim, 1), n_nodes=n_nodes,
         n_corners=n_corners, reference=reference, faces=tuple(face(ring) for ring in family.faces),
         edges=tuple((*e, node_of[frozenset(e)]) if quadratic else e for e in family.edges),
         triangles=_TRIANGLES.get(name, ()), mirror=mirror, vtk_type=vtk_type, meshio_name=meshio_name,
-        powers=exponents, apex_power=apex, coefficients=np.linalg.inv(vandermonde),
+        powers=exponents, apex_power=apex, coefficients=coefficients,
     )
 
 

@@ -13,18 +13,18 @@ Array = NDArray[Any]
 _CHUNK = 20_000      # cells at a time: bounds memory to some tens of MB for every kind
 
 
-def jacobian_components(kind: str, xyz: Array, xi: Array) -> Array:
-    """(3, dim, b, q) derivatives of position by reference coordinate; cells ``xyz`` (b, n, 3), at ``xi`` (q, dim).
+def jacobian_components(xyz: Array, gradient: Array) -> Array:
+    """(3, dim, b, q) derivatives of position by reference coordinate, of cells ``xyz`` (b, n, 3) where their shape
+    functions have the ``gradient`` (q, n, dim).
 
     Component first: every entry is one contiguous (b, q) array, on which the algebra of 3 × 3 matrices is quick.
     """
-    gradient = KINDS[kind].gradient(xi).transpose(2, 1, 0)
-    return np.ascontiguousarray(np.moveaxis(xyz, 2, 0))[:, None] @ np.ascontiguousarray(gradient)
+    return np.ascontiguousarray(np.moveaxis(xyz, 2, 0))[:, None] @ np.ascontiguousarray(gradient.transpose(2, 1, 0))
 
 
 def jacobians(kind: str, xyz: Array, xi: Array) -> Array:
-    """(b, q, 3, dim): ``jacobian_components`` with the matrices last."""
-    return np.moveaxis(jacobian_components(kind, xyz, xi), (0, 1), (2, 3))
+    """(b, q, 3, dim) derivatives of position by reference coordinate; cells ``xyz`` (b, n, 3), at ``xi`` (q, dim)."""
+    return np.moveaxis(jacobian_components(xyz, KINDS[kind].gradient(xi)), (0, 1), (2, 3))
 
 
 def cofactors(j: Array) -> Array:
@@ -46,12 +46,13 @@ def determinants(j: Array) -> Array:
     return j[0, 0] * first[0] + j[1, 0] * first[1] + j[2, 0] * first[2]
 
 
-def _densities(kind: str, xyz: Array, xi: Array) -> Array:
-    """(b, q) measure per unit of reference measure; signed for solids."""
-    j = jacobian_components(kind, xyz, xi)
-    if KINDS[kind].dim == 3:
+def _densities(xyz: Array, gradient: Array) -> Array:
+    """(b, q) measure per unit of reference measure; signed for solids. Arguments as ``jacobian_components``."""
+    j = jacobian_components(xyz, gradient)
+    dim = j.shape[1]
+    if dim == 3:
         return determinants(j)
-    side = cross(j[:, 0], j[:, 1]) if KINDS[kind].dim == 2 else j[:, 0]
+    side = cross(j[:, 0], j[:, 1]) if dim == 2 else j[:, 0]
     return np.sqrt((side**2).sum(axis=0))
 
 
@@ -73,10 +74,11 @@ def measures(kind: str, xyz: Array) -> Array:
     if KINDS[kind].dim == 0:
         return np.zeros(len(xyz))
     points, weights = KINDS[kind].rule(_order(kind))
+    gradient = KINDS[kind].gradient(points)
     out = np.empty(len(xyz))
     for start in range(0, len(xyz), _CHUNK):
         part = slice(start, start + _CHUNK)
-        out[part] = _densities(kind, xyz[part], points) @ weights
+        out[part] = _densities(xyz[part], gradient) @ weights
     return out
 
 
@@ -88,11 +90,11 @@ def inverted(kind: str, xyz: Array) -> Array:
     xyz = np.asarray(xyz, float)
     if KINDS[kind].dim == 0:
         return np.empty(0, np.int64)
-    points, _ = KINDS[kind].rule(4)
+    gradient = KINDS[kind].gradient(KINDS[kind].rule(4)[0])
     bad = np.zeros(len(xyz), bool)
     for start in range(0, len(xyz), _CHUNK):
         part = slice(start, start + _CHUNK)
-        density = _densities(kind, xyz[part], points)
+        density = _densities(xyz[part], gradient)
         bad[part] = ~(density.min(axis=1) > 1e-12 * np.abs(density).max(axis=1))
     return np.nonzero(bad)[0]
 

@@ -54,10 +54,11 @@ class SolidFormulation:
         xyz = np.asarray(xyz, float)
         first, second = materials.lame(prop.material)
         points, weights = KINDS[self.kind].rule(self.stiffness_order)
+        gradient = KINDS[self.kind].gradient(points)
         kept = 3 * xyz.shape[1]
         out = np.empty((len(xyz), kept, kept))
         for part in _chunks(len(xyz), (len(points) + kept) * kept):
-            matrix = _elastic(self._slopes(xyz[part], points, weights), first, second)
+            matrix = _elastic(self._slopes(xyz[part], gradient, points, weights), first, second)
             if self.incompatible:
                 inner = matrix[:, kept:]
                 freed = np.linalg.solve(inner[:, :, kept:], inner[:, :, :kept])
@@ -75,27 +76,27 @@ class SolidFormulation:
         xyz = np.asarray(xyz, float)
         density = materials.check(prop.material).density
         points, weights = KINDS[self.kind].rule(self.mass_order)
-        values = KINDS[self.kind].shape(points)
+        values, gradient = KINDS[self.kind].shape(points), KINDS[self.kind].gradient(points)
         n = xyz.shape[1]
         pairs = ((values[:, :, None] * values[:, None, :]) * (density * weights[:, None, None])).reshape(-1, n * n)
         out = np.empty((len(xyz), n * n))
         for part in _chunks(len(xyz), 9 * len(points)):
-            stretch = determinants(jacobian_components(self.kind, xyz[part], points))
+            stretch = determinants(jacobian_components(xyz[part], gradient))
             self._require_positive(stretch @ weights, "a volume")
             out[part] = stretch @ pairs
         return out.reshape(-1, n, n)
 
-    def _slopes(self, xyz: Array, points: Array, weights: Array) -> Array:
+    def _slopes(self, xyz: Array, gradient: Array, points: Array, weights: Array) -> Array:
         """(3, b, q, modes) global gradients, times the root of the volume of each integration point, of the shape
         functions and, behind them, the incompatible modes."""
-        jacobian = jacobian_components(self.kind, xyz, points)
+        jacobian = jacobian_components(xyz, gradient)
         determinant = determinants(jacobian)
         self._require_positive(determinant.min(axis=1), "a Jacobian determinant at an integration point")
         scale = np.sqrt(weights / determinant)                 # √(w det J) over the determinant of the inverse
-        slopes = _mapped(KINDS[self.kind].gradient(points), cofactors(jacobian) * scale)
+        slopes = _mapped(gradient, cofactors(jacobian) * scale)
         if not self.incompatible:
             return slopes
-        centre = jacobian_components(self.kind, xyz, np.zeros((1, 3)))
+        centre = jacobian_components(xyz, KINDS[self.kind].gradient(np.zeros((1, 3))))
         bubbles = -2 * points[:, :, None] * np.eye(3)          # ∂(1 − ξ²)/∂ξ in each direction
         return np.concatenate([slopes, _mapped(bubbles, cofactors(centre) * scale)], axis=-1)
 
