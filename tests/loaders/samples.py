@@ -5,6 +5,8 @@ from __future__ import annotations
 import numpy as np
 
 from viewer.cells import KINDS
+from viewer.errors import LoadError
+from viewer.loaders import read_mesh, read_modes
 from viewer.model.mesh import CellBlock, Mesh
 from viewer.model.modes import ArrayShapes, ModeSet
 
@@ -17,13 +19,24 @@ def grid_points() -> np.ndarray:
 def cube_rows() -> np.ndarray:
     """(3, 8) node rows of the cubes, VTK order."""
     n = lambda x, y, z: z * 8 + y * 4 + x  # noqa: E731
-    return np.array([
-        [n(i, 0, 0), n(i + 1, 0, 0), n(i + 1, 1, 0), n(i, 1, 0), n(i, 0, 1), n(i + 1, 0, 1), n(i + 1, 1, 1), n(i, 1, 1)]
-        for i in range(3)
-    ])
+    return np.array(
+        [
+            [
+                n(i, 0, 0),
+                n(i + 1, 0, 0),
+                n(i + 1, 1, 0),
+                n(i, 1, 0),
+                n(i, 0, 1),
+                n(i + 1, 0, 1),
+                n(i + 1, 1, 1),
+                n(i, 1, 1),
+            ]
+            for i in range(3)
+        ]
+    )
 
 
-END_QUAD = np.array([[0, 4, 12, 8]])     # the face x = 0
+END_QUAD = np.array([[0, 4, 12, 8]])  # the face x = 0
 
 
 def make_mesh() -> Mesh:
@@ -31,8 +44,11 @@ def make_mesh() -> Mesh:
     cubes, top = cube_rows(), np.array([[8, 9, 13, 12]])
     blocks = (CellBlock("hex8", cubes[:2], [7, 5]), CellBlock("quad4", top, [100]), CellBlock("hex8", cubes[2:], [1]))
     return Mesh(
-        grid_points() * 0.1 + 0.05, blocks, np.arange(16)[::-1] * 10 + 3,
-        {"root": [0, 4, 8, 12], 'tip <"ä&%"> 1/2': [3]}, {"all": [0, 1, 2, 3], "skin.top": [2], "none": []},
+        grid_points() * 0.1 + 0.05,
+        blocks,
+        np.arange(16)[::-1] * 10 + 3,
+        {"root": [0, 4, 8, 12], 'tip <"ä&%"> 1/2': [3]},
+        {"all": [0, 1, 2, 3], "skin.top": [2], "none": []},
     )
 
 
@@ -45,8 +61,11 @@ def make_modes(mesh: Mesh, *, is_complex: bool = False, rotations: bool = False,
         return rng.normal(size=shape) + (1j * rng.normal(size=shape) if is_complex else 0)
 
     return ModeSet(
-        mesh.node_ids, [11.0, 42.5, 42.5, 1 / 3], ArrayShapes(draw(), draw() if rotations else None),
-        np.array([0.01, 0.0, 0.02, 1e-17]) if damping else None, "mass",
+        mesh.node_ids,
+        [11.0, 42.5, 42.5, 1 / 3],
+        ArrayShapes(draw(), draw() if rotations else None),
+        np.array([0.01, 0.0, 0.02, 1e-17]) if damping else None,
+        "mass",
     )
 
 
@@ -56,7 +75,7 @@ def one_of_each_kind() -> Mesh:
     for number, (name, kind) in enumerate(KINDS.items()):
         xyz = np.zeros((kind.n_nodes, 3))
         xyz[:, : kind.dim] = kind.reference
-        points.append(xyz + [3.0 * number, 0, 0])
+        points.append(xyz + np.array([3.0 * number, 0, 0]))
         blocks.append(CellBlock(name, np.arange(start, start + kind.n_nodes)[None], [number + 1]))
         start += kind.n_nodes
     return Mesh(np.concatenate(points), tuple(blocks), np.arange(1, start + 1))
@@ -89,3 +108,19 @@ def assert_same_modes(a: ModeSet, b: ModeSet) -> None:
         assert not b.shape(i).flags.writeable
         if a.shapes.has_rotations:
             assert np.array_equal(a.rotations(i), b.rotations(i))
+
+
+def read_all(path, mesh):
+    """Everything that a file offers, to the last number."""
+    found = read_mesh(path)
+    modes = read_modes(path, mesh)
+    return found, modes, [modes.shape(i) for i in range(modes.count)]
+
+
+def clear(error: LoadError, path, foreseen: bool = True) -> None:
+    text = str(error)
+    assert not foreseen or "cannot be read; found" not in text, "a check of ours speaks, not a failure deep inside"
+    assert path.parent.name in text, "names the file"
+    assert "Traceback" not in text
+    assert "\n" not in text
+    assert len(text) < 1000

@@ -8,30 +8,24 @@ import h5py
 import numpy as np
 import pytest
 
-from tests.loaders.samples import assert_same_mesh, assert_same_modes, cube_rows, grid_points, make_mesh, make_modes
+from tests.loaders.samples import (
+    assert_same_mesh,
+    assert_same_modes,
+    clear,
+    cube_rows,
+    grid_points,
+    make_mesh,
+    make_modes,
+    read_all,
+)
 from viewer.errors import LoadError
 from viewer.loaders import read_mesh, read_modes, write_interchange
 
 SUFFIXES = (".vtu", ".npz", ".h5", ".csv")
 
 
-def read_all(path, mesh):
-    """Everything that a file offers, to the last number."""
-    found = read_mesh(path)
-    modes = read_modes(path, mesh)
-    return found, modes, [modes.shape(i) for i in range(modes.count)]
-
-
-def clear(error: LoadError, path, foreseen: bool = True) -> None:
-    text = str(error)
-    assert not foreseen or "cannot be read; found" not in text, "a check of ours speaks, not a failure deep inside"
-    assert path.parent.name in text, "names the file"
-    assert "Traceback" not in text
-    assert "\n" not in text
-    assert len(text) < 1000
-
-
 # --- cut short, everywhere ---
+
 
 @pytest.mark.parametrize("suffix", [".vtu", ".npz", ".h5"])
 @pytest.mark.parametrize("percent", [1, 10, 25, 40, 55, 70, 85, 95, 99])
@@ -54,7 +48,7 @@ def test_table_cut_short(tmp_path, mesh, modes, table, percent):
         found, read, _ = read_all(path, mesh)
     except LoadError as error:
         clear(error, path)
-    else:                   # a cut between two lines of elements leaves a smaller mesh, which nothing can tell
+    else:  # a cut between two lines of elements leaves a smaller mesh, which nothing can tell
         assert table == "cut_elements.csv"
         assert found.n_cells < mesh.n_cells
         assert_same_modes(modes, read)
@@ -70,17 +64,18 @@ def test_bytes_turned(tmp_path, mesh, modes, suffix, seed):
         data[at] ^= int(rng.integers(1, 256))
     path.write_bytes(bytes(data))
     try:
-        found, read, shapes = read_all(path, mesh)
+        found, _, shapes = read_all(path, mesh)
     except LoadError as error:
         clear(error, path)
     else:
         assert found.points.shape == (found.n_nodes, 3)
         assert np.isfinite(found.points).all()
         assert all(np.isfinite(shape).all() and shape.shape == (mesh.n_nodes, 3) for shape in shapes)
-        assert all(0 <= b.nodes.min() and b.nodes.max() < found.n_nodes for b in found.blocks)
+        assert all(b.nodes.min() >= 0 and b.nodes.max() < found.n_nodes for b in found.blocks)
 
 
 # --- at the door ---
+
 
 @pytest.mark.parametrize("suffix", [*SUFFIXES, ".vtk", ".msh", ".med", ".stl", ".ply"])
 def test_empty_file_folder_and_none(tmp_path, mesh, suffix):
@@ -124,6 +119,7 @@ def test_unexpected_failures_become_ours(tmp_path, monkeypatch, mesh):
 
     path = write_interchange(tmp_path / "a.npz", mesh)
     for failure in (SystemExit(1), RuntimeError("odd"), MemoryError(), RecursionError(), PermissionError(13, "no")):
+
         def broken(*_, failure=failure):
             raise failure
 
@@ -140,7 +136,8 @@ VTU = """<?xml version="1.0"?>
 <UnstructuredGrid><FieldData><DataArray type="Float64" Name="freq_hz" NumberOfTuples="1" format="ascii">5</DataArray>
 </FieldData><Piece NumberOfPoints="4" NumberOfCells="2">
 <PointData><DataArray type="Float64" Name="mode_001" NumberOfComponents="3" format="ascii">
-1 0 0 0 1 0 0 0 1 1 1 1</DataArray><DataArray type="Int64" Name="node_id" format="ascii">4 3 2 1</DataArray></PointData>
+1 0 0 0 1 0 0 0 1 1 1 1</DataArray><DataArray type="Int64" Name="node_id" format="ascii">4 3 2 1</DataArray>
+</PointData>
 <CellData/>
 <Points><DataArray type="Float64" NumberOfComponents="3" format="ascii">0 0 0 1 0 0 0 1 0 1 1 0</DataArray></Points>
 <Cells><DataArray type="Int64" Name="connectivity" format="ascii">0 1 2 1 3 2</DataArray>
@@ -160,29 +157,62 @@ def test_the_hand_written_file_is_right(tmp_path):
 
 
 BAD_VTU = {
-    "index minus one": ("0 1 2 1 3 2", "0 -1 2 1 3 2", r"names a point that does not exist; found: index -1; expected: 0 to 3"),
+    "index minus one": (
+        "0 1 2 1 3 2",
+        "0 -1 2 1 3 2",
+        r"names a point that does not exist; found: index -1; expected: 0 to 3",
+    ),
     "index n": ("0 1 2 1 3 2", "0 1 4 1 3 2", r"cell 1: a cell names a point that does not exist; found: index 4"),
     "index 2**40": ("0 1 2 1 3 2", f"0 1 2 1 3 {2**40}", r"cell 2: .*found: index 1099511627776"),
     "index too large for its type": ("0 1 2 1 3 2", f"0 1 2 1 3 {2**70}", r"connectivity.*no number"),
     "offsets fall": ("3 6</DataArray>", "6 3</DataArray>", r"offsets, cell 2.*do not grow; found: 3 after 6"),
-    "offsets too few": ("3 6</DataArray>", "3</DataArray>", r"'offsets': an array's size.*found: 1 numbers; expected: 2"),
+    "offsets too few": (
+        "3 6</DataArray>",
+        "3</DataArray>",
+        r"'offsets': an array's size.*found: 1 numbers; expected: 2",
+    ),
     "wrong count for its type": (">5 5<", ">5 9<", r"cell 2: a cell of kind quad4 has a wrong number of nodes"),
     "types unknown": (">5 5<", ">99 99<", r"holds no cell of a known kind"),
-    "claims 2e9 points": ('NumberOfPoints="4"', 'NumberOfPoints="2000000000"', r"'Points': an array's size.*6000000000"),
+    "claims 2e9 points": (
+        'NumberOfPoints="4"',
+        'NumberOfPoints="2000000000"',
+        r"'Points': an array's size.*6000000000",
+    ),
     "claims 2e9 cells": ('NumberOfCells="2"', 'NumberOfCells="2000000000"', r"'types': an array's size.*2000000000"),
     "one point too few": ('NumberOfPoints="4"', 'NumberOfPoints="3"', r"'Points': .*found: 12 numbers; expected: 9"),
-    "points minus one": ('NumberOfPoints="4"', 'NumberOfPoints="-1"', r"Piece: NumberOfPoints is not a number; found: '-1'"),
-    "not a number": ("0 1 0 1 1 0</DataArray></Points>", "0 1 0 1 nan 0</DataArray></Points>",
-                     r"point 4: a coordinate is not finite"),
+    "points minus one": (
+        'NumberOfPoints="4"',
+        'NumberOfPoints="-1"',
+        r"Piece: NumberOfPoints is not a number; found: '-1'",
+    ),
+    "not a number": (
+        "0 1 0 1 1 0</DataArray></Points>",
+        "0 1 0 1 nan 0</DataArray></Points>",
+        r"point 4: a coordinate is not finite",
+    ),
     "infinite shape": ("1 1 1</DataArray><", "1 1 inf</DataArray><", r"mode 1, row 4.*not finite"),
     "negative frequency": (">5</DataArray>", ">-5</DataArray>", r"freq_hz 1: a frequency is negative"),
-    "word for a number": ("0 1 0 1 1 0</DataArray></Points>", "0 1 0 1 x 0</DataArray></Points>", r"'Points': .*no number"),
-    "decimal commas": ("0 1 0 1 1 0</DataArray></Points>", "0 1 0 1 1,5 0</DataArray></Points>", r"'Points': .*no number"),
+    "word for a number": (
+        "0 1 0 1 1 0</DataArray></Points>",
+        "0 1 0 1 x 0</DataArray></Points>",
+        r"'Points': .*no number",
+    ),
+    "decimal commas": (
+        "0 1 0 1 1 0</DataArray></Points>",
+        "0 1 0 1 1,5 0</DataArray></Points>",
+        r"'Points': .*no number",
+    ),
     "ids repeat": ("4 3 2 1", "4 3 3 1", r"node ids repeat; found: node 3 more than once"),
-    "ids broken": ('"Int64" Name="node_id" format="ascii">4 3 2 1', '"Float64" Name="node_id" format="ascii">4 3 2.5 1',
-                   r"node ids are not whole numbers"),
-    "two components": ('Name="mode_001" NumberOfComponents="3" format="ascii">\n1 0 0 0 1 0 0 0 1 1 1 1',
-                       'Name="mode_001" NumberOfComponents="2" format="ascii">\n1 0 0 0 1 0 0 0', r"needs three components"),
+    "ids broken": (
+        '"Int64" Name="node_id" format="ascii">4 3 2 1',
+        '"Float64" Name="node_id" format="ascii">4 3 2.5 1',
+        r"node ids are not whole numbers",
+    ),
+    "two components": (
+        'Name="mode_001" NumberOfComponents="3" format="ascii">\n1 0 0 0 1 0 0 0 1 1 1 1',
+        'Name="mode_001" NumberOfComponents="2" format="ascii">\n1 0 0 0 1 0 0 0',
+        r"needs three components",
+    ),
     "mode missing": ("mode_001", "mode_002", r"a mode shape is missing.*expected: array 'mode_001'"),
     "imaginary part missing": ("mode_001", "mode_001_re", r"do not belong together"),
     "rotations alone": ("mode_001", "mode_001_rot", r"do not belong together"),
@@ -191,19 +221,36 @@ BAD_VTU = {
     "no points": ("<Points>", "<Pints>", r"not a complete XML file"),
     "array twice": ('Name="offsets"', 'Name="types"', r"an array is given twice"),
     "other grid": ('type="UnstructuredGrid"', 'type="ImageData"', r"is not an unstructured grid"),
-    "unknown format": ('Name="offsets" format="ascii"', 'Name="offsets" format="morse"', r"unknown format; found: morse"),
-    "entity bomb": ('<?xml version="1.0"?>', '<?xml version="1.0"?><!DOCTYPE x [<!ENTITY a "aaaa">'
-                    '<!ENTITY b "&a;&a;&a;&a;">]>', r"declares a document type or entities"),
-    "file outside": ('<?xml version="1.0"?>', '<!DOCTYPE x SYSTEM "file:///etc/hostname">', r"declares a document type"),
+    "unknown format": (
+        'Name="offsets" format="ascii"',
+        'Name="offsets" format="morse"',
+        r"unknown format; found: morse",
+    ),
+    "entity bomb": (
+        '<?xml version="1.0"?>',
+        '<?xml version="1.0"?><!DOCTYPE x [<!ENTITY a "aaaa"><!ENTITY b "&a;&a;&a;&a;">]>',
+        r"declares a document type or entities",
+    ),
+    "file outside": (
+        '<?xml version="1.0"?>',
+        '<!DOCTYPE x SYSTEM "file:///etc/hostname">',
+        r"declares a document type",
+    ),
     "not XML": ("<VTKFile", "VTKFile", r"not a complete XML file"),
     "no piece": ('<Piece NumberOfPoints="4" NumberOfCells="2">', "", r"not a complete XML file"),
     "bad header type": ('byte_order="LittleEndian"', 'header_type="UInt16"', r"unknown header_type; found: UInt16"),
     "bad base64": ('format="ascii">3 6<', 'format="binary">@@@@<', r"base64 text is damaged"),
     "short base64": ('format="ascii">3 6<', 'format="binary">AAAA<', r"'offsets': an array's size"),
-    "nothing appended": ('Name="offsets" format="ascii">3 6<', 'Name="offsets" format="appended" offset="0"><',
-                         r"base64|ends before an array|size does not fit"),
-    "groups too long": ("<CellData/>", '<CellData><DataArray type="Int8" Name="group_a" format="ascii">1 0 1</DataArray>'
-                        "</CellData>", r"'group_a': .*found: 3 numbers; expected: 2"),
+    "nothing appended": (
+        'Name="offsets" format="ascii">3 6<',
+        'Name="offsets" format="appended" offset="0"><',
+        r"base64|ends before an array|size does not fit",
+    ),
+    "groups too long": (
+        "<CellData/>",
+        '<CellData><DataArray type="Int8" Name="group_a" format="ascii">1 0 1</DataArray></CellData>',
+        r"'group_a': .*found: 3 numbers; expected: 2",
+    ),
     "deep nesting": ("<CellData/>", "<a>" * 50 + "</a>" * 50, r"nested too deeply"),
 }
 
@@ -239,12 +286,16 @@ def test_compressed_bomb_in_vtu(tmp_path):
     import zlib
 
     packed = zlib.compress(bytes(1000))
-    count = 178_956_970                                            # points; × 24 bytes = 4 GB
+    count = 178_956_970  # points; × 24 bytes = 4 GB
     head = base64.b64encode(np.array([1, count * 24, 0, len(packed)], "<u4").tobytes())
-    text = VTU.replace('NumberOfPoints="4"', f'NumberOfPoints="{count}"').replace(
-        'byte_order="LittleEndian"', 'byte_order="LittleEndian" compressor="vtkZLibDataCompressor"').replace(
-        'NumberOfComponents="3" format="ascii">0 0 0 1 0 0 0 1 0 1 1 0',
-        f'NumberOfComponents="3" format="binary">{(head + base64.b64encode(packed)).decode()}')
+    text = (
+        VTU.replace('NumberOfPoints="4"', f'NumberOfPoints="{count}"')
+        .replace('byte_order="LittleEndian"', 'byte_order="LittleEndian" compressor="vtkZLibDataCompressor"')
+        .replace(
+            'NumberOfComponents="3" format="ascii">0 0 0 1 0 0 0 1 0 1 1 0',
+            f'NumberOfComponents="3" format="binary">{(head + base64.b64encode(packed)).decode()}',
+        )
+    )
     (tmp_path / "a.vtu").write_text(text)
     with pytest.raises(LoadError, match=r"declares more than its compressed bytes can hold"):
         read_mesh(tmp_path / "a.vtu")
@@ -252,8 +303,14 @@ def test_compressed_bomb_in_vtu(tmp_path):
 
 # --- .npz ---
 
+
 def good_arrays():
-    return {"points": grid_points(), "cells_hex8": cube_rows(), "modes": np.ones((2, 16, 3)), "freq_hz": np.array([1.0, 2])}
+    return {
+        "points": grid_points(),
+        "cells_hex8": cube_rows(),
+        "modes": np.ones((2, 16, 3)),
+        "freq_hz": np.array([1.0, 2]),
+    }
 
 
 BAD_NPZ = {
@@ -275,8 +332,14 @@ BAD_NPZ = {
     "modes of integers": ({"modes": np.ones((2, 16, 3), int)}, r"mode shapes have a wrong shape"),
     "not a number": ({"modes": np.full((2, 16, 3), np.nan)}, r"mode 1, row 1.*not finite"),
     "modes on other nodes": ({"modes": np.ones((2, 9, 3))}, r"node ids|not those of this mesh"),
-    "frequencies too few": ({"freq_hz": np.array([1.0])}, r"freq_hz does not fit the modes; found: 1 values; expected: 2"),
-    "frequency not finite": ({"freq_hz": np.array([1.0, np.inf])}, r"freq_hz holds a number that is not finite.*|mode 2"),
+    "frequencies too few": (
+        {"freq_hz": np.array([1.0])},
+        r"freq_hz does not fit the modes; found: 1 values; expected: 2",
+    ),
+    "frequency not finite": (
+        {"freq_hz": np.array([1.0, np.inf])},
+        r"freq_hz holds a number that is not finite.*|mode 2",
+    ),
     "damping too many": ({"damping": np.ones(3)}, r"damping does not fit the modes"),
     "rotations": ({"rotations": np.ones((2, 16, 2))}, r"rotations do not fit the modes"),
     "no modes": ({"modes": np.ones((0, 16, 3)), "freq_hz": np.array([])}, r"holds no mode"),
@@ -319,9 +382,11 @@ def test_objects_are_never_unpickled(tmp_path):
 
 def test_inflation_bomb_in_npz(tmp_path):
     """300 MB of zeros in 300 kB."""
-    with zipfile.ZipFile(tmp_path / "a.npz", "w", zipfile.ZIP_DEFLATED) as archive, archive.open("points.npy", "w") as out:
-        np.lib.format.write_array_header_1_0(
-            out, {"descr": "<f8", "fortran_order": False, "shape": (12_500_000, 3)})
+    with (
+        zipfile.ZipFile(tmp_path / "a.npz", "w", zipfile.ZIP_DEFLATED) as archive,
+        archive.open("points.npy", "w") as out,
+    ):
+        np.lib.format.write_array_header_1_0(out, {"descr": "<f8", "fortran_order": False, "shape": (12_500_000, 3)})
         for _ in range(30):
             out.write(bytes(10_000_000))
     with pytest.raises(LoadError, match="inflates to far more than numbers do"):
@@ -354,111 +419,6 @@ def test_hdf5_links_out_of_the_file_are_not_followed(tmp_path, mesh):
         file["cells_hex8"] = cube_rows()
     with pytest.raises(LoadError, match="array 'points' is missing"):
         read_mesh(tmp_path / "a.h5")
-
-
-# --- .csv ---
-
-NODES = "node,x,y,z\n1,0,0,0\n2,1.5,0,0\n3,0,1.5,0\n4,1.5,1.5,0\n"
-ELEMENTS = "element,kind,n1,n2,n3\n10,tri3,1,2,3\n11,tri3,2,4,3\n"
-MODES = "mode,node,ux,uy,uz,freq_hz\n" + "".join(f"{m},{n},0.5,{m},{n},{m}.5\n" for m in (1, 2) for n in (1, 2, 3, 4))
-
-
-def put_tables(folder, nodes=NODES, elements=ELEMENTS, modes=MODES, encoding="utf-8"):
-    for tail, text in (("_nodes", nodes), ("_elements", elements), ("", modes)):
-        (folder / f"t{tail}.csv").write_bytes(text if isinstance(text, bytes) else text.encode(encoding))
-    return folder / "t.csv"
-
-
-def semicolons(text):
-    return text.replace(",", ";").replace(".", ",")
-
-
-READ_RIGHT = {
-    "as they stand": {},
-    "semicolons and decimal commas": {"nodes": semicolons(NODES), "modes": semicolons(MODES)},
-    "tabs": {"nodes": NODES.replace(",", "\t"), "elements": ELEMENTS.replace(",", "\t")},
-    "bars and decimal commas": {"nodes": semicolons(NODES).replace(";", "|")},
-    "quoted decimal commas": {"nodes": NODES.replace("1.5", '"1,5"')},
-    "byte-order mark": {"encoding": "utf-8-sig"},
-    "two bytes a letter": {"encoding": "utf-16"},
-    "Windows line ends": {"nodes": NODES.replace("\n", "\r\n")},
-    "old line ends": {"nodes": NODES.replace("\n", "\r")},
-    "blank lines and spaces": {"nodes": "\n" + NODES.replace("\n", "\n\n").replace(",", " , ")},
-    "capitals": {"nodes": NODES.replace("node,x,y,z", "Node,X,Y,Z"), "elements": ELEMENTS.replace("tri3", "TRI3")},
-    "columns in another order": {"nodes": "z,node,y,x\n0,1,0,0\n0,2,0,1.5\n0,3,1.5,0\n0,4,1.5,1.5\n"},
-    "lines in another order": {"modes": "\n".join([MODES.splitlines()[0], *MODES.splitlines()[:0:-1]]) + "\n"},
-    "ids as spreadsheets write them": {"elements": ELEMENTS.replace("10,", "10.0,").replace("11,", "11.0,")},
-    "a column more": {"nodes": NODES.replace("z\n", "z,remark\n").replace(",0\n", ",0,\n")},
-}
-
-
-@pytest.mark.parametrize("case", READ_RIGHT)
-def test_tables_read_right(tmp_path, case):
-    path = put_tables(tmp_path, **READ_RIGHT[case])
-    mesh, modes, shapes = read_all(path, read_mesh(path))
-    assert mesh.points.tolist() == [[0, 0, 0], [1.5, 0, 0], [0, 1.5, 0], [1.5, 1.5, 0]]
-    assert mesh.blocks[0].nodes.tolist() == [[0, 1, 2], [1, 3, 2]]
-    assert mesh.cell_ids.tolist() == [10, 11]
-    assert modes.freq_hz.tolist() == [1.5, 2.5]
-    assert shapes[1].tolist() == [[0.5, 2, n] for n in (1, 2, 3, 4)]
-
-
-BAD_TABLES = {
-    "decimal commas parted by commas": ({"nodes": NODES.replace("1.5", "1,5")},
-                                        r"t_nodes\.csv, line 3: wrong number of fields; found: 5.*semicolons"),
-    "marks mixed": ({"nodes": semicolons(NODES).replace("1,5;0;0", "1.5;0;0")}, r"line 5: .*mixed.*a comma here, a point in line 3"),
-    "thousands": ({"nodes": semicolons(NODES).replace("1,5;0;0", "1.000,5;0;0")}, r"line 3: .*thousands"),
-    "word": ({"nodes": NODES.replace("2,1.5", "2,abc")}, r"line 3: column 'x' holds no number; found: 'abc'"),
-    "blank": ({"nodes": NODES.replace("2,1.5", "2,")}, r"line 3: column 'x' holds no number; found: ''"),
-    "digits grouped": ({"nodes": NODES.replace("2,1.5", "2,1_5")}, r"line 3: column 'x' holds no number"),
-    "not a number": ({"nodes": NODES.replace("2,1.5", "2,nan")}, r"point 2: a coordinate is not finite"),
-    "half a node": ({"nodes": NODES.replace("\n2,", "\n2.5,")}, r"line 3: column 'node' holds no whole number"),
-    "huge node": ({"nodes": NODES.replace("\n2,", f"\n{10**30},")}, r"line 3: column 'node' holds no whole number"),
-    "node twice": ({"nodes": NODES.replace("\n2,", "\n1,")}, r"an element names|node ids repeat"),
-    "no x": ({"nodes": NODES.replace("x", "a")}, r"column 'x' is missing; found: node, a, y, z"),
-    "column twice": ({"nodes": NODES.replace("y", "x")}, r"line 1: two columns are called 'x'"),
-    "no nodes": ({"nodes": "node,x,y,z\n"}, r"t_nodes\.csv: holds no node"),
-    "unknown node": ({"elements": ELEMENTS.replace("2,4,3", "2,9,3")}, r"t_elements\.csv, line 3: .*found: node 9"),
-    "unknown kind": ({"elements": ELEMENTS.replace("11,tri3", "11,tri5")}, r"line 3: unknown kind of cell 'tri5'"),
-    "too few columns": ({"elements": ELEMENTS.replace("tri3", "quad4")}, r"column 'n4' is missing"),
-    "too many nodes": ({"elements": "element,kind,n1,n2,n3,n4\n1,tri3,1,2,3,4\n"}, r"line 2: a tri3 has 3 nodes"),
-    "not text": ({"nodes": NODES.encode() + b"\xff\xfe"}, r"line 6: is not UTF-8 text"),
-    "zero bytes": ({"nodes": NODES.replace("1.5", "1\0", 1)}, r"line 3: is not a text file"),
-    "open quote": ({"nodes": NODES.replace("1.5", '"1.5', 1)}, r"line \d+: (cannot be taken apart|wrong number)"),
-    "modes from zero": ({"modes": MODES.replace("\n1,", "\n0,")}, r"line 2: modes are not numbered 1, 2, 3 …; found: mode 0"),
-    "mode left out": ({"modes": MODES.replace("\n2,", "\n3,")}, r"line 6: modes are not numbered.*found: mode 3"),
-    "node left out": ({"modes": MODES[: MODES.index("2,4,")]}, r"different numbers of nodes; found: 4 in mode 1, 3 in mode 2"),
-    "node twice in a mode": ({"modes": MODES.replace("2,4,", "2,3,")}, r"not on the same nodes; found: mode 2"),
-    "two frequencies": ({"modes": MODES[:-2] + "7\n"}, r"more than one frequency; found: mode 2"),
-    "no uy": ({"modes": MODES.replace("uy", "v")}, r"column 'uy' is missing"),
-    "half complex": ({"modes": MODES.replace("ux", "ux_re")}, r"column 'ux_im' is missing"),
-    "no frequencies": ({"modes": MODES.replace("freq_hz", "hertz")}, r"frequencies of the modes are missing"),
-    "other nodes": ({"modes": MODES.replace(",4,0.5", ",5,0.5")}, r"only in the mesh \(4\), 1 nodes only in the mode file \(5\)"),
-}
-
-
-@pytest.mark.parametrize("case", BAD_TABLES)
-def test_bad_tables(tmp_path, case):
-    change, message = BAD_TABLES[case]
-    good = read_mesh(put_tables(tmp_path))
-    path = put_tables(tmp_path, **change)
-    with pytest.raises(LoadError, match=message) as caught:
-        read_all(path, good)
-    clear(caught.value, path)
-
-
-def test_a_table_of_the_set_is_missing(tmp_path):
-    path = put_tables(tmp_path)
-    (tmp_path / "t_elements.csv").unlink()
-    with pytest.raises(LoadError, match=r"t_elements\.csv: there is no such table"):
-        read_mesh(path)
-
-
-def test_the_mesh_alone_may_be_named_by_any_of_its_tables(tmp_path):
-    path = put_tables(tmp_path)
-    path.unlink()
-    for name in ("t.csv", "t_nodes.csv", "t_elements.csv"):
-        assert read_mesh(tmp_path / name).n_cells == 2
 
 
 def test_reading_writes_nothing(tmp_path):

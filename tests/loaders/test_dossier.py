@@ -107,12 +107,19 @@ def test_everything_comes_out_in_si(write, tmp_path):
     assert (dossier.title, dossier.path, dossier.condition) == ("Camera boom", path, "clamped root, camera 1.2 kg")
     base, modified = dossier.plans
     assert (base.name, base.mesh_file, base.length_unit) == ("baseline", tmp_path / "boom.vtu", 1e-3)
-    assert (base.modes_file, base.mode_count, base.note, dict(base.mode_names)) == (None, 8, "as built", {1: "boom nods"})
+    assert (base.modes_file, base.mode_count, base.note, dict(base.mode_names)) == (
+        None,
+        8,
+        "as built",
+        {1: "boom nods"},
+    )
     physics = base.physics
     aluminium = physics.materials["aluminium"]
     assert (aluminium.youngs_modulus, aluminium.poisson, aluminium.density) == (70e9, 0.33, 2700.0)
     assert [(a.target, a.material, a.thickness, a.formulation) for a in physics.assignments] == [
-        ("*", "aluminium", 0.002, ""), ("bracket", "steel", 0.0035, "named")]
+        ("*", "aluminium", 0.002, ""),
+        ("bracket", "steel", 0.0035, "named"),
+    ]
     root, corner = physics.supports
     assert (root.name, root.where.group, root.held) == ("root", "root", ("ux", "uz"))
     assert corner.name == "support 2"
@@ -122,11 +129,11 @@ def test_everything_comes_out_in_si(write, tmp_path):
     assert strap.stiffness.tolist() == [1e3, 2e3, 3e3, 0, 0, 0]
     assert strap.where.nodes.tolist() == [3, 4]
     assert (link.axis.tolist(), link.axial, link.other.near.tolist()) == ([0, 0, 1], 4000, [0, 0, 0.005])
-    camera, = physics.masses
+    (camera,) = physics.masses
     assert camera.mass == pytest.approx(1.2)
     assert camera.position.tolist() == [0, 0, 0.5]
-    assert np.allclose(camera.inertia, np.diag([1e-3, 2e-3, 3e-3]))        # g·mm² to kg·m²
-    lens, = base.points
+    assert np.allclose(camera.inertia, np.diag([1e-3, 2e-3, 3e-3]))  # g·mm² to kg·m²
+    (lens,) = base.points
     assert (lens.direction.tolist(), lens.effect, lens.direction_word) == ([0, -1, 0], "image blur", "sideways")
     assert modified.modes_file == tmp_path / "modes.npz"
     assert modified.length_unit == 0.0254
@@ -134,18 +141,29 @@ def test_everything_comes_out_in_si(write, tmp_path):
     assert np.allclose(modified.points[0].direction, [0, 0.6, 0.8])
     first, second = dossier.amplitudes
     assert (first.design, first.mode, first.point, first.statistic, first.relative) == (
-        "baseline", 2, "camera lens", "rms", True)
+        "baseline",
+        2,
+        "camera lens",
+        "rms",
+        True,
+    )
     assert first.value == pytest.approx(180e-6)
-    assert first.direction.tolist() == [0, -1, 0]                          # from the functional point
+    assert first.direction.tolist() == [0, -1, 0]  # from the functional point
     assert (second.point, second.place, second.direction.tolist()) == ("", "tip", [0, 0, 1])
     assert second.where.near.tolist() == [0.001, 0.002, 0.003]
-    pair, = dossier.pairs
-    assert (pair.first_design, pair.first_mode, pair.second_design, pair.second_mode) == ("baseline", 1, "modified", 9)
+    (pair,) = dossier.pairs
+    assert (pair.first_design, pair.first_mode, pair.second_design, pair.second_mode) == (
+        "baseline",
+        1,
+        "modified",
+        9,
+    )
 
 
 def test_units_default_to_si(write):
-    text = FULL.replace('length = "mm"\namplitude = "um"\nmodulus = "GPa"\ndensity = "g/cm3"\nmass = "g"\n'
-                        'stiffness = "N/mm"\n', "").replace('length_unit = "mm"\n', "")
+    text = FULL.replace(
+        'length = "mm"\namplitude = "um"\nmodulus = "GPa"\ndensity = "g/cm3"\nmass = "g"\nstiffness = "N/mm"\n', ""
+    ).replace('length_unit = "mm"\n', "")
     plan = read_dossier(write(text)).plans[0]
     assert plan.length_unit == 1.0
     assert plan.physics.materials["steel"].youngs_modulus == 210.0
@@ -155,47 +173,92 @@ def test_units_default_to_si(write):
 
 # (change, what the message must say)
 WRONG = {
-    "misspelt key": (("thickness = 3.5", "thicknes = 3.5"),
-                     r'designs 1 \("baseline"\), assign 2: unknown key \'thicknes\'.*did you mean \'thickness\''),
+    "misspelt key": (
+        ("thickness = 3.5", "thicknes = 3.5"),
+        r'designs 1 \("baseline"\), assign 2: unknown key \'thicknes\'.*did you mean \'thickness\'',
+    ),
     "unknown table": (("[units]", "[unit]"), r"unknown key 'unit'.*expected: one of: title.*did you mean 'units'"),
     "missing key": (('mesh = "boom.vtu"\n', ""), r'designs 1 \("baseline"\): \'mesh\' is missing'),
     "missing title": (('title = "Camera boom"', ""), r"'title' is missing"),
-    "text for a number": (("youngs_modulus = 70", 'youngs_modulus = "70"'),
-                          r"materials, aluminium, youngs_modulus: .*found: '70'; expected: a number"),
-    "truth for a number": (("poisson = 0.33", "poisson = true"), r"aluminium, poisson: .*found: True; expected: a number"),
+    "text for a number": (
+        ("youngs_modulus = 70", 'youngs_modulus = "70"'),
+        r"materials, aluminium, youngs_modulus: .*found: '70'; expected: a number",
+    ),
+    "truth for a number": (
+        ("poisson = 0.33", "poisson = true"),
+        r"aluminium, poisson: .*found: True; expected: a number",
+    ),
     "not a number": (("density = 2.7", "density = nan"), r"density: .*found: nan; expected: .*finite"),
-    "negative modulus": (("youngs_modulus = 70", "youngs_modulus = -70"), r"youngs_modulus: .*found: -70.*greater than 0"),
+    "negative modulus": (
+        ("youngs_modulus = 70", "youngs_modulus = -70"),
+        r"youngs_modulus: .*found: -70.*greater than 0",
+    ),
     "poisson of a half": (("poisson = 0.33", "poisson = 0.5"), r"poisson: .*found: 0.5; expected: less than 0.5"),
     "no density": (("density = 2.7", "density = 0"), r"density: .*found: 0; expected: greater than 0"),
     "no thickness": (("thickness = 2}", "thickness = 0.0}"), r"assign 1, thickness: .*greater than 0"),
-    "unknown unit": (('length = "mm"', 'length = "yard"'), r"units, length: .*found: 'yard'; expected: .*'m', 'cm', 'mm'"),
+    "unknown unit": (
+        ('length = "mm"', 'length = "yard"'),
+        r"units, length: .*found: 'yard'; expected: .*'m', 'cm', 'mm'",
+    ),
     "unknown mesh unit": (('length_unit = "mm"', 'length_unit = "yard"'), r"length_unit: .*found: 'yard'"),
-    "unknown material": (('material = "steel"', 'material = "stel"'),
-                         r"assign 2, material: no material named 'stel'.*one of: aluminium, steel.*did you mean 'steel'"),
-    "file not there": (('mesh = "boom.vtu"', 'mesh = "bom.vtu"'), r"designs 1.*mesh: there is no such file; found: .*bom\.vtu"),
+    "unknown material": (
+        ('material = "steel"', 'material = "stel"'),
+        r"assign 2, material: no material named 'stel'.*one of: aluminium, steel.*did you mean 'steel'",
+    ),
+    "file not there": (
+        ('mesh = "boom.vtu"', 'mesh = "bom.vtu"'),
+        r"designs 1.*mesh: there is no such file; found: .*bom\.vtu",
+    ),
     "modes not there": (('"modes.npz"', '"mods.npz"'), r"designs 2.*modes: there is no such file"),
     "folder as mesh": (('mesh = "boom.vtu"', 'mesh = "."'), r"mesh: is a folder"),
-    "both origins": (('modes = "modes.npz"', 'modes = "modes.npz"\nsolve = 3'), r"designs 2.*says both modes and solve"),
+    "both origins": (
+        ('modes = "modes.npz"', 'modes = "modes.npz"\nsolve = 3'),
+        r"designs 2.*says both modes and solve",
+    ),
     "neither origin": (('modes = "modes.npz"', ""), r"designs 2.*says neither modes nor assign; expected: modes ="),
     "no modes wanted": (("solve = 8", "solve = 0"), r"solve: .*found: 0; expected: greater than or equal to 1"),
     "design twice": (('name = "modified"', 'name = "baseline"'), r"designs: 'baseline' is given twice"),
-    "point twice": (("[[amplitudes]]", '[[points]]\nname = "camera lens"\nnodes = [1]\ndirection = "x"\n[[amplitudes]]'),
-                    r"points: 'camera lens' is given twice"),
+    "point twice": (
+        ("[[amplitudes]]", '[[points]]\nname = "camera lens"\nnodes = [1]\ndirection = "x"\n[[amplitudes]]'),
+        r"points: 'camera lens' is given twice",
+    ),
     "spring twice": (('name = "link"', 'name = "strap"'), r"springs: 'strap' is given twice"),
-    "amplitude twice": (('design = "modified"\nmode = 30', 'design = "baseline"\nmode = 2'),
-                        r"amplitudes: 'baseline, mode 2' is given twice"),
-    "unknown design": (('design = "baseline"\nmode = 2', 'design = "base"\nmode = 2'),
-                       r"amplitudes 1, design: no design named 'base'"),
-    "unknown point": (('point = "camera lens"', 'point = "lens"'), r"amplitudes 1, point: no functional point named 'lens'"),
-    "unknown design of a pair": (('second = {design = "modified"', 'second = {design = "mod"'),
-                                 r"pairs 1, second, design: no design named 'mod'"),
-    "mode not solved": (('first = {design = "baseline", mode = 1}', 'first = {design = "baseline", mode = 9}'),
-                        r"pairs 1, first, mode: design 'baseline' has no mode 9; expected: 1 to 8.*raise solve"),
-    "mode zero": (('first = {design = "baseline", mode = 1}', 'first = {design = "baseline", mode = 0}'),
-                  r"pairs 1, first, mode: .*found: 0"),
-    "mode named by a word": (('{1 = "boom nods"}', '{first = "boom nods"}'), r"mode_names: a mode is named by its number"),
-    "no place": (('group = "pad"\ndirection', "direction"), r"points 1.*says no place; expected: one of group, nodes, box, near"),
-    "two places": (('group = "pad"\ndirection', 'group = "pad"\nnodes = [1]\ndirection'), r"points 1.*says group and nodes"),
+    "amplitude twice": (
+        ('design = "modified"\nmode = 30', 'design = "baseline"\nmode = 2'),
+        r"amplitudes: 'baseline, mode 2' is given twice",
+    ),
+    "unknown design": (
+        ('design = "baseline"\nmode = 2', 'design = "base"\nmode = 2'),
+        r"amplitudes 1, design: no design named 'base'",
+    ),
+    "unknown point": (
+        ('point = "camera lens"', 'point = "lens"'),
+        r"amplitudes 1, point: no functional point named 'lens'",
+    ),
+    "unknown design of a pair": (
+        ('second = {design = "modified"', 'second = {design = "mod"'),
+        r"pairs 1, second, design: no design named 'mod'",
+    ),
+    "mode not solved": (
+        ('first = {design = "baseline", mode = 1}', 'first = {design = "baseline", mode = 9}'),
+        r"pairs 1, first, mode: design 'baseline' has no mode 9; expected: 1 to 8.*raise solve",
+    ),
+    "mode zero": (
+        ('first = {design = "baseline", mode = 1}', 'first = {design = "baseline", mode = 0}'),
+        r"pairs 1, first, mode: .*found: 0",
+    ),
+    "mode named by a word": (
+        ('{1 = "boom nods"}', '{first = "boom nods"}'),
+        r"mode_names: a mode is named by its number",
+    ),
+    "no place": (
+        ('group = "pad"\ndirection', "direction"),
+        r"points 1.*says no place; expected: one of group, nodes, box, near",
+    ),
+    "two places": (
+        ('group = "pad"\ndirection', 'group = "pad"\nnodes = [1]\ndirection'),
+        r"points 1.*says group and nodes",
+    ),
     "no nodes": (("nodes = [7]", "nodes = []"), r"nodes: .*at least 1 item"),
     "short vector": (("near = [1, 2, 3]", "near = [1, 2]"), r"amplitudes 2, near: .*at least 3 items"),
     "box upside down": (("[[0, 0, 0], [1, 2, 3]]", "[[0, 5, 0], [1, 2, 3]]"), r"supports 2, box: the lower corner"),
@@ -203,18 +266,23 @@ WRONG = {
     "unknown direction": (('direction = "-y"', 'direction = "up"'), r"direction: is no direction; found: 'up'"),
     "unknown held": (('held = ["uz", "ux"]', 'held = ["z"]'), r"supports 1 \(\"root\"\), held 1: .*found: 'z'"),
     "no stiffness": ((", stiffness = [1, 2, 3]", ""), r"springs 1 \(\"strap\"\): .*expected: either stiffness"),
-    "four stiffnesses": (("stiffness = [1, 2, 3]", "stiffness = [1, 2, 3, 4]"), r"springs 1.*stiffness has 4 or 5 numbers"),
+    "four stiffnesses": (
+        ("stiffness = [1, 2, 3]", "stiffness = [1, 2, 3, 4]"),
+        r"springs 1.*stiffness has 4 or 5 numbers",
+    ),
     "negative stiffness": (("stiffness = [1, 2, 3]", "stiffness = [1, -2, 3]"), r"stiffness 2: .*found: -2"),
     "axis alone": ((", axial = 4", ""), r"springs 2.*says only one of axis and axial"),
     "inertia of two": (("inertia = [1e6, 2e6, 3e6]", "inertia = [1e6, 2e6]"), r"inertia: wrong number of values"),
-    "impossible inertia": (("inertia = [1e6, 2e6, 3e6]", "inertia = [[1, 2, 0], [2, 1, 0], [0, 0, 1]]"),
-                           r"inertia: is no inertia of a real body"),
+    "impossible inertia": (
+        ("inertia = [1e6, 2e6, 3e6]", "inertia = [[1, 2, 0], [2, 1, 0], [0, 0, 1]]"),
+        r"inertia: is no inertia of a real body",
+    ),
     "no mass": (("mass = 1200", "mass = 0"), r"masses 1 \(\"camera\"\), mass: .*greater than 0"),
     "amplitude without place": (("near = [1, 2, 3]\n", ""), r'amplitudes 2.*expected: either point = "NAME"'),
     "amplitude without direction": (('direction = "+z"\n', ""), r"amplitudes 2.*says no direction"),
     "unknown statistic": (('statistic = "rms"', 'statistic = "mean"'), r"statistic: .*found: 'mean'.*'peak', 'rms'"),
     "no amplitude": (("value = 180", "value = 0"), r"amplitudes 1, value: .*greater than 0"),
-    "table for a list": (("[[designs]]\nname = \"baseline\"", "[designs]\nname = \"baseline\""), r"is not valid TOML"),
+    "table for a list": (('[[designs]]\nname = "baseline"', '[designs]\nname = "baseline"'), r"is not valid TOML"),
     "not TOML": (("solve = 8", "solve = = 8"), r"is not valid TOML; found: .*line"),
     "key twice": (("solve = 8", "solve = 8\nsolve = 9"), r"is not valid TOML; found: .*line"),
 }
@@ -238,10 +306,15 @@ def test_no_design_at_all(write):
         read_dossier(write('title = "x"\ndesigns = []\n'))
 
 
-@pytest.mark.parametrize(("content", "message"), [
-    (b"title = \"\xff\"", "is not UTF-8 text"), (b"", "is missing"), (b"a" * 10_000_001, "too large"),
-    (b"a = " + b"[" * 5000, "is not valid TOML"),
-])
+@pytest.mark.parametrize(
+    ("content", "message"),
+    [
+        (b'title = "\xff"', "is not UTF-8 text"),
+        (b"", "is missing"),
+        (b"a" * 10_000_001, "too large"),
+        (b"a = " + b"[" * 5000, "is not valid TOML"),
+    ],
+)
 def test_files_that_are_no_dossier(tmp_path, content, message):
     (tmp_path / "d.toml").write_bytes(content)
     with pytest.raises(DossierError, match=message):
@@ -255,14 +328,20 @@ def test_no_file_and_folder(tmp_path):
         read_dossier(tmp_path)
 
 
-@pytest.mark.parametrize(("change", "words"), [
-    (("youngs_modulus = 70", "youngs_modulus = 70e9"), "materials.aluminium: youngs modulus of 7e+19 Pa is implausible"),
-    (("density = 2.7", "density = 2700"), "density of 2.7e+06 kg/m³"),
-    (("density = 7.85", "density = 0.00000785"), "density of 0.00785 kg/m³"),
-    (("thickness = 2}", "thickness = 2000}"), "thickness of 2 m"),
-    (("value = 180", "value = 180000"), "amplitude of 0.18 m"),
-    (("mass = 1200", "mass = 1.2e12"), "mass of 1.2e+09 kg"),
-])
+@pytest.mark.parametrize(
+    ("change", "words"),
+    [
+        (
+            ("youngs_modulus = 70", "youngs_modulus = 70e9"),
+            "materials.aluminium: youngs modulus of 7e+19 Pa is implausible",
+        ),
+        (("density = 2.7", "density = 2700"), "density of 2.7e+06 kg/m³"),
+        (("density = 7.85", "density = 0.00000785"), "density of 0.00785 kg/m³"),
+        (("thickness = 2}", "thickness = 2000}"), "thickness of 2 m"),
+        (("value = 180", "value = 180000"), "amplitude of 0.18 m"),
+        (("mass = 1200", "mass = 1.2e12"), "mass of 1.2e+09 kg"),
+    ],
+)
 def test_implausible_values_are_flagged_not_refused(write, change, words):
     _, warnings = read_dossier_report(write(FULL, change))
     assert len(warnings) == 1
@@ -306,15 +385,18 @@ def test_bare_dossier_says_what_it_found_and_reads_once_filled_in(tmp_path, mesh
     path = tmp_path / "dossier.toml"
     path.write_text(text, encoding="utf-8")
     with pytest.raises(DossierError, match="'youngs_modulus' is missing"):
-        read_dossier(path)                       # nothing physical is invented
+        read_dossier(path)  # nothing physical is invented
     filled = text.replace("# youngs_modulus = ", "youngs_modulus = 70").replace("# poisson = ", "poisson = 0.3")
     filled = filled.replace("# density = ", "density = 2700").replace("thickness = }", "thickness = 0.002}")
     filled = filled.replace("# assign", "assign").replace("# supports", "supports").replace("# masses", "masses")
     start = filled.index("# [[points]]")
     filled = filled[:start] + filled[start:].replace("# A measured", "## A").replace("# [", "[").replace(
-        "# name", "name").replace("# near", "near").replace("# direction", "direction").replace("# effect", "effect").replace(
-        "# design", "design").replace("# mode", "mode").replace("# point", "point").replace("# value", "value").replace(
-        "# condition", "condition")
+        "# name", "name"
+    ).replace("# near", "near").replace("# direction", "direction").replace("# effect", "effect").replace(
+        "# design", "design"
+    ).replace("# mode", "mode").replace("# point", "point").replace("# value", "value").replace(
+        "# condition", "condition"
+    )
     path.write_text(filled, encoding="utf-8")
     dossier, warnings = read_dossier_report(path)
     assert warnings == ()

@@ -51,7 +51,9 @@ def test_shapes_are_joined_by_node_id_never_by_row(tmp_path, mesh, modes, suffix
     order = np.random.default_rng(3).permutation(mesh.n_nodes)
     place = np.argsort(order)
     turned = mesh.with_(
-        points=mesh.points[order], node_ids=mesh.node_ids[order], node_groups={},
+        points=mesh.points[order],
+        node_ids=mesh.node_ids[order],
+        node_groups={},
         blocks=tuple(type(b)(b.kind, place[b.nodes], b.ids) for b in mesh.blocks),
     )
     shapes = ArrayShapes(np.stack([modes.shape(i)[order] for i in range(4)]))
@@ -64,11 +66,13 @@ def test_other_nodes_are_refused_with_a_few_named(tmp_path, mesh, modes, suffix)
     path = write_interchange(tmp_path / f"m{suffix}", mesh, modes)
     ids = mesh.node_ids.copy()
     ids[[2, 5]] = 9001, 9002
-    with pytest.raises(LoadError, match=r"not those of this mesh.*2 nodes only in the mesh \(9001, 9002\).*133, 103|103, 133"):
+    with pytest.raises(
+        LoadError, match=r"not those of this mesh.*2 nodes only in the mesh \(9001, 9002\).*133, 103|103, 133"
+    ):
         read_modes(path, mesh.with_(node_ids=ids))
 
 
-@pytest.mark.parametrize("suffix", (".vtu", ".npz", ".h5"))
+@pytest.mark.parametrize("suffix", [".vtu", ".npz", ".h5"])
 def test_large_sets_stay_in_the_file(tmp_path, monkeypatch, mesh, suffix):
     monkeypatch.setattr(raw_data, "_READ_AT_ONCE", 0)
     modes = make_modes(mesh, is_complex=True, rotations=True)
@@ -79,7 +83,7 @@ def test_large_sets_stay_in_the_file(tmp_path, monkeypatch, mesh, suffix):
     scaled = read_modes(path, mesh, length_unit=0.001)
     assert np.allclose(scaled.shape(2), modes.shape(2) * 0.001, rtol=1e-15)
     assert np.array_equal(scaled.rotations(2), modes.rotations(2))
-    assert scaled.normalisation == "unknown"          # unit modal mass holds only in the file's own units
+    assert scaled.normalisation == "unknown"  # unit modal mass holds only in the file's own units
     path.write_bytes(path.read_bytes() + b" ")
     with pytest.raises(LoadError, match="changed since it was opened"):
         read.shape(0)
@@ -170,7 +174,7 @@ def test_ten_lines_of_anybodys_script(tmp_path):
     subprocess.run([sys.executable, "-c", SCRIPT, str(path)], check=True)
     mesh = read_mesh(path)
     modes = read_modes(path, mesh)
-    assert [(b.kind, len(b)) for b in mesh.blocks] == [("hex8", 6)]     # from VTK's voxels
+    assert [(b.kind, len(b)) for b in mesh.blocks] == [("hex8", 6)]  # from VTK's voxels
     assert mesh.node_ids.tolist() == list(range(101, 125))
     assert mesh.node_groups["root"].tolist() == [0, 4, 8, 12, 16, 20]
     assert modes.freq_hz.tolist() == [10, 20, 20]
@@ -179,7 +183,9 @@ def test_ten_lines_of_anybodys_script(tmp_path):
 
 def test_numpy_alone_is_enough(tmp_path):
     points = np.random.default_rng(1).random((4, 3))
-    np.savez(tmp_path / "a.npz", points=points, cells_tri3=[[0, 1, 2], [1, 3, 2]], modes=np.ones((2, 4, 3)), freq_hz=[1, 2])
+    np.savez(
+        tmp_path / "a.npz", points=points, cells_tri3=[[0, 1, 2], [1, 3, 2]], modes=np.ones((2, 4, 3)), freq_hz=[1, 2]
+    )
     mesh, report = read_mesh_report(tmp_path / "a.npz")
     assert mesh.node_ids.tolist() == [1, 2, 3, 4]
     assert any("no node ids" in note for note in report.notes)

@@ -1,7 +1,8 @@
 """Every other format: read by meshio or VTK in the worker process, understood as a ``.vtu`` file would be.
 
-Cells that only lie on others (the boundary triangles of a solid, the points and curves that mesh generators write)
-carry groups but no matter: they are left out and their groups become node groups, and the report says so.
+In the formats of mesh generators (all but VTK's own), cells that only lie on others (the boundary triangles of a
+solid, points and curves) carry groups but no matter: they are left out and their groups become node groups, and the
+report says so.
 """
 
 from __future__ import annotations
@@ -37,7 +38,7 @@ def read_mesh(path: Path, progress: Progress = SILENT) -> RawMesh:
     answer = _Answer(path, progress)
     raw = mesh_of(answer, progress)
     raw.notes = answer.notes + raw.notes
-    return without_carriers(raw)
+    return raw if path.suffix.lower() in _BY_VTK else without_carriers(raw)
 
 
 def read_modes(path: Path, progress: Progress = SILENT) -> RawModes:

@@ -33,11 +33,13 @@ def split_views(data: bytes) -> tuple[bytes, list[NodeView]]:
         name = match[1]
         close = data.find(b"$End" + name, match.end())
         if close < 0:
-            raise LoadError("a section does not end", place=f"${name.decode()}", do="the file is cut short: write it again")
+            raise LoadError(
+                "a section does not end", place=f"${name.decode()}", do="the file is cut short: write it again"
+            )
         if name == b"NodeData":
             view, end = _view(data, match.end(), close, binary)
             views.append(view)
-            close = data.find(b"$End" + name, end)       # bytes of numbers may look like the end
+            close = data.find(b"$End" + name, end)  # bytes of numbers may look like the end
         at = close + len(b"$End" + name)
     return b"".join([*rest, data[at:]]), views
 
@@ -66,8 +68,12 @@ def _view(data: bytes, start: int, close: int, binary: bool) -> tuple[NodeView, 
         line()
     integers = [number() for _ in range(min(number(), 100))]
     if len(integers) < 3 or integers[1] not in (1, 3, 9):
-        raise LoadError("integer tags are not as expected", place=place, found=str(integers),
-                        expected="time step, 1, 3 or 9 components, number of nodes")
+        raise LoadError(
+            "integer tags are not as expected",
+            place=place,
+            found=str(integers),
+            expected="time step, 1, 3 or 9 components, number of nodes",
+        )
     components, count = integers[1], integers[2]
     if binary:
         record = np.dtype([("tag", "<i4"), ("values", "<f8", (components,))])
@@ -77,8 +83,12 @@ def _view(data: bytes, start: int, close: int, binary: bool) -> tuple[NodeView, 
         return NodeView(name, table["tag"].astype(np.int64), table["values"].copy()), start + count * record.itemsize
     words = data[start:close].split()
     if len(words) != count * (components + 1):
-        raise LoadError("the number of values is not the one declared", place=place, found=str(len(words)),
-                        expected=str(count * (components + 1)))
+        raise LoadError(
+            "the number of values is not the one declared",
+            place=place,
+            found=str(len(words)),
+            expected=str(count * (components + 1)),
+        )
     try:
         values = np.array(words, "S").astype(np.float64).reshape(count, components + 1)
     except ValueError as error:

@@ -213,12 +213,12 @@ def _numbered(blocks: list[RawBlock], path: object, notes: list[str]) -> tuple[C
     total = sum(len(block.nodes) for block in blocks)
     known = [block.ids for block in blocks if block.ids is not None]
     if len(known) == len(blocks):
-        for block in blocks:
-            if np.shape(block.ids) != (len(block.nodes),):
+        for block, ids in zip(blocks, known, strict=True):
+            if ids.shape != (len(block.nodes),):
                 raise LoadError(
                     f"wrong number of element ids for {block.kind}",
                     file=path,
-                    found=str(np.shape(block.ids)),
+                    found=str(ids.shape),
                     expected=f"({len(block.nodes)},)",
                 )
         given = np.concatenate(known)

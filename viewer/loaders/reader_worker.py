@@ -58,6 +58,7 @@ def read_by_meshio(path: Path) -> Arrays:
     import meshio
 
     _check_text(path)
+    _teach_meshio()
     arrays = Arrays()
     tags: list[np.ndarray] = []
     views: list[NodeView] = []
@@ -220,13 +221,22 @@ def _join(arrays: Arrays, section: str, name: str, members: np.ndarray) -> None:
     arrays.values[key] = (arrays.values.get(key, np.zeros(len(members), np.uint8)) | members).astype(np.uint8)
 
 
+def _teach_meshio() -> None:
+    """meshio knows these kinds by name and order but not their size, and fails on them."""
+    with contextlib.suppress(ImportError, AttributeError):
+        from meshio import _common
+
+        _common.num_nodes_per_cell.setdefault("wedge15", 15)
+        _common.num_nodes_per_cell.setdefault("pyramid13", 13)
+
+
 @contextlib.contextmanager
 def _node_tags_into(tags: list[np.ndarray]) -> Iterator[None]:
     """Keeps the node tags of .msh files, which meshio reads and throws away. Without effect when meshio changes."""
     from meshio import gmsh
 
     kept = []
-    for version, first in (("_gmsh41", 0), ("_gmsh40", 1), ("_gmsh22", 1)):     # tags there count from 0 or 1
+    for version, first in (("_gmsh41", 0), ("_gmsh40", 1), ("_gmsh22", 1)):  # tags there count from 0 or 1
         module = getattr(gmsh, version, None)
         original = getattr(module, "_read_nodes", None)
         if original is None:
