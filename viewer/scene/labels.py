@@ -11,13 +11,13 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from viewer.cells import skin
 from viewer.model.arrays import Array
 from viewer.scene import marks
 from viewer.scene.figures import kilograms
 from viewer.scene.motion import displacement, is_standing, positions
 from viewer.scene.picture import Body, Picture
 from viewer.scene.primitives import Box, Frame, Line, Point, Primitive, Text, bounds, grown
+from viewer.scene.surface import Surface, surface_of
 from viewer.scene.tokens import THEMES
 from viewer.scene.typeface import text_width
 
@@ -146,16 +146,17 @@ class Cover:
         return np.diff(np.diff(self.sums, axis=0), axis=1) > 0
 
 
-def cover(picture: Picture, frame: Frame) -> Cover:
-    """Everything that bodies and marks sweep over in a cycle."""
+def cover(picture: Picture, frame: Frame, surfaces: Sequence[Surface] | None = None) -> Cover:
+    """Everything that bodies and marks sweep over in a cycle. ``surfaces`` of the bodies, when already known."""
     rows, columns = int(np.ceil(frame.height / CELL)), int(np.ceil(frame.width / CELL))
     grid = np.zeros((rows, columns), bool)
     for index, (body, pieces) in enumerate(zip(picture.bodies, marks.mark_pieces(picture), strict=True)):
-        drawn = skin([(block.kind, block.nodes) for block in body.mesh.blocks])
+        surface = surface_of(body.mesh) if surfaces is None else surfaces[index]
+        rest, shape = body.mesh.points[surface.nodes], body.shape[surface.nodes]
         for phase in cycle_phases(body):
-            at = frame.project(positions(body.mesh.points, body.shape, body.factor, phase), index)
-            _fill(grid, at, drawn.faces)
-            _fill(grid, at, drawn.edges[:, [0, 1, 1]])
+            at = frame.project(positions(rest, shape, body.factor, phase), index)
+            _fill(grid, at, surface.node_triangles)
+            _fill(grid, at, surface.lines[:, [0, 1, 1]])
             for piece in pieces:
                 seen = frame.project(piece.at(phase), index)
                 _fill(grid, seen, piece.triangles)
@@ -171,12 +172,11 @@ def cycle_phases(body: Body) -> tuple[float, ...]:
 
 
 def _fill(grid: Array, points: Array, triangles: Array) -> None:
-    """Mark the cells that triangles (t, 3) of points (n, 2) px lie on: each is cut into four until it is smaller
-    than a cell; corners stand for the rest."""
+    """Mark the cells that points (n, 2) px and triangles (t, 3) of them lie on: each triangle is cut into four until
+    it is smaller than a cell; corners stand for the rest."""
     limit = np.array(grid.shape[::-1]) * CELL
+    _stamp(grid, points)
     a, b, c = (points[triangles[:, k]] for k in range(3))
-    for corner in (a, b, c):
-        _stamp(grid, corner)
     for _ in range(10):
         low, high = np.minimum(np.minimum(a, b), c), np.maximum(np.maximum(a, b), c)
         split = ((high - low > CELL).any(axis=1)) & (high >= 0).all(axis=1) & (low < limit).all(axis=1)

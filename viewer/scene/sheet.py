@@ -6,6 +6,7 @@ Pure: what is where can be asserted without drawing. What stands still is compos
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 from viewer.scene.colour_bar import picture_bar
@@ -28,6 +29,7 @@ from viewer.scene.primitives import (
     sheet_size,
 )
 from viewer.scene.rulers import ruler_items
+from viewer.scene.surface import Surface
 from viewer.scene.title_keys import title_key_items
 
 __all__ = [
@@ -56,8 +58,8 @@ class SheetPlan:
         return Sheet(self.frame.width, self.frame.height, self.fixed, tuple(moving))
 
 
-def plan_sheet(picture: Picture, frame: Frame) -> SheetPlan:
-    """Compose everything that stands still."""
+def plan_sheet(picture: Picture, frame: Frame, surfaces: Sequence[Surface] | None = None) -> SheetPlan:
+    """Compose everything that stands still. ``surfaces`` of the bodies spare finding them again."""
     band_top = frame.height - note_height(picture)
     furniture = [*picture_bar(picture, frame, band_top)]
     furniture += ruler_items(picture, frame) if picture.layout == "single" else title_key_items(picture, frame)
@@ -65,7 +67,7 @@ def plan_sheet(picture: Picture, frame: Frame) -> SheetPlan:
     labels: list[Placed] = []
     magnifier = None
     if wanted or picture.magnified is not None:
-        covered = cover(picture, frame)
+        covered = cover(picture, frame, surfaces)
         taken = [grown(item.box, 4.0) for item in furniture if not isinstance(item, Line)]
         taken.append((0.0, band_top, frame.width, frame.height))
         leaders: list[Line] = []

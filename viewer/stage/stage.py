@@ -72,7 +72,8 @@ class Stage:
         if self._bare is not None:
             return
         if self._plan is None or not camera.same_as(self._plan[0]):
-            self._plan = camera, plan_sheet(self.picture, view.frame(self.picture, camera, self._boxes))
+            frame = view.frame(self.picture, camera, self._boxes)
+            self._plan = camera, plan_sheet(self.picture, frame, self._surfaces)
         self._sheet.show(self._plan[1].at(phase))
 
     def image(self, phase: float | None = None) -> Array:
