@@ -92,6 +92,10 @@ def test_compared_with_both_sizes_unknown():
     )
 
 
+def test_one_colour_scale_is_a_statement_of_its_own():
+    assert said(1, NAME, None, (unknown(), unknown()), one_colour_scale=True)[1:] == ["one colour scale", EXAGGERATED]
+
+
 def test_compared_places_that_differ_are_both_named():
     drawn = said(1, NAME, None, (scale(), scale(largest_place="cover", largest_word="up", largest_real=2e-6)))
     assert "largest real motion of baseline 3.9 µm, camera lens, down" in drawn

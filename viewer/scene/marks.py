@@ -17,8 +17,8 @@ from viewer.model.mesh import Mesh
 from viewer.scene.motion import displacement
 from viewer.scene.picture import Body, MassMark, Picture, PointMark
 
-PEG = 0.022                 # edge of a peg's cube
-PEG_STEP = 0.034            # least distance between pegs
+PEG = 0.018                 # edge of a peg's cube
+PEG_STEP = 0.028            # least distance between pegs
 PEG_BITE = 0.2              # share of a peg's edge that lies in the body
 BEAD = 0.036                # radius of the heaviest bead of a picture
 LEAST_BEAD = 0.008
