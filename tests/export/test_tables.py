@@ -30,7 +30,8 @@ def test_files_carry_every_digit(tmp_path):
         assert float(from_csv["frequency_hz"]) == from_json["frequency_hz"] == given["frequency_hz"]
         assert from_csv["name"] == from_json["name"] == given["name"]
         assert from_json["trusted"] is bool(given["trusted"])
-    assert back[1]["largest_real_m"] == "" and loaded["rows"][1]["largest_real_m"] is None
+    assert back[1]["largest_real_m"] == ""
+    assert loaded["rows"][1]["largest_real_m"] is None
     assert loaded["rows"][1]["closure"] is None                       # not a number: unknown, never NaN in JSON
     assert loaded["units"] == {"frequency_hz": "Hz", "largest_real_m": "m", "strain_percent": "%"}
     assert not list(tmp_path.glob("**/.part-*"))
@@ -38,9 +39,14 @@ def test_files_carry_every_digit(tmp_path):
 
 def test_text_says_the_same_rounded():
     text = readable(ROWS)
-    assert "82.60" in text and "1142" in text and "61.0" in text and "3.900" in text
-    assert "µm" in text and "never" not in text
-    assert "yes" in text and "no" in text
+    assert "82.60" in text
+    assert "1142" in text
+    assert "61.0" in text
+    assert "3.900" in text
+    assert "µm" in text
+    assert "never" not in text
+    assert "yes" in text
+    assert "no" in text
     lines = text.splitlines()
     assert len({line.index("82.60") + 5 for line in lines if "82.60" in line}
                | {line.index("1142") + 4 for line in lines if "1142" in line}) == 1     # flush right
@@ -81,8 +87,10 @@ def test_rounding(value, text):
 
 
 def test_empty_and_bad_input(tmp_path):
-    assert csv_text([]) == "" and json.loads(json_text([]))["rows"] == [] and readable([]) == "(nothing to list)"
-    with pytest.raises(ExportError, match="csv or .json"):
+    assert csv_text([]) == ""
+    assert json.loads(json_text([]))["rows"] == []
+    assert readable([]) == "(nothing to list)"
+    with pytest.raises(ExportError, match=r"csv or \.json"):
         write_table(tmp_path / "modes.xls", ROWS)
     with pytest.raises(TypeError):
         json_text([{"a": [1]}])
