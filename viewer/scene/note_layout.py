@@ -95,7 +95,8 @@ def _compared(
     first, second = (scale.magnification for scale in scales)
     if first is None and second is None:
         return [
-            f"size arbitrary, both drawn at equal {size_basis}, sign and phase by the modal scale factor, same camera",
+            f"size arbitrary, both drawn at equal {size_basis}, "
+            "sign and phase by the modal scale factor, same camera",
             *(["one colour scale"] if one_colour_scale else []),
             EXAGGERATED,
         ]
