@@ -145,3 +145,29 @@ def test_cross_products_match_numpy():
     points, tri = random.random((30, 3)), random.integers(0, 30, (50, 3))
     a, b, c = points[tri].transpose(1, 0, 2)
     assert cross_of(points, tri) == pytest.approx(np.cross(b - a, c - a))
+
+
+@pytest.mark.parametrize("kind", ["quad8", "quad9", "tri6"])
+def test_mid_side_vertices_lie_between_their_corners(kind):
+    # rows of high, low, high energy: along a row nothing may vary, whatever nodes the cells have
+    plate = plate_mesh(kind, (8, 3), (8.0, 3.0))
+    surface = surface_of(plate)
+    middle = np.concatenate([plate.points[b.nodes].mean(axis=1) for b in plate.blocks])
+    values = surface.vertex_values(np.where(np.abs(middle[:, 1] - 1.5) < 0.5, 1.0, 9.0))
+    points = plate.points[surface.nodes][surface.vertex]
+    along = (points[:, 0] >= 1) & (points[:, 0] <= 7)
+    for (a, b), mid in (((0.0, 1.0), 0.5), ((1.0, 2.0), 1.5), ((2.0, 3.0), 2.5)):
+        ends = [values[along & (points[:, 1] == y) & (points[:, 0] % 1 == 0)].mean() for y in (a, b)]
+        inside = along & (points[:, 1] == mid)
+        assert inside.sum() == {"quad8": 7, "quad9": 13, "tri6": 13}[kind]
+        assert values[inside] == pytest.approx(np.mean(ends))
+
+
+def test_mid_side_vertices_on_a_crease_keep_to_their_side():
+    mesh = box_mesh("hex20", (2, 2, 2), (1.0, 1.0, 1.0))
+    surface = surface_of(mesh)
+    normals = surface.vertex_normals(surface.face_normals(mesh.points[surface.nodes]))
+    mid, corner = surface.between[0].T
+    assert normals[mid] == pytest.approx(normals[corner], abs=1e-6)
+    assert len(np.unique(mid)) == 6 * 12
+    assert len(surface.between[1]) == 0

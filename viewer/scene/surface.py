@@ -14,7 +14,7 @@ import numpy as np
 from scipy.sparse import csr_matrix
 from scipy.sparse.csgraph import connected_components
 
-from viewer.cells import Skin, skin
+from viewer.cells import KINDS, Skin, skin
 from viewer.model.arrays import Array
 from viewer.model.mesh import Mesh
 from viewer.scene.tokens import CREASE_DEGREES
@@ -44,6 +44,8 @@ class Surface:
     cells      (t,) cell row of each triangle
     areas      (t,) m², undeformed
     outline    (m, 2) skin nodes: the mesh lines of the drawn cell faces
+    between    for mid-side, then for mid-face vertices of quadratic faces: (h, 2) such a vertex and one of those,
+               corners or mid-side, half-way between which it lies
     lines      (l, 2) skin nodes of line cells; ``line_cells`` (l,) their cell rows
     """
 
@@ -54,6 +56,7 @@ class Surface:
     areas: Array
     edges: Edges
     outline: Array
+    between: tuple[Array, ...]
     lines: Array
     line_cells: Array
 
@@ -87,11 +90,20 @@ class Surface:
         return normals
 
     def vertex_values(self, values: Array) -> Array:
-        """(v,) area-weighted mean over each vertex's smooth patch of a value by cell row; unknown counts as 0."""
+        """(v,) area-weighted mean over each vertex's smooth patch of a value by cell row; unknown counts as 0.
+
+        Mid-side and mid-face vertices take the mean of the corners they lie between: their own would take in fewer
+        cells than the corners' and draw a pattern that is the mesh's, not the energy's.
+        """
         weight = self.areas + 1e-12 * (self.areas.max(initial=0.0) or 1.0)  # zero-area slivers still carry a value
         value = np.nan_to_num(np.asarray(values, float))[self.cells] * weight
         total = self._spread @ np.stack([value, weight], axis=1)
-        return total[:, 0] / total[:, 1]
+        mean = total[:, 0] / total[:, 1]
+        for finer, coarser in (pairs.T for pairs in self.between):
+            count = np.bincount(finer, minlength=len(mean))
+            inner = np.bincount(finer, mean[coarser], minlength=len(mean))
+            mean = np.where(count > 0, inner / np.maximum(count, 1), mean)
+        return mean
 
     def cell_areas(self, n_cells: int) -> Array:
         """(n_cells,) drawn area of each cell, m²; zero for those inside."""
@@ -100,11 +112,19 @@ class Surface:
 
 def surface_of(mesh: Mesh) -> Surface:
     """The drawn surface of ``mesh``, from the skin of its cells; creases are those of the undeformed shape."""
-    return build(mesh.points, skin([(block.kind, block.nodes) for block in mesh.blocks]))
+    found = skin([(block.kind, block.nodes) for block in mesh.blocks])
+    rank = np.zeros(mesh.n_nodes, np.int8)
+    for block in mesh.blocks:
+        kind = KINDS[block.kind]
+        rank[block.nodes[:, kind.n_corners :]] = 2
+        for _, _, *middle in kind.edges:
+            rank[block.nodes[:, middle]] = 1
+    return build(mesh.points, found, rank)
 
 
-def build(points: Array, found: Skin) -> Surface:
-    """A surface from a skin over the rows of ``points`` (n, 3), m."""
+def build(points: Array, found: Skin, rank: Array) -> Surface:
+    """A surface from a skin over the rows of ``points`` (n, 3), m; ``rank`` (n,) is 0 for corner nodes of cells,
+    1 for mid-side nodes, 2 for those in the middle of faces."""
     nodes, compact = np.unique(np.concatenate([found.faces.ravel(), found.edges.ravel()]), return_inverse=True)
     tri, lines = compact[: found.faces.size].reshape(-1, 3), compact[found.faces.size :].reshape(-1, 2)
     real = (tri[:, 0] != tri[:, 1]) & (tri[:, 1] != tri[:, 2]) & (tri[:, 2] != tri[:, 0])
@@ -128,8 +148,13 @@ def build(points: Array, found: Skin) -> Surface:
     corners, vertex = _patches(tri, pairs[~feature], beside[~feature])
     edges = Edges(pairs.astype(np.int32), beside.astype(np.int32), feature)
     outline = np.searchsorted(nodes, found.outline).astype(np.int32)
+    sides = np.isin(pairs[:, 0] * len(nodes) + pairs[:, 1], np.sort(outline, axis=1) @ [len(nodes), 1])
+    between = tuple(
+        _between(tri, corners, pairs[allowed], beside[allowed], rank[nodes], level)
+        for level, allowed in ((1, sides), (2, ~sides))
+    )
     return Surface(
-        nodes, corners, vertex, cells, 0.5 * length, edges, outline, lines.astype(np.int32), found.edge_cell
+        nodes, corners, vertex, cells, 0.5 * length, edges, outline, between, lines.astype(np.int32), found.edge_cell
     )
 
 
@@ -194,7 +219,7 @@ def _patches(tri: Array, pairs: Array, beside: Array) -> tuple[Array, Array]:
     joins = []
     for column in (0, 1):
         node = pairs[:, column]
-        joins.append([3 * face + np.argmax(tri[face] == node[:, None], axis=1) for face in beside.T])
+        joins.append([3 * face + _corner(tri[face], node) for face in beside.T])
     rows, columns = (np.concatenate([join[side] for join in joins]) for side in (0, 1))
     graph = csr_matrix((np.ones(len(rows), np.int8), (rows, columns)), (3 * t, 3 * t))
     count, label = connected_components(graph, directed=False)
@@ -204,3 +229,23 @@ def _patches(tri: Array, pairs: Array, beside: Array) -> tuple[Array, Array]:
     rank = np.empty(count, np.int64)
     rank[order] = np.arange(count)
     return rank[label].reshape(t, 3).astype(np.int32), node_of[order].astype(np.int32)
+
+
+def _between(tri: Array, corners: Array, pairs: Array, beside: Array, rank: Array, level: int) -> Array:
+    """(h, 2) vertices at the ends of edges that join rank ``level`` to the rank below, on each side of the edge."""
+    ranks = rank[pairs]
+    joined = (ranks.max(axis=1, initial=0) == level) & (ranks.min(axis=1, initial=level) == level - 1)
+    pairs, beside, ranks = pairs[joined], beside[joined], ranks[joined]
+    upward = ranks[:, 0] == level
+    finer, coarser = np.where(upward, pairs.T, pairs.T[::-1])
+    found = []
+    for face in beside.T:
+        has = face >= 0
+        row = face[has]
+        found.append([corners[row, _corner(tri[row], node[has])] for node in (finer, coarser)])
+    return np.unique(np.concatenate(found, axis=1).T, axis=0)
+
+
+def _corner(triangles: Array, node: Array) -> Array:
+    """(k,) which corner of each triangle (k, 3) is the given node."""
+    return np.argmax(triangles == node[:, None], axis=1)
