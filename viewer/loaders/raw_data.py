@@ -126,10 +126,10 @@ def finish_modes(raw: RawModes, mesh: Mesh, path: str | os.PathLike[str], length
         )
     damping = None if raw.damping is None else _per_mode(raw.damping, "damping", shapes.count, path)
     n_rows = shapes.n_rows if isinstance(shapes, FileShapes) else shapes.moved.shape[1]
+    if n_rows == 0:
+        raise LoadError("the mode shapes have no nodes", file=path)
     ids = _ids(raw.node_ids, n_rows, "node", path, [])
-    rows: Array | None = _join(ids, mesh, path, numbered=raw.node_ids is None)
-    if np.array_equal(rows, np.arange(n_rows)):  # type: ignore[arg-type]
-        rows = None
+    rows = _join(ids, mesh, path, numbered=raw.node_ids is None)
     if isinstance(shapes, FileShapes):
         shapes = shapes.arranged(rows, length_unit)
         if shapes.nbytes <= _READ_AT_ONCE:
@@ -260,7 +260,7 @@ def _ids(given: Array | None, count: int, word: str, path: object, notes: list[s
 
 
 def _group(rows: Array, count: int, what: str, path: object) -> Array:
-    rows = np.unique(rows).astype(np.int64)
+    rows = np.sort(rows).astype(np.int64)
     if len(rows) and (rows[0] < 0 or rows[-1] >= count):
         raise LoadError(
             f"{what} reaches outside",
@@ -297,13 +297,17 @@ def _per_mode(values: Array | None, name: str, count: int, path: object) -> Arra
     return values
 
 
-def _join(ids: Array, mesh: Mesh, path: object, numbered: bool) -> Array:
-    """Row in the file of each mesh node."""
+def _join(ids: Array, mesh: Mesh, path: object, numbered: bool) -> Array | None:
+    """Row in the file of each mesh node; None when they come in the order of the mesh."""
+    if np.array_equal(ids, mesh.node_ids):
+        return None
     order = np.argsort(ids, kind="stable")
     at = np.searchsorted(ids, mesh.node_ids, sorter=order)
     rows = order[np.minimum(at, len(ids) - 1)]
     missing = mesh.node_ids[ids[rows] != mesh.node_ids]
-    extra = np.setdiff1d(ids, mesh.node_ids)
+    # ids are unique, so that equal numbers without a missing one leave no extra one; the search is slow
+    same = len(ids) == mesh.n_nodes and not len(missing)
+    extra = ids[:0] if same else np.setdiff1d(ids, mesh.node_ids)
     if len(missing) or len(extra):
         told = [
             f"{len(some)} nodes only in the {where} ({_few(some)})"

@@ -222,12 +222,12 @@ def _join(arrays: Arrays, section: str, name: str, members: np.ndarray) -> None:
 
 
 def _teach_meshio() -> None:
-    """meshio knows these kinds by name and order but not their size, and fails on them."""
+    """meshio knows these kinds by name, size and order but not their dimension, and fails on them."""
     with contextlib.suppress(ImportError, AttributeError):
-        from meshio import _common
+        from meshio import _mesh
 
-        _common.num_nodes_per_cell.setdefault("wedge15", 15)
-        _common.num_nodes_per_cell.setdefault("pyramid13", 13)
+        for kind in ("wedge15", "pyramid13"):
+            _mesh.topological_dimension.setdefault(kind, 3)
 
 
 @contextlib.contextmanager

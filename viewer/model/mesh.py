@@ -83,7 +83,10 @@ class Mesh:
         """Rows of nodes that some cell uses, ascending."""
         if not self.blocks:
             return frozen(np.empty(0, np.int64))
-        return frozen(np.unique(np.concatenate([b.nodes.ravel() for b in self.blocks])))
+        used = np.zeros(self.n_nodes, bool)
+        for block in self.blocks:
+            used[block.nodes.ravel()] = True
+        return frozen(np.flatnonzero(used))
 
     @cached_property
     def _row_of_id(self) -> dict[int, int]:
