@@ -20,7 +20,7 @@ def modes(
     no_cache: NoCache = False,
 ) -> None:
     """List the modes of every design: frequency, where the energy sits, how large the motion really is."""
-    from viewer.export.report import mode_rows
+    from viewer.export.rows import mode_rows, short
     from viewer.export.tables import readable, write_table
 
     opened = workspace(no_cache).open(dossier)
@@ -36,6 +36,6 @@ def modes(
     if as_json:
         answer({"title": opened.dossier.title, "modes": rows, "cautions": cautions})
         return
-    typer.echo(readable(rows))
+    typer.echo(readable(short(rows)))
     for caution in cautions:
         typer.echo(f"caution: {caution}")

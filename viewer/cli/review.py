@@ -7,7 +7,18 @@ from typing import Annotated
 
 import typer
 
-from viewer.cli.shell import DossierPath, Json, NoCache, Theme, Width, answer, command, progress_bar, theme_checked, workspace
+from viewer.cli.shell import (
+    DossierPath,
+    Json,
+    NoCache,
+    Theme,
+    Width,
+    answer,
+    command,
+    progress_bar,
+    theme_checked,
+    workspace,
+)
 
 
 @command

@@ -58,19 +58,9 @@ def _fail(parts: dict[str, Any], as_json: bool, text: str) -> None:
 
 def answer(document: Any) -> None:
     """Print one JSON document; NaN and infinity become null, since JSON has no word for them."""
-    typer.echo(json.dumps(_plain(document), indent=2, ensure_ascii=False, allow_nan=False))
+    from viewer.model.plain import plain
 
-
-def _plain(value: Any) -> Any:
-    if isinstance(value, dict):
-        return {str(k): _plain(v) for k, v in value.items()}
-    if isinstance(value, list | tuple):
-        return [_plain(v) for v in value]
-    if hasattr(value, "tolist"):
-        return _plain(value.tolist())
-    if isinstance(value, float):
-        return value if value == value and abs(value) != float("inf") else None
-    return str(value) if isinstance(value, Path) else value
+    typer.echo(json.dumps(plain(document), indent=2, ensure_ascii=False, allow_nan=False))
 
 
 @contextmanager

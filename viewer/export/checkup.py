@@ -6,6 +6,8 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
+import numpy as np
+
 from viewer.errors import HingelightError
 from viewer.jobs import SILENT, Progress
 from viewer.loaders import bare_dossier, read_mesh_report, read_modes
@@ -77,7 +79,8 @@ def _check_design(opened: OpenDossier, name: str, progress: Progress) -> tuple[l
     if design.physics.assignments:
         system = assemble(design, progress)
         free = int((~system.held).sum())
-        mass = system.total_mass
+        ones = system.gather(np.tile([1.0, 0, 0], (design.mesh.n_nodes, 1)))
+        mass = float(ones @ (system.M @ ones))
         statements.append(f"{name}: {system.n_dof} degrees of freedom, {free} free; mass {mass:.4g} kg")
         cautions += [f"{name}: {caution}" for caution in system.cautions]
     if plan.modes_file is not None:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import Any
 
 import numpy as np
@@ -11,10 +12,26 @@ from viewer.insight.correlate import common_support, mac
 from viewer.model.arrays import Array
 from viewer.model.cycle import cycle_peaks
 from viewer.model.design import FunctionalPoint
+from viewer.scene.figures import change, digits, hertz, length
 from viewer.workspace import Study
 
 Row = dict[str, Any]
 _WHOLE = 0.95       # a group that holds more of the body than this says nothing about where
+
+
+# What terminal and page show of the rows; files carry every column.
+_SHORT = (
+    "design", "mode", "name", "frequency_hz", "largest_motion_at", "largest_motion_direction", "largest_real_m",
+    "magnification", "strain_energy_most_in", "strain_energy_most_percent", "energies_trusted",
+    "point", "effect", "direction", "motion_percent_of_largest", "real_motion_m",
+    "first_design", "first_mode", "first_name", "second_design", "second_mode", "first_hz", "second_hz",
+    "change_percent", "mac_common_support",
+)  # fmt: skip
+
+
+def short(rows: Sequence[Row]) -> list[Row]:
+    """The rows with the columns that are read at a glance."""
+    return [{key: value for key, value in row.items() if key in _SHORT} for row in rows]
 
 
 def mode_rows(study: Study) -> list[Row]:
@@ -59,6 +76,37 @@ def _mode_row(study: Study, index: int) -> Row:
         row["residual_share"] = _number(found.residual[index])
         row["energies_trusted"] = bool(found.trusted[index])
     return row
+
+
+def mode_caption(row: Row) -> str:
+    """One or two plain sentences made of a mode row's own figures."""
+    where, way = row["largest_motion_at"], row["largest_motion_direction"]
+    said = [f"{hertz(row['frequency_hz'])}, largest motion at {where}, {way}"]
+    if row["largest_real_m"] is not None:
+        said.append(f"really {length(row['largest_real_m'])} ({row['size_statistic']})")
+    text = ", ".join(said) + "."
+    if row["strain_energy_most_in"]:
+        share = digits(row["strain_energy_most_percent"])
+        text += f" {share} % of the strain energy sits in {row['strain_energy_most_in']}."
+    if row["springs_strain_percent"]:
+        text += f" Springs hold {digits(row['springs_strain_percent'])} % of it."
+    if row["energies_trusted"] is False and row["closure"] is not None:
+        text += f" Energies are not trusted (closure {row['closure']:.2f})."
+    return text
+
+
+def pair_caption(row: Row) -> str:
+    """One plain sentence made of a pair row's own figures."""
+    text = (
+        f"{row['first_design']} mode {row['first_mode']} at {hertz(row['first_hz'])}, {row['second_design']} mode "
+        f"{row['second_mode']} at {hertz(row['second_hz'])}"
+    )
+    moved = change(row["second_hz"], row["first_hz"])
+    if moved:
+        text += f" ({moved})"
+    if row["mac_common_support"] is not None:
+        text += f"; the shapes agree with MAC {row['mac_common_support']:.2f} where both designs have material"
+    return f"{text}; {row['paired_by']}."
 
 
 def group_rows(study: Study) -> list[Row]:

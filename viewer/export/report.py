@@ -1,0 +1,282 @@
+"""``review``: every loop, still, strip, table and comparison of a dossier in one folder, with a page that shows them.
+
+The folder is filled aside and moved into place at the end, so that a review that is stopped leaves nothing.
+"""
+
+from __future__ import annotations
+
+import json
+import os
+import re
+import shutil
+import tempfile
+from collections.abc import Iterator
+from contextlib import contextmanager, suppress
+from dataclasses import dataclass, field
+from pathlib import Path
+from typing import Any
+
+from viewer import __version__
+from viewer.errors import ExportError
+from viewer.export.checkup import mesh_words
+from viewer.export.gif_loop import save_gif
+from viewer.export.index_page import PageLoop, PageSection, PageTable, write_index
+from viewer.export.rows import Row, group_rows, mode_caption, mode_rows, pair_caption, pair_row, point_rows, short
+from viewer.export.stills import save_png
+from viewer.export.strip import save_strip
+from viewer.export.tables import write_table
+from viewer.jobs import SILENT, Progress, write_text
+from viewer.model.plain import plain
+from viewer.scene.compose import pair_picture, single_picture
+from viewer.workspace import OpenDossier, Study
+
+SUMMARY = "summary.json"
+
+
+@dataclass(frozen=True)
+class Review:
+    """What a review wrote: the page, the figures, and the tables to print."""
+
+    index: Path
+    summary: dict[str, Any]
+    tables: tuple[tuple[str, list[Row]], ...]
+    cautions: tuple[str, ...]
+
+
+def write_review(
+    opened: OpenDossier,
+    folder: str | os.PathLike[str],
+    *,
+    count: int | None = None,
+    theme: str = "light",
+    width: int = 960,
+    progress: Progress = SILENT,
+) -> Review:
+    """Write everything for a dossier into ``folder``; files of an earlier review there are replaced.
+
+    count  modes a design; None: as the dossier says. Raises what reading, solving and drawing raise.
+    """
+    studies = [opened.study(name, count, progress) for name in opened.names]
+    pairs = _pairs(opened, studies)
+    steps = _Steps(progress, sum(s.count for s in studies) + len(pairs))
+    with _aside(Path(folder)) as part:
+        desk = _Desk(part, theme, width, steps, _slugs(opened.names))
+        comparison = _compare(desk, pairs) if pairs else None
+        sections = ([comparison] if comparison else []) + [_explain(desk, study) for study in studies]
+        cautions = tuple(dict.fromkeys((*opened.warnings, *(c for s in studies for c in s.cautions))))
+        write_index(
+            part, opened.dossier.title, sections, condition=opened.dossier.condition, cautions=cautions
+        )
+        summary = _summary(opened, studies, desk, cautions)
+        write_text(part / SUMMARY, json.dumps(plain(summary), indent=1, ensure_ascii=False, allow_nan=False) + "\n")
+    return Review(Path(folder) / "index.html", summary, tuple(desk.printed), cautions)
+
+
+@dataclass
+class _Steps:
+    """Counts drawn modes, so that the bar of a review moves evenly."""
+
+    progress: Progress
+    total: int
+    done: int = 0
+
+    def next(self, words: str) -> Progress:
+        self.progress.tick(words, self.done, self.total)
+        self.done += 1
+        return Progress(lambda *_: self.progress.tick(words, self.done - 1, self.total))
+
+
+@dataclass
+class _Desk:
+    """Where a review writes, and what it has written so far."""
+
+    folder: Path
+    theme: str
+    width: int
+    steps: _Steps
+    slugs: dict[str, str]
+    printed: list[tuple[str, list[Row]]] = field(default_factory=list)
+    tables: dict[str, list[Row]] = field(default_factory=dict)
+
+    @property
+    def look(self) -> dict[str, Any]:
+        return {"theme": self.theme, "width": self.width}
+
+    def table(self, stem: str, title: str, rows: list[Row], *, show: bool = False) -> tuple[PageTable, ...]:
+        """Write rows as CSV and JSON; nothing when there are none."""
+        if not rows:
+            return ()
+        for suffix in (".csv", ".json"):
+            write_table(self.folder / f"{stem}{suffix}", rows)
+        self.tables[stem] = rows
+        if show:
+            self.printed.append((title, short(rows)))
+        return (PageTable(title, short(rows), f"{stem}.csv", f"{stem}.json"),)
+
+
+def _explain(desk: _Desk, study: Study) -> PageSection:
+    """Loops, stills, strips and tables of one design."""
+    name = study.design.name
+    slug = desk.slugs[name]
+    rows = mode_rows(study)
+    loops = [_explain_mode(desk, study, index, row) for index, row in enumerate(rows)]
+    tables = (
+        *desk.table(f"{slug}_modes", f"Modes of {name}", rows, show=True),
+        *desk.table(f"{slug}_points", f"Motion of the functional points of {name}", point_rows(study), show=True),
+        *desk.table(f"{slug}_groups", f"Energy by group of {name}", group_rows(study)),
+    )
+    text = [mesh_words(study.design.mesh)]
+    if study.design.note:
+        text.append(study.design.note)
+    return PageSection(name, tuple(text), tuple(loops), tables)
+
+
+def _explain_mode(desk: _Desk, study: Study, index: int, row: Row) -> PageLoop:
+    number, slug = index + 1, desk.slugs[study.design.name]
+    stem = f"{slug}_mode_{number:02d}"
+    progress = desk.steps.next(f"drawing {study.design.name} mode {number}")
+    picture = single_picture(study, number, **desk.look)
+    save_gif(picture, desk.folder / f"{stem}.gif", progress)
+    save_png(picture, desk.folder / f"{stem}.png", progress=progress)
+    save_strip(picture, desk.folder / f"{stem}_phases.png", progress)
+    if number in study.amplitudes:
+        true = single_picture(study, number, true_scale=True, **desk.look)
+        save_png(true, desk.folder / f"{stem}_true_scale.png", progress=progress)
+    return PageLoop(
+        title=picture.note.title,
+        gif=f"{stem}.gif",
+        still=f"{stem}.png",
+        strip=f"{stem}_phases.png",
+        caption=mode_caption(row),
+        alt=f"{study.design.name}, {picture.note.title}, {picture.note.frequency}: {', '.join(picture.note.drawing)}",
+    )
+
+
+@dataclass(frozen=True)
+class _Pair:
+    first: Study
+    first_mode: int
+    second: Study
+    second_mode: int
+    paired_by: str
+
+
+def _pairs(opened: OpenDossier, studies: list[Study]) -> list[_Pair]:
+    """The pairs that the dossier states; without any, equal numbers of the first design and each other one."""
+    by_name = {study.design.name: study for study in studies}
+    stated = [
+        _Pair(by_name[p.first_design], p.first_mode, by_name[p.second_design], p.second_mode, "paired by the dossier")
+        for p in opened.dossier.pairs
+        if p.first_mode <= by_name[p.first_design].count and p.second_mode <= by_name[p.second_design].count
+    ]
+    if opened.dossier.pairs:
+        return stated
+    first = studies[0]
+    return [
+        _Pair(first, number, other, number, "paired by number, not by shape")
+        for other in studies[1:]
+        for number in range(1, min(first.count, other.count) + 1)
+    ]
+
+
+def _compare(desk: _Desk, pairs: list[_Pair]) -> PageSection:
+    """Loops side by side and overlays of every pair, and the table of what became of each mode."""
+    rows, loops = [], []
+    for pair in pairs:
+        row = pair_row(pair.first, pair.first_mode, pair.second, pair.second_mode, pair.paired_by)
+        rows.append(row)
+        loops.append(_compare_pair(desk, pair, row))
+    tables = desk.table("comparison", "What became of each mode", rows, show=True)
+    text = ("Compared designs share camera, phase and magnification; energy colours share one scale.",)
+    return PageSection("Designs compared", text, tuple(loops), tables, comparison=True)
+
+
+def _compare_pair(desk: _Desk, pair: _Pair, row: Row) -> PageLoop:
+    one, two = pair.first.design.name, pair.second.design.name
+    stem = f"{desk.slugs[one]}_{pair.first_mode:02d}_{desk.slugs[two]}_{pair.second_mode:02d}"
+    progress = desk.steps.next(f"comparing {one} mode {pair.first_mode}")
+    arguments = (pair.first, pair.first_mode, pair.second, pair.second_mode)
+    side = pair_picture(*arguments, layout="side", paired_by=pair.paired_by, **desk.look)
+    save_gif(side, desk.folder / f"{stem}_side.gif", progress)
+    save_png(side, desk.folder / f"{stem}_side.png", progress=progress)
+    overlay = pair_picture(*arguments, layout="overlay", paired_by=pair.paired_by, **desk.look)
+    save_png(overlay, desk.folder / f"{stem}_overlay.png", progress=progress)
+    return PageLoop(
+        title=side.note.title,
+        gif=f"{stem}_side.gif",
+        still=f"{stem}_side.png",
+        strip=f"{stem}_overlay.png",
+        caption=pair_caption(row),
+        alt=f"{one} beside {two}, {side.note.title}: {', '.join(side.note.drawing)}",
+    )
+
+
+def _summary(
+    opened: OpenDossier, studies: list[Study], desk: _Desk, cautions: tuple[str, ...]
+) -> dict[str, Any]:
+    return {
+        "made_by": f"hingelight {__version__}",
+        "title": opened.dossier.title,
+        "condition": opened.dossier.condition,
+        "designs": {
+            s.design.name: {
+                "mesh": mesh_words(s.design.mesh),
+                "formulations": list(s.energies.formulations) if s.energies is not None else [],
+                "modes": desk.tables.get(f"{desk.slugs[s.design.name]}_modes", []),
+                "points": desk.tables.get(f"{desk.slugs[s.design.name]}_points", []),
+                "groups": desk.tables.get(f"{desk.slugs[s.design.name]}_groups", []),
+                "drawing": [s.scale(i).to_dict() for i in range(s.count)],
+            }
+            for s in studies
+        },
+        "comparison": desk.tables.get("comparison", []),
+        "cautions": list(cautions),
+        "files": sorted({SUMMARY, *(path.name for path in desk.folder.iterdir())}),
+    }
+
+
+def _slugs(names: tuple[str, ...]) -> dict[str, str]:
+    """File-safe, distinct stems for design names."""
+    found: dict[str, str] = {}
+    for number, name in enumerate(names, 1):
+        slug = re.sub(r"[^A-Za-z0-9]+", "-", name).strip("-").lower() or f"design-{number}"
+        found[name] = f"{slug}-{number}" if slug in found.values() else slug
+    return found
+
+
+@contextmanager
+def _aside(folder: Path) -> Iterator[Path]:
+    """A folder to fill beside ``folder``; on success its files move there, on failure it vanishes.
+
+    Files that an earlier review listed in its summary and this one did not write again are removed; nobody
+    else's files are touched.
+    """
+    try:
+        folder.parent.mkdir(parents=True, exist_ok=True)
+        part = Path(tempfile.mkdtemp(prefix=".part-", dir=folder.parent))
+    except OSError as error:
+        raise ExportError(
+            "the review cannot be written there", file=folder, found=str(error), do="choose a writable folder"
+        ) from error
+    try:
+        yield part
+        folder.mkdir(exist_ok=True)
+        earlier = _earlier_files(folder)
+        for path in sorted(part.iterdir()):
+            path.replace(folder / path.name)
+            earlier.discard(path.name)
+        for name in earlier:
+            (folder / name).unlink(missing_ok=True)
+    except OSError as error:
+        raise ExportError("the review cannot be written there", file=folder, found=str(error)) from error
+    finally:
+        shutil.rmtree(part, ignore_errors=True)
+
+
+def _earlier_files(folder: Path) -> set[str]:
+    with suppress(OSError, ValueError, TypeError):
+        found = json.loads((folder / SUMMARY).read_text(encoding="utf-8"))
+        if isinstance(found, dict) and str(found.get("made_by", "")).startswith("hingelight"):
+            names = {name for name in found.get("files", []) if isinstance(name, str)}
+            return {name for name in names if Path(name).name == name and not name.startswith(".")}
+    return set()
