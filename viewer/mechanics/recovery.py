@@ -1,0 +1,183 @@
+"""Rotations of shells and beams that a mode set leaves out.
+
+Strain energy is minimised over the rotations with the translations held: K_rr r = −K_ru u (static condensation;
+Guyan R.J., Reduction of stiffness and mass matrices, AIAA J. 3 (1965) 380). This neglects rotary inertia, which is
+small in thin parts. What translations cannot show has no stiffness in K_rr (torsion of a straight beam, spin of a
+point inertia): it stays zero and is named.
+
+Bending of a thin sheet shows in small differences of translations of neighbouring nodes, so that a file of few
+digits blurs its energies. How much is found by trial: the translations are disturbed at random within the rounding
+that their own digits reveal, and the energies of the cells compared.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+import scipy.sparse as sp
+
+from viewer.jobs import SILENT, Progress
+from viewer.mechanics.assembly import Layout, assemble_layout
+from viewer.mechanics.constraints import some_ids
+from viewer.mechanics.factor import factorise
+from viewer.mechanics.sums import cell_energies
+from viewer.model.arrays import Array
+
+ENERGY_BOUND = 0.02         # Σ|ΔU_e| / ΣU_e above which the digits of a file are said to be too few
+_SOFT = 1e-12               # added to the diagonal, relative; taken off again by iterative refinement
+_UNSEEN = 1e-6              # share of a random rotation that survives three filterings by _SOFT / (λ + _SOFT)
+_UNITS = (1.0, 1e-3, 1e-2, 0.0254, 0.3048)      # metres per unit in which the file may have been written
+
+
+class Rotations:
+    """The rotations that go with given translations, for one stiffness matrix.
+
+    stiffness (n_dof, n_dof) sparse; dof (n_nodes, 6) numbers of ux uy uz rx ry rz, −1 where absent;
+    held (n_dof,) True where a support holds: held rotations are zero.
+    """
+
+    def __init__(self, stiffness: Any, dof: Array, held: Array, progress: Progress = SILENT) -> None:
+        self.dof, self.size, self.progress = np.asarray(dof), stiffness.shape[0], progress
+        numbers = self.dof[:, 3:]
+        wanted = np.zeros(self.size, bool)
+        wanted[numbers[numbers >= 0]] = True
+        self.rows = np.nonzero(wanted & ~np.asarray(held))[0]
+        self.coupling = sp.csr_array(stiffness)[self.rows]
+        inner = sp.csr_array(self.coupling[:, self.rows])
+        diagonal = inner.diagonal()
+        self.scale = np.sqrt(np.where(diagonal > 0, diagonal, diagonal.max(initial=0.0) or 1.0))
+        self.inner = inner
+        if len(self.rows):
+            progress.tick("factorising for rotations")
+            weights = sp.diags_array(1 / self.scale)
+            scaled = weights @ inner @ weights + _SOFT * sp.eye_array(len(self.rows))
+            self.factor = factorise(sp.csr_array(0.5 * (scaled + scaled.T)), definite=True)
+
+    def complete(self, moved: Array) -> Array:
+        """(k, n_dof) vectors from translations (k, n_nodes, 3), real or complex."""
+        moved = np.asarray(moved)
+        if np.iscomplexobj(moved):
+            return self.complete(moved.real) + 1j * self.complete(moved.imag)
+        there = self.dof[:, :3] >= 0
+        vectors = np.zeros((len(moved), self.size))
+        vectors[:, self.dof[:, :3][there]] = moved[:, there]
+        if not len(self.rows):
+            return vectors
+        right = -(self.coupling @ vectors.T)
+        turned = np.zeros_like(right)
+        for _ in range(20):             # the softening on the diagonal leaves the answer with every step
+            self.progress.tick("recovering rotations")
+            step = self._solve(right - self.inner @ turned)
+            turned += step
+            if not (np.linalg.norm(step, axis=0) > 1e-10 * np.linalg.norm(turned, axis=0)).any():
+                break
+        vectors[:, self.rows] = turned.T
+        return vectors
+
+    @cached_property
+    def lost(self) -> Array:
+        """Ascending rows of nodes with a rotation that no translation shows."""
+        if not len(self.rows):
+            return np.empty(0, np.int64)
+        probe = np.random.default_rng(3).standard_normal((len(self.rows), 4))
+        for _ in range(3):
+            probe = _SOFT * self.factor.solve(probe).reshape(probe.shape)
+        unseen = self.rows[np.abs(probe).max(axis=1) > _UNSEEN]
+        return np.nonzero(np.isin(self.dof[:, 3:], unseen).any(axis=1))[0]
+
+    def _solve(self, right: Array) -> Array:
+        scaled = np.ascontiguousarray(right / self.scale[:, None])
+        return self.factor.solve(scaled).reshape(right.shape) / self.scale[:, None]
+
+
+@dataclass(frozen=True, eq=False)
+class Recovery:
+    """Completed shapes and what is doubtful about them.
+
+    vectors   (k, n_dof) translations as given with the rotations recovered
+    lost      node rows with a rotation that translations do not show (left at zero)
+    error     (k,) expected Σ|ΔU_e| / ΣU_e of the cells' strain energies by the rounding of the file
+    cautions  sentences for the reader, none when all is well
+    """
+
+    vectors: Array
+    lost: Array
+    error: Array
+    cautions: tuple[str, ...]
+
+
+def recover(layout: Layout, moved: Array, progress: Progress = SILENT) -> Array:
+    """(k, n_dof) vectors from translations (k, n_nodes, 3) alone, the rotations being those of least energy."""
+    return _operator(layout, progress).complete(moved)
+
+
+def examine(layout: Layout, moved: Array, progress: Progress = SILENT) -> Recovery:
+    """As :func:`recover`, with what cannot be recovered and what the digits of ``moved`` leave open."""
+    operator = _operator(layout, progress)
+    vectors = operator.complete(moved)
+    random = np.random.default_rng(5)
+    blur = [rounding(part) * random.uniform(-1, 1, part.shape) for part in (moved.real, moved.imag)]
+    disturbed = vectors + operator.complete(blur[0] + 1j * blur[1] if np.iscomplexobj(moved) else blur[0])
+    given = cell_energies(layout, vectors, "stiffness", progress)
+    changed = np.abs(cell_energies(layout, disturbed, "stiffness", progress) - given).sum(axis=1)
+    with np.errstate(invalid="ignore", divide="ignore"):
+        error = np.where(changed > 0, changed / given.sum(axis=1), 0.0)
+    ids = layout.design.mesh.node_ids
+    cautions = []
+    if len(operator.lost):
+        cautions.append(
+            f"rotations of {len(operator.lost)} nodes ({some_ids(ids[operator.lost])}) cannot be recovered from "
+            "translations and are taken as zero: torsion of straight beams and spin of point inertias do not show"
+        )
+    blurred = np.nonzero(error > ENERGY_BOUND)[0]
+    if len(blurred):
+        cautions.append(
+            f"the translations have too few digits for the strain energies of {len(blurred)} of {len(error)} modes "
+            f"(expected error up to {100 * error.max():.2g} % of the total): write the shapes with rotations, or "
+            "with more digits"
+        )
+    return Recovery(vectors, operator.lost, error, tuple(cautions))
+
+
+def rounding(values: Array) -> Array:
+    """Half a unit of the last digit of each of the ``values``, as far as they reveal it.
+
+    Recognised, in metres or converted from mm, cm, in or ft: a fixed number of significant decimal digits, a fixed
+    number of decimals, and single precision; otherwise double precision.
+    """
+    values = np.asarray(values, float)
+    peak = float(np.abs(values).max(initial=0.0))
+    filled = values[values != 0]
+    if not len(filled):
+        return np.zeros_like(values)
+    sample = filled if len(filled) <= 20_000 else np.random.default_rng(0).choice(filled, 20_000, replace=False)
+    for unit in _UNITS:
+        inside = sample / unit
+        power = 10.0 ** np.floor(np.log10(np.abs(inside)))
+        for digits in range(1, 11):
+            if _whole(inside / power * 10.0 ** (digits - 1), digits):
+                size = np.abs(np.where(values == 0, peak, values)) / unit
+                step = 0.5 * unit * 10.0 ** (np.floor(np.log10(size)) - digits + 1)
+                return np.where(values == 0, step.min(), step)
+        for decimals in range(0, 16):
+            digits = int(np.ceil(np.log10(peak / unit))) + decimals
+            if 0 < digits <= 11 and _whole(inside * 10.0**decimals, digits):
+                return np.full_like(values, 0.5 * unit * 10.0**-decimals)
+        with np.errstate(over="ignore"):
+            short = np.abs(inside.astype(np.float32) - inside) <= 4 * np.finfo(float).eps * np.abs(inside)
+        if short.all():
+            return 0.5 * unit * np.spacing(np.abs(values / unit).astype(np.float32)).astype(float)
+    return 0.5 * np.spacing(np.abs(values))
+
+
+def _whole(values: Array, digits: int) -> bool:
+    """All whole numbers, to rounding of numbers of ``digits`` digits."""
+    return bool((np.abs(values - np.rint(values)) <= 1e-15 * 10.0**digits + 4e-15 * np.abs(values)).all())
+
+
+def _operator(layout: Layout, progress: Progress) -> Rotations:
+    system = assemble_layout(layout, progress)
+    return Rotations(system.K, system.dof, system.held, progress)
