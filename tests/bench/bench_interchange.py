@@ -1,8 +1,8 @@
 """Reading a large mode set against a raw read of the same bytes.
 
-``python tests/bench/bench_interchange.py [nodes] [modes]``. Ratios of one run on a warm file cache; goals: all modes at
-most 2.5 times the raw read, one mode of twenty at most 0.6 times. Prints one line a carrier and leaves with 1 when a
-goal is missed.
+``python tests/bench/bench_interchange.py [nodes] [modes]``. Ratios of one run on a warm file cache. Goals: all modes
+at most 2.5 times the raw read, one mode of twenty at most 0.6 times. Prints one line a carrier and leaves with 1 when
+a goal is missed.
 """
 
 from __future__ import annotations

@@ -44,7 +44,7 @@ springs = [
     {name = "strap", nodes = [3, 4], stiffness = [1, 2, 3]},
     {name = "link", nodes = [3], to = {near = [0, 0, 5]}, axis = [0, 0, 2], axial = 4},
 ]
-masses = [{name = "camera", group = "pad", mass = 1200, position = [0, 0, 500], inertia = [1e6, 2e6, 3e6]}]
+masses = [{name = "camera", group = "pad", mass = 1200, position = [0, 0, 500], inertia = [1e-3, 2e-3, 3e-3]}]
 mode_names = {1 = "boom nods"}   # given by hand
 
 [[designs]]
@@ -132,7 +132,7 @@ def test_everything_comes_out_in_si(write, tmp_path):
     (camera,) = physics.masses
     assert camera.mass == pytest.approx(1.2)
     assert camera.position.tolist() == [0, 0, 0.5]
-    assert np.allclose(camera.inertia, np.diag([1e-3, 2e-3, 3e-3]))  # g·mm² to kg·m²
+    assert np.allclose(camera.inertia, np.diag([1e-3, 2e-3, 3e-3]))  # kg·m², whatever the units
     (lens,) = base.points
     assert (lens.direction.tolist(), lens.effect, lens.direction_word) == ([0, -1, 0], "image blur", "sideways")
     assert modified.modes_file == tmp_path / "modes.npz"
@@ -272,9 +272,9 @@ WRONG = {
     ),
     "negative stiffness": (("stiffness = [1, 2, 3]", "stiffness = [1, -2, 3]"), r"stiffness 2: .*found: -2"),
     "axis alone": ((", axial = 4", ""), r"springs 2.*says only one of axis and axial"),
-    "inertia of two": (("inertia = [1e6, 2e6, 3e6]", "inertia = [1e6, 2e6]"), r"inertia: wrong number of values"),
+    "inertia of two": (("inertia = [1e-3, 2e-3, 3e-3]", "inertia = [1e6, 2e6]"), r"inertia: wrong number of values"),
     "impossible inertia": (
-        ("inertia = [1e6, 2e6, 3e6]", "inertia = [[1, 2, 0], [2, 1, 0], [0, 0, 1]]"),
+        ("inertia = [1e-3, 2e-3, 3e-3]", "inertia = [[1, 2, 0], [2, 1, 0], [0, 0, 1]]"),
         r"inertia: is no inertia of a real body",
     ),
     "no mass": (("mass = 1200", "mass = 0"), r"masses 1 \(\"camera\"\), mass: .*greater than 0"),
@@ -339,7 +339,11 @@ def test_no_file_and_folder(tmp_path):
         (("density = 7.85", "density = 0.00000785"), "density of 0.00785 kg/m³"),
         (("thickness = 2}", "thickness = 2000}"), "thickness of 2 m"),
         (("value = 180", "value = 180000"), "amplitude of 0.18 m"),
-        (("mass = 1200", "mass = 1.2e12"), "mass of 1.2e+09 kg"),
+        (("inertia = [1e-3, 2e-3, 3e-3]", "inertia = [1e3, 2e3, 3e3]"), "radius of gyration of 40.8 m"),
+        (
+            ("mass = 1200, position = [0, 0, 500], inertia = [1e-3, 2e-3, 3e-3]", "mass = 1.2e12"),
+            "mass of 1.2e+09 kg",
+        ),
     ],
 )
 def test_implausible_values_are_flagged_not_refused(write, change, words):
@@ -403,3 +407,27 @@ def test_bare_dossier_says_what_it_found_and_reads_once_filled_in(tmp_path, mesh
     design = dossier.plans[0].build(mesh)
     assert design.physics.supports[0].where.rows(mesh).tolist() == [0, 4, 8, 12]
     assert dossier.amplitudes[0].point == "camera lens"
+
+
+def test_bare_dossier_with_modes_reads_as_it_stands(tmp_path, mesh, modes):
+    (tmp_path / "results").mkdir()
+    write_interchange(tmp_path / "part.vtu", mesh)
+    write_interchange(tmp_path / "results" / "modes.npz", mesh, modes)
+    text = bare_dossier(mesh, tmp_path / "part.vtu", tmp_path / "results" / "modes.npz")
+    path = tmp_path / "dossier.toml"
+    path.write_text(text, encoding="utf-8")
+    (plan,) = read_dossier(path).plans
+    assert plan.modes_file == tmp_path / "results" / "modes.npz"
+    assert plan.physics.assignments == ()
+
+
+def test_bare_dossier_of_awkward_names(tmp_path):
+    """Quotes, strokes and line ends in names of files and groups stay inside their strings and comments."""
+    from tests.loaders.samples import make_mesh
+
+    mesh = make_mesh().with_(node_groups={'a"b\\c\n[designs]': [0]}, cell_groups={})
+    text = bare_dossier(mesh, tmp_path / 'p "q".vtu', tmp_path / "m.npz")
+    (tmp_path / 'p "q".vtu').write_text("x")
+    (tmp_path / "m.npz").write_text("x")
+    (tmp_path / "dossier.toml").write_text(text, encoding="utf-8")
+    assert read_dossier(tmp_path / "dossier.toml").plans[0].mesh_file.name == 'p "q".vtu'

@@ -37,6 +37,7 @@ _PLAUSIBLE = {
     "density": (5.0, 23_000.0, "kg/m³"),
     "thickness": (1e-5, 0.2, "m"),
     "mass": (1e-6, 1e5, "kg"),
+    "radius_of_gyration": (1e-4, 20.0, "m"),
     "amplitude": (1e-12, 0.1, "m"),
 }
 
@@ -150,12 +151,15 @@ class _Reader:
 
     def mass(self, item: schema.MassTable, place: str, number: int) -> LumpedMass:
         value = self.plausible("mass", item.mass * self.mass_unit, place)
+        inertia = self.inertia(item.inertia, f"{place}, inertia")
+        if inertia.any():
+            self.plausible("radius_of_gyration", float(np.sqrt(np.trace(inertia) / 3 / value)), place)
         return LumpedMass(
             item.name or item.group or f"mass {number}",
             self.selector(item, place),
             value,
             self.position(item.position),
-            self.inertia(item.inertia, f"{place}, inertia"),
+            inertia,
         )
 
     def inertia(self, given: Any, place: str) -> np.ndarray:
@@ -178,7 +182,7 @@ class _Reader:
                 found=short(given),
                 expected="a symmetric matrix without negative principal moments",
             )
-        return matrix * self.mass_unit * self.length**2
+        return matrix
 
     def point(self, item: schema.PointTable, place: str) -> FunctionalPoint:
         return FunctionalPoint(

@@ -1,6 +1,7 @@
 """The layout of ``dossier.toml``: which tables and keys exist and of what type. Units and references come later.
 
-Every number is in the units that ``[units]`` declares, SI when it says nothing::
+Every number is in the units that ``[units]`` declares, SI when it says nothing; turning is always SI: inertia kg·m²,
+turning springs N·m/rad::
 
     title = "Camera boom"
     condition = "clamped root, camera 1.2 kg"
@@ -11,7 +12,7 @@ Every number is in the units that ``[units]`` declares, SI when it says nothing:
     modulus = "GPa"
     density = "kg/m3"
     mass = "kg"
-    stiffness = "N/mm"          # springs; turning springs are always N·m/rad
+    stiffness = "N/mm"          # springs
 
     [materials.aluminium]
     youngs_modulus = 70

@@ -20,42 +20,54 @@ from viewer.model.mesh import Mesh
 _SHOWN = 20
 
 
-def bare_dossier(mesh: Mesh, mesh_path: str | os.PathLike[str]) -> str:
+def bare_dossier(
+    mesh: Mesh, mesh_path: str | os.PathLike[str], modes_path: str | os.PathLike[str] | None = None
+) -> str:
     """Text of a ``dossier.toml`` to be saved beside the mesh file.
 
-    Found facts stand in comments; the material, thickness and supports are marked TO FILL IN. As printed, with the
-    material's numbers filled in, it reads; nothing physical is invented.
+    Found facts stand in comments; what only the user knows is marked TO FILL IN, and nothing physical is invented.
+    With ``modes_path`` the text reads as it stands, the model is optional; without, once the material is filled in.
     """
     name = Path(mesh_path).name
-    size = np.ptp(mesh.points, axis=0)
-    counts: dict[str, int] = {}
-    for block in mesh.blocks:
-        counts[block.kind] = counts.get(block.kind, 0) + len(block)
-    shells = any(KINDS[kind].dim == 2 for kind in counts)
-    kinds = ", ".join(f"{number} {kind}" for kind, number in counts.items())
-    assign = (
-        '# assign = [{target = "*", material = "material", thickness = }]'
-        if shells
-        else ('assign = [{target = "*", material = "material"}]')
-    )
-    node_group = next(iter([*mesh.node_groups, *mesh.cell_groups]), "")
-    held = f"group = {_quoted(node_group)}" if node_group else _lowest_nodes(mesh)
-    middle = ", ".join(f"{x:.6g}" for x in mesh.points.mean(axis=0))
     lines = [
         f"# Dossier for {_quoted(name)}. Lines marked TO FILL IN need your numbers; the rest may stay.",
-        f"# Found: {mesh.n_nodes} nodes; {kinds}; {size[0]:.4g} × {size[1]:.4g} × {size[2]:.4g} m as read.",
-        *_group_lines("node groups", mesh.node_groups),
-        *_group_lines("cell groups", mesh.cell_groups),
+        *_found_lines(mesh),
         "",
         f"title = {_quoted(Path(name).stem)}",
         'condition = ""                 # words for the pictures: "clamped root, camera 1.2 kg"',
         "",
-        "[units]                        # of every number in this file",
+        "[units]                        # of the numbers in this file",
         'length = "m"',
         'modulus = "GPa"',
         'density = "kg/m3"',
         "",
-        "[materials.material]           # TO FILL IN: remove the # and put your material's values",
+        *_model_lines(mesh, name, "" if modes_path is None else _beside(modes_path, Path(mesh_path).parent)),
+        *_question_lines(mesh),
+    ]
+    return "\n".join(lines) + "\n"
+
+
+def _found_lines(mesh: Mesh) -> list[str]:
+    size = np.ptp(mesh.points, axis=0)
+    kinds = ", ".join(f"{number} {kind}" for kind, number in _counts(mesh).items())
+    return [
+        f"# Found: {mesh.n_nodes} nodes; {kinds}; {size[0]:.4g} × {size[1]:.4g} × {size[2]:.4g} m as read.",
+        *_group_lines("node groups", mesh.node_groups),
+        *_group_lines("cell groups", mesh.cell_groups),
+    ]
+
+
+def _model_lines(mesh: Mesh, name: str, modes: str) -> list[str]:
+    """Material and design. Where modes are given the model is optional: all of it stands in comments."""
+    shells = any(KINDS[kind].dim == 2 for kind in _counts(mesh))
+    optional = "# " if modes else ""
+    unfilled = "# " if modes or shells else ""
+    thickness = ", thickness = " if shells else ""
+    group = next(iter([*mesh.node_groups, *mesh.cell_groups]), "")
+    place = f"group = {_quoted(group)}" if group else _lowest_end(mesh)
+    return [
+        "# For strain energies: a material and what is made of it." if modes else "# The material.",
+        f"{optional}[materials.material]           # TO FILL IN: remove the # and put your material's values",
         "# youngs_modulus = ",
         "# poisson = ",
         "# density = ",
@@ -64,18 +76,19 @@ def bare_dossier(mesh: Mesh, mesh_path: str | os.PathLike[str]) -> str:
         'name = "baseline"',
         f"mesh = {_quoted(name)}",
         'length_unit = "m"              # TO FILL IN: the unit of the mesh file, "mm", "m", "in"',
-        'solve = 6                      # or, for modes that you have: modes = "FILE"',
-        "# TO FILL IN"
-        + (
-            ": the sheet thickness, and one entry per group where it differs"
-            if shells
-            else ": one entry per group where the material differs"
-        ),
-        assign,
+        f"modes = {_quoted(modes)}" if modes else 'solve = 6                      # or: modes = "FILE"',
+        f"# TO FILL IN: {'the sheet thickness, and ' if shells else ''}one entry per group where it differs",
+        f'{unfilled}assign = [{{target = "*", material = "material"{thickness}}}]',
         "# TO FILL IN where it is held; a body without supports is free and has six rigid-body modes first",
-        f'# supports = [{{name = "root", {held}}}]',
-        f'# masses = [{{name = "camera", {held}, mass = 1.2}}]',
+        f'# supports = [{{name = "root", {place}}}]',
+        f'# masses = [{{name = "camera", {place}, mass = 1.2}}]',
         "",
+    ]
+
+
+def _question_lines(mesh: Mesh) -> list[str]:
+    middle = ", ".join(f"{x:.6g}" for x in mesh.points.mean(axis=0))
+    return [
         "# A point whose motion matters, and the direction that hurts:",
         "# [[points]]",
         '# name = "camera lens"',
@@ -90,9 +103,22 @@ def bare_dossier(mesh: Mesh, mesh_path: str | os.PathLike[str]) -> str:
         '# point = "camera lens"',
         "# value = 0.0002",
         '# condition = "belt drive at 12 Hz"',
-        "",
     ]
-    return "\n".join(lines)
+
+
+def _counts(mesh: Mesh) -> dict[str, int]:
+    counts: dict[str, int] = {}
+    for block in mesh.blocks:
+        counts[block.kind] = counts.get(block.kind, 0) + len(block)
+    return counts
+
+
+def _beside(path: str | os.PathLike[str], folder: Path) -> str:
+    """``path`` as seen from ``folder``, with forward strokes."""
+    try:
+        return Path(os.path.relpath(path, folder)).as_posix()
+    except ValueError:  # another drive
+        return Path(path).resolve().as_posix()
 
 
 def save_mode_name(path: str | os.PathLike[str], design: str, mode: int, name: str) -> None:
@@ -130,7 +156,7 @@ def _group_lines(word: str, groups: Mapping[str, Array]) -> list[str]:
     return [f"# Found {word}: {', '.join(shown)}{more}"]
 
 
-def _lowest_nodes(mesh: Mesh) -> str:
+def _lowest_end(mesh: Mesh) -> str:
     """A box around the lowest end of the longest side, as an example of a place."""
     low, high = mesh.points.min(axis=0), mesh.points.max(axis=0)
     axis = int(np.argmax(high - low))
