@@ -8,7 +8,7 @@ import os
 for _name in ("OMP_NUM_THREADS", "OPENBLAS_NUM_THREADS", "MKL_NUM_THREADS"):
     os.environ.setdefault(_name, "1")
 
-import pytest
+import pytest  # noqa: E402
 
 
 @pytest.fixture(autouse=True)

@@ -13,9 +13,10 @@ from viewer.jobs import Progress, atomic_path, in_child
 def test_atomic_write_leaves_nothing_on_failure(tmp_path):
     target = tmp_path / "out.txt"
     target.write_text("old")
-    with pytest.raises(RuntimeError), atomic_path(target) as part:
-        part.write_text("half")
-        raise RuntimeError
+    with pytest.raises(RuntimeError):  # noqa: PT012 (the failure must come from inside the block)
+        with atomic_path(target) as part:
+            part.write_text("half")
+            raise RuntimeError
     assert target.read_text() == "old"
     assert [p.name for p in tmp_path.iterdir()] == ["out.txt"]
 

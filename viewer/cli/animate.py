@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from pathlib import Path
-from typing import Annotated
+from typing import Annotated, Any
 
 import typer
 
@@ -56,7 +56,7 @@ def animate(
             "cannot tell what to draw", file=target, found=f"the ending '{target.suffix}'",
             expected=".png for a strip" if strip else ".gif for a loop or .png for a still",
         )
-    options = {"theme": theme, "width": width, "ghost": not no_ghost, "mesh_edges": mesh_edges}
+    options: dict[str, Any] = {"theme": theme, "width": width, "ghost": not no_ghost, "mesh_edges": mesh_edges}
     with progress_bar() as progress:
         study = opened.study(first, None, progress)
         if against:

@@ -10,10 +10,10 @@ from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
-from viewer.mechanics.patch import RigidPatch
 
 from viewer.cells import measures
 from viewer.errors import RefusedError
+from viewer.mechanics.patch import RigidPatch
 from viewer.mechanics.turning import cell_rotations
 from viewer.model.arrays import Array
 from viewer.model.cycle import cycle_peaks, steadiest_turn
@@ -115,7 +115,8 @@ class CarriedPoint:
 def carried_points(design: Design) -> tuple[CarriedPoint, ...]:
     """Lumped masses, then functional points, with the patches that carry them."""
     found = []
-    for item in (*design.physics.masses, *design.points):
+    items: tuple[LumpedMass | FunctionalPoint, ...] = (*design.physics.masses, *design.points)
+    for item in items:
         rows = item.where.rows(design.mesh, f"'{item.name}'")
         points = design.mesh.points[rows]
         position = points.mean(axis=0) if item.position is None else item.position
@@ -141,7 +142,8 @@ def scale_mode(
     peak = _peak(design, shape, carried)
     if not peak.size > 0:
         raise RefusedError(f"mode {mode} of '{design.name}' does not move at all", do="check the mode set")
-    real_per_shape, turn = None, steadiest_turn(shape)
+    real_per_shape: float | None = None
+    turn = steadiest_turn(shape)
     if amplitude is not None:
         stated = _stated_motion(design, shape, amplitude, carried)
         if abs(stated) < LEAST_MOTION * peak.size:
@@ -165,6 +167,7 @@ def scale_mode(
     else:
         factor, limited = _automatic_factor(design, shape, peak.size)
     real_turned = (peak.motion * turn).real
+    at, motion = peak.at.tolist(), real_turned.tolist()
     return Scale(
         mode=mode,
         factor=factor,
@@ -179,8 +182,8 @@ def scale_mode(
         relative=amplitude is not None and amplitude.relative,
         condition="" if amplitude is None else amplitude.condition,
         turn=turn,
-        largest_at=tuple(float(x) for x in peak.at),
-        largest_motion=tuple(float(x) for x in real_turned),
+        largest_at=(at[0], at[1], at[2]),
+        largest_motion=(motion[0], motion[1], motion[2]),
     )
 
 
@@ -302,7 +305,7 @@ def _automatic_factor(design: Design, shape: Array, peak: float) -> tuple[float,
     if sizes.sum() > 0:
         order = np.argsort(turns)
         reached = np.cumsum(sizes[order]) / sizes.sum()
-        turn = float(turns[order][min(np.searchsorted(reached, 1 - TURN_SHARE), len(order) - 1)])
+        turn = float(turns[order][min(int(np.searchsorted(reached, 1 - TURN_SHARE)), len(order) - 1)])
         if turn * by_peak > DRAWN_TURN:
-            return DRAWN_TURN / turn, "turn"
+            return float(DRAWN_TURN / turn), "turn"
     return by_peak, "peak"

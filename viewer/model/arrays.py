@@ -11,7 +11,7 @@ from numpy.typing import ArrayLike, DTypeLike, NDArray
 Array = NDArray[Any]
 
 
-def frozen(values: ArrayLike, dtype: DTypeLike = None, *, shape: tuple[int | None, ...] | None = None) -> Array:
+def frozen(values: ArrayLike, dtype: DTypeLike | None = None, *, shape: tuple[int | None, ...] | None = None) -> Array:
     """A read-only, contiguous copy of ``values``; ``shape`` (None = any length) is asserted.
 
     An array that is already read-only and owns its data is passed through, so that copies are made once.
@@ -56,7 +56,7 @@ class FrozenMap(Mapping[Any, Any]):
         return f"FrozenMap({self._items!r})"
 
 
-def frozen_map(values: Mapping[Any, Any], dtype: DTypeLike = None) -> FrozenMap:
+def frozen_map(values: Mapping[Any, Any], dtype: DTypeLike | None = None) -> FrozenMap:
     """A read-only copy of a mapping; with ``dtype`` its values are frozen arrays."""
     if dtype is None:
         return FrozenMap(values)

@@ -153,7 +153,7 @@ def _body(study: Study, index: int, scale: Scale, turn: complex, energy: bool) -
             label = ": ".join(part for part in (point.effect or point.name, point.direction_word) if part)
             points.append(PointMark(label, carried.position, point.direction, motion))
     density = None
-    if energy and study.has_strain(index):
+    if energy and study.energies is not None and study.has_strain(index):
         density = study.energies.density(index)
     return Body(
         design.name,

@@ -61,7 +61,7 @@ def write_modes_npz(path: Path, modes: ModeSet) -> Path:
         arrays["damping"] = modes.damping
     words = np.array([modes.normalisation, modes.origin, modes.source])
     with atomic_path(path) as part:
-        np.savez(part, words=words, **arrays)
+        np.savez(part, words=words, **arrays)  # type: ignore[arg-type]
     return path
 
 

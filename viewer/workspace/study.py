@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from functools import cached_property
 
 import numpy as np
 
@@ -31,12 +32,13 @@ class Study:
     no_energies: str = ""
     amplitudes: Mapping[int, StatedAmplitude] = field(default_factory=dict)
     condition: str = ""
+    _scales: dict[tuple[int, bool, float | None], Scale] = field(default_factory=dict, init=False, repr=False)
 
     @property
     def count(self) -> int:
         return self.modes.count
 
-    @property
+    @cached_property
     def carried(self) -> tuple[CarriedPoint, ...]:
         return carried_points(self.design)
 
@@ -68,15 +70,18 @@ class Study:
         return self.design.mode_names.get(index + 1, "")
 
     def scale(self, index: int, *, true_scale: bool = False, peak_percent: float | None = None) -> Scale:
-        """How mode ``index`` (from 0) is drawn."""
-        return scale_mode(
-            self.design,
-            self.modes.shape(index),
-            index + 1,
-            self.amplitudes.get(index + 1),
-            true_scale=true_scale,
-            peak_percent=peak_percent,
-        )
+        """How mode ``index`` (from 0) is drawn; found once."""
+        key = (index, true_scale, peak_percent)
+        if key not in self._scales:
+            self._scales[key] = scale_mode(
+                self.design,
+                self.modes.shape(index),
+                index + 1,
+                self.amplitudes.get(index + 1),
+                true_scale=true_scale,
+                peak_percent=peak_percent,
+            )
+        return self._scales[key]
 
     def turned_shape(self, index: int, turn: complex) -> Array:
         """The shape times a unit complex factor; a real shape stays real (its factor is a sign)."""
