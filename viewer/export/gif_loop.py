@@ -5,11 +5,11 @@ from __future__ import annotations
 import os
 from pathlib import Path
 
-import numpy as np
 from PIL import Image
 
 from viewer.errors import ExportError
 from viewer.export.frames import drawings, source_frames
+from viewer.export.shared_palette import SharedPalette
 from viewer.jobs import SILENT, Progress, atomic_path
 from viewer.model.arrays import Array
 from viewer.scene.picture import Picture
@@ -17,7 +17,6 @@ from viewer.scene.tokens import FRAME_MS, FRAMES
 from viewer.stage import Stage
 
 PALETTE_PHASES = (0.0, 0.125, 0.25, 0.625, 0.75)       # of a cycle: both extremes, both directions, rest
-COLOURS = 256
 
 
 def save_gif(picture: Picture, path: str | os.PathLike[str], progress: Progress = SILENT) -> Path:
@@ -30,29 +29,18 @@ def save_gif(picture: Picture, path: str | os.PathLike[str], progress: Progress 
     with atomic_path(path) as part:
         indexed: dict[int, Image.Image] = {}
         waiting: dict[int, Array] = {}
-        palette: Image.Image | None = None
+        palette: SharedPalette | None = None
         with Stage(picture) as stage:
             for frame, image in drawings(picture, stage.image, tasters, progress):
                 waiting[frame] = image
                 if palette is None and all(taster in waiting for taster in tasters):
-                    palette = common_palette([waiting[taster] for taster in tasters])
+                    palette = SharedPalette([waiting[taster] for taster in tasters])
                 if palette is not None:
-                    indexed |= {number: index(held, palette) for number, held in waiting.items()}
+                    indexed |= {number: palette.index(held) for number, held in waiting.items()}
                     waiting = {}
         progress.tick("writing the loop", FRAMES, FRAMES)
         write_loop([indexed[frame] for frame in source], part)
     return Path(path)
-
-
-def common_palette(images: list[Array]) -> Image.Image:
-    """One palette of 256 colours for all ``images`` (h, w, 3) uint8, by fast octree."""
-    together = Image.fromarray(np.concatenate(images))
-    return together.quantize(COLOURS, method=Image.Quantize.FASTOCTREE, dither=Image.Dither.NONE)
-
-
-def index(image: Array, palette: Image.Image) -> Image.Image:
-    """``image`` in the colours of ``palette``, without dithering."""
-    return Image.fromarray(image).quantize(palette=palette, dither=Image.Dither.NONE)
 
 
 def write_loop(frames: list[Image.Image], path: Path) -> None:
