@@ -149,28 +149,41 @@ def rounding(values: Array) -> Array:
     number of decimals, and single precision; otherwise double precision.
     """
     values = np.asarray(values, float)
-    peak = float(np.abs(values).max(initial=0.0))
     filled = values[values != 0]
     if not len(filled):
         return np.zeros_like(values)
     sample = filled if len(filled) <= 20_000 else np.random.default_rng(0).choice(filled, 20_000, replace=False)
     for unit in _UNITS:
         inside = sample / unit
-        power = 10.0 ** np.floor(np.log10(np.abs(inside)))
-        for digits in range(1, 11):
-            if _whole(inside / power * 10.0 ** (digits - 1), digits):
-                size = np.abs(np.where(values == 0, peak, values)) / unit
-                step = 0.5 * unit * 10.0 ** (np.floor(np.log10(size)) - digits + 1)
-                return np.where(values == 0, step.min(), step)
-        for decimals in range(0, 16):
-            digits = int(np.ceil(np.log10(peak / unit))) + decimals
-            if 0 < digits <= 11 and _whole(inside * 10.0**decimals, digits):
-                return np.full_like(values, 0.5 * unit * 10.0**-decimals)
+        steps = [_significant(values / unit, inside), _decimals(values / unit, inside)]
+        found = [step for step in steps if step is not None]
+        if found:                       # the coarser reading: 0.12 and 1.23 have two decimals, not three digits
+            return unit * max(found, key=lambda step: float(np.log(step).mean()))
         with np.errstate(over="ignore"):
             short = np.abs(inside.astype(np.float32) - inside) <= 4 * np.finfo(float).eps * np.abs(inside)
         if short.all():
             return 0.5 * unit * np.spacing(np.abs(values / unit).astype(np.float32)).astype(float)
     return 0.5 * np.spacing(np.abs(values))
+
+
+def _significant(values: Array, sample: Array) -> Array | None:
+    """Half steps of numbers written with one number of significant digits, None when they were not."""
+    power = 10.0 ** np.floor(np.log10(np.abs(sample)))
+    for digits in range(1, 11):
+        if _whole(sample / power * 10.0 ** (digits - 1), digits):
+            size = np.where(values == 0, np.abs(sample).min(), np.abs(values))
+            return 0.5 * 10.0 ** (np.floor(np.log10(size)) - digits + 1)
+    return None
+
+
+def _decimals(values: Array, sample: Array) -> Array | None:
+    """Half steps of numbers written with one number of decimals, None when they were not."""
+    peak = np.log10(np.abs(sample).max())
+    for decimals in range(16):
+        digits = int(np.ceil(peak)) + decimals
+        if 0 < digits <= 11 and _whole(sample * 10.0**decimals, digits):
+            return np.full_like(values, 0.5 * 10.0**-decimals)
+    return None
 
 
 def _whole(values: Array, digits: int) -> bool:
