@@ -16,6 +16,9 @@ def modes(
     design: Annotated[list[str] | None, typer.Option(help="Only this design; may be repeated.")] = None,
     count: Annotated[int | None, typer.Option(min=1, help="How many modes to solve.")] = None,
     out: Annotated[Path | None, typer.Option(help="Also write the table to this .csv or .json file.")] = None,
+    name: Annotated[
+        list[str] | None, typer.Option(help='Name a mode in the dossier: "DESIGN:NUMBER=words"; may be repeated.')
+    ] = None,
     as_json: Json = False,
     no_cache: NoCache = False,
 ) -> None:
@@ -23,7 +26,10 @@ def modes(
     from viewer.export.rows import mode_rows, short
     from viewer.export.tables import readable, write_table
 
-    opened = workspace(no_cache).open(dossier)
+    owner = workspace(no_cache)
+    for order in name or ():
+        _save_name(dossier, order)
+    opened = owner.open(dossier)
     rows: list[dict[str, object]] = []
     cautions: list[str] = list(opened.warnings)
     with progress_bar() as progress:
@@ -39,3 +45,14 @@ def modes(
     typer.echo(readable(short(rows)))
     for caution in cautions:
         typer.echo(f"caution: {caution}")
+
+
+def _save_name(dossier: Path, order: str) -> None:
+    """Carry out one ``--name``; the dossier keeps its comments and layout."""
+    from viewer.loaders import save_mode_name
+
+    where, equals, words = order.partition("=")
+    design, _, number = where.rpartition(":")
+    if not (equals and design and number.isdigit()):
+        raise typer.BadParameter(f"'{order}' is not DESIGN:NUMBER=words", param_hint="--name")
+    save_mode_name(dossier / "dossier.toml" if dossier.is_dir() else dossier, design, int(number), words.strip())

@@ -1,0 +1,45 @@
+"""Draws every picture in this folder from the sample dossiers: ``python screenshots/make_screenshots.py``."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+from viewer.export import save_gif, save_png, save_strip
+from viewer.scene.compose import pair_picture, single_picture
+from viewer.workspace import OpenDossier, Study, Workspace
+
+HERE = Path(__file__).parent
+SAMPLES = HERE.parent / "sample_meshes"
+
+
+def main() -> None:
+    workspace = Workspace()
+    boom = workspace.open(SAMPLES / "boom")
+    baseline, modified = boom.study("baseline"), boom.study("modified")
+    for theme in ("light", "dark"):
+        energy = single_picture(baseline, 1, theme=theme)
+        write(save_png, energy, f"energy_{theme}.png")
+        write(save_strip, energy, f"phase_strip_{theme}.png")
+        write(save_png, single_picture(baseline, 1, theme=theme, true_scale=True), f"true_scale_{theme}.png")
+        for layout in ("side", "overlay"):
+            pair = pair_picture(baseline, 1, modified, 1, layout=layout, theme=theme, paired_by="paired by number")
+            write(save_png, pair, f"{layout}_{theme}.png")
+        write(save_png, single_picture(baseline, 2, theme=theme, energy=False), f"ghost_{theme}.png")
+    write(save_gif, single_picture(baseline, 1, width=640), "boom_mode_1.gif")
+    fork = workspace.open(SAMPLES / "fork")
+    write(save_png, single_picture(only(fork), 1), "fork_light.png")
+    trough = workspace.open(SAMPLES / "trough")
+    first, second = (trough.study(name) for name in trough.names)
+    write(save_png, pair_picture(first, 1, second, trough.partner(trough.names[0], 1, trough.names[1])), "trough_side.png")
+
+
+def only(opened: OpenDossier) -> Study:
+    return opened.study(opened.names[0])
+
+
+def write(save, picture, name: str) -> None:
+    print(save(picture, HERE / name))
+
+
+if __name__ == "__main__":
+    main()
