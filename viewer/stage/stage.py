@@ -6,7 +6,7 @@ side-by-side picture has a viewport of its own; all viewports share one camera.
 
 from __future__ import annotations
 
-from typing import Any
+from typing import Any, cast
 
 import numpy as np
 import pyvista as pv
@@ -45,7 +45,7 @@ class Stage:
         self._bare = bare
         self._own = plotter is None
         self.plotter = plotter or off_screen(SUPERSAMPLE * picture.width, SUPERSAMPLE * picture.height)
-        self._window: Any = self.plotter.render_window
+        self._window = cast(Any, self.plotter.render_window)
         self._window.SetMultiSamples(0)
         self._window.SetNumberOfLayers(3)
         self._added: list[vtkRenderer] = []
@@ -167,6 +167,7 @@ class Stage:
             self._window.RemoveRenderer(renderer)
         self._added = []
         self.plotter.renderer.RemoveAllViewProps()
+        self.plotter.renderer.SetViewport(0, 0, 1, 1)
 
     def _aim(self, camera: view.Camera) -> None:
         """Point the shared camera; its clipping planes hold both extremes from any side."""
