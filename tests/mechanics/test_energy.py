@@ -139,3 +139,30 @@ def test_modes_of_another_mesh_are_refused():
     still = stretched(mesh).with_(shapes=ArrayShapes(np.zeros((1, mesh.n_nodes, 3))))
     with pytest.raises(ModelError, match="mode 1 moves no mass"):
         energies(design(mesh), still)
+
+
+def test_shell_shapes_without_rotations_keep_their_energies():
+    """A thin plate's modes stripped of their rotations; torsion of nothing is lost here, so no caution."""
+    model = design(plate_mesh("quad4", (8, 5), (1.0, 0.6)), thickness=0.004, supports=(CLAMP,))
+    modes = solve(model, 4)
+    stripped = modes.with_(shapes=ArrayShapes(modes.shapes.moved), origin="imported")
+    whole, found = energies(model, modes), energies(model, stripped)
+    np.testing.assert_allclose(found.strain, whole.strain, rtol=0, atol=1e-3 * whole.strain.max())
+    assert found.trusted.all()
+    assert found.cautions == whole.cautions
+    coarse = np.round(modes.shapes.moved, 2)
+    blurred = energies(model, stripped.with_(shapes=ArrayShapes(coarse)))
+    assert any("too few digits" in text for text in blurred.cautions)
+
+
+def test_single_shell_node_carries_a_body_by_its_own_rotation():
+    mesh = plate_mesh("quad4", (4, 2), (1.0, 0.5))
+    tip = Selector(near=[1.0, 0.25, 0.0])
+    body = LumpedMass("arm", tip, 1.0, [1.4, 0.25, 0.0], 0.1 * np.eye(3))
+    model = design(mesh, thickness=0.01, supports=(CLAMP,), masses=(body,))
+    system = assemble(model)
+    assert system.cautions == ()
+    node = int(tip.rows(mesh)[0])
+    assert system.M[system.dof[node, 4], system.dof[node, 4]] > 0.1 + 0.4**2  # about y: m d² + inertia, and the sheet
+    found = energies(model, solve(model, 3))
+    np.testing.assert_allclose(found.total_strain, found.total_kinetic, rtol=1e-8)

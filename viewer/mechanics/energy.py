@@ -31,6 +31,7 @@ from viewer.mechanics.assembly import Layout, lay_out
 from viewer.mechanics.closure import flexible_share, residuals
 from viewer.mechanics.constraints import Attachment
 from viewer.mechanics.formulations import FORMULATIONS
+from viewer.mechanics.recovery import examine
 from viewer.mechanics.sums import cell_energies, cell_volumes
 from viewer.model.arrays import Array, frozen
 from viewer.model.design import Design
@@ -163,7 +164,7 @@ def energies(
             found=f"{len(modes.node_ids)} nodes", expected=f"{design.mesh.n_nodes} nodes with the same ids",
         )
     layout = lay_out(design, progress, formulations=formulations)
-    vectors = _vectors(layout, modes, picked, progress)
+    vectors, doubts = _vectors(layout, modes, picked, progress)
     omega = 2 * np.pi * modes.freq_hz[picked]
     strain, springs = cell_energies(layout, vectors, "stiffness", progress), _attached(layout.springs, vectors)
     moving, masses = cell_energies(layout, vectors, "mass", progress), _attached(layout.masses, vectors)
@@ -191,7 +192,7 @@ def energies(
         spring_names=tuple(item.name for item in layout.springs),
         mass_names=tuple(item.name for item in layout.masses),
         formulations=tuple(dict.fromkeys(group.formulation.name for group in layout.blocks)),
-        cautions=layout.cautions,
+        cautions=layout.cautions + doubts,
     )
 
 
@@ -248,7 +249,7 @@ def best_formulation(design: Design, modes: ModeSet, progress: Progress = SILENT
 
 def _closure_error(design: Design, modes: ModeSet, names: Mapping[str, str], progress: Progress) -> float:
     layout = lay_out(design, progress, formulations=names)
-    vectors = _vectors(layout, modes, np.arange(modes.count), progress)
+    vectors, _ = _vectors(layout, modes, np.arange(modes.count), progress)
     total = cell_energies(layout, vectors, "stiffness", progress).sum(axis=1)
     total += _attached(layout.springs, vectors).sum(axis=1)
     mass = cell_energies(layout, vectors, "mass", progress).sum(axis=1)
@@ -260,15 +261,17 @@ def _closure_error(design: Design, modes: ModeSet, names: Mapping[str, str], pro
     return float(np.median(np.abs(np.sqrt(total[elastic] / mass[elastic]) / omega[elastic] - 1)))
 
 
-def _vectors(layout: Layout, modes: ModeSet, picked: Array, progress: Progress) -> Array:
-    """(k, n_dof) shapes as vectors; shells whose shapes come without rotations have them recovered."""
+def _vectors(layout: Layout, modes: ModeSet, picked: Array, progress: Progress) -> tuple[Array, tuple[str, ...]]:
+    """(k, n_dof) shapes as vectors and cautions; shells whose shapes come without rotations have them recovered."""
     moved = np.stack([modes.shape(int(i)) for i in picked])
+    if not layout.has_rotations:
+        return layout.gather(moved), ()
     turned = [modes.rotations(int(i)) for i in picked]
-    if not layout.has_rotations or all(t is not None for t in turned):
-        return layout.gather(moved, np.stack(turned) if layout.has_rotations else None)  # type: ignore[arg-type]
-    from viewer.mechanics.recovery import recover
-
-    return recover(layout, moved, progress)
+    given = [values for values in turned if values is not None]
+    if len(given) == len(turned):
+        return layout.gather(moved, np.stack(given)), ()
+    recovered = examine(layout, moved, progress)
+    return recovered.vectors, recovered.cautions
 
 
 def _attached(items: tuple[Attachment, ...], vectors: Array) -> Array:
