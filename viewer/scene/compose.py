@@ -15,6 +15,7 @@ from viewer.scene.figures import digits
 from viewer.scene.note_layout import scale_note
 from viewer.scene.palette import energy_top
 from viewer.scene.picture import Body, Magnified, MassMark, Picture, PointMark, SupportMark
+from viewer.scene.surface import drawn_areas
 from viewer.workspace import Study
 
 # Height ÷ width, so that 960 wide gives multiples of 16 (video needs them).
@@ -50,7 +51,7 @@ def single_picture(
         bodies=(body,),
         note=note,
         magnification=scale.magnification,
-        energy_top=_top([study], [body]),
+        energy_top=_top([body]),
         energy_caution=_caution([study], [index], [body]),
         magnified=_magnified(scale) if true_scale else None,
         width=width,
@@ -110,7 +111,7 @@ def pair_picture(
         note=note,
         layout=layout,
         magnification=scales[0].magnification,
-        energy_top=_top(studies, bodies),
+        energy_top=_top(bodies),
         energy_words="strain energy density ÷ own mean",
         energy_caution=_caution(studies, indices, bodies),
         width=width,
@@ -168,13 +169,9 @@ def _body(study: Study, index: int, scale: Scale, turn: complex, energy: bool) -
     )
 
 
-def _top(studies: Sequence[Study], bodies: Sequence[Body]) -> float | None:
-    coloured = [
-        (body.density, study.energies.volumes)
-        for study, body in zip(studies, bodies, strict=True)
-        if body.density is not None and study.energies is not None
-    ]
-    return energy_top([d for d, _ in coloured], [v for _, v in coloured]) if coloured else None
+def _top(bodies: Sequence[Body]) -> float | None:
+    coloured = [(body.density, drawn_areas(body.mesh)) for body in bodies if body.density is not None]
+    return energy_top([d for d, _ in coloured], [a for _, a in coloured]) if coloured else None
 
 
 def _caution(studies: Sequence[Study], indices: Sequence[int], bodies: Sequence[Body]) -> str:

@@ -105,9 +105,15 @@ class Surface:
             mean = np.where(count > 0, inner / np.maximum(count, 1), mean)
         return mean
 
-    def cell_areas(self, n_cells: int) -> Array:
-        """(n_cells,) drawn area of each cell, m²; zero for those inside."""
-        return np.bincount(self.cells, self.areas, minlength=n_cells)
+
+def drawn_areas(mesh: Mesh) -> Array:
+    """(n_cells,) area in m² that is drawn of each cell, zero inside solids; in a mesh of lines alone, m of length."""
+    found = skin([(block.kind, block.nodes) for block in mesh.blocks])
+    if len(found.faces) == 0:
+        a, b = mesh.points[found.edges].transpose(1, 0, 2)
+        return np.bincount(found.edge_cell, np.linalg.norm(b - a, axis=1), minlength=mesh.n_cells)
+    areas = 0.5 * np.linalg.norm(cross_of(mesh.points, found.faces), axis=1)
+    return np.bincount(found.cell, areas, minlength=mesh.n_cells)
 
 
 def surface_of(mesh: Mesh) -> Surface:
