@@ -1,6 +1,7 @@
 """A 40-frame loop of 180 000 triangles at 960 × 720, against a plain pyvista script that does the same job.
 
-Run: ``python -m tests.bench.bench_loop``. Prints both times and their ratio, measured in one run by turns.
+Run: ``python -m tests.bench.bench_loop``. Prints both times and their ratio, measured in one run by turns; processor
+time (all threads) beside elapsed time, since on a busy machine only the former compares.
 The plain script warps the mesh, adds it again and writes each frame. It is given its best case: one rendering a
 frame (``render=False``, no scalar bar, which would render twice more), no contour, ghost or note.
 """
@@ -49,24 +50,24 @@ def ours(scene: Picture, path: Path) -> None:
 
 
 def main(rounds: int = 1) -> int:
-    """Print times in seconds and the ratio of medians; exit code 1 above the target."""
+    """Print times in seconds and the ratios of medians; exit code 1 when processor time is above the target."""
     scene = picture(body(channel(along=900, across=44, down=28)), width=960, height=720)
     triangles = 2 * scene.bodies[0].mesh.n_cells
-    taken: dict[str, list[float]] = {"plain": [], "ours": []}
+    taken: dict[str, list[tuple[float, float]]] = {"plain": [], "ours": []}
     with tempfile.TemporaryDirectory() as folder:
         for _ in range(rounds):
             for name, job in (("plain", plain), ("ours", ours)):
-                start = time.perf_counter()
+                start, used = time.perf_counter(), time.process_time()
                 job(scene, Path(folder) / f"{name}.gif")
-                taken[name].append(time.perf_counter() - start)
+                taken[name].append((time.perf_counter() - start, time.process_time() - used))
         size = (Path(folder) / "ours.gif").stat().st_size / 1e6
-    middle = {name: float(np.median(times)) for name, times in taken.items()}
-    ratio = middle["ours"] / middle["plain"]
-    sys.stdout.write(
-        f"{triangles} triangles, {FRAMES} frames: plain {middle['plain']:.1f} s, ours {middle['ours']:.1f} s, "
-        f"ratio {ratio:.2f} (target {TARGET}), file {size:.1f} MB\n"
-    )
-    return int(ratio > TARGET)
+    sys.stdout.write(f"{triangles} triangles, {FRAMES} frames, file {size:.1f} MB, target {TARGET}\n")
+    ratios = []
+    for what, column in (("elapsed", 0), ("processor", 1)):
+        theirs, mine = (float(np.median([pair[column] for pair in taken[name]])) for name in ("plain", "ours"))
+        ratios.append(mine / theirs)
+        sys.stdout.write(f"{what:>9}: plain {theirs:.1f} s, ours {mine:.1f} s, ratio {ratios[-1]:.2f}\n")
+    return int(ratios[1] > TARGET)
 
 
 if __name__ == "__main__":
