@@ -214,6 +214,16 @@ BAD_VTU = {
         r"needs three components",
     ),
     "mode missing": ("mode_001", "mode_002", r"a mode shape is missing.*expected: array 'mode_001'"),
+    "modes from zero": (
+        "mode_001",
+        "mode_000",
+        r"a mode shape is missing.*expected: array 'mode_001'; modes count from 001",
+    ),
+    "mode number beyond reason": (
+        "mode_001",
+        "mode_999999999",
+        r"a mode shape is missing.*expected: array 'mode_001'",
+    ),
     "imaginary part missing": ("mode_001", "mode_001_re", r"do not belong together"),
     "rotations alone": ("mode_001", "mode_001_rot", r"do not belong together"),
     "no frequencies": ("freq_hz", "hertz", r"frequencies of the modes are missing"),

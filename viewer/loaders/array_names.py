@@ -10,7 +10,7 @@ import numpy as np
 from viewer.model.arrays import Array
 
 GROUP = "group_"
-_MODE = re.compile(r"mode_(\d{3,})(_rot)?(_re|_im)?")
+_MODE = re.compile(r"mode_(\d{3}|[1-9]\d{3,8})(_rot)?(_re|_im)?")
 
 
 def group_array(name: str) -> str:

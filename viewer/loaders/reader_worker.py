@@ -198,7 +198,7 @@ def _cell_groups(mesh: Any) -> Iterator[tuple[str, np.ndarray]]:
                 if rows is not None and len(rows):
                     add(name, number, np.asarray(rows, np.int64))
     pairs = {k: v for k, v in mesh.field_data.items() if isinstance(v, np.ndarray) and v.shape == (2,)}
-    names = {(int(v[0]), int(v[1])): k for k, v in pairs.items()}   # other field data may be lists of words
+    names = {(int(v[0]), int(v[1])): k for k, v in pairs.items()}  # other field data may be lists of words
     families = getattr(mesh, "cell_tags", {})
     for number, block in enumerate(mesh.cells):
         for key, word in (("gmsh:physical", "physical"), ("medit:ref", "reference"), ("cell_tags", "")):

@@ -215,7 +215,7 @@ def _mode_arrays(
             )
         return vectors, []
     parts = ("_re", "_im") if (False, "_re") in found or (False, "_im") in found else ("",)
-    count = max((max(numbers) for numbers in found.values()), default=-1) + 1
+    count = max(len(numbers) for numbers in found.values())
     turned = any(key[0] for key in found)
     if set(found) != {(t, p) for t in ((False, True) if turned else (False,)) for p in parts}:
         names = ", ".join(sorted(a.name for numbers in found.values() for a in numbers.values()))[:200]
@@ -226,10 +226,13 @@ def _mode_arrays(
             expected="for every mode mode_NNN, or mode_NNN_re and mode_NNN_im; _rot for all modes or none",
         )
     for key, numbers in found.items():
-        if len(numbers) != count:
-            missing = min(set(range(count)) - set(numbers))
+        missing = next((i for i in range(count) if i not in numbers), None)
+        if missing is not None:
             raise file.error(
-                "a mode shape is missing", place="PointData", expected=f"array '{mode_array(missing, *key)}'"
+                "a mode shape is missing",
+                place="PointData",
+                found=", ".join(numbers[i].name for i in sorted(numbers))[:200],
+                expected=f"array '{mode_array(missing, *key)}'; modes count from 001",
             )
 
     def pick(turn: bool) -> list[list[DataArray]]:
