@@ -7,6 +7,7 @@ opened on a phone. Light or dark follows the reader's setting; who asked for red
 from __future__ import annotations
 
 import os
+import unicodedata
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from html import escape
@@ -31,15 +32,22 @@ DEFERENCE = (
 
 @dataclass(frozen=True)
 class PageLoop:
-    """One mode, or one pair of modes. ``gif``, ``still`` and ``strip`` are files relative to the page's folder, empty
-    where there is none; ``caption`` is one or two sentences; ``alt`` says in words what the loop shows."""
+    """One mode, or one pair of modes. ``gif``, ``still``, ``strip``, ``overlay`` and ``true_scale`` are files relative
+    to the page's folder, empty where there is none; ``caption`` is one or two sentences; ``alt`` says in words what
+    the loop shows."""
 
     title: str
     gif: str = ""
     still: str = ""
     strip: str = ""
+    overlay: str = ""
+    true_scale: str = ""
     caption: str = ""
     alt: str = ""
+
+    @property
+    def files(self) -> tuple[str, ...]:
+        return tuple(f for f in (self.gif, self.still, self.strip, self.overlay, self.true_scale) if f)
 
 
 @dataclass(frozen=True)
@@ -147,7 +155,12 @@ def _loop(loop: PageLoop) -> str:
     parts.append(f"<figcaption><strong>{_text(loop.title)}</strong>")
     if loop.caption:
         parts.append(f"<p>{_text(loop.caption)}</p>")
-    files = [("still picture", loop.still), ("phase strip for print", loop.strip)]
+    files = [
+        ("still picture", loop.still),
+        ("phase strip for print", loop.strip),
+        ("overlay", loop.overlay),
+        ("at true scale", loop.true_scale),
+    ]
     links = [f'<a href="{_link(path)}">{words}</a>' for words, path in files if path and path != shown]
     if links:
         parts.append(f'<p class="files">{" · ".join(links)}</p>')
@@ -194,7 +207,9 @@ def _cautions(cautions: Iterable[str]) -> str:
 
 def _text(words: str) -> str:
     """Escaped for text and for double-quoted attributes; control characters dropped."""
-    return escape("".join(c for c in words if c.isprintable() or c in "\n\t"), quote=True)
+    # by category: str.isprintable would also drop the no-break spaces between figures and units
+    kept = (c for c in words if c in "\n\t" or not unicodedata.category(c).startswith("C"))
+    return escape("".join(kept), quote=True)
 
 
 def _link(path: str) -> str:
@@ -203,7 +218,7 @@ def _link(path: str) -> str:
 
 def _check_links(folder: Path, sections: Sequence[PageSection]) -> None:
     for section in sections:
-        files = [(loop.title, f) for loop in section.loops for f in (loop.gif, loop.still, loop.strip) if f]
+        files = [(loop.title, f) for loop in section.loops for f in loop.files]
         files += [(table.title, f) for table in section.tables for f in (table.csv, table.json) if f]
         for owner, path in files:
             pure = PurePosixPath(path)

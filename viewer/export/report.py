@@ -139,14 +139,16 @@ def _explain_mode(desk: _Desk, study: Study, index: int, row: Row) -> PageLoop:
     save_gif(picture, desk.folder / f"{stem}.gif", progress)
     save_png(picture, desk.folder / f"{stem}.png", progress=progress)
     save_strip(picture, desk.folder / f"{stem}_phases.png", progress)
-    if number in study.amplitudes:
+    true_scale = f"{stem}_true_scale.png" if number in study.amplitudes else ""
+    if true_scale:
         true = single_picture(study, number, true_scale=True, **desk.look)
-        save_png(true, desk.folder / f"{stem}_true_scale.png", progress=progress)
+        save_png(true, desk.folder / true_scale, progress=progress)
     return PageLoop(
         title=picture.note.title,
         gif=f"{stem}.gif",
         still=f"{stem}.png",
         strip=f"{stem}_phases.png",
+        true_scale=true_scale,
         caption=mode_caption(row),
         alt=f"{study.design.name}, {picture.note.title}, {picture.note.frequency}: {', '.join(picture.note.drawing)}",
     )
@@ -205,7 +207,7 @@ def _compare_pair(desk: _Desk, pair: _Pair, row: Row) -> PageLoop:
         title=side.note.title,
         gif=f"{stem}_side.gif",
         still=f"{stem}_side.png",
-        strip=f"{stem}_overlay.png",
+        overlay=f"{stem}_overlay.png",
         caption=pair_caption(row),
         alt=f"{one} beside {two}, {side.note.title}: {', '.join(side.note.drawing)}",
     )

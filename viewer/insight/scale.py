@@ -23,6 +23,7 @@ from viewer.model.dossier import StatedAmplitude
 DRAWN_PEAK = 0.08              # drawn peak ÷ diagonal of the body (DESIGN §7 rule 5)
 DRAWN_TURN = np.radians(12.0)  # no region turns more than this as drawn (same rule)
 TURN_SHARE = 0.005             # share of the body that may turn further: a single distorted cell is no region
+_SMALL_GROUP = 0.05            # share of the nodes up to which a group's name says enough about where
 LEAST_MOTION = 0.05            # a stated point must move at least this share of the peak (DESIGN §6)
 
 
@@ -271,9 +272,11 @@ def _place_words(design: Design, row: int) -> str:
         nodes = mesh.nodes_of_cells(cells)
         if row in nodes:
             holders[name] = nodes
-    if holders:
-        words = f"{min(holders, key=lambda name: len(holders[name]))}, {words}"
-    return words
+    if not holders:
+        return words
+    name = min(holders, key=lambda name: len(holders[name]))
+    # A small group says where by itself; in a large one the node is needed too.
+    return name if len(holders[name]) <= _SMALL_GROUP * mesh.n_nodes else f"{name}, {words}"
 
 
 def _stated_motion(
