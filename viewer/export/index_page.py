@@ -32,9 +32,9 @@ DEFERENCE = (
 
 @dataclass(frozen=True)
 class PageLoop:
-    """One mode, or one pair of modes. ``gif``, ``still``, ``strip``, ``overlay`` and ``true_scale`` are files relative
-    to the page's folder, empty where there is none; ``caption`` is one or two sentences; ``alt`` says in words what
-    the loop shows."""
+    """One mode, or one pair of modes. ``gif``, ``still``, ``strip``, ``overlay`` and ``true_scale`` are files
+    relative to the page's folder, empty where there is none; ``caption`` is one or two sentences; ``alt`` says in
+    words what the loop shows."""
 
     title: str
     gif: str = ""
