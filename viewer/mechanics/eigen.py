@@ -20,7 +20,7 @@ from viewer.jobs import SILENT, Progress
 from viewer.mechanics.assembly import System, assemble
 from viewer.mechanics.factor import Factor, SuperLU, factorise
 from viewer.mechanics.patch import rigid_fields
-from viewer.mechanics.settle import settle_modes
+from viewer.mechanics.settle import rounding_of, settle_modes
 from viewer.model.arrays import Array
 from viewer.model.design import Design
 from viewer.model.modes import ArrayShapes, ModeSet
@@ -28,7 +28,8 @@ from viewer.model.modes import ArrayShapes, ModeSet
 RESIDUAL_BOUND = 1e-8   # largest accepted residual share of a computed mode, see ``_residual_shares``
 _DENSE = 300            # free directions up to which the dense solver is used
 _COUNT_LIMIT = 30_000   # free directions up to which SuperLU factorises once more for the count
-_SHIFT = 0.02           # of the estimate of the first elastic eigenvalue
+_SHIFT = 0.1            # of the estimate of the first elastic eigenvalue
+_CLEAR = 100.0          # times the rounding of the lowest Rayleigh quotient: the shift stays above that
 
 
 def solve(design: Design, count: int, progress: Progress = SILENT, *, solver: str = "") -> ModeSet:
@@ -81,7 +82,8 @@ class _Problem:
     solver: str
 
     def __post_init__(self) -> None:
-        self.shift = -_SHIFT * _elastic_scale(self.K, self.M, self.fields)
+        size, self.fields = _shift_size(self.K, self.M, self.fields)
+        self.shift = -size
         self.factor: Factor | None = None
 
     def lowest(self, count: int, progress: Progress) -> tuple[Array, Array]:
@@ -103,7 +105,7 @@ class _Problem:
     def _lanczos(self, asked: int, progress: Progress) -> tuple[Array, Array]:
         size = self.K.shape[0]
         if self.factor is None:
-            self.factor = factorise(_shifted(self.K, self.M, self.shift), definite=True, solver=self.solver)
+            self.factor = self._settle_shift(progress)
         factor = self.factor
 
         def invert(right: Array) -> Array:
@@ -122,6 +124,19 @@ class _Problem:
             ) from error
         order = np.argsort(values, kind="stable")
         return values[order], vectors[:, order]
+
+    def _settle_shift(self, progress: Progress) -> Factor:
+        """The factorisation at a shift of the right order. In thin sheets smooth fields are full of membrane and
+        shear strain and their Ritz values far too high; steps of block inverse iteration bring both down."""
+        for left in range(5, -1, -1):
+            progress.tick("factorising")
+            factor = factorise(_shifted(self.K, self.M, self.shift), definite=True, solver=self.solver)
+            smoother = factor.solve(self.M @ self.fields).reshape(self.fields.shape)
+            size, self.fields = _shift_size(self.K, self.M, smoother)
+            if size > 0.1 * abs(self.shift) or not left:
+                break
+            self.shift = -size
+        return factor
 
     def _dense(self, asked: int, progress: Progress) -> tuple[Array, Array]:
         """Eigenvalues θ = 1/(λ − σ) of L⁻¹ M L⁻ᵀ with L Lᵀ = K − σM; θ = 0 stands for massless directions."""
@@ -204,23 +219,26 @@ def _symmetric(matrix: Array) -> Array:
     return 0.5 * (matrix + matrix.T)
 
 
-def _elastic_scale(stiffness: sp.csr_array, mass: sp.csr_array, fields: Array) -> float:
-    """Estimate, by Ritz's method over smooth fields, of the first eigenvalue above the rigid ones.
+def _shift_size(stiffness: sp.csr_array, mass: sp.csr_array, fields: Array) -> tuple[float, Array]:
+    """Size of a good shift, by Ritz's method over ``fields``, and the Ritz vectors.
 
-    Only its order of magnitude matters: a shift far above the wanted eigenvalues slows Lanczos down, one far
-    below drowns in rounding. Rayleigh quotients below 1e-9 of the largest are taken as rigid.
+    ``_SHIFT`` of the first eigenvalue above the rigid ones, as far as that stands clear of rounding. Only the order
+    of magnitude matters: a shift far above the wanted eigenvalues slows Lanczos down, one far below drowns in
+    rounding. Rayleigh quotients within their own rounding are taken as rigid.
     """
     norms = np.sqrt(np.einsum("nf,nf->f", fields, mass @ fields))
     fields = fields[:, norms > 1e-12 * norms.max(initial=0.0)] / norms[norms > 1e-12 * norms.max(initial=0.0)]
-    floor = float(stiffness.diagonal().sum() / mass.diagonal().sum())
+    floor = 1e-6 * float(stiffness.diagonal().sum() / mass.diagonal().sum())
     if fields.shape[1] == 0:
-        return 1e-6 * floor
+        return floor, fields
     gram, axes = np.linalg.eigh(_symmetric(fields.T @ (mass @ fields)))
     kept = gram > 1e-8 * gram[-1]
     basis = fields @ (axes[:, kept] / np.sqrt(gram[kept]))
-    ritz = np.linalg.eigvalsh(_symmetric(basis.T @ (stiffness @ basis)))
-    elastic = ritz[ritz > 1e-9 * ritz[-1]]
-    return float(elastic[0]) if len(elastic) and elastic[0] > 0 else 1e-6 * floor
+    ritz, turn = np.linalg.eigh(_symmetric(basis.T @ (stiffness @ basis)))
+    basis = basis @ turn
+    noise = rounding_of(stiffness, basis)
+    elastic = ritz[ritz > noise]
+    return max(_SHIFT * float(elastic[0]) if len(elastic) else floor, _CLEAR * float(noise[0])), basis
 
 
 def _rigid_motions(system: System) -> Array:

@@ -26,15 +26,19 @@ def settle_modes(
     repeated frequencies gets the basis that :func:`_aligned` fixes; signs make the largest component positive.
     """
     values, vectors = _ritz(vectors, stiffness, mass)
-    size = np.abs(vectors)
-    noise = _ROUNDING * np.einsum("nm,nm->m", size, abs(stiffness) @ size)
-    values = np.where(values <= noise, 0.0, values)
+    values = np.where(values <= rounding_of(stiffness, vectors), 0.0, values)
     out = np.empty_like(vectors)
     for members in clusters(np.sqrt(values)):
         block = vectors[:, members]
         out[:, members] = _aligned(block, mass, rigid) if block.shape[1] > 1 else block
     out = out[:, :wanted]
     return values[:wanted], out * _signs(out)
+
+
+def rounding_of(stiffness: Any, vectors: Array) -> Array:
+    """(m,) bounds on the rounding of φᵀKφ, 200 ε |φ|ᵀ|K||φ|, of the columns of ``vectors``."""
+    size = np.abs(vectors)
+    return _ROUNDING * np.einsum("nm,nm->m", size, abs(stiffness) @ size)
 
 
 def clusters(frequencies: Array, gap: float = REPEATED) -> list[slice]:
