@@ -33,12 +33,12 @@ def flexible_share(layout: Layout, vectors: Array) -> Array:
     """(k,) share of the mean square translation of the nodes that is beyond their best rigid motion."""
     nodes = np.nonzero(layout.dof[:, 0] >= 0)[0]
     fields = rigid_fields(layout.points[nodes], layout.points[nodes].mean(axis=0)).reshape(-1, 6)
-    fields /= np.maximum(np.linalg.norm(fields, axis=0), 1e-300)
-    basis, strength, _ = np.linalg.svd(fields, full_matrices=False)
-    basis = basis[:, strength > 1e-9 * strength[0]]
+    strength, axes = np.linalg.eigh(fields.T @ fields / np.maximum((fields**2).sum(), 1e-300))
+    seen = strength > 1e-12 * strength[-1]
+    basis, _ = np.linalg.qr(fields @ axes[:, seen])
     moved = vectors[:, layout.dof[nodes, :3].ravel()]
-    rest = moved - (moved @ basis) @ basis.T
-    return np.sum(np.abs(rest) ** 2, axis=1) / np.maximum(np.sum(np.abs(moved) ** 2, axis=1), 1e-300)
+    whole = np.maximum(np.sum(np.abs(moved) ** 2, axis=1), 1e-300)
+    return np.maximum(1 - np.sum(np.abs(moved @ basis) ** 2, axis=1) / whole, 0.0)
 
 
 def residuals(layout: Layout, vectors: Array, omega: Array, progress: Progress = SILENT) -> tuple[Array, Array]:
