@@ -108,9 +108,9 @@ def test_wrong_suffix(tmp_path, mesh, modes, real, claimed):
 
 
 def test_unknown_suffix(tmp_path):
-    (tmp_path / "a.docx").write_text("x")
-    with pytest.raises(LoadError, match=r"unknown format; found: \.docx; expected: one of: .*\.vtu"):
-        read_mesh(tmp_path / "a.docx")
+    (tmp_path / "a.qqq").write_text("x")
+    with pytest.raises(LoadError, match=r"unknown format; found: \.qqq; expected: one of: .*\.vtu"):
+        read_mesh(tmp_path / "a.qqq")
 
 
 def test_unexpected_failures_become_ours(tmp_path, monkeypatch, mesh):
@@ -189,6 +189,11 @@ BAD_VTU = {
         "0 1 0 1 1 0</DataArray></Points>",
         "0 1 0 1 nan 0</DataArray></Points>",
         r"point 4: a coordinate is not finite",
+    ),
+    "beyond reason": (
+        "0 1 0 1 1 0</DataArray></Points>",
+        "0 1 0 1 1e300 0</DataArray></Points>",
+        r"point 4: a coordinate is beyond reason",
     ),
     "infinite shape": ("1 1 1</DataArray><", "1 1 inf</DataArray><", r"mode 1, row 4.*not finite"),
     "negative frequency": (">5</DataArray>", ">-5</DataArray>", r"freq_hz 1: a frequency is negative"),

@@ -244,7 +244,7 @@ def test_other_formats_that_meshio_knows(tmp_path, monkeypatch, suffix):
     assert mesh.n_cells == 1
 
 
-# Order of mid-edge nodes by the Gmsh reference manual, "Node ordering": (element type, edges in order of their nodes)
+# Order of mid-edge nodes by the published description of the MSH file format, "Node ordering": (type, edges in order)
 MSH_EDGES = {
     "tri6": (9, "01 12 20"),
     "quad8": (16, "01 12 23 30"),

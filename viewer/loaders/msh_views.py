@@ -1,5 +1,5 @@
 """``$NodeData`` sections of ``.msh`` files, read here because meshio fails on partial ones and keeps only the last
-of several with the same name. Layout: the format's published description (Gmsh reference manual, "MSH file format").
+of several with the same name. Layout: the published description of the MSH file format.
 """
 
 from __future__ import annotations

@@ -21,6 +21,8 @@ from viewer.model.modes import ArrayShapes, ModeSet
 
 # A body longer or shorter than this is flagged: most often a unit of length was mixed up. Common practice, no source.
 _PLAUSIBLE_DIAGONAL = (1e-3, 50.0)
+# Finite, but its powers would not be.
+_LARGEST_COORDINATE = 1e50
 # Shapes up to this size are read at once, so that errors show early and the file may be replaced afterwards.
 _READ_AT_ONCE = 32_000_000
 
@@ -76,6 +78,9 @@ def finish_mesh(raw: RawMesh, path: str | os.PathLike[str], length_unit: float) 
     if not finite.all():
         row = int(np.argmin(finite))
         raise LoadError("a coordinate is not finite", file=path, place=f"point {row + 1}", found=str(points[row]))
+    if np.abs(points).max() > _LARGEST_COORDINATE:
+        row = int(np.argmax(np.abs(points).max(axis=1)))
+        raise LoadError("a coordinate is beyond reason", file=path, place=f"point {row + 1}", found=str(points[row]))
     notes, warnings = list(raw.notes), []
     blocks, flipped = _checked_blocks(raw.blocks, points, path)
     node_ids = _ids(raw.node_ids, len(points), "node", path, notes)

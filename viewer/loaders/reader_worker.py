@@ -120,6 +120,8 @@ def read_by_vtk(path: Path) -> Arrays:
     reader.SetFileName(str(path))
     reader.Update()
     words = said.GetOutput()
+    if isinstance(words, bytes):  # what was said held letters from the damaged file
+        words = words.decode("utf-8", "replace")
     if errors or "ERR|" in words or reader.GetErrorCode():
         text = re.sub(r"\s+", " ", words.split("): ", 1)[-1])[:160] or f"error code {reader.GetErrorCode()}"
         raise LoadError("VTK's reader reports an error", found=text, do="the file may be cut short: write it again")
