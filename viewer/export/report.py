@@ -56,6 +56,7 @@ def write_review(
 
     count  modes a design; None: as the dossier says. Raises what reading, solving and drawing raise.
     """
+    _check_place(Path(folder))
     studies = [opened.study(name, count, progress) for name in opened.names]
     pairs = _pairs(opened, studies)
     steps = _Steps(progress, sum(s.count for s in studies) + len(pairs))
@@ -244,6 +245,16 @@ def _slugs(names: tuple[str, ...]) -> dict[str, str]:
         slug = re.sub(r"[^A-Za-z0-9]+", "-", name).strip("-").lower() or f"design-{number}"
         found[name] = f"{slug}-{number}" if slug in found.values() else slug
     return found
+
+
+def _check_place(folder: Path) -> None:
+    """Refuse a folder that cannot be filled before the work, not after it. Raises ``ExportError``."""
+    there = next(path for path in (folder, *folder.absolute().parents) if path.exists())
+    if not there.is_dir() or not os.access(there, os.W_OK | os.X_OK):
+        why = "may not be written to" if there.is_dir() else "is not a folder"
+        raise ExportError(
+            "the review cannot be written there", file=folder, found=f"'{there}' {why}", do="choose a writable folder"
+        )
 
 
 @contextmanager
