@@ -111,7 +111,8 @@ def _mean_plane(xyz: Array) -> tuple[Array, Array]:
 
 
 def _reject_flat(kind: str, xyz: Array, xy: Array) -> None:
-    area = (shell_quad if kind == "quad4" else shell_tri).determinants(xy)
+    with np.errstate(invalid="ignore"):
+        area = (shell_quad if kind == "quad4" else shell_tri).determinants(xy)
     bad = np.nonzero(~(area > 0).all(axis=1))[0]
     if len(bad):
         x, y, z = xyz[bad[0]].mean(axis=0)
