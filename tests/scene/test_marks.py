@@ -181,6 +181,16 @@ def test_the_arrow_lies_along_the_direction_and_stays_on_top(direction):
     assert piece.at(0.0) - piece.points == pytest.approx(np.tile([0.01, 0, 0], (len(away), 1)))   # it does not turn
 
 
+def test_an_arrow_seen_end_on_is_a_dot_in_the_ring():
+    mesh = box_mesh("hex8", (4, 2, 2), (0.3, 0.1, 0.1))
+    body = plain(mesh, points=(PointMark("focus", np.ones(3), EYE, np.zeros(6)),))
+    (piece,) = mark_geometry(body, mesh.diagonal, 1.0, EYE)
+    away = piece.points - np.ones(3)
+    across = np.linalg.norm(away - np.outer(away @ EYE, EYE), axis=1)
+    assert across.max() < 1.2 * RING * mesh.diagonal                        # nothing beyond the ring
+    assert across[48 * 8 :].max() == pytest.approx(0.45 * RING * mesh.diagonal)
+
+
 def test_sizes_are_shared_and_scale_with_the_body():
     picture = known()
     pieces = mark_pieces(picture)

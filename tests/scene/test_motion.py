@@ -3,7 +3,8 @@
 import numpy as np
 import pytest
 
-from viewer.scene.motion import displacement, is_standing, peak, positions, swing
+from viewer.model.cycle import cycle_peaks
+from viewer.scene.motion import displacement, is_standing, positions, swing
 
 PHASES = np.linspace(0, 2 * np.pi, 3601)
 
@@ -32,7 +33,7 @@ def test_float32_stays_float32(shape):
 
 def test_peak_equals_the_largest_of_many_phases(shape):
     sampled = np.max([np.linalg.norm(displacement(shape, 1.0, p), axis=1) for p in PHASES], axis=0)
-    exact = peak(shape)
+    exact = cycle_peaks(shape)
     assert np.all(sampled <= exact * (1 + 1e-12))
     assert sampled == pytest.approx(exact, rel=1e-6)          # 0.1° steps miss the peak by at most 1 − cos 0.05°
     assert np.any(exact < np.linalg.norm(np.abs(shape), axis=1) * 0.95), "axes out of phase do not add up"
@@ -45,7 +46,7 @@ def test_swing_is_exact_along_a_direction(shape):
 
 
 def test_circular_motion_has_its_radius_as_peak():
-    assert peak(np.array([[1.0, 1j, 0.0]])) == pytest.approx([1.0])
+    assert cycle_peaks(np.array([[1.0, 1j, 0.0]])) == pytest.approx([1.0])
 
 
 def test_standing():

@@ -4,7 +4,7 @@ import numpy as np
 import pytest
 
 from tests.stage.channel import body, channel, nod, picture
-from viewer.scene import tokens, view
+from viewer.scene import colour_bar, tokens, view
 from viewer.scene.motion import positions
 from viewer.scene.picture import View
 
@@ -77,6 +77,33 @@ def test_wide_bodies_are_stacked():
     _, (first, second) = view.fit(side.with_(view=View((0.9, -0.3, 0.2))), 96)
     assert first == (0, 0, 480, 624)
     assert second == (480, 0, 960, 624)
+
+
+@pytest.mark.parametrize("eye", [(0, -1, 0.05), (-0.4, -0.5, 0.9), (0, 0, 1), (-1, 0, 0.1)])
+def test_side_by_side_pictures_are_as_high_as_their_bodies_need(eye):
+    side = picture(body(), body(name="modified"), layout="side", view=View(eye), width=960)
+    height = view.side_height(side, 120)
+    assert height % 16 == 0                                  # video needs it
+    camera, boxes = view.fit(side.with_(height=height), 120)
+    xy = pixels(side, camera, boxes, 0)
+    left, _, right, _ = boxes[0]
+    if height < view.TALLEST:                                # bodies reach from margin to margin
+        assert np.ptp(xy[:, 0]) == pytest.approx(right - left - 2 * tokens.MARGIN, rel=0.02)
+    else:                                                    # and else use all the height there is
+        top, bottom = view._furniture(side, boxes[0][0] == boxes[1][0])
+        assert np.ptp(xy[:, 1]) == pytest.approx(boxes[0][3] - boxes[0][1] - top - bottom, rel=0.02)
+
+
+def test_the_caution_under_the_bar_has_room():
+    plain = picture(width=960, height=720)
+    doubtful = plain.with_(energy_caution="energies not trusted")
+    tops = []
+    for scene in (plain, doubtful):
+        camera, boxes = view.fit(scene, 96)
+        tops.append(pixels(scene, camera, boxes, 0)[:, 1].min())
+        bar = colour_bar.picture_bar(scene, view.frame(scene, camera, boxes), 624)
+        assert max(item.box[3] for item in bar) < view._furniture(scene, False)[0]
+    assert tops[1] > tops[0]
 
 
 def test_overlay_and_single_use_the_whole_width():

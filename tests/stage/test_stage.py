@@ -9,7 +9,7 @@ from tests.stage.channel import body, channel, nod, picture
 from viewer.model.mesh import CellBlock, Mesh
 from viewer.scene import palette, tokens, view
 from viewer.scene.note_layout import note_height
-from viewer.scene.picture import Body, View
+from viewer.scene.picture import Body, PointMark, View
 from viewer.scene.tokens import THEMES, rgb
 from viewer.stage import Stage
 from viewer.stage.stage import reduce
@@ -202,6 +202,19 @@ def test_a_turned_camera_is_kept_and_followed():
         assert not before.same_as(after)
         assert after.metres_per_pixel == pytest.approx(before.metres_per_pixel)
         assert np.arccos(np.clip(after.toward_eye @ before.toward_eye, -1, 1)) > np.radians(30)
+
+
+def test_rings_face_a_turned_camera():
+    shown = body()
+    shown = Body(shown.name, shown.mesh, shown.shape, shown.factor, 84.6, points=(
+        PointMark("blur", np.array([0.3, -0.1, 0.1]), np.array([0.0, 0.0, 1.0]), np.zeros(6)),
+    ))
+    first, turned = View((0.0, -1.0, 0.3)), View((1.0, -0.2, 0.3))
+    scene = picture(shown, view=first)
+    with Stage(scene) as stage, Stage(scene.with_(view=turned)) as other:
+        stage.image(0.0)
+        stage._aim(other.camera())
+        assert stage.image(0.0).tobytes() == other.image(0.0).tobytes()
 
 
 def test_reduce_is_the_rounded_mean_of_boxes():

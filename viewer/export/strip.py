@@ -53,12 +53,12 @@ def _drawings(picture: Picture, strip: Strip, progress: Progress) -> list[list[A
     if len(strip.cells) > 1:
         # viewports left and right, or below one another: either way each becomes as wide as a cell
         bare = bare.with_(width=len(strip.cells) * wide)
-        stacked = len({box[1] for box in view.fit(bare, 0.0)[1]}) > 1
+        stacked = len({box[1] for box in view.fit(bare, 0.0, bare=True)[1]}) > 1
         if stacked:
             bare = bare.with_(width=wide, height=len(strip.cells) * tall)
     found: list[list[Array]] = [[] for _ in strip.cells]
     scale = bare.width / BASE_WIDTH
-    boxes = [tuple(round(edge * scale) for edge in box) for box in view.fit(bare, 0.0)[1]]
+    boxes = [tuple(round(edge * scale) for edge in box) for box in view.fit(bare, 0.0, bare=True)[1]]
     with Stage(bare, bare=LINES) as stage:
         for done, phase in enumerate(strip.phases):
             progress.tick("drawing phases", done, len(strip.phases))

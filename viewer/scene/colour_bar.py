@@ -13,6 +13,7 @@ from viewer.scene.primitives import Frame, GradientBar, Line, Polygon, Primitive
 from viewer.scene.tokens import BAR_HEIGHT, BAR_TICK, BAR_TITLE, BAR_WIDTH, THEMES
 from viewer.scene.typeface import wrap
 
+ROOM = 84.0                # height that the bar takes, free space beside the body included
 SIDE = 24.0                # right edge to the arrow tip
 TIP = 10.0
 COMPARED_WIDTH = 200.0
@@ -72,13 +73,19 @@ def colour_bar_items(
     return items
 
 
+def caution_room(picture: Picture) -> float:
+    """Height that the caution under the bar takes, sheet px."""
+    if picture.energy_top is None or not picture.energy_caution:
+        return 0.0
+    return _CAUTION_LINE * len(wrap((picture.energy_caution,), CAUTION_ROOM, BAR_TICK))
+
+
 def picture_bar(picture: Picture, frame: Frame, band_top: float) -> list[Primitive]:
-    """The bar of a picture: top right; when comparing, at the foot of the last viewport, right above the note."""
+    """The bar of a picture: top right; of bodies left and right, at the foot of the last, right above the note."""
     if picture.energy_top is None:
         return []
     right, words, caution = frame.width - SIDE, picture.energy_words, picture.energy_caution
-    if picture.layout == "single":
+    if frame.boxes[0][0] == frame.boxes[-1][0]:
         return colour_bar_items(words, picture.energy_top, caution, picture.theme, right, 14.0, float(BAR_WIDTH))
-    lines = len(wrap((caution,), CAUTION_ROOM, BAR_TICK)) if caution else 0
-    y = band_top - 68.0 - _CAUTION_LINE * lines
+    y = band_top - ROOM + 16.0 - caution_room(picture)
     return colour_bar_items(words, picture.energy_top, caution, picture.theme, right, y, COMPARED_WIDTH)

@@ -12,14 +12,16 @@ from viewer.insight.correlate import shared_turn
 from viewer.insight.scale import Scale, common_scale
 from viewer.model.design import LumpedMass
 from viewer.scene.figures import digits
-from viewer.scene.note_layout import scale_note
+from viewer.scene.note_layout import note_height, scale_note
 from viewer.scene.palette import energy_top
 from viewer.scene.picture import Body, Magnified, MassMark, Picture, PointMark, SupportMark
 from viewer.scene.surface import drawn_areas
+from viewer.scene.tokens import BASE_WIDTH
+from viewer.scene.view import side_height
 from viewer.workspace import Study
 
 # Height ÷ width, so that 960 wide gives multiples of 16 (video needs them).
-SINGLE, SIDE, OVERLAY = 720 / 960, 576 / 960, 640 / 960
+SINGLE, OVERLAY = 720 / 960, 640 / 960
 SPRINGS_WORTH_SAYING = 0.005     # share of the strain energy
 
 
@@ -106,7 +108,7 @@ def pair_picture(
         one_colour_scale=len(coloured) == 2,
         size_basis=basis,
     )
-    return Picture(
+    picture = Picture(
         bodies=bodies,
         note=note,
         layout=layout,
@@ -115,9 +117,12 @@ def pair_picture(
         energy_words="strain energy density ÷ own mean",
         energy_caution=_caution(studies, indices, bodies),
         width=width,
-        height=_height(width, SIDE if layout == "side" else OVERLAY),
+        height=_height(width, OVERLAY),
         **look,
     )
+    if layout == "overlay":
+        return picture
+    return picture.with_(height=_height(width, side_height(picture, note_height(picture)) / BASE_WIDTH))
 
 
 def _sizes(studies: Sequence[Study], indices: Sequence[int]) -> tuple[list[float], str]:

@@ -28,6 +28,7 @@ RING, RING_TUBE = 0.0145, 0.0024
 ARROW, ARROW_SHAFT = 0.058, 0.0027         # half length tip to tip, radius
 HEAD, HEAD_RADIUS = 0.022, 0.0095
 LONGEST_ARROW = 2.0         # an arrow seen at a slant is drawn longer, at most so much
+END_ON = 0.3                # share of its length at which an arrow, seen almost end-on, is drawn as ring and dot
 
 _INNER = 0.2                # "corner" measure below which a held point may be inside a held area
 _ONE_SIDED = 0.6            # share in which the cells around held nodes agree on the side where the body is
@@ -287,14 +288,19 @@ def _carried(points: Array, centre: Array, motion: Array) -> Array:
 
 
 def _point(body: Body, mark: PointMark, diagonal: float, toward_eye: Array) -> Piece:
-    """A ring that faces the eye and a double arrow along the sensitive direction, left free inside the ring."""
+    """A ring that faces the eye and a double arrow along the sensitive direction, left free inside the ring.
+
+    Seen almost end-on, a dot in the ring stands for the arrow: the usual sign of a vector toward the reader.
+    """
     centre, direction = np.asarray(mark.position, float), np.asarray(mark.direction, float)
     direction = direction / np.linalg.norm(direction)
     foreshortened = float(np.linalg.norm(direction - (direction @ toward_eye) * toward_eye))
     long = min(1 / max(foreshortened, 1e-9), LONGEST_ARROW)
     ring = _ring(RING, RING_TUBE, toward_eye)
     arms = []
-    for axis in (direction, -direction):
+    if foreshortened <= END_ON:
+        arms.append(_revolved(RING * toward_eye, [(0.0, 0.45 * RING), (0.1, 0.0)]))
+    for axis in () if arms else (direction, -direction):
         arms.append(_revolved(long * axis, [(RING / long, ARROW_SHAFT), (ARROW - HEAD, ARROW_SHAFT)]))
         arms.append(_revolved(long * axis, [(ARROW - HEAD, 0.0), (ARROW - HEAD, HEAD_RADIUS), (ARROW, 0.0)]))
     points: list[Array] = []

@@ -28,13 +28,3 @@ def positions(points: Array, shape: Array, factor: float, phase: float) -> Array
 def swing(shape: Array, direction: Array) -> Array:
     """(n,) largest motion over the cycle along a unit ``direction``, in units of ``shape``: exact."""
     return np.abs(shape @ np.asarray(direction))
-
-
-def peak(shape: Array) -> Array:
-    """(n,) largest length of each node's displacement over the cycle, in units of ``shape``: exact.
-
-    With s = shape, |Re(s e^{ip})|² = ½ Σ|s|² + ½ Re(e^{2ip} Σs²), whose largest value over p is
-    ½ (Σ|s|² + |Σs²|): the long half axis of the node's ellipse.
-    """
-    total = np.sum(np.abs(shape) ** 2, axis=-1)
-    return np.sqrt(0.5 * (total + np.abs(np.sum(shape * shape, axis=-1))))

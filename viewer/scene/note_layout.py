@@ -9,8 +9,8 @@ from math import cos
 import numpy as np
 
 from viewer.insight.scale import Scale
+from viewer.model.cycle import cycle_peaks
 from viewer.scene.figures import digits, hertz, length, times
-from viewer.scene.motion import peak
 from viewer.scene.picture import Note, Picture
 from viewer.scene.primitives import Disc, Frame, Line, Polygon, Primitive, Text, sheet_size
 from viewer.scene.tokens import BAND_HEIGHT, BASELINES, OVERFLOW_LINE, TEXT, TEXT_NAME, THEMES, Tokens
@@ -218,7 +218,7 @@ def _pixel_statement(picture: Picture, frame: Frame) -> str:
     if not is_true(picture.magnification):
         return ""
     pixel = frame.metres_per_pixel * frame.width / picture.width
-    moved = max(float(np.max(peak(body.shape), initial=0.0)) * abs(body.factor) for body in picture.bodies)
+    moved = max(float(np.max(cycle_peaks(body.shape), initial=0.0)) * abs(body.factor) for body in picture.bodies)
     if picture.magnified is not None:
         moved = max(moved, picture.magnified.amplitude)
     return below_pixel(pixel) if moved < pixel else ""

@@ -11,8 +11,9 @@ from math import ceil
 import numpy as np
 
 from viewer.model.arrays import Array
+from viewer.model.cycle import cycle_peaks
 from viewer.scene.colour_bar import colour_bar_items
-from viewer.scene.motion import is_standing, peak
+from viewer.scene.motion import is_standing
 from viewer.scene.note_layout import gauge, is_true, knob
 from viewer.scene.picture import Picture
 from viewer.scene.primitives import Box, Line, Primitive, Sheet, Text
@@ -96,7 +97,7 @@ def strip_phases(picture: Picture) -> tuple[tuple[float, ...], tuple[str, ...]]:
 def _ways(picture: Picture) -> tuple[str, str]:
     """Words for the extremes half a cycle after phase 0, and at phase 0."""
     body = picture.bodies[0]
-    motion: Array = np.real(body.shape[int(np.argmax(peak(body.shape)))]) * body.factor
+    motion: Array = np.real(body.shape[int(np.argmax(cycle_peaks(body.shape)))]) * body.factor
     up = np.asarray(picture.view.up, float)
     share = float(motion @ up) / max(float(np.linalg.norm(motion) * np.linalg.norm(up)), 1e-300)
     if abs(share) < _UPRIGHT:

@@ -7,15 +7,16 @@ from dataclasses import dataclass
 import numpy as np
 
 from viewer.model.arrays import Array
-from viewer.scene import tokens
+from viewer.scene import colour_bar, tokens
 from viewer.scene.marks import mark_pieces
 from viewer.scene.motion import swing
 from viewer.scene.picture import Picture, View
 from viewer.scene.primitives import Box, Frame, sheet_size
 
 WIDE = 3.0                     # a body wider than this on the screen is compared stacked, not left and right
-KEY_TOP = 60                   # side by side: the title key's height
-BAR_ROOM = 84                  # side by side: room for the colour bar below the body
+KEY_TOP = 60                   # left and right: the title key's height
+LEAST_BODY = 130               # side by side: least height kept for a body and its labels
+LOWEST, TALLEST = 384, 720     # side by side: the picture's height
 
 
 @dataclass(frozen=True, eq=False)
@@ -102,21 +103,19 @@ def panes(picture: Picture, band_height: float, wide: bool = False) -> tuple[Box
     return tuple((width * k / n, 0.0, width * (k + 1) / n, bottom) for k in range(n))
 
 
-def fit(picture: Picture, band_height: float = tokens.BAND_HEIGHT) -> tuple[Camera, tuple[Box, ...]]:
+def fit(
+    picture: Picture, band_height: float = tokens.BAND_HEIGHT, *, bare: bool = False
+) -> tuple[Camera, tuple[Box, ...]]:
     """Camera and viewports that hold both extremes of the motion of every body, at one scale.
 
     Inside each viewport the body keeps clear of margins, of what stands at the top (rulers, colour bar, title
-    key) and, above, of the note band (``band_height``).
+    key) and, above, of the note band (``band_height``); ``bare``: of margins alone.
     """
     right, up, eye = axes(picture.view)
     low, high = scene_box(picture)
-    size = np.maximum(high - low, 1e-12 * (np.abs(high) + np.abs(low)) + 1e-30)
-    wide = bool(size[0] > WIDE * size[1])
+    size, wide = _extent(low, high)
     boxes = panes(picture, band_height, wide)
-    top, bottom = float(tokens.TOP), float(tokens.MARGIN)
-    if picture.layout == "side" and not wide:
-        top = KEY_TOP
-        bottom = BAR_ROOM if picture.energy_top is not None else tokens.MARGIN
+    top, bottom = (float(tokens.MARGIN),) * 2 if bare else _furniture(picture, wide)
     x0, y0, x1, y1 = boxes[0]
     room = np.maximum([x1 - x0 - 2 * tokens.MARGIN, y1 - y0 - top - bottom], 1.0)
     scale = float(np.max(size / room))
@@ -125,6 +124,31 @@ def fit(picture: Picture, band_height: float = tokens.BAND_HEIGHT) -> tuple[Came
     depth = float(eye @ shown_box(picture).mean(axis=0))
     focus = middle[0] * right + middle[1] * up + depth * eye
     return Camera(focus, right, up, eye, scale), boxes
+
+
+def side_height(picture: Picture, band_height: float) -> int:
+    """Height in sheet pixels, a multiple of 16, at which the bodies of a side-by-side picture fill their viewports."""
+    low, high = scene_box(picture)
+    size, wide = _extent(low, high)
+    boxes = panes(picture, band_height, wide)
+    drawn = (boxes[0][2] - boxes[0][0] - 2 * tokens.MARGIN) * size[1] / size[0]
+    one = sum(_furniture(picture, wide)) + max(drawn, LEAST_BODY)
+    height = one * (len(boxes) if wide else 1) + band_height
+    return int(np.clip(16 * np.ceil(height / 16), LOWEST, TALLEST))
+
+
+def _extent(low: Array, high: Array) -> tuple[Array, bool]:
+    """Width and height (2,) of a box on the screen, m, never zero; and whether bodies so wide are stacked."""
+    size = np.maximum(high - low, 1e-12 * (np.abs(high) + np.abs(low)) + 1e-30)
+    return size, bool(size[0] > WIDE * size[1])
+
+
+def _furniture(picture: Picture, wide: bool) -> tuple[float, float]:
+    """Sheet pixels in a viewport that rulers, keys and the colour bar take above and below the body."""
+    caution = colour_bar.caution_room(picture)
+    if picture.layout == "side" and not wide:
+        return float(KEY_TOP), float(tokens.MARGIN) if picture.energy_top is None else colour_bar.ROOM + caution
+    return tokens.TOP + caution, float(tokens.MARGIN)
 
 
 def frame(picture: Picture, camera: Camera, boxes: tuple[Box, ...]) -> Frame:

@@ -67,6 +67,7 @@ class Stage:
         camera = self.camera()
         for actors in self._bodies:
             actors.draw(phase, camera)
+        self._face(camera)
         for marks in self._marks:
             marks.draw(phase)
         if self._bare is not None:
@@ -112,27 +113,46 @@ class Stage:
             if id(body.mesh) not in known:
                 known[id(body.mesh)] = surface_of(body.mesh)
         self._surfaces = [known[id(body.mesh)] for body in picture.bodies]
-        camera, self._boxes = view.fit(picture, note_height(picture) if self._bare is None else 0.0)
+        camera, self._boxes = view.fit(
+            picture, note_height(picture) if self._bare is None else 0.0, bare=self._bare is not None
+        )
         self._lay_renderers()
         self._aim(camera)
         width = picture.width if self._bare is None else self._bare * BASE_WIDTH
-        scale = self._window.GetSize()[0] / picture.width * width / BASE_WIDTH
+        self._scale = self._window.GetSize()[0] / picture.width * width / BASE_WIDTH
         self._bodies: list[BodyActors | DashedBody] = []
-        self._marks: list[MarkActors] = []
-        pieces = mark_pieces(picture)
-        if picture.layout == "overlay" and len(picture.bodies) > 1:
+        scale, surfaces = self._scale, self._surfaces
+        if self._overlaid:
             theme = THEMES[picture.theme]
             pane, over = self._panes[0], self._over[0]
-            (baseline, modified), (first, second) = picture.bodies[:2], self._surfaces[:2]
-            self._bodies.append(BodyActors(pane, picture, modified, second, scale, theme.modified))
-            self._bodies.append(DashedBody(pane, over, baseline, first, scale, theme.baseline))
-            self._marks.append(MarkActors(pane, over, pieces[1], picture.theme, scale))
+            baseline, modified = picture.bodies[:2]
+            self._bodies.append(BodyActors(pane, picture, modified, surfaces[1], scale, theme.modified))
+            self._bodies.append(DashedBody(pane, over, baseline, surfaces[0], scale, theme.baseline))
         else:
-            for k, (pane, over) in enumerate(zip(self._panes, self._over, strict=True)):
-                self._bodies.append(BodyActors(pane, picture, picture.bodies[k], self._surfaces[k], scale))
-                self._marks.append(MarkActors(pane, over, pieces[k], picture.theme, scale))
+            for pane, body, surface in zip(self._panes, picture.bodies, surfaces, strict=True):
+                self._bodies.append(BodyActors(pane, picture, body, surface, scale))
+        self._marks: list[MarkActors] = []
+        self._marked_for = np.zeros(3)
         self._sheet = SheetActors(self._renderer(2))
         self._plan = None
+
+    @property
+    def _overlaid(self) -> bool:
+        return self.picture.layout == "overlay" and len(self.picture.bodies) > 1
+
+    def _face(self, camera: view.Camera) -> None:
+        """Make the marks anew when the camera has turned: rings and rims face the eye."""
+        if np.allclose(self._marked_for, camera.toward_eye, rtol=0, atol=1e-9):
+            return
+        for marks in self._marks:
+            marks.clear()
+        pieces = mark_pieces(self.picture, camera.toward_eye)
+        shown = pieces[1:] if self._overlaid else pieces         # in an overlay, those of the body in front
+        self._marks = [
+            MarkActors(pane, over, of_body, self.picture.theme, self._scale)
+            for pane, over, of_body in zip(self._panes, self._over, shown, strict=True)
+        ]
+        self._marked_for = camera.toward_eye
 
     def _lay_renderers(self) -> None:
         """One renderer for each viewport in layer 0 and in layer 1."""
