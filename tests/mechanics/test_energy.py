@@ -136,6 +136,8 @@ def test_modes_of_another_mesh_are_refused():
     mesh, other = box_mesh("hex8", (2, 1, 1), (1, 1, 1)), box_mesh("hex8", (3, 1, 1), (1, 1, 1))
     with pytest.raises(ModelError, match="not given on the nodes"):
         energies(design(mesh), stretched(other))
+    with pytest.raises(ModelError, match="mode 1 has no frequency"):
+        energies(design(mesh), stretched(mesh).with_(freq_hz=[np.nan]))
     still = stretched(mesh).with_(shapes=ArrayShapes(np.zeros((1, mesh.n_nodes, 3))))
     with pytest.raises(ModelError, match="mode 1 moves no mass"):
         energies(design(mesh), still)

@@ -163,6 +163,12 @@ def energies(
             f"design '{design.name}': the modes are not given on the nodes of its mesh", file=modes.source or None,
             found=f"{len(modes.node_ids)} nodes", expected=f"{design.mesh.n_nodes} nodes with the same ids",
         )
+    known = np.isfinite(modes.freq_hz[picked])
+    if not known.all():
+        raise ModelError(
+            f"design '{design.name}': mode {picked[np.argmin(known)] + 1} has no frequency",
+            file=modes.source or None, do="give every mode a frequency in Hz, 0 for rigid-body modes",
+        )
     layout = lay_out(design, progress, formulations=formulations)
     vectors, doubts = _vectors(layout, modes, picked, progress)
     omega = 2 * np.pi * modes.freq_hz[picked]

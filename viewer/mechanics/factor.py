@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import contextlib
 import ctypes
 from functools import cache
 from typing import Any, Protocol
@@ -96,8 +97,10 @@ class Pardiso:
         return np.ascontiguousarray(self._call(33, np.asfortranarray(right, float)))
 
     def __del__(self) -> None:
-        if getattr(self, "_pointers", None) is not None and self._pointers.any():
-            self._call(-1, np.zeros((self._size, 1), order="F"), check=False)
+        # At the interpreter's end the library's names may be gone, and so is then the memory it held.
+        with contextlib.suppress(TypeError, AttributeError):
+            if self._pointers.any():
+                self._call(-1, np.zeros((self._size, 1), order="F"), check=False)
 
     def _call(self, phase: int, right: Array, check: bool = True) -> Array:
         library = _mkl()
