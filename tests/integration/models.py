@@ -37,7 +37,7 @@ def kept(mesh: Mesh, keep) -> Mesh:
 
 def design(name: str, mesh: Mesh, root: str, tip: str, *, thickness: float | None = None, **more) -> Design:
     """Steel, held at ``root``, with a mass of 0.3 kg ahead of ``tip`` and a spring to ground under it."""
-    ahead = mesh.points[mesh.node_groups[tip]].mean(axis=0) + [0.02, 0.01, 0.03]
+    ahead = mesh.points[mesh.node_groups[tip]].mean(axis=0) + np.array([0.02, 0.01, 0.03])
     return Design(name, mesh, Physics(
         {STEEL.name: STEEL},
         (Assignment("*", STEEL.name, thickness), *more.pop("assignments", ())),
@@ -66,17 +66,15 @@ def channel_mesh(along: int, length: float) -> tuple[Mesh, dict[str, np.ndarray]
     x = np.linspace(0, length, along + 1)
     points = np.array([[s, y, z] for s in x for y, z in section])
     at = np.arange(len(points)).reshape(along + 1, len(section))
-    quads = np.array([[at[i, j], at[i + 1, j], at[i + 1, j + 1], at[i, j + 1]] for i in range(along) for j in range(4)])
-    triangles = np.array([
-        corners for i in range(along) for j in (4, 5)
-        for a, b, c, d in [(at[i, j], at[i + 1, j], at[i + 1, j + 1], at[i, j + 1])] for corners in ((a, b, c), (a, c, d))
-    ])
+    quads = np.concatenate([_strip(at[:, j], at[:, j + 1]) for j in range(4)])
+    flange = np.concatenate([_strip(at[:, j], at[:, j + 1]) for j in (4, 5)])
+    triangles = np.concatenate([flange[:, [0, 1, 2]], flange[:, [0, 2, 3]]])
     blocks = (
         CellBlock("quad4", quads, np.arange(100, 100 + len(quads))),
         CellBlock("tri3", triangles, np.arange(1000, 1000 + len(triangles))),
     )
-    flange = np.arange(len(quads), len(quads) + len(triangles))
-    mesh = Mesh(points, blocks, np.arange(1, len(points) + 1), {}, {"far flange": flange})
+    rows = np.arange(len(quads), len(quads) + len(triangles))
+    mesh = Mesh(points, blocks, np.arange(1, len(points) + 1), {}, {"far flange": rows})
     return mesh, {"root": at[0], "tip": at[-1]}
 
 
@@ -95,7 +93,7 @@ def block_with_plate(tip: str = "tip") -> Design:
     rank[order] = np.arange(len(order))
     row = rank[where.ravel()]
     at = row[len(block.points):].reshape(13, 4)
-    quads = np.array([[at[i, j], at[i + 1, j], at[i + 1, j + 1], at[i, j + 1]] for i in range(12) for j in range(3)])
+    quads = np.concatenate([_strip(at[:, j], at[:, j + 1]) for j in range(3)])
     solids = row[block.blocks[0].nodes]
     points = points[first[order]]
     groups = {"root": np.nonzero(points[:, 2] < 1e-9)[0], "tip": at[-2:].ravel(), "edge": at[-1]}
@@ -105,6 +103,11 @@ def block_with_plate(tip: str = "tip") -> Design:
     )
     sheets = (Assignment("quad4", STEEL.name, 0.003),)
     return design("block with plate", scattered_ids(mesh), "root", tip, assignments=sheets)
+
+
+def _strip(left: np.ndarray, right: np.ndarray) -> np.ndarray:
+    """Quadrilaterals between two rows of nodes."""
+    return np.stack([left[:-1], left[1:], right[1:], right[:-1]], axis=1)
 
 
 def without_rotations(modes: ModeSet, dtype=np.float64) -> ModeSet:
