@@ -7,11 +7,14 @@ from __future__ import annotations
 
 import functools
 import json
+import signal
 import sys
+import threading
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from pathlib import Path
-from typing import TYPE_CHECKING, Annotated, Any
+from types import FrameType
+from typing import TYPE_CHECKING, Annotated, Any, NoReturn
 
 import typer
 
@@ -33,20 +36,53 @@ def command(body: Callable[..., Any]) -> Callable[..., Any]:
     @functools.wraps(body)
     def run(*args: Any, **options: Any) -> None:
         as_json = bool(options.get("as_json"))
-        try:
-            body(*args, **options)
-        except (KeyboardInterrupt, Cancelled):
-            _fail({"error": "Cancelled", "problem": "stopped; nothing half-written is left"}, as_json, "")
-            raise typer.Exit(130) from None
-        except HingelightError as error:
-            _fail(error.to_dict(), as_json, str(error))
-            raise typer.Exit(1) from None
-        except MemoryError:
-            text = "memory ran out; do: use a coarser mesh, fewer modes or a machine with more memory"
-            _fail({"error": "MemoryError", "problem": text}, as_json, text)
-            raise typer.Exit(1) from None
+        with _interrupts() as asked:
+            try:
+                body(*args, **options)
+            except (KeyboardInterrupt, Cancelled):
+                _stop(as_json)
+            except Exception as error:
+                if asked:   # a library met Ctrl-C and made another error of it, as VTK does while it is imported
+                    _stop(as_json)
+                _explain(error, as_json)
 
     return run
+
+
+@contextmanager
+def _interrupts() -> Iterator[list[int]]:
+    """The signals of Ctrl-C that came so far; each still raises ``KeyboardInterrupt``."""
+    asked: list[int] = []
+
+    def note(number: int, frame: FrameType | None) -> None:
+        asked.append(number)
+        signal.default_int_handler(number, frame)
+
+    if threading.current_thread() is not threading.main_thread():
+        yield asked     # only the main thread hears signals
+        return
+    earlier = signal.signal(signal.SIGINT, note)
+    try:
+        yield asked
+    finally:
+        signal.signal(signal.SIGINT, earlier)
+
+
+def _stop(as_json: bool) -> NoReturn:
+    _fail({"error": "Cancelled", "problem": "stopped; nothing half-written is left"}, as_json, "")
+    raise typer.Exit(130) from None
+
+
+def _explain(error: Exception, as_json: bool) -> NoReturn:
+    """One line for an error that a user can be told about; any other goes on as it is."""
+    if isinstance(error, HingelightError):
+        _fail(error.to_dict(), as_json, str(error))
+    elif isinstance(error, MemoryError):
+        text = "memory ran out; do: use a coarser mesh, fewer modes or a machine with more memory"
+        _fail({"error": "MemoryError", "problem": text}, as_json, text)
+    else:
+        raise error
+    raise typer.Exit(1) from None
 
 
 def _fail(parts: dict[str, Any], as_json: bool, text: str) -> None:
