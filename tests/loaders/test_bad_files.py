@@ -21,13 +21,13 @@ from tests.loaders.samples import (
 from viewer.errors import LoadError
 from viewer.loaders import read_mesh, read_modes, write_interchange
 
-SUFFIXES = (".vtu", ".npz", ".h5", ".csv")
+SUFFIXES = (".vtu", ".vtkhdf", ".npz", ".h5", ".csv")
 
 
 # --- cut short, everywhere ---
 
 
-@pytest.mark.parametrize("suffix", [".vtu", ".npz", ".h5"])
+@pytest.mark.parametrize("suffix", [".vtu", ".vtkhdf", ".npz", ".h5"])
 @pytest.mark.parametrize("percent", [1, 10, 25, 40, 55, 70, 85, 95, 99])
 def test_cut_short(tmp_path, mesh, modes, suffix, percent):
     path = write_interchange(tmp_path / f"cut{suffix}", mesh, modes)
@@ -54,7 +54,7 @@ def test_table_cut_short(tmp_path, mesh, modes, table, percent):
         assert_same_modes(modes, read)
 
 
-@pytest.mark.parametrize("suffix", [".vtu", ".npz", ".h5"])
+@pytest.mark.parametrize("suffix", [".vtu", ".vtkhdf", ".npz", ".h5"])
 @pytest.mark.parametrize("seed", range(25))
 def test_bytes_turned(tmp_path, mesh, modes, suffix, seed):
     """Random damage: an error of ours, or arrays of the right size."""

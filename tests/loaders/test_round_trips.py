@@ -21,7 +21,7 @@ from viewer.loaders import raw_data, read_mesh, read_mesh_report, read_modes, wr
 from viewer.loaders.file_shapes import FileShapes
 from viewer.model.modes import ArrayShapes
 
-SUFFIXES = (".vtu", ".npz", ".h5", ".csv")
+SUFFIXES = (".vtu", ".vtkhdf", ".npz", ".h5", ".csv")
 
 
 @pytest.mark.parametrize("suffix", SUFFIXES)
@@ -72,7 +72,7 @@ def test_other_nodes_are_refused_with_a_few_named(tmp_path, mesh, modes, suffix)
         read_modes(path, mesh.with_(node_ids=ids))
 
 
-@pytest.mark.parametrize("suffix", [".vtu", ".npz", ".h5"])
+@pytest.mark.parametrize("suffix", [".vtu", ".vtkhdf", ".npz", ".h5"])
 def test_large_sets_stay_in_the_file(tmp_path, monkeypatch, mesh, suffix):
     monkeypatch.setattr(raw_data, "_READ_AT_ONCE", 0)
     modes = make_modes(mesh, is_complex=True, rotations=True)

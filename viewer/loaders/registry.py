@@ -19,12 +19,20 @@ from viewer.model.modes import ModeSet
 
 # Modules with SUFFIXES, read_mesh(path, progress), read_modes(path, progress) and perhaps write(path, mesh, modes,
 # progress). They are imported when their suffix turns up. Formats of the worker come last.
-_OWN = {".vtu": "vtu_files", ".npz": "npz_files", ".h5": "hdf5_files", ".hdf5": "hdf5_files", ".csv": "csv_tables"}
+_OWN = {
+    ".vtu": "vtu_files",
+    ".vtkhdf": "vtkhdf_files",
+    ".npz": "npz_files",
+    ".h5": "hdf5_files",
+    ".hdf5": "hdf5_files",
+    ".csv": "csv_tables",
+}
+_WRITTEN = (".vtu", ".vtkhdf", ".npz", ".h5", ".hdf5", ".csv")
 _WORKER = "meshio_files"
 # First bytes that give a container away, whatever the suffix says.
 _SIGNATURES = (
     (b"PK\x03\x04", "a zip archive (.npz)", (".npz",)),
-    (b"\x89HDF\r\n\x1a\n", "an HDF5 file", (".h5", ".hdf5", ".med")),
+    (b"\x89HDF\r\n\x1a\n", "an HDF5 file", (".h5", ".hdf5", ".med", ".vtkhdf")),
 )
 
 
@@ -72,25 +80,25 @@ def read_modes(
 def write_interchange(
     path: str | os.PathLike[str], mesh: Mesh, modes: ModeSet | None = None, progress: Progress = SILENT
 ) -> Path:
-    """Write a mesh and its mode shapes in metres as .vtu, .npz, .h5 or .csv, by suffix. Atomic; returns the path.
+    """Write a mesh and its mode shapes in metres as .vtu, .vtkhdf, .npz, .h5 or .csv. Atomic; returns the path.
 
     Raises ``LoadError`` when the suffix is none of these or the modes are not those of the mesh, ``ExportError``
     when the place cannot be written.
     """
     target = Path(path)
-    name = _OWN.get(target.suffix.lower())
-    if name is None:
+    suffix = target.suffix.lower()
+    if suffix not in _WRITTEN:
         raise LoadError(
             "cannot be written in this format",
             file=target,
             found=target.suffix or "no suffix",
-            expected=f"one of: {', '.join(_OWN)}",
+            expected=f"one of: {', '.join(_WRITTEN)}",
         )
     if modes is not None and (len(modes.node_ids) != mesh.n_nodes or not (modes.node_ids == mesh.node_ids).all()):
         raise LoadError(
             "the mode shapes are not those of the mesh", file=target, expected="equal node ids in equal order"
         )
-    _module(name).write(target, mesh, modes, progress)
+    _module(_OWN[suffix]).write(target, mesh, modes, progress)
     return target
 
 

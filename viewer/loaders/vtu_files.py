@@ -41,7 +41,7 @@ def read_modes(path: Path, progress: Progress = SILENT) -> RawModes:
 
 def write(path: str | os.PathLike[str], mesh: Mesh, modes: ModeSet | None, progress: Progress = SILENT) -> None:
     """Appended raw, not compressed, 64-bit header; one mode in memory at a time. Atomic."""
-    arrays = list(_arrays_to_write(mesh, modes))
+    arrays = list(arrays_to_write(mesh, modes))
     with atomic_path(path) as part, part.open("wb") as stream:
         stream.write(_head(mesh, arrays).encode("ascii"))
         for number, (_, name, dtype, shape, make) in enumerate(arrays):
@@ -53,7 +53,7 @@ def write(path: str | os.PathLike[str], mesh: Mesh, modes: ModeSet | None, progr
         stream.write(b"\n  </AppendedData>\n</VTKFile>\n")
 
 
-def _arrays_to_write(mesh: Mesh, modes: ModeSet | None):
+def arrays_to_write(mesh: Mesh, modes: ModeSet | None):
     """(section, name, dtype, shape, maker) of every array in the order in which it is written."""
     n, cells = mesh.n_nodes, mesh.n_cells
     if modes is not None:
