@@ -162,6 +162,7 @@ def test_pieces_are_put_together(tmp_path):
     reader = vtkHDFReader()
     reader.SetFileName(str(tmp_path / "a.vtkhdf"))
     reader.Update()
-    seen = pyvista.wrap(reader.GetOutput())
-    assert np.array_equal(seen.points, mesh.points)
-    assert seen.cell_connectivity.tolist() == [0, 1, 2, 3, 4, 5, 6]
+    parts = reader.GetOutputDataObject(0)
+    seen = [pyvista.wrap(parts.GetPartition(i)) for i in range(parts.GetNumberOfPartitions())]
+    assert np.array_equal(np.concatenate([part.points for part in seen]), mesh.points)
+    assert [part.cell_connectivity.tolist() for part in seen] == [[0, 1, 2], [0, 1, 2, 3]]

@@ -254,8 +254,12 @@ class _Grid:
         table = {name: numbers(self.path, group, name) for name in ("NumberOfCells", "NumberOfConnectivityIds")}
         for name, values in table.items():
             if self.pieces.stop > len(values):
-                wanted = str(self.pieces.stop)
-                raise self.error("a table of pieces is too short", place=name, found=str(len(values)), expected=wanted)
+                raise self.error(
+                    "a table of pieces is too short",
+                    place=name,
+                    found=str(len(values)),
+                    expected=str(self.pieces.stop),
+                )
         cells = table["NumberOfCells"][self.pieces]
         ids = table["NumberOfConnectivityIds"][self.pieces]
         first_cell, first_id = (self._first_cell(name, topology) for name in ("CellOffsets", "ConnectivityIdOffsets"))
