@@ -16,7 +16,9 @@ from viewer.workspace.keys import design_key
 from viewer.workspace.store import Cache, read_modes_npz, write_modes_npz
 from viewer.workspace.study import Study, study
 
-IN_CHILD_ABOVE = 20_000   # nodes; smaller designs solve in the time a child process needs to start
+# Nodes. A factorisation hears neither Ctrl-C nor a cancel, so that larger designs are solved in a process that can be
+# killed; a block of 8 000 nodes (24 000 directions) keeps SuperLU busy for seconds at a stretch.
+IN_CHILD_ABOVE = 4_000
 
 
 @dataclass
