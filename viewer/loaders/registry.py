@@ -22,12 +22,16 @@ from viewer.model.modes import ModeSet
 _OWN = {
     ".vtu": "vtu_files",
     ".vtkhdf": "vtkhdf_files",
+    ".xdmf": "xdmf_files",
+    ".xmf": "xdmf_files",
     ".npz": "npz_files",
     ".h5": "hdf5_files",
     ".hdf5": "hdf5_files",
     ".csv": "csv_tables",
+    ".unv": "universal_files",
+    ".uff": "universal_files",
 }
-_WRITTEN = (".vtu", ".vtkhdf", ".npz", ".h5", ".hdf5", ".csv")
+_WRITTEN = (".vtu", ".vtkhdf", ".npz", ".h5", ".hdf5", ".csv", ".unv", ".uff")
 _WORKER = "meshio_files"
 # First bytes that give a container away, whatever the suffix says.
 _SIGNATURES = (
@@ -80,7 +84,9 @@ def read_modes(
 def write_interchange(
     path: str | os.PathLike[str], mesh: Mesh, modes: ModeSet | None = None, progress: Progress = SILENT
 ) -> Path:
-    """Write a mesh and its mode shapes in metres as .vtu, .vtkhdf, .npz, .h5 or .csv. Atomic; returns the path.
+    """Write a mesh and its mode shapes in metres as .vtu, .vtkhdf, .npz, .h5 or .csv; to six digits as .unv.
+
+    Atomic; returns the path.
 
     Raises ``LoadError`` when the suffix is none of these or the modes are not those of the mesh, ``ExportError``
     when the place cannot be written.

@@ -22,6 +22,7 @@ import numpy as np
 
 from viewer.errors import LoadError
 from viewer.loaders.file_shapes import Stretch
+from viewer.loaders.text_numbers import numbers_from
 from viewer.model.arrays import Array
 
 _TYPES = {
@@ -266,19 +267,15 @@ class VtuFile:
                 found=f"{len(words)} numbers",
                 expected=f"{count}",
             )
-        kind = np.dtype(array.dtype)
         try:
-            values = (
-                np.array(words, "S").astype(np.float64 if kind.kind == "f" else kind) if count else np.empty(0, kind)
-            )
-        except (ValueError, OverflowError) as error:
+            return numbers_from(words, np.dtype(array.dtype))
+        except ValueError as error:
             raise self.error(
                 "an array holds something that is no number",
                 place=self._place(array),
                 found=str(error),
                 expected=f"numbers of {array.dtype}",
             ) from None
-        return values.astype(kind)
 
 
 def _base64_length(size: int) -> int:
