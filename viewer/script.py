@@ -39,21 +39,24 @@ def energies(design: Design, modes: ModeSet, progress: Progress = SILENT) -> Ene
 
 @dataclass(frozen=True, eq=False)
 class Loop:
-    """A picture that can be saved: ``save("loop.gif")``, ``save("still.png")``."""
+    """A picture that can be saved: ``save("loop.gif")``, ``save("loop.mp4")``, ``save("still.png")``."""
 
     picture: Picture
 
     def save(self, path: str | os.PathLike[str], *, phase: float = 0.0, progress: Progress = SILENT) -> Path:
-        """Write a loop (.gif) or a still at ``phase`` rad (.png); returns the path."""
-        from viewer.export import save_gif, save_png
+        """Write a loop (.gif or .mp4) or a still at ``phase`` rad (.png); returns the path."""
+        from viewer.export import save_gif, save_mp4, save_png
 
         target = Path(path)
         if target.suffix.lower() == ".gif":
             return save_gif(self.picture, target, progress)
+        if target.suffix.lower() == ".mp4":
+            return save_mp4(self.picture, target, progress)
         if target.suffix.lower() == ".png":
             return save_png(self.picture, target, phase, progress)
         raise InputError(
-            "cannot tell what to draw", file=target, found=f"the ending '{target.suffix}'", expected=".gif or .png"
+            "cannot tell what to draw", file=target, found=f"the ending '{target.suffix}'",
+            expected=".gif, .mp4 or .png",
         )
 
 
@@ -67,7 +70,7 @@ def animate(
     **options: Any,
 ) -> Loop:
     """The loop of mode number ``mode``; ``options`` are those of ``viewer.scene.compose.single_picture``:
-    true_scale, peak_percent, energy, theme, width, ghost, mesh_edges, view."""
+    true_scale, peak_percent, energy, theme, width, ghost, mesh_edges, node_lines, showing, view."""
     from viewer.scene.compose import single_picture
 
     stated = {a.mode: a for a in amplitudes}

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from pathlib import Path
 from typing import Annotated, Any
 
@@ -25,7 +26,7 @@ from viewer.cli.shell import (
 def animate(
     dossier: DossierPath,
     mode: Annotated[int, typer.Argument(min=1, help="Number of the mode, from 1.")],
-    out: Annotated[Path | None, typer.Option(help="File to write: .gif for a loop, .png for a still.")] = None,
+    out: Annotated[Path | None, typer.Option(help="File to write: a loop (.gif, .mp4) or a still (.png).")] = None,
     design: Annotated[str, typer.Option(help="Design to draw; the dossier's first by default.")] = "",
     against: Annotated[str, typer.Option(help="Compare with this design: NAME, or NAME:MODE.")] = "",
     overlay: Annotated[bool, typer.Option(help="Draw compared designs over one another, not side by side.")] = False,
@@ -36,6 +37,12 @@ def animate(
     no_energy: Annotated[bool, typer.Option("--no-energy", help="Leave out the energy colours.")] = False,
     no_ghost: Annotated[bool, typer.Option("--no-ghost", help="Leave out the undeformed outline.")] = False,
     mesh_edges: Annotated[bool, typer.Option("--mesh-edges", help="Draw the edges of elements.")] = False,
+    node_lines: Annotated[bool, typer.Option("--node-lines", help="Draw the lines that do not move.")] = False,
+    hide: Annotated[list[str] | None, typer.Option(help="Leave out this cell group; may be repeated.")] = None,
+    only: Annotated[list[str] | None, typer.Option(help="Show this cell group alone; may be repeated.")] = None,
+    cut: Annotated[
+        str, typer.Option(help="Cut the body open and take away the nearer part: x=120mm, or NX,NY,NZ=120mm.")
+    ] = "",
     theme: Theme = "light",
     width: Width = 960,
     as_json: Json = False,
@@ -43,20 +50,24 @@ def animate(
 ) -> None:
     """Draw one mode as a loop, a still or a phase strip; or the same mode of two designs together."""
     from viewer.errors import InputError
-    from viewer.export import save_gif, save_png, save_strip
+    from viewer.export import save_gif, save_mp4, save_png, save_strip
     from viewer.scene.compose import pair_picture, single_picture
+    from viewer.scene.showing import Showing
 
     theme_checked(theme)
     opened = workspace(no_cache).open(dossier)
     first = design or opened.names[0]
     target = out or Path(f"{first}_mode_{mode:02d}{'.png' if strip else '.gif'}")
     suffix = target.suffix.lower()
-    if suffix not in (".gif", ".png") or (strip and suffix != ".png"):
+    if suffix not in (".gif", ".mp4", ".png") or (strip and suffix != ".png"):
         raise InputError(
             "cannot tell what to draw", file=target, found=f"the ending '{target.suffix}'",
-            expected=".png for a strip" if strip else ".gif for a loop or .png for a still",
+            expected=".png for a strip" if strip else ".gif or .mp4 for a loop, .png for a still",
         )
-    options: dict[str, Any] = {"theme": theme, "width": width, "ghost": not no_ghost, "mesh_edges": mesh_edges}
+    options: dict[str, Any] = {
+        "theme": theme, "width": width, "ghost": not no_ghost, "mesh_edges": mesh_edges, "node_lines": node_lines,
+        "showing": Showing(tuple(hide or ()), tuple(only or ()), _plane(cut) if cut else None),
+    }
     with progress_bar() as progress:
         study = opened.study(first, None, progress)
         if against:
@@ -76,7 +87,7 @@ def animate(
         elif suffix == ".png":
             save_png(picture, target, phase * 3.141592653589793 / 180, progress)
         else:
-            save_gif(picture, target, progress)
+            (save_mp4 if suffix == ".mp4" else save_gif)(picture, target, progress)
     if as_json:
         answer({"file": target, "note": picture.note.__dict__, "magnification": picture.magnification})
         return
@@ -87,3 +98,22 @@ def _number(text: str) -> int:
     if not text.isdigit() or int(text) < 1:
         raise typer.BadParameter(f"'{text}' is not a mode number", param_hint="--against")
     return int(text)
+
+
+def _plane(text: str) -> Any:
+    """ "x=120mm" or "1,0,1=120mm": a normal, and how far along it the plane lies, in a stated unit."""
+    from viewer.loaders.dossier_schema import LENGTHS
+    from viewer.scene.section import Plane
+
+    found = re.fullmatch(r"\s*([^=]+?)\s*=\s*([-+]?[0-9.]+(?:[eE][-+]?[0-9]+)?)\s*([a-z]+)\s*", text)
+    axes = {"x": (1.0, 0.0, 0.0), "y": (0.0, 1.0, 0.0), "z": (0.0, 0.0, 1.0)}
+    try:
+        if found is None or found[3] not in LENGTHS:
+            raise ValueError
+        normal = axes.get(found[1]) or tuple(float(part) for part in found[1].split(","))
+        return Plane(normal, float(found[2]) * LENGTHS[found[3]])
+    except ValueError:
+        raise typer.BadParameter(
+            f"'{text}' is no plane: write x=120mm, or 1,0,1=120mm with a normal; units: {', '.join(LENGTHS)}",
+            param_hint="--cut",
+        ) from None

@@ -12,10 +12,11 @@ _HOME = {
     "RenderRequest": "request",
     "image": "stills",
     "save_gif": "gif_loop",
+    "save_mp4": "video",
     "save_png": "stills",
     "save_strip": "strip",
 }
-__all__ = ["RenderRequest", "image", "save_gif", "save_png", "save_strip"]
+__all__ = ["RenderRequest", "image", "save_gif", "save_mp4", "save_png", "save_strip"]
 
 
 def __getattr__(name: str) -> Any:

@@ -9,7 +9,7 @@ from viewer.errors import ExportError
 from viewer.jobs import SILENT, Progress, in_child
 from viewer.scene.picture import Picture
 
-KINDS = ("gif", "png", "strip")
+KINDS = ("gif", "mp4", "png", "strip")
 
 
 @dataclass(frozen=True, eq=False)
@@ -34,9 +34,8 @@ class RenderRequest:
 
         if self.kind == "png":
             return export.save_png(self.picture, self.path, self.phase, progress)
-        if self.kind == "gif":
-            return export.save_gif(self.picture, self.path, progress)
-        return export.save_strip(self.picture, self.path, progress)
+        save = {"gif": export.save_gif, "mp4": export.save_mp4, "strip": export.save_strip}[self.kind]
+        return save(self.picture, self.path, progress)
 
     def write_in_child(self, progress: Progress = SILENT) -> Path:
         """Draw and write in a child process, killed at once when cancelled; returns the path."""

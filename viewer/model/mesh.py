@@ -8,6 +8,7 @@ from functools import cached_property
 
 import numpy as np
 
+from viewer.cells import Skin, skin
 from viewer.model.arrays import Array, frozen, frozen_map
 
 
@@ -87,6 +88,11 @@ class Mesh:
         for block in self.blocks:
             used[block.nodes.ravel()] = True
         return frozen(np.flatnonzero(used))
+
+    @cached_property
+    def skin(self) -> Skin:
+        """The drawable outside: outer faces of solids, surface cells, line cells."""
+        return skin([(block.kind, block.nodes) for block in self.blocks])
 
     @cached_property
     def _row_of_id(self) -> dict[int, int]:

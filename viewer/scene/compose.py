@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
+from dataclasses import replace
 from typing import Any
 
 import numpy as np
@@ -12,9 +13,12 @@ from viewer.insight.correlate import shared_turn
 from viewer.insight.scale import Scale, common_scale
 from viewer.model.design import LumpedMass
 from viewer.scene.figures import digits
+from viewer.scene.node_lines import lines_of
+from viewer.scene.node_lines import words as lines_words
 from viewer.scene.note_layout import note_height, scale_note
 from viewer.scene.palette import energy_top
-from viewer.scene.picture import Body, Magnified, MassMark, Picture, PointMark, SupportMark
+from viewer.scene.picture import Body, Magnified, MassMark, Picture, PointMark, SupportMark, View
+from viewer.scene.showing import Showing
 from viewer.scene.surface import drawn_areas
 from viewer.scene.tokens import BASE_WIDTH
 from viewer.scene.view import side_height
@@ -22,6 +26,7 @@ from viewer.workspace import Study
 
 # Height ÷ width, so that 960 wide gives multiples of 16 (video needs them).
 SINGLE, OVERLAY = 720 / 960, 640 / 960
+WHOLE = Showing()
 SPRINGS_WORTH_SAYING = 0.005     # share of the strain energy
 
 
@@ -33,9 +38,13 @@ def single_picture(
     peak_percent: float | None = None,
     energy: bool = True,
     width: int = 960,
+    showing: Showing = WHOLE,
+    node_lines: bool = False,
     **look: Any,
 ) -> Picture:
     """The picture of mode number ``mode`` (from 1). ``look``: theme, ghost, mesh_edges, view of ``Picture``.
+
+    ``showing`` leaves parts out; ``node_lines`` draws where a standing mode does not move.
 
     ``RefusedError`` when true scale is asked for and no size is known; ``InputError`` for a mode that is not there.
     """
@@ -49,9 +58,10 @@ def single_picture(
         scale,
         [study.condition, *_energy_remarks(study, index, energy)],
     )
+    shown, said = _shown([body], showing, node_lines, look)
     return Picture(
-        bodies=(body,),
-        note=note,
+        bodies=shown,
+        note=replace(note, drawing=(*note.drawing, *said)),
         magnification=scale.magnification,
         energy_top=_top([body]),
         energy_caution=_caution([study], [index], [body]),
@@ -73,10 +83,13 @@ def pair_picture(
     energy: bool = True,
     width: int = 960,
     paired_by: str = "",
+    showing: Showing = WHOLE,
+    node_lines: bool = False,
     **look: Any,
 ) -> Picture:
     """The picture of two modes of two designs, ``layout`` "side" or "overlay", on one colour scale.
 
+    ``showing`` and ``node_lines`` as for one mode.
     ``paired_by`` says in the note who or what decided that these two correspond.
     """
     studies, modes = (first, second), (first_mode, second_mode)
@@ -108,9 +121,10 @@ def pair_picture(
         one_colour_scale=len(coloured) == 2,
         size_basis=basis,
     )
+    shown, said = _shown(bodies, showing, node_lines, look)
     picture = Picture(
-        bodies=bodies,
-        note=note,
+        bodies=shown,
+        note=replace(note, drawing=(*note.drawing, *said)),
         layout=layout,
         magnification=scales[0].magnification,
         energy_top=_top(bodies),
@@ -123,6 +137,18 @@ def pair_picture(
     if layout == "overlay":
         return picture
     return picture.with_(height=_height(width, side_height(picture, note_height(picture)) / BASE_WIDTH))
+
+
+def _shown(
+    bodies: Sequence[Body], showing: Showing, node_lines: bool, look: Mapping[str, Any]
+) -> tuple[tuple[Body, ...], tuple[str, ...]]:
+    """The bodies as far as they are shown, with their node lines, and what the note says about it."""
+    said = list(showing.words)
+    if node_lines:
+        bodies = [replace(body, node_lines=lines_of(body)) for body in bodies]
+        told = [lines_words(body.node_lines) for body in bodies]
+        said += told[:1] if len(set(told)) == 1 else [f"{b.name}: {t}" for b, t in zip(bodies, told, strict=True)]
+    return showing.parts(bodies, look.get("view", View()).toward_eye), tuple(said)
 
 
 def _sizes(studies: Sequence[Study], indices: Sequence[int]) -> tuple[list[float], str]:
@@ -157,7 +183,7 @@ def _body(study: Study, index: int, scale: Scale, turn: complex, energy: bool) -
         else:
             point = carried.item
             label = ": ".join(part for part in (point.effect or point.name, point.direction_word) if part)
-            points.append(PointMark(label, carried.position, point.direction, motion))
+            points.append(PointMark(label, carried.position, point.direction, motion, carried.rows))
     density = None
     if energy and study.energies is not None and study.has_strain(index):
         density = study.energies.density(index)

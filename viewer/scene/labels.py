@@ -151,7 +151,7 @@ def cover(picture: Picture, frame: Frame, surfaces: Sequence[Surface] | None = N
     rows, columns = int(np.ceil(frame.height / CELL)), int(np.ceil(frame.width / CELL))
     grid = np.zeros((rows, columns), bool)
     for index, (body, pieces) in enumerate(zip(picture.bodies, marks.mark_pieces(picture), strict=True)):
-        surface = surface_of(body.mesh) if surfaces is None else surfaces[index]
+        surface = surface_of(body.mesh, body.skin) if surfaces is None else surfaces[index]
         rest, shape = body.mesh.points[surface.nodes], body.shape[surface.nodes]
         for phase in cycle_phases(body):
             at = frame.project(positions(rest, shape, body.factor, phase), index)

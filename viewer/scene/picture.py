@@ -10,6 +10,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
+from viewer.cells import Skin
 from viewer.model.arrays import Array, frozen
 from viewer.model.mesh import Mesh
 
@@ -38,12 +39,24 @@ class MassMark:
 
 @dataclass(frozen=True, eq=False)
 class PointMark:
-    """A functional point with its sensitive direction: ring and double arrow, with a label."""
+    """A functional point with its sensitive direction: ring and double arrow, with a label.
+
+    footprint  node rows that carry it, when known: the mark goes where none of them is shown
+    """
 
     label: str
     position: Array
     direction: Array
     motion: Array
+    footprint: Array | None = None
+
+
+@dataclass(frozen=True, eq=False)
+class NodeLines:
+    """Lines are drawn where a standing mode does not move along ``direction`` (3,) unit; None: along the surface's
+    own normal."""
+
+    direction: Array | None
 
 
 @dataclass(frozen=True, eq=False)
@@ -53,6 +66,7 @@ class Body:
     shape    (n_nodes, 3) float64 or complex128, rows as in ``mesh.points``
     factor   drawn metres per unit of the shape
     density  (n_cells,) strain-energy density ÷ the body's mean by cell row, or None: plain body
+    skin     what is drawn, over rows of ``mesh.points``; None: the skin of the whole mesh (see ``drawn``)
     """
 
     name: str
@@ -64,6 +78,13 @@ class Body:
     supports: tuple[SupportMark, ...] = ()
     masses: tuple[MassMark, ...] = ()
     points: tuple[PointMark, ...] = ()
+    skin: Skin | None = None
+    node_lines: NodeLines | None = None
+
+    @property
+    def drawn(self) -> Skin:
+        """The skin that is drawn."""
+        return self.mesh.skin if self.skin is None else self.skin
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "shape", frozen(self.shape, shape=(self.mesh.n_nodes, 3)))

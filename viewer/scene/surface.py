@@ -14,7 +14,7 @@ import numpy as np
 from scipy.sparse import csr_matrix
 from scipy.sparse.csgraph import connected_components
 
-from viewer.cells import KINDS, Skin, skin
+from viewer.cells import KINDS, Skin
 from viewer.model.arrays import Array
 from viewer.model.mesh import Mesh
 from viewer.scene.tokens import CREASE_DEGREES
@@ -108,7 +108,7 @@ class Surface:
 
 def drawn_areas(mesh: Mesh) -> Array:
     """(n_cells,) area in m² that is drawn of each cell, zero inside solids; in a mesh of lines alone, m of length."""
-    found = skin([(block.kind, block.nodes) for block in mesh.blocks])
+    found = mesh.skin
     if len(found.faces) == 0:
         a, b = mesh.points[found.edges].transpose(1, 0, 2)
         return np.bincount(found.edge_cell, np.linalg.norm(b - a, axis=1), minlength=mesh.n_cells)
@@ -116,16 +116,16 @@ def drawn_areas(mesh: Mesh) -> Array:
     return np.bincount(found.cell, areas, minlength=mesh.n_cells)
 
 
-def surface_of(mesh: Mesh) -> Surface:
-    """The drawn surface of ``mesh``, from the skin of its cells; creases are those of the undeformed shape."""
-    found = skin([(block.kind, block.nodes) for block in mesh.blocks])
+def surface_of(mesh: Mesh, found: Skin | None = None) -> Surface:
+    """The drawn surface of ``mesh``; creases are those of the undeformed shape. ``found``: the part of its skin to
+    draw, over rows of its points."""
     rank = np.zeros(mesh.n_nodes, np.int8)
     for block in mesh.blocks:
         kind = KINDS[block.kind]
         rank[block.nodes[:, kind.n_corners :]] = 2
         for _, _, *middle in kind.edges:
             rank[block.nodes[:, middle]] = 1
-    return build(mesh.points, found, rank)
+    return build(mesh.points, mesh.skin if found is None else found, rank)
 
 
 def build(points: Array, found: Skin, rank: Array) -> Surface:

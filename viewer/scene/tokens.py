@@ -75,6 +75,7 @@ OVERLAY_DASHED = 2.6
 OVERLAY_GHOST = 1.3
 FLAP_LINE = 2.4
 BEAM = 3.0
+NODE_LINE, NODE_CASING = 2.4, 5.4
 HIDDEN_OPACITY = 0.45          # hidden parts of the overlay's dashed contour
 OVERLAY_TINT = 0.30            # teal in body base
 FLAP_TINT = 0.30

@@ -85,7 +85,7 @@ def _drawn(picture: Picture) -> list[tuple[Array, Array]]:
     """(points (n, 3), drawn amplitude (n, 3)), m, of bodies and marks."""
     found = [(piece.points, piece.move) for pieces in mark_pieces(picture) for piece in pieces]
     for body in picture.bodies:
-        rows = body.mesh.used_nodes
+        rows = np.unique(np.concatenate([body.drawn.faces.ravel(), body.drawn.edges.ravel()]))
         if len(rows):
             found.append((body.mesh.points[rows], body.factor * body.shape[rows]))
     return found or [(np.zeros((1, 3)), np.zeros((1, 3)))]
@@ -127,7 +127,7 @@ def fit(
 
 
 def side_height(picture: Picture, band_height: float) -> int:
-    """Height in sheet pixels, a multiple of 16, at which the bodies of a side-by-side picture fill their viewports."""
+    """Height in sheet pixels, a multiple of 16, at which bodies side by side fill their viewports."""
     low, high = scene_box(picture)
     size, wide = _extent(low, high)
     boxes = panes(picture, band_height, wide)

@@ -11,6 +11,7 @@ from vtkmodules.vtkRenderingCore import vtkActor, vtkPolyDataMapper, vtkRenderer
 from viewer.model.arrays import Array
 from viewer.scene import contour, ghost, tokens
 from viewer.scene.motion import displacement
+from viewer.scene.node_lines import crossings
 from viewer.scene.palette import energy_ramp, energy_share, mix, pick
 from viewer.scene.picture import Body, Picture
 from viewer.scene.surface import Surface
@@ -20,6 +21,7 @@ from viewer.stage.segments import Segments
 
 LIFT = 1.5                     # px: lines stand this far before the surface, so that they do not sink into it
 GHOST_LIFT = 0.5               # px: less, so that the contour wins where body and ghost coincide
+CASED_LIFT = (2.0, 2.5)        # px: casing and core of node lines
 DASHED_LIFT = 3.0              # px: more, so that the compared contour wins where both designs coincide
 
 
@@ -129,6 +131,11 @@ class BodyActors:
             thick = tokens.OVERLAY_GHOST if tint else tokens.GHOST
             self._ghost = Segments(renderer, theme.ghost, scale * thick, origin)
         self._ghost_eye = np.zeros(3)
+        self._still = crossings(body, surface)
+        self._still_lines = tuple(
+            Segments(renderer, colour, scale * width, origin)
+            for colour, width in ((theme.halo, tokens.NODE_CASING), (theme.ink, tokens.NODE_LINE))
+        ) if len(self._still.nodes) else ()
 
     def draw(self, phase: float, camera: Camera) -> None:
         """Go to ``phase``; contour, and the ghost when the camera has turned, are chosen for ``camera``."""
@@ -140,6 +147,8 @@ class BodyActors:
         self._contour.show(raised[contour.contour(surface.edges, normals, camera.toward_eye)])
         if self._beams is not None:
             self._beams.show(raised[surface.lines], self._beam_colours)
+        for line, height in zip(self._still_lines, CASED_LIFT, strict=False):
+            line.show(self._still.segments(points) + np.float32(height / LIFT) * lift)
         if self._mesh is not None:
             median = contour.median_length(self._motion.rest, surface.outline)
             dense = median <= tokens.MESH_EDGE_MEDIAN * camera.metres_per_pixel

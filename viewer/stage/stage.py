@@ -16,7 +16,7 @@ from vtkmodules.vtkRenderingCore import vtkLight, vtkRenderer
 from viewer.model.arrays import Array
 from viewer.scene import view
 from viewer.scene.marks import mark_pieces
-from viewer.scene.picture import Picture, View
+from viewer.scene.picture import Body, Picture, View
 from viewer.scene.sheet import SheetPlan, note_height, plan_sheet
 from viewer.scene.surface import Surface, surface_of
 from viewer.scene.tokens import BASE_WIDTH, THEMES, rgb
@@ -54,7 +54,7 @@ class Stage:
 
     def show(self, picture: Picture, *, keep_camera: bool = False) -> None:
         """Replace the picture; surfaces of meshes that were already shown are kept."""
-        known = {id(body.mesh): surface for body, surface in zip(self.picture.bodies, self._surfaces, strict=True)}
+        known = {_drawing(body): surface for body, surface in zip(self.picture.bodies, self._surfaces, strict=True)}
         camera = self.camera() if keep_camera else None
         self._clear()
         self.picture = picture
@@ -107,12 +107,12 @@ class Stage:
 
     # ------------------------------------------------------------------ building
 
-    def _build(self, known: dict[int, Surface]) -> None:
+    def _build(self, known: dict[tuple[int, int], Surface]) -> None:
         picture = self.picture
         for body in picture.bodies:
-            if id(body.mesh) not in known:
-                known[id(body.mesh)] = surface_of(body.mesh)
-        self._surfaces = [known[id(body.mesh)] for body in picture.bodies]
+            if _drawing(body) not in known:
+                known[_drawing(body)] = surface_of(body.mesh, body.skin)
+        self._surfaces = [known[_drawing(body)] for body in picture.bodies]
         camera, self._boxes = view.fit(
             picture, note_height(picture) if self._bare is None else 0.0, bare=self._bare is not None
         )
@@ -201,6 +201,11 @@ class Stage:
         eye.SetViewUp(*camera.up)
         eye.SetParallelScale((bottom - top) / 2 * camera.metres_per_pixel)
         eye.SetClippingRange(radius, 3 * radius)
+
+
+def _drawing(body: Body) -> tuple[int, int]:
+    """What tells surfaces apart while their bodies live: mesh and the part of it that is drawn."""
+    return id(body.mesh), id(body.drawn)
 
 
 def light(renderer: vtkRenderer) -> None:
