@@ -8,6 +8,7 @@ report says so.
 from __future__ import annotations
 
 import functools
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -119,7 +120,8 @@ def without_carriers(raw: RawMesh) -> RawMesh:
     note = f"{words} left out: they lie on other cells and carry only groups"
     if moved:
         note += f"; node groups now: {', '.join(moved)}"
-    return RawMesh(raw.points, blocks, raw.node_ids, node_groups, cell_groups, [*raw.notes, note])
+    notes = [*raw.notes, note]
+    return replace(raw, blocks=blocks, node_groups=node_groups, cell_groups=cell_groups, notes=notes)
 
 
 def _corner_sets(blocks: list[RawBlock], size: int) -> dict[int, Array]:

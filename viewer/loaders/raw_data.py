@@ -38,7 +38,10 @@ class RawBlock:
 
 @dataclass
 class RawMesh:
-    """A mesh as a format found it: points in the file's unit, groups as rows, nothing checked."""
+    """A mesh as a format found it: points in the file's unit, groups as rows, nothing checked.
+
+    ``length_unit``: metres to the file's unit of length if the file itself states it.
+    """
 
     points: Array
     blocks: list[RawBlock]
@@ -46,17 +49,25 @@ class RawMesh:
     node_groups: dict[str, Array] = field(default_factory=dict)
     cell_groups: dict[str, Array] = field(default_factory=dict)
     notes: list[str] = field(default_factory=list)
+    warnings: list[str] = field(default_factory=list)
+    length_unit: float | None = None
 
 
 @dataclass
 class RawModes:
-    """Mode shapes as a format found them; rows as in the file, ``node_ids`` None when the file has none."""
+    """Mode shapes as a format found them; rows as in the file, ``node_ids`` None when the file has none.
+
+    ``length_unit`` as in ``RawMesh``; ``cell_energy``: element ids (k,) (None: the cells in the order of the mesh)
+    and strain energies (modes, k) that the file gives.
+    """
 
     shapes: ArrayShapes | FileShapes
     freq_hz: Array | None
     damping: Array | None = None
     node_ids: Array | None = None
     mass_normalised: bool = False
+    length_unit: float | None = None
+    cell_energy: tuple[Array | None, Array] | None = None
 
 
 @dataclass(frozen=True)
@@ -81,7 +92,8 @@ def finish_mesh(raw: RawMesh, path: str | os.PathLike[str], length_unit: float) 
     if np.abs(points).max() > _LARGEST_COORDINATE:
         row = int(np.argmax(np.abs(points).max(axis=1)))
         raise LoadError("a coordinate is beyond reason", file=path, place=f"point {row + 1}", found=str(points[row]))
-    notes, warnings = list(raw.notes), []
+    notes, warnings = list(raw.notes), list(raw.warnings)
+    length_unit = _unit(raw.length_unit, length_unit, path, notes)
     blocks, flipped = _checked_blocks(raw.blocks, points, path)
     node_ids = _ids(raw.node_ids, len(points), "node", path, notes)
     if flipped:
@@ -120,6 +132,7 @@ def finish_modes(raw: RawModes, mesh: Mesh, path: str | os.PathLike[str], length
     shapes = raw.shapes
     if shapes.count == 0:
         raise LoadError("holds no mode", file=path)
+    length_unit = _unit(raw.length_unit, length_unit, path, [])
     freq = _per_mode(raw.freq_hz, "freq_hz", shapes.count, path)
     if (freq < 0).any():
         raise LoadError(
@@ -142,7 +155,9 @@ def finish_modes(raw: RawModes, mesh: Mesh, path: str | os.PathLike[str], length
     else:
         shapes = _arranged(shapes, rows, length_unit, path)
     known = raw.mass_normalised and length_unit == 1.0
-    return ModeSet(mesh.node_ids, freq, shapes, damping, "mass" if known else "unknown", "imported", str(path))
+    energy = None if raw.cell_energy is None else _cell_energy(*raw.cell_energy, shapes.count, mesh, path)
+    normalisation = "mass" if known else "unknown"
+    return ModeSet(mesh.node_ids, freq, shapes, damping, normalisation, "imported", str(path), energy)
 
 
 def kinds_by_vtk() -> Mapping[int, str]:
@@ -165,6 +180,46 @@ def finite_shapes(values: Array, what: str, path: object) -> Array:
 
 
 # --- checks ---
+
+
+def _unit(stated: float | None, given: float, path: object, notes: list[str]) -> float:
+    """Metres to the unit of length: what the file states; asking for another one is an error (1 asks for none)."""
+    if stated is None or abs(stated / given - 1) < 1e-4:
+        return given
+    if given != 1.0:
+        raise LoadError(
+            "the unit of length is stated twice and differs",
+            file=path,
+            found=f"{stated:g} m in the file, {given:g} m beside it",
+            do="leave the unit out where the file is named, or mend the units in the file",
+        )
+    notes.append(f"the file states its unit of length: {stated:g} m")
+    return stated
+
+
+def _cell_energy(ids: Array | None, values: Array, count: int, mesh: Mesh, path: object) -> Array | None:
+    """(modes, n_cells) by cell row, NaN where none is given; None when no cell of the mesh has any."""
+    ids = mesh.cell_ids if ids is None else _ids(ids, values.shape[1], "element", path, [])
+    if values.shape != (count, len(ids)):
+        raise LoadError(
+            "the strain energies do not fit the modes and cells",
+            file=path,
+            found=str(values.shape),
+            expected=f"({count}, {len(ids)})",
+        )
+    order = np.argsort(ids, kind="stable")
+    rows = order[np.minimum(np.searchsorted(ids, mesh.cell_ids, sorter=order), len(ids) - 1)]
+    there = ids[rows] == mesh.cell_ids
+    values = np.where(there, _numbers(values, "strain energies", path)[:, rows], np.nan)
+    if np.isinf(values).any() or (values < 0).any():
+        mode, cell = np.argwhere(np.isinf(values) | (values < 0))[0]
+        raise LoadError(
+            "a strain energy is negative or not finite",
+            file=path,
+            place=f"mode {mode + 1}, element {mesh.cell_ids[cell]}",
+            found=str(values[mode, cell]),
+        )
+    return values if np.isfinite(values).any() else None
 
 
 def _numbers(values: Array, what: str, path: object) -> Array:

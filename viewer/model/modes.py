@@ -75,6 +75,8 @@ class ModeSet:
     damping        (m,) damping ratios (1 = critical) or None when unknown
     normalisation  "mass" (unit modal mass, shapes in m/√kg), "unknown"
     origin         "computed", "imported", "measured"
+    cell_energy    (m, n_cells) strain energy by cell row that the source of the modes gave along, in its own unit and
+                   at the size of its shapes, NaN where it gave none; None: nothing given
     """
 
     node_ids: Array
@@ -84,12 +86,16 @@ class ModeSet:
     normalisation: str = "unknown"
     origin: str = "imported"
     source: str = ""
+    cell_energy: Array | None = None
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "node_ids", frozen(self.node_ids, np.int64, shape=(None,)))
         object.__setattr__(self, "freq_hz", frozen(self.freq_hz, np.float64, shape=(self.shapes.count,)))
         if self.damping is not None:
             object.__setattr__(self, "damping", frozen(self.damping, np.float64, shape=(self.shapes.count,)))
+        if self.cell_energy is not None:
+            energy = frozen(self.cell_energy, np.float64, shape=(self.shapes.count, None))
+            object.__setattr__(self, "cell_energy", energy)
 
     @property
     def count(self) -> int:
