@@ -30,10 +30,6 @@ from viewer.loaders.msh_views import NodeView, split_views
 
 _SMALLEST_LIMIT, _SHARE_OF_MEMORY = 4 << 30, 0.75
 _XML_SUFFIXES = (".xml", ".xdmf", ".xmf", ".vtu", ".vtp")
-# Things in text decks that meshio skips in silence and that change the meaning of what follows.
-_NOT_UNDERSTOOD = re.compile(
-    rb"^\s*(\*?INCLUDE\b|\*(?:TRANSFORM|SYSTEM)\b|CORD[12][RCS]\b)[^\r\n]{0,60}", re.I | re.M
-)
 _LEGACY_COUNT = re.compile(
     rb"(?:^|\n)(POINTS|CELLS|CELL_TYPES|POLYGONS|VERTICES|LINES|TRIANGLE_STRIPS|POINT_DATA|CELL_DATA)[ \t]+(-?\d+)"
 )
@@ -279,16 +275,6 @@ def _check_text(path: Path) -> None:
                     )
         elif suffix in (".stl", ".ply"):
             _check_surface(suffix, data)
-        elif data[:4096].count(b"\0") == 0:
-            match = _NOT_UNDERSTOOD.search(data)
-            if match:
-                line = data[: match.start(1)].count(b"\n") + 1
-                raise LoadError(
-                    "holds something that is not understood and would change the mesh",
-                    place=f"line {line}",
-                    found=match[0].decode("ascii", "replace").strip(),
-                    do="resolve includes and local coordinate systems, or export .vtu or .msh",
-                )
 
 
 def _check_surface(suffix: str, data: mmap.mmap) -> None:
