@@ -106,11 +106,10 @@ class Mesh:
         """Ascending node rows that the given cells use."""
         picked = np.zeros(self.n_cells, bool)
         picked[cell_rows] = True
-        parts = [
-            block.nodes[picked[start : start + len(block)]].ravel()
-            for block, start in zip(self.blocks, self.block_starts[:-1], strict=True)
-        ]
-        return np.unique(np.concatenate(parts)) if parts else np.empty(0, np.int64)
+        used = np.zeros(self.n_nodes, bool)
+        for block, start in zip(self.blocks, self.block_starts[:-1], strict=True):
+            used[block.nodes[picked[start : start + len(block)]].ravel()] = True
+        return np.flatnonzero(used)
 
     def with_(self, **changes) -> Mesh:
         """A copy with some fields replaced."""

@@ -33,6 +33,8 @@ END_ON = 0.3                # share of its length at which an arrow, seen almost
 _INNER = 0.2                # "corner" measure below which a held point may be inside a held area
 _ONE_SIDED = 0.6            # share in which the cells around held nodes agree on the side where the body is
 _FEW = 4                    # neighbours that a point inside an area has at least
+_MANY = 4000                # held nodes above which one in each cube of a grid is enough
+_GRAIN = 0.25               # edge of these cubes, in peg steps
 _WORLD = np.eye(3)
 
 
@@ -115,6 +117,9 @@ def peg_places(mesh: Mesh, rows: Array, diagonal: float) -> list[tuple[Array, Ar
     on the sheet's lower side.
     """
     rows = np.unique(np.asarray(rows, np.int64))
+    if len(rows) > _MANY:
+        grid = np.floor(mesh.points[rows] / (_GRAIN * PEG_STEP * diagonal)).astype(np.int64)
+        rows = rows[np.sort(np.unique(grid, axis=0, return_index=True)[1])]
     size, held = PEG * diagonal, mesh.points[rows]
     corner, inner = _surroundings(held, PEG_STEP * diagonal)
     inward, count = _inward(mesh, rows)
@@ -161,16 +166,22 @@ def _surroundings(points: Array, reach: float) -> tuple[Array, Array]:
     inner   (n,) bool: others lie all around in two directions, so that the point is inside a held area, not on its
             outline; never all of them
     """
-    corner, inner = np.zeros(len(points)), np.zeros(len(points), bool)
+    n = len(points)
     tree = cKDTree(points)
-    if len(points) > _FEW:
+    if n > _FEW:
         reach = max(reach, 1.5 * float(np.median(tree.query(points, [_FEW + 1])[0])))
-    for k, near in enumerate(tree.query_ball_point(points, reach)):
-        away = points[near] - points[k]
-        corner[k] = np.linalg.norm(away.mean(axis=0)) / reach
-        if corner[k] < _INNER and len(near) > _FEW:
-            widths = np.linalg.svd(away, compute_uv=False)
-            inner[k] = widths[1] > 0.5 * widths[0]
+    pairs = tree.query_pairs(reach, output_type="ndarray")
+    a, b = np.concatenate([pairs, pairs[:, ::-1]]).T
+    away = points[b] - points[a]
+    count = 1 + np.bincount(a, minlength=n)                            # the point itself is one of those around
+    total = np.stack([np.bincount(a, part, n) for part in away.T], axis=1)
+    corner = np.linalg.norm(total / count[:, None], axis=1) / reach
+    spreads = np.empty((n, 3, 3))
+    for i in range(3):
+        for j in range(3):
+            spreads[:, i, j] = np.bincount(a, away[:, i] * away[:, j], n)
+    widths = np.sqrt(np.maximum(np.linalg.eigvalsh(spreads), 0.0))     # ascending
+    inner = (corner < _INNER) & (count > _FEW) & (widths[:, 1] > 0.5 * widths[:, 2])
     return corner, inner if not inner.all() else ~inner
 
 

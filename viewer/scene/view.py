@@ -13,6 +13,8 @@ from viewer.scene.motion import swing
 from viewer.scene.picture import Picture, View
 from viewer.scene.primitives import Box, Frame, sheet_size
 
+Drawn = list[tuple[Array, Array]]      # points and drawn amplitudes, both (n, 3) m
+
 WIDE = 3.0                     # a body wider than this on the screen is compared stacked, not left and right
 KEY_TOP = 60                   # left and right: the title key's height
 LEAST_BODY = 130               # side by side: least height kept for a body and its labels
@@ -64,9 +66,18 @@ def axes(view: View) -> tuple[Array, Array, Array]:
 def scene_box(picture: Picture) -> Array:
     """(2, 2) lower and upper corner, along right and up of the picture's view in m, of everything drawn of all
     bodies and their marks over a cycle: exact, since each node's largest motion along an axis is."""
-    right, up, _ = axes(picture.view)
+    return _screen_box(_drawn(picture), picture.view)
+
+
+def shown_box(picture: Picture) -> Array:
+    """(2, 3) bounding box in m of everything drawn over a cycle, for clipping planes."""
+    return _space_box(_drawn(picture))
+
+
+def _screen_box(drawn: Drawn, view: View) -> Array:
+    right, up, _ = axes(view)
     low, high = np.full(2, np.inf), np.full(2, -np.inf)
-    for points, move in _drawn(picture):
+    for points, move in drawn:
         for k, axis in enumerate((right, up)):
             rest, reach = points @ axis, swing(move, axis)
             low[k] = min(low[k], np.min(rest - reach))
@@ -74,14 +85,12 @@ def scene_box(picture: Picture) -> Array:
     return np.array([low, high])
 
 
-def shown_box(picture: Picture) -> Array:
-    """(2, 3) bounding box in m of everything drawn over a cycle, for clipping planes."""
-    drawn = _drawn(picture)
+def _space_box(drawn: Drawn) -> Array:
     low = np.min([np.min(points - np.abs(move), axis=0) for points, move in drawn], axis=0)
     return np.array([low, np.max([np.max(points + np.abs(move), axis=0) for points, move in drawn], axis=0)])
 
 
-def _drawn(picture: Picture) -> list[tuple[Array, Array]]:
+def _drawn(picture: Picture) -> Drawn:
     """(points (n, 3), drawn amplitude (n, 3)), m, of bodies and marks."""
     found = [(piece.points, piece.move) for pieces in mark_pieces(picture) for piece in pieces]
     for body in picture.bodies:
@@ -112,7 +121,8 @@ def fit(
     key) and, above, of the note band (``band_height``); ``bare``: of margins alone.
     """
     right, up, eye = axes(picture.view)
-    low, high = scene_box(picture)
+    drawn = _drawn(picture)
+    low, high = _screen_box(drawn, picture.view)
     size, wide = _extent(low, high)
     boxes = panes(picture, band_height, wide)
     top, bottom = (float(tokens.MARGIN),) * 2 if bare else _furniture(picture, wide)
@@ -121,7 +131,7 @@ def fit(
     scale = float(np.max(size / room))
     middle = (low + high) / 2
     middle[1] += (top - bottom) / 2 * scale            # the body sits in the middle of what is left free
-    depth = float(eye @ shown_box(picture).mean(axis=0))
+    depth = float(eye @ _space_box(drawn).mean(axis=0))
     focus = middle[0] * right + middle[1] * up + depth * eye
     return Camera(focus, right, up, eye, scale), boxes
 
