@@ -81,7 +81,8 @@ def is_true(magnification: float | None) -> bool:
 
 def _single(scale: Scale) -> list[str]:
     if scale.magnification is None:
-        drawn = f"size arbitrary, peak drawn at {digits(scale.drawn_percent, trim=True)} % of the diagonal"
+        percent = digits(scale.drawn_percent, trim=True)
+        drawn = f"size arbitrary, peak ({scale.largest_place}) drawn at {percent} % of the diagonal"
         return [drawn, UNKNOWN, EXAGGERATED]
     largest = f"largest real motion {_real(scale)}, {_where(scale)}"
     if is_true(scale.magnification):
