@@ -131,8 +131,10 @@ def surface_of(mesh: Mesh, found: Skin | None = None) -> Surface:
 def build(points: Array, found: Skin, rank: Array) -> Surface:
     """A surface from a skin over the rows of ``points`` (n, 3), m; ``rank`` (n,) is 0 for corner nodes of cells,
     1 for mid-side nodes, 2 for those in the middle of faces."""
-    nodes, compact = np.unique(np.concatenate([found.faces.ravel(), found.edges.ravel()]), return_inverse=True)
-    tri, lines = compact[: found.faces.size].reshape(-1, 3), compact[found.faces.size :].reshape(-1, 2)
+    nodes = found.nodes
+    compact = np.full(len(points), -1, np.int64)
+    compact[nodes] = np.arange(len(nodes))
+    tri, lines = compact[found.faces], compact[found.edges]
     real = (tri[:, 0] != tri[:, 1]) & (tri[:, 1] != tri[:, 2]) & (tri[:, 2] != tri[:, 0])
     tri, cells = tri[real], found.cell[real]
 
@@ -153,8 +155,8 @@ def build(points: Array, found: Skin, rank: Array) -> Surface:
 
     corners, vertex = _patches(tri, pairs[~feature], beside[~feature])
     edges = Edges(pairs.astype(np.int32), beside.astype(np.int32), feature)
-    outline = np.searchsorted(nodes, found.outline).astype(np.int32)
-    sides = np.isin(pairs[:, 0] * len(nodes) + pairs[:, 1], np.sort(outline, axis=1) @ [len(nodes), 1])
+    outline = compact[found.outline].astype(np.int32)
+    sides = _among(pairs, outline, len(nodes))
     between = tuple(
         _between(tri, corners, pairs[allowed], beside[allowed], rank[nodes], level)
         for level, allowed in ((1, sides), (2, ~sides))
@@ -194,6 +196,15 @@ def _adjacency(tri: Array, n: int) -> tuple[Array, Array, Array, Array]:
         direction[has, side] = low_high[half]
     edge_key = key[order[first]] if len(first) else key
     return np.stack([edge_key // n, edge_key % n], axis=1), beside, direction, count
+
+
+def _among(pairs: Array, others: Array, n: int) -> Array:
+    """(e,) bool: which undirected ``pairs`` (e, 2) of n nodes are among ``others`` (m, 2)."""
+    if not len(others):
+        return np.zeros(len(pairs), bool)
+    key = np.sort(others.min(axis=1).astype(np.int64) * n + others.max(axis=1))
+    wanted = pairs[:, 0] * n + pairs[:, 1]                 # lower node first, as adjacency gives them
+    return key[np.minimum(np.searchsorted(key, wanted), len(key) - 1)] == wanted
 
 
 def _flips(beside: Array, same: Array, n_faces: int) -> Array:

@@ -94,7 +94,7 @@ def _drawn(picture: Picture) -> Drawn:
     """(points (n, 3), drawn amplitude (n, 3)), m, of bodies and marks."""
     found = [(piece.points, piece.move) for pieces in mark_pieces(picture) for piece in pieces]
     for body in picture.bodies:
-        rows = np.unique(np.concatenate([body.drawn.faces.ravel(), body.drawn.edges.ravel()]))
+        rows = body.drawn.nodes
         if len(rows):
             found.append((body.mesh.points[rows], body.factor * body.shape[rows]))
     return found or [(np.zeros((1, 3)), np.zeros((1, 3)))]
