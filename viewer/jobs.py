@@ -10,8 +10,10 @@ from __future__ import annotations
 import contextlib
 import multiprocessing
 import os
+import sys
 import tempfile
 import traceback
+import types
 from collections.abc import Callable, Iterator
 from pathlib import Path
 from typing import Any
@@ -82,7 +84,8 @@ def in_child(function: Callable[..., Any], *args: Any, progress: Progress = SILE
     context = multiprocessing.get_context("spawn")
     mine, theirs = context.Pipe(duplex=False)
     process = context.Process(target=_child, args=(theirs, function, args), daemon=True)
-    process.start()
+    with _no_main_module():
+        process.start()
     theirs.close()
     try:
         while not mine.poll(0.1):
@@ -105,6 +108,17 @@ def in_child(function: Callable[..., Any], *args: Any, progress: Progress = SILE
     if good:
         return answer
     raise answer
+
+
+@contextlib.contextmanager
+def _no_main_module() -> Iterator[None]:
+    """Keep the child from running the caller's script again: plain scripts have no guard against that."""
+    main = sys.modules["__main__"]
+    sys.modules["__main__"] = types.ModuleType("__main__")
+    try:
+        yield
+    finally:
+        sys.modules["__main__"] = main
 
 
 def _child(pipe, function: Callable[..., Any], args: tuple) -> None:
