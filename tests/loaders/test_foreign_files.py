@@ -427,3 +427,18 @@ def test_foreign_file_cut_short(tmp_path, suffix, percent):
     else:  # the cut lies behind the mesh: what is there must be right
         assert np.array_equal(mesh.points, whole.points)
         assert np.array_equal(mesh.blocks[0].nodes, whole.blocks[0].nodes)
+
+
+def test_line_cells_on_edges_stay_when_their_group_is_named_as_beams(tmp_path):
+    """Two curves along the cubes: one says that it is a stiffener, the other carries a support."""
+    cells = [("line", [[0, 1], [1, 2], [4, 5]]), ("hexahedron", cube_rows())]
+    tags = [np.array([1, 1, 2]), np.array([3, 3, 3])]
+    mesh = meshio.Mesh(grid_points(), cells, cell_data={"gmsh:physical": tags, "gmsh:geometrical": tags})
+    mesh.field_data = {"lower stiffener": np.array([1, 1]), "barrier": np.array([2, 1]), "body": np.array([3, 3])}
+    meshio.write(tmp_path / "a.msh", mesh, file_format="gmsh22", binary=True)
+    read, report = read_mesh_report(tmp_path / "a.msh")
+    assert {b.kind: len(b) for b in read.blocks} == {"line2": 2, "hex8": 3}
+    assert read.cell_groups["lower stiffener"].tolist() == [0, 1]
+    assert read.node_groups["barrier"].tolist() == [4, 5]
+    assert any("2 line cells on edges of others kept as beams" in note and "lower stiffener" in note
+               for note in report.notes)  # fmt: skip

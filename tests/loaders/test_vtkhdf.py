@@ -156,7 +156,8 @@ def test_pieces_are_put_together(tmp_path):
         root["Points"] = np.array(
             [[0, 0, 0], [1, 0, 0], [0, 1, 0], [5, 0, 0], [6, 0, 0], [6, 1, 0], [5, 1, 0]], float
         )
-        root["Connectivity"], root["Offsets"], root["Types"] = [0, 1, 2, 0, 1, 2, 3], [0, 3, 0, 4], np.array([5, 9], np.uint8)
+        root["Connectivity"], root["Offsets"] = [0, 1, 2, 0, 1, 2, 3], [0, 3, 0, 4]
+        root["Types"] = np.array([5, 9], np.uint8)
     mesh = read_mesh(tmp_path / "a.vtkhdf")
     assert [(b.kind, b.nodes.tolist()) for b in mesh.blocks] == [("tri3", [[0, 1, 2]]), ("quad4", [[3, 4, 5, 6]])]
     reader = vtkHDFReader()

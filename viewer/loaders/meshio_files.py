@@ -2,12 +2,15 @@
 
 In the formats of mesh generators (all but VTK's own), cells that only lie on others (the boundary triangles of a
 solid, points and curves) carry groups but no matter: they are left out and their groups become node groups, and the
-report says so.
+report says so. Line cells on the edges of others may also be beams that stiffen them: those in a group whose name has
+a word for it (``beam``, ``bar``, ``rod``, ``truss``, ``strut``, ``rib``, ``stringer``, ``stiffener``) stay, and the
+report says that too. In text decks every element was written as one and stays.
 """
 
 from __future__ import annotations
 
 import functools
+import re
 from dataclasses import replace
 from pathlib import Path
 
@@ -23,7 +26,8 @@ from viewer.loaders.vtu_xml import DataArray
 from viewer.loaders.worker_client import shared_worker
 from viewer.model.arrays import Array
 
-_BY_VTK = (".vtk", ".vtu", ".vtp")
+_BY_VTK = (".vtk", ".vtu", ".vtp", ".stl", ".ply", ".obj", ".cgns")
+_BEAM_WORD = re.compile(r"(?<![a-z])(beam|bar|rod|truss|strut|rib|stringer|stiffener)(s|es)?(?![a-z])", re.I)
 
 
 @functools.cache
@@ -88,7 +92,11 @@ def without_carriers(raw: RawMesh) -> RawMesh:
     if top < 1:
         return raw
     known = {n: _corner_sets(raw.blocks, n) for n in (1, 2, 3, 4)}
-    kept, blocks, start = [], [], 0
+    beam_groups = [name for name in raw.cell_groups if _BEAM_WORD.search(name)]
+    beams = np.zeros(sum(len(block.nodes) for block in raw.blocks), bool)
+    for name in beam_groups:
+        beams[raw.cell_groups[name]] = True
+    kept, blocks, start, stiffening = [], [], 0, 0
     dropped: dict[str, int] = {}
     for block in raw.blocks:
         kind = KINDS[block.kind]
@@ -97,12 +105,18 @@ def without_carriers(raw: RawMesh) -> RawMesh:
         carrier = np.zeros(len(rows), bool)
         if kind.dim < top and len(rows):
             carrier = _among(block.nodes[:, : kind.n_corners], known[kind.n_corners][kind.dim])
+            if kind.dim == 1:
+                stiffening += int((carrier & beams[rows]).sum())
+                carrier &= ~beams[rows]
         if carrier.any():
             dropped[block.kind] = dropped.get(block.kind, 0) + int(carrier.sum())
         kept.append(rows[~carrier])
         if not carrier.all():
             ids = None if block.ids is None else block.ids[~carrier]
             blocks.append(RawBlock(block.kind, block.nodes[~carrier], ids))
+    if stiffening:
+        named = ", ".join(f"'{name}'" for name in beam_groups)
+        raw.notes.append(f"{stiffening} line cells on edges of others kept as beams by the name of a group: {named}")
     if not dropped:
         return raw
     old = np.concatenate(kept)

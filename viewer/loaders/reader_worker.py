@@ -13,7 +13,6 @@ from __future__ import annotations
 
 import contextlib
 import json
-import mmap
 import os
 import re
 import sys
@@ -24,36 +23,21 @@ from typing import Any
 
 import numpy as np
 
-from viewer.errors import HingelightError, LoadError
+from viewer.errors import HingelightError
 from viewer.loaders.array_names import group_array, mask
 from viewer.loaders.msh_views import NodeView, split_views
+from viewer.loaders.worker_arrays import Arrays
+from viewer.loaders.worker_guards import check_container
+from viewer.loaders.worker_vtk import read_by_vtk
 
 _SMALLEST_LIMIT, _SHARE_OF_MEMORY = 4 << 30, 0.75
-_XML_SUFFIXES = (".xml", ".xdmf", ".xmf", ".vtu", ".vtp")
-_LEGACY_COUNT = re.compile(
-    rb"(?:^|\n)(POINTS|CELLS|CELL_TYPES|POLYGONS|VERTICES|LINES|TRIANGLE_STRIPS|POINT_DATA|CELL_DATA)[ \t]+(-?\d+)"
-)
-
-
-class Arrays:
-    """Named arrays by section, as in a ``.vtu`` file."""
-
-    def __init__(self) -> None:
-        self.values: dict[tuple[str, str], np.ndarray] = {}
-        self.notes: list[str] = []
-
-    def put(self, section: str, name: str, values: Any) -> None:
-        array = np.asarray(values)
-        if array.dtype.kind in "fiub":
-            array = array.astype(np.uint8) if array.dtype.kind == "b" else array
-            self.values[section, name] = array.astype(array.dtype.newbyteorder("="))
 
 
 def read_by_meshio(path: Path) -> Arrays:
     """Any mesh that meshio reads."""
     import meshio
 
-    _check_text(path)
+    check_container(path)
     _teach_meshio()
     arrays = Arrays()
     tags: list[np.ndarray] = []
@@ -89,61 +73,6 @@ def read_by_meshio(path: Path) -> Arrays:
     for number, names in getattr(mesh, "point_tags", {}).items():
         for name in names:
             _join(arrays, "PointData", name, np.asarray(mesh.point_data["point_tags"]) == number)
-    return arrays
-
-
-def read_by_vtk(path: Path) -> Arrays:
-    """Legacy .vtk files and VTK's XML files."""
-    import pyvista
-    from vtkmodules.vtkCommonCore import vtkOutputWindow, vtkStringOutputWindow
-    from vtkmodules.vtkIOLegacy import vtkGenericDataObjectReader
-    from vtkmodules.vtkIOXML import vtkXMLPolyDataReader, vtkXMLUnstructuredGridReader
-
-    suffix = path.suffix.lower()
-    reader: Any
-    _check_text(path)
-    if suffix == ".vtk":
-        declared = _check_legacy(path)
-        reader = vtkGenericDataObjectReader()
-        for what in ("Scalars", "Vectors", "Tensors", "Normals", "Fields", "TCoords", "ColorScalars"):
-            getattr(reader, f"ReadAll{what}On")()
-    else:
-        declared = None
-        reader = vtkXMLPolyDataReader() if suffix == ".vtp" else vtkXMLUnstructuredGridReader()
-    said, errors = vtkStringOutputWindow(), []
-    vtkOutputWindow.SetInstance(said)
-    reader.AddObserver("ErrorEvent", lambda *_: errors.append(1))
-    reader.SetFileName(str(path))
-    reader.Update()
-    words = said.GetOutput()
-    if isinstance(words, bytes):  # what was said held letters from the damaged file
-        words = words.decode("utf-8", "replace")
-    if errors or "ERR|" in words or reader.GetErrorCode():
-        text = re.sub(r"\s+", " ", words.split("): ", 1)[-1])[:160] or f"error code {reader.GetErrorCode()}"
-        raise LoadError("VTK's reader reports an error", found=text, do="the file may be cut short: write it again")
-    data = reader.GetOutput()
-    if data is None or not hasattr(data, "GetPointData") or data.GetNumberOfPoints() == 0:
-        raise LoadError("holds no mesh with points", found="nothing" if data is None else data.GetClassName())
-    if declared is not None and data.IsA("vtkPointSet") and declared != data.GetNumberOfPoints():
-        raise LoadError(
-            "the number of points is not the one declared",
-            found=str(data.GetNumberOfPoints()),
-            expected=str(declared),
-        )
-    grid = pyvista.wrap(data)
-    grid = grid if isinstance(grid, pyvista.UnstructuredGrid) else grid.cast_to_unstructured_grid()
-    arrays = Arrays()
-    arrays.put("Points", "Points", grid.points)
-    arrays.put("Cells", "types", grid.celltypes)
-    arrays.put("Cells", "offsets", grid.offset[1:])
-    arrays.put("Cells", "connectivity", grid.cell_connectivity)
-    for section, source in (
-        ("PointData", grid.point_data),
-        ("CellData", grid.cell_data),
-        ("FieldData", grid.field_data),
-    ):
-        for name in source:
-            arrays.put(section, name, source[name])
     return arrays
 
 
@@ -254,58 +183,6 @@ def _node_tags_into(tags: list[np.ndarray]) -> Iterator[None]:
     finally:
         for module, original in kept:
             module._read_nodes = original  # type: ignore[union-attr]
-
-
-# --- guards: look before a library does ---
-
-
-def _check_text(path: Path) -> None:
-    suffix = path.suffix.lower()
-    with path.open("rb") as stream, mmap.mmap(stream.fileno(), 0, access=mmap.ACCESS_READ) as data:
-        if suffix in _XML_SUFFIXES:
-            if re.search(rb"<!(DOCTYPE|ENTITY)", data):
-                raise LoadError("declares a document type or entities", do="remove them")
-            for reference in re.findall(rb"[>\s]([^<>\s]+\.(?:h5|hdf5|bin|raw))\b", data):
-                name = reference.decode("utf-8", "replace")
-                if os.path.isabs(name) or ".." in Path(name).parts or ":" in name.split(".h5")[0]:
-                    raise LoadError(
-                        "refers to a file outside its folder",
-                        found=name[:120],
-                        do="put the files together into one folder",
-                    )
-        elif suffix in (".stl", ".ply"):
-            _check_surface(suffix, data)
-
-
-def _check_surface(suffix: str, data: mmap.mmap) -> None:
-    if suffix == ".stl" and not data[:512].lstrip().startswith(b"solid"):
-        count = int.from_bytes(data[80:84], "little")
-        if len(data) != 84 + 50 * count:
-            raise LoadError(
-                "the number of triangles does not fit the file",
-                found=f"{len(data)} bytes",
-                expected=f"{84 + 50 * count} bytes for {count} triangles",
-            )
-    for count in re.findall(rb"\nelement \w+ (\d+)", data[:8192]) if suffix == ".ply" else ():
-        if int(count) > len(data):
-            raise LoadError("declares more than the file can hold", found=count.decode())
-
-
-def _check_legacy(path: Path) -> int | None:
-    """Every declared count against the file's size; the number of points declared, if it is."""
-    points = None
-    with path.open("rb") as stream, mmap.mmap(stream.fileno(), 0, access=mmap.ACCESS_READ) as data:
-        if not data[:256].lower().startswith(b"# vtk datafile"):
-            raise LoadError("is no legacy VTK file", found=repr(data[:20]), expected="# vtk DataFile Version …")
-        for match in _LEGACY_COUNT.finditer(data):
-            word, count = match[1].decode(), int(match[2])
-            if count < 0 or count > len(data):
-                raise LoadError(
-                    "declares more than the file can hold", place=word, found=str(count), expected=f"0 to {len(data)}"
-                )
-            if word == "POINTS" and points is None:
-                points = count
-    return points
 
 
 # --- the loop ---
