@@ -18,7 +18,7 @@ from viewer.model.mesh import Mesh
 from viewer.model.modes import ModeSet
 
 # Modules with SUFFIXES, read_mesh(path, progress), read_modes(path, progress) and perhaps write(path, mesh, modes,
-# progress). They are imported when their suffix turns up. Formats of the worker come last.
+# progress). They are imported when their suffix turns up. Plug-ins come after them, formats of the worker last.
 _OWN = {
     ".vtu": "vtu_files",
     ".vtkhdf": "vtkhdf_files",
@@ -34,10 +34,14 @@ _OWN = {
     ".csv": "csv_tables",
     ".unv": "universal_files",
     ".uff": "universal_files",
+    ".e": "exodus_files",
+    ".exo": "exodus_files",
+    ".ex2": "exodus_files",
 }
 _WRITTEN = (".vtu", ".vtkhdf", ".npz", ".h5", ".hdf5", ".csv", ".unv", ".uff")
 _WORKER = "meshio_files"
-# First bytes that give a container away, whatever the suffix says.
+# First bytes that give a container away, whatever the suffix says; some formats come in either container.
+_EITHER = (".e", ".exo", ".ex2")
 _SIGNATURES = (
     (b"PK\x03\x04", "a zip archive (.npz)", (".npz",)),
     (b"\x89HDF\r\n\x1a\n", "an HDF5 file", (".h5", ".hdf5", ".med", ".vtkhdf")),
@@ -119,13 +123,22 @@ def _module(name: str) -> ModuleType:
 def _through(file: Path, what: str, progress: Progress) -> Any:
     """Call ``what`` of the module that reads ``file``."""
     suffix = file.suffix.lower()
-    name = _OWN.get(suffix, _WORKER)
-    if name == _WORKER and suffix not in _module(_WORKER).suffixes():
-        known = ", ".join(sorted({*_OWN, *_module(_WORKER).suffixes()}))
-        raise LoadError("unknown format", file=file, found=suffix or "no suffix", expected=f"one of: {known}")
     progress.tick(f"reading {file.name}")
+    if suffix not in _OWN:
+        plug_ins = _module("plugin_api").plug_ins()
+        if suffix in plug_ins.by_suffix:
+            return getattr(plug_ins.by_suffix[suffix], what)(file, progress)
+        worked = _module(_WORKER).suffixes()
+        if suffix not in worked:
+            raise LoadError(
+                "unknown format",
+                file=file,
+                found=suffix or "no suffix",
+                expected=f"one of: {', '.join(sorted({*_OWN, *worked, *plug_ins.by_suffix}))}",
+                do="; ".join(plug_ins.faults),
+            )
     try:
-        return getattr(_module(name), what)(file, progress)
+        return getattr(_module(_OWN.get(suffix, _WORKER)), what)(file, progress)
     except OtherReaderNeeded:
         return getattr(_module(_WORKER), what)(file, progress)
 
@@ -165,6 +178,8 @@ def _check_file(file: Path) -> None:
         head = stream.read(16)
     suffix = file.suffix.lower()
     for signature, words, suffixes in _SIGNATURES:
+        if suffix in _EITHER and head.startswith(signature):
+            continue  # the reader looks for itself
         if head.startswith(signature) != (suffix in suffixes) and (suffix in suffixes or suffix in _OWN):
             raise LoadError(
                 "its content is not what its suffix says",
