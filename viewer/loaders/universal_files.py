@@ -67,24 +67,16 @@ def read_mesh(path: Path, progress: Progress = SILENT) -> RawMesh:
 
 def read_modes(path: Path, progress: Progress = SILENT) -> RawModes:
     """Normal and complex modes at nodes, with strain energies of elements where the file has them."""
-    parts = read_universal(path, GEOMETRY | RESULTS, progress)
+    parts = read_universal(path, RESULTS | {15, 164, 781, 2411}, progress)
     found = mode_results(parts)
-    listed, needed = _nodes_of_modes(parts, found)
+    listed = _nodes_of_modes(parts, found)
     is_complex = any(np.iscomplexobj(item.values) for item in found)
     values = np.zeros((len(found), len(listed), 6), complex if is_complex else float)
     for item, into in zip(found, values, strict=True):
         rows, there = rows_of(item.labels, listed)
         if len(np.unique(item.labels)) != len(item.labels):
             raise LoadError("a node has two results in one mode", file=path, place=item.place)
-        missing = np.setdiff1d(needed, item.labels)
-        if item.number == 2414 and len(missing):
-            raise LoadError(
-                f"{len(missing)} nodes have no result in a mode",
-                file=path,
-                place=item.place,
-                found=f"node {missing[0]} is missing",
-                expected="every node, also those that do not move",
-            )
+        _check_missing(item, listed, path)
         into[rows[there], : item.values.shape[1]] = item.values[there]
     turned = values[:, :, 3:]
     masses = np.array([item.modal_mass for item in found])
@@ -244,16 +236,31 @@ def _is_turned(parts: Universal, label: int) -> bool:
     return frame.kind != "cartesian" or not np.allclose(frame.axes, np.eye(3), atol=1e-5)
 
 
-def _nodes_of_modes(parts: Universal, found: list[ResultData]) -> tuple[Array, Array]:
-    """Labels of all nodes that shapes are given on, and of those that must have a result."""
+def _nodes_of_modes(parts: Universal, found: list[ResultData]) -> Array:
+    """Labels of all nodes: those of the file in its order, then those that only the shapes name."""
     in_results = np.unique(np.concatenate([item.labels for item in found]))
-    in_file = [section.labels for section in _newest(parts)]
-    if not in_file:
-        return found[0].labels if len(found[0].labels) == len(in_results) else in_results, in_results
-    labels = np.concatenate(in_file)
-    labels = np.concatenate([labels, np.setdiff1d(in_results, labels)])
-    used = np.unique(np.concatenate([np.empty(0, np.int64), *(run.nodes.ravel() for run in parts.elements)]))
-    return labels, used if len(used) else in_results
+    if not _newest(parts):
+        return found[0].labels if len(found[0].labels) == len(in_results) else in_results
+    labels = np.concatenate([section.labels for section in _newest(parts)])
+    return np.concatenate([labels, np.setdiff1d(in_results, labels)])
+
+
+def _check_missing(item: ResultData, listed: Array, path: Path) -> None:
+    """Every node in use must have an entry of data set 2414."""
+    missing = np.setdiff1d(listed, item.labels)
+    if item.number == 55 or not len(missing):
+        return
+    elements = read_universal(path, frozenset({2412})).elements
+    if elements:
+        missing = np.intersect1d(missing, np.concatenate([run.nodes.ravel() for run in elements]))
+    if len(missing):
+        raise LoadError(
+            f"{len(missing)} nodes have no result in a mode",
+            file=path,
+            place=item.place,
+            found=f"node {missing[0]} is missing",
+            expected="every node, also those that do not move",
+        )
 
 
 def _strain_energies(parts: Universal, found: list[ResultData]) -> tuple[Array, Array] | None:

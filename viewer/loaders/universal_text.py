@@ -13,7 +13,7 @@ from __future__ import annotations
 import mmap
 import re
 from collections.abc import Iterator, Sequence
-from contextlib import contextmanager
+from contextlib import contextmanager, suppress
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -169,26 +169,32 @@ class Records:
 
     def whole(self, widths: Sequence[int], what: str) -> list[int]:
         """One line of whole numbers."""
-        return self.integers(self.take(1, what), widths)[0].tolist()
+        return self._line(self.take(1, what)[0], widths, _whole)
 
     def wholes(self, count: int, what: str) -> list[int]:
         """``count`` whole numbers, 8I10."""
-        return self._run(count, 8, 10, what, self.integers)
+        return self._run(count, 8, 10, what, _whole)
 
     def reals(self, count: int, what: str, per_line: int = 6, width: int = 13) -> list[float]:
         """``count`` real numbers, 6E13.5 unless said otherwise."""
-        return self._run(count, per_line, width, what, self.numbers)
+        return self._run(count, per_line, width, what, _real)
 
     def _run(self, count: int, per_line: int, width: int, what: str, read) -> list:
         values: list = []
         for row in self.take(max(1, -(-count // per_line)), what):
             some = min(per_line, count - len(values))
-            values += read(range(row, row + 1), (width,) * some)[0].tolist() if some else []
+            values += self._line(row, (width,) * some, read) if some else []
         return values
+
+    def _line(self, row: int, widths: Sequence[int], read) -> list:
+        try:
+            return [read(word) for word in fields(self.lines[row], widths)]
+        except ValueError:
+            raise self._bad_field(range(row, row + 1), widths, slice(None), read) from None
 
     def integers(self, rows: range, widths: Sequence[int], part: slice = slice(None)) -> Array:
         """(rows, fields) int64 of the fields in ``part``."""
-        return self._table(rows, widths, part, int, np.int64)
+        return self._table(rows, widths, part, _whole, np.int64)
 
     def numbers(self, rows: range, widths: Sequence[int], part: slice = slice(None)) -> Array:
         """(rows, fields) float64 of the fields in ``part``."""
@@ -204,23 +210,28 @@ class Records:
         return np.hstack(parts)
 
     def _table(self, rows: range, widths: Sequence[int], part: slice, read, dtype: type) -> Array:
-        lines, picked = self.lines, range(len(widths))[part]
+        lines, shape = self.lines, (len(rows), len(range(len(widths))[part]))
+        text = b"\n".join(lines[rows.start : rows.stop : rows.step]).replace(b"D", b"E")
+        words = [line.split() for line in text.split(b"\n")] if rows else []
+        if b"_" not in text and all(len(line) == len(widths) for line in words):
+            with suppress(ValueError, OverflowError):  # the quick way, which most files allow
+                plain = int if read is _whole else float
+                return np.array([plain(word) for line in words for word in line[part]], dtype).reshape(shape)
         try:
-            table = [[read(word) for word in fields(lines[row], widths)[part]] for row in rows]
-            return np.array(table, dtype).reshape(len(rows), len(picked))
-        except (ValueError, OverflowError):
+            return np.array([read(word) for row in rows for word in fields(lines[row], widths)[part]], dtype).reshape(
+                shape
+            )
+        except ValueError:
             raise self._bad_field(rows, widths, part, read) from None
 
     def _bad_field(self, rows: range, widths: Sequence[int], part: slice, read) -> LoadError:
-        kind = "whole number" if read is int else "number"
+        kind = "whole number" if read is _whole else "number"
         for row in rows:
             words = fields(self.lines[row], widths)
             for place in range(len(widths))[part]:
                 try:
-                    fine = abs(read(words[place])) < 2**63 or read is not int
+                    read(words[place])
                 except ValueError:
-                    fine = False
-                if not fine:
                     columns = "/".join(str(width) for width in dict.fromkeys(widths))
                     return self.error(
                         f"field {place + 1} holds no {kind}",
@@ -242,6 +253,13 @@ def fields(line: bytes, widths: Sequence[int]) -> list[bytes]:
         cut.append(line[start : start + width].strip() or b"0")
         start += width
     return cut
+
+
+def _whole(word: bytes) -> int:
+    value = int(word)
+    if b"_" in word or not -(2**63) <= value < 2**63:  # Python's digit groups, and numbers without end
+        raise ValueError(word)
+    return value
 
 
 def _real(word: bytes) -> float:
