@@ -9,7 +9,9 @@ from tests.stage.channel import body, channel, nod, picture
 from viewer.model.mesh import CellBlock, Mesh
 from viewer.scene import palette, tokens, view
 from viewer.scene.note_layout import note_height
-from viewer.scene.picture import Body, PointMark, View
+from viewer.scene.picture import Body, NodeLines, PointMark, View
+from viewer.scene.section import Plane
+from viewer.scene.showing import Showing
 from viewer.scene.tokens import THEMES, rgb
 from viewer.stage import Stage
 from viewer.stage.stage import reduce
@@ -231,3 +233,60 @@ def test_tokens_of_the_contour_width():
     body_red, edge_red = byte(THEMES["light"].body)[0], byte(THEMES["light"].body_edge)[0]
     dark = np.clip((body_red - row) / (body_red - edge_red), 0, 1)
     assert dark[dark > 0.1].sum() / 2 == pytest.approx(tokens.CONTOUR, abs=0.4)
+
+
+def halves(mesh):
+    middle = mesh.points[mesh.blocks[0].nodes].mean(axis=1)
+    return mesh.with_(cell_groups={"left": np.flatnonzero(middle[:, 0] < 0.5)}), middle
+
+
+def test_hidden_groups_are_not_drawn_and_the_rest_is_not_changed():
+    mesh, _ = halves(plate_mesh("quad4", (4, 4), (1.0, 1.0)))
+    whole = picture(plain(mesh), view=View((0, 0, 1)), ghost=False)
+    part = whole.with_(bodies=Showing(hide=("left",)).parts(whole.bodies, (0, 0, 1)))
+    with Stage(whole) as stage:
+        before, camera = stage.image(0.0), stage.camera()
+        stage.show(part, keep_camera=True)
+        after = stage.image(0.0)
+    box = view.fit(whole, note_height(whole))[1][0]
+    ends = camera.project(np.array([[0.25, 0.3, 0.0], [0.75, 0.3, 0.0]]), box) / 2
+    left, right = np.round(ends[:, ::-1]).astype(int)
+    assert not near(before, THEMES["light"].background)[tuple(left)]
+    assert near(after, THEMES["light"].background)[tuple(left)]
+    assert np.array_equal(before[tuple(right)], after[tuple(right)])
+
+
+def test_the_cut_face_shows_the_energy_of_the_cells_inside():
+    # hot cells in the middle of a solid are seen only when it is cut open
+    mesh = box_mesh("hex8", (5, 5, 5), (1.0, 1.0, 1.0))
+    middle = mesh.points[mesh.blocks[0].nodes].mean(axis=1)
+    hot = np.abs(middle - 0.5).max(axis=1) < 0.2
+    whole = picture(plain(mesh, density=np.where(hot, 16.0, 0.0)), view=View((1, 0, 0)), ghost=False, energy_top=16.0)
+    cut = whole.with_(bodies=Showing(plane=Plane((1, 0, 0), 0.47)).parts(whole.bodies, (1, 0, 0)))
+    for scene, seen in ((whole, False), (cut, True)):
+        with Stage(scene) as stage:
+            image, box = stage.image(0.0), view.fit(scene, note_height(scene))[1][0]
+            at = stage.camera().project(np.array([[0.47, 0.5, 0.5]]), box)[0] / 2
+        red, _, blue = image[round(at[1]), round(at[0])].astype(int)
+        assert (red - blue > 30) == seen
+
+
+@pytest.mark.parametrize("theme", THEMES)
+def test_node_lines_are_drawn_with_their_casing(theme):
+    mesh = plate_mesh("quad4", (20, 20), (1.0, 1.0))
+    shape = np.stack([0 * mesh.points[:, 0], 0 * mesh.points[:, 0], mesh.points[:, 0] - 0.42], axis=1)
+    bare = Body("plate", mesh, shape, 0.05, 1.0)
+    lined = Body("plate", mesh, shape, 0.05, 1.0, node_lines=NodeLines(None))
+    options = {
+        "view": View((0, 0, 1), (0, 1, 0)), "ghost": False, "theme": theme, "width": 960, "height": 720,
+    }
+    before, after = render(picture(bare, **options), 1.0), render(picture(lined, **options), 1.0)
+    scene = picture(lined, **options)
+    camera, boxes = view.fit(scene, note_height(scene))
+    (x, y), (_, top), (_, foot) = camera.project(np.array([[0.42, y, 0.0] for y in (0.5, 0.9, 0.1)]), boxes[0])
+    changed = np.flatnonzero(np.abs(before.astype(int) - after).max(axis=2)[round(y)] > 10)
+    assert changed.mean() == pytest.approx(x, abs=1.0)
+    assert np.ptp(changed) + 1 == pytest.approx(tokens.NODE_CASING, abs=1.5)
+    dark = near(after, THEMES[theme].ink, 12)[round(top) : round(foot), round(x) - 2 : round(x) + 2]
+    assert dark.any(axis=1).all(), "the line has gaps"
+    assert near(after, THEMES[theme].halo, 12)[round(y), changed.min() : changed.max() + 1].any()

@@ -22,6 +22,7 @@ PEG_STEP = 0.028            # least distance between pegs
 PEG_BITE = 0.2              # share of a peg's edge that lies in the body
 BEAD = 0.036                # radius of the heaviest bead of a picture
 LEAST_BEAD = 0.008
+_PROUD = 1.006              # circles stand this much proud of the bead
 LEGS = 5                    # most legs of a bead
 LEG_DASH, LEG_GAP = 0.008, 0.006
 RING, RING_TUBE = 0.0145, 0.0024
@@ -75,28 +76,50 @@ def mark_pieces(picture: Picture, toward_eye: Array | None = None) -> tuple[tupl
 
     toward_eye  (3,) where the camera is, when it is not where ``picture.view`` has it
     """
-    diagonal = max(body.mesh.diagonal for body in picture.bodies)
-    heaviest = max((mark.mass for body in picture.bodies for mark in body.masses), default=0.0)
+    both = zip(standing_pieces(picture), facing_pieces(picture, toward_eye), strict=True)
+    return tuple(standing + facing for standing, facing in both)
+
+
+def standing_pieces(picture: Picture) -> tuple[tuple[Piece, ...], ...]:
+    """By body the marks that are the same from any side: pegs, beads and legs."""
+    diagonal, heaviest = _common(picture)
+    return tuple(standing_marks(body, diagonal, heaviest) for body in picture.bodies)
+
+
+def facing_pieces(picture: Picture, toward_eye: Array | None = None) -> tuple[tuple[Piece, ...], ...]:
+    """By body the marks that face the eye: rims of beads, functional points."""
+    diagonal, heaviest = _common(picture)
     eye = np.asarray(picture.view.toward_eye if toward_eye is None else toward_eye, float)
     eye = eye / np.linalg.norm(eye)
-    return tuple(mark_geometry(body, diagonal, heaviest, eye) for body in picture.bodies)
+    return tuple(facing_marks(body, diagonal, heaviest, eye) for body in picture.bodies)
 
 
-def mark_geometry(body: Body, diagonal: float, heaviest: float, toward_eye: Array) -> tuple[Piece, ...]:
-    """All marks of one body: pegs as one piece, then beads and legs, then functional points.
+def _common(picture: Picture) -> tuple[float, float]:
+    diagonal = max(body.mesh.diagonal for body in picture.bodies)
+    return diagonal, max((mark.mass for body in picture.bodies for mark in body.masses), default=0.0)
 
-    diagonal    m, by which marks are sized
-    heaviest    kg, the mass whose bead has the full radius
-    toward_eye  (3,) unit vector; rings of functional points and rims of beads face this way
+
+def standing_marks(body: Body, diagonal: float, heaviest: float) -> tuple[Piece, ...]:
+    """Pegs as one piece, then beads with their legs.
+
+    diagonal  m, by which marks are sized
+    heaviest  kg, the mass whose bead has the full radius
     """
     pieces: list[Piece] = []
     pegs = [place for mark in body.supports for place in peg_places(body.mesh, mark.rows, diagonal)]
     if pegs:
         pieces.append(_pegs(pegs, PEG * diagonal))
     for mass in body.masses:
-        pieces += _bead(body, mass, bead_radius(mass.mass, heaviest, diagonal), diagonal, toward_eye)
-    pieces += [_point(body, mark, diagonal, toward_eye) for mark in body.points]
+        pieces += _bead(body, mass, bead_radius(mass.mass, heaviest, diagonal), diagonal)
     return tuple(pieces)
+
+
+def facing_marks(body: Body, diagonal: float, heaviest: float, toward_eye: Array) -> tuple[Piece, ...]:
+    """Rims of beads, then functional points; they face the unit vector ``toward_eye``."""
+    pieces: list[Piece] = []
+    for mass in body.masses:
+        pieces += _rims(body, mass, bead_radius(mass.mass, heaviest, diagonal), toward_eye)
+    return (*pieces, *(_point(body, mark, diagonal, toward_eye) for mark in body.points))
 
 
 def bead_radius(mass: float, heaviest: float, diagonal: float) -> float:
@@ -243,28 +266,40 @@ def _axes(first: Array) -> Array:
 # ---- masses
 
 
-def _bead(body: Body, mark: MassMark, radius: float, diagonal: float, toward_eye: Array) -> list[Piece]:
-    """The bead, its rim, the rim again in dashes that stay visible when the bead is inside the body, and its legs."""
+def _bead(body: Body, mark: MassMark, radius: float, diagonal: float) -> list[Piece]:
+    """The bead with its great circles, and its legs."""
     centre = np.asarray(mark.position, float)
     motion = body.factor * np.asarray(mark.motion)
     unit, triangles = sphere(40, 20)
     ball = centre + radius * unit
-    angle = np.linspace(0, 2 * np.pi, 65)[:-1]
-    flat = np.stack([np.cos(angle), np.sin(angle), 0 * angle], axis=1)
-    rings = centre + 1.006 * radius * np.concatenate([np.roll(flat, k, axis=1) for k in range(3)])
-    around = np.stack([np.arange(64), (np.arange(64) + 1) % 64], axis=1)
-    lines = np.concatenate([around + 64 * k for k in range(3)]) + len(ball)
+    flat, around = _circle()
+    rings = centre + _PROUD * radius * np.concatenate([np.roll(flat, k, axis=1) for k in range(3)])
+    lines = np.concatenate([around + len(flat) * k for k in range(3)]) + len(ball)
     points = np.concatenate([ball, rings])
     bead = Piece(
         points, _carried(points, centre, motion), triangles, lines, "mass", "body_edge", 1.3,
-        normals=np.concatenate([unit, (rings - centre) / (1.006 * radius)]),
+        normals=np.concatenate([unit, (rings - centre) / (_PROUD * radius)]),
     )
-    circle = centre + 1.006 * radius * (flat @ _axes(toward_eye)[[1, 2, 0]])
-    moved, none = np.broadcast_to(motion[:3], circle.shape), np.empty((0, 3), np.int64)
-    rim = Piece(circle, moved, none, around, "mass", "body_edge", 1.3)
-    hidden = Piece(circle, moved, none, around[np.arange(64) % 4 < 2], "mass", "body_edge", 1.3, on_top=True)
     legs = _legs(body, mark, centre, motion, radius, diagonal)
-    return [bead, rim, hidden] if legs is None else [bead, rim, hidden, legs]
+    return [bead] if legs is None else [bead, legs]
+
+
+def _rims(body: Body, mark: MassMark, radius: float, toward_eye: Array) -> list[Piece]:
+    """The bead's rim, and the rim again in dashes that stay visible when the bead is inside the body."""
+    flat, around = _circle()
+    circle = np.asarray(mark.position, float) + _PROUD * radius * (flat @ _axes(toward_eye)[[1, 2, 0]])
+    moved = np.broadcast_to(body.factor * np.asarray(mark.motion)[:3], circle.shape)
+    none = np.empty((0, 3), np.int64)
+    rim = Piece(circle, moved, none, around, "mass", "body_edge", 1.3)
+    return [rim, Piece(circle, moved, none, around[np.arange(64) % 4 < 2], "mass", "body_edge", 1.3, on_top=True)]
+
+
+def _circle() -> tuple[Array, Array]:
+    """A unit circle in x and y: points (64, 3) and the lines around."""
+    angle = np.linspace(0, 2 * np.pi, 65)[:-1]
+    return np.stack([np.cos(angle), np.sin(angle), 0 * angle], axis=1), np.stack(
+        [np.arange(64), (np.arange(64) + 1) % 64], axis=1
+    )
 
 
 def _legs(body: Body, mark: MassMark, centre: Array, motion: Array, radius: float, diagonal: float) -> Piece | None:

@@ -63,16 +63,16 @@ def lines_of(body: Body) -> NodeLines | None:
 
 
 def words(lines: NodeLines | None) -> str:
-    """What the scale note says: "node lines: no motion along z"."""
+    """What the scale note says: "node lines, if any: no motion along z"."""
     if lines is None:
         return "no node lines: the mode travels"
     if lines.direction is None:
-        return "node lines: no motion normal to the surface"
+        return "node lines, if any: no motion normal to the surface"
     axis = int(np.argmax(np.abs(lines.direction)))
     if abs(lines.direction[axis]) == 1:
-        return f"node lines: no motion along {'xyz'[axis]}"
+        return f"node lines, if any: no motion along {'xyz'[axis]}"
     listed = ", ".join(digits(c, 2, trim=True) for c in lines.direction)
-    return f"node lines: no motion along ({listed})".replace("-", "−")
+    return f"node lines, if any: no motion along ({listed})".replace("-", "−")
 
 
 def crossings(body: Body, surface: Surface) -> Crossings:
@@ -104,6 +104,9 @@ def crossings(body: Body, surface: Surface) -> Crossings:
     corners, corner_value = np.take_along_axis(corners, order, 1), np.take_along_axis(corner_value, order, 1)
     share = corner_value[:, :1] / (corner_value[:, :1] - corner_value[:, 1:])
     nodes = surface.vertex[np.stack([corners[:, [0, 0]], corners[:, 1:]], axis=2)]
+    # head to tail, what moves up always on one side: a renderer leaves out the last pixel of each segment
+    back = corner_value[:, 0] > 0
+    nodes[back], share[back] = nodes[back][:, ::-1], share[back][:, ::-1]
     return Crossings(nodes, share)
 
 

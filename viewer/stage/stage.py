@@ -6,6 +6,7 @@ side-by-side picture has a viewport of its own; all viewports share one camera.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import Any, cast
 
 import numpy as np
@@ -15,7 +16,7 @@ from vtkmodules.vtkRenderingCore import vtkLight, vtkRenderer
 
 from viewer.model.arrays import Array
 from viewer.scene import view
-from viewer.scene.marks import mark_pieces
+from viewer.scene.marks import Piece, facing_pieces, standing_pieces
 from viewer.scene.picture import Body, Picture, View
 from viewer.scene.sheet import SheetPlan, note_height, plan_sheet
 from viewer.scene.surface import Surface, surface_of
@@ -68,7 +69,7 @@ class Stage:
         for actors in self._bodies:
             actors.draw(phase, camera)
         self._face(camera)
-        for marks in self._marks:
+        for marks in (*self._marks, *self._facing):
             marks.draw(phase)
         if self._bare is not None:
             return
@@ -131,8 +132,9 @@ class Stage:
         else:
             for pane, body, surface in zip(self._panes, picture.bodies, surfaces, strict=True):
                 self._bodies.append(BodyActors(pane, picture, body, surface, scale))
-        self._marks: list[MarkActors] = []
-        self._marked_for = np.zeros(3)
+        self._marks = self._mark_actors(standing_pieces(picture))
+        self._facing: list[MarkActors] = []
+        self._faced = np.zeros(3)
         self._sheet = SheetActors(self._renderer(2))
         self._plan = None
 
@@ -141,18 +143,20 @@ class Stage:
         return self.picture.layout == "overlay" and len(self.picture.bodies) > 1
 
     def _face(self, camera: view.Camera) -> None:
-        """Make the marks anew when the camera has turned: rings and rims face the eye."""
-        if np.allclose(self._marked_for, camera.toward_eye, rtol=0, atol=1e-9):
+        """Make rings and rims anew when the camera has turned: they face the eye."""
+        if np.allclose(self._faced, camera.toward_eye, rtol=0, atol=1e-9):
             return
-        for marks in self._marks:
+        for marks in self._facing:
             marks.clear()
-        pieces = mark_pieces(self.picture, camera.toward_eye)
+        self._facing = self._mark_actors(facing_pieces(self.picture, camera.toward_eye))
+        self._faced = camera.toward_eye
+
+    def _mark_actors(self, pieces: Sequence[Sequence[Piece]]) -> list[MarkActors]:
         shown = pieces[1:] if self._overlaid else pieces         # in an overlay, those of the body in front
-        self._marks = [
+        return [
             MarkActors(pane, over, of_body, self.picture.theme, self._scale)
             for pane, over, of_body in zip(self._panes, self._over, shown, strict=True)
         ]
-        self._marked_for = camera.toward_eye
 
     def _lay_renderers(self) -> None:
         """One renderer for each viewport in layer 0 and in layer 1."""
