@@ -8,7 +8,8 @@ Every kind goes through one class; what differs is the quadrature and whether th
 - Incompatible modes 1 − ξ², 1 − η², 1 − ζ² in each displacement (Wilson, Taylor, Doherty & Ghaboussi 1973), condensed
   cell by cell, with the gradients of Taylor, Beresford & Wilson (1976, "A non-conforming element for stress
   analysis", Int. J. Numer. Meth. Engng 10:1211–1219): Jacobian of the centre, scaled by det J₀ / det J, so that
-  they do no work on constant stress and the patch test holds on every shape.
+  they do no work on constant stress and the patch test holds on every shape. Cells flatter than two to one are
+  pieces of thin wall, whose strains across are tied as well: ``flat_brick``.
 - Consistent mass ρ ∫ Nₐ N_b dV, the same for the three directions and therefore given once (b, n, n). Incompatible
   modes carry no mass.
 """
@@ -22,9 +23,9 @@ import numpy as np
 
 from viewer.cells import KINDS, cofactors, determinants, jacobian_components
 from viewer.errors import ModelError
-from viewer.mechanics import materials
+from viewer.mechanics import flat_brick, materials
 from viewer.model.arrays import Array
-from viewer.model.design import Property
+from viewer.model.design import Material, Property
 
 _WORK = 1 << 17      # doubles in gradients and matrices of one chunk of cells: about what the processor's cache holds
 
@@ -34,7 +35,8 @@ class SolidFormulation:
     """One solid element formulation.
 
     ``stiffness_order`` and ``mass_order`` are degrees of quadrature (``CellKind.rule``); ``incompatible`` adds the
-    condensed modes above. ``caution`` is not empty when the element has a weakness to warn of, above all in bending.
+    condensed modes above and ties the strains across flat cells. ``caution`` is not empty when the element has a
+    weakness to warn of, above all in bending.
     """
 
     name: str
@@ -64,6 +66,7 @@ class SolidFormulation:
                 freed = np.linalg.solve(inner[:, :, kept:], inner[:, :, :kept])
                 matrix = matrix[:, :kept, :kept] - matrix[:, :kept, kept:] @ freed
                 matrix = (matrix + np.swapaxes(matrix, 1, 2)) / 2      # symmetric to the last digit, as the others
+                _thin_walls(matrix, xyz[part], prop.material)
             out[part] = matrix
         return out
 
@@ -108,6 +111,15 @@ class SolidFormulation:
                 f"{count} {self.kind} cell{'s are' if count > 1 else ' is'} inside out or collapsed",
                 found=f"{what} of {smallest.min():.3g}", expected="above 0", do="repair the mesh there",
             )
+
+
+def _thin_walls(matrix: Array, xyz: Array, material: Material) -> None:
+    """Replace the stiffness of flat cells by that of a wall, to the share that they are one."""
+    thin, share = flat_brick.wall(xyz)
+    flat = np.nonzero(share)[0]
+    if len(flat):
+        weight = share[flat, None, None]
+        matrix[flat] = (1 - weight) * matrix[flat] + weight * flat_brick.stiffness(xyz[flat], thin[flat], material)
 
 
 def _chunks(count: int, doubles_per_cell: int) -> Iterator[slice]:
