@@ -91,7 +91,8 @@ def without_carriers(raw: RawMesh) -> RawMesh:
     top = max((KINDS[block.kind].dim for block in raw.blocks if len(block.nodes)), default=0)
     if top < 1:
         return raw
-    known = {n: _corner_sets(raw.blocks, n) for n in (1, 2, 3, 4)}
+    lower = [KINDS[block.kind] for block in raw.blocks if len(block.nodes) and KINDS[block.kind].dim < top]
+    known = {size: _corner_sets(raw.blocks, size) for size in {kind.n_corners for kind in lower}}
     beam_groups = [name for name in raw.cell_groups if _BEAM_WORD.search(name)]
     beams = np.zeros(sum(len(block.nodes) for block in raw.blocks), bool)
     for name in beam_groups:
