@@ -19,6 +19,8 @@ _WHERE = {
     "energies": "viewer.script",
     "animate": "viewer.script",
     "still": "viewer.script",
+    "Showing": "viewer.scene.showing",
+    "Plane": "viewer.scene.section",
     "mac": "viewer.insight.correlate",
     "Material": "viewer.model.design",
     "Assignment": "viewer.model.design",
@@ -55,6 +57,8 @@ if TYPE_CHECKING:
     )
     from viewer.model.mesh import CellBlock, Mesh
     from viewer.model.modes import ArrayShapes, ModeSet
+    from viewer.scene.section import Plane
+    from viewer.scene.showing import Showing
     from viewer.script import animate, energies, open_dossier, read_mesh, read_modes, solve, still
 
 

@@ -70,7 +70,8 @@ def animate(
     **options: Any,
 ) -> Loop:
     """The loop of mode number ``mode``; ``options`` are those of ``viewer.scene.compose.single_picture``:
-    true_scale, peak_percent, energy, theme, width, ghost, mesh_edges, node_lines, showing, view."""
+    true_scale, peak_percent, energy, theme, width, ghost, mesh_edges, node_lines, showing, view. Parts:
+    ``showing=viewer.Showing(hide=("lid",), plane=viewer.Plane((1, 0, 0), 0.12))``."""
     from viewer.scene.compose import single_picture
 
     stated = {a.mode: a for a in amplitudes}

@@ -166,6 +166,15 @@ def test_a_plane_without_a_normal_is_refused():
             Plane(normal, offset)
 
 
-def test_a_cut_that_leaves_nothing_says_so():
+@pytest.mark.parametrize("offset", [-1.0, 3.0, 4.0])
+def test_a_cut_that_misses_says_where_the_body_is(offset):
+    with pytest.raises(InputError, match=r"misses the body.*between 0.* and 3\.000.m"):
+        cut(box_mesh("hex8", (2, 2, 2), SIZE), (1, 0, 0), offset)
+
+
+def test_a_cut_that_leaves_nothing_of_a_group_says_so():
+    mesh = box_mesh("hex8", (3, 2, 2), SIZE)
+    high = np.flatnonzero(mesh.points[mesh.blocks[0].nodes].mean(axis=1)[:, 0] > 2)
+    shown = Showing(only=("high",), plane=Plane((1, 0, 0), 1.5))
     with pytest.raises(InputError, match="nothing of 'b' is left"):
-        cut(box_mesh("hex8", (2, 2, 2), SIZE), (1, 0, 0), -1.0)
+        shown.parts([body(mesh.with_(cell_groups={"high": high}))], (1, 0, 0))

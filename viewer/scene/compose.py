@@ -10,6 +10,7 @@ import numpy as np
 
 from viewer.errors import InputError
 from viewer.insight.correlate import shared_turn
+from viewer.insight.given_energy import given_density
 from viewer.insight.scale import Scale, common_scale
 from viewer.model.design import LumpedMass
 from viewer.scene.figures import digits
@@ -37,6 +38,7 @@ def single_picture(
     true_scale: bool = False,
     peak_percent: float | None = None,
     energy: bool = True,
+    given_energy: bool = False,
     width: int = 960,
     showing: Showing = WHOLE,
     node_lines: bool = False,
@@ -44,19 +46,21 @@ def single_picture(
 ) -> Picture:
     """The picture of mode number ``mode`` (from 1). ``look``: theme, ghost, mesh_edges, view of ``Picture``.
 
-    ``showing`` leaves parts out; ``node_lines`` draws where a standing mode does not move.
+    ``given_energy`` colours by the strain energies that came with the modes; ``showing`` leaves parts out; ``node_lines`` draws where a standing mode does not move.
 
     ``RefusedError`` when true scale is asked for and no size is known; ``InputError`` for a mode that is not there.
     """
     index = _index(study, mode)
     scale = study.scale(index, true_scale=true_scale, peak_percent=peak_percent)
-    body = _body(study, index, scale, scale.turn, energy)
+    body = _body(study, index, scale, scale.turn, energy and not given_energy)
+    if given_energy:
+        body = replace(body, density=_given_density(study, index))
     note = scale_note(
         mode,
         study.name(index),
         float(study.modes.freq_hz[index]),
         scale,
-        [study.condition, *_energy_remarks(study, index, energy)],
+        [study.condition, *_energy_remarks(study, index, energy and not given_energy)],
     )
     shown, said = _shown([body], showing, node_lines, look)
     return Picture(
@@ -64,7 +68,8 @@ def single_picture(
         note=replace(note, drawing=(*note.drawing, *said)),
         magnification=scale.magnification,
         energy_top=_top([body]),
-        energy_caution=_caution([study], [index], [body]),
+        energy_words="given strain energy density ÷ mean" if given_energy else Picture.energy_words,
+        energy_caution="" if given_energy else _caution([study], [index], [body]),
         magnified=_magnified(scale) if true_scale else None,
         width=width,
         height=_height(width, SINGLE),
@@ -198,6 +203,11 @@ def _body(study: Study, index: int, scale: Scale, turn: complex, energy: bool) -
         tuple(masses),
         tuple(points),
     )
+
+
+def _given_density(study: Study, index: int) -> Array:
+    volumes = None if study.energies is None else study.energies.volumes
+    return given_density(study.design.mesh, study.modes, index, volumes)
 
 
 def _top(bodies: Sequence[Body]) -> float | None:

@@ -13,6 +13,7 @@ from viewer.errors import InputError
 from viewer.model.arrays import Array
 from viewer.model.mesh import Mesh
 from viewer.scene import section
+from viewer.scene.figures import length
 from viewer.scene.picture import Body
 
 
@@ -43,7 +44,8 @@ class Showing:
         return tuple(said)
 
     def parts(self, bodies: Sequence[Body], toward_eye: Array) -> tuple[Body, ...]:
-        """What is shown of each body. ``InputError`` for a group that no body has, or when nothing is left of one."""
+        """What is shown of each body. ``InputError`` for a group that no body has, a plane that misses all bodies, or
+        when nothing is left of one."""
         if not self.words:
             return tuple(bodies)
         known = list(dict.fromkeys(name for body in bodies for name in body.mesh.cell_groups))
@@ -52,6 +54,8 @@ class Showing:
                 raise InputError(
                     f"no cell group named '{name}' to show or hide", expected=f"one of: {', '.join(known) or 'none'}"
                 )
+        if self.plane is not None:
+            _check_crossing(self.plane, bodies)
         return tuple(self._part(body, np.asarray(toward_eye, float)) for body in bodies)
 
     def _part(self, body: Body, toward_eye: Array) -> Body:
@@ -77,6 +81,19 @@ class Showing:
                 do="hide fewer groups, or move the cut",
             )
         return _marked(shown, alive)
+
+
+def _check_crossing(plane: section.Plane, bodies: Sequence[Body]) -> None:
+    reaches = []
+    for body in bodies:
+        along = body.mesh.points[body.mesh.used_nodes] @ np.array(plane.normal)
+        reaches.append((along.min(initial=np.inf), along.max(initial=-np.inf)))
+    if not any(low < plane.offset < high for low, high in reaches):
+        low, high = min(low for low, _ in reaches), max(high for _, high in reaches)
+        raise InputError(
+            "the cut misses the body", found=plane.words,
+            expected=f"a place between {length(low, 4)} and {length(high, 4)}",
+        )
 
 
 def _cells(mesh: Mesh, groups: Iterable[str]) -> Array:
