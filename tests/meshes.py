@@ -104,3 +104,14 @@ def _elevate(cell, points: np.ndarray, corners: np.ndarray) -> tuple[np.ndarray,
         nodes[:, which] = len(points) + inverse.reshape(len(which), -1).T
         points = np.vstack([points, points[unique].mean(axis=1)])
     return points, nodes
+
+
+def line_mesh(points, pairs=None) -> Mesh:
+    """Beams of two nodes along the rows of ``points`` (n, 3), or between ``pairs`` of them. Groups x0 and x1: the
+    first and the last point."""
+    points = np.asarray(points, float)
+    nodes = np.stack([np.arange(len(points) - 1), np.arange(1, len(points))], axis=1) if pairs is None else pairs
+    return Mesh(
+        points, (CellBlock("line2", nodes, np.arange(1, len(nodes) + 1)),), np.arange(1, len(points) + 1),
+        node_groups={"x0": np.array([0]), "x1": np.array([len(points) - 1])}, source="lines",
+    )

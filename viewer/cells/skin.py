@@ -55,17 +55,14 @@ def skin(blocks: Sequence[tuple[str, Array]]) -> Skin:
     A face of a solid is exterior when no other solid cell has the same corner nodes, whatever its kind or degree.
     """
     starts = np.cumsum([0, *(len(nodes) for _, nodes in blocks)])
-    surfaces: list[tuple[str, Array, Array]] = []
+    surfaces = outer_faces(blocks)
     segments, segment_cells = [np.empty((0, 2), np.int64)], [np.empty(0, np.int64)]
     for (kind, nodes), start in zip(blocks, starts[:-1], strict=True):
         cell, rows = KINDS[kind], np.arange(start, start + len(nodes))
-        if cell.dim == 2:
-            surfaces.append((kind, np.asarray(nodes), rows))
-        elif cell.dim == 1:
+        if cell.dim == 1:
             pieces = [(0, 1)] if cell.n_nodes == 2 else [(0, 2), (2, 1)]
             segments += [nodes[:, list(p)] for p in pieces]
             segment_cells += [rows] * len(pieces)
-    surfaces += _exterior(blocks, starts)
 
     triangles, cells, faces = [np.empty((0, 3), np.int64)], [np.empty(0, np.int64)], [np.empty(0, np.int64)]
     sides, count = [np.empty((0, 2), np.int64)], 0
@@ -82,6 +79,17 @@ def skin(blocks: Sequence[tuple[str, Array]]) -> Skin:
         np.concatenate(triangles), np.concatenate(cells), np.concatenate(faces), _once(np.concatenate(sides)),
         np.concatenate(segments), np.concatenate(segment_cells),
     )
+
+
+def outer_faces(blocks: Sequence[tuple[str, Array]]) -> list[tuple[str, Array, Array]]:
+    """Surface cells and the exterior faces of solids of blocks as in :func:`skin`, grouped: (kind, nodes (n, nodes
+    per face), cell rows (n,))."""
+    starts = np.cumsum([0, *(len(nodes) for _, nodes in blocks)])
+    surfaces = [
+        (kind, np.asarray(nodes), np.arange(start, start + len(nodes)))
+        for (kind, nodes), start in zip(blocks, starts[:-1], strict=True) if KINDS[kind].dim == 2
+    ]
+    return surfaces + _exterior(blocks, starts)
 
 
 def _exterior(blocks: Sequence[tuple[str, Array]], starts: Array) -> list[tuple[str, Array, Array]]:

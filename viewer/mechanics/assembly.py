@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Any
 
 import numpy as np
@@ -27,9 +28,18 @@ from viewer.mechanics.constraints import (
     spring_nodes,
     turns,
 )
+from viewer.mechanics.followers import (
+    Rules,
+    add_link,
+    add_tie,
+    check_supports,
+    follow_matrix,
+    link_nodes,
+)
 from viewer.mechanics.formulations import FORMULATIONS, Formulation, formulation_for
 from viewer.mechanics.materials import check
 from viewer.mechanics.pattern import Pattern
+from viewer.mechanics.sections import constants
 from viewer.model.arrays import Array, frozen
 from viewer.model.design import DIRECTIONS, Design, Property
 from viewer.model.mesh import Mesh
@@ -65,9 +75,11 @@ class ElementGroup:
             yield slice(start, min(start + size, len(self)))
 
     def volumes(self, points: Array) -> Array:
-        """(b,) m³; area times thickness for shells."""
-        size = measures(self.kind, points[self.nodes])
-        return size if KINDS[self.kind].dim == 3 else size * (self.prop.thickness or 0.0)
+        """(b,) m³; area times thickness for shells, length times area of the section for beams."""
+        size, dim = measures(self.kind, points[self.nodes]), KINDS[self.kind].dim
+        if dim == 1 and self.prop.section is not None:
+            return size * constants(self.prop.section, self.prop.material.poisson).area
+        return size if dim == 3 else size * (self.prop.thickness or 0.0)
 
     def stiffness(self, points: Array, part: slice) -> Array:
         """(c, nd, nd) of the cells in ``part``."""
@@ -86,7 +98,10 @@ class Layout:
     held      (n_dof,) True where a support holds
     blocks    element groups
     springs, masses   one attachment per entry of the design's physics, in its order
+    follow    (n_dof, n_dof) every degree of freedom from the independent ones, None when nothing follows anything
+    dependent (n_dof,) True for those that follow others through a link or tie
     cautions  what a reader of the results must know
+    statements  what links and ties join, in words
     """
 
     design: Design
@@ -96,7 +111,40 @@ class Layout:
     blocks: tuple[ElementGroup, ...]
     springs: tuple[Attachment, ...]
     masses: tuple[Attachment, ...]
+    follow: sp.csr_array | None
+    dependent: Array
     cautions: tuple[str, ...]
+    statements: tuple[str, ...]
+
+    @cached_property
+    def free(self) -> Array:
+        """Ascending degrees of freedom that are neither held nor follow others: the unknowns of a solution."""
+        return frozen(np.nonzero(~(self.held | self.dependent))[0])
+
+    @cached_property
+    def _carrier(self) -> sp.csr_array | None:
+        return None if self.follow is None else sp.csr_array(self.follow[:, self.free])
+
+    def restrict(self, matrix: sp.csr_array) -> sp.csr_array:
+        """Fᵀ A F on the free degrees of freedom of a symmetric matrix (n_dof, n_dof)."""
+        if self._carrier is not None:
+            reduced = sp.csr_array(self._carrier.T @ matrix @ self._carrier)
+            reduced = sp.csr_array(0.5 * (reduced + reduced.T))
+            reduced.sort_indices()
+            return reduced
+        return matrix if len(self.free) == self.n_dof else sp.csr_array(matrix[self.free][:, self.free])
+
+    def force(self, vectors: Array) -> Array:
+        """(k, n_free) forces on the free degrees of freedom from forces (k, n_dof) on all: Fᵀ f."""
+        return vectors[:, self.free] if self._carrier is None else (self._carrier.T @ vectors.T).T
+
+    def extend(self, vectors: Array) -> Array:
+        """(k, n_dof) from values (k, n_free) of the free ones: 0 where held, followers as they follow."""
+        if self._carrier is not None:
+            return np.ascontiguousarray((self._carrier @ vectors.T).T)
+        full = np.zeros((len(vectors), self.n_dof), vectors.dtype)
+        full[:, self.free] = vectors
+        return full
 
     @property
     def points(self) -> Array:
@@ -135,7 +183,7 @@ class System(Layout):
 def lay_out(
     design: Design, progress: Progress = SILENT, *, formulations: Mapping[str, str] | None = None
 ) -> Layout:
-    """Number the degrees of freedom and resolve groups, springs, masses and supports.
+    """Number the degrees of freedom and resolve groups, springs, masses, supports, links and ties.
 
     formulations  cell kind → name of the formulation to take instead of the design's own
     Raises ``ModelError`` that names the group or cells and what to put into the dossier.
@@ -155,6 +203,10 @@ def lay_out(
                 lone = rows[~has[rows, 0]]
                 has[lone, 0] = True
                 has[lone, 1] = turns(spring)
+    for link in physics.links:
+        leader, followers = link_nodes(link, design)
+        has[leader] = True
+        has[followers[~has[followers, 0]]] = True
     number = np.where(has.ravel(), np.cumsum(has.ravel()) - 1, -1).reshape(-1, 2)
     dof = np.where(number[:, :, None] >= 0, 3 * number[:, :, None] + np.arange(3), -1).reshape(-1, 6)
     n_dof = 3 * int(has.sum())
@@ -181,9 +233,17 @@ def lay_out(
         masses.append(attachment)
         cautions += [caution] if caution else []
     held = held_dofs(physics.supports, design, dof, n_dof)
+    rules = Rules(dof)
+    for link in physics.links:
+        add_link(rules, link, design)
+    for tie in physics.ties:
+        progress.tick("tying")
+        add_tie(rules, tie, design)
+    follow, dependent = follow_matrix(rules, design, n_dof)
+    check_supports(follow, dependent, held, rules, design)
     return Layout(
-        design, frozen(dof), n_dof, frozen(held), blocks, tuple(springs), tuple(masses),
-        tuple(dict.fromkeys(cautions)),
+        design, frozen(dof), n_dof, frozen(held), blocks, tuple(springs), tuple(masses), follow, frozen(dependent),
+        tuple(dict.fromkeys([*cautions, *rules.cautions])), tuple(rules.statements),
     )
 
 
@@ -226,8 +286,9 @@ Part = tuple[Formulation, Property, Array, Array]
 def _element_parts(design: Design, instead: Mapping[str, str]) -> tuple[list[Part], list[str]]:
     """(formulation, property, cell rows, node rows) of every group that carries stiffness, and cautions.
 
-    Cells without material, thickness or formulation are left out, with a caution, when every one of their nodes
-    belongs to a cell that has them: meshes bring such edges and faces along as names. Otherwise they are an error.
+    Cells without material, thickness, section or formulation are left out, with a caution, when every one of their
+    nodes belongs to a cell that has them: meshes bring such edges and faces along as names. Otherwise they are an
+    error.
     """
     mesh = design.mesh
     properties, index = design.properties
@@ -239,8 +300,7 @@ def _element_parts(design: Design, instead: Mapping[str, str]) -> tuple[list[Par
             rows = np.nonzero(chosen == which)[0]
             cells, nodes = start + rows, block.nodes[rows]
             prop = properties[which] if which >= 0 else None
-            sheet = KINDS[block.kind].dim == 2
-            if prop is None or block.kind not in FORMULATIONS or (sheet and prop.thickness is None):
+            if prop is None or block.kind not in FORMULATIONS or _lacks(prop, block.kind):
                 idle.append((block.kind, prop, cells, nodes))
                 continue
             _check_property(prop, block.kind, mesh, cells)
@@ -267,6 +327,12 @@ def name_cells(mesh: Mesh, kind: str, cells: Array) -> str:
     return f"{len(cells)} cells {kind} (ids {some_ids(mesh.cell_ids[cells])}{inside})"
 
 
+def _lacks(prop: Property, kind: str) -> str:
+    """What a property must give for cells of this kind and does not."""
+    wanted, given = {1: ("section", prop.section), 2: ("thickness", prop.thickness)}.get(KINDS[kind].dim, ("", 0))
+    return wanted if given is None else ""
+
+
 def _idle_error(design: Design, kind: str, prop: Property | None, cells: Array) -> ModelError:
     mesh = design.mesh
     what = f"design '{design.name}': {name_cells(mesh, kind, cells)}"
@@ -281,9 +347,8 @@ def _idle_error(design: Design, kind: str, prop: Property | None, cells: Array) 
             f"{what} have no material",
             do="add an assignment whose target is their group, their kind or '*'", **parts,
         )
-    return ModelError(
-        f"{what} are shells without thickness", do="give 'thickness' in their assignment", **parts,
-    )
+    word, lacking = {1: "beams", 2: "shells"}[KINDS[kind].dim], _lacks(prop, kind)
+    return ModelError(f"{what} are {word} without {lacking}", do=f"give '{lacking}' in their assignment", **parts)
 
 
 def _check_property(prop: Property, kind: str, mesh: Mesh, cells: Array) -> None:
@@ -324,10 +389,10 @@ def _mixed_caution(parts: list[Part], has: Array) -> list[str]:
 
 def _check_attached(layout: Layout, stiffness: sp.csr_array, mass: sp.csr_array) -> None:
     """A free direction without stiffness and mass would make the eigen-problem meaningless."""
-    idle = (stiffness.diagonal() == 0) & (mass.diagonal() == 0) & ~layout.held
+    idle = (layout.restrict(stiffness).diagonal() == 0) & (layout.restrict(mass).diagonal() == 0)
     if not idle.any():
         return
-    node, direction = np.nonzero(np.isin(layout.dof, np.nonzero(idle)[0]))
+    node, direction = np.nonzero(np.isin(layout.dof, layout.free[idle]))
     raise ModelError(
         f"design '{layout.design.name}': {int(idle.sum())} free directions have neither stiffness nor mass",
         found=f"{DIRECTIONS[direction[0]]} of node {layout.design.mesh.node_ids[node[0]]}",

@@ -48,9 +48,9 @@ def residuals(layout: Layout, vectors: Array, omega: Array, progress: Progress =
     directions A⁻¹ is replaced by conjugate gradients that may stop early; the figure is then a lower bound.
     """
     system = assemble_layout(layout, progress)
-    # A shape that moves where the design is held cannot be its mode: that motion is taken away, and what it leaves
-    # behind shows as residual beside the support.
-    vectors = np.where(layout.held, 0.0, vectors)
+    # A shape that moves where the design is held, or apart from what it follows, cannot be its mode: that motion is
+    # taken away, and what it leaves behind shows as residual beside the place.
+    vectors = layout.extend(vectors[:, layout.free])
     level = np.rint(np.log(omega**2) / np.log(4.0))
     shares, by_cell = np.empty(len(vectors)), np.empty((len(vectors), layout.design.mesh.n_cells))
     for power in np.unique(level):
@@ -62,20 +62,20 @@ def residuals(layout: Layout, vectors: Array, omega: Array, progress: Progress =
 def _one_level(
     system: System, vectors: Array, omega: Array, alpha: float, progress: Progress
 ) -> tuple[Array, Array]:
-    free = np.nonzero(~system.held)[0]
     shifted = sp.csr_array(system.K + alpha * system.M)
     parts = real_parts(vectors)                                                                # (p, k, n_dof)
-    right = np.stack([system.K @ p.T - (system.M @ p.T) * omega**2 for p in parts])[:, free]  # (p, n_free, k)
+    right = np.stack([  # (p, n_free, k)
+        system.force((system.K @ p.T - (system.M @ p.T) * omega**2).T).T for p in parts
+    ])
     whole = np.sum([np.einsum("kn,nk->k", p, shifted @ p.T) for p in parts], axis=0)
-    inner = sp.csr_array(shifted[free][:, free])
+    inner = system.restrict(shifted)
     progress.tick("residual")
-    flat = np.moveaxis(right, 1, 0).reshape(len(free), -1)
-    direct = len(free) <= FACTOR_LIMIT
+    flat = np.moveaxis(right, 1, 0).reshape(len(system.free), -1)
+    direct = len(system.free) <= FACTOR_LIMIT
     found = factorise(inner, definite=True).solve(flat) if direct else _iterate(inner, flat, progress)
     # 2xᵀr − xᵀAx: equal to rᵀA⁻¹r for the exact x and below it for any other.
     gain = 2 * np.sum(flat * found, axis=0) - np.sum(found * (inner @ found), axis=0)
-    missed = np.zeros((flat.shape[1], system.n_dof))
-    missed[:, free] = found.T
+    missed = system.extend(found.T)
     by_cell = cell_energies(system, missed, "stiffness", progress)
     by_cell += alpha * cell_energies(system, missed, "mass", progress)
     shares = gain.reshape(len(parts), -1).sum(axis=0) / whole

@@ -47,29 +47,22 @@ def solve_system(system: System, count: int, progress: Progress = SILENT, *, sol
     """As :func:`solve`, for matrices that are assembled already."""
     if count < 1:
         raise ModelError("the number of modes must be positive", found=str(count))
-    free = np.nonzero(~system.held)[0]
-    if len(free) == 0:
+    if len(system.free) == 0:
         raise ModelError(f"design '{system.design.name}': the supports hold every direction", do="hold fewer nodes")
-    stiffness, mass = _pick(system.K, free), _pick(system.M, free)
+    stiffness, mass = system.restrict(system.K), system.restrict(system.M)
     if stiffness.nnz == 0 or mass.nnz == 0:
         raise ModelError(f"design '{system.design.name}' has no stiffness or no mass on its free directions")
-    problem = _Problem(stiffness, mass, _smooth_fields(system)[free], solver)
+    problem = _Problem(stiffness, mass, _smooth_fields(system)[system.free], solver)
     values, vectors = problem.lowest(count, progress)
     values, vectors = settle_modes(
-        values, vectors, stiffness, mass, _rigid_motions(system)[free], wanted=count
+        values, vectors, stiffness, mass, _rigid_motions(system)[system.free], wanted=count
     )
     problem.check(values, vectors, progress)
-    full = np.zeros((len(values), system.n_dof))
-    full[:, free] = vectors.T
-    moved, turned = system.spread(full)
+    moved, turned = system.spread(system.extend(vectors.T))
     return ModeSet(
         node_ids=system.design.mesh.node_ids, freq_hz=np.sqrt(values) / (2 * np.pi),
         shapes=ArrayShapes(moved, turned), normalisation="mass", origin="computed", source=system.design.name,
     )
-
-
-def _pick(matrix: sp.csr_array, free: Array) -> sp.csr_array:
-    return matrix if len(free) == matrix.shape[0] else sp.csr_array(matrix[free][:, free])
 
 
 @dataclass

@@ -38,6 +38,7 @@ class RigidPatch:
 
     rank      how many of the six rigid motions the translations show: 6; 5 for points in a line (the spin about
               it is unseen); 3 for a single point (no rotation is seen)
+    seen_axes (3, rank − 3) orthonormal axes of the rotations that the translations show
     unseen    the same in words, "" when everything is seen
     operator  (6, 3k) motion (ux uy uz rx ry rz) about ``position`` from the nodal translations, node by node.
               Unseen rotations come out as zero, by the pseudo-inverse.
@@ -64,7 +65,7 @@ class RigidPatch:
             turning = np.einsum("kij,kil->jl", cross_matrix(arms), cross_matrix(arms)) / (len(arms) * radius**2)
             strength, axes = np.linalg.eigh(turning)  # Σ|ω × arm|²: zero for a spin about a line of points
             seen = strength > _FLAT**2 * strength[-1]
-        self._seen_axes = axes[:, seen]
+        self.seen_axes = axes[:, seen]
         self.rank = 3 + int(seen.sum())
         self._arms, self._centroid = arms, centroid
 
@@ -80,8 +81,8 @@ class RigidPatch:
         translate = np.tile(np.eye(3) / count, count)
         rotate = np.zeros((3, 3 * count))
         if self.rank > 3:
-            fields = -cross_matrix(self._arms).reshape(-1, 3) @ self._seen_axes  # (3k, seen)
-            rotate = self._seen_axes @ np.linalg.solve(fields.T @ fields, fields.T)
+            fields = -cross_matrix(self._arms).reshape(-1, 3) @ self.seen_axes  # (3k, seen)
+            rotate = self.seen_axes @ np.linalg.solve(fields.T @ fields, fields.T)
         return frozen(self._about_position(translate, rotate))
 
     @cached_property
@@ -90,7 +91,7 @@ class RigidPatch:
         from_translations = self._about_centroid(self.operator)
         whole = np.zeros((6, count, 6))
         whole[:, :, :3] = from_translations.reshape(6, count, 3)
-        blind = np.eye(3) - self._seen_axes @ self._seen_axes.T
+        blind = np.eye(3) - self.seen_axes @ self.seen_axes.T
         whole[3:, :, 3:] = blind[:, None, :] / count
         flat = whole.reshape(6, 6 * count)
         return frozen(self._about_position(flat[:3], flat[3:]))

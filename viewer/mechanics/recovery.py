@@ -2,8 +2,9 @@
 
 Strain energy is minimised over the rotations with the translations held: K_rr r = −K_ru u (static condensation;
 Guyan R.J., Reduction of stiffness and mass matrices, AIAA J. 3 (1965) 380). This neglects rotary inertia, which is
-small in thin parts. What translations cannot show has no stiffness in K_rr (torsion of a straight beam, spin of a
-point inertia): it stays zero and is named.
+small in thin parts. The leader of a rigid link takes its rotation from the followers' translations as far as these
+show it. What translations cannot show either has no stiffness in K_rr or no coupling to any translation (torsion of a
+straight beam, spin of a point inertia): it stays zero and is named.
 
 Bending of a thin sheet shows in small differences of translations of neighbouring nodes, so that a file of few
 digits blurs its energies. How much is found by trial: the translations are disturbed at random within the rounding
@@ -12,6 +13,7 @@ that their own digits reveal, and the energies of the cells compared.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cached_property
 from typing import Any
@@ -23,6 +25,8 @@ from viewer.jobs import SILENT, Progress
 from viewer.mechanics.assembly import Layout, assemble_layout
 from viewer.mechanics.constraints import some_ids
 from viewer.mechanics.factor import factorise
+from viewer.mechanics.followers import link_nodes
+from viewer.mechanics.patch import RigidPatch
 from viewer.mechanics.sums import cell_energies
 from viewer.model.arrays import Array
 
@@ -37,24 +41,50 @@ class Rotations:
 
     stiffness (n_dof, n_dof) sparse; dof (n_nodes, 6) numbers of ux uy uz rx ry rz, −1 where absent;
     held (n_dof,) True where a support holds: held rotations are zero.
+    shown: for nodes whose rotation follows from translations, (node row, node rows moved (k,), patch of these): the
+    rotations the patch sees are taken from it.
     """
 
-    def __init__(self, stiffness: Any, dof: Array, held: Array, progress: Progress = SILENT) -> None:
+    def __init__(
+        self, stiffness: Any, dof: Array, held: Array, progress: Progress = SILENT,
+        shown: Sequence[tuple[int, Array, RigidPatch]] = (),
+    ) -> None:
         self.dof, self.size, self.progress = np.asarray(dof), stiffness.shape[0], progress
         numbers = self.dof[:, 3:]
         wanted = np.zeros(self.size, bool)
         wanted[numbers[numbers >= 0]] = True
         self.rows = np.nonzero(wanted & ~np.asarray(held))[0]
+        self.shown = [item for item in shown if np.isin(self.dof[item[0], 3:], self.rows).all()]
+        self.basis = self._unknowns()
         self.coupling = sp.csr_array(stiffness)[self.rows]
-        inner = sp.csr_array(self.coupling[:, self.rows])
+        inner = sp.csr_array(self.basis.T @ self.coupling[:, self.rows] @ self.basis)
         diagonal = inner.diagonal()
         self.scale = np.sqrt(np.where(diagonal > 0, diagonal, diagonal.max(initial=0.0) or 1.0))
         self.inner = inner
-        if len(self.rows):
+        if inner.shape[0]:
             progress.tick("factorising for rotations")
             weights = sp.diags_array(1 / self.scale)
-            scaled = weights @ inner @ weights + _SOFT * sp.eye_array(len(self.rows))
+            scaled = weights @ inner @ weights + _SOFT * sp.eye_array(inner.shape[0])
             self.factor = factorise(sp.csr_array(0.5 * (scaled + scaled.T)), definite=True)
+
+    def _unknowns(self) -> sp.csr_array:
+        """(rotations, unknowns): the unit matrix, but for the shown rotations only the axes their patch misses."""
+        place = {int(row): at for at, row in enumerate(self.rows)}
+        special = {place[int(self.dof[node, 3])]: patch for node, _, patch in self.shown}
+        taken = np.zeros(len(self.rows), bool)
+        pieces: list[tuple[Array, Array, Array]] = []
+        columns = 0
+        for at, patch in special.items():
+            where = np.array([at, at + 1, at + 2])
+            taken[where] = True
+            missed = np.linalg.svd(patch.seen_axes)[0][:, patch.rank - 3 :]
+            for axis in missed.T:
+                pieces.append((where, np.full(3, columns), axis))
+                columns += 1
+        plain = np.nonzero(~taken)[0]
+        pieces.append((plain, columns + np.arange(len(plain)), np.ones(len(plain))))
+        rows, cols, values = (np.concatenate(part) for part in zip(*pieces, strict=True))
+        return sp.csr_array((values, (rows, cols)), shape=(len(self.rows), columns + len(plain)))
 
     def complete(self, moved: Array) -> Array:
         """(k, n_dof) vectors from translations (k, n_nodes, 3), real or complex."""
@@ -64,9 +94,12 @@ class Rotations:
         there = self.dof[:, :3] >= 0
         vectors = np.zeros((len(moved), self.size))
         vectors[:, self.dof[:, :3][there]] = moved[:, there]
-        if not len(self.rows):
+        for node, moving, patch in self.shown:
+            about = patch.motion(moved[:, moving])
+            vectors[:, self.dof[node, 3:]] = about[:, 3:]
+        if not self.inner.shape[0]:
             return vectors
-        right = -(self.coupling @ vectors.T)
+        right = -(self.basis.T @ (self.coupling @ vectors.T))
         turned = np.zeros_like(right)
         for _ in range(20):             # the softening on the diagonal leaves the answer with every step
             self.progress.tick("recovering rotations")
@@ -74,19 +107,34 @@ class Rotations:
             turned += step
             if not (np.linalg.norm(step, axis=0) > 1e-10 * np.linalg.norm(turned, axis=0)).any():
                 break
-        vectors[:, self.rows] = turned.T
+        vectors[:, self.rows] += (self.basis @ turned).T
         return vectors
 
     @cached_property
     def lost(self) -> Array:
         """Ascending rows of nodes with a rotation that no translation shows."""
-        if not len(self.rows):
+        if not self.inner.shape[0]:
             return np.empty(0, np.int64)
-        probe = np.random.default_rng(3).standard_normal((len(self.rows), 4))
+        probe = np.random.default_rng(3).standard_normal((self.inner.shape[0], 4))
         for _ in range(3):
             probe = _SOFT * self.factor.solve(probe).reshape(probe.shape)
-        unseen = self.rows[np.abs(probe).max(axis=1) > _UNSEEN]
-        return np.nonzero(np.isin(self.dof[:, 3:], unseen).any(axis=1))[0]
+        unseen = self.rows[(abs(self.basis) @ np.abs(probe)).max(axis=1) > _UNSEEN]
+        soft = np.isin(self.dof[:, 3:], unseen).any(axis=1)
+        return np.nonzero(soft | self._deaf())[0]
+
+    def _deaf(self) -> Array:
+        """(n_nodes,) True where some free rotation never answers, whatever translations are given."""
+        moved = np.random.default_rng(4).standard_normal((6, len(self.dof), 3))
+        vectors = self.complete(moved)
+        free = np.isin(self.dof[:, 3:], self.rows)
+        found = np.zeros(len(self.dof), bool)
+        nodes = np.nonzero(free.any(axis=1))[0]
+        answers = np.where(free[nodes][..., None], np.moveaxis(vectors[:, self.dof[nodes, 3:]], 0, -1), 0.0)
+        strength = np.linalg.svd(answers, compute_uv=False)                          # (nodes, 3)
+        count = free[nodes].sum(axis=1)
+        least = np.take_along_axis(strength, count[:, None] - 1, axis=1)[:, 0]
+        found[nodes] = least <= _UNSEEN * np.median(strength[:, 0])
+        return found
 
     def _solve(self, right: Array) -> Array:
         scaled = np.ascontiguousarray(right / self.scale[:, None])
@@ -193,4 +241,30 @@ def _whole(values: Array, digits: int) -> bool:
 
 def _operator(layout: Layout, progress: Progress) -> Rotations:
     system = assemble_layout(layout, progress)
-    return Rotations(system.K, system.dof, system.held, progress)
+    if layout.follow is None:
+        return Rotations(system.K, system.dof, system.held, progress)
+    shown = []
+    for link in layout.design.physics.links:
+        leader, followers = link_nodes(link, layout.design)
+        moving = np.append(followers, leader)
+        shown.append((leader, moving, RigidPatch(layout.points[moving], layout.points[leader])))
+    return _Following(layout, system.K, progress, shown)
+
+
+class _Following(Rotations):
+    """Rotations of a layout with links or ties: followers' rotations come from what they follow."""
+
+    def __init__(self, layout: Layout, stiffness: Any, progress: Progress, shown: list) -> None:
+        assert layout.follow is not None
+        self.follow, self.dependent = layout.follow, layout.dependent
+        reduced = sp.csr_array(layout.follow.T @ stiffness @ layout.follow)
+        super().__init__(reduced, layout.dof, layout.held | layout.dependent, progress, shown)
+
+    def complete(self, moved: Array) -> Array:
+        vectors = super().complete(moved)
+        if np.iscomplexobj(moved):
+            return vectors      # both parts have passed here
+        numbers = self.dof[:, 3:][self.dof[:, 3:] >= 0]
+        numbers = numbers[self.dependent[numbers]]
+        vectors[:, numbers] = (self.follow[numbers] @ vectors.T).T
+        return vectors

@@ -16,27 +16,89 @@ DIRECTIONS = ("ux", "uy", "uz", "rx", "ry", "rz")
 
 
 @dataclass(frozen=True)
+class Directional:
+    """Elastic constants along the axes 1 (grain, fibre), 2 and 3 of an orthotropic material; Pa.
+
+    ``nu12``: contraction along 2 under stress along 1, so that nu21 = nu12 e2 / e1.
+    """
+
+    e1: float
+    e2: float
+    nu12: float
+    g12: float
+    g13: float
+    g23: float
+
+
+@dataclass(frozen=True)
 class Material:
-    """Isotropic, linear: Young's modulus Pa, Poisson's ratio, density kg/m³."""
+    """Linear: Young's modulus Pa, Poisson's ratio, density kg/m³.
+
+    Isotropic unless ``directional`` is set; the first two numbers then repeat its e1 and nu12.
+    """
 
     name: str
     youngs_modulus: float
     poisson: float
     density: float
+    directional: Directional | None = None
+
+
+@dataclass(frozen=True)
+class Section:
+    """Cross-section of beams; m, m², m⁴. "Up" is the assignment's orientation, "across" lies square to it.
+
+    shape  "rectangle" (width across, height up), "round" (diameter), "tube" (diameter outside, wall), or "given"
+           (area, iy = ∫ up² dA, iz = ∫ across² dA, torsion = Saint-Venant's constant)
+    shear_up, shear_across  shear coefficients when they are not to follow from the shape (given: 5/6)
+    """
+
+    shape: str
+    width: float | None = None
+    height: float | None = None
+    diameter: float | None = None
+    wall: float | None = None
+    area: float | None = None
+    iy: float | None = None
+    iz: float | None = None
+    torsion: float | None = None
+    shear_up: float | None = None
+    shear_across: float | None = None
+
+
+@dataclass(frozen=True)
+class Ply:
+    """A layer of a sheet: the name of its material, thickness m, angle of its axis 1 from the assignment's direction,
+    degrees, about the normal."""
+
+    material: str
+    thickness: float
+    angle: float = 0.0
 
 
 @dataclass(frozen=True)
 class Assignment:
-    """Material (and sheet thickness in m for shells) of the cells that ``target`` names.
+    """Material of the cells that ``target`` names, with the sheet thickness (m) of shells and the section of beams.
 
-    ``target`` is a cell group, a cell kind ("quad4"), or "*" for all; later assignments win.
-    ``formulation`` picks an element formulation by name; empty takes the default of the kind.
+    target       a cell group, a cell kind ("quad4"), or "*" for all; later assignments win
+    formulation  an element formulation by name; empty takes the default of the kind
+    section      of line cells; orientation (3,) points "up" in the section, any length
+    offset       m from the nodes to the middle of the sheet along its normal, or to the axis of the beam upwards;
+                 offset_across the same across the beam
+    direction    (3,) axis 1 of directional material, projected on the sheet
+    plies        layers of a sheet from its lower side (against the normal) up, instead of material and thickness
     """
 
     target: str
-    material: str
+    material: str = ""
     thickness: float | None = None
     formulation: str = ""
+    section: Section | None = None
+    orientation: tuple[float, ...] | None = None
+    offset: float = 0.0
+    offset_across: float = 0.0
+    direction: tuple[float, ...] | None = None
+    plies: tuple[Ply, ...] = ()
 
 
 @dataclass(frozen=True, eq=False)
@@ -146,6 +208,30 @@ class LumpedMass:
 
 
 @dataclass(frozen=True, eq=False)
+class Link:
+    """A rigid link: every node of ``followers`` moves with the one node ``leader`` as a rigid body does."""
+
+    name: str
+    leader: Selector
+    followers: Selector
+
+
+@dataclass(frozen=True, eq=False)
+class Tie:
+    """Nodes glued to a surface that does not share nodes with them.
+
+    nodes    the nodes that follow
+    surface  the faces that lead: outer faces of solids and shell cells, all of whose nodes are selected
+    reach    m, farthest a node may lie from its face; None: half the longest edge of the face
+    """
+
+    name: str
+    nodes: Selector
+    surface: Selector
+    reach: float | None = None
+
+
+@dataclass(frozen=True, eq=False)
 class FunctionalPoint:
     """A point whose motion along ``direction`` matters for the product ("image blur", "sideways").
 
@@ -175,18 +261,38 @@ class Physics:
     supports: tuple[Support, ...] = ()
     springs: tuple[Spring, ...] = ()
     masses: tuple[LumpedMass, ...] = ()
+    links: tuple[Link, ...] = ()
+    ties: tuple[Tie, ...] = ()
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "materials", frozen_map(self.materials))
 
 
 @dataclass(frozen=True)
+class Layer:
+    """A :class:`Ply` with its material looked up."""
+
+    material: Material
+    thickness: float
+    angle: float = 0.0
+
+
+@dataclass(frozen=True)
 class Property:
-    """What one group of cells is made of, resolved: the argument of every element formulation."""
+    """What one group of cells is made of, resolved: the argument of every element formulation.
+
+    Fields as in :class:`Assignment`. With ``layers``, thickness is their sum and material that of the first.
+    """
 
     material: Material
     thickness: float | None = None
     formulation: str = ""
+    section: Section | None = None
+    orientation: tuple[float, ...] | None = None
+    offset: float = 0.0
+    offset_across: float = 0.0
+    direction: tuple[float, ...] | None = None
+    layers: tuple[Layer, ...] = ()
 
 
 @dataclass(frozen=True, eq=False)
@@ -207,21 +313,31 @@ class Design:
     @cached_property
     def properties(self) -> tuple[tuple[Property, ...], Array]:
         """The distinct properties in use and, by cell row, the index into them (−1: none assigned)."""
-        mesh, known = self.mesh, self.physics.materials
+        mesh = self.mesh
         index = np.full(mesh.n_cells, -1, np.int64)
         found: list[Property] = []
         for item in self.physics.assignments:
-            if item.material not in known:
-                raise ModelError(
-                    f"design '{self.name}': assignment to '{item.target}' names the unknown material "
-                    f"'{item.material}'", expected=f"one of: {', '.join(known) or 'none declared'}",
-                )
             rows = self._target_rows(item.target)
-            prop = Property(known[item.material], item.thickness, item.formulation)
+            prop = self._property(item)
             if prop not in found:
                 found.append(prop)
             index[rows] = found.index(prop)
         return tuple(found), frozen(index)
+
+    def _property(self, item: Assignment) -> Property:
+        known = self.physics.materials
+        for name in [ply.material for ply in item.plies] or [item.material]:
+            if name not in known:
+                raise ModelError(
+                    f"design '{self.name}': assignment to '{item.target}' names the unknown material '{name}'",
+                    expected=f"one of: {', '.join(known) or 'none declared'}",
+                )
+        layers = tuple(Layer(known[ply.material], ply.thickness, ply.angle) for ply in item.plies)
+        return Property(
+            layers[0].material if layers else known[item.material],
+            sum(layer.thickness for layer in layers) if layers else item.thickness,
+            item.formulation, item.section, item.orientation, item.offset, item.offset_across, item.direction, layers,
+        )
 
     def _target_rows(self, target: str) -> Array:
         mesh = self.mesh
