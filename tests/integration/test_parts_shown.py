@@ -41,7 +41,7 @@ def drawn(dossier, folder, *options):
         (("--cut", "x=120mm"), "cut at x = 120\u00a0mm"),
         (("--cut", "x = 0.12 m"), "cut at x = 120\u00a0mm"),
         (("--cut", "0,0,2=1.5cm"), "cut at z = 15\u00a0mm"),
-        (("--cut", "1,0,-1=-4e-2m"), "cut across (0.71, 0, −0.71) at −40\u00a0mm"),
+        (("--cut", "1,0,-1=-2e-2m"), "cut across (0.71, 0, −0.71) at −20\u00a0mm"),
         (("--node-lines",), "node lines, if any: no motion normal to the surface"),
     ],
 )
