@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import re
 from pathlib import Path
-from typing import Annotated, Any
+from typing import Annotated, Any, Literal
 
 import typer
 
@@ -35,6 +35,9 @@ def animate(
     strip: Annotated[bool, typer.Option("--strip", help="Draw a strip of five phases (.png).")] = False,
     peak: Annotated[float | None, typer.Option(min=0.01, max=50, help="Drawn peak in % of the diagonal.")] = None,
     no_energy: Annotated[bool, typer.Option("--no-energy", help="Leave out the energy colours.")] = False,
+    energy: Annotated[
+        Literal["own", "given"], typer.Option(help='Whose strain energies: our "own", or "given" with the modes.')
+    ] = "own",
     no_ghost: Annotated[bool, typer.Option("--no-ghost", help="Leave out the undeformed outline.")] = False,
     mesh_edges: Annotated[bool, typer.Option("--mesh-edges", help="Draw the edges of elements.")] = False,
     node_lines: Annotated[bool, typer.Option("--node-lines", help="Draw the lines that do not move.")] = False,
@@ -64,6 +67,8 @@ def animate(
             "cannot tell what to draw", file=target, found=f"the ending '{target.suffix}'",
             expected=".png for a strip" if strip else ".gif or .mp4 for a loop, .png for a still",
         )
+    if against and energy == "given":
+        raise InputError("given energies are of one design's own unit", do="leave out --energy given, or --against")
     options: dict[str, Any] = {
         "theme": theme, "width": width, "ghost": not no_ghost, "mesh_edges": mesh_edges, "node_lines": node_lines,
         "showing": Showing(tuple(hide or ()), tuple(only or ()), _plane(cut) if cut else None),
@@ -80,7 +85,8 @@ def animate(
             )
         else:
             picture = single_picture(
-                study, mode, true_scale=true_scale, peak_percent=peak, energy=not no_energy, **options
+                study, mode, true_scale=true_scale, peak_percent=peak, energy=not no_energy,
+                given_energy=energy == "given" and not no_energy, **options
             )
         if strip:
             save_strip(picture, target, progress)

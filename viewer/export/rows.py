@@ -9,6 +9,7 @@ import numpy as np
 
 from viewer.errors import RefusedError
 from viewer.insight.correlate import common_support, mac
+from viewer.insight.given_energy import agreement
 from viewer.model.arrays import Array
 from viewer.model.cycle import cycle_peaks
 from viewer.model.design import FunctionalPoint
@@ -65,6 +66,7 @@ def _mode_row(study: Study, index: int) -> Row:
         "closure": None,
         "residual_share": None,
         "energies_trusted": None,
+        "given_energy_agreement": None,
     }
     if found is not None:
         for word, values in (("strain", found.strain[index]), ("kinetic", found.kinetic[index])):
@@ -75,6 +77,8 @@ def _mode_row(study: Study, index: int) -> Row:
         row["closure"] = _number(found.closure[index])
         row["residual_share"] = _number(found.residual[index])
         row["energies_trusted"] = bool(found.trusted[index])
+        if modes.cell_energy is not None:
+            row["given_energy_agreement"] = _number(agreement(found.strain[index], modes.cell_energy[index]))
     return row
 
 
@@ -111,11 +115,12 @@ def pair_caption(row: Row) -> str:
 
 def group_rows(study: Study) -> list[Row]:
     """One row for each mode and cell group: its shares of strain energy, kinetic energy and volume, in percent of
-    what the cells hold (springs and lumped masses apart)."""
+    what the cells hold (springs and lumped masses apart), and of the strain energy that the modes' file gives."""
     found = study.energies
     if found is None:
         return []
-    rows = []
+    given = study.modes.cell_energy
+    rows: list[Row] = []
     for index in range(study.count):
         for name, cells in study.design.mesh.cell_groups.items():
             rows.append(
@@ -128,6 +133,8 @@ def group_rows(study: Study) -> list[Row]:
                     "volume_percent": _percent(found.volumes, cells),
                 }
             )
+            if given is not None:
+                rows[-1]["given_strain_energy_percent"] = _percent(np.nan_to_num(given[index]), cells)
     return rows
 
 

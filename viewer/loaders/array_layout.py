@@ -13,6 +13,7 @@ rotations           (m, n, 3)              optional
 freq_hz             (m,) float             Hz
 damping             (m,) float             optional, 1 = critical
 mass_normalised     (m,) integer           optional, 1 when the shapes have unit modal mass
+strain_energy       (m, all cells) float   optional, as the solver gave it; cells as for groups
 ==================  =====================  ===========================================================
 """
 
@@ -108,7 +109,18 @@ def modes_of(arrays: Mapping[str, StoredArray], path: Path) -> RawModes:
         field.get("damping"),
         field.get("node_id"),
         normalised is not None and normalised.size > 0 and bool(np.all(normalised)),
+        cell_energy=_energies(arrays),
     )
+
+
+def _energies(arrays: Mapping[str, StoredArray]) -> tuple[Array | None, Array] | None:
+    """Element ids (None: as the cells come) and strain energies (modes, cells) that the file gives."""
+    if "strain_energy" not in arrays:
+        return None
+    energy = arrays["strain_energy"].read()
+    ids = [arrays.get("elem_id" + name.removeprefix("cells")) for name in arrays if _CELLS.fullmatch(name)]
+    known = [part.read() for part in ids if part is not None]
+    return (np.concatenate(known) if known and len(known) == len(ids) else None), energy
 
 
 def arrays_to_write(mesh: Mesh, modes: ModeSet | None) -> Iterator[tuple[str, tuple[int, ...], np.dtype, Callable]]:
@@ -137,6 +149,8 @@ def arrays_to_write(mesh: Mesh, modes: ModeSet | None) -> Iterator[tuple[str, tu
     if modes.damping is not None:
         yield whole("damping", modes.damping)
     yield whole("mass_normalised", np.full(modes.count, modes.normalisation == "mass", np.uint8))
+    if modes.cell_energy is not None:
+        yield whole("strain_energy", modes.cell_energy)
     shape, dtype = (modes.count, mesh.n_nodes, 3), np.dtype(np.complex128 if modes.is_complex else np.float64)
     yield "modes", shape, dtype, lambda: (modes.shape(i)[None] for i in range(modes.count))
     if modes.shapes.has_rotations:

@@ -14,7 +14,13 @@ import numpy as np
 from viewer.cells import KINDS
 from viewer.errors import LoadError
 from viewer.jobs import SILENT, Progress
-from viewer.loaders.array_names import group_name, mode_array, parse_mode_array
+from viewer.loaders.array_names import (
+    energy_array,
+    group_name,
+    mode_array,
+    parse_energy_array,
+    parse_mode_array,
+)
 from viewer.loaders.file_shapes import FileShapes, Parts, Stretch, stamp_of
 from viewer.loaders.raw_data import RawBlock, RawMesh, RawModes, kinds_by_vtk
 from viewer.loaders.vtu_xml import DataArray
@@ -99,7 +105,33 @@ def modes_of(file: VtkArrays, progress: Progress = SILENT) -> RawModes:
         field.get("damping"),
         ids,
         normalised is not None and len(normalised) > 0 and bool(normalised.all()),
+        cell_energy=_energies(file, shapes.count),
     )
+
+
+def _energies(file: VtkArrays, count: int) -> tuple[Array | None, Array] | None:
+    """Element ids (None: as the cells come) and strain energies (modes, cells) that the file gives."""
+    found = {parse_energy_array(name): array for name, array in file.arrays["CellData"].items()}
+    given = {index: array for index, array in found.items() if index is not None}
+    if not given:
+        return None
+    if max(given) >= count:
+        raise file.error(
+            "strain energies are given for a mode that is not there",
+            place=f"array '{energy_array(max(given))}'",
+            expected=f"at most {count} modes",
+        )
+    energy = np.full((count, file.n_cells), np.nan)
+    for index, array in given.items():
+        if array.components != 1:
+            raise file.error(
+                "a strain energy has one number a cell",
+                place=f"array '{energy_array(index)}'",
+                found=f"{array.components} components",
+            )
+        energy[index] = file.read(array, file.n_cells)
+    ids = file.arrays["CellData"].get("elem_id")
+    return None if ids is None else file.read(ids, file.n_cells), energy
 
 
 # --- cells ---

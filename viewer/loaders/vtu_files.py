@@ -3,7 +3,8 @@
 Point arrays ``mode_001`` … hold translations (``mode_001_re`` and ``mode_001_im`` when complex),
 ``mode_001_rot`` … rotations; field arrays ``freq_hz``, ``damping`` and ``mass_normalised`` (1 when the shapes
 have unit modal mass) have one value a mode; ``node_id`` and ``elem_id`` are integers; an integer array
-``group_NAME`` on points or cells is a group, its members not zero. Lengths are metres in files written here.
+``group_NAME`` on points or cells is a group, its members not zero. Cell arrays ``strain_energy_001`` … hold strain
+energies of each mode, if the solver that made it gave them. Lengths are metres in files written here.
 
 Read without VTK, so that sizes are checked before memory is taken and a shape can stay in the file.
 """
@@ -17,7 +18,7 @@ import numpy as np
 
 from viewer.cells import KINDS
 from viewer.jobs import SILENT, Progress, atomic_path
-from viewer.loaders.array_names import group_array, mask, mode_array
+from viewer.loaders.array_names import energy_array, group_array, mask, mode_array
 from viewer.loaders.raw_data import RawMesh, RawModes
 from viewer.loaders.vtk_arrays import mesh_of, modes_of
 from viewer.loaders.vtu_xml import VtuFile
@@ -68,6 +69,9 @@ def arrays_to_write(mesh: Mesh, modes: ModeSet | None):
     for name, rows in mesh.node_groups.items():
         yield "PointData", group_array(name), "<u1", (n,), lambda rows=rows: mask(rows, n)
     yield "CellData", "elem_id", "<i8", (cells,), lambda: mesh.cell_ids
+    if modes is not None and modes.cell_energy is not None:
+        for i, energy in enumerate(modes.cell_energy):
+            yield "CellData", energy_array(i), "<f8", (cells,), lambda energy=energy: energy
     for name, rows in mesh.cell_groups.items():
         yield "CellData", group_array(name), "<u1", (cells,), lambda rows=rows: mask(rows, cells)
     yield "Points", "Points", "<f8", (n, 3), lambda: mesh.points

@@ -12,6 +12,7 @@ from viewer.errors import InputError
 from viewer.insight.correlate import shared_turn
 from viewer.insight.given_energy import given_density
 from viewer.insight.scale import Scale, common_scale
+from viewer.model.arrays import Array
 from viewer.model.design import LumpedMass
 from viewer.scene.figures import digits
 from viewer.scene.node_lines import lines_of
@@ -46,7 +47,8 @@ def single_picture(
 ) -> Picture:
     """The picture of mode number ``mode`` (from 1). ``look``: theme, ghost, mesh_edges, view of ``Picture``.
 
-    ``given_energy`` colours by the strain energies that came with the modes; ``showing`` leaves parts out; ``node_lines`` draws where a standing mode does not move.
+    ``given_energy`` colours by the strain energies that came with the modes.
+    ``showing`` leaves parts out; ``node_lines`` draws where a standing mode does not move.
 
     ``RefusedError`` when true scale is asked for and no size is known; ``InputError`` for a mode that is not there.
     """
