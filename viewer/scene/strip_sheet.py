@@ -12,6 +12,7 @@ import numpy as np
 
 from viewer.model.arrays import Array
 from viewer.model.cycle import cycle_peaks
+from viewer.scene import view
 from viewer.scene.colour_bar import colour_bar_items
 from viewer.scene.motion import is_standing
 from viewer.scene.note_layout import gauge, is_true, knob
@@ -24,6 +25,7 @@ from viewer.scene.typeface import wrap
 TYPE = 1.5
 WIDTH, HEIGHT = 1600, 500
 ROW, LEAST_ROW = 262.0, 222.0       # height of a row of bodies; less, when that keeps the strip 500 high
+LEAST_COMPARED, _BESIDE = 110.0, 32.0     # the same of compared bodies, as high as they need; free beside a body
 _WORD, _GAUGE, _RULE = 35.0, 58.0, 88.0       # baseline, line and rule below the last row
 _FIRST, _SECOND, _STEP = 44.0, 86.0, 38.0     # baselines below the rule, distance of further lines
 _FOOT = 26.0                       # below the last baseline
@@ -59,7 +61,12 @@ def strip_layout(picture: Picture) -> Strip:
     wide = WIDTH / len(phases)
     keys = _KEY_LINE * (1 if picture.layout == "side" else len(picture.bodies)) if compared else 0.0
     note_height = _note(picture, 0.0, [])
-    tall = min(max(HEIGHT - _RULE - note_height, LEAST_ROW), ROW) if rows == 1 and not keys else ROW
+    if compared:
+        low, high = view.scene_box(picture)
+        drawn = _BESIDE + (wide - _BESIDE) * float(high[1] - low[1]) / max(float(high[0] - low[0]), 1e-300)
+        tall = float(round(min(max(drawn, LEAST_COMPARED), ROW)))
+    else:
+        tall = min(max(HEIGHT - _RULE - note_height, LEAST_ROW), ROW)
     items: list[Primitive] = []
     cells = []
     y = 0.0
