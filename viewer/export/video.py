@@ -26,8 +26,8 @@ BLOCK = 16                 # H.264 codes blocks of 16 × 16 pixels
 # constant quality, near the still; colours by ITU-R BT.709, and said so, since players guess otherwise
 _ENCODING = (
     "-crf", "14", "-preset", "medium", "-tune", "animation", "-movflags", "+faststart",
-    "-vf", "scale=out_color_matrix=bt709:out_range=tv",
-    "-colorspace", "bt709", "-color_primaries", "bt709", "-color_trc", "bt709", "-color_range", "tv",
+    "-vf", "scale=out_color_matrix=bt709:out_range=tv:flags=accurate_rnd+full_chroma_int,"
+    "setparams=colorspace=bt709:color_primaries=bt709:color_trc=bt709:range=tv",
 )  # fmt: skip
 
 
