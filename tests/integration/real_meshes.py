@@ -22,13 +22,14 @@ _FOLDER = Path(os.environ.get("HINGELIGHT_REAL_MESHES") or Path(platformdirs.use
 
 
 def real_mesh(name: str) -> Path:
-    """Path of a file of meshio's tests/meshes, "sub/file"."""
+    """Path of the file of this name below meshio's tests/meshes."""
     found = _unpacked()
     if isinstance(found, str):
         if os.environ.get("HINGELIGHT_REQUIRE_REAL") == "1":
             pytest.fail(found)
         pytest.skip(found)
-    return found / "tests" / "meshes" / name
+    (path,) = (found / "tests" / "meshes").rglob(name)
+    return path
 
 
 @cache

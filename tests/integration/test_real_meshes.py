@@ -25,12 +25,12 @@ from viewer.loaders import read_mesh
 
 # name → (unit of length to fill in, cell kinds with their numbers, node groups, cell groups)
 SOLIDS = {
-    "medit/sphere_mixed.1.meshb": ("mm", {"tet4": 9072, "wedge6": 3024}, {"reference 1"}, set()),
-    "med/cylinder.med": ("cm", {"pyramid5": 18, "tet4": 63}, {"Side", "Top"}, {"A", "B", "C"}),
-    "medit/hch_strct.4.meshb": ("mm", {"wedge6": 96, "hex8": 144}, {"reference 1"}, set()),
+    "sphere_mixed.1.meshb": ("mm", {"tet4": 9072, "wedge6": 3024}, {"reference 1"}, set()),
+    "cylinder.med": ("cm", {"pyramid5": 18, "tet4": 63}, {"Side", "Top"}, {"A", "B", "C"}),
+    "hch_strct.4.meshb": ("mm", {"wedge6": 96, "hex8": 144}, {"reference 1"}, set()),
     "hexbeam": ("cm", {"hex8": 40}, set(), set()),
 }
-SHEETS = {"msh/insulated-4.1.msh": ("cm", {"tri3": 111}, {"convection"}, {"wire", "insulation"})}
+SHEETS = {"insulated-4.1.msh": ("cm", {"tri3": 111}, {"convection"}, {"wire", "insulation"})}
 BOTH = {**SOLIDS, **SHEETS}
 
 
@@ -93,7 +93,7 @@ def test_volumes_are_those_of_the_bodies():
         inside = sum(measures(b.kind, mesh.points[b.nodes]).sum() for b in mesh.blocks)
         if name == "hexbeam":
             assert inside == pytest.approx(5, rel=1e-9)
-        if name == "med/cylinder.med":
+        if name == "cylinder.med":
             assert 0.85 * np.pi < inside < np.pi
         if all(KINDS[b.kind].family in ("tet", "wedge") for b in mesh.blocks):   # others have warped faces
             outer = skin([(b.kind, b.nodes) for b in mesh.blocks])
@@ -132,24 +132,38 @@ def test_from_bare_mesh_to_loop(name, tmp_path):
 def test_groups_of_families_are_joined():
     """The MED file parts its cells by families −9 (A, B), −10 (B), −11 (B, C), −12 (C) of 3, 3, 1 and 4 + 2 cells,
     its nodes by families 2 (Side), 3 (Side, Top), 4 (Top) of 8, 8 and 3 nodes: read off the file by meshio."""
-    mesh = read_mesh(real_mesh("med/cylinder.med"))
+    mesh = read_mesh(real_mesh("cylinder.med"))
     assert {name: len(rows) for name, rows in mesh.cell_groups.items()} == {"A": 3, "B": 7, "C": 7}
     assert len(mesh.node_groups["Side"]) == 16
     assert len(mesh.node_groups["Top"]) == 11
 
 
+def test_an_implausible_size_is_said_wherever_the_mesh_is_used(tmp_path):
+    """288 units long: taken as metres that is implausible, and every command says so."""
+    source = real_mesh("hch_strct.4.meshb")
+    shutil.copy(source, tmp_path / source.name)
+    draft = run("check", tmp_path / source.name)
+    assert "implausible" in draft
+    (tmp_path / "dossier.toml").write_text(filled_in(draft, "m"), encoding="utf-8")
+    assert "implausible" in run("check", tmp_path)
+    assert any("implausible" in words for words in json.loads(run("modes", tmp_path, "--json"))["cautions"])
+    (tmp_path / "dossier.toml").write_text(filled_in(draft, "mm"), encoding="utf-8")
+    assert "implausible" not in run("check", tmp_path)
+
+
 def test_two_formats_hold_one_mesh():
     """The cylinder exists in a second format, written from the same mesh: same bodies, same volume."""
-    first, second = read_mesh(real_mesh("med/cylinder.med")), read_mesh(real_mesh("nastran/cylinder.fem"))
+    first, second = read_mesh(real_mesh("cylinder.med")), read_mesh(real_mesh("cylinder.fem"))
     assert first.n_nodes == second.n_nodes == 33
     volumes = [
-        {b.kind: measures(b.kind, m.points[b.nodes]).sum() for b in m.blocks} for m in (first, second)
+        {b.kind: measures(b.kind, m.points[b.nodes]).sum() for b in m.blocks if KINDS[b.kind].dim == 3}
+        for m in (first, second)
     ]
     assert volumes[0] == pytest.approx(volumes[1], rel=1e-6)
 
 
 def test_fields_of_a_result_file_do_not_stop_its_mesh():
     """One cell, two node groups, and fields whose components are named in lists."""
-    mesh = read_mesh(real_mesh("med/box.med"))
+    mesh = read_mesh(real_mesh("box.med"))
     assert (mesh.n_nodes, mesh.n_cells, mesh.blocks[0].kind) == (8, 1, "hex8")
     assert {name: len(rows) for name, rows in mesh.node_groups.items()} == {"Left": 4, "Right": 4}

@@ -36,7 +36,7 @@ def modes(
         for name in design or opened.names:
             study = opened.study(name, count, progress)
             rows += mode_rows(study)
-            cautions += study.cautions
+            cautions += [*opened.doubts(name), *study.cautions]
     if out is not None:
         write_table(out, rows)
     if as_json:

@@ -36,36 +36,47 @@ def command(body: Callable[..., Any]) -> Callable[..., Any]:
     @functools.wraps(body)
     def run(*args: Any, **options: Any) -> None:
         as_json = bool(options.get("as_json"))
-        with _interrupts() as asked:
+        with _interrupts():
             try:
                 body(*args, **options)
             except (KeyboardInterrupt, Cancelled):
                 _stop(as_json)
             except Exception as error:
-                if asked:   # a library met Ctrl-C and made another error of it, as VTK does while it is imported
-                    _stop(as_json)
                 _explain(error, as_json)
 
     return run
 
 
+class _CtrlC:
+    """Hears Ctrl-C: the first is remembered for the next tick of progress, a second breaks off at once.
+
+    An exception in the middle of any code would be lost where Python or a library swallows it: in a destructor, in a
+    callback, or while VTK is imported.
+    """
+
+    asked = False
+
+    def __call__(self, number: int, frame: FrameType | None) -> None:
+        if self.asked:
+            signal.default_int_handler(number, frame)
+        self.asked = True
+
+
 @contextmanager
-def _interrupts() -> Iterator[list[int]]:
-    """The signals of Ctrl-C that came so far; each still raises ``KeyboardInterrupt``."""
-    asked: list[int] = []
-
-    def note(number: int, frame: FrameType | None) -> None:
-        asked.append(number)
-        signal.default_int_handler(number, frame)
-
+def _interrupts() -> Iterator[None]:
     if threading.current_thread() is not threading.main_thread():
-        yield asked     # only the main thread hears signals
+        yield       # only the main thread hears signals
         return
-    earlier = signal.signal(signal.SIGINT, note)
+    earlier = signal.signal(signal.SIGINT, _CtrlC())
     try:
-        yield asked
+        yield
     finally:
         signal.signal(signal.SIGINT, earlier)
+
+
+def _stop_asked() -> bool:
+    hears = signal.getsignal(signal.SIGINT)
+    return isinstance(hears, _CtrlC) and hears.asked
 
 
 def _stop(as_json: bool) -> NoReturn:
@@ -101,11 +112,11 @@ def answer(document: Any) -> None:
 
 @contextmanager
 def progress_bar() -> Iterator[Progress]:
-    """A progress sink that draws on standard error when that is a terminal, else stays silent."""
-    from viewer.jobs import SILENT, Progress
+    """A progress sink that hears Ctrl-C, and draws on standard error when that is a terminal."""
+    from viewer.jobs import Progress
 
     if not sys.stderr.isatty():
-        yield SILENT
+        yield Progress(stop=_stop_asked)
         return
     from rich.console import Console
     from rich.progress import BarColumn, TextColumn, TimeElapsedColumn
@@ -122,7 +133,7 @@ def progress_bar() -> Iterator[Progress]:
                 task, description=stage, completed=done, total=total or None, count=f"{done}/{total}" if total else ""
             )
 
-        yield Progress(show)
+        yield Progress(show, _stop_asked)
 
 
 def workspace(no_cache: bool) -> Any:

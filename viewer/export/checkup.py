@@ -70,7 +70,7 @@ def _check_design(opened: OpenDossier, name: str, progress: Progress) -> tuple[l
     plan = opened.dossier.plan(name)
     report = opened.workspace.report(opened.dossier, name)
     statements = [f"{name}: {mesh_words(design.mesh)}"]
-    cautions = [f"{name}: {note}" for note in report.notes]
+    cautions = [*opened.doubts(name), *(f"{name}: {note}" for note in report.notes)]
     for carrier in design.points:
         carrier.where.rows(design.mesh, f"point '{carrier.name}'")
     for amplitude in opened.dossier.amplitudes:
@@ -100,7 +100,7 @@ def check_mesh(path: Path, modes_path: Path | None, progress: Progress = SILENT)
     if modes_path is not None:
         modes = read_modes(modes_path, mesh, progress=progress)
         statements.append(f"{modes.count} modes in {modes_path.name}")
-    return Checkup(tuple(statements), tuple(report.notes), (), bare_dossier(mesh, path, modes_path))
+    return Checkup(tuple(statements), (*report.warnings, *report.notes), (), bare_dossier(mesh, path, modes_path))
 
 
 def mesh_words(mesh: Mesh) -> str:

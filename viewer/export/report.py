@@ -64,7 +64,8 @@ def write_review(
         desk = _Desk(part, theme, width, steps, _slugs(opened.names))
         comparison = _compare(desk, pairs) if pairs else None
         sections = ([comparison] if comparison else []) + [_explain(desk, study) for study in studies]
-        cautions = tuple(dict.fromkeys((*opened.warnings, *(c for s in studies for c in s.cautions))))
+        doubts = [words for s in studies for words in (*opened.doubts(s.design.name), *s.cautions)]
+        cautions = tuple(dict.fromkeys((*opened.warnings, *doubts)))
         write_index(
             part, opened.dossier.title, sections, condition=opened.dossier.condition, cautions=cautions
         )

@@ -120,6 +120,10 @@ class OpenDossier:
         modes = self.modes(name, count, progress)
         return study(design, modes, self._amplitudes(name, modes), self.dossier.condition, progress)
 
+    def doubts(self, name: str) -> tuple[str, ...]:
+        """What reading the named design's mesh found hard to believe: an implausible size, nodes far off."""
+        return tuple(f"{name}: {words}" for words in self.workspace.report(self.dossier, name).warnings)
+
     def partner(self, first: str, mode: int, second: str) -> int:
         """Number of the mode of ``second`` that the dossier pairs with mode ``mode`` of ``first``; else the same."""
         for pair in self.dossier.pairs:
