@@ -74,11 +74,12 @@ def _mode_row(study: Study, index: int) -> Row:
             row[f"{word}_energy_most_in"], row[f"{word}_energy_most_percent"] = name, share
         row["springs_strain_percent"] = 100 * found.spring_share(index)
         row["masses_kinetic_percent"] = 100 * found.mass_share(index)
-        row["closure"] = _number(found.closure[index])
-        row["residual_share"] = _number(found.residual[index])
-        row["energies_trusted"] = bool(found.trusted[index])
         if modes.cell_energy is not None:
             row["given_energy_agreement"] = _number(agreement(found.strain[index], modes.cell_energy[index]))
+    if study.figures is not None:
+        row["closure"] = _number(study.figures.closure[index])
+        row["residual_share"] = _number(study.figures.residual[index])
+        row["energies_trusted"] = bool(study.figures.trusted[index])
     return row
 
 

@@ -28,6 +28,7 @@ from viewer.model.design import (
     Support,
 )
 from viewer.model.dossier import DesignPlan, Dossier, ModePair, StatedAmplitude
+from viewer.model.matrices import MatrixFiles
 
 DEFAULT_MODE_COUNT = 6
 # Outside these bounds a value is no error but is flagged: most often a unit was mixed up. Softest foams lie near
@@ -104,6 +105,18 @@ class _Reader:
             tuple({**points, **own}.values()),
             self.mode_names(item, place),
             item.note,
+            self.matrices(item, place),
+        )
+
+    def matrices(self, item: schema.DesignTable, place: str) -> MatrixFiles | None:
+        if item.stiffness is None or item.mass_matrix is None or item.matrix_order is None:
+            return None
+        named = item.matrix_order in schema.MATRIX_ORDERS
+        order = item.matrix_order if named else self.existing(item.matrix_order, f"{place}, matrix_order")
+        return MatrixFiles(
+            self.existing(item.stiffness, f"{place}, stiffness"),
+            self.existing(item.mass_matrix, f"{place}, mass_matrix"),
+            order, self.stiffness_unit, self.mass_unit,
         )
 
     def physics(self, item: schema.DesignTable, place: str, materials: dict[str, Material]) -> Physics:

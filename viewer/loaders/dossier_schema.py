@@ -29,6 +29,9 @@ turning springs N·m/rad::
     springs = [{name = "strap", group = "eye", stiffness = [100, 0, 0]}]
     masses = [{name = "camera", group = "pad", mass = 1.2, position = [0, 0, 500]}]
     mode_names = {1 = "boom nods"}
+    # instead of assign, matrices of another program (their numbers in the units of stiffness and mass above), which
+    # contain all but the supports: stiffness = "K.mtx", mass_matrix = "M.mtx", matrix_order = "by node" (ux uy uz of
+    # the lowest node number, then the next), "by direction", or a table with the columns node, direction, a line a row
 
     [[points]]                  # of all designs; a design's own `points` add to them or replace by name
     name = "camera lens"
@@ -75,6 +78,9 @@ class Table(BaseModel):
     """Strict: unknown keys, wrong types, NaN and infinities are errors."""
 
     model_config = ConfigDict(extra="forbid", strict=True, allow_inf_nan=False, frozen=True)
+
+
+MATRIX_ORDERS = ("by node", "by direction")
 
 
 class Units(Table):
@@ -173,6 +179,9 @@ class DesignTable(Table):
     modes: Name | None = None
     solve: ModeNumber | None = None
     assign: list[AssignTable] = []
+    stiffness: Name | None = None
+    mass_matrix: Name | None = None
+    matrix_order: Name | None = None
     supports: list[SupportTable] = []
     springs: list[SpringTable] = []
     masses: list[MassTable] = []
@@ -186,12 +195,27 @@ class DesignTable(Table):
             raise ValueError(
                 "says both modes and solve, expected one: a file of modes, or a number of modes to compute"
             )
-        if self.modes is None and not self.assign:
+        matrices = {key: getattr(self, key) for key in ("stiffness", "mass_matrix", "matrix_order")}
+        if any(matrices.values()):
+            self._only_matrices(matrices)
+        elif self.modes is None and not self.assign:
             raise ValueError(
                 'says neither modes nor assign, expected modes = "FILE", or '
                 'assign = [{target = "*", material = "NAME"}] so that modes can be computed'
             )
         return self
+
+
+    def _only_matrices(self, matrices: dict[str, str | None]) -> None:
+        missing = [key for key, value in matrices.items() if value is None]
+        if missing:
+            raise ValueError(
+                f"says no {missing[0]}, expected stiffness, mass_matrix and matrix_order together; matrix_order is "
+                '"by node", "by direction" or a table with the columns node, direction'
+            )
+        others = [key for key in ("assign", "springs", "masses", "links", "ties") if getattr(self, key, None)]
+        if others:
+            raise ValueError(f"says both stiffness and {others[0]}, expected one: matrices contain everything")
 
 
 class AmplitudeTable(Place):

@@ -31,12 +31,12 @@ _STEPS = 300            # of conjugate gradients
 
 def flexible_share(layout: Layout, vectors: Array) -> Array:
     """(k,) share of the mean square translation of the nodes that is beyond their best rigid motion."""
-    nodes = np.nonzero(layout.dof[:, 0] >= 0)[0]
+    nodes = np.nonzero((layout.dof[:, :3] >= 0).any(axis=1))[0]
     fields = rigid_fields(layout.points[nodes], layout.points[nodes].mean(axis=0)).reshape(-1, 6)
     strength, axes = np.linalg.eigh(fields.T @ fields / np.maximum((fields**2).sum(), 1e-300))
     seen = strength > 1e-12 * strength[-1]
     basis, _ = np.linalg.qr(fields @ axes[:, seen])
-    moved = vectors[:, layout.dof[nodes, :3].ravel()]
+    moved = layout.spread(vectors)[0][:, nodes].reshape(len(vectors), -1)
     whole = np.maximum(np.sum(np.abs(moved) ** 2, axis=1), 1e-300)
     return np.maximum(1 - np.sum(np.abs(moved @ basis) ** 2, axis=1) / whole, 0.0)
 
@@ -47,7 +47,7 @@ def residuals(layout: Layout, vectors: Array, omega: Array, progress: Progress =
     The cells' shares add up to the residual but for what springs and lumped masses hold. Beyond 200 000 free
     directions A⁻¹ is replaced by conjugate gradients that may stop early; the figure is then a lower bound.
     """
-    system = assemble_layout(layout, progress)
+    system = layout if isinstance(layout, System) else assemble_layout(layout, progress)
     # A shape that moves where the design is held, or apart from what it follows, cannot be its mode: that motion is
     # taken away, and what it leaves behind shows as residual beside the place.
     vectors = layout.extend(vectors[:, layout.free])

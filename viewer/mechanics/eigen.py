@@ -19,6 +19,7 @@ from viewer.errors import ModelError, SolveError
 from viewer.jobs import SILENT, Progress
 from viewer.mechanics.assembly import System, assemble
 from viewer.mechanics.factor import Factor, SuperLU, factorise
+from viewer.mechanics.given_matrices import given_system
 from viewer.mechanics.patch import rigid_fields
 from viewer.mechanics.settle import rounding_of, settle_modes
 from viewer.model.arrays import Array
@@ -33,14 +34,16 @@ _CLEAR = 100.0          # times the rounding of the lowest Rayleigh quotient: th
 
 
 def solve(design: Design, count: int, progress: Progress = SILENT, *, solver: str = "") -> ModeSet:
-    """The ``count`` lowest modes of a design, mass-normalised (m/√kg, rotations in rad/√kg beside them).
+    """The ``count`` lowest modes of a design or of the matrices given with it, mass-normalised (m/√kg, rotations in
+    rad/√kg beside them).
 
     solver  "superlu" or "pardiso"; empty takes PARDISO where the extra ``fast`` is installed
     Rigid-body modes come first with frequency 0. Start vector, signs and the basis of repeated frequencies are
     fixed: the same input gives the same shapes. Fewer modes come back when the model has fewer.
     Raises ``ModelError`` (see ``assemble``) and ``SolveError`` when the residual or the count does not pass.
     """
-    return solve_system(assemble(design, progress), count, progress, solver=solver)
+    system = assemble(design, progress) if design.physics.matrices is None else given_system(design)
+    return solve_system(system, count, progress, solver=solver)
 
 
 def solve_system(system: System, count: int, progress: Progress = SILENT, *, solver: str = "") -> ModeSet:

@@ -10,6 +10,7 @@ import numpy as np
 
 from viewer.errors import ModelError
 from viewer.model.arrays import Array, frozen, frozen_map
+from viewer.model.matrices import GivenMatrices
 from viewer.model.mesh import Mesh
 
 DIRECTIONS = ("ux", "uy", "uz", "rx", "ry", "rz")
@@ -263,6 +264,7 @@ class Physics:
     masses: tuple[LumpedMass, ...] = ()
     links: tuple[Link, ...] = ()
     ties: tuple[Tie, ...] = ()
+    matrices: GivenMatrices | None = None          # instead of assignments
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "materials", frozen_map(self.materials))

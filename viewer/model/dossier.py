@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from pathlib import Path
 
 import numpy as np
@@ -11,6 +11,7 @@ import numpy as np
 from viewer.errors import DossierError
 from viewer.model.arrays import Array, frozen, frozen_map
 from viewer.model.design import Design, FunctionalPoint, Physics, Selector
+from viewer.model.matrices import GivenMatrices, MatrixFiles
 from viewer.model.mesh import Mesh
 
 
@@ -42,7 +43,7 @@ class StatedAmplitude:
 
 @dataclass(frozen=True, eq=False)
 class DesignPlan:
-    """One design before its mesh is read: ``build(mesh)`` gives the design."""
+    """One design before its mesh and matrices are read: ``build(mesh, matrices)`` gives the design."""
 
     name: str
     mesh_file: Path
@@ -53,12 +54,14 @@ class DesignPlan:
     points: tuple[FunctionalPoint, ...] = ()
     mode_names: Mapping[int, str] = field(default_factory=dict)
     note: str = ""
+    matrices: MatrixFiles | None = None    # stiffness and mass instead of assignments
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "mode_names", frozen_map(self.mode_names))
 
-    def build(self, mesh: Mesh) -> Design:
-        return Design(self.name, mesh, self.physics, self.points, self.mode_names, self.note)
+    def build(self, mesh: Mesh, matrices: GivenMatrices | None = None) -> Design:
+        physics = replace(self.physics, matrices=matrices)
+        return Design(self.name, mesh, physics, self.points, self.mode_names, self.note)
 
 
 @dataclass(frozen=True, eq=False)

@@ -12,6 +12,7 @@ from viewer.errors import ModelError
 from viewer.insight.scale import CarriedPoint, Scale, carried_points, scale_mode
 from viewer.jobs import SILENT, Progress
 from viewer.mechanics.energy import Energies, energies
+from viewer.mechanics.given_matrices import NO_CELLS, Totals, totals
 from viewer.model.arrays import Array
 from viewer.model.design import Design
 from viewer.model.dossier import StatedAmplitude
@@ -23,6 +24,7 @@ class Study:
     """A design, its mode set, the element energies of every mode, and the stated amplitudes by mode number.
 
     energies    None when the design has no (usable) physics; ``no_energies`` then says why
+    totals      energies as wholes, when stiffness and mass were given as matrices
     condition   words that stand in every scale note ("clamped root, camera 1.2 kg")
     """
 
@@ -32,6 +34,7 @@ class Study:
     no_energies: str = ""
     amplitudes: Mapping[int, StatedAmplitude] = field(default_factory=dict)
     condition: str = ""
+    totals: Totals | None = None
     _scales: dict[tuple[int, bool, float | None], Scale] = field(default_factory=dict, init=False, repr=False)
 
     @property
@@ -46,12 +49,19 @@ class Study:
     def cautions(self) -> tuple[str, ...]:
         """What a reader of any figure of this study must know."""
         words = list(self.energies.cautions) if self.energies is not None else [self.no_energies]
-        if self.energies is not None:
-            doubtful = [i + 1 for i in range(self.count) if self.has_strain(i) and not self.energies.trusted[i]]
+        figures = self.figures
+        if figures is not None:
+            elastic = np.isfinite(figures.closure)
+            doubtful = [i + 1 for i in range(self.count) if elastic[i] and not figures.trusted[i]]
             if doubtful:
                 listed = ", ".join(str(n) for n in doubtful)
                 words.append(f"energies of mode {listed} are not trusted: see closure and residual")
         return tuple(f"{self.design.name}: {w}" for w in words)
+
+    @property
+    def figures(self) -> Energies | Totals | None:
+        """Where closure, residual and trust stand, whether energies are known by element or as wholes."""
+        return self.totals if self.energies is None else self.energies
 
     def has_strain(self, index: int) -> bool:
         """Whether mode ``index`` has strain energy to show: it has physics and is no rigid-body mode."""
@@ -61,6 +71,8 @@ class Study:
         """φᵀMφ of the shape as given, kg·(shape unit)²; None when neither masses nor normalisation are known."""
         if self.modes.normalisation == "mass":
             return 1.0
+        if self.totals is not None:
+            return float(self.totals.modal_mass[index])
         if self.energies is None or not self.modes.freq_hz[index] > 0:
             return None
         return 2 * float(self.energies.total_kinetic[index]) / self.modes.omega(index) ** 2
@@ -99,8 +111,10 @@ def study(
     progress: Progress = SILENT,
 ) -> Study:
     """Form the energies of all modes; a design without materials is still studied, without energies."""
-    found, why = None, ""
-    if not design.physics.assignments:
+    found, whole, why = None, None, ""
+    if design.physics.matrices is not None:
+        whole, why = totals(design, modes, progress=progress), f"design '{design.name}': {NO_CELLS}"
+    elif not design.physics.assignments:
         why = f"design '{design.name}' states no materials, so it has no energies: add materials and assign them"
     else:
         try:
@@ -109,4 +123,4 @@ def study(
             if modes.origin == "computed":
                 raise   # it was solved a moment ago: this would be our own fault
             why = str(error)
-    return Study(design, modes, found, why, amplitudes or {}, condition)
+    return Study(design, modes, found, why, amplitudes or {}, condition, whole)

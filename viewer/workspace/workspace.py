@@ -7,7 +7,7 @@ from dataclasses import dataclass, field, replace
 from pathlib import Path
 
 from viewer.jobs import SILENT, Progress, in_child
-from viewer.loaders import ReadReport, read_dossier_report, read_mesh_report, read_modes
+from viewer.loaders import ReadReport, read_dossier_report, read_matrices, read_mesh_report, read_modes
 from viewer.mechanics.eigen import solve
 from viewer.model.design import Design
 from viewer.model.dossier import DesignPlan, Dossier, StatedAmplitude
@@ -41,7 +41,8 @@ class Workspace:
         key = (dossier.path, name)
         if key not in self._designs:
             mesh, report = read_mesh_report(plan.mesh_file, length_unit=plan.length_unit, progress=progress)
-            self._designs[key] = plan.build(mesh)
+            given = None if plan.matrices is None else read_matrices(plan.matrices, mesh, progress)
+            self._designs[key] = plan.build(mesh, given)
             self._reports[key] = report
         return self._designs[key]
 
