@@ -46,5 +46,5 @@ def test_request_in_a_child_process(tmp_path):
 
 
 def test_unknown_kind_is_refused(tmp_path):
-    with pytest.raises(ExportError, match="one of: gif, png, strip"):
+    with pytest.raises(ExportError, match="one of: gif, mp4, png, strip"):
         RenderRequest(picture(), "film", tmp_path / "a")
