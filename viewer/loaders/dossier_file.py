@@ -19,13 +19,18 @@ from viewer.loaders.dossier_parse import parsed, short
 from viewer.model.design import (
     DIRECTIONS,
     Assignment,
+    Directional,
     FunctionalPoint,
+    Link,
     LumpedMass,
     Material,
     Physics,
+    Ply,
+    Section,
     Selector,
     Spring,
     Support,
+    Tie,
 )
 from viewer.model.dossier import DesignPlan, Dossier, ModePair, StatedAmplitude
 from viewer.model.matrices import MatrixFiles
@@ -126,24 +131,66 @@ class _Reader:
         supports = tuple(self.support(s, f"{place}, supports {n}", n) for n, s in enumerate(item.supports, 1))
         springs = tuple(self.spring(s, f"{place}, springs {n}", n) for n, s in enumerate(item.springs, 1))
         masses = tuple(self.mass(m, f"{place}, masses {n}", n) for n, m in enumerate(item.masses, 1))
-        for word, things in (("supports", supports), ("springs", springs), ("masses", masses)):
+        links = tuple(self.link(m, f"{place}, links {n}", n) for n, m in enumerate(item.links, 1))
+        ties = tuple(self.tie(m, f"{place}, ties {n}", n) for n, m in enumerate(item.ties, 1))
+        named: dict[str, Iterable[Any]] = {
+            "supports": supports, "springs": springs, "masses": masses, "links": links, "ties": ties,
+        }
+        for word, things in named.items():
             self.no_duplicates(f"{place}, {word}", [thing.name for thing in things])
-        used = {a.material for a in assignments}
-        return Physics({n: m for n, m in materials.items() if n in used}, assignments, supports, springs, masses)
+        used = {a.material for a in assignments} | {ply.material for a in assignments for ply in a.plies}
+        kept = {n: m for n, m in materials.items() if n in used}
+        return Physics(kept, assignments, supports, springs, masses, links, ties)
 
     def material(self, name: str, item: schema.MaterialTable) -> Material:
         place = f"materials.{name}"
         units = self.table.units
-        modulus = self.plausible("youngs_modulus", item.youngs_modulus * schema.MODULI[units.modulus], place)
+        assert item.density is not None
         density = self.plausible("density", item.density * schema.DENSITIES[units.density], place)
-        return Material(name, modulus, item.poisson, density)
+        unit = schema.MODULI[units.modulus]
+        if not item.directional:
+            assert item.youngs_modulus is not None and item.poisson is not None
+            modulus = self.plausible("youngs_modulus", item.youngs_modulus * unit, place)
+            return Material(name, modulus, item.poisson, density)
+        e1, e2, g12, g13, g23 = (float(getattr(item, key) or 0) * unit for key in ("e1", "e2", "g12", "g13", "g23"))
+        for modulus in (e1, e2):
+            self.plausible("youngs_modulus", modulus, place)
+        directional = Directional(e1, e2, item.nu12 or 0.0, g12, g13, g23)
+        return Material(name, e1, directional.nu12, density, directional)
 
     def assignment(self, item: schema.AssignTable, place: str, materials: dict[str, Material]) -> Assignment:
-        self.known("material", item.material, materials, f"{place}, material")
+        for name in [item.material or ""] if item.layers is None else [layer.material for layer in item.layers]:
+            where = place if item.layers is None else f"{place}, layers"
+            self.known("material", name, materials, f"{where}, material")
+        plies = tuple(Ply(layer.material, layer.thickness * self.length, layer.angle) for layer in item.layers or ())
         thickness = None
-        if item.thickness is not None:
-            thickness = self.plausible("thickness", item.thickness * self.length, place)
-        return Assignment(item.target, item.material, thickness, item.formulation)
+        if item.thickness is not None or plies:
+            total = sum(ply.thickness for ply in plies) or (item.thickness or 0.0) * self.length
+            thickness = self.plausible("thickness", total, place)
+        return Assignment(
+            item.target, item.material or "", None if plies else thickness, item.formulation,
+            None if item.section is None else self.section(item.section),
+            self.vector(item.orientation, f"{place}, orientation"), item.offset * self.length,
+            item.offset_across * self.length, self.vector(item.direction, f"{place}, direction"), plies,
+        )
+
+    def section(self, item: schema.SectionTable) -> Section:
+        power = {"area": 2, "iy": 4, "iz": 4, "torsion": 4, "shear_up": 0, "shear_across": 0}
+        given = {name: value for name, value in item.model_dump().items() if value is not None and name != "shape"}
+        return Section(item.shape, **{key: value * self.length ** power.get(key, 1) for key, value in given.items()})
+
+    def link(self, item: schema.LinkTable, place: str, number: int) -> Link:
+        return Link(
+            item.name or f"link {number}", self.selector(item.from_, f"{place}, from"),
+            self.selector(item.to, f"{place}, to"),
+        )
+
+    def tie(self, item: schema.TieTable, place: str, number: int) -> Tie:
+        return Tie(
+            item.name or f"tie {number}", self.selector(item.nodes, f"{place}, nodes"),
+            self.selector(item.surface, f"{place}, surface"),
+            None if item.reach is None else item.reach * self.length,
+        )
 
     def support(self, item: schema.SupportTable, place: str, number: int) -> Support:
         held = DIRECTIONS if item.held is None else tuple(name for name in DIRECTIONS if name in item.held)
@@ -270,6 +317,9 @@ class _Reader:
         if not size > 0 or not np.isfinite(size):
             raise DossierError("a direction has no length", file=self.path, place=place, found=short(given))
         return vector / size
+
+    def vector(self, given: list[float] | None, place: str) -> tuple[float, ...] | None:
+        return None if given is None else tuple(self.direction(given, place).tolist())
 
     def mode_names(self, item: schema.DesignTable, place: str) -> dict[int, str]:
         names = {}

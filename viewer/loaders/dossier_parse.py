@@ -55,7 +55,7 @@ def _raise_translated(path: Path, data: Any, error: ValidationError) -> NoReturn
     more = f" (and {others} more)" if others else ""
     key = str(location[-1]) if location else ""
     if kind == "extra_forbidden":
-        known = list(_model_at(location[:-1]).model_fields)
+        known = list(_keys(_model_at(location[:-1])))
         close = difflib.get_close_matches(key, known, 1)
         raise DossierError(
             f"unknown key '{key}'{more}",
@@ -106,9 +106,14 @@ def _model_at(location: Sequence[int | str]) -> type[BaseModel]:
     for part in location:
         if isinstance(part, int):
             continue
-        if hasattr(model, "model_fields") and part in model.model_fields:
-            model = _inner_table(model.model_fields[part].annotation)
+        if hasattr(model, "model_fields") and part in _keys(model):
+            model = _inner_table(_keys(model)[part].annotation)
     return model
+
+
+def _keys(model: type[BaseModel]) -> dict[str, Any]:
+    """Fields by the key that stands in the file ("from" is no name in Python)."""
+    return {field.alias or name: field for name, field in model.model_fields.items()}
 
 
 def _inner_table(annotation: Any) -> Any:

@@ -17,7 +17,7 @@ turning springs N·m/rad::
     [materials.aluminium]
     youngs_modulus = 70
     poisson = 0.33
-    density = 2700
+    density = 2700              # of a directional material: e1, e2, nu12, g12, g13, g23, density
 
     [[designs]]
     name = "baseline"
@@ -28,10 +28,21 @@ turning springs N·m/rad::
     supports = [{name = "root", group = "root"}]          # held = ["ux", "uy", "uz"]; default: all six
     springs = [{name = "strap", group = "eye", stiffness = [100, 0, 0]}]
     masses = [{name = "camera", group = "pad", mass = 1.2, position = [0, 0, 500]}]
+    links = [{name = "bracket", from = {near = [0, 0, 500]}, to = {group = "pad"}}]    # rigid; the one node leads
+    ties = [{name = "seam", nodes = {group = "edge"}, surface = {group = "block"}}]    # glued; reach = 2 if far off
     mode_names = {1 = "boom nods"}
     # instead of assign, matrices of another program (their numbers in the units of stiffness and mass above), which
     # contain all but the supports: stiffness = "K.mtx", mass_matrix = "M.mtx", matrix_order = "by node" (ux uy uz of
     # the lowest node number, then the next), "by direction", or a table with the columns node, direction, a line a row
+
+    # more of what an entry of assign may say:
+    #   beams (line cells): section = {shape = "rectangle", width = 20, height = 40}, {shape = "round", diameter = 8},
+    #     {shape = "tube", diameter = 30, wall = 2}, {area = 300, iy = 1e4, iz = 2e4, torsion = 900}; orientation =
+    #     [0, 0, 1] points along the height ("up": iy is ∫ up² dA), offset = 5 lifts the axis off the nodes,
+    #     offset_across = 5 shifts it sideways
+    #   shells: offset = 5 moves the sheet off its nodes along the normal; direction = [1, 0, 0] is axis 1 of
+    #     directional material; layers = [{material = "ply", thickness = 0.2, angle = 45}, …] stand for both material
+    #     and thickness
 
     [[points]]                  # of all designs; a design's own `points` add to them or replace by name
     name = "camera lens"
@@ -92,10 +103,39 @@ class Units(Table):
     stiffness: Literal["N/m", "kN/m", "N/mm", "kN/mm"] = "N/m"
 
 
+_ISOTROPIC, _DIRECTIONAL = ("youngs_modulus", "poisson"), ("e1", "e2", "nu12", "g12", "g13", "g23")
+
+
 class MaterialTable(Table):
-    youngs_modulus: Positive
-    poisson: Annotated[float, Field(ge=0, lt=0.5)]
-    density: Positive
+    density: Positive | None = None
+    youngs_modulus: Positive | None = None
+    poisson: Annotated[float, Field(ge=0, lt=0.5)] | None = None
+    e1: Positive | None = None
+    e2: Positive | None = None
+    nu12: float | None = None
+    g12: Positive | None = None
+    g13: Positive | None = None
+    g23: Positive | None = None
+
+    @property
+    def directional(self) -> bool:
+        return self.e1 is not None
+
+    @model_validator(mode="after")
+    def _one_kind(self):
+        given = {name for name in (*_ISOTROPIC, *_DIRECTIONAL) if getattr(self, name) is not None}
+        if given & set(_ISOTROPIC) and given & set(_DIRECTIONAL):
+            raise ValueError(f"mixes two kinds of material, expected {_said(_ISOTROPIC)}, or {_said(_DIRECTIONAL)}")
+        wanted = _DIRECTIONAL if given & set(_DIRECTIONAL) else _ISOTROPIC
+        missing = [name for name in (*wanted, "density") if getattr(self, name) is None]
+        if missing:
+            more = f" (and {len(missing) - 1} more)" if missing[1:] else ""
+            raise ValueError(f"'{missing[0]}' is missing{more}, expected {_said((*wanted, 'density'))}")
+        return self
+
+
+def _said(names) -> str:
+    return ", ".join(f"'{name}'" for name in names)
 
 
 class Place(Table):
@@ -124,14 +164,48 @@ class Place(Table):
 
 
 class OtherPlace(Place):
-    """The second end of a spring."""
+    """A place in a table of its own: the second end of a spring, an end of a link, a side of a tie."""
+
+
+class SectionTable(Table):
+    shape: Literal["rectangle", "round", "tube", "given"] = "given"
+    width: Positive | None = None
+    height: Positive | None = None
+    diameter: Positive | None = None
+    wall: Positive | None = None
+    area: Positive | None = None
+    iy: Positive | None = None
+    iz: Positive | None = None
+    torsion: Positive | None = None
+    shear_up: Positive | None = None
+    shear_across: Positive | None = None
+
+
+class LayerTable(Table):
+    material: Name
+    thickness: Positive
+    angle: float = 0.0
 
 
 class AssignTable(Table):
     target: Name = "*"
-    material: Name
+    material: Name | None = None
     thickness: Positive | None = None
     formulation: str = ""
+    section: SectionTable | None = None
+    orientation: Vector | None = None
+    offset: float = 0.0
+    offset_across: float = 0.0
+    direction: Vector | None = None
+    layers: Annotated[list[LayerTable], Field(min_length=1)] | None = None
+
+    @model_validator(mode="after")
+    def _what(self):
+        if self.layers is None and self.material is None:
+            raise ValueError('says no material, expected material = "NAME", or for sheets layers = [{material = …}]')
+        if self.layers is not None and (self.material is not None or self.thickness is not None):
+            raise ValueError("says layers beside material or thickness, expected layers alone: each names its own")
+        return self
 
 
 class SupportTable(Place):
@@ -164,6 +238,19 @@ class MassTable(Place):
     inertia: list[float] | list[Vector] | None = None
 
 
+class LinkTable(Table):
+    name: Name | None = None
+    from_: Annotated[OtherPlace, Field(alias="from")]
+    to: OtherPlace
+
+
+class TieTable(Table):
+    name: Name | None = None
+    nodes: OtherPlace
+    surface: OtherPlace
+    reach: Positive | None = None
+
+
 class PointTable(Place):
     name: Name
     direction: Vector | str
@@ -185,6 +272,8 @@ class DesignTable(Table):
     supports: list[SupportTable] = []
     springs: list[SpringTable] = []
     masses: list[MassTable] = []
+    links: list[LinkTable] = []
+    ties: list[TieTable] = []
     points: list[PointTable] = []
     mode_names: dict[str, Name] = {}
     note: str = ""

@@ -65,15 +65,17 @@ class Rules:
 def link_nodes(link: Link, design: Design) -> tuple[int, Array]:
     """Node rows of the leader and of the followers."""
     what = f"link '{link.name}'"
-    leader = link.leader.rows(design.mesh, f"{what}, from")
+    leader, others = link.first.rows(design.mesh, f"{what}, from"), link.second.rows(design.mesh, f"{what}, to")
+    if len(leader) > 1:
+        leader, others = others, leader
     if len(leader) != 1:
         raise ModelError(
-            f"{what} needs one node that leads", found=f"{len(leader)} nodes in 'from'",
-            do="select a single node there (near, or one id), and the nodes that follow in 'to'",
+            f"{what} needs one node that leads", found=f"{len(others)} and {len(leader)} nodes at its ends",
+            do="select a single node at one end (near, or one id), and the nodes that follow at the other",
         )
-    followers = np.setdiff1d(link.followers.rows(design.mesh, f"{what}, to"), leader)
+    followers = np.setdiff1d(others, leader)
     if len(followers) == 0:
-        raise ModelError(f"{what} has no node that follows", do="select other nodes in 'to' than in 'from'")
+        raise ModelError(f"{what} has no node that follows", do="select other nodes at one of its ends")
     return int(leader[0]), followers
 
 
@@ -114,9 +116,10 @@ def add_tie(rules: Rules, tie: Tie, design: Design) -> None:
             _add_places(rules, mesh.points, kind, nodes[places.cell[mine] - start], places.xi[mine, :2], rows[mine],
                         points[mine] - places.position[mine])
     turning = int((dof[rows, 3] >= 0).sum())
+    gap = float(places.distance.max()) if places.distance.max() > 1e-9 * mesh.diagonal else 0.0
     rules.statements.append(
         f"{what}: {len(rows)} nodes tied in translation{f', {turning} of them in rotation too' if turning else ''}; "
-        f"largest gap {places.distance.max():.3g} m"
+        f"largest gap {gap:.3g} m"
     )
     if turning and any(not (dof[nodes, 3] >= 0).all() for _, nodes in faces):
         rules.cautions.append(

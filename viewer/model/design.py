@@ -210,11 +210,14 @@ class LumpedMass:
 
 @dataclass(frozen=True, eq=False)
 class Link:
-    """A rigid link: every node of ``followers`` moves with the one node ``leader`` as a rigid body does."""
+    """A rigid link: one node leads, the nodes at the other end move with it as a rigid body does.
+
+    The end that selects a single node leads, ``first`` when both do.
+    """
 
     name: str
-    leader: Selector
-    followers: Selector
+    first: Selector
+    second: Selector
 
 
 @dataclass(frozen=True, eq=False)
