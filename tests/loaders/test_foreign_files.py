@@ -9,7 +9,7 @@ import pyvista
 from vtkmodules.vtkIOLegacy import vtkUnstructuredGridWriter
 from vtkmodules.vtkIOXML import vtkXMLUnstructuredGridWriter
 
-from tests.loaders.samples import END_QUAD, cube_rows, grid_points
+from tests.loaders.samples import END_QUAD, clear, cube_rows, grid_points
 from viewer.cells import KINDS, measures
 from viewer.errors import LoadError
 from viewer.loaders import read_mesh, read_mesh_report, read_modes
@@ -320,111 +320,21 @@ def test_carriers_of_groups_become_node_groups_only_where_they_lie_on_cells(tmp_
     assert any("1 vertex1, 2 line2, 1 quad4 left out" in note for note in report.notes)
 
 
-BAD = {
-    "points minus one": (
-        ".vtk",
-        "# vtk DataFile Version 3.0\nx\nASCII\nDATASET UNSTRUCTURED_GRID\nPOINTS -1 float\n",
-        r"POINTS: declares more than the file can hold; found: -1",
-    ),
-    "points 2e9": (
-        ".vtk",
-        "# vtk DataFile Version 3.0\nx\nASCII\nDATASET POLYDATA\nPOINTS 2000000000 float\n0 0 0\n",
-        r"declares more than the file can hold",
-    ),
-    "cut short": (
-        ".vtk",
-        "# vtk DataFile Version 3.0\nx\nASCII\nDATASET UNSTRUCTURED_GRID\nPOINTS 4 float\n0 0 0 1\n",
-        r"VTK's reader reports an error|no mesh with points|not the one declared",
-    ),
-    "index outside": (
-        ".vtk",
-        "# vtk DataFile Version 3.0\nx\nASCII\nDATASET UNSTRUCTURED_GRID\nPOINTS 3 float\n"
-        "0 0 0 1 0 0 0 1 0\nCELLS 1 4\n3 0 1 7\nCELL_TYPES 1\n5\n",
-        r"found: index 7; expected: 0 to 2",
-    ),
-    "index minus one": (
-        ".vtk",
-        "# vtk DataFile Version 3.0\nx\nASCII\nDATASET UNSTRUCTURED_GRID\nPOINTS 3 float\n"
-        "0 0 0 1 0 0 0 1 0\nCELLS 1 4\n3 0 1 -1\nCELL_TYPES 1\n5\n",
-        r"found: index -1; expected: 0 to 2",
-    ),
-    "not legacy": (".vtk", "hello", r"is no legacy VTK file"),
-    "meshio gives up": (".msh", "hello\n", r"cannot be read; found: meshio gave the file up"),
-    "msh cut": (".msh", "$MeshFormat\n2.2 0 8\n$EndMeshFormat\n$Nodes\n4\n1 0 0 0\n", r"cannot be read"),
-    "view cut": (
-        ".msh",
-        '$MeshFormat\n2.2 0 8\n$EndMeshFormat\n$NodeData\n1\n"a"\n',
-        r"\$NodeData: a section does not end",
-    ),
-    "entities": (".xml", '<!DOCTYPE a [<!ENTITY b "c">]><a>&b;</a>', r"declares a document type or entities"),
-    "entities in xdmf": (
-        ".xdmf",
-        '<!DOCTYPE a [<!ENTITY b "c">]><a>&b;</a>',
-        r"declares a document type or entities",
-    ),
-    "file outside": (
-        ".xdmf",
-        "<Xdmf><DataItem>../../secret.h5:/data0</DataItem></Xdmf>",
-        r"refers to a file outside",
-    ),
-    "absolute file": (
-        ".xdmf",
-        "<Xdmf><DataItem>/etc/secret.h5:/data0</DataItem></Xdmf>",
-        r"refers to a file outside",
-    ),
-    "stl count": (".stl", b"\0" * 80 + (2_000_000_000).to_bytes(4, "little"), r"number of triangles does not fit"),
-    "ply count": (
-        ".ply",
-        "ply\nformat binary_little_endian 1.0\nelement vertex 2000000000\nend_header\n",
-        r"declares more",
-    ),
-    "obj index": (".obj", "v 0 0 0\nv 1 0 0\nv 0 1 0\nf 1 2 9\n", r"names a point that does not exist"),
-    "no HDF5": (".med", "MED?", r"its content is not what its suffix says"),
-    "garbage": (".mesh", "\0\1\2", r"cannot be read"),
-}
-
-
-@pytest.mark.parametrize("case", BAD)
-def test_bad_foreign_files(tmp_path, case):
-    suffix, content, message = BAD[case]
-    path = tmp_path / f"bad{suffix}"
-    path.write_bytes(content if isinstance(content, bytes) else content.encode())
-    with pytest.raises(LoadError, match=message) as caught:
-        read_mesh(path)
-    assert str(path) in str(caught.value)
-    assert "\n" not in str(caught.value)
-
-
-def outcome(path):
-    """The mesh, or the words of the error."""
-    try:
-        return read_mesh(path), ""
-    except LoadError as error:
-        return None, str(error)
-
-
-@pytest.mark.parametrize("suffix", [".vtk", ".msh", ".med", ".lz4.vtu"])
 @pytest.mark.parametrize("percent", [5, 30, 60, 90])
-def test_foreign_file_cut_short(tmp_path, suffix, percent):
-    path = tmp_path / f"a{suffix}"
-    if suffix in (".msh", ".med"):
-        meshio.write(path, meshio_mesh(), **({"file_format": "gmsh22", "binary": True} if suffix == ".msh" else {}))
-    else:
-        writer = vtkUnstructuredGridWriter() if suffix == ".vtk" else vtkXMLUnstructuredGridWriter()
-        if suffix == ".vtk":
-            writer.SetFileTypeToBinary()
-        else:
-            writer.SetCompressorTypeToLZ4()
-        writer.SetInputData(vtk_grid())
-        writer.SetFileName(str(path))
-        writer.Write()
-    whole = read_mesh(path)
-    data = path.read_bytes()
+def test_file_for_vtk_cut_short(tmp_path, percent):
+    """Compressed in a way that only VTK's own reader knows: an error, or all that lies before the cut."""
+    path, writer = tmp_path / "a.vtu", vtkXMLUnstructuredGridWriter()
+    writer.SetCompressorTypeToLZ4()
+    writer.SetInputData(vtk_grid())
+    writer.SetFileName(str(path))
+    writer.Write()
+    whole, data = read_mesh(path), path.read_bytes()
     path.write_bytes(data[: len(data) * percent // 100])
-    mesh, error = outcome(path)
-    if mesh is None:
-        assert str(path) in error
-    else:  # the cut lies behind the mesh: what is there must be right
+    try:
+        mesh = read_mesh(path)
+    except LoadError as error:
+        clear(error, path)
+    else:
         assert np.array_equal(mesh.points, whole.points)
         assert np.array_equal(mesh.blocks[0].nodes, whole.blocks[0].nodes)
 

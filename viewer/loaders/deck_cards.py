@@ -112,7 +112,7 @@ def _grid(card: _Card, nodes: Nodes) -> None:
         x, y, z = (_number(card.field(i)) for i in (2, 3, 4))
     except ValueError as error:
         raise card.line.error(
-            "a coordinate is no number", found=repr(str(error))[:40], expected="numbers in columns of 8, or commas"
+            "a coordinate is no number", found=repr(str(error))[:40], expected="numbers with a decimal point"
         ) from None
     nodes.add(card.line, number, (x, y, z))
 
@@ -218,9 +218,10 @@ def _fields(line: Line, text: str) -> tuple[str, list[str]]:
 
 
 def _number(text: str) -> float:
+    """Real numbers have a decimal point; without that rule, decimal commas would shift the fields unseen."""
     if not text:
         return 0.0
-    if "_" in text or not text.isascii():
+    if "_" in text or not text.isascii() or not re.search(r"[.a-zA-Z]", text):
         raise ValueError(text)
     match = _SPECIAL.fullmatch(text)
     word = f"{match[1]}e{match[2]}" if match and match[1].strip("+-.") else re.sub("[dD]", "e", text, count=1)

@@ -201,9 +201,10 @@ def _kind_name(vtk_type: int, names: Mapping[int, str]) -> str:
 
 def deal_ids(raw: RawMesh, ids: Array, kept: Array) -> None:
     """Give each block its ids, from the ids of all cells of the file."""
-    cuts = np.cumsum([len(block.nodes) for block in raw.blocks])[:-1]
-    for block, part in zip(raw.blocks, np.split(ids[kept], cuts), strict=True):
-        block.ids = part
+    start = 0
+    for block in raw.blocks:
+        block.ids = ids[kept[start : start + len(block.nodes)]]
+        start += len(block.nodes)
 
 
 def _one(file: VtkArrays, section: str, *names: str) -> DataArray:

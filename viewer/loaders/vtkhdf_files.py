@@ -214,6 +214,8 @@ class _Grid:
 
     def pieces_of(self, step: int) -> slice:
         count = len(numbers(self.path, self.root, "NumberOfPoints"))
+        if count == 0:
+            raise self.error("holds no piece", place="NumberOfPoints")
         if self.steps is None:
             return slice(0, count)
         first = self._step_number("PartOffsets", step)

@@ -168,7 +168,7 @@ class Document:
             return None
         try:
             return self.root.find("./" + path.removeprefix("/Xdmf/"))
-        except (SyntaxError, KeyError, ValueError):
+        except Exception:  # what is no path fails in many ways
             return None
 
     def _included(self, include: Element) -> Element:

@@ -1,0 +1,6 @@
+"""Universal files. See :mod:`harness`."""
+
+from harness import fuzz_format, written_files
+
+if __name__ == "__main__":
+    fuzz_format("input.unv", lambda folder: written_files(folder, ".unv"))
