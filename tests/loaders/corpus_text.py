@@ -27,6 +27,7 @@ def made():
     for name, (fault, table, old, new, says) in TABLES.items():
         yield f".csv: {name}", fault, partial(_table, table, old, new), says
     yield ".csv: decimal commas between commas", "TEXT", partial(_table, "_nodes", ".", ","), "wrong number of fields"
+    yield ".csv: only delimiters", "TEXT", _only_delimiters, "nothing but marks between fields"
     yield ".csv: zero bytes", "TEXT", partial(_table, "_nodes", "\n", "\0\n"), "is not a text file"
 
 
@@ -73,6 +74,11 @@ def _table(tail, old, new, folder):
     assert old in text
     target.write_text(text.replace(old, new))
     return folder / "a.csv"
+
+
+def _only_delimiters(folder):
+    """Found by fuzzing."""
+    return _put(folder / "a_nodes.csv", ";;\n ; ;\n")
 
 
 # --- XDMF ---

@@ -38,6 +38,8 @@ class Table:
                     self.line_numbers.append(reader.line_num)
         except csv.Error as error:
             raise self.error("cannot be taken apart", reader.line_num, found=str(error)) from None
+        if not rows:
+            raise self.error("holds nothing but marks between fields", found=repr(first.strip()[:40]))
         names = [name.strip() if name.strip().startswith(GROUP) else name.strip().lower() for name in rows[0]]
         twice = next((name for i, name in enumerate(names) if name in names[:i]), None)
         if twice is not None:
