@@ -24,6 +24,7 @@ _WHOLE = 0.95       # a group that holds more of the body than this says nothing
 _SHORT = (
     "design", "mode", "name", "frequency_hz", "largest_motion_at", "largest_motion_direction", "largest_real_m",
     "magnification", "strain_energy_most_in", "strain_energy_most_percent", "energies_trusted",
+    "given_energy_agreement",
     "point", "effect", "direction", "motion_percent_of_largest", "real_motion_m",
     "first_design", "first_mode", "first_name", "second_design", "second_mode", "first_hz", "second_hz",
     "change_percent", "mac_common_support",
