@@ -258,6 +258,18 @@ def test_trace_lines_and_the_parts_of_a_hammer_test(tmp_path):
     assert read_modes(path, mesh).shape(0)[0].tolist() == [0, 0, 1]
 
 
+def test_long_trace_lines(tmp_path):
+    """More than a line of nodes, labels that touch, and a count that leaves repeated nodes out."""
+    nodes = [*range(1, 9), 2147483646, 2147483647, 2147483647, 1]
+    for count in (12, 11):
+        text = sample.trace_line(1, nodes).replace(f"{12:10d}{1:10d}", f"{count:10d}{1:10d}", 1)
+        (line,) = read_universal(put(tmp_path, text)).trace_lines
+        assert line.nodes == tuple(nodes)
+        assert (2147483646, 2147483647) in line.strokes()
+    with pytest.raises(LoadError, match=r"ends inside a trace line; found: 12 nodes; expected: 13"):
+        read_universal(put(tmp_path, sample.trace_line(1, nodes).replace(f"{12:10d}{1:10d}", f"{13:10d}{1:10d}", 1)))
+
+
 def test_unknown_data_sets_are_left_out_and_named(tmp_path):
     strange = sample.data_set(151, "title", "", "text -1 in it", "        -1") + sample.data_set(2429)
     mesh, report = read_mesh_report(put(tmp_path, strange, sample.nodes_2411(LABELS, SQUARE), "\n", QUAD, strange))

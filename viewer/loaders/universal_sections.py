@@ -212,10 +212,15 @@ def _elements(records: Records, found: dict[tuple[int, int], tuple[list[int], li
 def _trace_line(records: Records) -> TraceLine:
     number, count, _ = records.whole((10,) * 3, "a trace line")
     name = records.text("a trace line")
-    # Writers count differently (with or without repeated nodes): the lines there are, are those of the data set.
-    nodes = records.wholes(count, "a trace line") if count > 0 else []
-    while records:
-        nodes += records.integers(records.take(1, "a trace line"), (10,) * 8)[0].tolist()
+    nodes: list[int] = []
+    while records:  # to the end of the data set: one library's count leaves repeated nodes out
+        row = records.take(1, "a trace line")
+        line = records.lines[row[0]].rstrip()
+        words = line.split()
+        touching = any(len(word) > 10 for word in words)
+        nodes += records.integers(row, (10,) * (-(-len(line) // 10) if touching else len(words)))[0].tolist()
+    if len(nodes) < count:
+        raise records.error("the data set ends inside a trace line", found=f"{len(nodes)} nodes", expected=str(count))
     return TraceLine(number, name, tuple(nodes))
 
 
