@@ -33,7 +33,7 @@ turning springs N·m/rad::
     mode_names = {1 = "boom nods"}
     # instead of assign, matrices of another program (their numbers in the units of stiffness and mass above), which
     # contain all but the supports: stiffness = "K.mtx", mass_matrix = "M.mtx", matrix_order = "by node" (ux uy uz of
-    # the lowest node number, then the next), "by direction", or a table with the columns node, direction, a line a row
+    # the lowest node number, then the next), "by direction", or a table (columns node, direction; a line a row)
 
     # more of what an entry of assign may say:
     #   beams (line cells): section = {shape = "rectangle", width = 20, height = 40}, {shape = "round", diameter = 8},
