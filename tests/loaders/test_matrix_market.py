@@ -15,7 +15,7 @@ from viewer.loaders import read_matrices, write_interchange
 from viewer.mechanics.eigen import solve
 from viewer.mechanics.energy import energies
 from viewer.mechanics.given_matrices import totals
-from viewer.model.design import Design, Material, Physics, Selector, Support
+from viewer.model.design import Design, LumpedMass, Material, Physics, Selector, Support
 from viewer.model.matrices import MatrixFiles
 from viewer.model.modes import ArrayShapes, ModeSet
 from viewer.workspace import Workspace, study
@@ -78,6 +78,13 @@ def test_modes_closure_and_trust(tmp_path, theirs, symmetry):
     assert not totals(design, mixed).trusted.any()
     with pytest.raises(ModelError):
         energies(design, given)  # by element: there are none
+
+
+def test_parts_beside_the_matrices_are_refused(tmp_path, theirs):
+    design = made(put(tmp_path, *theirs[:2]))
+    heavier = Physics(masses=(LumpedMass("camera", Selector(group="x0"), 1.0),), matrices=design.physics.matrices)
+    with pytest.raises(ModelError, match="parts of its own beside them"):
+        solve(design.with_(physics=heavier), 2)
 
 
 def test_other_orders_and_rows_left_out(tmp_path, theirs):

@@ -27,6 +27,12 @@ def given_system(design: Design) -> System:
     given = design.physics.matrices
     if given is None:
         raise ModelError(f"design '{design.name}' has no matrices")
+    physics = design.physics
+    if physics.assignments or physics.springs or physics.masses or physics.links or physics.ties:
+        raise ModelError(
+            f"design '{design.name}' has matrices and parts of its own beside them", expected="supports only",
+            do="leave out the matrices, or what they contain already",
+        )
     if len(given.dof) != design.mesh.n_nodes:
         raise ModelError(f"design '{design.name}': its matrices are those of another mesh")
     size = given.stiffness.size
