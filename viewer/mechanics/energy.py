@@ -276,7 +276,7 @@ def _vectors(layout: Layout, modes: ModeSet, picked: Array, progress: Progress) 
     given = [values for values in turned if values is not None]
     if len(given) == len(turned):
         return layout.gather(moved, np.stack(given)), ()
-    recovered = examine(layout, moved, progress)
+    recovered = examine(layout, moved, progress, (2 * np.pi * modes.freq_hz[picked]) ** 2)
     return recovered.vectors, recovered.cautions
 
 

@@ -1,8 +1,11 @@
 """Rotations of shells and beams that a mode set leaves out.
 
 Strain energy is minimised over the rotations with the translations held: K_rr r = −K_ru u (static condensation;
-Guyan R.J., Reduction of stiffness and mass matrices, AIAA J. 3 (1965) 380). This neglects rotary inertia, which is
-small in thin parts. The leader of a rigid link takes its rotation from the followers' translations as far as these
+Guyan R.J., Reduction of stiffness and mass matrices, AIAA J. 3 (1965) 380).
+That neglects rotary inertia, which is small in thin parts but not where a lumped mass rides on few nodes: with the
+frequencies given, the rotations are brought into balance with inertia, (K − λM)_rr r = −(K − λM)_ru u, by steps with
+K_rr alone. Where these do not settle (a rotation resonates below the mode) the rotations of least energy stay, and
+the mode is named. The leader of a rigid link takes its rotation from the followers' translations as far as these
 show it. What translations cannot show either has no stiffness in K_rr or no coupling to any translation (torsion of a
 straight beam, spin of a point inertia): it stays zero and is named.
 
@@ -33,6 +36,7 @@ from viewer.model.arrays import Array
 ENERGY_BOUND = 0.02         # Σ|ΔU_e| / ΣU_e above which the digits of a file are said to be too few
 _SOFT = 1e-12               # added to the diagonal, relative; taken off again by iterative refinement
 _UNSEEN = 1e-6              # share of a random rotation that survives three filterings by _SOFT / (λ + _SOFT)
+_STEPS, _SETTLED = 60, 1e-8  # of balancing with inertia: most steps, and relative change when settled
 _UNITS = (1.0, 1e-3, 1e-2, 0.0254, 0.3048)      # metres per unit in which the file may have been written
 
 
@@ -47,9 +51,10 @@ class Rotations:
 
     def __init__(
         self, stiffness: Any, dof: Array, held: Array, progress: Progress = SILENT,
-        shown: Sequence[tuple[int, Array, RigidPatch]] = (),
+        shown: Sequence[tuple[int, Array, RigidPatch]] = (), mass: Any = None,
     ) -> None:
         self.dof, self.size, self.progress = np.asarray(dof), stiffness.shape[0], progress
+        self.unsettled = np.empty(0, bool)
         numbers = self.dof[:, 3:]
         wanted = np.zeros(self.size, bool)
         wanted[numbers[numbers >= 0]] = True
@@ -57,6 +62,7 @@ class Rotations:
         self.shown = [item for item in shown if np.isin(self.dof[item[0], 3:], self.rows).all()]
         self.basis = self._unknowns()
         self.coupling = sp.csr_array(stiffness)[self.rows]
+        self.inertia = None if mass is None else sp.csr_array(mass)[self.rows]
         inner = sp.csr_array(self.basis.T @ self.coupling[:, self.rows] @ self.basis)
         diagonal = inner.diagonal()
         self.scale = np.sqrt(np.where(diagonal > 0, diagonal, diagonal.max(initial=0.0) or 1.0))
@@ -86,11 +92,18 @@ class Rotations:
         rows, cols, values = (np.concatenate(part) for part in zip(*pieces, strict=True))
         return sp.csr_array((values, (rows, cols)), shape=(len(self.rows), columns + len(plain)))
 
-    def complete(self, moved: Array) -> Array:
-        """(k, n_dof) vectors from translations (k, n_nodes, 3), real or complex."""
+    def complete(self, moved: Array, squares: Array | None = None) -> Array:
+        """(k, n_dof) vectors from translations (k, n_nodes, 3), real or complex.
+
+        squares  (k,) λ = ω² of the shapes, to balance the rotations with inertia; rows of ``unsettled`` are those
+                 for which that did not work, where the least-energy rotations stand
+        """
         moved = np.asarray(moved)
         if np.iscomplexobj(moved):
-            return self.complete(moved.real) + 1j * self.complete(moved.imag)
+            real, doubtful = self.complete(moved.real, squares), self.unsettled
+            imaginary = self.complete(moved.imag, squares)
+            self.unsettled = doubtful | self.unsettled
+            return real + 1j * imaginary
         there = self.dof[:, :3] >= 0
         vectors = np.zeros((len(moved), self.size))
         vectors[:, self.dof[:, :3][there]] = moved[:, there]
@@ -107,7 +120,34 @@ class Rotations:
             turned += step
             if not (np.linalg.norm(step, axis=0) > 1e-10 * np.linalg.norm(turned, axis=0)).any():
                 break
-        vectors[:, self.rows] += (self.basis @ turned).T
+        plain = vectors.copy()
+        plain[:, self.rows] += (self.basis @ turned).T
+        if squares is None or self.inertia is None:
+            return plain
+        return self._balanced(vectors, plain, right, turned, np.asarray(squares))
+
+    def _balanced(self, bare: Array, plain: Array, right: Array, turned: Array, squares: Array) -> Array:
+        """``plain`` with rotations in balance with inertia; ``bare`` is the same without the recovered rotations."""
+        assert self.inertia is not None
+        vectors, last = plain.copy(), np.full(len(bare), np.inf)
+        going = squares > 0
+        for _ in range(_STEPS):
+            self.progress.tick("balancing rotations with inertia")
+            push = self.basis.T @ (self.inertia @ vectors[going].T) * squares[going]
+            step = self._solve(right[:, going] + push - self.inner @ turned[:, going])
+            turned[:, going] += step
+            vectors[going] = bare[going]
+            vectors[np.ix_(going, self.rows)] += (self.basis @ turned[:, going]).T
+            size = np.linalg.norm(step, axis=0) / np.maximum(np.linalg.norm(turned[:, going], axis=0), 1e-300)
+            rows = np.nonzero(going)[0]
+            worse = size > 2 * last[rows]
+            vectors[rows[worse]] = plain[rows[worse]]
+            last[rows] = size
+            going[rows[worse | (size < _SETTLED)]] = False
+            if not going.any():
+                break
+        vectors[going & (last > 1e-3)] = plain[going & (last > 1e-3)]
+        self.unsettled = last > 1e-3
         return vectors
 
     @cached_property
@@ -157,15 +197,19 @@ class Recovery:
     cautions: tuple[str, ...]
 
 
-def recover(layout: Layout, moved: Array, progress: Progress = SILENT) -> Array:
-    """(k, n_dof) vectors from translations (k, n_nodes, 3) alone, the rotations being those of least energy."""
-    return _operator(layout, progress).complete(moved)
+def recover(layout: Layout, moved: Array, progress: Progress = SILENT, squares: Array | None = None) -> Array:
+    """(k, n_dof) vectors from translations (k, n_nodes, 3) alone: the rotations are those of least energy, or, with
+    ``squares`` (k,) = ω², those in balance with inertia."""
+    return _operator(layout, progress).complete(moved, squares)
 
 
-def examine(layout: Layout, moved: Array, progress: Progress = SILENT) -> Recovery:
+def examine(
+    layout: Layout, moved: Array, progress: Progress = SILENT, squares: Array | None = None
+) -> Recovery:
     """As :func:`recover`, with what cannot be recovered and what the digits of ``moved`` leave open."""
     operator = _operator(layout, progress)
-    vectors = operator.complete(moved)
+    vectors = operator.complete(moved, squares)
+    unsettled = operator.unsettled
     random = np.random.default_rng(5)
     blur = [rounding(part) * random.uniform(-1, 1, part.shape) for part in (moved.real, moved.imag)]
     disturbed = vectors + operator.complete(blur[0] + 1j * blur[1] if np.iscomplexobj(moved) else blur[0])
@@ -179,6 +223,11 @@ def examine(layout: Layout, moved: Array, progress: Progress = SILENT) -> Recove
         cautions.append(
             f"rotations of {len(operator.lost)} nodes ({some_ids(ids[operator.lost])}) cannot be recovered from "
             "translations and are taken as zero: torsion of straight beams and spin of point inertias do not show"
+        )
+    if unsettled.any():
+        cautions.append(
+            f"rotations of modes {some_ids(np.nonzero(unsettled)[0] + 1)} of those given are of least energy, without "
+            "rotary inertia: a lumped inertia turns by itself near their frequency; write the shapes with rotations"
         )
     blurred = np.nonzero(error > ENERGY_BOUND)[0]
     if len(blurred):
@@ -242,26 +291,26 @@ def _whole(values: Array, digits: int) -> bool:
 def _operator(layout: Layout, progress: Progress) -> Rotations:
     system = assemble_layout(layout, progress)
     if layout.follow is None:
-        return Rotations(system.K, system.dof, system.held, progress)
+        return Rotations(system.K, system.dof, system.held, progress, mass=system.M)
     shown = []
     for link in layout.design.physics.links:
         leader, followers = link_nodes(link, layout.design)
         moving = np.append(followers, leader)
         shown.append((leader, moving, RigidPatch(layout.points[moving], layout.points[leader])))
-    return _Following(layout, system.K, progress, shown)
+    return _Following(layout, system.K, system.M, progress, shown)
 
 
 class _Following(Rotations):
     """Rotations of a layout with links or ties: followers' rotations come from what they follow."""
 
-    def __init__(self, layout: Layout, stiffness: Any, progress: Progress, shown: list) -> None:
+    def __init__(self, layout: Layout, stiffness: Any, mass: Any, progress: Progress, shown: list) -> None:
         assert layout.follow is not None
         self.follow, self.dependent = layout.follow, layout.dependent
-        reduced = sp.csr_array(layout.follow.T @ stiffness @ layout.follow)
-        super().__init__(reduced, layout.dof, layout.held | layout.dependent, progress, shown)
+        reduced, moving = (sp.csr_array(layout.follow.T @ matrix @ layout.follow) for matrix in (stiffness, mass))
+        super().__init__(reduced, layout.dof, layout.held | layout.dependent, progress, shown, moving)
 
-    def complete(self, moved: Array) -> Array:
-        vectors = super().complete(moved)
+    def complete(self, moved: Array, squares: Array | None = None) -> Array:
+        vectors = super().complete(moved, squares)
         if np.iscomplexobj(moved):
             return vectors      # both parts have passed here
         numbers = self.dof[:, 3:][self.dof[:, 3:] >= 0]
