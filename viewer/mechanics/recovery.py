@@ -226,8 +226,8 @@ def examine(
         )
     if unsettled.any():
         cautions.append(
-            f"rotations of modes {some_ids(np.nonzero(unsettled)[0] + 1)} of those given are of least energy, without "
-            "rotary inertia: a lumped inertia turns by itself near their frequency; write the shapes with rotations"
+            f"rotations of modes {some_ids(np.nonzero(unsettled)[0] + 1)} of those given are of least energy, "
+            "without rotary inertia: a lumped one turns by itself near their frequency; write shapes with rotations"
         )
     blurred = np.nonzero(error > ENERGY_BOUND)[0]
     if len(blurred):

@@ -6,6 +6,7 @@ import tempfile
 from dataclasses import dataclass, field, replace
 from pathlib import Path
 
+from viewer.errors import RefusedError
 from viewer.jobs import SILENT, Progress, in_child
 from viewer.loaders import ReadReport, read_dossier_report, read_matrices, read_mesh_report, read_modes
 from viewer.mechanics.eigen import solve
@@ -119,7 +120,13 @@ class OpenDossier:
         """The named design with modes, energies and stated sizes."""
         design = self.design(name, progress)
         modes = self.modes(name, count, progress)
-        return study(design, modes, self._amplitudes(name, modes), self.dossier.condition, progress)
+        found = study(design, modes, self._amplitudes(name, modes), self.dossier.condition, progress)
+        for number in found.amplitudes:      # a stated amplitude that cannot be used is said before anything is drawn
+            try:
+                found.scale(number - 1)
+            except RefusedError as error:
+                raise error.at(file=self.dossier.path, place="amplitudes") from None
+        return found
 
     def doubts(self, name: str) -> tuple[str, ...]:
         """What reading the named design's mesh found hard to believe: an implausible size, nodes far off."""
