@@ -159,15 +159,15 @@ def _cards(path: Path) -> Iterator[_Card]:
         text = line.text.split("$", 1)[0].rstrip()
         if not text:
             continue
-        word = " ".join(text.split()[:2]).upper()
-        if word.startswith("BEGIN"):
-            if word not in ("BEGIN BULK", "BEGIN"):
+        start = text.lstrip()[:6].upper()
+        if start.rstrip() == "BEGIN":
+            if text.upper().split()[1:2] not in (["BULK"], []):
                 raise line.error("holds several bulk sections, which is not understood", found=text.strip()[:40])
             bulk = True
             continue
         if not bulk:
             continue
-        if text.upper().startswith("ENDDATA"):
+        if start == "ENDDAT":
             needs_end = False
             break
         name, fields = _fields(line, text)
@@ -188,10 +188,12 @@ def _cards(path: Path) -> Iterator[_Card]:
 
 
 def _has_bulk(path: Path) -> bool:
-    return any(" ".join(line.text.upper().split()[:2]) == "BEGIN BULK" for line in lines_of(path, _included))
+    return any(line.text.lstrip()[:16].upper().split()[:2] == ["BEGIN", "BULK"] for line in lines_of(path, _included))
 
 
 def _included(line: Line) -> str | None:
+    if line.text.lstrip()[:1] not in ("I", "i"):  # nearly every line
+        return None
     match = re.match(r"\s*INCLUDE\b\s*(.*)", line.text, re.I)
     return match[1].split("$")[0].strip().strip("'\"") if match else None
 
@@ -209,11 +211,10 @@ def _fields(line: Line, text: str) -> tuple[str, list[str]]:
         head = text[:8].strip()
         width = 16 if head.endswith("*") or head.startswith("*") else 8
         fields = [text[at : at + width].strip() for at in range(8, 72, width)]
-    if any(" " in word for word in fields):
-        word = next(word for word in fields if " " in word)
-        if head.upper().rstrip("*") in ("GRID", *_SHAPES):
-            raise line.error("fields do not stand in columns of 8 or 16", found=repr(word))
     name = head.upper().rstrip("*")
+    if (name == "GRID" or name in _SHAPES) and " " in "".join(fields):
+        word = next(word for word in fields if " " in word)
+        raise line.error("fields do not stand in columns of 8 or 16", found=repr(word))
     return ("", fields) if not name or name[0] in "+*" else (name, fields)
 
 
