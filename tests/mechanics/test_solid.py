@@ -182,8 +182,8 @@ def test_defaults_and_lookup():
     assert formulation_for("hex8", "hex8-full").name == "hex8-full"
     with pytest.raises(ModelError, match=r"hex8-fool.*hex8-incompatible"):
         formulation_for("hex8", "hex8-fool")
-    with pytest.raises(ModelError, match=r"quad9.*tet10"):
-        formulation_for("quad9")
+    with pytest.raises(ModelError, match=r"line3.*tet10"):
+        formulation_for("line3")
     names = [f.name for offered in FORMULATIONS.values() for f in offered]
     assert len(set(names)) == len(names)
     assert {k for k, v in KINDS.items() if v.dim == 3} <= set(FORMULATIONS)

@@ -196,7 +196,7 @@ def lay_out(
         has[nodes, 0] = True
         if formulation.rotations:
             has[nodes, 1] = True
-    cautions += _mixed_caution(parts, has)
+    cautions += _mixed_caution(parts, has) + _side_caution(parts)
     for spring in physics.springs:
         for rows in spring_nodes(spring, mesh):
             if rows is not None:
@@ -384,6 +384,25 @@ def _mixed_caution(parts: list[Part], has: Array) -> list[str]:
     return [
         f"shells meet solids at {shared} nodes: solids have no rotations, so that the joint can turn like a hinge "
         "unless the shell lies on the solid's face"
+    ]
+
+
+def _side_caution(parts: list[Part]) -> list[str]:
+    """Sheets that lie off their nodes, or whose layers differ from side to side, must agree on which side is up."""
+    edges = []
+    for formulation, prop, _, nodes in parts:
+        kind = KINDS[formulation.kind]
+        if kind.dim == 2 and (prop.offset or prop.layers != prop.layers[::-1]):
+            edges += [nodes[:, [a, b]] for a, b, *_ in kind.edges]
+    if not edges:
+        return []
+    _, count = np.unique(np.concatenate(edges), axis=0, return_counts=True)
+    if not (count > 1).any():       # neighbours on the same side run through their common edge in opposite directions
+        return []
+    return [
+        f"shells with an offset or with unlike layers disagree at {int((count > 1).sum())} common edges: their "
+        "normals point to opposite sides (or more than two cells meet there); number the nodes of all cells the same "
+        "way round"
     ]
 
 

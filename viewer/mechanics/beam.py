@@ -111,7 +111,7 @@ def _local(xyz: Array, prop: Property) -> tuple[SectionConstants, Array, Array]:
             f"line2 cells of material '{prop.material.name}' are beams and need a section",
             do="give 'section' in the assignment of these cells",
         )
-    materials.check(prop.material)
+    materials.lame(prop.material)          # refuses what is no isotropic solid
     section = constants(prop.section, prop.material.poisson)
     axes, length = section_axes(xyz, prop, section)
     arm = prop.offset * axes[:, 2] + prop.offset_across * axes[:, 1]

@@ -9,6 +9,7 @@ from typing import Protocol
 from viewer.errors import ModelError
 from viewer.mechanics.beam import BEAMS
 from viewer.mechanics.shell import SHELLS
+from viewer.mechanics.shell_pieces import PIECED_SHELLS
 from viewer.mechanics.solid import SOLIDS
 from viewer.model.arrays import Array
 from viewer.model.design import Property
@@ -47,7 +48,7 @@ def _by_kind(*formulations: Formulation) -> Mapping[str, tuple[Formulation, ...]
     return MappingProxyType({kind: tuple(f for f in formulations if f.kind == kind) for kind in kinds})
 
 
-FORMULATIONS: Mapping[str, tuple[Formulation, ...]] = _by_kind(*SOLIDS, *SHELLS, *BEAMS)
+FORMULATIONS: Mapping[str, tuple[Formulation, ...]] = _by_kind(*SOLIDS, *SHELLS, *PIECED_SHELLS, *BEAMS)
 
 
 def formulation_for(kind: str, name: str = "") -> Formulation:

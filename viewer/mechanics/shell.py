@@ -1,12 +1,14 @@
 """Shell formulations: flat elements placed in space, six freedoms a node (ux uy uz rx ry rz, global axes).
 
-Isotropic, thickness from ``Property.thickness``. A warped quadrilateral is computed in its mean plane; each node
-is joined to the corner of the plane by a rigid offset along the normal, displacement of the corner =
-u + θ × offset, so that every rigid motion is free of strain whatever the warp.
+One material or layers (``laminate.py``), of the thickness in ``Property``. A warped quadrilateral is computed in its
+mean plane; each node is joined to the corner of the plane by a rigid offset along the normal, displacement of the
+corner = u + θ × offset, so that every rigid motion is free of strain whatever the warp. ``Property.offset`` moves the
+sheet off its nodes by the same arms.
 
-Mass is consistent: ρt on the translations and ρt³/12 on the rotations about the two axes in the surface, on the
-true (also warped) surface. The rotation about the normal carries ``SPIN_INERTIA`` of that, no physical quantity:
-it keeps the mass matrix regular and lies far above any frequency of use.
+Mass is consistent: ∫ρ on the translations and ∫ρz² on the rotations about the two axes in the surface, on the
+true (also warped) surface, with ∫ρz joining them for offset or unsymmetric sheets. The rotation about the normal
+carries ``SPIN_INERTIA`` of ∫ρz², no physical quantity: it keeps the mass matrix regular and lies far above any
+frequency of use.
 """
 
 from __future__ import annotations
@@ -20,13 +22,13 @@ from viewer.cells import KINDS
 from viewer.cells.measures import jacobians
 from viewer.errors import ModelError
 from viewer.mechanics import shell_quad, shell_tri
-from viewer.mechanics.materials import plane_stress, shear_modulus
+from viewer.mechanics.laminate import REISSNER, Sheet, directions, mass_moments, needs_direction, sheet
+from viewer.mechanics.patch import cross_matrix
 from viewer.model.arrays import Array
 from viewer.model.design import Property
 
 SPIN_INERTIA = 1e-4
 PARTS = ("membrane", "bending", "shear", "drilling")
-SHEAR_REISSNER = 5 / 6
 SHEAR_MINDLIN = np.pi**2 / 12
 
 
@@ -39,14 +41,15 @@ class ShellFormulation:
 
     name: str
     kind: str
-    _flat: Callable[[Array, Array, float, float], dict[str, Array]]
-    kappa: float = SHEAR_REISSNER
+    _flat: Callable[[Array, Sheet], dict[str, Array]]
+    kappa: float = REISSNER
     caution: str = ""
     rotations: bool = True
     scalar_mass: bool = False
 
     def parts(self, xyz: Array, prop: Property) -> dict[str, Array]:
         """Stiffness (b, nd, nd) of cells ``xyz`` (b, n, 3) m as ``{part: matrix}`` over ``PARTS``; they sum to all.
+        Layers that couple membrane and bending add the part "coupling".
 
         At a fixed shape, membrane, shear and drilling energies go with the thickness, bending with its cube.
         Raises ``ModelError`` for a missing thickness and for cells without area.
@@ -61,36 +64,44 @@ class ShellFormulation:
 
     def mass(self, xyz: Array, prop: Property) -> Array:
         """(b, nd, nd) consistent mass of cells ``xyz`` (b, n, 3) m, kg and kg·m²."""
-        thickness = _thickness(self.kind, prop)
+        _require_thickness(self.kind, prop)
+        whole, first, second = mass_moments(prop)
+        across = second + 2 * prop.offset * first + prop.offset**2 * whole
+        first = first + prop.offset * whole
         values, area, normal = _surface(self.kind, xyz)
-        density = prop.material.density * thickness
         pairs = np.einsum("bq,qi,qj->bqij", area, values, values)
-        across = np.eye(3) - (1 - SPIN_INERTIA) * normal[..., :, None] * normal[..., None, :]
+        flat = normal[..., :, None] * normal[..., None, :]
+        turning = across * (np.eye(3) - flat) + SPIN_INERTIA * second * flat
         batch, n = xyz.shape[:2]
         mass = np.zeros((batch, n, 6, n, 6))
-        mass[:, :, :3, :, :3] = np.einsum("bij,kl->bikjl", density * pairs.sum(axis=1), np.eye(3))
-        mass[:, :, 3:, :, 3:] = np.einsum("bqij,bqkl->bikjl", density * thickness**2 / 12 * pairs, across)
+        mass[:, :, :3, :, :3] = np.einsum("bij,kl->bikjl", whole * pairs.sum(axis=1), np.eye(3))
+        mass[:, :, 3:, :, 3:] = np.einsum("bqij,bqkl->bikjl", pairs, turning)
+        if first:
+            # u · (θ × n) = −u · (n × θ)
+            arm = np.einsum("bqij,bqkl->bikjl", pairs, -first * cross_matrix(normal))
+            mass[:, :, :3, :, 3:] = arm
+            mass[:, :, 3:, :, :3] = np.swapaxes(np.swapaxes(arm, 1, 3), 2, 4)
         return mass.reshape(batch, 6 * n, 6 * n)
 
     def _local(self, xyz: Array, prop: Property) -> tuple[dict[str, Array], Array]:
         """Parts in element axes and the operator (b, nd, nd) from global freedoms to them."""
         xyz = np.asarray(xyz, float)
-        thickness = _thickness(self.kind, prop)
+        _require_thickness(self.kind, prop)
         axes, corners = _mean_plane(xyz)
         _reject_flat(self.kind, xyz, corners[..., :2])
-        material = prop.material
-        flat = self._flat(corners[..., :2], plane_stress(material), self.kappa * shear_modulus(material), thickness)
-        return flat, _placing(axes, corners[..., 2])
+        stiff = sheet(prop, self.kappa)
+        if needs_direction(prop):
+            stiff = stiff.turned(directions(prop, axes))
+        return self._flat(corners[..., :2], stiff), _placing(axes, corners[..., 2] - prop.offset)
 
 
-def _thickness(kind: str, prop: Property) -> float:
+def _require_thickness(kind: str, prop: Property) -> None:
     if prop.thickness is None or not prop.thickness > 0:
         raise ModelError(
             f"{kind} cells of material '{prop.material.name}' are sheet and need a thickness",
             found="none" if prop.thickness is None else f"{prop.thickness:g} m", expected="a thickness above zero",
             do="give 'thickness' in the assignment of these cells",
         )
-    return float(prop.thickness)
 
 
 def _mean_plane(xyz: Array) -> tuple[Array, Array]:
@@ -124,7 +135,8 @@ def _reject_flat(kind: str, xyz: Array, xy: Array) -> None:
 
 
 def _placing(axes: Array, offset: Array) -> Array:
-    """(b, nd, nd) from global freedoms to those of the plane's corners in element axes; ``offset`` (b, n) m."""
+    """(b, nd, nd) from global freedoms to those of the plane's corners in element axes; ``offset`` (b, n) m is how
+    high the nodes stand above these corners."""
     batch, n = offset.shape
     turn = np.zeros((batch, n, 6, n, 6))
     for node in range(n):

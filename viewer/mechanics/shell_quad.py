@@ -7,7 +7,9 @@ the patch test holds (Taylor R.L., Beresford P.J., Wilson E.L., A non-conforming
 Int. J. Numer. Meth. Eng. 10 (1976) 1211). Drilling: the misfit between the nodal rotation about the normal and
 the in-plane rotation of the membrane, integrated with the shear modulus (Hughes T.J.R., Brezzi F., On drilling
 degrees of freedom, Comput. Meth. Appl. Mech. Eng. 72 (1989) 105). The incompatible modes enter the drilling
-misfit too; without them a long element bent in its plane would be stiffened by its drilling term.
+misfit too; without them a long element bent in its plane would be stiffened by its drilling term. The modes are
+condensed against membrane and drilling alone; the coupling of unsymmetric layers is formed with the strains that
+result.
 """
 
 from __future__ import annotations
@@ -15,6 +17,7 @@ from __future__ import annotations
 import numpy as np
 
 from viewer.cells import KINDS
+from viewer.mechanics.laminate import Sheet
 from viewer.model.arrays import Array
 
 QUAD = KINDS["quad4"]
@@ -27,13 +30,11 @@ def determinants(xy: Array) -> Array:
     return np.linalg.det(np.einsum("qni,bnj->bqij", QUAD.gradient(POINTS), xy))
 
 
-def flat_parts(xy: Array, membrane: Array, shear: float, thickness: float) -> dict[str, Array]:
+def flat_parts(xy: Array, sheet: Sheet) -> dict[str, Array]:
     """Stiffness (b, 24, 24) of the flat element, by parts, in its own axes (u v w rx ry rz per node).
 
-    xy         (b, 4, 2) corners in the element's plane, m, counter-clockwise
-    membrane   (3, 3) plane-stress matrix, Pa
-    shear      shear modulus × shear correction factor, Pa
-    thickness  m
+    xy     (b, 4, 2) corners in the element's plane, m, counter-clockwise
+    sheet  stiffness per area in the element's axes
     """
     values, gradient = QUAD.shape(POINTS), QUAD.gradient(POINTS)
     jacobian = np.einsum("qni,bnj->bqij", gradient, xy)
@@ -41,25 +42,33 @@ def flat_parts(xy: Array, membrane: Array, shear: float, thickness: float) -> di
     inverse = np.linalg.inv(jacobian)
     slopes = np.einsum("bqji,qni->bqnj", inverse, gradient)
 
-    b_membrane, b_drill = _in_plane(xy, values, slopes, area, membrane)
+    b_membrane, b_drill = _in_plane(xy, values, slopes, area, sheet.membrane)
     b_bending = np.zeros((*area.shape, 3, 24))
     b_bending[..., 0, RY] = slopes[..., 0]
     b_bending[..., 1, RX] = -slopes[..., 1]
     b_bending[..., 2, RY] = slopes[..., 1]
     b_bending[..., 2, RX] = -slopes[..., 0]
 
-    return {
-        "membrane": integrate(b_membrane, thickness * membrane, area),
-        "bending": integrate(b_bending, thickness**3 / 12 * membrane, area),
-        "shear": integrate(inverse @ _tied_shear(xy), shear * thickness * np.eye(2), area),
-        "drilling": integrate(b_drill, thickness * membrane[2:, 2:], area),
+    parts = {
+        "membrane": integrate(b_membrane, sheet.membrane, area),
+        "bending": integrate(b_bending, sheet.bending, area),
+        "shear": integrate(inverse @ _tied_shear(xy), sheet.shear, area),
+        "drilling": integrate(b_drill, sheet.membrane[..., 2:, 2:], area),
     }
+    if sheet.coupling is not None:
+        half = integrate(b_membrane, sheet.coupling, area, b_bending)
+        parts["coupling"] = half + np.swapaxes(half, 1, 2)
+    return parts
 
 
-def integrate(strain: Array, moduli: Array, area: Array) -> Array:
-    """Σ over points of area · Bᵀ D B: ``strain`` (b, q, s, n), ``moduli`` (s, s), ``area`` (b, q)."""
+def integrate(strain: Array, moduli: Array, area: Array, other: Array | None = None) -> Array:
+    """Σ over points of area · Bᵀ D B': ``strain`` B and ``other`` B' (the same when None) (b, q, s, n), ``moduli``
+    (s, s) or (b, s, s), ``area`` (b, q)."""
     batch, points, rows, columns = strain.shape
-    weighted = (area[..., None, None] * (moduli @ strain)).reshape(batch, points * rows, columns)
+    if moduli.ndim == 3:
+        moduli = moduli[:, None]
+    weighted = area[..., None, None] * (moduli @ (strain if other is None else other))
+    weighted = weighted.reshape(batch, points * rows, columns)
     return np.swapaxes(strain.reshape(batch, points * rows, columns), 1, 2) @ weighted
 
 
@@ -90,8 +99,8 @@ def _in_plane(xy: Array, values: Array, slopes: Array, area: Array, moduli: Arra
     extra_misfit[..., 0, :2] = 0.5 * extra[..., 1]
     extra_misfit[..., 0, 2:] = -0.5 * extra[..., 0]
 
-    both = np.zeros((4, 4))
-    both[:3, :3], both[3, 3] = moduli, moduli[2, 2]
+    both = np.zeros((*moduli.shape[:-2], 4, 4))
+    both[..., :3, :3], both[..., 3, 3] = moduli, moduli[..., 2, 2]
     full = np.concatenate([
         np.concatenate([strain, misfit], axis=2), np.concatenate([extra_strain, extra_misfit], axis=2)
     ], axis=3)

@@ -17,6 +17,7 @@ from __future__ import annotations
 import numpy as np
 
 from viewer.cells import KINDS
+from viewer.mechanics.laminate import Sheet
 from viewer.mechanics.shell_quad import RX, RY, integrate
 from viewer.model.arrays import Array
 
@@ -34,28 +35,30 @@ def determinants(xy: Array) -> Array:
     return np.linalg.det(xy[:, 1:] - xy[:, :1])[:, None]
 
 
-def flat_parts(xy: Array, membrane: Array, shear: float, thickness: float) -> dict[str, Array]:
+def flat_parts(xy: Array, sheet: Sheet) -> dict[str, Array]:
     """Stiffness (b, 18, 18) of the flat element, by parts, in its own axes (u v w rx ry rz per node).
 
-    xy         (b, 3, 2) corners in the element's plane, m, counter-clockwise
-    membrane   (3, 3) plane-stress matrix, Pa
-    shear      shear modulus × shear correction factor, Pa
-    thickness  m
+    xy     (b, 3, 2) corners in the element's plane, m, counter-clockwise
+    sheet  stiffness per area in the element's axes
     """
     area = determinants(xy)[:, 0] / 2
     weights = np.repeat(area[:, None] / 3, 3, axis=1)
-    curvature, slip = _bending(xy, area, membrane[0, 0] * thickness**2 / shear)
-    in_plane = _optimal_triangle(xy, area, membrane) * thickness
-    return {
+    curvature, slip = _bending(xy, area, sheet)
+    basic, in_plane = _optimal_triangle(xy, area, sheet.membrane)
+    parts = {
         "membrane": in_plane,
-        "bending": integrate(curvature, thickness**3 / 12 * membrane, weights),
-        "shear": integrate(slip, shear * thickness * np.eye(2), weights),
+        "bending": integrate(curvature, sheet.bending, weights),
+        "shear": integrate(slip, sheet.shear, weights),
         "drilling": np.zeros_like(in_plane),
     }
+    if sheet.coupling is not None:      # between the means of membrane strain, basicᵀ / area, and curvature
+        half = basic @ sheet.coupling @ curvature.mean(axis=1)
+        parts["coupling"] = half + np.swapaxes(half, 1, 2)
+    return parts
 
 
-def _optimal_triangle(xy: Array, area: Array, moduli: Array) -> Array:
-    """(b, 18, 18) membrane stiffness per unit thickness."""
+def _optimal_triangle(xy: Array, area: Array, moduli: Array) -> tuple[Array, Array]:
+    """Mean membrane strains times area (b, 18, 3) transposed, and membrane stiffness (b, 18, 18)."""
     batch = len(xy)
     dx = xy[:, :, None, 0] - xy[:, None, :, 0]          # x_ij = x_i − x_j
     dy = xy[:, :, None, 1] - xy[:, None, :, 1]
@@ -85,16 +88,19 @@ def _optimal_triangle(xy: Array, area: Array, moduli: Array) -> Array:
     middle = 0.5 * (corner + np.roll(corner, -1, axis=1))
     higher = np.einsum("bcsi,bst,bctj->bij", middle, side_moduli, middle) * area[:, None, None]
 
-    poisson = moduli[0, 1] / moduli[0, 0]
-    share = max(0.5 * (1 - 4 * poisson**2), 0.01)
-    return (basic @ moduli @ np.swapaxes(basic, 1, 2)) / area[:, None, None] \
+    # Poisson's ratio of the isotropic part, by the invariants of Tsai and Pagano (Jones 1999, § 2.7): the same
+    # whatever corner the element's axes start from
+    stiff = (3 * (moduli[..., 0, 0] + moduli[..., 1, 1]) + 2 * moduli[..., 0, 1] + 4 * moduli[..., 2, 2]) / 8
+    poisson = (moduli[..., 0, 0] + moduli[..., 1, 1] + 6 * moduli[..., 0, 1] - 4 * moduli[..., 2, 2]) / 8 / stiff
+    share = np.maximum(0.5 * (1 - 4 * poisson**2), 0.01)[..., None, None]
+    return basic, (basic @ moduli @ np.swapaxes(basic, 1, 2)) / area[:, None, None] \
         + 0.75 * share * np.swapaxes(theta, 1, 2) @ higher @ theta
 
 
-def _bending(xy: Array, area: Array, softness: float) -> tuple[Array, Array]:
+def _bending(xy: Array, area: Array, sheet: Sheet) -> tuple[Array, Array]:
     """Curvature (b, 3 points, 3, 18) and transverse shear strain (b, 3, 2, 18).
 
-    ``softness`` = 12 × bending over shear stiffness, m²: over an edge's length squared it is the edge's φ.
+    An edge's φ is 12 × bending over shear stiffness along the edge, over its length squared.
     """
     batch = len(xy)
     natural = TRIANGLE.gradient(np.zeros((1, 2)))[0]
@@ -110,7 +116,9 @@ def _bending(xy: Array, area: Array, softness: float) -> tuple[Array, Array]:
         edge = xy[:, j] - xy[:, i]
         length = np.linalg.norm(edge, axis=1)
         c, s = (edge / length[:, None]).T
-        phi = softness / length**2
+        bent, sheared = np.stack([c * c, s * s, 2 * c * s], axis=-1), np.stack([c, s], axis=-1)
+        stiff = _along(bent, sheet.bending)
+        phi = 12 * stiff / _along(sheared, sheet.shear) / length**2
         gap = np.zeros((batch, 18))                     # w_j − w_i + L/2 (β_i + β_j) along the edge
         gap[:, 6 * i + 2], gap[:, 6 * j + 2] = -1.0, 1.0
         for node in (i, j):
@@ -132,3 +140,8 @@ def _bending(xy: Array, area: Array, softness: float) -> tuple[Array, Array]:
         at_corner = np.linalg.solve(directions, np.stack([mean_slip[before], mean_slip[after]], axis=1))
         slip += POINTS[:, node, None, None] * at_corner[:, None]
     return curvature, slip
+
+
+def _along(vector: Array, matrix: Array) -> Array:
+    """(b,) vᵀ A v for vectors (b, n) and a matrix (n, n) or (b, n, n)."""
+    return np.sum(vector * np.einsum("...ij,...j->...i", matrix, vector), axis=-1)
