@@ -6,6 +6,8 @@ from pathlib import Path
 
 from viewer.export import save_gif, save_png, save_strip
 from viewer.scene.compose import pair_picture, single_picture
+from viewer.scene.section import Plane
+from viewer.scene.showing import Showing
 from viewer.workspace import OpenDossier, Study, Workspace
 
 HERE = Path(__file__).parent
@@ -27,10 +29,14 @@ def main() -> None:
         write(save_png, single_picture(baseline, 2, theme=theme, energy=False), f"ghost_{theme}.png")
     write(save_gif, single_picture(baseline, 1, width=640), "boom_mode_1.gif")
     fork = workspace.open(SAMPLES / "fork")
-    write(save_png, single_picture(only(fork), 1), "fork_light.png")
+    write(save_png, single_picture(only(fork), 3), "fork_light.png")
+    write(save_png, single_picture(only(fork), 6, node_lines=True, energy=False), "node_lines_light.png")
+    cut = Showing(plane=Plane((0.0, 0.0, 1.0), 0.0))
+    write(save_png, single_picture(only(fork), 3, showing=cut), "cut_light.png")
     trough = workspace.open(SAMPLES / "trough")
     first, second = (trough.study(name) for name in trough.names)
-    write(save_png, pair_picture(first, 1, second, trough.partner(trough.names[0], 1, trough.names[1])), "trough_side.png")
+    twist = trough.partner(first.design.name, 1, second.design.name)
+    write(save_png, pair_picture(first, 1, second, twist), "trough_side_light.png")
 
 
 def only(opened: OpenDossier) -> Study:

@@ -5,7 +5,7 @@ from itertools import pairwise
 import numpy as np
 import pytest
 
-from viewer.scene.ghost import chains, cut
+from viewer.scene.ghost import chains, cut, once
 
 
 def straight(n=50, length=1.0):
@@ -75,3 +75,16 @@ def test_short_pieces_are_drawn_whole_and_nothing_gives_nothing():
     assert drawn(cut(points, pairs, 0.017, 0.012), points) == pytest.approx(0.004)
     assert len(cut(points, np.empty((0, 2), int), 0.1, 0.1).segments(points)) == 0
     assert len(cut(np.zeros((2, 3)), np.array([[0, 1]]), 0.1, 0.1).nodes) == 0
+
+
+def test_edges_on_one_another_are_dashed_once():
+    """Two vertices at each place, as where a cut face meets the clipped skin; a far edge stays its own."""
+    points = np.array([[0.0, 0, 0], [1, 0, 0], [0, 0, 0], [1, 0, 1e-9], [0, 1, 0]])
+    kept = once(points, np.array([[0, 1], [3, 2], [2, 4], [0, 2]]), 1e-6)
+    assert kept.tolist() == [[0, 1], [0, 4]]
+
+
+def test_an_edge_that_two_shorter_ones_cover_is_left_out():
+    points = np.array([[0.0, 0, 0], [1, 0, 0], [0.4, 0, 0], [0.5, 0.3, 0]])
+    kept = once(points, np.array([[0, 1], [0, 2], [2, 1], [0, 3], [3, 1]]), 1e-6)
+    assert kept.tolist() == [[0, 2], [0, 3], [1, 2], [1, 3]]

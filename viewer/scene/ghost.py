@@ -63,6 +63,32 @@ def chains(pairs: Array) -> list[list[int]]:
     return found
 
 
+def once(points: Array, pairs: Array, near: float) -> Array:
+    """The edges ``pairs`` (k, 2) with each place of an edge kept once: where the rim of a cut face and the clipped
+    skin lie on one another, two patterns of dashes would close each other's gaps. ``near`` m is the same place."""
+    nodes, where = np.unique(pairs, return_inverse=True)
+    if len(nodes) == 0:
+        return pairs
+    places = np.round((points[nodes] - points[nodes].min(axis=0)) / near).astype(np.int64)
+    _, first, group = np.unique(places, axis=0, return_index=True, return_inverse=True)
+    merged = np.sort(nodes[first][group.reshape(-1)][where.reshape(pairs.shape)], axis=1)
+    merged = np.unique(merged[merged[:, 0] != merged[:, 1]], axis=0)
+    beside: dict[int, set[int]] = {}
+    for one, other in merged.tolist():
+        beside.setdefault(one, set()).add(other)
+        beside.setdefault(other, set()).add(one)
+
+    def doubled(one: int, other: int) -> bool:
+        """Whether two shorter edges cover this one: it passes a node that is joined to both its ends."""
+        whole = np.linalg.norm(points[other] - points[one])
+        return any(
+            np.linalg.norm(points[m] - points[one]) + np.linalg.norm(points[other] - points[m]) - whole < near
+            for m in beside[one] & beside[other]
+        )
+
+    return merged[[not doubled(one, other) for one, other in merged.tolist()]]
+
+
 def cut(points: Array, pairs: Array, dash: float, gap: float) -> Dashes:
     """Dashes of about ``dash`` m with gaps of ``gap`` m along the edges ``pairs`` (k, 2) at ``points``."""
     if len(pairs) == 0:

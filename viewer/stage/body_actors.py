@@ -24,6 +24,8 @@ GHOST_LIFT = 0.5               # px: less, so that the contour wins where body a
 CASED_LIFT = (2.0, 2.5)        # px: casing and core of node lines
 DASHED_LIFT = 3.0              # px: more, so that the compared contour wins where both designs coincide
 
+_SAME_PLACE = 1e-6      # of the diagonal: edges this near to one another are one edge of the ghost
+
 
 class Motion:
     """Skin nodes of a body at a phase, float32 about a local origin: far-off coordinates keep their digits."""
@@ -198,4 +200,4 @@ def rest_dashes(surface: Surface, rest: Array, camera: Camera, diagonal: float, 
     normals = surface.face_normals(rest)
     pairs = np.concatenate([contour.contour(surface.edges, normals, camera.toward_eye), surface.lines])
     on, off = (tokens.DOT, tokens.DOT_GAP) if dotted else (tokens.DASH, tokens.DASH_GAP)
-    return ghost.cut(rest, pairs, on * diagonal, off * diagonal)
+    return ghost.cut(rest, ghost.once(rest, pairs, _SAME_PLACE * diagonal), on * diagonal, off * diagonal)
