@@ -1,5 +1,7 @@
 """``.xdmf`` against meshio's and VTK's readers and writers: topologies, steps, sets, references."""
 
+import re
+
 import h5py
 import meshio
 import numpy as np
@@ -160,6 +162,17 @@ def test_frequency_of_a_step_comes_before_its_time(tmp_path):
     attribute = '<Attribute Name="freq_hz" Center="Grid"><DataItem Dimensions="1">{}</DataItem></Attribute>'
     path.write_text(document(grid(""), series(step(n, n, attribute.format(n + 20)) for n in range(3))))
     assert read_modes(path, read_mesh(path)).freq_hz.tolist() == [20, 21, 22]
+
+
+def test_times_in_a_list(tmp_path):
+    path = tmp_path / "a.xdmf"
+    listed = f'<Time TimeType="List">{item([7.5, 7.5, 9.0])}</Time>'
+    steps = [re.sub("<Time [^>]*>", "", step(n, n)) for n in range(3)]
+    path.write_text(document(grid(""), series([listed, *steps])))
+    assert read_modes(path, read_mesh(path)).freq_hz.tolist() == [7.5, 7.5, 9]
+    path.write_text(document(grid(""), series([listed, *steps[:2]])))
+    with pytest.raises(LoadError, match="list of times does not fit the steps; found: 3 times; expected: 2"):
+        read_modes(path, read_mesh(path))
 
 
 def test_table_beside_the_file_comes_before_times(tmp_path):

@@ -285,11 +285,28 @@ def _frequencies(document: Document, steps: list[_Step]) -> Array | None:
         raise document.error("some steps have a freq_hz and some have none", place=steps[given.index(None)].place)
     if frequency_table(document.path).is_file():
         return None  # a table beside the file says it better than times do
-    times = [step.grid.find("Time") for step in steps]
-    values = [None if time is None else time.get("Value") for time in times]
-    if None in values:
+    return step_frequencies(_times(document, steps))
+
+
+def _times(document: Document, steps: list[_Step]) -> Array | None:
+    """The time of each step, given with it or in a list with the collection; None when some are missing."""
+    own = [step.grid.find("Time") for step in steps]
+    values = [None if time is None else time.get("Value") for time in own]
+    if None not in values:
+        return np.array([_number(document, value, step) for value, step in zip(values, steps, strict=True)])
+    series = next(grid for grid in document.root.iter("Grid") if steps[0].grid in list(grid))
+    listed = series.find("Time")
+    if listed is None or listed.get("TimeType", "").lower() != "list":
         return None
-    return step_frequencies(np.array([_number(document, value, s) for value, s in zip(values, steps, strict=True)]))
+    times = document.item(listed, "Time").read().reshape(-1).astype(np.float64)
+    if len(times) != len(steps):
+        raise document.error(
+            "the list of times does not fit the steps",
+            place="Time",
+            found=f"{len(times)} times",
+            expected=f"{len(steps)}, one a step",
+        )
+    return times
 
 
 def _own_frequency(document: Document, step: _Step) -> float | None:
