@@ -13,6 +13,7 @@ from viewer.jobs import SILENT, Progress
 from viewer.loaders import read_mesh, read_modes
 from viewer.mechanics.energy import Energies
 from viewer.mechanics.energy import energies as form_energies
+from viewer.mechanics.relative import relative_energies, states_no_material
 from viewer.model.design import Design
 from viewer.model.dossier import StatedAmplitude
 from viewer.model.modes import ModeSet
@@ -33,7 +34,10 @@ def solve(design: Design, count: int = 6, *, cache: bool = True, progress: Progr
 
 
 def energies(design: Design, modes: ModeSet, progress: Progress = SILENT) -> Energies:
-    """Element strain and kinetic energies of every mode, with closure and trust."""
+    """Element strain and kinetic energies of every mode, with closure and trust; of a design without materials
+    relative ones: shares under one assumed material (``relative`` is True), without closure and trust."""
+    if states_no_material(design):
+        return relative_energies(design, modes, progress)
     return form_energies(design, modes, progress=progress)
 
 

@@ -25,6 +25,7 @@ def modes(
     """List the modes of every design: frequency, where the energy sits, how large the motion really is."""
     from viewer.export.rows import mode_rows, short
     from viewer.export.tables import readable, write_table
+    from viewer.workspace import better_formulation
 
     owner = workspace(no_cache)
     for order in name or ():
@@ -32,15 +33,18 @@ def modes(
     opened = owner.open(dossier)
     rows: list[dict[str, object]] = []
     cautions: list[str] = list(opened.warnings)
+    better: list[dict[str, object]] = []
     with progress_bar() as progress:
         for name in design or opened.names:
             study = opened.study(name, count, progress)
             rows += mode_rows(study)
             cautions += [*opened.doubts(name), *study.cautions]
+            if as_json and (advice := better_formulation(study, progress)) is not None:
+                better.append(advice.to_dict())
     if out is not None:
         write_table(out, rows)
     if as_json:
-        answer({"title": opened.dossier.title, "modes": rows, "cautions": cautions})
+        answer({"title": opened.dossier.title, "modes": rows, "better_formulations": better, "cautions": cautions})
         return
     typer.echo(readable(short(rows)))
     for caution in cautions:

@@ -2,19 +2,20 @@
 
 from __future__ import annotations
 
+from contextlib import suppress
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
 import numpy as np
 
-from viewer.errors import HingelightError
+from viewer.errors import HingelightError, LoadError, ModelError
 from viewer.jobs import SILENT, Progress
 from viewer.loaders import bare_dossier, read_mesh_report, read_modes
 from viewer.mechanics.assembly import assemble
-from viewer.mechanics.energy import energies
+from viewer.mechanics.relative import states_no_material
 from viewer.model.mesh import Mesh
-from viewer.workspace import OpenDossier
+from viewer.workspace import OpenDossier, better_formulation
 
 
 @dataclass(frozen=True)
@@ -33,7 +34,8 @@ class Checkup:
     @property
     def text(self) -> str:
         if self.draft:   # a dossier is printed so that it can be saved as it stands
-            return "\n".join([*(f"# {line}" for line in (*self.statements, *self.cautions)), self.draft])
+            said = [line for words in (*self.statements, *self.cautions) for line in words.splitlines()]
+            return "\n".join([*(f"# {line}" for line in said), self.draft])
         lines = [*self.statements, *(f"caution: {c}" for c in self.cautions), *(f"error: {e}" for e in self.errors)]
         lines.append("the dossier is sound" if self.sound else f"{len(self.errors)} error(s)")
         return "\n".join(lines)
@@ -76,7 +78,8 @@ def _check_design(opened: OpenDossier, name: str, progress: Progress) -> tuple[l
     for amplitude in opened.dossier.amplitudes:
         if amplitude.design == name and amplitude.where is not None:
             amplitude.where.rows(design.mesh, f"stated amplitude of mode {amplitude.mode}")
-    if design.physics.assignments:
+    has_material = bool(design.physics.assignments) and not states_no_material(design)
+    if has_material:
         system = assemble(design, progress)
         free = int((~system.held).sum())
         ones = system.gather(np.tile([1.0, 0, 0], (design.mesh.n_nodes, 1)))
@@ -87,19 +90,31 @@ def _check_design(opened: OpenDossier, name: str, progress: Progress) -> tuple[l
         modes = opened.modes(name, None, progress)
         span = f"{modes.freq_hz.min():.4g} to {modes.freq_hz.max():.4g} Hz" if modes.count else "none"
         statements.append(f"{name}: {modes.count} modes from {plan.modes_file.name}, {span}")
-        if design.physics.assignments:
-            found = energies(design, modes, progress=progress)
-            statements += [f"{name}: {found.sentence(i)}" for i in range(modes.count)]
+        study = opened.study(name, None, progress)
+        if study.energies is None and has_material:
+            raise ModelError(study.no_energies)
+        if study.energies is None or study.relative:
+            cautions += study.cautions
+        else:
+            statements += [f"{name}: {study.energies.sentence(i)}" for i in range(modes.count)]
+        advice = better_formulation(study, progress)
+        if advice is not None:
+            statements.append(advice.sentence)
     return statements, cautions
 
 
 def check_mesh(path: Path, modes_path: Path | None, progress: Progress = SILENT) -> Checkup:
-    """Read a bare mesh (and its mode set) and write a dossier to start from."""
+    """Read a bare mesh (and its mode set, by default one in the same file) and write a dossier to start from."""
     mesh, report = read_mesh_report(path, progress=progress)
     statements = [mesh_words(mesh)]
     if modes_path is not None:
         modes = read_modes(modes_path, mesh, progress=progress)
         statements.append(f"{modes.count} modes in {modes_path.name}")
+    else:
+        with suppress(LoadError):       # most meshes carry no modes
+            modes = read_modes(path, mesh, progress=progress)
+            modes_path = path
+            statements.append(f"{modes.count} modes in the same file")
     return Checkup(tuple(statements), (*report.warnings, *report.notes), (), bare_dossier(mesh, path, modes_path))
 
 

@@ -23,7 +23,7 @@ _WHOLE = 0.95       # a group that holds more of the body than this says nothing
 # What terminal and page show of the rows; files carry every column.
 _SHORT = (
     "design", "mode", "name", "frequency_hz", "largest_motion_at", "largest_motion_direction", "largest_real_m",
-    "magnification", "strain_energy_most_in", "strain_energy_most_percent", "energies_trusted",
+    "magnification", "strain_energy_most_in", "strain_energy_most_percent", "energies_trusted", "energy_note",
     "given_energy_agreement",
     "point", "effect", "direction", "motion_percent_of_largest", "real_motion_m",
     "first_design", "first_mode", "first_name", "second_design", "second_mode", "first_hz", "second_hz",
@@ -67,14 +67,17 @@ def _mode_row(study: Study, index: int) -> Row:
         "closure": None,
         "residual_share": None,
         "energies_trusted": None,
+        "energy_note": None,
         "given_energy_agreement": None,
     }
     if found is not None:
         for word, values in (("strain", found.strain[index]), ("kinetic", found.kinetic[index])):
             name, share = _most(study, values, found.volumes)
             row[f"{word}_energy_most_in"], row[f"{word}_energy_most_percent"] = name, share
-        row["springs_strain_percent"] = 100 * found.spring_share(index)
-        row["masses_kinetic_percent"] = 100 * found.mass_share(index)
+        if not study.relative:      # springs and masses are left out of relative energies
+            row["springs_strain_percent"] = 100 * found.spring_share(index)
+            row["masses_kinetic_percent"] = 100 * found.mass_share(index)
+        row["energy_note"] = found.note(index) or None
         if modes.cell_energy is not None:
             row["given_energy_agreement"] = _number(agreement(found.strain[index], modes.cell_energy[index]))
     if study.figures is not None:
@@ -98,6 +101,8 @@ def mode_caption(row: Row) -> str:
         text += f" Springs hold {digits(row['springs_strain_percent'])} % of it."
     if row["energies_trusted"] is False and row["closure"] is not None:
         text += f" Energies are not trusted (closure {row['closure']:.2f})."
+    elif row["energies_trusted"] is None and row["energy_note"]:
+        text += f" Energies are {row['energy_note']}."
     return text
 
 
@@ -135,6 +140,8 @@ def group_rows(study: Study) -> list[Row]:
                     "volume_percent": _percent(found.volumes, cells),
                 }
             )
+            if study.relative:
+                rows[-1]["energy_note"] = found.note(index)
             if given is not None:
                 rows[-1]["given_strain_energy_percent"] = _percent(np.nan_to_num(given[index]), cells)
     return rows

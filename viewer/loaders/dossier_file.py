@@ -159,7 +159,8 @@ class _Reader:
         return Material(name, e1, directional.nu12, density, directional)
 
     def assignment(self, item: schema.AssignTable, place: str, materials: dict[str, Material]) -> Assignment:
-        for name in [item.material or ""] if item.layers is None else [layer.material for layer in item.layers]:
+        single = [] if item.material is None else [item.material]
+        for name in single if item.layers is None else [layer.material for layer in item.layers]:
             where = place if item.layers is None else f"{place}, layers"
             self.known("material", name, materials, f"{where}, material")
         plies = tuple(Ply(layer.material, layer.thickness * self.length, layer.angle) for layer in item.layers or ())

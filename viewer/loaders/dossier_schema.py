@@ -42,7 +42,7 @@ turning springs N·m/rad::
     #     offset_across = 5 shifts it sideways
     #   shells: offset = 5 moves the sheet off its nodes along the normal; direction = [1, 0, 0] is axis 1 of
     #     directional material; layers = [{material = "ply", thickness = 0.2, angle = 45}, …] stand for both material
-    #     and thickness
+    #     and thickness; thickness or section without any material are enough for relative energies of given modes
 
     [[points]]                  # of all designs; a design's own `points` add to them or replace by name
     name = "camera lens"
@@ -187,6 +187,9 @@ class LayerTable(Table):
     angle: float = 0.0
 
 
+_NO_MATERIAL = 'no material, expected material = "NAME", or for sheets layers = [{material = …}]'
+
+
 class AssignTable(Table):
     target: Name = "*"
     material: Name | None = None
@@ -201,8 +204,8 @@ class AssignTable(Table):
 
     @model_validator(mode="after")
     def _what(self):
-        if self.layers is None and self.material is None:
-            raise ValueError('says no material, expected material = "NAME", or for sheets layers = [{material = …}]')
+        if self.layers is None and self.material is None and self.thickness is None and self.section is None:
+            raise ValueError(f"says {_NO_MATERIAL}")
         if self.layers is not None and (self.material is not None or self.thickness is not None):
             raise ValueError("says layers beside material or thickness, expected layers alone: each names its own")
         return self
@@ -292,6 +295,10 @@ class DesignTable(Table):
                 'says neither modes nor assign, expected modes = "FILE", or '
                 'assign = [{target = "*", material = "NAME"}] so that modes can be computed'
             )
+        # Thickness or section alone are enough for relative energies of given modes, if no entry has a material.
+        bare = [n for n, item in enumerate(self.assign, 1) if item.material is None and item.layers is None]
+        if bare and (self.modes is None or len(bare) < len(self.assign)):
+            raise ValueError(f"assign {bare[0]} says {_NO_MATERIAL}")
         return self
 
 

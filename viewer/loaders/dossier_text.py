@@ -65,8 +65,10 @@ def _model_lines(mesh: Mesh, name: str, modes: str) -> list[str]:
     thickness = ", thickness = " if shells else ""
     group = next(iter([*mesh.node_groups, *mesh.cell_groups]), "")
     place = f"group = {_quoted(group)}" if group else _lowest_end(mesh)
+    sized = f"the sheet thickness{' (alone, without material: relative energies)' if modes else ''}, and "
     return [
-        "# For strain energies: a material and what is made of it." if modes else "# The material.",
+        "# Energies are relative only until a material is given: it brings closure and trust." if modes
+        else "# The material.",
         f"{optional}[materials.material]           # TO FILL IN: remove the # and put your material's values",
         "# youngs_modulus = ",
         "# poisson = ",
@@ -77,7 +79,7 @@ def _model_lines(mesh: Mesh, name: str, modes: str) -> list[str]:
         f"mesh = {_quoted(name)}",
         'length_unit = "m"              # TO FILL IN: the unit of the mesh file, "mm", "m", "in"',
         f"modes = {_quoted(modes)}" if modes else 'solve = 6                      # or: modes = "FILE"',
-        f"# TO FILL IN: {'the sheet thickness, and ' if shells else ''}one entry per group where it differs",
+        f"# TO FILL IN: {sized if shells else ''}one entry per group where it differs",
         f'{unfilled}assign = [{{target = "*", material = "material"{thickness}}}]',
         "# TO FILL IN where it is held; a body without supports is free and has six rigid-body modes first",
         f'# supports = [{{name = "root", {place}}}]',

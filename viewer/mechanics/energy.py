@@ -39,6 +39,7 @@ from viewer.model.modes import ModeSet
 
 CLOSURE_BOUND = 0.05
 RESIDUAL_BOUND = 0.02
+RELATIVE = "relative only: one uniform material assumed"
 _OWN = 1e-6             # |closure − 1| up to which a computed mode set is that of this very design
 _RIGID = 1e-4           # share of kinetic energy beyond the rigid motion, below which a free mode is rigid
 
@@ -59,6 +60,8 @@ class Energies:
     residual_cells (k, n_cells) where the residual sits: share by cell, NaN as above
     trusted        (k,) bool; formulations: names of the element formulations used
     cautions       what the model itself warns of
+    relative       one uniform material was assumed (``relative.py``): strain and kinetic are shares of each mode's
+                   whole instead of J, closure and residual NaN
     """
 
     indices: Array
@@ -76,6 +79,7 @@ class Energies:
     mass_names: tuple[str, ...]
     formulations: tuple[str, ...]
     cautions: tuple[str, ...]
+    relative: bool = False
 
     def __post_init__(self) -> None:
         for item in fields(self):
@@ -119,6 +123,8 @@ class Energies:
         if facts["mass_share"]:
             parts.append(f"lumped masses hold {facts['mass_share']:.1%} of the kinetic energy")
         head = f"Mode {facts['mode']} ({facts['frequency_hz']:.4g} Hz): "
+        if self.relative:
+            return head + ("energies are " + RELATIVE if self.total_strain[j] > 0 else "a rigid-body mode") + "."
         if facts["closure"] is None:
             return head + "; ".join([*parts, "a rigid-body mode, which has no strain energy"]) + "."
         figures = f"closure {facts['closure']:.3f}"
@@ -127,32 +133,40 @@ class Energies:
         verdict = "the energies are trusted" if facts["trusted"] else "the energies are NOT to be trusted"
         return head + "; ".join([*parts, f"{verdict} ({figures})"]) + "."
 
+    def note(self, j: int) -> str:
+        """Why energies of mode j are no absolute figures: a mark for whatever prints them; empty when they are."""
+        if self.relative:
+            return RELATIVE
+        return "" if self.trusted[j] or np.isnan(self.closure[j]) else "not trusted: read them as shares only"
+
     def to_dict(self, j: int) -> dict[str, Any]:
         """Every figure of mode j as plain numbers."""
         number = lambda value: None if np.isnan(value) else float(value)  # noqa: E731
         return {
             "mode": int(self.indices[j]) + 1,
             "frequency_hz": float(self.freq_hz[j]),
-            "strain_energy": float(self.total_strain[j]),
-            "kinetic_energy": float(self.total_kinetic[j]),
+            "strain_energy": None if self.relative else float(self.total_strain[j]),
+            "kinetic_energy": None if self.relative else float(self.total_kinetic[j]),
             "spring_share": self.spring_share(j),
             "springs": _named_shares(self.spring_names, self.springs[j], self.total_strain[j]),
             "mass_share": self.mass_share(j),
             "masses": _named_shares(self.mass_names, self.masses[j], self.total_kinetic[j]),
             "closure": number(self.closure[j]),
             "residual": number(self.residual[j]),
-            "trusted": bool(self.trusted[j]),
+            "trusted": None if self.relative else bool(self.trusted[j]),
+            "energy_note": self.note(j),
             "formulations": list(self.formulations),
         }
 
 
 def energies(
     design: Design, modes: ModeSet, indices: Sequence[int] | None = None, progress: Progress = SILENT,
-    *, formulations: Mapping[str, str] | None = None,
+    *, formulations: Mapping[str, str] | None = None, judged: bool = True,
 ) -> Energies:
     """Energies of the modes ``indices`` (None: all), complex ones by φᴴKφ.
 
     formulations  cell kind → name of the formulation to take instead of the design's
+    judged        False: no residual is formed (it takes the matrices), and unless computed nothing is trusted
     Shell shapes without rotations have them recovered first (``recovery.py``). Raises ``ModelError`` as
     ``assemble`` does, and when the modes are not on the design's nodes. Memory: two matrices (k, n_cells),
     (k, n_dof) and chunks of element matrices; the sparse matrices only for imported modes.
@@ -187,7 +201,7 @@ def energies(
     own = (modes.origin == "computed") & (np.abs(closure - 1) < _OWN)
     residual, residual_cells = np.full(len(picked), np.nan), np.full(strain.shape, np.nan)
     unknown = np.nonzero(~rigid & ~own)[0]
-    if len(unknown):
+    if len(unknown) and judged:
         residual[unknown], residual_cells[unknown] = residuals(layout, vectors[unknown], omega[unknown], progress)
     with np.errstate(invalid="ignore"):
         trusted = (np.abs(closure - 1) <= CLOSURE_BOUND) & (own | (residual <= RESIDUAL_BOUND))

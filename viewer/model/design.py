@@ -322,7 +322,7 @@ class Design:
         index = np.full(mesh.n_cells, -1, np.int64)
         found: list[Property] = []
         for item in self.physics.assignments:
-            rows = self._target_rows(item.target)
+            rows = self.target_rows(item.target)
             prop = self._property(item)
             if prop not in found:
                 found.append(prop)
@@ -344,7 +344,8 @@ class Design:
             item.formulation, item.section, item.orientation, item.offset, item.offset_across, item.direction, layers,
         )
 
-    def _target_rows(self, target: str) -> Array:
+    def target_rows(self, target: str) -> Array:
+        """Cell rows that an assignment's ``target`` names; ``ModelError`` when there are none."""
         mesh = self.mesh
         if target == "*":
             return np.arange(mesh.n_cells)

@@ -12,6 +12,7 @@ from viewer.errors import InputError
 from viewer.insight.correlate import shared_turn
 from viewer.insight.given_energy import given_density
 from viewer.insight.scale import Scale, common_scale
+from viewer.mechanics.energy import RELATIVE
 from viewer.model.arrays import Array
 from viewer.model.design import LumpedMass
 from viewer.scene.figures import digits
@@ -218,15 +219,17 @@ def _top(bodies: Sequence[Body]) -> float | None:
 
 
 def _caution(studies: Sequence[Study], indices: Sequence[int], bodies: Sequence[Body]) -> str:
-    """One short line under the colour bar when a body's energies are not trusted."""
-    doubtful = [
-        study.design.name
-        for study, index, body in zip(studies, indices, bodies, strict=True)
-        if body.density is not None and study.energies is not None and not study.energies.trusted[index]
-    ]
-    if not doubtful:
-        return ""
-    return "energies not trusted" if len(bodies) == 1 else f"not trusted: {', '.join(doubtful)}"
+    """One short line under the colour bar when a body's energies are not trusted, or relative only."""
+    relative: list[str] = []
+    doubtful: list[str] = []
+    for study, index, body in zip(studies, indices, bodies, strict=True):
+        if body.density is not None and study.energies is not None and not study.energies.trusted[index]:
+            (relative if study.relative else doubtful).append(study.design.name)
+    if len(bodies) == 1:
+        return RELATIVE if relative else "energies not trusted" if doubtful else ""
+    said = [f"{RELATIVE}: {', '.join(relative)}"] if relative else []
+    said += [f"not trusted: {', '.join(doubtful)}"] if doubtful else []
+    return "; ".join(said)
 
 
 def _energy_remarks(study: Study, index: int, energy: bool) -> list[str]:
@@ -237,7 +240,9 @@ def _energy_remarks(study: Study, index: int, energy: bool) -> list[str]:
     springs = found.spring_share(index)
     if springs >= SPRINGS_WORTH_SAYING:
         remarks.append(f"springs hold {digits(100 * springs)} % of the strain energy")
-    if not found.trusted[index]:
+    if study.relative:
+        remarks.append(f"energies {RELATIVE}")
+    elif not found.trusted[index]:
         figures = found.to_dict(index)
         said = f"energies not trusted: closure {figures['closure']:.2f}"
         if figures["residual"] is not None:

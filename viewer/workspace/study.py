@@ -8,22 +8,26 @@ from functools import cached_property
 
 import numpy as np
 
-from viewer.errors import ModelError
+from viewer.errors import ModelError, RefusedError
 from viewer.insight.scale import CarriedPoint, Scale, carried_points, scale_mode
 from viewer.jobs import SILENT, Progress
-from viewer.mechanics.energy import Energies, energies
+from viewer.mechanics.energy import RELATIVE, Energies, energies
 from viewer.mechanics.given_matrices import NO_CELLS, Totals, totals
+from viewer.mechanics.relative import relative_energies, states_no_material
 from viewer.model.arrays import Array
 from viewer.model.design import Design
 from viewer.model.dossier import StatedAmplitude
 from viewer.model.modes import ModeSet
+
+_WANTED = "add materials and assign them for closure, trust and absolute energies"
 
 
 @dataclass(frozen=True, eq=False)
 class Study:
     """A design, its mode set, the element energies of every mode, and the stated amplitudes by mode number.
 
-    energies    None when the design has no (usable) physics; ``no_energies`` then says why
+    energies    relative ones when the design states no materials; None when it has no (usable) physics either,
+                ``no_energies`` then says why
     totals      energies as wholes, when stiffness and mass were given as matrices
     condition   words that stand in every scale note ("clamped root, camera 1.2 kg")
     """
@@ -49,6 +53,8 @@ class Study:
     def cautions(self) -> tuple[str, ...]:
         """What a reader of any figure of this study must know."""
         words = list(self.energies.cautions) if self.energies is not None else [self.no_energies]
+        if self.relative:
+            words.insert(0, f"energies are {RELATIVE}; {_WANTED}")
         figures = self.figures
         if figures is not None:
             elastic = np.isfinite(figures.closure)
@@ -59,13 +65,22 @@ class Study:
         return tuple(f"{self.design.name}: {w}" for w in words)
 
     @property
+    def relative(self) -> bool:
+        """Whether energies are shares under one assumed material, without closure and trust."""
+        return self.energies is not None and self.energies.relative
+
+    @property
     def figures(self) -> Energies | Totals | None:
         """Where closure, residual and trust stand, whether energies are known by element or as wholes."""
-        return self.totals if self.energies is None else self.energies
+        return self.totals if self.energies is None or self.relative else self.energies
 
     def has_strain(self, index: int) -> bool:
         """Whether mode ``index`` has strain energy to show: it has physics and is no rigid-body mode."""
-        return self.energies is not None and bool(np.isfinite(self.energies.closure[index]))
+        if self.energies is None:
+            return False
+        if self.relative:
+            return bool(self.energies.total_strain[index] > 0)
+        return bool(np.isfinite(self.energies.closure[index]))
 
     def modal_mass(self, index: int) -> float | None:
         """φᵀMφ of the shape as given, kg·(shape unit)²; None when neither masses nor normalisation are known."""
@@ -73,7 +88,7 @@ class Study:
             return 1.0
         if self.totals is not None:
             return float(self.totals.modal_mass[index])
-        if self.energies is None or not self.modes.freq_hz[index] > 0:
+        if self.energies is None or self.relative or not self.modes.freq_hz[index] > 0:
             return None
         return 2 * float(self.energies.total_kinetic[index]) / self.modes.omega(index) ** 2
 
@@ -110,12 +125,16 @@ def study(
     condition: str = "",
     progress: Progress = SILENT,
 ) -> Study:
-    """Form the energies of all modes; a design without materials is still studied, without energies."""
+    """Form the energies of all modes; a design without materials is still studied, with relative energies where its
+    mesh allows them."""
     found, whole, why = None, None, ""
     if design.physics.matrices is not None:
         whole, why = totals(design, modes, progress=progress), f"design '{design.name}': {NO_CELLS}"
-    elif not design.physics.assignments:
-        why = f"design '{design.name}' states no materials, so it has no energies: add materials and assign them"
+    elif states_no_material(design):
+        try:
+            found = relative_energies(design, modes, progress)
+        except (ModelError, RefusedError) as error:
+            why = f"no energies: {error}"
     else:
         try:
             found = energies(design, modes, progress=progress)
