@@ -109,3 +109,18 @@ def test_several_kinds_and_nothing():
     assert (places.cell >= len(blocks[0][1])).tolist() == [False, True, True]
     with pytest.raises(ValueError, match="no cell"):
         nearest([], points, points)
+
+
+@pytest.mark.parametrize("kind", ["hex8", "tet10", "pyramid5", "wedge15"])
+def test_places_on_the_outside_of_a_body_lie_in_its_cells(kind: str):
+    """Off a box the distance is that to the box; reference coordinates are those of the solid cell."""
+    mesh = box_mesh(kind, (2, 2, 2), (1.0, 1.0, 1.0), 0.2)
+    queries = np.random.default_rng(4).uniform(-0.5, 1.5, (60, 3))
+    blocks = [(block.kind, block.nodes) for block in mesh.blocks]
+    places = nearest(blocks, mesh.points, queries)
+    inside = np.clip(queries, 0, 1)
+    np.testing.assert_allclose(places.distance, np.linalg.norm(queries - inside, axis=1), atol=1e-9)
+    np.testing.assert_allclose(places.position, inside, atol=1e-8)
+    for rows, nodes, weights in interpolation(blocks, places):
+        again = np.einsum("kn,kni->ki", weights, mesh.points[nodes])
+        np.testing.assert_allclose(again, inside[rows], atol=1e-8)

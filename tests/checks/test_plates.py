@@ -213,6 +213,23 @@ def test_plate_of_triangles(name: str, case: Case, times: tuple[int, ...]):
     limits(replace(case, mesh=triangles), len(expected)).check(expected, row(name).tolerance, order(case))
 
 
+QUADRATICS = [("P01", SSSS, THREE_PAIRS), ("P06", CCCC, ()), ("P02", CFFF, ())]
+
+
+@pytest.mark.parametrize("kind", ["tri6", "quad8", "quad9"])
+@pytest.mark.parametrize(("name", "case", "times"), QUADRATICS, ids=[c[0] for c in QUADRATICS])
+def test_plate_of_pieces(kind: str, name: str, case: Case, times: tuple[int, ...]):
+    """Cells of six, eight and nine nodes, half as many along each side."""
+    expected = np.repeat(row(name).values, times) if times else np.array(row(name).values)
+    pieces = replace(case, mesh=_of(kind), sizes=(8, 12, 18))
+    limits(pieces, len(expected)).check(expected, row(name).tolerance, order(case))
+
+
+@cache
+def _of(kind: str) -> Callable[[int], Mesh]:
+    return lambda n: rectangle(n, kind=kind)
+
+
 def triangles(n: int) -> Mesh:
     return rectangle(n, kind="tri3")
 

@@ -1,8 +1,9 @@
 """The place of a mesh nearest to given points: which cell, its reference coordinates, how far.
 
-Cells near a point come from a tree of cell centres; a cell is dropped when the sphere around it lies farther than the
-best place found. Within a cell |x(ξ) − p|² is minimised by damped Newton steps; where the minimum falls outside the
-cell, its faces (of solids) or edges (of surfaces) are searched in the same way.
+First every solid cell near a point is asked whether it holds it; the points that none holds are nearest to an outer
+face of a solid, or to a surface or line cell. Cells near a point come from a tree of cell centres; a cell is dropped
+when the sphere around it lies farther than the best place found. Within a cell |x(ξ) − p|² is minimised by damped
+Newton steps; where the minimum of a surface falls outside the cell, its edges are searched in the same way.
 """
 
 from __future__ import annotations
@@ -17,6 +18,7 @@ from numpy.typing import NDArray
 from scipy.spatial import cKDTree
 
 from viewer.cells.kinds import KINDS
+from viewer.cells.skin import outer_faces
 
 Array = NDArray[Any]
 _INSIDE = 1e-9          # in reference coordinates
@@ -48,23 +50,53 @@ def nearest(blocks: Sequence[tuple[str, Array]], points: Array, queries: Array) 
     starts = np.cumsum([0, *(len(nodes) for _, nodes in blocks)])
     if starts[-1] == 0:
         raise ValueError("no cell to search")
-    spheres = [_spheres(points[np.asarray(nodes)]) for _, nodes in blocks if len(nodes)]
-    centre, radius = (np.concatenate(part) for part in zip(*spheres, strict=True))
-    tree, largest = cKDTree(centre), radius.max()
     best = Places(np.full(len(queries), -1), np.zeros((len(queries), 3)), np.full(len(queries), np.inf),
                   np.zeros((len(queries), 3)))
-    open_rows, count, done = np.arange(len(queries)), 4, 0
+    rows = [(kind, np.asarray(nodes), np.arange(start, start + len(nodes)))
+            for (kind, nodes), start in zip(blocks, starts[:-1], strict=True) if len(nodes)]
+    solids = [part for part in rows if KINDS[part[0]].dim == 3]
+    if solids:
+        _sweep(solids, points, queries, best, within=True)
+    outside = np.isinf(best.distance)
+    if outside.any():
+        thin = [part for part in rows if KINDS[part[0]].dim < 2]
+        # surface cells come out with the faces of solids
+        _sweep([*outer_faces(blocks), *thin], points, queries, best)
+    _into_solids(solids, points, best, outside)
+    return best
+
+
+def _sweep(
+    parts: list[tuple[str, Array, Array]], points: Array, queries: Array, best: Places, *, within: bool = False
+) -> None:
+    """Improve ``best`` of the queries without a place by the cells ``parts`` (kind, nodes, cell rows); ``within``:
+    only solids that hold the query count."""
+    spheres = [_spheres(points[nodes]) for _, nodes, _ in parts if len(nodes)]
+    centre, radius = (np.concatenate(part) for part in zip(*spheres, strict=True))
+    tree, largest = cKDTree(centre), radius.max()
+    open_rows = np.nonzero(np.isinf(best.distance))[0]
+    count, done = 4, 0
     while len(open_rows):
         count = min(count, len(centre))
         away, cells = tree.query(queries[open_rows], k=count)
         away, cells = away.reshape(len(open_rows), -1), cells.reshape(len(open_rows), -1)
         for column in range(done, count):            # nearest centre first, so that most others can be dropped
-            wanted = away[:, column] - radius[cells[:, column]] < best.distance[open_rows]
-            _improve(best, blocks, starts, points, queries, open_rows[wanted], cells[wanted, column])
-        settled = (best.distance[open_rows] <= away[:, -1] - largest) | (best.distance[open_rows] == 0)
+            bound = np.where(np.isinf(best.distance[open_rows]), 0, -1) if within else best.distance[open_rows]
+            wanted = away[:, column] - radius[cells[:, column]] <= bound
+            _improve(best, parts, points, queries, open_rows[wanted], cells[wanted, column], within)
+        bound = np.zeros(len(open_rows)) if within else best.distance[open_rows]
+        settled = (bound <= away[:, -1] - largest) | (best.distance[open_rows] == 0)
         open_rows = open_rows[~settled] if count < len(centre) else open_rows[:0]
         done, count = count, 2 * count
-    return best
+
+
+def _into_solids(solids: list[tuple[str, Array, Array]], points: Array, best: Places, outside: Array) -> None:
+    """Reference coordinates in the solid cell for the places of ``outside`` (q,) found on its faces."""
+    for kind, nodes, cells in solids:
+        mine = np.nonzero((best.cell >= cells[0]) & (best.cell <= cells[-1]) & outside)[0]
+        if len(mine):
+            xyz = points[nodes[best.cell[mine] - cells[0]]]
+            best.xi[mine] = closest(kind, xyz, best.position[mine])[0]
 
 
 def interpolation(blocks: Sequence[tuple[str, Array]], places: Places) -> Iterator[tuple[Array, Array, Array]]:
@@ -84,26 +116,28 @@ def _spheres(xyz: Array) -> tuple[Array, Array]:
 
 
 def _improve(
-    best: Places, blocks: Sequence[tuple[str, Array]], starts: Array, points: Array, queries: Array, rows: Array,
-    cells: Array,
+    best: Places, parts: list[tuple[str, Array, Array]], points: Array, queries: Array, rows: Array, cells: Array,
+    within: bool,
 ) -> None:
-    """Try one cell for each of the query ``rows`` and keep what is nearer."""
-    for (kind, nodes), start in zip(blocks, starts[:-1], strict=True):
+    """Try one cell (counted through ``parts``) for each of the query ``rows`` and keep what is nearer."""
+    start = 0
+    for kind, nodes, names in parts:
         mine = np.nonzero((cells >= start) & (cells < start + len(nodes)))[0]
         for at in range(0, len(mine), _PAIRS):
             pick = mine[at : at + _PAIRS]
-            xyz = points[np.asarray(nodes)[cells[pick] - start]]
-            xi, position, distance = closest(kind, xyz, queries[rows[pick]])
+            local = cells[pick] - start
+            xi, position, distance = closest(kind, points[nodes[local]], queries[rows[pick]], within=within)
             nearer = distance < best.distance[rows[pick]]
             where = rows[pick][nearer]
-            best.cell[where], best.distance[where] = cells[pick][nearer], distance[nearer]
+            best.cell[where], best.distance[where] = names[local[nearer]], distance[nearer]
             best.xi[where], best.position[where] = 0.0, position[nearer]
             best.xi[where, : xi.shape[1]] = xi[nearer]
+        start += len(nodes)
 
 
-def closest(kind: str, xyz: Array, query: Array) -> tuple[Array, Array, Array]:
+def closest(kind: str, xyz: Array, query: Array, *, within: bool = False) -> tuple[Array, Array, Array]:
     """Reference coordinates (m, dim), position (m, 3) and distance (m,) of the place of cell ``xyz`` (m, n, 3) that
-    is nearest to ``query`` (m, 3), pair by pair."""
+    is nearest to ``query`` (m, 3), pair by pair; ``within``: distance is infinite where a solid does not hold it."""
     cell = KINDS[kind]
     if cell.dim == 0:
         return np.zeros((len(xyz), 0)), xyz[:, 0], np.linalg.norm(xyz[:, 0] - query, axis=1)
@@ -118,7 +152,7 @@ def closest(kind: str, xyz: Array, query: Array) -> tuple[Array, Array, Array]:
         distance[inside] = 0.0
     distance[~inside] = np.inf
     outside = np.nonzero(~inside)[0]
-    if len(outside):
+    if len(outside) and not within:
         for part_kind, local in _boundary(kind):
             part_xi, place, gap = closest(part_kind, xyz[outside][:, list(local)], query[outside])
             nearer = gap < distance[outside]

@@ -3,8 +3,8 @@
 Classical lamination (Jones R.M., Mechanics of Composite Materials, 2nd ed., 1999, ch. 2 and 4): membrane A,
 coupling B and bending D about the middle of the sheet. Transverse shear is energy-based: in each of the two
 directions the shear flow that equilibrium gives in cylindrical bending holds the same energy as the averaged shear
-strain (Whitney J.M., Shear correction factors for orthotropic laminates under static load, J. Appl. Mech. 40 (1973) 302). For a sheet of
-one material this is Reissner's 5/6; in a sandwich it leaves the shear to the core.
+strain (Whitney J.M., Shear correction factors for orthotropic laminates under static load, J. Appl. Mech. 40 (1973)
+302). For a sheet of one material this is Reissner's 5/6; in a sandwich it leaves the shear to the core.
 """
 
 from __future__ import annotations

@@ -3,8 +3,8 @@
 The triangle is cut into four triangles, the quadrilateral into four quadrilaterals about its centre. The eight-node
 kind has no node there: the centre is condensed, it takes the place of least strain energy for given nodes (Guyan
 R.J., Reduction of stiffness and mass matrices, AIAA J. 3 (1965) 380), in the mass as well. What the pieces hold is
-held here: rigid motions, patches, no locking, curved sheets by facets half as large as the cells. Frequencies converge
-with the second order of the pieces, not with the third or fourth that a quadratic element could reach.
+held here: rigid motions, patches, no locking, curved sheets by facets half as large as the cells. Frequencies
+converge with the second order of the pieces, not with the third or fourth that a quadratic element could reach.
 """
 
 from __future__ import annotations
