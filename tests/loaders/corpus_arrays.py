@@ -93,6 +93,7 @@ def made():
     yield ".h5: link to another file", "REFERENCE", _h5_link, "array 'points' is missing"
     yield ".h5: external storage", "REFERENCE", _h5_external, "is no plain array of numbers"
     yield ".h5: link in a circle", "REFERENCE", _h5_circle, "array 'points' is missing"
+    yield ".exo: node set number 0", "SHAPE", _exodus_set_0, "", "equal"
     for name, (fault, change, says) in _VTKHDF.items():
         yield f".vtkhdf: {name}", fault, _hdf(change), says
 
@@ -181,6 +182,19 @@ def _h5_circle(folder):
         file["again"] = h5py.SoftLink("/points")
         file["cells_hex8"] = cube_rows()
     return folder / "a.h5"
+
+
+def _exodus_set_0(folder):
+    """Found by fuzzing: sets count from 1, so that this one is none of them."""
+    import netCDF4
+
+    from tests.loaders.test_exodus_files import full
+
+    (folder / "whole").mkdir()
+    full(folder / "whole" / "a.exo", "NETCDF3_CLASSIC")
+    with netCDF4.Dataset(full(folder / "a.exo", "NETCDF3_CLASSIC"), "a") as file:
+        file.renameVariable("node_ns1", "node_ns0")
+    return folder / "a.exo"
 
 
 # --- .vtkhdf: one change each of a good file ---

@@ -194,7 +194,7 @@ class _Exodus:
     # --- blocks and sets ---
 
     def _block_numbers(self) -> list[int]:
-        found = (re.fullmatch(r"connect(\d{1,6})", name) for name in self.arrays)
+        found = (re.fullmatch(r"connect([1-9]\d{0,5})", name) for name in self.arrays)
         return sorted(int(match[1]) for match in found if match)
 
     def blocks(self, notes: list[str]) -> Iterator[tuple[int, RawBlock | None]]:
@@ -245,7 +245,7 @@ class _Exodus:
     def sets(self, prefix: str, word: str) -> Iterator[tuple[int, str]]:
         """Number and name of every node set or side set that has members."""
         key = {"ns": "node_ns", "ss": "elem_ss"}[prefix]
-        found = (re.fullmatch(key + r"(\d{1,6})", name) for name in self.arrays)
+        found = (re.fullmatch(key + r"([1-9]\d{0,5})", name) for name in self.arrays)
         for number in sorted(int(match[1]) for match in found if match):
             yield number, self.set_name(prefix, number, word)
 
