@@ -177,7 +177,7 @@ def test_wrong_material_keeps_its_picture_and_is_marked():
     assert facts["closure"] is not None
     assert facts["closure"] < 0.95
     assert facts["energy_note"].startswith("not trusted")
-    assert mode_rows(told)[0]["energy_note"].startswith("not trusted")
+    assert mode_rows(told)[0]["energies_trusted"] is False
     picture = single_picture(told, 1)
     assert picture.energy_top is not None
     assert picture.energy_caution == "energies not trusted"

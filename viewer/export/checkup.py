@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from contextlib import suppress
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -111,10 +110,12 @@ def check_mesh(path: Path, modes_path: Path | None, progress: Progress = SILENT)
         modes = read_modes(modes_path, mesh, progress=progress)
         statements.append(f"{modes.count} modes in {modes_path.name}")
     else:
-        with suppress(LoadError):       # most meshes carry no modes
+        try:
             modes = read_modes(path, mesh, progress=progress)
             modes_path = path
             statements.append(f"{modes.count} modes in the same file")
+        except LoadError as error:      # as for most meshes; the reason tells a broken mode set from none
+            statements.append(f"no modes taken from the same file: {error.problem}")
     return Checkup(tuple(statements), (*report.warnings, *report.notes), (), bare_dossier(mesh, path, modes_path))
 
 

@@ -77,7 +77,8 @@ def _mode_row(study: Study, index: int) -> Row:
         if not study.relative:      # springs and masses are left out of relative energies
             row["springs_strain_percent"] = 100 * found.spring_share(index)
             row["masses_kinetic_percent"] = 100 * found.mass_share(index)
-        row["energy_note"] = found.note(index) or None
+        else:
+            row["energy_note"] = found.note(index) or None
         if modes.cell_energy is not None:
             row["given_energy_agreement"] = _number(agreement(found.strain[index], modes.cell_energy[index]))
     if study.figures is not None:

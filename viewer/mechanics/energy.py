@@ -137,7 +137,7 @@ class Energies:
         """Why energies of mode j are no absolute figures: a mark for whatever prints them; empty when they are."""
         if self.relative:
             return RELATIVE
-        return "" if self.trusted[j] or np.isnan(self.closure[j]) else "not trusted: read them as shares only"
+        return "" if self.trusted[j] or np.isnan(self.closure[j]) else "not trusted: absolute figures do not hold"
 
     def to_dict(self, j: int) -> dict[str, Any]:
         """Every figure of mode j as plain numbers."""

@@ -1,0 +1,108 @@
+"""Time and memory of the whole chain on a large solid: load, skin, energies, one still.
+
+``python tests/bench/bench_chain.py [cells] [--material]``. A cube of about that many hexahedra (default: a million)
+with three modes is written as an interchange file by a process of its own; then each stage says its seconds and the
+most memory that was held in it above the file's size. Without ``--material`` energies are relative, as for a mesh and
+modes alone; with it closure and residual are formed as well. Leaves with 1 when a stage goes above the goal. Memory
+is read from Linux's /proc.
+"""
+
+from __future__ import annotations
+
+import multiprocessing
+import sys
+import tempfile
+import time
+from collections.abc import Callable
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+
+GOAL = 3.0      # GB above the size of the file
+COUNT = 3
+
+
+class Bends:
+    """Cantilever-like shapes along x, Euler–Bernoulli kinematics, made when asked."""
+
+    has_rotations = is_complex = False
+    count = COUNT
+
+    def __init__(self, points: np.ndarray) -> None:
+        self._points = points
+
+    def translations(self, index: int) -> np.ndarray:
+        x, _, z = self._points.T
+        k = (index + 0.5) * np.pi
+        bent = np.zeros_like(self._points)
+        bent[:, 2], bent[:, 0] = 1 - np.cos(k * x), -z * k * np.sin(k * x)
+        return bent
+
+    def rotations(self, index: int) -> None:
+        return None
+
+
+def write(path: Path, cells: int) -> None:
+    """The file of the cube; runs in a process of its own, whose memory does not count."""
+    from tests.bench.bench_interchange import box
+    from viewer.loaders import write_interchange
+    from viewer.model.modes import ModeSet
+
+    side = max(2, round(cells ** (1 / 3)))
+    mesh = box((side + 1) ** 3)
+    write_interchange(path, mesh, ModeSet(mesh.node_ids, 100.0 * (1 + np.arange(COUNT)), Bends(mesh.points)))
+
+
+def held(word: str) -> float:
+    """VmHWM or VmRSS of this process and its children, GB; children are readers, which end with their stage."""
+    for line in Path("/proc/self/status").read_text().splitlines():
+        if line.startswith(word):
+            return int(line.split()[1]) * 1024 / 1e9
+    raise OSError(f"no {word} in /proc/self/status")
+
+
+def stage(name: str, size: float, work: Callable[[], Any]) -> tuple[Any, bool]:
+    """Run one stage; its result, and whether it kept to the goal."""
+    Path("/proc/self/clear_refs").write_text("5")       # forgets the peak so far
+    start = time.perf_counter()
+    result = work()
+    seconds, peak = time.perf_counter() - start, held("VmHWM")
+    good = peak - size <= GOAL
+    print(
+        f"{name:9} {seconds:8.1f} s   peak {peak:5.2f} GB, {peak - size:5.2f} GB above the file, "
+        f"kept {held('VmRSS'):5.2f} GB   {'' if good else 'ABOVE THE GOAL'}", flush=True,
+    )
+    return result, good
+
+
+def main(cells: int, material: bool) -> int:
+    with tempfile.TemporaryDirectory() as folder:
+        path = Path(folder) / "cube.vtu"
+        writer = multiprocessing.get_context("spawn").Process(target=write, args=(path, cells))
+        writer.start()
+        writer.join()
+        size = path.stat().st_size / 1e9
+
+        import viewer
+        from viewer.export import save_png
+        from viewer.model.design import Assignment, Design, Material, Physics
+        from viewer.scene.compose import single_picture
+        from viewer.workspace import study
+
+        steel = Physics({"steel": Material("steel", 2.1e11, 0.3, 7850.0)}, (Assignment("*", "steel"),))
+        (mesh, modes), one = stage(
+            "load", size, lambda: (mesh := viewer.read_mesh(path), viewer.read_modes(path, mesh))
+        )
+        print(f"{mesh.n_cells} cells, {mesh.n_nodes} nodes, file {size:.2f} GB, goal {GOAL:g} GB above it")
+        _, two = stage("skin", size, lambda: mesh.skin)
+        design = Design("cube", mesh, steel if material else Physics())
+        told, three = stage("energies", size, lambda: study(design, modes))
+        picture, four = stage("picture", size, lambda: single_picture(told, 1))
+        _, five = stage("still", size, lambda: save_png(picture, Path(folder) / "cube.png"))
+    return 0 if one and two and three and four and five else 1
+
+
+if __name__ == "__main__":
+    numbers = [word for word in sys.argv[1:] if word.isdigit()]
+    sys.exit(main(int(numbers[0]) if numbers else 1_000_000, "--material" in sys.argv))
