@@ -220,3 +220,11 @@ def test_moduli_invert_the_compliance():
     sheet = compliance[np.ix_([0, 1, 3], [0, 1, 3])]
     np.testing.assert_allclose(materials.plane_stress(material) @ sheet, np.eye(3), atol=1e-12)
     assert materials.shear_modulus(material) == pytest.approx(70e9 / 2.66)
+
+
+@pytest.mark.parametrize("element", [f for f in SOLIDS if not f.incompatible], ids=lambda f: f.name)
+def test_strain_energy_is_that_of_the_stiffness(element):
+    cells = distorted_cells(element.kind, 5)
+    moved = np.random.default_rng(2).normal(size=(5, 3 * cells.shape[1], 4))
+    wanted = np.einsum("bik,bij,bjk->bk", moved, element.stiffness(cells, ALUMINIUM), moved) / 2
+    np.testing.assert_allclose(element.strain_energy(cells, ALUMINIUM, moved), wanted, rtol=1e-12)

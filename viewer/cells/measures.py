@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 from viewer.cells.kinds import KINDS
 
 Array = NDArray[Any]
-_CHUNK = 20_000      # cells at a time: bounds memory to some tens of MB for every kind
+_CHUNK = 500         # cells at a time: what the processor's cache holds
 
 
 def jacobian_components(xyz: Array, gradient: Array) -> Array:
@@ -31,13 +31,22 @@ def cofactors(j: Array) -> Array:
     """(3, 3, …) cofactors of 3 × 3 matrices given component first: [i, d] = det J · ∂ξ_d/∂x_i."""
     out = np.empty(j.shape)
     for d in range(3):
-        out[:, d] = cross(j[:, (d + 1) % 3], j[:, (d + 2) % 3])
+        _cross_into(out[:, d], j[:, (d + 1) % 3], j[:, (d + 2) % 3])
     return out
 
 
 def cross(a: Array, b: Array) -> Array:
     """Cross product over the first axis (3, …)."""
-    return np.stack([a[1] * b[2] - a[2] * b[1], a[2] * b[0] - a[0] * b[2], a[0] * b[1] - a[1] * b[0]])
+    out = np.empty(a.shape)
+    _cross_into(out, a, b)
+    return out
+
+
+def _cross_into(out: Array, a: Array, b: Array) -> None:
+    for i in range(3):
+        j, k = (i + 1) % 3, (i + 2) % 3
+        np.multiply(a[j], b[k], out=out[i])
+        out[i] -= a[k] * b[j]
 
 
 def determinants(j: Array) -> Array:

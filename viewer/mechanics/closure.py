@@ -22,7 +22,7 @@ from viewer.jobs import SILENT, Progress
 from viewer.mechanics.assembly import Layout, System, assemble_layout
 from viewer.mechanics.factor import factorise
 from viewer.mechanics.patch import rigid_fields
-from viewer.mechanics.sums import cell_energies, real_parts
+from viewer.mechanics.sums import real_parts, strain_and_kinetic
 from viewer.model.arrays import Array
 
 FACTOR_LIMIT = 200_000  # free directions up to which A is factorised; beyond, conjugate gradients
@@ -36,9 +36,11 @@ def flexible_share(layout: Layout, vectors: Array) -> Array:
     strength, axes = np.linalg.eigh(fields.T @ fields / np.maximum((fields**2).sum(), 1e-300))
     seen = strength > 1e-12 * strength[-1]
     basis, _ = np.linalg.qr(fields @ axes[:, seen])
-    moved = layout.spread(vectors)[0][:, nodes].reshape(len(vectors), -1)
-    whole = np.maximum(np.sum(np.abs(moved) ** 2, axis=1), 1e-300)
-    return np.maximum(1 - np.sum(np.abs(moved @ basis) ** 2, axis=1) / whole, 0.0)
+    places = layout.dof[nodes, :3].ravel()
+    rigid, counted = np.zeros((layout.n_dof, basis.shape[1])), np.zeros(layout.n_dof)
+    rigid[places[places >= 0]], counted[places[places >= 0]] = basis[places >= 0], 1.0
+    whole = np.maximum(np.einsum("kn,kn,n->k", vectors, vectors.conj(), counted).real, 1e-300)
+    return np.maximum(1 - np.sum(np.abs(vectors @ rigid) ** 2, axis=1) / whole, 0.0)
 
 
 def residuals(layout: Layout, vectors: Array, omega: Array, progress: Progress = SILENT) -> tuple[Array, Array]:
@@ -76,8 +78,8 @@ def _one_level(
     # 2xᵀr − xᵀAx: equal to rᵀA⁻¹r for the exact x and below it for any other.
     gain = 2 * np.sum(flat * found, axis=0) - np.sum(found * (inner @ found), axis=0)
     missed = system.extend(found.T)
-    by_cell = cell_energies(system, missed, "stiffness", progress)
-    by_cell += alpha * cell_energies(system, missed, "mass", progress)
+    strain, moving = strain_and_kinetic(system, missed, progress)
+    by_cell = strain + alpha * moving
     shares = gain.reshape(len(parts), -1).sum(axis=0) / whole
     return shares, 2 * by_cell.reshape(len(parts), len(vectors), -1).sum(axis=0) / whole[:, None]
 

@@ -32,7 +32,7 @@ from viewer.mechanics.closure import flexible_share, residuals
 from viewer.mechanics.constraints import Attachment
 from viewer.mechanics.formulations import FORMULATIONS
 from viewer.mechanics.recovery import examine
-from viewer.mechanics.sums import cell_energies, cell_volumes
+from viewer.mechanics.sums import cell_volumes, strain_and_kinetic
 from viewer.model.arrays import Array, frozen
 from viewer.model.design import Design
 from viewer.model.modes import ModeSet
@@ -186,8 +186,8 @@ def energies(
     layout = lay_out(design, progress, formulations=formulations)
     vectors, doubts = _vectors(layout, modes, picked, progress)
     omega = 2 * np.pi * modes.freq_hz[picked]
-    strain, springs = cell_energies(layout, vectors, "stiffness", progress), _attached(layout.springs, vectors)
-    moving, masses = cell_energies(layout, vectors, "mass", progress), _attached(layout.masses, vectors)
+    strain, moving = strain_and_kinetic(layout, vectors, progress)
+    springs, masses = _attached(layout.springs, vectors), _attached(layout.masses, vectors)
     total, modal_mass = 2 * (strain.sum(axis=1) + springs.sum(axis=1)), 2 * (moving.sum(axis=1) + masses.sum(axis=1))
     if not (modal_mass > 0).all():
         raise ModelError(
@@ -270,10 +270,9 @@ def best_formulation(design: Design, modes: ModeSet, progress: Progress = SILENT
 def _closure_error(design: Design, modes: ModeSet, names: Mapping[str, str], progress: Progress) -> float:
     layout = lay_out(design, progress, formulations=names)
     vectors, _ = _vectors(layout, modes, np.arange(modes.count), progress)
-    total = cell_energies(layout, vectors, "stiffness", progress).sum(axis=1)
-    total += _attached(layout.springs, vectors).sum(axis=1)
-    mass = cell_energies(layout, vectors, "mass", progress).sum(axis=1)
-    mass += _attached(layout.masses, vectors).sum(axis=1)
+    strain, moving = strain_and_kinetic(layout, vectors, progress)
+    total = strain.sum(axis=1) + _attached(layout.springs, vectors).sum(axis=1)
+    mass = moving.sum(axis=1) + _attached(layout.masses, vectors).sum(axis=1)
     omega = 2 * np.pi * modes.freq_hz
     elastic = (omega > 0) & (flexible_share(layout, vectors) >= _RIGID)
     if not elastic.any():

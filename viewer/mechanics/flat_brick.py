@@ -21,7 +21,7 @@ holds where the four edges through the wall are parallel: whatever the outline, 
 Where they are not, or where a flat layer of crooked outline lies on thick cells, the nodal forces of neighbours in a
 constant stress do not quite cancel. That is the price of bending freely: a distorted cell whose only freedoms are
 displacements of its corners cannot have both (MacNeal 1987, Int. J. Numer. Meth. Engng 24:1793–1799). Giving every
-cell its exact mean strain back passes the patch test and makes modes of the crooked plate above 50 % to 73 % too high.
+cell its exact mean strain back passes the patch test, and makes the modes of the crooked plate 49 % to 73 % too high.
 Measured in tests/mechanics/test_flat_brick.py.
 """
 

@@ -18,6 +18,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import dataclass
+from functools import cache
 
 import numpy as np
 
@@ -55,8 +56,7 @@ class SolidFormulation:
         """
         xyz = np.asarray(xyz, float)
         first, second = materials.lame(prop.material)
-        points, weights = KINDS[self.kind].rule(self.stiffness_order)
-        gradient = KINDS[self.kind].gradient(points)
+        points, weights, _, gradient = _tables(self.kind, self.stiffness_order)
         kept = 3 * xyz.shape[1]
         out = np.empty((len(xyz), kept, kept))
         for part in _chunks(len(xyz), (len(points) + kept) * kept):
@@ -78,8 +78,7 @@ class SolidFormulation:
         """
         xyz = np.asarray(xyz, float)
         density = materials.check(prop.material).density
-        points, weights = KINDS[self.kind].rule(self.mass_order)
-        values, gradient = KINDS[self.kind].shape(points), KINDS[self.kind].gradient(points)
+        points, weights, values, gradient = _tables(self.kind, self.mass_order)
         n = xyz.shape[1]
         pairs = ((values[:, :, None] * values[:, None, :]) * (density * weights[:, None, None])).reshape(-1, n * n)
         out = np.empty((len(xyz), n * n))
@@ -89,17 +88,37 @@ class SolidFormulation:
             out[part] = stretch @ pairs
         return out.reshape(-1, n, n)
 
+    def strain_energy(self, xyz: Array, prop: Property, moved: Array) -> Array:
+        """(b, k) J, ½ uᵀ K u of the displacements ``moved`` (b, 3n, k) m of cells ``xyz`` (b, n, 3) m.
+
+        From the strains at the integration points; K itself, which would cost more, is not formed. Not for
+        ``incompatible``, whose condensed modes are known by their stiffness only.
+        """
+        first, second = materials.lame(prop.material)
+        points, weights, _, gradient = _tables(self.kind, self.stiffness_order)
+        shape = len(xyz), 3 * len(points), gradient.shape[1]
+        slopes = np.swapaxes(self._slopes(xyz, gradient, points, weights), 0, 1).reshape(shape)
+        slopes = (slopes @ moved.reshape(len(xyz), shape[2], -1)).reshape(len(xyz), 3, len(points), 3, -1)
+        trace = slopes[:, 0, :, 0] + slopes[:, 1, :, 1] + slopes[:, 2, :, 2]
+        energy = first / 2 * _squares(trace)
+        for i in range(3):
+            energy += second * _squares(slopes[:, i, :, i])
+            energy += second / 2 * _squares(slopes[:, i - 1, :, i] + slopes[:, i, :, i - 1])
+        return energy
+
     def _slopes(self, xyz: Array, gradient: Array, points: Array, weights: Array) -> Array:
         """(3, b, q, modes) global gradients, times the root of the volume of each integration point, of the shape
         functions and, behind them, the incompatible modes."""
         jacobian = jacobian_components(xyz, gradient)
-        determinant = determinants(jacobian)
+        inverse = cofactors(jacobian)
+        determinant = (jacobian[:, 0] * inverse[:, 0]).sum(axis=0)
         self._require_positive(determinant.min(axis=1), "a Jacobian determinant at an integration point")
         scale = np.sqrt(weights / determinant)                 # √(w det J) over the determinant of the inverse
-        slopes = _mapped(gradient, cofactors(jacobian) * scale)
+        inverse *= scale
+        slopes = _mapped(gradient, inverse)
         if not self.incompatible:
             return slopes
-        centre = jacobian_components(xyz, KINDS[self.kind].gradient(np.zeros((1, 3))))
+        centre = jacobian_components(xyz, _tables(self.kind, 1)[3])
         bubbles = -2 * points[:, :, None] * np.eye(3)          # ∂(1 − ξ²)/∂ξ in each direction
         return np.concatenate([slopes, _mapped(bubbles, cofactors(centre) * scale)], axis=-1)
 
@@ -111,6 +130,16 @@ class SolidFormulation:
                 f"{count} {self.kind} cell{'s are' if count > 1 else ' is'} inside out or collapsed",
                 found=f"{what} of {smallest.min():.3g}", expected="above 0", do="repair the mesh there",
             )
+
+
+@cache
+def _tables(kind: str, order: int) -> tuple[Array, ...]:
+    """Points, weights, shape functions and reference gradients of a rule; asked for with every chunk of cells."""
+    points, weights = KINDS[kind].rule(order)
+    out = points, weights, KINDS[kind].shape(points), KINDS[kind].gradient(points)
+    for array in out:
+        array.flags.writeable = False
+    return out
 
 
 def _thin_walls(matrix: Array, xyz: Array, material: Material) -> None:
@@ -125,6 +154,10 @@ def _thin_walls(matrix: Array, xyz: Array, material: Material) -> None:
 def _chunks(count: int, doubles_per_cell: int) -> Iterator[slice]:
     size = max(1, _WORK // doubles_per_cell)
     return (slice(start, start + size) for start in range(0, count, size))
+
+
+def _squares(values: Array) -> Array:
+    return np.einsum("bqk,bqk->bk", values, values)
 
 
 def _mapped(reference: Array, inverse: Array) -> Array:
