@@ -163,6 +163,20 @@ def test_shell_nodes_take_the_leaders_rotation():
     np.testing.assert_allclose(found.vectors, whole, atol=5e-3 * np.abs(whole).max())
 
 
+def test_a_rigid_bar_between_two_solid_nodes_has_no_loose_spin():
+    """A link along a skew line between nodes without rotations: no spurious motion, and the spin is named."""
+    link = Link("bar", Selector(nodes=[1]), Selector(near=[1.0, 0.2, 0.1]))
+    model = design(BAR, links=(link,))
+    system = assemble(model)
+    assert any("'bar'" in text and "spin" in text for text in system.cautions)
+    found = solve(model, 9)
+    assert (found.freq_hz[:6] == 0).all()
+    assert found.freq_hz[6] > 100
+    np.testing.assert_allclose(energies(model, found).closure[6:], 1, atol=1e-8)
+    there = solve(design(BAR), 9).freq_hz
+    assert (found.freq_hz[6:] >= there[6:] * (1 - 1e-9)).all()       # a constraint never lowers a frequency
+
+
 # ---------------------------------------------------------------- ties
 
 LOWER = box_mesh("hex8", (3, 2, 2), (1.0, 0.6, 0.4))

@@ -302,3 +302,12 @@ def test_bad_cells_and_missing_thickness_are_refused(form):
     crushed[3] = crushed[3, :1]
     with pytest.raises(ModelError, match=r"1 .* no area"):
         form.stiffness(crushed, Property(STEEL, 0.01))
+
+
+def test_warped_cells_are_named():
+    flat = plate_mesh("quad4", (2, 2), (1.0, 1.0))
+    for lift, said in ((0.01, False), (0.2, True)):
+        points = flat.points.copy()
+        points[0, 2] = lift
+        design = Design("d", flat.with_(points=points), Physics({"steel": STEEL}, (Assignment("*", "steel", 0.01),)))
+        assert any("1 of 4 quad4 cells are warped" in text for text in assemble(design).cautions) == said

@@ -10,20 +10,19 @@ from __future__ import annotations
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from functools import cached_property
-from typing import Any
 
 import numpy as np
 import scipy.sparse as sp
 
-from viewer.cells import inverted, measures
+from viewer.cells import measures
 from viewer.cells.kinds import KINDS
 from viewer.errors import ModelError
 from viewer.jobs import SILENT, Progress
+from viewer.mechanics.cell_parts import cautions_of, check_shapes, element_parts
 from viewer.mechanics.constraints import (
     Attachment,
     held_dofs,
     mass_attachment,
-    some_ids,
     spring_attachment,
     spring_nodes,
     turns,
@@ -34,15 +33,14 @@ from viewer.mechanics.followers import (
     add_tie,
     check_supports,
     follow_matrix,
+    hold_loose_spins,
     link_nodes,
 )
-from viewer.mechanics.formulations import FORMULATIONS, Formulation, formulation_for
-from viewer.mechanics.materials import check
+from viewer.mechanics.formulations import Formulation
 from viewer.mechanics.pattern import Pattern
 from viewer.mechanics.sections import constants
 from viewer.model.arrays import Array, frozen
 from viewer.model.design import DIRECTIONS, Design, Property
-from viewer.model.mesh import Mesh
 
 _CHUNK = 2**21      # entries of element matrices at a time, 16 MB: kernels stay in reach of the cache
 
@@ -190,19 +188,20 @@ def lay_out(
     """
     progress.tick("numbering")
     mesh, physics = design.mesh, design.physics
-    parts, cautions = _element_parts(design, formulations or {})
+    parts, cautions = element_parts(design, formulations or {})
     has = np.zeros((mesh.n_nodes, 2), bool)  # translations, rotations
     for formulation, _, _, nodes in parts:
         has[nodes, 0] = True
         if formulation.rotations:
             has[nodes, 1] = True
-    cautions += _mixed_caution(parts, has) + _side_caution(parts)
+    cautions += cautions_of(parts, mesh, has[:, 1])
     for spring in physics.springs:
         for rows in spring_nodes(spring, mesh):
             if rows is not None:
                 lone = rows[~has[rows, 0]]
                 has[lone, 0] = True
                 has[lone, 1] = turns(spring)
+    turning = has[:, 1].copy()
     for link in physics.links:
         leader, followers = link_nodes(link, design)
         has[leader] = True
@@ -220,9 +219,8 @@ def lay_out(
             dof[nodes][:, :, : 6 if formulation.rotations else 3].reshape(len(nodes), -1)))
         for formulation, prop, cells, nodes in parts
     )
-    for group in blocks:
-        progress.tick("checking cells")
-        _check_shape(group, mesh)
+    progress.tick("checking cells")
+    check_shapes(parts, mesh)
     springs, masses = [], []
     for spring in physics.springs:
         attachment, caution = spring_attachment(spring, design, dof)
@@ -239,6 +237,7 @@ def lay_out(
     for tie in physics.ties:
         progress.tick("tying")
         add_tie(rules, tie, design)
+    hold_loose_spins(rules, design, turning)
     follow, dependent = follow_matrix(rules, design, n_dof)
     check_supports(follow, dependent, held, rules, design)
     return Layout(
@@ -278,132 +277,6 @@ def _with_attachments(matrix: sp.csr_array, attachments: tuple[Attachment, ...])
     total = sp.csr_array(matrix + sp.coo_array((values, (rows, columns)), shape=matrix.shape).tocsr())
     total.sort_indices()
     return total
-
-
-Part = tuple[Formulation, Property, Array, Array]
-
-
-def _element_parts(design: Design, instead: Mapping[str, str]) -> tuple[list[Part], list[str]]:
-    """(formulation, property, cell rows, node rows) of every group that carries stiffness, and cautions.
-
-    Cells without material, thickness, section or formulation are left out, with a caution, when every one of their
-    nodes belongs to a cell that has them: meshes bring such edges and faces along as names. Otherwise they are an
-    error.
-    """
-    mesh = design.mesh
-    properties, index = design.properties
-    parts: list[Part] = []
-    idle: list[tuple[str, Property | None, Array, Array]] = []
-    for block, start in zip(mesh.blocks, mesh.block_starts[:-1], strict=True):
-        chosen = index[start : start + len(block)]
-        for which in np.unique(chosen):
-            rows = np.nonzero(chosen == which)[0]
-            cells, nodes = start + rows, block.nodes[rows]
-            prop = properties[which] if which >= 0 else None
-            if prop is None or block.kind not in FORMULATIONS or _lacks(prop, block.kind):
-                idle.append((block.kind, prop, cells, nodes))
-                continue
-            _check_property(prop, block.kind, mesh, cells)
-            formulation = formulation_for(block.kind, instead.get(block.kind, prop.formulation))
-            parts.append((formulation, prop, cells, nodes))
-    carried = np.zeros(mesh.n_nodes, bool)
-    for _, _, _, nodes in parts:
-        carried[nodes] = True
-    cautions = [f"{f.kind}: {f.caution}" for f, _, _, _ in parts if f.caution]
-    for kind, prop, cells, nodes in idle:
-        if KINDS[kind].dim == 0:
-            continue
-        loose = ~carried[nodes].all(axis=1)
-        if loose.any() or KINDS[kind].dim == 3:
-            raise _idle_error(design, kind, prop, cells if not loose.any() else cells[loose])
-        cautions.append(f"{name_cells(mesh, kind, cells)} carry no stiffness: they are taken as names of places")
-    return parts, cautions
-
-
-def name_cells(mesh: Mesh, kind: str, cells: Array) -> str:
-    """"12 cells tri3 (ids 4, 5 … in group 'web')" for messages."""
-    groups = [name for name, rows in mesh.cell_groups.items() if np.isin(cells, rows).any()]
-    inside = f" in group {', '.join(repr(name) for name in groups[:3])}" if groups else ""
-    return f"{len(cells)} cells {kind} (ids {some_ids(mesh.cell_ids[cells])}{inside})"
-
-
-def _lacks(prop: Property, kind: str) -> str:
-    """What a property must give for cells of this kind and does not."""
-    wanted, given = {1: ("section", prop.section), 2: ("thickness", prop.thickness)}.get(KINDS[kind].dim, ("", 0))
-    return wanted if given is None else ""
-
-
-def _idle_error(design: Design, kind: str, prop: Property | None, cells: Array) -> ModelError:
-    mesh = design.mesh
-    what = f"design '{design.name}': {name_cells(mesh, kind, cells)}"
-    parts: dict[str, Any] = {"file": mesh.source or None}
-    if kind not in FORMULATIONS:
-        return ModelError(
-            f"{what} have no element formulation", expected=f"kinds: {', '.join(sorted(FORMULATIONS))}",
-            do="mesh this region with one of these kinds, or leave the cells out of the mesh", **parts,
-        )
-    if prop is None:
-        return ModelError(
-            f"{what} have no material",
-            do="add an assignment whose target is their group, their kind or '*'", **parts,
-        )
-    word, lacking = {1: "beams", 2: "shells"}[KINDS[kind].dim], _lacks(prop, kind)
-    return ModelError(f"{what} are {word} without {lacking}", do=f"give '{lacking}' in their assignment", **parts)
-
-
-def _check_property(prop: Property, kind: str, mesh: Mesh, cells: Array) -> None:
-    try:
-        check(prop.material)
-    except ModelError as error:
-        raise error.at(file=mesh.source or None, place=name_cells(mesh, kind, cells)) from None
-    if KINDS[kind].dim == 2 and not 0.0 < (prop.thickness or 0.0) < np.inf:
-        raise ModelError(
-            f"{name_cells(mesh, kind, cells)} have an impossible thickness", found=str(prop.thickness),
-            expected="above 0 m", do="give 'thickness' in their assignment",
-        )
-
-
-def _check_shape(group: ElementGroup, mesh: Mesh) -> None:
-    bad = inverted(group.kind, mesh.points[group.nodes])
-    if len(bad):
-        raise ModelError(
-            f"{name_cells(mesh, group.kind, group.cells[bad])} have a Jacobian that is zero or negative",
-            file=mesh.source or None, expected="cells that are not inside out, folded or flat",
-            do="repair the mesh there; if every cell is listed, its node order is that of another convention",
-        )
-
-
-def _mixed_caution(parts: list[Part], has: Array) -> list[str]:
-    solid = np.zeros(len(has), bool)
-    for formulation, _, _, nodes in parts:
-        if not formulation.rotations:
-            solid[nodes] = True
-    shared = int((solid & has[:, 1]).sum())
-    if not shared:
-        return []
-    return [
-        f"shells meet solids at {shared} nodes: solids have no rotations, so that the joint can turn like a hinge "
-        "unless the shell lies on the solid's face"
-    ]
-
-
-def _side_caution(parts: list[Part]) -> list[str]:
-    """Sheets that lie off their nodes, or whose layers differ from side to side, must agree on which side is up."""
-    edges = []
-    for formulation, prop, _, nodes in parts:
-        kind = KINDS[formulation.kind]
-        if kind.dim == 2 and (prop.offset or prop.layers != prop.layers[::-1]):
-            edges += [nodes[:, [a, b]] for a, b, *_ in kind.edges]
-    if not edges:
-        return []
-    _, count = np.unique(np.concatenate(edges), axis=0, return_counts=True)
-    if not (count > 1).any():       # neighbours on the same side run through their common edge in opposite directions
-        return []
-    return [
-        f"shells with an offset or with unlike layers disagree at {int((count > 1).sum())} common edges: their "
-        "normals point to opposite sides (or more than two cells meet there); number the nodes of all cells the same "
-        "way round"
-    ]
 
 
 def _check_attached(layout: Layout, stiffness: sp.csr_array, mass: sp.csr_array) -> None:

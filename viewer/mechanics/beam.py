@@ -159,5 +159,8 @@ def _symmetric(matrix: Array) -> Array:
 
 BEAMS: tuple[BeamFormulation, ...] = (
     BeamFormulation("line2-timoshenko"),
-    BeamFormulation("line2-slender", slender=True),
+    BeamFormulation("line2-slender", slender=True, caution=(
+        "line2-slender leaves out shear and rotary inertia: frequencies of deep beams and of high modes come out "
+        "high; use line2-timoshenko"
+    )),
 )

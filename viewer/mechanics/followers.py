@@ -19,7 +19,7 @@ import scipy.sparse as sp
 from viewer.cells import KINDS, Places, nearest, outer_faces
 from viewer.errors import ModelError
 from viewer.mechanics.constraints import some_ids
-from viewer.mechanics.patch import cross_matrix
+from viewer.mechanics.patch import RigidPatch, cross_matrix
 from viewer.model.arrays import Array
 from viewer.model.design import DIRECTIONS, Design, Link, Tie
 
@@ -92,6 +92,34 @@ def add_link(rules: Rules, link: Link, design: Design) -> None:
     rules.statements.append(
         f"{what}: {len(followers)} nodes follow node {design.mesh.node_ids[leader]} rigidly"
     )
+
+
+def hold_loose_spins(rules: Rules, design: Design, turning: Array) -> None:
+    """A leader whose followers have no rotations and lie in a line with it could spin about that line without
+    stiffness or mass: that spin is zero. ``turning`` (n_nodes,): rotations that cells or springs resist."""
+    for link in design.physics.links:
+        leader, followers = link_nodes(link, design)
+        spin = rules.dof[leader, 3:]
+        given = [rules.dof[node, 3] >= 0 and turning[node] for node in (leader, *followers)]
+        if any(given) or any(int(number) in rules.owner for number in spin):
+            continue
+        patch = RigidPatch(design.mesh.points[np.append(followers, leader)])
+        if patch.rank == 6:
+            continue
+        what = f"link '{link.name}'"
+        loose = np.linalg.svd(patch.seen_axes)[0][:, patch.rank - 3 :] if patch.rank > 3 else np.eye(3)
+        if patch.rank == 3:
+            rules.claim(spin, what, design)
+        else:
+            axis = loose[:, 0]                        # axis · θ = 0, solved for its largest component
+            first = int(np.abs(axis).argmax())
+            others = [i for i in range(3) if i != first]
+            rules.claim(spin[[first]], what, design)
+            rules.add(spin[None, [first]], spin[None, others], (-axis[others] / axis[first])[None, None])
+        rules.cautions.append(
+            f"{what}: its nodes lie in a line or in one place and have no rotations of their own, so that nothing "
+            "resists its spin about them; that spin is held at zero"
+        )
 
 
 def add_tie(rules: Rules, tie: Tie, design: Design) -> None:
