@@ -79,7 +79,8 @@ def animate(
     from viewer.scene.compose import single_picture
 
     stated = {a.mode: a for a in amplitudes}
-    return Loop(single_picture(study(design, modes, stated, condition), mode, **options))
+    studied = study(design, modes, stated, condition, energy=options.get("energy", True))
+    return Loop(single_picture(studied, mode, **options))
 
 
 def still(design: Design, modes: ModeSet, mode: int, path: str | os.PathLike[str], **options: Any) -> Path:

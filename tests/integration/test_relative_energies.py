@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import csv
 import json
+import sys
 from functools import cache
 
 import numpy as np
@@ -152,6 +153,15 @@ def test_picture_and_tables_say_so():
     assert {(row["closure"], row["energies_trusted"], row["springs_strain_percent"]) for row in rows} == {(None,) * 3}
     assert RELATIVE in mode_caption(rows[0])
     assert all(row["energy_note"] == RELATIVE for row in group_rows(told))
+
+
+def test_energies_left_out_are_not_formed(monkeypatch):
+    _, modes, _ = solved("bracket")
+    module = sys.modules["viewer.workspace.study"]      # the package's own "study" is the function
+    monkeypatch.setattr(module, "relative_energies", lambda *_: pytest.fail("formed all the same"))
+    picture = viewer.animate(bare("bracket"), modes, 1, energy=False).picture
+    assert picture.energy_top is None
+    assert picture.energy_caution == ""
 
 
 def test_compared_with_a_body_of_known_material():

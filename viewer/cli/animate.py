@@ -74,7 +74,8 @@ def animate(
         "showing": Showing(tuple(hide or ()), tuple(only or ()), _plane(cut) if cut else None),
     }
     with progress_bar() as progress:
-        study = opened.study(first, None, progress)
+        # compared modes are sized by energies even where those are not shown
+        study = opened.study(first, None, progress, energy=bool(against) or not no_energy)
         if against:
             other, _, number = against.partition(":")
             second = opened.study(other, None, progress)

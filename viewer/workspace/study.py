@@ -124,11 +124,15 @@ def study(
     amplitudes: Mapping[int, StatedAmplitude] | None = None,
     condition: str = "",
     progress: Progress = SILENT,
+    *,
+    energy: bool = True,
 ) -> Study:
     """Form the energies of all modes; a design without materials is still studied, with relative energies where its
-    mesh allows them."""
+    mesh allows them. ``energy`` False forms none: for a large mesh most of the time goes into them."""
     found, whole, why = None, None, ""
-    if design.physics.matrices is not None:
+    if not energy:
+        why = "energies were not asked for"
+    elif design.physics.matrices is not None:
         whole, why = totals(design, modes, progress=progress), f"design '{design.name}': {NO_CELLS}"
     elif states_no_material(design):
         try:

@@ -116,11 +116,14 @@ class OpenDossier:
         design = self.design(name, progress)
         return self.workspace.modes(design, self.dossier.plan(name), count, progress)
 
-    def study(self, name: str, count: int | None = None, progress: Progress = SILENT) -> Study:
-        """The named design with modes, energies and stated sizes."""
+    def study(
+        self, name: str, count: int | None = None, progress: Progress = SILENT, *, energy: bool = True
+    ) -> Study:
+        """The named design with modes, energies (unless ``energy`` is False) and stated sizes."""
         design = self.design(name, progress)
         modes = self.modes(name, count, progress)
-        found = study(design, modes, self._amplitudes(name, modes), self.dossier.condition, progress)
+        amplitudes = self._amplitudes(name, modes)
+        found = study(design, modes, amplitudes, self.dossier.condition, progress, energy=energy)
         for number in found.amplitudes:      # a stated amplitude that cannot be used is said before anything is drawn
             try:
                 found.scale(number - 1)
