@@ -27,7 +27,8 @@ from viewer.loaders import write_interchange
 from viewer.mechanics.eigen import solve
 from viewer.mechanics.energy import RELATIVE, best_formulation, energies
 from viewer.model.design import Assignment, Design, Material, Physics
-from viewer.model.mesh import CellBlock
+from viewer.model.mesh import CellBlock, Mesh
+from viewer.model.modes import ArrayShapes, ModeSet
 from viewer.scene.compose import pair_picture, single_picture
 from viewer.workspace import better_formulation, study
 
@@ -119,6 +120,22 @@ def test_sheets_without_thickness_are_refused(kind):
     assert picture.energy_top is None
     half = Design("sheet", mesh, Physics(assignments=(Assignment("all", thickness=0.001),)))
     assert study(half, modes).relative
+
+
+@pytest.mark.parametrize(
+    ("blocks", "words"),
+    [
+        ((), "has no cells that could hold energy"),
+        ((CellBlock("vertex1", np.arange(4)[:, None], np.arange(1, 5)),), "has no cells that could hold energy"),
+        ((CellBlock("line2", np.array([[0, 1], [1, 2], [2, 3]]), np.arange(1, 4)),), "of beams need a section"),
+    ],
+)
+def test_geometry_of_a_hammer_test_is_refused(blocks, words):
+    mesh = Mesh(np.array([[0.0, 0, 0], [1, 0, 0], [2, 0, 0.1], [3, 0, 0]]), blocks, np.arange(1, 5))
+    shapes = ArrayShapes(np.random.default_rng(2).normal(size=(2, 4, 3)))
+    told = study(Design("points", mesh), ModeSet(mesh.node_ids, np.array([5.0, 9.0]), shapes, origin="measured"))
+    assert told.energies is None
+    assert words in told.no_energies
 
 
 def test_faces_that_only_name_places_need_no_thickness():

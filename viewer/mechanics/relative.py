@@ -36,8 +36,8 @@ def states_no_material(design: Design) -> bool:
 
 def assume_material(design: Design) -> Design:
     """The design made of one uniform material, with the thicknesses, sections and formulations it states, and
-    without springs, masses, supports, links and ties. Raises ``RefusedError`` for sheets without thickness and beams
-    without section."""
+    without springs, masses, supports, links and ties. Raises ``RefusedError`` for sheets without thickness, beams
+    without section and points without cells."""
     stated = tuple(replace(item, material=ASSUMED.name) for item in design.physics.assignments)
     everywhere = Assignment("*", ASSUMED.name)
     assumed = design.with_(physics=Physics({ASSUMED.name: ASSUMED}, (everywhere, *stated)))
@@ -68,6 +68,11 @@ def _shares(energy: Array) -> Array:
 def _check_sizes(design: Design) -> None:
     """Edges and faces all of whose nodes belong to cells that carry stiffness are only names of places."""
     mesh, (properties, index) = design.mesh, design.properties
+    if not any(KINDS[block.kind].dim and len(block) for block in mesh.blocks):
+        raise RefusedError(
+            f"design '{design.name}' has no cells that could hold energy", file=mesh.source or None,
+            do="give the mesh of the body with its cells",
+        )
     carried = np.zeros(mesh.n_nodes, bool)
     blocks = sorted(
         zip(mesh.blocks, mesh.block_starts[:-1], strict=True), key=lambda item: -KINDS[item[0].kind].dim
