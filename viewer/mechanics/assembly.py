@@ -152,9 +152,17 @@ class Layout:
     def has_rotations(self) -> bool:
         return bool((self.dof[:, 3:] >= 0).any())
 
+    @cached_property
+    def _plain(self) -> bool:
+        """Whether vectors are the nodes' translations in order, as in most solids: nothing to gather."""
+        first = self.dof[:, :3].ravel()
+        return len(first) == self.n_dof and np.array_equal(first, np.arange(self.n_dof))
+
     def gather(self, moved: Array, turned: Array | None = None) -> Array:
         """(…, n_dof) from nodal translations and rotations (…, n_nodes, 3); rotations None: zero."""
         moved = np.asarray(moved)
+        if self._plain:
+            return moved.reshape(*moved.shape[:-2], self.n_dof).astype(np.result_type(moved, float), copy=False)
         out = np.zeros((*moved.shape[:-2], self.n_dof), np.result_type(moved, float))
         for values, numbers in ((moved, self.dof[:, :3]), (turned, self.dof[:, 3:])):
             if values is not None:
