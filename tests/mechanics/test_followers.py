@@ -270,6 +270,22 @@ def test_shell_tied_to_a_solid_turns_with_it():
     follows_rigid_motions(assemble(free))
 
 
+@pytest.mark.parametrize(("first", "second"), [("quad4", "quad4"), ("quad4", "tri3"), ("quad8", "quad4")])
+def test_sheets_tied_edge_to_edge(first, second):
+    """Two halves of a cantilever sheet, unlike meshes, tied in translation and rotation along the common edge: the
+    frequencies of the whole sheet within 1.5 %."""
+    left = plate_mesh(first, (6, 5), (0.5, 0.4))
+    right = moved(plate_mesh(second, (8, 8), (0.5, 0.4)), [0.5, 0, 0])
+    mesh = joined(left, right)
+    tie = Tie("edge", Selector(group="1x0"), Selector(group="0"))
+    model = design(mesh, thickness=0.005, ties=(tie,), supports=(Support("root", Selector(group="0x0")),))
+    assert "9 of them in rotation too" in lay_out(model).statements[0]
+    assert lay_out(model).cautions == ()
+    whole = design(plate_mesh("quad4", (24, 12), (1.0, 0.4)), thickness=0.005, supports=(CLAMP,))
+    np.testing.assert_allclose(solve(model, 4).freq_hz, solve(whole, 4).freq_hz, rtol=0.015)
+    follows_rigid_motions(assemble(design(mesh, thickness=0.005, ties=(tie,))))
+
+
 def test_nodes_tied_off_a_shell_follow_its_rotation():
     plate = plate_mesh("quad4", (4, 4), (1.0, 1.0))
     point = with_reference_node(plate, [0.45, 0.55, 0.05])

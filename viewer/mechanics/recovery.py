@@ -164,7 +164,7 @@ class Rotations:
 
     def _deaf(self) -> Array:
         """(n_nodes,) True where some free rotation never answers, whatever translations are given."""
-        moved = np.random.default_rng(4).standard_normal((6, len(self.dof), 3))
+        moved = np.random.default_rng(4).standard_normal((4, len(self.dof), 3))
         vectors = self.complete(moved)
         free = np.isin(self.dof[:, 3:], self.rows)
         found = np.zeros(len(self.dof), bool)
