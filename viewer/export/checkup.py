@@ -80,10 +80,11 @@ def _check_design(opened: OpenDossier, name: str, progress: Progress) -> tuple[l
     has_material = bool(design.physics.assignments) and not states_no_material(design)
     if has_material:
         system = assemble(design, progress)
-        free = int((~system.held).sum())
+        free = len(system.free)
         ones = system.gather(np.tile([1.0, 0, 0], (design.mesh.n_nodes, 1)))
         mass = float(ones @ (system.M @ ones))
         statements.append(f"{name}: {system.n_dof} degrees of freedom, {free} free; mass {mass:.4g} kg")
+        statements += [f"{name}: {statement}" for statement in system.statements]
         cautions += [f"{name}: {caution}" for caution in system.cautions]
     if plan.modes_file is not None:
         modes = opened.modes(name, None, progress)
