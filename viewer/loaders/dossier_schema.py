@@ -29,6 +29,7 @@ turning springs N·m/rad::
     springs = [{name = "strap", group = "eye", stiffness = [100, 0, 0]}]
     masses = [{name = "camera", group = "pad", mass = 1.2, position = [0, 0, 500]}]
     links = [{name = "bracket", from = {near = [0, 0, 500]}, to = {group = "pad"}}]    # rigid; the one node leads
+    # (near and box find nodes of cells only: name a node of no cell by nodes = [id] or by its group)
     ties = [{name = "seam", nodes = {group = "edge"}, surface = {group = "block"}}]    # glued; reach = 2 if far off
     mode_names = {1 = "boom nods"}
     # instead of assign, matrices of another program (their numbers in the units of stiffness and mass above), which
