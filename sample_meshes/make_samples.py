@@ -20,7 +20,7 @@ from viewer.model.mesh import CellBlock, Mesh
 
 Floats = NDArray[np.float64]
 Bools = NDArray[np.bool_]
-NANOMETRE = 9                  # decimals of a metre
+NANOMETRE = 9  # decimals of a metre
 
 # ---------------------------------------------------------------------------------------------------- grids
 
@@ -55,14 +55,15 @@ class Plane:
 
     def __init__(self, x: Floats, s: Floats) -> None:
         self.lines = x, s
-        self.at = np.stack(np.meshgrid(x, s, indexing="ij"), axis=-1)      # (nx, ns, 2)
-        self.keep = np.ones((len(x) - 1, len(s) - 1), bool)                # cells that remain
+        self.at = np.stack(np.meshgrid(x, s, indexing="ij"), axis=-1)  # (nx, ns, 2)
+        self.keep = np.ones((len(x) - 1, len(s) - 1), bool)  # cells that remain
         self._pinned = np.zeros(self.at.shape[:2], bool)
         self._moved = np.zeros_like(self.at)
         self._free = np.zeros(self.at.shape[:2], bool)
 
-    def cut(self, x0: float, x1: float, s0: float, s1: float, radius: float, to: tuple[float, ...] = (),
-            reach: int = 5) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+    def cut(
+        self, x0: float, x1: float, s0: float, s1: float, radius: float, to: tuple[float, ...] = (), reach: int = 5
+    ) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
         """Remove the cells between the lines x0, x1, s0, s1 and round the corners of the hole.
 
         Returns the indices of its edge, once around and closed.
@@ -83,8 +84,13 @@ class Plane:
         self._pinned[i0 : i1 + 1, j0 : j1 + 1] = True
         self._free[max(i0 - reach, 1) : i1 + reach + 1, max(j0 - reach, 0) : j1 + reach + 1] = True
         i, j = np.arange(i0, i1 + 1), np.arange(j0, j1 + 1)
-        sides = [(i[:-1], 0 * i[:-1] + j0), (0 * j[:-1] + i1, j[:-1]), (i[:0:-1], 0 * i[1:] + j1),
-                 (0 * j[1:] + i0, j[:0:-1]), (i[:1], j[:1])]
+        sides = [
+            (i[:-1], 0 * i[:-1] + j0),
+            (0 * j[:-1] + i1, j[:-1]),
+            (i[:0:-1], 0 * i[1:] + j1),
+            (0 * j[1:] + i0, j[:0:-1]),
+            (i[:1], j[:1]),
+        ]
         return np.concatenate([s[0] for s in sides]), np.concatenate([s[1] for s in sides])
 
     def settle(self, fixed: Bools, sweeps: int = 400) -> None:
@@ -106,7 +112,7 @@ def rounded(points: Floats, low: Floats, high: Floats, radius: float) -> Floats:
     along = inward.max(axis=1)
     near = along < radius * (1 - 1e-9)
     turn = np.pi / 4 * (1 - along[near] / radius)
-    on_first = inward[near, 1] > inward[near, 0]                             # on a side of constant x
+    on_first = inward[near, 1] > inward[near, 0]  # on a side of constant x
     steep, flat = radius * (1 - np.cos(turn)), radius * (1 - np.sin(turn))
     local = np.where(on_first[:, None], np.stack([steep, flat], 1), np.stack([flat, steep], 1))
     out = points.copy()
@@ -157,22 +163,32 @@ def weld(points: Floats, cells: NDArray[np.int64]) -> tuple[Floats, NDArray[np.i
     return points[used], np.searchsorted(used, cells)
 
 
-def finish(kind: str, points: Floats, cells: NDArray[np.int64], cell_groups: dict[str, NDArray[np.int64]],
-           node_groups: dict[str, Callable[[Floats], Bools]], source: str) -> Mesh:
-    points = np.round(points, NANOMETRE) + 0.0     # + 0.0: no negative zeros
+def finish(
+    kind: str,
+    points: Floats,
+    cells: NDArray[np.int64],
+    cell_groups: dict[str, NDArray[np.int64]],
+    node_groups: dict[str, Callable[[Floats], Bools]],
+    source: str,
+) -> Mesh:
+    points = np.round(points, NANOMETRE) + 0.0  # + 0.0: no negative zeros
     return Mesh(
-        points, (CellBlock(kind, cells, np.arange(1, len(cells) + 1)),), np.arange(1, len(points) + 1),
-        {name: np.nonzero(chosen(points))[0] for name, chosen in node_groups.items()}, cell_groups, source,
+        points,
+        (CellBlock(kind, cells, np.arange(1, len(cells) + 1)),),
+        np.arange(1, len(points) + 1),
+        {name: np.nonzero(chosen(points))[0] for name, chosen in node_groups.items()},
+        cell_groups,
+        source,
     )
 
 
 # ------------------------------------------------------------------------------------------------------- boom
 
-LENGTH, WIDTH, DEPTH, BEND = 0.90, 0.16, 0.10, 0.008   # boom: along x, across y, down −z, bend radius
-WINDOW, WINDOW_CORNER = (0.11, 0.26), 0.020            # the cable window, along x, and its corner radius
-FLOOR, SEAT = (0.0, 0.58), (0.58, 0.73)                # plates that close the section from below; the camera's last
-SLITS, SLIT = (0.752, 0.866), 0.008                    # centres and width of the slits in the right flange
-SLIT_TOP = 0.028                                       # distance of their ends from the fold
+LENGTH, WIDTH, DEPTH, BEND = 0.90, 0.16, 0.10, 0.008  # boom: along x, across y, down −z, bend radius
+WINDOW, WINDOW_CORNER = (0.11, 0.26), 0.020  # the cable window, along x, and its corner radius
+FLOOR, SEAT = (0.0, 0.58), (0.58, 0.73)  # plates that close the section from below; the camera's last
+SLITS, SLIT = (0.752, 0.866), 0.008  # centres and width of the slits in the right flange
+SLIT_TOP = 0.028  # distance of their ends from the fold
 
 
 def folded(x: Floats, s: Floats) -> Floats:
@@ -190,18 +206,32 @@ def boom(window_half_width: float, lip: float = 0.0) -> Mesh:
     half, arc = WIDTH / 2 - BEND, BEND * np.pi / 2
     edge = half + arc + DEPTH - BEND
     slit_end = half + arc + SLIT_TOP
-    grid_half = 0.055                                 # the lines from which the window is cut
+    grid_half = 0.055  # the lines from which the window is cut
     sides = [side for centre in SLITS for side in (centre - SLIT / 2, centre, centre + SLIT / 2)]
     x = divide([FLOOR[0], *WINDOW, *SEAT, *sides, LENGTH], [0.01, 0.008, 0.008, 0.01, 0.01, *[0.004] * 6, 0.01, 0.01])
-    right = divide([0, grid_half, half, half + arc, slit_end, slit_end + SLIT / 2, edge],
-                   [0.0095, 0.0085, 0.008, 0.004, 0.005, 0.004, 0.0095, 0.0095])
+    right = divide(
+        [0, grid_half, half, half + arc, slit_end, slit_end + SLIT / 2, edge],
+        [0.0095, 0.0085, 0.008, 0.004, 0.005, 0.004, 0.0095, 0.0095],
+    )
     s = np.concatenate([-right[:0:-1], right])
     plane = Plane(x, s)
-    around = plane.cut(*WINDOW, -grid_half, grid_half, WINDOW_CORNER,
-                       to=(WINDOW[0], -window_half_width, WINDOW[1], window_half_width))
-    for centre in SLITS:                              # a slit is open at the sheet's edge: its far corners stay sharp
-        plane.cut(centre - SLIT / 2, centre + SLIT / 2, -edge, -slit_end, SLIT / 2,
-                  to=(centre - SLIT / 2, -edge, centre + SLIT / 2, -slit_end), reach=3)
+    around = plane.cut(
+        *WINDOW,
+        -grid_half,
+        grid_half,
+        WINDOW_CORNER,
+        to=(WINDOW[0], -window_half_width, WINDOW[1], window_half_width),
+    )
+    for centre in SLITS:  # a slit is open at the sheet's edge: its far corners stay sharp
+        plane.cut(
+            centre - SLIT / 2,
+            centre + SLIT / 2,
+            -edge,
+            -slit_end,
+            SLIT / 2,
+            to=(centre - SLIT / 2, -edge, centre + SLIT / 2, -slit_end),
+            reach=3,
+        )
     plane.settle(fixed=np.broadcast_to(np.abs(np.abs(s) - half - arc / 2) < arc / 2 + 1e-9, (len(x), len(s))))
 
     middle = np.stack(np.meshgrid((x[1:] + x[:-1]) / 2, (s[1:] + s[:-1]) / 2, indexing="ij"), -1)
@@ -219,9 +249,7 @@ def boom(window_half_width: float, lip: float = 0.0) -> Mesh:
         rim = folded(plane.at[around][:, 0], plane.at[around][:, 1])
         up = np.array([0, 0, 1.0]) * np.linspace(0, lip, 3)[:, None]
         parts.add(rim[:, None] + up[None], "lip")
-    return parts.mesh(
-        {"root": lambda p: p[:, 0] < 1e-9, "tip": lambda p: p[:, 0] > LENGTH - 1e-9}, "invented boom"
-    )
+    return parts.mesh({"root": lambda p: p[:, 0] < 1e-9, "tip": lambda p: p[:, 0] > LENGTH - 1e-9}, "invented boom")
 
 
 def nose(rim: Floats, across: Floats) -> Floats:
@@ -234,14 +262,15 @@ def nose(rim: Floats, across: Floats) -> Floats:
     v = ((left[:, 2] + DEPTH) / (left[-1, 2] + DEPTH))[None, :, None]
     sides = (1 - u) * left[None] + u * right[None]
     ends = (1 - v) * bottom[:, None] + v * top[:, None]
-    corners = ((1 - u) * (1 - v) * bottom[0] + u * (1 - v) * bottom[-1] + (1 - u) * v * top[0] + u * v * top[-1])
+    corners = (1 - u) * (1 - v) * bottom[0] + u * (1 - v) * bottom[-1] + (1 - u) * v * top[0] + u * v * top[-1]
     plate = sides + ends - corners
-    for _ in range(30):                               # evens out the cells that the bends squeeze
+    for _ in range(30):  # evens out the cells that the bends squeeze
         plate[1:-1, 1:-1] = (plate[2:, 1:-1] + plate[:-2, 1:-1] + plate[1:-1, 2:] + plate[1:-1, :-2]) / 4
     return plate
 
 
 # ------------------------------------------------------------------------------------------------------- fork
+
 
 def fork() -> Mesh:
     """A two-tine carrier fork: a bar bent to a U, tines along x and tapering, a stem behind the crossbar's middle,
@@ -251,25 +280,32 @@ def fork() -> Mesh:
     n_thick, n_tall, n_stem, n_wide = 3, 3, 8, 4
     straight, arc = reach - bend - thick / 2, bend * np.pi / 2
     ends = np.concatenate([[0], np.cumsum([straight, arc, gap - 2 * bend, arc, straight])])
-    station = np.concatenate([
-        np.linspace(start, end, 2 * n + 1)[bool(start):]
-        for start, end, n in zip(ends, ends[1:], counts.values(), strict=False)
-    ])
+    station = np.concatenate(
+        [
+            np.linspace(start, end, 2 * n + 1)[bool(start) :]
+            for start, end, n in zip(ends, ends[1:], counts.values(), strict=False)
+        ]
+    )
     across, up = np.linspace(-1, 1, 2 * n_thick + 1) * thick / 2, np.linspace(-1, 1, 2 * n_tall + 1) * tall / 2
     centre, normal = _u_path(station, straight, bend, gap)
     taper = 1 - 0.35 * np.clip((centre[:, 0] - bend) / straight, 0, 1)
     flat = centre[:, None] + normal[:, None] * across[None, :, None] * taper[:, None, None]
-    bar = np.concatenate([
-        np.broadcast_to(flat[:, :, None], (*flat.shape[:2], len(up), 2)),
-        np.broadcast_to(up[None, None, :, None], (*flat.shape[:2], len(up), 1)),
-    ], axis=-1)
+    bar = np.concatenate(
+        [
+            np.broadcast_to(flat[:, :, None], (*flat.shape[:2], len(up), 2)),
+            np.broadcast_to(up[None, None, :, None], (*flat.shape[:2], len(up), 1)),
+        ],
+        axis=-1,
+    )
     middle = len(station) // 2
-    face = bar[middle - n_wide : middle + n_wide + 1, -1]              # outer side of the crossbar
+    face = bar[middle - n_wide : middle + n_wide + 1, -1]  # outer side of the crossbar
     behind = np.linspace(0, stem, 2 * n_stem + 1)
     back = face[:, None] - behind[None, :, None, None] * np.array([1.0, 0, 0])
     cells = [_hex20(*(np.array(grid.shape[:3]) - 1) // 2) for grid in (bar, back)]
-    points, nodes = weld(np.concatenate([bar.reshape(-1, 3), back.reshape(-1, 3)]),
-                         np.concatenate([cells[0], cells[1] + bar[..., 0].size]))
+    points, nodes = weld(
+        np.concatenate([bar.reshape(-1, 3), back.reshape(-1, 3)]),
+        np.concatenate([cells[0], cells[1] + bar[..., 0].size]),
+    )
     names = np.repeat([*counts, "stem"], [*(n * n_thick * n_tall for n in counts.values()), len(cells[1])])
     groups = {name: np.nonzero(names == name)[0] for name in (*counts, "stem")}
     root = lambda p: p[:, 0] < -thick / 2 - stem + 1e-9  # noqa: E731
@@ -280,7 +316,7 @@ def _u_path(station: Floats, straight: float, bend: float, gap: float) -> tuple[
     """Centre line of the U and its outward normal, by station from the left tip (y > 0) to the right tip."""
     arc, bar = bend * np.pi / 2, gap - 2 * bend
     half = straight + arc + bar / 2
-    d = half - np.abs(station - half)                        # distance from the nearer tip
+    d = half - np.abs(station - half)  # distance from the nearer tip
     turn = np.clip((d - straight) / bend, 0, np.pi / 2)
     x = bend + np.clip(straight - d, 0, None) - bend * np.sin(turn)
     y = gap / 2 - bend + bend * np.cos(turn) - np.clip(d - straight - arc, 0, None)
@@ -300,12 +336,13 @@ def _hex20(na: int, nb: int, nc: int) -> NDArray[np.int64]:
 
 # ----------------------------------------------------------------------------------------------------- trough
 
+
 def trough(straps: bool) -> Mesh:
     """An open cable trough, 1.5 m long, U section with bends; with flat strips laced across the open top."""
     length, width, depth, bend = 1.5, 0.15, 0.06, 0.006
     half, arc = width / 2 - bend, bend * np.pi / 2
     edge = half + arc + depth - bend
-    count, slant, strap = 8, 9, 3                        # straps; grid lines that one gains on its way, and is wide
+    count, slant, strap = 8, 9, 3  # straps; grid lines that one gains on its way, and is wide
     x = np.linspace(0, length, count * (slant + strap) + 1)
     right = divide([0, half, half + arc, edge], [0.0135, 0.0065, 0.0065, 0.0135, 0.0135], growth=1)
     s = np.concatenate([-right[:0:-1], right])
@@ -318,7 +355,7 @@ def trough(straps: bool) -> Mesh:
     side = (s[1:] + s[:-1]) / 2
     parts = Sheets()
     parts.add(points, np.where(side > half, "wall_left", np.where(side < -half, "wall_right", "floor"))[None])
-    if straps:                                           # flat strips, slanting to and fro from rim to rim
+    if straps:  # flat strips, slanting to and fro from rim to rim
         across = np.linspace(0, 1, 13)[None, :, None]
         for number in range(count):
             start = number * (slant + strap)

@@ -16,8 +16,10 @@ from viewer.model.modes import ArrayShapes, ModeSet
 
 _MESHES = {"hex8": skfem.MeshHex1, "tet4": skfem.MeshTet1}
 _ELEMENTS = {
-    ("hex8", 1): skfem.ElementHex1, ("hex8", 2): skfem.ElementHex2,
-    ("tet4", 1): skfem.ElementTetP1, ("tet4", 2): skfem.ElementTetP2,
+    ("hex8", 1): skfem.ElementHex1,
+    ("hex8", 2): skfem.ElementHex2,
+    ("tet4", 1): skfem.ElementTetP1,
+    ("tet4", 2): skfem.ElementTetP2,
 }
 
 

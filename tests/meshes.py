@@ -76,8 +76,11 @@ def _structured(kind: str, counts: tuple[int, ...], size: np.ndarray, distort: f
         for end, value in enumerate((0.0, size[axis])):
             groups[f"{name}{end}"] = np.nonzero(np.abs(points[:, axis] - value) < 1e-9 * size[axis])[0]
     return Mesh(
-        np.pad(points, ((0, 0), (0, 3 - dim))), (CellBlock(kind, nodes, np.arange(1, len(nodes) + 1)),),
-        node_ids=np.arange(1, len(points) + 1), node_groups=groups, cell_groups={"all": np.arange(len(nodes))},
+        np.pad(points, ((0, 0), (0, 3 - dim))),
+        (CellBlock(kind, nodes, np.arange(1, len(nodes) + 1)),),
+        node_ids=np.arange(1, len(points) + 1),
+        node_groups=groups,
+        cell_groups={"all": np.arange(len(nodes))},
         source=f"box of {kind}",
     )
 
@@ -112,6 +115,9 @@ def line_mesh(points, pairs=None) -> Mesh:
     points = np.asarray(points, float)
     nodes = np.stack([np.arange(len(points) - 1), np.arange(1, len(points))], axis=1) if pairs is None else pairs
     return Mesh(
-        points, (CellBlock("line2", nodes, np.arange(1, len(nodes) + 1)),), np.arange(1, len(points) + 1),
-        node_groups={"x0": np.array([0]), "x1": np.array([len(points) - 1])}, source="lines",
+        points,
+        (CellBlock("line2", nodes, np.arange(1, len(nodes) + 1)),),
+        np.arange(1, len(points) + 1),
+        node_groups={"x0": np.array([0]), "x1": np.array([len(points) - 1])},
+        source="lines",
     )

@@ -59,7 +59,9 @@ class Loop:
         if target.suffix.lower() == ".png":
             return save_png(self.picture, target, phase, progress)
         raise InputError(
-            "cannot tell what to draw", file=target, found=f"the ending '{target.suffix}'",
+            "cannot tell what to draw",
+            file=target,
+            found=f"the ending '{target.suffix}'",
             expected=".gif, .mp4 or .png",
         )
 

@@ -19,7 +19,7 @@ from typing import Any
 
 import numpy as np
 
-GOAL = 3.0      # GB above the size of the file
+GOAL = 3.0  # GB above the size of the file
 COUNT = 3
 
 
@@ -64,14 +64,15 @@ def held(word: str) -> float:
 
 def stage(name: str, size: float, work: Callable[[], Any]) -> tuple[Any, bool]:
     """Run one stage; its result, and whether it kept to the goal."""
-    Path("/proc/self/clear_refs").write_text("5")       # forgets the peak so far
+    Path("/proc/self/clear_refs").write_text("5")  # forgets the peak so far
     start = time.perf_counter()
     result = work()
     seconds, peak = time.perf_counter() - start, held("VmHWM")
     good = peak - size <= GOAL
     print(
         f"{name:9} {seconds:8.1f} s   peak {peak:5.2f} GB, {peak - size:5.2f} GB above the file, "
-        f"kept {held('VmRSS'):5.2f} GB   {'' if good else 'ABOVE THE GOAL'}", flush=True,
+        f"kept {held('VmRSS'):5.2f} GB   {'' if good else 'ABOVE THE GOAL'}",
+        flush=True,
     )
     return result, good
 

@@ -30,10 +30,12 @@ GOAL, MODES, ROUNDS = 0.1, 20, 5
 def shapes(mesh) -> ModeSet:
     """Smooth shapes that stand for modes, at 0 Hz: the residual of imported modes is not part of the comparison."""
     x, y, z = (mesh.points / mesh.points.max(axis=0)).T
-    moved = np.stack([
-        np.stack([np.sin((j + 1) * x) * y, np.cos(j * y) * z * x, np.sin(j * z + x) * x], axis=1)
-        for j in range(MODES)
-    ])
+    moved = np.stack(
+        [
+            np.stack([np.sin((j + 1) * x) * y, np.cos(j * y) * z * x, np.sin(j * z + x) * x], axis=1)
+            for j in range(MODES)
+        ]
+    )
     return ModeSet(mesh.node_ids, np.zeros(MODES), ArrayShapes(moved))
 
 
@@ -69,8 +71,10 @@ def against_skfem(counts: tuple[int, ...]) -> bool:
     off = np.abs(np.stack(strain) - found.strain).max() / found.strain.max()
     each = ", ".join(f"{a:.2f}/{b:.2f}" for a, b in zip(ours, theirs, strict=True))
     ratio = float(np.median(np.divide(ours, theirs)))
-    print(f"{mesh.n_cells} hex8, {MODES} modes: ours/scikit-fem by turns {each} s, median ratio {ratio:.3f} "
-          f"(goal {GOAL}), largest difference {off:.1e}")
+    print(
+        f"{mesh.n_cells} hex8, {MODES} modes: ours/scikit-fem by turns {each} s, median ratio {ratio:.3f} "
+        f"(goal {GOAL}), largest difference {off:.1e}"
+    )
     return ratio <= GOAL
 
 
@@ -81,8 +85,10 @@ def million() -> bool:
     start = time.process_time()
     energies(model, modes)
     peak = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1e6
-    print(f"{mesh.n_cells} hex8, {MODES} modes: {time.process_time() - start:.1f} s, peak {peak:.1f} GB "
-          f"({before:.1f} GB before, mesh and shapes {MODES * mesh.n_nodes * 24 / 1e9:.1f} GB of it)")
+    print(
+        f"{mesh.n_cells} hex8, {MODES} modes: {time.process_time() - start:.1f} s, peak {peak:.1f} GB "
+        f"({before:.1f} GB before, mesh and shapes {MODES * mesh.n_nodes * 24 / 1e9:.1f} GB of it)"
+    )
     return True
 
 

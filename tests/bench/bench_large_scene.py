@@ -28,7 +28,7 @@ from viewer.scene.showing import Showing
 from viewer.scene.surface import drawn_areas, surface_of
 
 STEEPEST = 1.25
-LEAST = 0.2                # s: shorter steps say nothing about growth
+LEAST = 0.2  # s: shorter steps say nothing about growth
 
 
 def model(n: int) -> Body:
@@ -92,7 +92,9 @@ def main(n: int = 100) -> int:
 
 def _apart(n: int) -> dict[str, tuple[float, float, float]]:
     run = subprocess.run(
-        [sys.executable, "-m", "tests.bench.bench_large_scene", "--steps", str(n)], capture_output=True, text=True,
+        [sys.executable, "-m", "tests.bench.bench_large_scene", "--steps", str(n)],
+        capture_output=True,
+        text=True,
         check=True,
     )
     return json.loads(run.stdout)

@@ -23,8 +23,15 @@ from viewer.cells import measures as measures_of
 
 ALL = pytest.mark.parametrize("kind", KINDS.values(), ids=KINDS.keys())
 SOLIDS = pytest.mark.parametrize("kind", [k for k in KINDS.values() if k.dim == 3], ids=lambda k: k.name)
-LINEAR = {"line": "line2", "tri": "tri3", "quad": "quad4", "tet": "tet4", "pyramid": "pyramid5", "wedge": "wedge6",
-          "hex": "hex8"}
+LINEAR = {
+    "line": "line2",
+    "tri": "tri3",
+    "quad": "quad4",
+    "tet": "tet4",
+    "pyramid": "pyramid5",
+    "wedge": "wedge6",
+    "hex": "hex8",
+}
 
 
 def inside(kind, count=20, seed=1):
@@ -130,7 +137,7 @@ def exact(family, powers):
         return simplex(powers)
     if family == "wedge":
         return simplex(powers[:2]) * line(powers[2])
-    if family == "pyramid":                     # x and y range over ±(1 − z): a beta function is left over z
+    if family == "pyramid":  # x and y range over ±(1 − z): a beta function is left over z
         a, b, c = powers
         return line(a) * line(b) * math.gamma(c + 1) * math.gamma(a + b + 3) / math.gamma(a + b + c + 4)
     return math.prod(map(line, powers))
@@ -178,7 +185,14 @@ def test_triangles_fill_the_surface_and_use_every_node(kind):
 
 
 REFERENCE_SIZE = {
-    "vertex": 0, "line": 2, "tri": 1 / 2, "quad": 4, "tet": 1 / 6, "pyramid": 4 / 3, "wedge": 1, "hex": 8,
+    "vertex": 0,
+    "line": 2,
+    "tri": 1 / 2,
+    "quad": 4,
+    "tet": 1 / 6,
+    "pyramid": 4 / 3,
+    "wedge": 1,
+    "hex": 8,
 }
 
 
@@ -209,7 +223,7 @@ def test_measure_agrees_with_vtk(name):
     kind = KINDS[name]
     points, ids, data = vtk.vtkPoints(), vtk.vtkIdList(), vtk.vtkUnstructuredGrid()
     points.SetDataTypeToDouble()
-    xyz = in_space(kind) @ np.array([[2.0, 0.3, 0.1], [0.2, 1.5, -0.4], [0.0, 0.5, 1.1]])      # faces stay flat
+    xyz = in_space(kind) @ np.array([[2.0, 0.3, 0.1], [0.2, 1.5, -0.4], [0.0, 0.5, 1.1]])  # faces stay flat
     for row in xyz[0]:
         ids.InsertNextId(points.InsertNextPoint(row))
     data.SetPoints(points)
@@ -231,7 +245,7 @@ def test_curved_line_and_surface():
     wanted = math.sqrt(5) / 2 + math.asinh(2) / 4
     np.testing.assert_allclose(measures_of("line3", line), [wanted], rtol=2e-4)
     bent = in_space(KINDS["quad9"]).copy()
-    bent[0, :, 2] = bent[0, :, 0] ** 2                  # z = x² over [−1, 1]², width 2
+    bent[0, :, 2] = bent[0, :, 0] ** 2  # z = x² over [−1, 1]², width 2
     np.testing.assert_allclose(measures_of("quad9", bent), [4 * wanted], rtol=2e-2)
 
 
@@ -261,7 +275,7 @@ def test_both_windings_of_the_wedge():
 def test_collapsed_and_folded_cells_are_named():
     cube = in_space(KINDS["hex8"])[0]
     flat, folded = cube * [1, 1, 0], cube.copy()
-    folded[6] = [-0.9, -0.9, 0.5]                       # one corner pushed through: positive volume, folded inside
+    folded[6] = [-0.9, -0.9, 0.5]  # one corner pushed through: positive volume, folded inside
     assert list(inverted("hex8", np.stack([cube, flat, folded]))) == [1, 2]
     assert measures_of("hex8", folded[None])[0] > 0
 

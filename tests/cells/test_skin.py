@@ -52,7 +52,7 @@ def test_surface_cells_are_all_there(kind):
 def test_outline_of_one_quadratic_brick():
     nodes = np.arange(20)[None]
     found = skin([("hex20", nodes)])
-    assert len(found.outline) == 24                      # 12 edges in two halves
+    assert len(found.outline) == 24  # 12 edges in two halves
     assert {frozenset(p) for p in found.outline.tolist()} == {
         frozenset(p) for a, b, mid in KINDS["hex20"].edges for p in ((a, mid), (mid, b))
     }
@@ -72,10 +72,12 @@ def test_faces_shared_across_kinds_and_degrees():
     upper = (KINDS["hex20"].reference + 1) / 2 + [0, 0, 1]
     points = np.vstack([cube, upper, [[2, 0, 0], [2, 0, 1], [0.5, 0.5, -1]]])
     brick, wedge, apex = list(range(8)), 28, 30
-    top = [4, 5, 6, 7, *range(12, 28)]                   # shares its lower corners with the brick
+    top = [4, 5, 6, 7, *range(12, 28)]  # shares its lower corners with the brick
     blocks = [
-        ("hex8", np.array([brick])), ("hex20", np.array([top])),
-        ("wedge6", np.array([[1, wedge, 2, 5, wedge + 1, 6]])), ("pyramid5", np.array([[0, 3, 2, 1, apex]])),
+        ("hex8", np.array([brick])),
+        ("hex20", np.array([top])),
+        ("wedge6", np.array([[1, wedge, 2, 5, wedge + 1, 6]])),
+        ("pyramid5", np.array([[0, 3, 2, 1, apex]])),
     ]
     found = skin(blocks)
     per_cell = [len(np.unique(found.face[found.cell == c])) for c in range(4)]

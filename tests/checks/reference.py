@@ -50,7 +50,7 @@ class Row:
 
 
 def _repeated(item: str) -> tuple[float, ...]:
-    """"flex 42.650 x2" -> (42.65, 42.65); words are skipped, numbers separated by blanks or commas are kept."""
+    """ "flex 42.650 x2" -> (42.65, 42.65); words are skipped, numbers separated by blanks or commas are kept."""
     found: list[float] = []
     for word in re.split(r"[\s,]+", item.strip()):
         times = re.fullmatch(r"x(\d+)", word)
@@ -67,8 +67,15 @@ def rows() -> dict[str, Row]:
     with CSV.open(newline="", encoding="utf-8") as file:
         return {
             line["id"]: Row(
-                line["id"], line["topic"], line["quantity"], line["inputs"], line["value"], line["unit"],
-                tuple(float(number) for number in line["rel_tol"].split(";")), line["source"], line["status"],
+                line["id"],
+                line["topic"],
+                line["quantity"],
+                line["inputs"],
+                line["value"],
+                line["unit"],
+                tuple(float(number) for number in line["rel_tol"].split(";")),
+                line["source"],
+                line["status"],
             )
             for line in csv.DictReader(file)
         }

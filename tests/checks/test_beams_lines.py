@@ -48,8 +48,11 @@ def beam(cells: int, section: Section = THIN, formulation: str = "", plane: bool
     if plane:
         within = Support("plane", Selector(nodes=mesh.node_ids), ("uz", "rx", "ry"))
         physics["supports"] = (*physics.get("supports", ()), within)
-    return Design("beam", mesh, Physics(
-        {"steel": STEEL}, (Assignment("*", "steel", None, formulation, section, (0, 0, 1)),), **physics))
+    return Design(
+        "beam",
+        mesh,
+        Physics({"steel": STEEL}, (Assignment("*", "steel", None, formulation, section, (0, 0, 1)),), **physics),
+    )
 
 
 def beta(cells: int, count: int, section: Section = THIN, formulation: str = SLENDER, **physics) -> np.ndarray:
@@ -60,9 +63,9 @@ def beta(cells: int, count: int, section: Section = THIN, formulation: str = SLE
     return LENGTH * np.sqrt(omega / np.sqrt(200e9 * side**2 / 12 / 8000))
 
 
-FOURTH = (3.7, 4.3)         # Euler and Bernoulli's beam with consistent mass
+FOURTH = (3.7, 4.3)  # Euler and Bernoulli's beam with consistent mass
 SECOND = (1.9, 2.1)
-MIXED = (1.9, 4.3)          # slender bars with shear: the fourth order fades into a small term of the second
+MIXED = (1.9, 4.3)  # slender bars with shear: the fourth order fades into a small term of the second
 
 
 def check(values, expected, tolerance, rates, sizes=(12, 24, 48)):
@@ -113,33 +116,49 @@ def test_tip_spring_b26(case):
 def test_timoshenko_pinned_b10():
     """Tolerance of the row, 1e-4, kept."""
     ends = (PIN, ROLLER)
-    check(lambda n: solve(beam(n, deep(5 / 6), plane=True, supports=ends), 4).freq_hz[[0, 2, 3]],
-          row("B10").values, row("B10").tolerances[0], SECOND)
+    check(
+        lambda n: solve(beam(n, deep(5 / 6), plane=True, supports=ends), 4).freq_hz[[0, 2, 3]],
+        row("B10").values,
+        row("B10").tolerances[0],
+        SECOND,
+    )
 
 
 def test_euler_bernoulli_b12():
-    check(lambda n: solve(beam(n, DEEP, SLENDER, True, supports=(PIN, ROLLER)), 5).freq_hz[[0, 2, 4]],
-          row("B12").values, 2e-5, FOURTH, (8, 16, 32))
+    check(
+        lambda n: solve(beam(n, DEEP, SLENDER, True, supports=(PIN, ROLLER)), 5).freq_hz[[0, 2, 4]],
+        row("B12").values,
+        2e-5,
+        FOURTH,
+        (8, 16, 32),
+    )
 
 
 def test_timoshenko_clamped_b13():
     """L/h = 5; bending one way, and stretching (far above mode 3 at ω√(E/ρ)…) told apart by its motion."""
+
     def values(n: int) -> np.ndarray:
         modes = solve(beam(n, deep(5 / 6), plane=True, supports=(CLAMPED,)), 7)
         moved = np.abs(modes.shapes.moved).max(axis=1)
         bending = modes.freq_hz[moved[:, 1] > moved[:, 0]][:4]
         return 2 * np.pi * bending * LENGTH**2 * np.sqrt(8000 * 4 / (200e9 * 16 / 12))
+
     check(values, row("B13").values, row("B13").tolerances[0], SECOND)
 
 
-@pytest.mark.parametrize(("name", "directions"), [
-    ("B17", ("uy", "uz", "rx", "ry", "rz")), ("B18", ("ux", "uy", "uz", "ry", "rz")),
-])
+@pytest.mark.parametrize(
+    ("name", "directions"),
+    [
+        ("B17", ("uy", "uz", "rx", "ry", "rz")),
+        ("B18", ("ux", "uy", "uz", "ry", "rz")),
+    ],
+)
 def test_rod_and_shaft(name, directions):
     def values(n: int) -> np.ndarray:
         mesh = line_mesh(np.outer(np.linspace(0, LENGTH, n + 1), [1, 0, 0]))
         guide = Support("guide", Selector(nodes=mesh.node_ids), directions)
         return solve(beam(n, DEEP, supports=(CLAMPED, guide)), 3).freq_hz
+
     check(values, row(name).values, 1e-5, SECOND, (16, 32, 64))
 
 
@@ -154,11 +173,18 @@ def double_cross(cells: int, formulation: str) -> Design:
     mesh = line_mesh(points, np.array(pairs))
     ends = np.isclose(np.linalg.norm(mesh.points, axis=1), 5.0)
     section = Section("rectangle", width=0.125, height=0.125)
-    return Design("cross", mesh, Physics(
-        {"steel": STEEL}, (Assignment("*", "steel", None, formulation, section, (0, 0, 1)),), supports=(
-            Support("pins", Selector(nodes=mesh.node_ids[ends]), ("ux", "uy")),
-            Support("plane", Selector(nodes=mesh.node_ids), ("uz", "rx", "ry")),
-        )))
+    return Design(
+        "cross",
+        mesh,
+        Physics(
+            {"steel": STEEL},
+            (Assignment("*", "steel", None, formulation, section, (0, 0, 1)),),
+            supports=(
+                Support("pins", Selector(nodes=mesh.node_ids[ends]), ("ux", "uy")),
+                Support("plane", Selector(nodes=mesh.node_ids), ("uz", "rx", "ry")),
+            ),
+        ),
+    )
 
 
 def test_double_cross_n01():
@@ -176,6 +202,7 @@ def test_double_cross_n01():
 def test_off_centre_masses_n02(formulation, count):
     """The arms are rigid links from the tip to the two masses. The row's modes 5 and 6 belong to a beam without
     shear; with it they are 0.6 % and 1.0 % lower (the solids of test_nafems.py: 0.4 % and 0.6 %)."""
+
     def values(cells: int) -> np.ndarray:
         chain = line_mesh(np.outer(np.linspace(0, 10, cells + 1), [1, 0, 0]))
         points = np.vstack([chain.points, [[10, 2, 0], [10, -2, 0]]])
@@ -183,18 +210,30 @@ def test_off_centre_masses_n02(formulation, count):
         heavy, light = (Selector(nodes=[cells + k]) for k in (2, 3))
         both = Selector(nodes=[cells + 2, cells + 3])
         section = Section("round", diameter=0.5)
-        return solve(Design("masses", mesh, Physics(
-            {"steel": STEEL}, (Assignment("*", "steel", None, formulation, section),),
-            supports=(CLAMPED,), links=(Link("arms", TIP, both),),
-            masses=(LumpedMass("heavy", heavy, 10000.0), LumpedMass("light", light, 1000.0)),
-        )), count).freq_hz
+        return solve(
+            Design(
+                "masses",
+                mesh,
+                Physics(
+                    {"steel": STEEL},
+                    (Assignment("*", "steel", None, formulation, section),),
+                    supports=(CLAMPED,),
+                    links=(Link("arms", TIP, both),),
+                    masses=(LumpedMass("heavy", heavy, 10000.0), LumpedMass("light", light, 1000.0)),
+                ),
+            ),
+            count,
+        ).freq_hz
+
     check(values, row("N02").values[:count], row("N02").tolerance, MIXED, (4, 8, 16))
 
 
 def test_deep_beam_n03_n04():
     """N03: all nine values with κ = 0.85; N04: all but its torsion, which takes the polar moment."""
+
     def values(n: int) -> np.ndarray:
         return solve(beam(n, deep(0.85), supports=(PIN, ROLLER)), 9).freq_hz
+
     assert row("N03").text.startswith("flex 42.650 x2; tors 71.20; ext 125.00; flex 148.15 x2; tors")
     check(values, row("N03").values, row("N03").tolerance, SECOND, (8, 16, 32))
     late = row("N04").values

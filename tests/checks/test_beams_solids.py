@@ -49,8 +49,11 @@ def plane(mesh: Mesh, *directions: str) -> Support:
 
 
 def model(mesh: Mesh, material: Material = BAR, formulation: str = "", **physics) -> Design:
-    return Design("bar", mesh, Physics(
-        {material.name: material}, (Assignment("*", material.name, None, formulation),), **physics))
+    return Design(
+        "bar",
+        mesh,
+        Physics({material.name: material}, (Assignment("*", material.name, None, formulation),), **physics),
+    )
 
 
 def beam(cells: int, supports: tuple[Support, ...] = (), **physics) -> Design:
@@ -135,7 +138,7 @@ def test_nodes_of_cantilever_modes_b06():
         for index in (1, 2, 3):
             x, y = deflection(design, modes, index)
             curve = CubicSpline(x, y)
-            change = np.nonzero(y[1:-1] * y[2:] < 0)[0] + 1      # the clamped end is no node
+            change = np.nonzero(y[1:-1] * y[2:] < 0)[0] + 1  # the clamped end is no node
             found += [brentq(curve, x[i], x[i + 1]) for i in change]
         return np.array(found)
 
@@ -155,8 +158,10 @@ def sigma(x: np.ndarray, y: np.ndarray, number: float, sign: float) -> float:
     return 1 - b / a
 
 
-@pytest.mark.parametrize(("part", "supports", "rigid", "sign"), [
-    (0, (CLAMPED,), 0, -1.0), (1, (CLAMPED, Support("tip", Selector(group="x1"))), 0, -1.0), (1, (), 3, 1.0)])
+@pytest.mark.parametrize(
+    ("part", "supports", "rigid", "sign"),
+    [(0, (CLAMPED,), 0, -1.0), (1, (CLAMPED, Support("tip", Selector(group="x1"))), 0, -1.0), (1, (), 3, 1.0)],
+)
 def test_constants_of_shapes_b09(part, supports, rigid, sign):
     def constants(cells: int) -> np.ndarray:
         design = beam(cells, supports)
@@ -170,6 +175,7 @@ def test_constants_of_shapes_b09(part, supports, rigid, sign):
 
 def test_rod_b17():
     """Lateral motion held: with Poisson's ratio 0 it is none of the rod's business."""
+
     def rod(cells: int) -> np.ndarray:
         mesh = box_mesh("hex20", (cells, 1, 1), (10.0, 1.0, 1.0))
         return solve(model(mesh, supports=(CLAMPED, plane(mesh, "uy", "uz"))), 3).freq_hz
@@ -183,15 +189,27 @@ def shaft(width: float, depth: float, length: float, cells: tuple[int, int, int]
     A quarter of the section: on the planes of symmetry, torsion moves across the other axis only.
     """
     mesh = box_mesh("hex20", cells, (length, width, depth))
-    return solve(model(mesh, STEEL, supports=(
-        Support("fork", Selector(group="x0"), ("uy", "uz")),
-        Support("y", Selector(group="y0"), ("ux", "uz")), Support("z", Selector(group="z0"), ("ux", "uy")),
-    )), count).freq_hz
+    return solve(
+        model(
+            mesh,
+            STEEL,
+            supports=(
+                Support("fork", Selector(group="x0"), ("uy", "uz")),
+                Support("y", Selector(group="y0"), ("ux", "uz")),
+                Support("z", Selector(group="z0"), ("ux", "uy")),
+            ),
+        ),
+        count,
+    ).freq_hz
 
 
 def test_square_shaft_b18():
-    check(study(lambda n: shaft(1.0, 1.0, 10.0, (n, n // 2, n // 2), 3), (2, 4, 8)), row("B18").values,
-          row("B18").tolerance, FOURTH)
+    check(
+        study(lambda n: shaft(1.0, 1.0, 10.0, (n, n // 2, n // 2), 3), (2, 4, 8)),
+        row("B18").values,
+        row("B18").tolerance,
+        FOURTH,
+    )
 
 
 @pytest.mark.parametrize(("index", "ratio"), list(enumerate([1, 1.5, 2, 2.5, 3, 4, 5, 10])))
@@ -220,8 +238,7 @@ def test_rigid_body_counts_b21():
     sheet = plate_mesh("quad4", (4, 3), (1.0, 0.7))
 
     def shell(*held: str) -> Design:
-        return Design("sheet", sheet, Physics(
-            {"s": STEEL}, (Assignment("*", "s", 0.01),), (plane(sheet, *held),)))
+        return Design("sheet", sheet, Physics({"s": STEEL}, (Assignment("*", "s", 0.01),), (plane(sheet, *held),)))
 
     assert count(model(box, STEEL)) == solid
     assert count(shell("ux", "uy", "rz")) == plate
@@ -235,8 +252,12 @@ def test_rigid_body_counts_b21():
 def test_cantilever_with_tip_mass_b24():
     assert row("B24").inputs == "mu=1"
     tip = LumpedMass("tip", Selector(group="x1"), MASS)
-    check(study(lambda n: beta(solve(beam(n, (CLAMPED,), masses=(tip,)), 3))), row("B24").values,
-          row("B24").tolerance, SECOND)
+    check(
+        study(lambda n: beta(solve(beam(n, (CLAMPED,), masses=(tip,)), 3))),
+        row("B24").values,
+        row("B24").tolerance,
+        SECOND,
+    )
 
 
 @pytest.mark.parametrize(("index", "ratio"), list(enumerate([1, 10, 100, 1000])))
@@ -272,15 +293,20 @@ def test_closed_round_tube_t01_t04():
 
     def constant(n: int) -> np.ndarray:
         mesh = tube(n, inner, outer, 1e3 * length, 4)
-        design = model(mesh, STEEL, supports=(
-            Support("fork", Selector(group="x0"), ("uy", "uz")),
-            Support("y", Selector(group="y0"), ("ux", "uz")), Support("z", Selector(group="z0"), ("ux", "uy")),
-        ))
+        design = model(
+            mesh,
+            STEEL,
+            supports=(
+                Support("fork", Selector(group="x0"), ("uy", "uz")),
+                Support("y", Selector(group="y0"), ("ux", "uz")),
+                Support("z", Selector(group="z0"), ("ux", "uy")),
+            ),
+        )
         system = assemble(design)
         spin = np.zeros_like(mesh.points)
         spin[:, 1], spin[:, 2] = -mesh.points[:, 2], mesh.points[:, 1]
         vector = system.gather(spin)
-        polar = 4 * vector @ system.M @ vector / length                    # kg m, the whole tube
+        polar = 4 * vector @ system.M @ vector / length  # kg m, the whole tube
         return 1e12 * (4 * length * solve(design, 1).freq_hz) ** 2 * polar / shear
 
     reached, _ = study(constant, (2, 4, 8))

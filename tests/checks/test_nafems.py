@@ -23,8 +23,9 @@ STEEL = Material("steel", 200e9, 0.3, 8000.0)
 
 
 def model(mesh: Mesh, material: Material = STEEL, thickness: float | None = None, **physics) -> Design:
-    return Design("case", mesh, Physics(
-        {material.name: material}, (Assignment("*", material.name, thickness),), **physics))
+    return Design(
+        "case", mesh, Physics({material.name: material}, (Assignment("*", material.name, thickness),), **physics)
+    )
 
 
 def nodes(mesh: Mesh, where: np.ndarray) -> Selector:
@@ -53,10 +54,15 @@ def double_cross(cells: int) -> Design:
             lower, upper = at, at + 1
     mesh = Mesh(np.array(points), (CellBlock("quad4", quads, np.arange(len(quads))),), np.arange(len(points)))
     ends = np.isclose(np.linalg.norm(mesh.points[:, :2], axis=1), length)
-    return model(mesh, Material("beam", 200e9, 0.0, 8000.0), side, supports=(
-        Support("pins", nodes(mesh, ends), ("ux", "uy")),
-        Support("plane", Selector(nodes=mesh.node_ids), ("uz", "rx", "ry")),
-    ))
+    return model(
+        mesh,
+        Material("beam", 200e9, 0.0, 8000.0),
+        side,
+        supports=(
+            Support("pins", nodes(mesh, ends), ("ux", "uy")),
+            Support("plane", Selector(nodes=mesh.node_ids), ("uz", "rx", "ry")),
+        ),
+    )
 
 
 def test_double_cross_n01():
@@ -79,7 +85,7 @@ def round_bar(cells: int, length: float, diameter: float) -> Mesh:
     """A bar along x of 2 × 2 hex20 a section, the square bulged to a circle; group names as in ``box_mesh``."""
     flat = box_mesh("hex20", (cells, 2, 2), (length, 2.0, 2.0))
     y, z = flat.points[:, 1] - 1, flat.points[:, 2] - 1
-    disc = np.stack([y * np.sqrt(1 - z**2 / 2), z * np.sqrt(1 - y**2 / 2)], axis=1)    # square to disc, smooth inside
+    disc = np.stack([y * np.sqrt(1 - z**2 / 2), z * np.sqrt(1 - y**2 / 2)], axis=1)  # square to disc, smooth inside
     return flat.with_(points=np.column_stack([flat.points[:, 0], 0.5 * diameter * disc]))
 
 
@@ -97,17 +103,24 @@ def test_off_centre_masses_n02():
         centres = points[mesh.blocks[0].nodes].mean(axis=1)[:, 0]
         mesh = mesh.with_(points=points, cell_groups={"cap": np.nonzero(centres > 10)[0]})
         tip = Selector(group="x1")
-        design = Design("case", mesh, Physics(
-            {"steel": STEEL, "cap": cap}, (Assignment("*", "steel"), Assignment("cap", "cap")),
-            supports=(Support("A", Selector(group="x0")),), masses=(
-                LumpedMass("heavy", tip, 10000.0, [10.0, 2.0, 0.0]),
-                LumpedMass("light", tip, 1000.0, [10.0, -2.0, 0.0]),
-            )))
+        design = Design(
+            "case",
+            mesh,
+            Physics(
+                {"steel": STEEL, "cap": cap},
+                (Assignment("*", "steel"), Assignment("cap", "cap")),
+                supports=(Support("A", Selector(group="x0")),),
+                masses=(
+                    LumpedMass("heavy", tip, 10000.0, [10.0, 2.0, 0.0]),
+                    LumpedMass("light", tip, 1000.0, [10.0, -2.0, 0.0]),
+                ),
+            ),
+        )
         return solve(design, 4).freq_hz
 
     reached = richardson(*(values(n) for n in (10, 20, 40)))
     assert (reached.error(expected) <= row("N02").tolerance).all(), reached.limit / expected - 1
-    assert ((reached.rate > 1.0) & (reached.rate < 2.3)).all(), reached.rate    # the clamped edge is singular
+    assert ((reached.rate > 1.0) & (reached.rate < 2.3)).all(), reached.rate  # the clamped edge is singular
 
 
 # N03, N04 ---------------------------------------------------------------------------------------------------------
@@ -117,27 +130,47 @@ def bending(n: int) -> np.ndarray:
     """10 × 2 × 2 m, bending along y: a quarter of the section, both end sections held along y, free to turn."""
     mesh = box_mesh("hex20", (5 * n, n, n), (10.0, 1.0, 1.0))
     ends = np.union1d(mesh.node_groups["x0"], mesh.node_groups["x1"])
-    return solve(model(mesh, supports=(
-        Support("symmetric", Selector(group="z0"), ("uz",)),
-        Support("antisymmetric", Selector(group="y0"), ("ux", "uz")),
-        Support("ends", nodes(mesh, ends), ("uy",)),
-    )), 3).freq_hz
+    return solve(
+        model(
+            mesh,
+            supports=(
+                Support("symmetric", Selector(group="z0"), ("uz",)),
+                Support("antisymmetric", Selector(group="y0"), ("ux", "uz")),
+                Support("ends", nodes(mesh, ends), ("uy",)),
+            ),
+        ),
+        3,
+    ).freq_hz
 
 
 def stretching(n: int) -> np.ndarray:
     mesh = box_mesh("hex20", (5 * n, n, n), (10.0, 1.0, 1.0))
-    return solve(model(mesh, supports=(
-        Support("A", Selector(group="x0"), ("ux",)), Support("y", Selector(group="y0"), ("uy",)),
-        Support("z", Selector(group="z0"), ("uz",)),
-    )), 1).freq_hz
+    return solve(
+        model(
+            mesh,
+            supports=(
+                Support("A", Selector(group="x0"), ("ux",)),
+                Support("y", Selector(group="y0"), ("uy",)),
+                Support("z", Selector(group="z0"), ("uz",)),
+            ),
+        ),
+        1,
+    ).freq_hz
 
 
 def twisting(n: int) -> np.ndarray:
     mesh = box_mesh("hex20", (5 * n, n, n), (10.0, 1.0, 1.0))
-    return solve(model(mesh, supports=(
-        Support("A", Selector(group="x0"), ("uy", "uz")), Support("y", Selector(group="y0"), ("ux", "uz")),
-        Support("z", Selector(group="z0"), ("ux", "uy")),
-    )), 2).freq_hz
+    return solve(
+        model(
+            mesh,
+            supports=(
+                Support("A", Selector(group="x0"), ("uy", "uz")),
+                Support("y", Selector(group="y0"), ("ux", "uz")),
+                Support("z", Selector(group="z0"), ("ux", "uy")),
+            ),
+        ),
+        2,
+    ).freq_hz
 
 
 def test_deep_beam_n03_n04():
@@ -214,7 +247,8 @@ def test_solid_plate_out_of_plane_n17():
     first, second, third = row("N17").values[-3:]
     frequencies, across = solid_plate(4, 1, 10)
     np.testing.assert_allclose(
-        frequencies[(across > 0.5) & (frequencies > 0)][:4], [first, second, second, third],
+        frequencies[(across > 0.5) & (frequencies > 0)][:4],
+        [first, second, second, third],
         rtol=row("N17").tolerance,
     )
     finer, _ = solid_plate(8, 2, 4)
@@ -255,8 +289,10 @@ def layer(
     solid = solve(model(mesh, supports=(clamp,)), 6).freq_hz
     # The lower face as a shell: every second row of nodes.
     grid = Mesh(
-        mesh.points[::2] * [1, 1, 0], (CellBlock("quad4", mesh.blocks[0].nodes[:, :4] // 2, mesh.blocks[0].ids),),
-        np.arange(1, mesh.n_nodes // 2 + 1), node_groups={"x0": mesh.node_groups["x0"][::2] // 2},
+        mesh.points[::2] * [1, 1, 0],
+        (CellBlock("quad4", mesh.blocks[0].nodes[:, :4] // 2, mesh.blocks[0].ids),),
+        np.arange(1, mesh.n_nodes // 2 + 1),
+        node_groups={"x0": mesh.node_groups["x0"][::2] // 2},
     )
     plane = Support("plane", Selector(nodes=grid.node_ids), ("ux", "uy", "rz"))
     shell = solve(model(grid, thickness=thickness, supports=(clamp, plane)), 6).freq_hz
@@ -265,8 +301,11 @@ def layer(
     return scale * solid, scale * shell
 
 
-@pytest.mark.parametrize(("moved", "amount", "tolerance"), [(leaning, 0.0, 0.02), (leaning, 30.0, 0.05),
-                                                            (crooked, 0.2, 0.02)], ids=["square", "lean", "crooked"])
+@pytest.mark.parametrize(
+    ("moved", "amount", "tolerance"),
+    [(leaning, 0.0, 0.02), (leaning, 30.0, 0.05), (crooked, 0.2, 0.02)],
+    ids=["square", "lean", "crooked"],
+)
 def test_one_layer_of_hexahedra_as_cantilever_plate_p02(moved, amount, tolerance):
     """All six modes on 16 × 16 cells. What is left is the error of the grid: shells on it have the same to 1e-3."""
     solid, shell = layer(16, moved, amount)

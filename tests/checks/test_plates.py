@@ -21,8 +21,8 @@ from viewer.model.design import Assignment, Design, Material, Physics, Selector,
 from viewer.model.mesh import CellBlock, Mesh
 
 STEEL = Material("steel", 200e9, 0.3, 8000.0)
-THIN = 0.01                             # m, with sides of 10 m: shear and rotary inertia take less than 1e-4 off
-UNUSED = ("ux", "uy", "rz")             # by a flat plate in bending
+THIN = 0.01  # m, with sides of 10 m: shear and rotary inertia take less than 1e-4 off
+UNUSED = ("ux", "uy", "rz")  # by a flat plate in bending
 CLAMPED = ("uz", "rx", "ry")
 
 
@@ -42,9 +42,11 @@ def rhombus(n: int) -> Mesh:
 
 def taper(n: int) -> Mesh:
     """N13: length 10 m, depth from 5 m to 1 m, symmetric."""
+
     def place(points: np.ndarray) -> np.ndarray:
         x, y = points[:, 0], points[:, 1]
         return np.stack([x, (y - 0.5) * (5 - 0.4 * x), 0 * x], axis=1)
+
     return mapped(rectangle(2 * n, 10.0, 1.0, m=n), place)
 
 
@@ -58,7 +60,7 @@ def disc(n: int) -> Mesh:
     inner[:, [0, -1]] = side[:, None] * np.array([[1, -1], [1, 1]])
     inner[[0, -1]] = side[None, :, ::-1] * np.array([[-1, 1], [1, 1]])[:, None]
     r = np.linspace(0, 1, n + 1)[:, None, None]
-    ring = np.swapaxes((1 - r) * side + r * arc, 0, 1)[:, ::-1]      # from the arc inwards: counter-clockwise cells
+    ring = np.swapaxes((1 - r) * side + r * arc, 0, 1)[:, ::-1]  # from the arc inwards: counter-clockwise cells
     quarter = np.array([[0, -1], [1, 0]])
     blocks = [inner, *(ring @ np.linalg.matrix_power(quarter, k) for k in range(4))]
     points, cells, start = [], [], 0
@@ -82,10 +84,10 @@ class Case:
     """A plate and the three meshes it is solved on."""
 
     mesh: Callable[[int], Mesh] = rectangle
-    held: tuple[tuple[str, tuple[str, ...]], ...] = ()      # (edge, held directions)
+    held: tuple[tuple[str, tuple[str, ...]], ...] = ()  # (edge, held directions)
     thickness: float = THIN
     poisson: float = 0.3
-    scale: str = "lambda"               # what the row states: "lambda" = ω 10² √(ρh/D), or "Hz"
+    scale: str = "lambda"  # what the row states: "lambda" = ω 10² √(ρh/D), or "Hz"
     unused: tuple[str, ...] = UNUSED
     sizes: tuple[int, int, int] = (16, 24, 36)
     formulation: str = ""
@@ -96,9 +98,13 @@ class Case:
         supports = [Support("plane", Selector(nodes=mesh.node_ids), self.unused)] + [
             Support(group, Selector(group=group), directions) for group, directions in self.held
         ]
-        return Design("plate", mesh, Physics(
-            {"steel": material}, (Assignment("*", "steel", self.thickness, self.formulation),), tuple(supports)
-        ))
+        return Design(
+            "plate",
+            mesh,
+            Physics(
+                {"steel": material}, (Assignment("*", "steel", self.thickness, self.formulation),), tuple(supports)
+            ),
+        )
 
 
 @cache
@@ -191,7 +197,7 @@ CASES = [
 def test_plate(name: str, part: int, case: Case, times: tuple[int, ...]):
     wanted = row(name).values[part : part + 1] if name == "P17" else row(name).parts[part]
     expected = np.repeat(wanted, times) if times else np.array(wanted)
-    if name == "P18":                   # the row's B is λ / √12
+    if name == "P18":  # the row's B is λ / √12
         expected = expected * np.sqrt(12)
     limits(case, len(expected)).check(expected, row(name).tolerance, order(case))
 
@@ -203,8 +209,13 @@ def order(case: Case) -> tuple[float, float]:
     return (1.5, 2.3) if free_edges else (1.85, 2.3)
 
 
-TRIANGLES = [("P01", SSSS, THREE_PAIRS), ("P02", CFFF, ()), ("P04", FFFF, ()), ("P06", CCCC, ()),
-             ("P24", replace(THICK, formulation="tri3-dkmt-mindlin"), THREE_PAIRS)]
+TRIANGLES = [
+    ("P01", SSSS, THREE_PAIRS),
+    ("P02", CFFF, ()),
+    ("P04", FFFF, ()),
+    ("P06", CCCC, ()),
+    ("P24", replace(THICK, formulation="tri3-dkmt-mindlin"), THREE_PAIRS),
+]
 
 
 @pytest.mark.parametrize(("name", "case", "times"), TRIANGLES, ids=[c[0] for c in TRIANGLES])

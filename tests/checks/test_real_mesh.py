@@ -31,15 +31,17 @@ def hexbeam() -> Mesh:
     assert kind is not None
     nodes = grid.cells.reshape(-1, kind.n_nodes + 1)[:, 1:]
     return Mesh(
-        np.array(grid.points, float), (CellBlock(kind.name, nodes, np.arange(1, len(nodes) + 1)),),
-        np.arange(1, grid.n_points + 1), source="hexbeam.vtk",
+        np.array(grid.points, float),
+        (CellBlock(kind.name, nodes, np.arange(1, len(nodes) + 1)),),
+        np.arange(1, grid.n_points + 1),
+        source="hexbeam.vtk",
     )
 
 
 def quadratic(mesh: Mesh) -> Mesh:
     """The same cells with 27 nodes, new ones at the middle of edges, faces and cells."""
     linear, full = KINDS["hex8"], KINDS["hex27"]
-    weights = linear.shape(full.reference)                                   # (27, 8)
+    weights = linear.shape(full.reference)  # (27, 8)
     (block,) = mesh.blocks
     placed = np.einsum("ab,ebi->eai", weights, mesh.points[block.nodes]).reshape(-1, 3)
     points, inverse = np.unique(np.round(placed, 9), axis=0, return_inverse=True)
@@ -88,4 +90,4 @@ def test_imported_quadratic_modes_are_closed_best_by_the_incompatible_element():
     assert best.names == {"hex8": "hex8-incompatible"}
     found = energies(design(mesh), imported, formulations=best.names)
     assert found.trusted[6:8].all()
-    assert not found.trusted[8]        # torsion is 8 % too stiff on two cells across, and said to be
+    assert not found.trusted[8]  # torsion is 8 % too stiff on two cells across, and said to be

@@ -64,7 +64,7 @@ def test_frames_show_their_phase(loop):
     shown = frames_of(loop)
     for frame in (0, 7, 20, 33):
         error = np.abs(shown[frame][1].astype(int) - image(picture(), phase_of(frame))).max(axis=2)
-        assert np.percentile(error, 99.9) <= 8         # 256 colours for everything
+        assert np.percentile(error, 99.9) <= 8  # 256 colours for everything
         assert error.mean() < 1.0
     assert np.array_equal(shown[7][1], shown[33][1])
 
@@ -73,8 +73,8 @@ def test_resting_pixels_rest(loop):
     first, *others = [pixels for _, pixels in frames_of(loop)]
     drawn = [image(picture(), phase_of(frame)) for frame in (0, 5, 10, 15, 20)]
     still = np.all([np.array_equal(d, drawn[0]) or (d == drawn[0]).all(axis=2) for d in drawn[1:]], axis=0)
-    still[: int(360 * 0.78)] &= np.indices((360, 480))[0][: int(360 * 0.78)] < 45      # rulers and bar
-    still[int(360 * 0.78) :, 400:] = False                                              # the gauge moves
+    still[: int(360 * 0.78)] &= np.indices((360, 480))[0][: int(360 * 0.78)] < 45  # rulers and bar
+    still[int(360 * 0.78) :, 400:] = False  # the gauge moves
     assert still.sum() > 10_000
     for pixels in others:
         assert np.array_equal(pixels[still], first[still])

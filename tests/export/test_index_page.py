@@ -52,17 +52,22 @@ def folder(tmp_path: Path) -> Path:
 def sections(title: str = "baseline") -> list[PageSection]:
     rows = [{"design": title, "mode": 1, "frequency_hz": 84.64999}]
     return [
-        PageSection(title, loops=(PageLoop(title, "a.gif", "a.png", caption=title, alt=title),),
-                    tables=(PageTable(title, rows, csv="tables/modes.csv"),)),
+        PageSection(
+            title,
+            loops=(PageLoop(title, "a.gif", "a.png", caption=title, alt=title),),
+            tables=(PageTable(title, rows, csv="tables/modes.csv"),),
+        ),
         PageSection("What the redesign did", loops=(PageLoop("both", "mode 2 # ü.gif"),), comparison=True),
     ]
 
 
 def test_comparisons_come_first_and_honest_words_are_there(folder):
-    page = Page(write_index(folder, "Boom", sections(), condition="clamped root", cautions=["closure 7 %"]).read_text(
-        "utf-8"))
+    page = Page(
+        write_index(folder, "Boom", sections(), condition="clamped root", cautions=["closure 7 %"]).read_text("utf-8")
+    )
     assert page.words.index("What the redesign did", page.words.index(EXAGGERATED)) < page.words.index(
-        "baseline", page.words.index(EXAGGERATED))
+        "baseline", page.words.index(EXAGGERATED)
+    )
     assert EXAGGERATED in page.words
     assert DEFERENCE in page.words
     assert "closure 7 %" in page.words
@@ -74,7 +79,7 @@ def test_names_are_escaped_everywhere(folder):
     text = write_index(folder, HOSTILE, sections(HOSTILE), condition=HOSTILE, cautions=[HOSTILE]).read_text("utf-8")
     page = Page(text)
     assert not [tag for tag, _ in page.tags if tag == "script"]
-    assert page.words.count('<script>alert("x")</script>') >= 6          # shown as words, not run
+    assert page.words.count('<script>alert("x")</script>') >= 6  # shown as words, not run
     assert HOSTILE.rstrip("\x07") in page.all("img", "alt")
     assert "\x07" not in text
 

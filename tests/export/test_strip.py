@@ -29,7 +29,7 @@ def near(image, colour, within=30):
 def test_words_of_a_standing_mode_that_moves_upright():
     strip = strip_layout(known())
     words = [t.words for t in strip.sheet.items if isinstance(t, Text) and t.anchor == "middle" and t.size == 21]
-    assert words[:5] == ["full up", "half up", "rest", "half down", "full down"]       # look/6_phase_strip.png
+    assert words[:5] == ["full up", "half up", "rest", "half down", "full down"]  # look/6_phase_strip.png
     assert np.cos(strip.phases) == pytest.approx([-1, -0.5, 0, 0.5, 1], abs=1e-12)
 
 
@@ -53,7 +53,7 @@ def test_a_travelling_mode_never_rests():
 def test_nothing_overlaps_and_type_is_for_print(make):
     strip = strip_layout(make())
     texts = [item for item in strip.sheet.items if isinstance(item, Text)]
-    assert min(t.size for t in texts) == 21                                            # 14 × 1.5
+    assert min(t.size for t in texts) == 21  # 14 × 1.5
     for k, text in enumerate(texts):
         left, top, right, foot = text.box
         assert 0 <= left < right <= 1600
@@ -107,7 +107,7 @@ def test_compared_designs_get_a_row_each(tmp_path):
         left, top, right, foot = row[2]
         drawn.append((image[round(top) : round(foot), round(left) : round(right)] != 255).any(axis=2).mean())
     assert min(drawn) > 0.1
-    assert drawn[0] == pytest.approx(drawn[1], rel=0.1)                                # one camera, one scale
+    assert drawn[0] == pytest.approx(drawn[1], rel=0.1)  # one camera, one scale
 
 
 def test_a_cancelled_strip_leaves_nothing(tmp_path):
@@ -137,8 +137,10 @@ def ink_box(image, box, scale, pad=14):
     left, top, right, foot = (round(scale * v) for v in (box[0] - pad, box[1] - pad, box[2] + pad, box[3] + pad))
     rows, columns = np.nonzero((image[top:foot, left:right] < 128).all(axis=2))
     return (
-        (columns.min() + left) / scale, (rows.min() + top) / scale,
-        (columns.max() + 1 + left) / scale, (rows.max() + 1 + top) / scale,
+        (columns.min() + left) / scale,
+        (rows.min() + top) / scale,
+        (columns.max() + 1 + left) / scale,
+        (rows.max() + 1 + top) / scale,
     )
 
 
@@ -152,12 +154,12 @@ def test_words_stand_where_the_layout_puts_them(scale):
     image, fewer = drawn(Sheet(600, 200, texts), scale)
     for text in texts:
         left, top, right, foot = ink_box(image, text.box, scale)
-        slack = 2.5 + 0.015 * (text.box[2] - text.box[0])         # side bearings, and hinted advances
+        slack = 2.5 + 0.015 * (text.box[2] - text.box[0])  # side bearings, and hinted advances
         assert left == pytest.approx(text.box[0], abs=slack)
         assert right == pytest.approx(text.box[2], abs=slack)
         assert text.box[1] - 1 <= top <= text.box[1] + 0.12 * text.size + 1
-        assert foot == pytest.approx(text.y + 0.21 * text.size, abs=1.2)                # descender of g, p, q
-    assert (fewer[scale * 90 :] == 255).all()                                           # unused actors are hidden
+        assert foot == pytest.approx(text.y + 0.21 * text.size, abs=1.2)  # descender of g, p, q
+    assert (fewer[scale * 90 :] == 255).all()  # unused actors are hidden
 
 
 def test_shapes_stand_where_the_layout_puts_them():

@@ -12,11 +12,28 @@ from viewer.errors import ExportError
 from viewer.export.tables import csv_text, json_text, readable, rounded, text_table, write_table
 
 ROWS = [
-    {"design": "baseline", "mode": 1, "name": 'boom "nods", then rests', "frequency_hz": 82.60123456789012,
-     "largest_real_m": 3.9e-6, "strain_percent": 61.04999, "closure": np.float64(1.0), "trusted": True,
-     "never": None},
-    {"design": "baseline", "mode": 2, "name": "", "frequency_hz": 1142.0, "largest_real_m": None,
-     "strain_percent": 0.04, "closure": float("nan"), "trusted": np.bool_(False), "never": None},
+    {
+        "design": "baseline",
+        "mode": 1,
+        "name": 'boom "nods", then rests',
+        "frequency_hz": 82.60123456789012,
+        "largest_real_m": 3.9e-6,
+        "strain_percent": 61.04999,
+        "closure": np.float64(1.0),
+        "trusted": True,
+        "never": None,
+    },
+    {
+        "design": "baseline",
+        "mode": 2,
+        "name": "",
+        "frequency_hz": 1142.0,
+        "largest_real_m": None,
+        "strain_percent": 0.04,
+        "closure": float("nan"),
+        "trusted": np.bool_(False),
+        "never": None,
+    },
 ]
 
 
@@ -32,7 +49,7 @@ def test_files_carry_every_digit(tmp_path):
         assert from_json["trusted"] is bool(given["trusted"])
     assert back[1]["largest_real_m"] == ""
     assert loaded["rows"][1]["largest_real_m"] is None
-    assert loaded["rows"][1]["closure"] is None                       # not a number: unknown, never NaN in JSON
+    assert loaded["rows"][1]["closure"] is None  # not a number: unknown, never NaN in JSON
     assert loaded["units"] == {"frequency_hz": "Hz", "largest_real_m": "m", "strain_percent": "%"}
     assert not list(tmp_path.glob("**/.part-*"))
 
@@ -48,8 +65,13 @@ def test_text_says_the_same_rounded():
     assert "yes" in text
     assert "no" in text
     lines = text.splitlines()
-    assert len({line.index("82.60") + 5 for line in lines if "82.60" in line}
-               | {line.index("1142") + 4 for line in lines if "1142" in line}) == 1     # flush right
+    assert (
+        len(
+            {line.index("82.60") + 5 for line in lines if "82.60" in line}
+            | {line.index("1142") + 4 for line in lines if "1142" in line}
+        )
+        == 1
+    )  # flush right
 
 
 def test_text_columns_match_the_full_figures():
@@ -61,8 +83,9 @@ def test_text_columns_match_the_full_figures():
 
 
 def test_a_wide_table_is_broken_and_repeats_what_a_row_is_about():
-    rows = [{"design": "a", "mode": m, **{f"a_rather_long_figure_{i}": 1.5 * i * m for i in range(1, 12)}}
-            for m in (1, 2)]
+    rows = [
+        {"design": "a", "mode": m, **{f"a_rather_long_figure_{i}": 1.5 * i * m for i in range(1, 12)}} for m in (1, 2)
+    ]
     text = readable(rows, width=80)
     assert all(len(line) <= 80 for line in text.splitlines())
     blocks = text.split("\n\n")
@@ -73,14 +96,24 @@ def test_a_wide_table_is_broken_and_repeats_what_a_row_is_about():
 def test_wide_letters_and_line_breaks_keep_the_columns():
     rows = [{"name": "梁がうなずく", "n_hz": 1.0}, {"name": "a\nb", "n_hz": 2.0}]
     lines = readable(rows).splitlines()
-    assert lines[-2].index("1.000") + 6 == lines[-1].index("2.000")   # six letters of double width
+    assert lines[-2].index("1.000") + 6 == lines[-1].index("2.000")  # six letters of double width
     assert "a b" in lines[-1]
 
 
-@pytest.mark.parametrize(("value", "text"), [
-    (0.0, "0"), (9.9996, "10.00"), (82.6, "82.60"), (1204.4, "1204"), (123456.0, "123500"), (0.00123, "0.001230"),
-    (3.9e-6, "3.900e-06"), (-12.3456, "-12.35"), (1e9, "1.000e+09"),
-])
+@pytest.mark.parametrize(
+    ("value", "text"),
+    [
+        (0.0, "0"),
+        (9.9996, "10.00"),
+        (82.6, "82.60"),
+        (1204.4, "1204"),
+        (123456.0, "123500"),
+        (0.00123, "0.001230"),
+        (3.9e-6, "3.900e-06"),
+        (-12.3456, "-12.35"),
+        (1e9, "1.000e+09"),
+    ],
+)
 def test_rounding(value, text):
     assert rounded(value) == text
     assert float(text) == pytest.approx(value, rel=5.1e-4)

@@ -33,7 +33,7 @@ def clip(tmp_path_factory):
 def test_four_cycles_of_1_6_s_at_25_frames_a_second(clip):
     meta, frames = frames_of(clip)
     assert meta["codec"] == "h264"
-    assert meta["pix_fmt"].startswith("yuv420p(tv, bt709, ")                     # nothing left for players to guess
+    assert meta["pix_fmt"].startswith("yuv420p(tv, bt709, ")  # nothing left for players to guess
     assert meta["fps"] == 25
     assert len(frames) == 160
     assert meta["duration"] == pytest.approx(6.4, abs=0.011)
@@ -56,7 +56,7 @@ def test_frames_show_their_phase_and_colours_are_right(clip):
     for k, truth in drawn.items():
         errors = {n: np.abs(frames[n][:360, :470] - truth).mean() for n in drawn}
         assert min(errors, key=errors.get) == k
-        assert np.abs(frames[k + 120][:360, :470] - truth).mean() < 2.0          # the last cycle too
+        assert np.abs(frames[k + 120][:360, :470] - truth).mean() < 2.0  # the last cycle too
 
 
 def test_padding_repeats_the_edge():
@@ -66,7 +66,7 @@ def test_padding_repeats_the_edge():
     assert video.padded(np.zeros((32, 48, 3), np.uint8)).shape == (32, 48, 3)
 
 
-@pytest.mark.parametrize("when", [3, 22])                                        # while drawing, while encoding
+@pytest.mark.parametrize("when", [3, 22])  # while drawing, while encoding
 def test_a_cancelled_video_leaves_nothing(tmp_path, when):
     ticks = []
     sink = Progress(show=lambda *tick: ticks.append(tick), stop=lambda: len(ticks) >= when)

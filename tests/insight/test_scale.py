@@ -42,7 +42,7 @@ def test_stated_amplitude_gives_size_sign_and_place(design):
     scale = scale_mode(design, parabola(design), 1, stated)
     assert scale.largest_real == pytest.approx(2e-6)
     assert scale.largest_place == "tip"
-    assert scale.largest_word == "up"                       # turned so that the stated direction comes first
+    assert scale.largest_word == "up"  # turned so that the stated direction comes first
     assert scale.turn == pytest.approx(-1.0)
     assert scale.magnification == pytest.approx(0.08 * np.hypot(LENGTH, WIDTH) / 2e-6)
     assert scale.to_dict()["largest_real_m"] == scale.largest_real
@@ -65,7 +65,7 @@ def test_true_scale_draws_at_one_and_is_refused_without_a_size(design):
 
 
 def test_a_point_that_hardly_moves_gives_no_size(design):
-    where = Selector(near=np.array([0.2 * LENGTH, 0, 0]))    # 4 % of the peak there
+    where = Selector(near=np.array([0.2 * LENGTH, 0, 0]))  # 4 % of the peak there
     stated = StatedAmplitude("plate", 1, 1e-6, np.array([0, 0, 1.0]), where=where)
     with pytest.raises(RefusedError, match="hardly moves"):
         scale_mode(design, parabola(design), 1, stated)
@@ -74,7 +74,7 @@ def test_a_point_that_hardly_moves_gives_no_size(design):
 def test_a_short_flap_is_limited_by_its_turn(design):
     shape = np.zeros((design.mesh.n_nodes, 3))
     flap = 0.1
-    shape[:, 2] = np.maximum(design.mesh.points[:, 0] - (LENGTH - flap), 0)   # turns by 1 rad per unit
+    shape[:, 2] = np.maximum(design.mesh.points[:, 0] - (LENGTH - flap), 0)  # turns by 1 rad per unit
     scale = scale_mode(design, shape, 1)
     assert scale.limited_by == "turn"
     assert np.degrees(scale.factor) == pytest.approx(12.0, rel=1e-6)
@@ -86,7 +86,7 @@ def test_common_scale_known_takes_one_magnification(design):
     b = scale_mode(design, 5 * parabola(design), 1, StatedAmplitude("b", 1, 1e-6, np.array([0, 0, 1.0]), point="tip"))
     first, second = common_scale([a, b])
     assert first.magnification == second.magnification == min(a.magnification, b.magnification)
-    assert first.factor * 3 / (second.factor * 15) == pytest.approx(2.0)      # drawn sizes keep the real ratio
+    assert first.factor * 3 / (second.factor * 15) == pytest.approx(2.0)  # drawn sizes keep the real ratio
 
 
 def test_common_scale_unknown_takes_equal_modal_mass(design):

@@ -30,21 +30,29 @@ def kept(mesh: Mesh, keep) -> Mesh:
     groups = {name: np.nonzero(np.isin(used, rows))[0] for name, rows in mesh.node_groups.items()}
     nodes = nodes.reshape(-1, block.nodes.shape[1])
     return Mesh(
-        mesh.points[used], (CellBlock(block.kind, nodes, np.arange(1, len(nodes) + 1)),),
-        np.arange(1, len(used) + 1), groups, {"all": np.arange(len(nodes))},
+        mesh.points[used],
+        (CellBlock(block.kind, nodes, np.arange(1, len(nodes) + 1)),),
+        np.arange(1, len(used) + 1),
+        groups,
+        {"all": np.arange(len(nodes))},
     )
 
 
 def design(name: str, mesh: Mesh, root: str, tip: str, *, thickness: float | None = None, **more) -> Design:
     """Steel, held at ``root``, with a mass of 0.3 kg ahead of ``tip`` and a spring to ground under it."""
     ahead = mesh.points[mesh.node_groups[tip]].mean(axis=0) + np.array([0.02, 0.01, 0.03])
-    return Design(name, mesh, Physics(
-        {STEEL.name: STEEL},
-        (Assignment("*", STEEL.name, thickness), *more.pop("assignments", ())),
-        supports=(Support("root", Selector(group=root)),),
-        springs=(Spring("strut", Selector(group=tip), None, [0, 0, 2e4, 0, 0, 0]),),
-        masses=(LumpedMass("head", Selector(group=tip), 0.3, ahead, np.diag([2e-4, 3e-4, 2e-4])),),
-    ), **more)
+    return Design(
+        name,
+        mesh,
+        Physics(
+            {STEEL.name: STEEL},
+            (Assignment("*", STEEL.name, thickness), *more.pop("assignments", ())),
+            supports=(Support("root", Selector(group=root)),),
+            springs=(Spring("strut", Selector(group=tip), None, [0, 0, 2e4, 0, 0, 0]),),
+            masses=(LumpedMass("head", Selector(group=tip), 0.3, ahead, np.diag([2e-4, 3e-4, 2e-4])),),
+        ),
+        **more,
+    )
 
 
 def bracket(kind: str) -> Design:
@@ -92,14 +100,17 @@ def block_with_plate(tip: str = "tip") -> Design:
     rank = np.empty_like(order)
     rank[order] = np.arange(len(order))
     row = rank[where.ravel()]
-    at = row[len(block.points):].reshape(13, 4)
+    at = row[len(block.points) :].reshape(13, 4)
     quads = np.concatenate([_strip(at[:, j], at[:, j + 1]) for j in range(3)])
     solids = row[block.blocks[0].nodes]
     points = points[first[order]]
     groups = {"root": np.nonzero(points[:, 2] < 1e-9)[0], "tip": at[-2:].ravel(), "edge": at[-1]}
     mesh = Mesh(
-        points, (CellBlock("hex8", solids, np.arange(1, 25)), CellBlock("quad4", quads, np.arange(101, 137))),
-        np.arange(1, len(points) + 1), groups, {},
+        points,
+        (CellBlock("hex8", solids, np.arange(1, 25)), CellBlock("quad4", quads, np.arange(101, 137))),
+        np.arange(1, len(points) + 1),
+        groups,
+        {},
     )
     sheets = (Assignment("quad4", STEEL.name, 0.003),)
     return design("block with plate", scattered_ids(mesh), "root", tip, assignments=sheets)

@@ -41,8 +41,18 @@ def _unpacked() -> Path | str:
     _FOLDER.mkdir(parents=True, exist_ok=True)
     with tempfile.TemporaryDirectory(dir=_FOLDER) as aside:
         command = [
-            sys.executable, "-m", "pip", "download", "--quiet", "--disable-pip-version-check", "--no-deps",
-            "--no-binary", ":all:", "--dest", aside, _NAME.replace("-", "=="),
+            sys.executable,
+            "-m",
+            "pip",
+            "download",
+            "--quiet",
+            "--disable-pip-version-check",
+            "--no-deps",
+            "--no-binary",
+            ":all:",
+            "--dest",
+            aside,
+            _NAME.replace("-", "=="),
         ]
         try:
             done = subprocess.run(command, capture_output=True, text=True, timeout=300, check=False)
@@ -55,7 +65,7 @@ def _unpacked() -> Path | str:
             packed.extractall(aside, filter="data")
         try:
             (Path(aside) / _NAME).replace(target)
-        except OSError:             # another test process was faster
+        except OSError:  # another test process was faster
             if not target.is_dir():
                 raise
     return target

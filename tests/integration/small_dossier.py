@@ -97,8 +97,12 @@ class Run:
 
     def __init__(self, *arguments: object, cache: Path) -> None:
         self.process = subprocess.Popen(
-            [sys.executable, "-m", "viewer", *map(str, arguments)], start_new_session=True, text=True,
-            stdout=subprocess.PIPE, stderr=subprocess.PIPE, env={**os.environ, "XDG_CACHE_HOME": str(cache)},
+            [sys.executable, "-m", "viewer", *map(str, arguments)],
+            start_new_session=True,
+            text=True,
+            stdout=subprocess.PIPE,
+            stderr=subprocess.PIPE,
+            env={**os.environ, "XDG_CACHE_HOME": str(cache)},
         )
 
     @property
@@ -112,7 +116,7 @@ class Run:
                     if int(group) == self.process.pid and state != "Z":
                         found[int(entry.name)] = (entry / "cmdline").read_text().replace("\0", " ")
                 except OSError:
-                    continue        # it has just ended
+                    continue  # it has just ended
         return found
 
     def wait_until(self, ready: Callable[[], bool], seconds: float = 120) -> None:

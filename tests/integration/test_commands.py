@@ -204,7 +204,7 @@ def test_check_says_what_it_found(dossier):
         ((), ".png", (320, 240)),
         (("--true-scale",), ".png", (320, 240)),
         (("--strip",), ".png", None),
-        (("--against", SECOND), ".png", None),                 # as high as the bodies need
+        (("--against", SECOND), ".png", None),  # as high as the bodies need
         (("--against", f"{SECOND}:2", "--overlay"), ".png", None),
         (("--no-energy", "--no-ghost", "--mesh-edges", "--theme", "dark", "--peak", "3"), ".png", (320, 240)),
     ],

@@ -27,9 +27,15 @@ COUNT = 4
 @cache
 def plate() -> Design:
     held = tuple(Support(f"edge {g}", Selector(group=g), ("ux", "uy", "uz")) for g in ("x0", "x1", "y0", "y1"))
-    return Design("plate", plate_mesh("quad4", (10, 10), (0.3, 0.3)), Physics(
-        {STEEL.name: STEEL}, (Assignment("*", STEEL.name, 0.003),), supports=held,
-    ))
+    return Design(
+        "plate",
+        plate_mesh("quad4", (10, 10), (0.3, 0.3)),
+        Physics(
+            {STEEL.name: STEEL},
+            (Assignment("*", STEEL.name, 0.003),),
+            supports=held,
+        ),
+    )
 
 
 @cache
@@ -58,7 +64,9 @@ def damped() -> ModeSet:
     real = np.stack([modes.shape(i) for i in range(n)])
     moved = np.einsum("mk,mnj->knj", vectors[:n, upper], real)
     return ModeSet(
-        modes.node_ids, np.abs(roots[upper]) / (2 * np.pi), ArrayShapes(moved),
+        modes.node_ids,
+        np.abs(roots[upper]) / (2 * np.pi),
+        ArrayShapes(moved),
         damping=-roots[upper].real / np.abs(roots[upper]),
     )
 

@@ -41,8 +41,13 @@ def copy(tmp_path_factory) -> Path:
 def start(folder: Path, *arguments: object) -> subprocess.CompletedProcess:
     environment = {**os.environ, "PYTHONPATH": str(folder), "XDG_CACHE_HOME": str(folder / "cache")}
     return subprocess.run(
-        [sys.executable, *map(str, arguments)], cwd=folder, env=environment, capture_output=True, text=True,
-        timeout=300, check=False,
+        [sys.executable, *map(str, arguments)],
+        cwd=folder,
+        env=environment,
+        capture_output=True,
+        text=True,
+        timeout=300,
+        check=False,
     )
 
 
@@ -82,7 +87,12 @@ def test_plain_script_without_a_guard_solves_a_larger_model(tmp_path):
     )
     environment = {**os.environ, "PYTHONPATH": str(ROOT)}
     done = subprocess.run(
-        [sys.executable, script], cwd=tmp_path, env=environment, capture_output=True, text=True, timeout=180,
+        [sys.executable, script],
+        cwd=tmp_path,
+        env=environment,
+        capture_output=True,
+        text=True,
+        timeout=180,
         check=False,
     )
     assert done.returncode == 0, done.stderr

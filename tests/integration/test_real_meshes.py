@@ -95,7 +95,7 @@ def test_volumes_are_those_of_the_bodies():
             assert inside == pytest.approx(5, rel=1e-9)
         if name == "cylinder.med":
             assert 0.85 * np.pi < inside < np.pi
-        if all(KINDS[b.kind].family in ("tet", "wedge") for b in mesh.blocks):   # others have warped faces
+        if all(KINDS[b.kind].family in ("tet", "wedge") for b in mesh.blocks):  # others have warped faces
             outer = skin([(b.kind, b.nodes) for b in mesh.blocks])
             a, b, c = (mesh.points[outer.faces[:, i]] for i in range(3))
             around = np.einsum("ij,ij->i", a, np.cross(b, c)).sum() / 6

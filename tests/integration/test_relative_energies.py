@@ -67,7 +67,7 @@ def good(*arguments: object) -> str:
     ("name", "assignments", "bound"),
     [
         ("bracket", (), 1e-9),
-        ("channel", SHELLS, 0.01),      # rotations are recovered from translations
+        ("channel", SHELLS, 0.01),  # rotations are recovered from translations
         ("mixed", (Assignment("quad4", thickness=0.003),), 0.01),
     ],
 )
@@ -116,7 +116,7 @@ def test_sheets_without_thickness_are_refused(kind):
     told = study(Design("sheet", mesh), modes)
     assert told.energies is None
     assert "need a thickness, since the ratio of bending to membrane depends on it" in told.no_energies
-    picture = single_picture(told, 7)       # still drawn, without colours
+    picture = single_picture(told, 7)  # still drawn, without colours
     assert picture.energy_top is None
     half = Design("sheet", mesh, Physics(assignments=(Assignment("all", thickness=0.001),)))
     assert study(half, modes).relative
@@ -174,7 +174,7 @@ def test_picture_and_tables_say_so():
 
 def test_energies_left_out_are_not_formed(monkeypatch):
     _, modes, _ = solved("bracket")
-    module = sys.modules["viewer.workspace.study"]      # the package's own "study" is the function
+    module = sys.modules["viewer.workspace.study"]  # the package's own "study" is the function
     monkeypatch.setattr(module, "relative_energies", lambda *_: pytest.fail("formed all the same"))
     picture = viewer.animate(bare("bracket"), modes, 1, energy=False).picture
     assert picture.energy_top is None
@@ -248,10 +248,14 @@ def test_assignments_of_several_kinds_are_told_apart():
     bricks = box_mesh("hex8", (8, 2, 1), (0.4, 0.06, 0.02))
     (block,) = bricks.blocks
     coat = CellBlock("quad4", block.nodes[:, 4:], 1000 + np.arange(len(block)))
-    coated = Design("coated", bricks.with_(blocks=(block, coat)), Physics(
-        {"steel": STEEL},
-        (Assignment("*", "steel", 1e-4), Assignment("hex8", "steel", formulation="hex8-full")),
-    ))
+    coated = Design(
+        "coated",
+        bricks.with_(blocks=(block, coat)),
+        Physics(
+            {"steel": STEEL},
+            (Assignment("*", "steel", 1e-4), Assignment("hex8", "steel", formulation="hex8-full")),
+        ),
+    )
     given = without_rotations(solve(coated, 8))
     loose = coated.with_(physics=Physics({"steel": STEEL}, (Assignment("*", "steel", 1e-4),)))
     found = better_formulation(study(loose, given))
@@ -310,9 +314,14 @@ def test_draft_for_a_bare_mesh_works_once_filled_in(name, tmp_path):
     unfilled = run("check", dossier)
     assert unfilled.exit_code == 1
     assert "Traceback" not in unfilled.output
-    marked = {"# youngs_modulus = ": "youngs_modulus = 205", "# poisson = ": "poisson = 0.3",
-              "# density = ": "density = 7850", "# supports": "supports", "# assign": "assign",
-              "thickness = }": "thickness = 0.002}"}
+    marked = {
+        "# youngs_modulus = ": "youngs_modulus = 205",
+        "# poisson = ": "poisson = 0.3",
+        "# density = ": "density = 7850",
+        "# supports": "supports",
+        "# assign": "assign",
+        "thickness = }": "thickness = 0.002}",
+    }
     for mark, filled in marked.items():
         text = text.replace(mark, filled)
     dossier.write_text(text.replace("solve = 6", "solve = 2"), encoding="utf-8")
@@ -327,9 +336,12 @@ def test_draft_for_a_bare_mesh_works_once_filled_in(name, tmp_path):
 def test_thickness_without_material_is_for_given_modes_only(tmp_path):
     head = 'title = "a"\n[[designs]]\nname = "a"\nmesh = "a.vtu"\n'
     for text, place in (
-        (head + 'assign = [{thickness = 2}]\n', "assign 1 says no material"),
-        (head + 'modes = "m.vtu"\nassign = [{material = "steel"}, {target = "x", thickness = 2}]\n'
-         "[materials.steel]\nyoungs_modulus = 2e11\npoisson = 0.3\ndensity = 7850\n", "assign 2 says no material"),
+        (head + "assign = [{thickness = 2}]\n", "assign 1 says no material"),
+        (
+            head + 'modes = "m.vtu"\nassign = [{material = "steel"}, {target = "x", thickness = 2}]\n'
+            "[materials.steel]\nyoungs_modulus = 2e11\npoisson = 0.3\ndensity = 7850\n",
+            "assign 2 says no material",
+        ),
     ):
         path = tmp_path / "dossier.toml"
         path.write_text(text)

@@ -49,7 +49,8 @@ links = [
 ]
 ties = [{name = "seam", nodes = {group = "edge"}, surface = {box = [[0, 0, 0], [1, 1, 1]]}, reach = 2}]
 """.replace("SECTION", "area = 300, iy = 1e4, iz = 2e4, torsion = 900, shear_up = 0.5").replace(
-    "OFFSETS", "offset = -5, offset_across = 4")
+    "OFFSETS", "offset = -5, offset_across = 4"
+)
 
 
 @pytest.fixture
@@ -60,6 +61,7 @@ def dossier(tmp_path):
     def write(text: str = TEXT):
         path.write_text(text, encoding="utf-8")
         return path
+
     return write
 
 
@@ -83,23 +85,26 @@ def test_everything_comes_out_in_si(dossier):
     np.testing.assert_allclose(physics.ties[0].surface.box[1], 1e-3)
 
 
-@pytest.mark.parametrize(("old", "new", "words"), [
-    ("youngs_modulus = 210\n", "", ["materials, steel", "'youngs_modulus' is missing"]),
-    ("g23 = 3.5\n", "", ["materials, ply", "'g23' is missing", "'e1', 'e2'"]),
-    ("g23 = 3.5\n", "g23 = 3.5\npoisson = 0.3\n", ["materials, ply", "mixes two kinds"]),
-    ('material = "steel", section', "section", ["assign 2", "says no material"]),
-    ("layers = [", 'material = "steel", layers = [', ["assign 4", "layers alone"]),
-    ('{material = "ply"', '{material = "plie"', ["assign 4, layers", "no material named 'plie'"]),
-    ("wall = 2", "wal = 2", ["assign 2, section", "unknown key 'wal'", "did you mean 'wall'"]),
-    ('shape = "tube"', 'shape = "pipe"', ["section, shape", "rectangle"]),
-    ("orientation = [0, 0, 2]", "orientation = [0, 0, 0]", ["assign 3, orientation", "no length"]),
-    ("from = {near = [0, 0, 500]}, ", "", ['links 1 ("bracket")', "'from' is missing"]),
-    ("to = {group", "tow = {group", ['links 1 ("bracket")', "unknown key 'tow'", "one of: name, from, to"]),
-    ("nodes = {group", "node = {group", ['ties 1 ("seam")', "unknown key 'node'", "did you mean 'nodes'"]),
-    ("from = {nodes = [3]}", "from = {}", ["links 2, from", "says no place"]),
-    ("reach = 2", "reach = -2", ["reach", "greater than 0"]),
-    ('{name = "bracket",', '{name = "link 2",', ["'link 2' is given twice"]),
-])
+@pytest.mark.parametrize(
+    ("old", "new", "words"),
+    [
+        ("youngs_modulus = 210\n", "", ["materials, steel", "'youngs_modulus' is missing"]),
+        ("g23 = 3.5\n", "", ["materials, ply", "'g23' is missing", "'e1', 'e2'"]),
+        ("g23 = 3.5\n", "g23 = 3.5\npoisson = 0.3\n", ["materials, ply", "mixes two kinds"]),
+        ('material = "steel", section', "section", ["assign 2", "says no material"]),
+        ("layers = [", 'material = "steel", layers = [', ["assign 4", "layers alone"]),
+        ('{material = "ply"', '{material = "plie"', ["assign 4, layers", "no material named 'plie'"]),
+        ("wall = 2", "wal = 2", ["assign 2, section", "unknown key 'wal'", "did you mean 'wall'"]),
+        ('shape = "tube"', 'shape = "pipe"', ["section, shape", "rectangle"]),
+        ("orientation = [0, 0, 2]", "orientation = [0, 0, 0]", ["assign 3, orientation", "no length"]),
+        ("from = {near = [0, 0, 500]}, ", "", ['links 1 ("bracket")', "'from' is missing"]),
+        ("to = {group", "tow = {group", ['links 1 ("bracket")', "unknown key 'tow'", "one of: name, from, to"]),
+        ("nodes = {group", "node = {group", ['ties 1 ("seam")', "unknown key 'node'", "did you mean 'nodes'"]),
+        ("from = {nodes = [3]}", "from = {}", ["links 2, from", "says no place"]),
+        ("reach = 2", "reach = -2", ["reach", "greater than 0"]),
+        ('{name = "bracket",', '{name = "link 2",', ["'link 2' is given twice"]),
+    ],
+)
 def test_mistakes_are_named(dossier, old, new, words):
     assert old in TEXT
     with pytest.raises(DossierError) as caught:
@@ -108,13 +113,22 @@ def test_mistakes_are_named(dossier, old, new, words):
         assert word in str(caught.value)
 
 
-@pytest.mark.parametrize(("old", "new"), [
-    ("offset = 1.5", "offset = 1.6"), ("wall = 2", "wall = 2.1"), ("angle = 45", "angle = 46"),
-    ("g23 = 3.5", "g23 = 3.6"), ("direction = [0, 3, 4]", "direction = [0, 3, 3]"), ("reach = 2", "reach = 3"),
-    ("near = [0, 0, 500]", "nodes = [9]"),
-])
+@pytest.mark.parametrize(
+    ("old", "new"),
+    [
+        ("offset = 1.5", "offset = 1.6"),
+        ("wall = 2", "wall = 2.1"),
+        ("angle = 45", "angle = 46"),
+        ("g23 = 3.5", "g23 = 3.6"),
+        ("direction = [0, 3, 4]", "direction = [0, 3, 3]"),
+        ("reach = 2", "reach = 3"),
+        ("near = [0, 0, 500]", "nodes = [9]"),
+    ],
+)
 def test_each_of_them_enters_the_key_of_a_solution(dossier, old, new):
     mesh = plate_mesh("quad4", (1, 1), (1, 1))
-    keys = {design_key(Design("d", mesh, read_dossier(dossier(text)).plans[0].physics))
-            for text in (TEXT, TEXT.replace(old, new, 1), TEXT)}
+    keys = {
+        design_key(Design("d", mesh, read_dossier(dossier(text)).plans[0].physics))
+        for text in (TEXT, TEXT.replace(old, new, 1), TEXT)
+    }
     assert len(keys) == 2

@@ -13,10 +13,15 @@ CLAMP = Support("root", Selector(group="x0"))
 
 def design(mesh, *, formulation="", thickness=None, material=STEEL, **physics):
     """A design of one material on every cell."""
-    return Design("test", mesh, Physics(
-        materials={material.name: material},
-        assignments=(Assignment("*", material.name, thickness, formulation),), **physics,
-    ))
+    return Design(
+        "test",
+        mesh,
+        Physics(
+            materials={material.name: material},
+            assignments=(Assignment("*", material.name, thickness, formulation),),
+            **physics,
+        ),
+    )
 
 
 def lone_nodes(count):

@@ -58,7 +58,9 @@ def mixed_mesh():
     corners = [[(x, y), (x + 1, y), (x + 1, y + 1), (x, y + 1)] for x, y in ((0, 0), (1, 0), (2, 0))]
     quads = np.array([[at[(float(a), float(b), 0.5)] for a, b in ring] for ring in corners])
     return Mesh(
-        points, (*box.blocks, CellBlock("quad4", quads, np.arange(101, 104))), np.arange(1, len(points) + 1),
+        points,
+        (*box.blocks, CellBlock("quad4", quads, np.arange(101, 104))),
+        np.arange(1, len(points) + 1),
         node_groups=box.node_groups,
     )
 
@@ -119,9 +121,16 @@ def test_springs_to_ground_between_nodes_and_along_an_axis():
         Spring("between", first, second, stiffness=[7, 0, 0, 0, 0, 0]),
         Spring("slanted", second, axis=[1, 1, 0], axial=4.0),
     )
-    system = assemble(design(mesh, springs=springs, supports=(
-        Support("a", Selector(nodes=[1]), ("uy", "uz", "rx", "ry")), Support("b", Selector(nodes=[2]), ("uz",)),
-    )))
+    system = assemble(
+        design(
+            mesh,
+            springs=springs,
+            supports=(
+                Support("a", Selector(nodes=[1]), ("uy", "uz", "rx", "ry")),
+                Support("b", Selector(nodes=[2]), ("uz",)),
+            ),
+        )
+    )
     ux1, rz1, ux2, uy2 = system.dof[0, 0], system.dof[0, 5], system.dof[1, 0], system.dof[1, 1]
     found = entries(system.K, [ux1, rz1, ux2, uy2])
     np.testing.assert_allclose(found, [[10, 0, -7, 0], [0, 5, 0, 0], [-7, 0, 9, 2], [0, 0, 2, 2]], atol=1e-12)
@@ -167,29 +176,39 @@ def other_density(value):
     return bad(material=type(STEEL)("alloy", 70e9, 0.33, value))
 
 
-@pytest.mark.parametrize(("model", "words"), [
-    (without_material, ["2 cells hex8", "no material", "assignment"]),
-    (lambda: bad(plate_mesh("quad4", (1, 1), (1, 1))), ["quad4", "thickness"]),
-    (lambda: bad(plate_mesh("quad4", (1, 1), (1, 1)), thickness=-1.0), ["quad4", "thickness", "-1"]),
-    (lambda: other_density(0.0), ["alloy", "density", "hex8"]),
-    (lambda: other_density(float("nan")), ["alloy", "density", "nan"]),
-    (lambda: bad(material=type(STEEL)("rubber", 1e6, 0.5, 1000.0)), ["rubber", "Poisson"]),
-    (folded, ["1 cells hex8 (ids 2", "Jacobian"]),
-    (loose_line, ["line3", "no element formulation", "kinds:"]),
-    (lambda: bad(formulation="hex8-magic"), ["hex8-magic", "hex8-incompatible"]),
-    (lambda: bad(lone_nodes(2)), ["no cell with a material"]),
-    (lambda: bad(supports=(Support("root", Selector(group="x0"), ("up",)),)), ["root", "up", "ux"]),
-    (lambda: bad(supports=(Support("root", Selector(group="x0"), ("rx",)),)), ["root", "holds nothing"]),
-    (lambda: bad(springs=(Spring("s", Selector(group="x0"), stiffness=[0, 0, 0, 1, 0, 0]),)),
-     ["rotations", "'s'"]),
-    (lambda: bad(springs=(Spring("s", Selector(group="x0")),)), ["'s'", "no stiffness"]),
-    (lambda: bad(springs=(Spring("s", Selector(group="x0"), stiffness=[-1, 0, 0, 0, 0, 0]),)), ["'s'", "negative"]),
-    (lambda: bad(springs=(Spring("s", Selector(group="x0"), Selector(group="x1"), [1] * 6),)), ["one node"]),
-    (lambda: bad(masses=(LumpedMass("m", Selector(group="x0"), -1.0),)), ["'m'", "negative"]),
-    (lambda: bad(masses=(LumpedMass("m", Selector(group="x0"), 1.0, None, -np.eye(3)),)), ["'m'", "inertia"]),
-    (lambda: bad(lone_nodes(2), springs=(Spring("s", Selector(nodes=[1]), stiffness=[1, 0, 0, 0, 0, 0]),)),
-     ["neither stiffness nor mass", "uy of node 1", "support"]),
-])
+@pytest.mark.parametrize(
+    ("model", "words"),
+    [
+        (without_material, ["2 cells hex8", "no material", "assignment"]),
+        (lambda: bad(plate_mesh("quad4", (1, 1), (1, 1))), ["quad4", "thickness"]),
+        (lambda: bad(plate_mesh("quad4", (1, 1), (1, 1)), thickness=-1.0), ["quad4", "thickness", "-1"]),
+        (lambda: other_density(0.0), ["alloy", "density", "hex8"]),
+        (lambda: other_density(float("nan")), ["alloy", "density", "nan"]),
+        (lambda: bad(material=type(STEEL)("rubber", 1e6, 0.5, 1000.0)), ["rubber", "Poisson"]),
+        (folded, ["1 cells hex8 (ids 2", "Jacobian"]),
+        (loose_line, ["line3", "no element formulation", "kinds:"]),
+        (lambda: bad(formulation="hex8-magic"), ["hex8-magic", "hex8-incompatible"]),
+        (lambda: bad(lone_nodes(2)), ["no cell with a material"]),
+        (lambda: bad(supports=(Support("root", Selector(group="x0"), ("up",)),)), ["root", "up", "ux"]),
+        (lambda: bad(supports=(Support("root", Selector(group="x0"), ("rx",)),)), ["root", "holds nothing"]),
+        (
+            lambda: bad(springs=(Spring("s", Selector(group="x0"), stiffness=[0, 0, 0, 1, 0, 0]),)),
+            ["rotations", "'s'"],
+        ),
+        (lambda: bad(springs=(Spring("s", Selector(group="x0")),)), ["'s'", "no stiffness"]),
+        (
+            lambda: bad(springs=(Spring("s", Selector(group="x0"), stiffness=[-1, 0, 0, 0, 0, 0]),)),
+            ["'s'", "negative"],
+        ),
+        (lambda: bad(springs=(Spring("s", Selector(group="x0"), Selector(group="x1"), [1] * 6),)), ["one node"]),
+        (lambda: bad(masses=(LumpedMass("m", Selector(group="x0"), -1.0),)), ["'m'", "negative"]),
+        (lambda: bad(masses=(LumpedMass("m", Selector(group="x0"), 1.0, None, -np.eye(3)),)), ["'m'", "inertia"]),
+        (
+            lambda: bad(lone_nodes(2), springs=(Spring("s", Selector(nodes=[1]), stiffness=[1, 0, 0, 0, 0, 0]),)),
+            ["neither stiffness nor mass", "uy of node 1", "support"],
+        ),
+    ],
+)
 def test_what_a_design_lacks_is_said_in_one_message(model, words):
     with pytest.raises(ModelError) as caught:
         assemble(model())
@@ -210,10 +229,12 @@ def test_mass_on_a_node_of_no_cell():
 def test_later_assignment_by_group_makes_its_own_element_group():
     mesh = box_mesh("hex8", (2, 1, 1), (2, 1, 1)).with_(cell_groups={"tip": [1]})
     light = type(STEEL)("light", 70e9, 0.33, 2700.0)
-    model = design(mesh).with_(physics=Physics(
-        materials={"steel": STEEL, "light": light},
-        assignments=(Assignment("*", "steel"), Assignment("tip", "light")),
-    ))
+    model = design(mesh).with_(
+        physics=Physics(
+            materials={"steel": STEEL, "light": light},
+            assignments=(Assignment("*", "steel"), Assignment("tip", "light")),
+        )
+    )
     system = assemble(model)
     assert [group.prop.material.name for group in system.blocks] == ["steel", "light"]
     ones = system.gather(np.broadcast_to([1.0, 0, 0], mesh.points.shape))

@@ -29,8 +29,11 @@ def prop(section=FLAT, up=(0, 0.3, 1), **more) -> Property:
 
 
 def beam(points, section=FLAT, up=(0, 0, 1), formulation="", offset=0.0, **physics) -> Design:
-    return Design("beam", line_mesh(points), Physics(
-        {"steel": STEEL}, (Assignment("*", "steel", None, formulation, section, up, offset),), **physics))
+    return Design(
+        "beam",
+        line_mesh(points),
+        Physics({"steel": STEEL}, (Assignment("*", "steel", None, formulation, section, up, offset),), **physics),
+    )
 
 
 def straight(cells: int, length: float = 1.0, along=(1, 0, 0)):
@@ -69,10 +72,18 @@ def test_inertia_of_a_straight_bar_is_that_of_the_block(offset):
     motion = rigid(np.array([[-length / 2, 0, 0], [length / 2, 0, 0]]))
     points = np.array([[[-length / 2, 0, 0], [length / 2, 0, 0]]])
     total = motion.T @ BEAMS[0].mass(points, prop(up=(0, 0, 1), offset=offset))[0] @ motion
-    np.testing.assert_allclose(np.diag(total)[3:], mass * np.array([
-        (width**2 + height**2) / 12 + offset**2, (length**2 + height**2) / 12 + offset**2,
-        (length**2 + width**2) / 12,
-    ]), rtol=1e-12)
+    np.testing.assert_allclose(
+        np.diag(total)[3:],
+        mass
+        * np.array(
+            [
+                (width**2 + height**2) / 12 + offset**2,
+                (length**2 + height**2) / 12 + offset**2,
+                (length**2 + width**2) / 12,
+            ]
+        ),
+        rtol=1e-12,
+    )
     assert total[0, 4] == pytest.approx(mass * offset)
 
 
@@ -117,8 +128,13 @@ def test_sections_b16_b20():
 
 def test_energies_of_a_bent_frame_add_up():
     points = np.array([[0, 0, 0], [0.5, 0, 0], [1, 0, 0], [1, 0.5, 0], [1, 0.5, 0.4], [1.0, 0.9, 0.6]])
-    model = beam(points, Section("tube", diameter=0.03, wall=0.002), None, supports=(
-        Support("root", Selector(group="x0")),), masses=(LumpedMass("tip", Selector(group="x1"), 2.0),))
+    model = beam(
+        points,
+        Section("tube", diameter=0.03, wall=0.002),
+        None,
+        supports=(Support("root", Selector(group="x0")),),
+        masses=(LumpedMass("tip", Selector(group="x1"), 2.0),),
+    )
     modes, system = solve(model, 6), assemble(model)
     found = energies(model, modes)
     shapes = system.gather(modes.shapes.moved, modes.shapes.turned)
@@ -147,18 +163,21 @@ def test_square_sections_bend_alike_whatever_their_orientation():
     np.testing.assert_allclose(found[1:], [found[0]] * 2, rtol=1e-6)
 
 
-@pytest.mark.parametrize(("change", "words"), [
-    ({"section": None}, ["1 cells line2", "beams without section"]),
-    ({"section": Section("hexagon")}, ["hexagon", "rectangle, round, tube"]),
-    ({"section": Section("rectangle", width=1.0)}, ["height is missing"]),
-    ({"section": Section("round", diameter=1.0, wall=0.1)}, ["wall does not belong"]),
-    ({"section": Section("round", diameter=-1.0)}, ["diameter is impossible"]),
-    ({"section": Section("tube", diameter=0.1, wall=0.06)}, ["thicker than half"]),
-    ({"section": Section("given", area=1, iy=1, iz=1)}, ["torsion is missing"]),
-    ({"up": None}, ["need an orientation"]),
-    ({"up": (1, 0, 0)}, ["run along their own orientation", "(0.5, 0, 0)"]),
-    ({"formulation": "line2-magic"}, ["line2-magic", "line2-timoshenko"]),
-])
+@pytest.mark.parametrize(
+    ("change", "words"),
+    [
+        ({"section": None}, ["1 cells line2", "beams without section"]),
+        ({"section": Section("hexagon")}, ["hexagon", "rectangle, round, tube"]),
+        ({"section": Section("rectangle", width=1.0)}, ["height is missing"]),
+        ({"section": Section("round", diameter=1.0, wall=0.1)}, ["wall does not belong"]),
+        ({"section": Section("round", diameter=-1.0)}, ["diameter is impossible"]),
+        ({"section": Section("tube", diameter=0.1, wall=0.06)}, ["thicker than half"]),
+        ({"section": Section("given", area=1, iy=1, iz=1)}, ["torsion is missing"]),
+        ({"up": None}, ["need an orientation"]),
+        ({"up": (1, 0, 0)}, ["run along their own orientation", "(0.5, 0, 0)"]),
+        ({"formulation": "line2-magic"}, ["line2-magic", "line2-timoshenko"]),
+    ],
+)
 def test_what_a_beam_lacks_is_said(change, words):
     with pytest.raises(ModelError) as caught:
         assemble(beam(straight(1), **change))

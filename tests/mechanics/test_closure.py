@@ -55,15 +55,19 @@ def test_best_formulation_names_the_one_that_made_the_modes():
     assert best.sentence.startswith("hex8-full closes best")
     assert best_formulation(clamped(), QUADRATIC).names == {"hex8": "hex8-incompatible"}
     with pytest.raises(RefusedError, match="elastic"):
-        best_formulation(clamped(supports=()), FREE.with_(
-            freq_hz=FREE.freq_hz[:2], shapes=ArrayShapes(FREE.shapes.moved[:2])))
+        best_formulation(
+            clamped(supports=()), FREE.with_(freq_hz=FREE.freq_hz[:2], shapes=ArrayShapes(FREE.shapes.moved[:2]))
+        )
 
 
-@pytest.mark.parametrize(("material", "ratio"), [
-    (Material("half as stiff", 100e9, 0.3, 8000), np.sqrt(0.5)),
-    (Material("aluminium density", 200e9, 0.3, 2700), np.sqrt(8000 / 2700)),
-    (Material("tonnes and millimetres", 200e9, 0.3, 8e-9), np.sqrt(1e12)),
-])
+@pytest.mark.parametrize(
+    ("material", "ratio"),
+    [
+        (Material("half as stiff", 100e9, 0.3, 8000), np.sqrt(0.5)),
+        (Material("aluminium density", 200e9, 0.3, 2700), np.sqrt(8000 / 2700)),
+        (Material("tonnes and millimetres", 200e9, 0.3, 8e-9), np.sqrt(1e12)),
+    ],
+)
 def test_wrong_material_shows_in_closure(material, ratio):
     found = energies(clamped(material, formulation="hex8-full"), TRILINEAR)
     np.testing.assert_allclose(found.closure, ratio, rtol=1e-8)
@@ -71,8 +75,10 @@ def test_wrong_material_shows_in_closure(material, ratio):
     assert "NOT to be trusted" in found.sentence(0)
 
 
-@pytest.mark.parametrize("supports", [(), (CLAMP, Support("tip", Selector(group="x1"))), (
-    CLAMP, Support("side", Selector(group="y0"), ("uy",)))])
+@pytest.mark.parametrize(
+    "supports",
+    [(), (CLAMP, Support("tip", Selector(group="x1"))), (CLAMP, Support("side", Selector(group="y0"), ("uy",)))],
+)
 def test_modes_of_another_support_close_but_leave_a_residual(supports):
     """Energies know nothing of supports: closure is 1 to rounding, only the residual tells."""
     found = energies(clamped(formulation="hex8-full", supports=supports), TRILINEAR)
@@ -119,14 +125,17 @@ def in_two_halves(stiff, heavy):
     outer = np.nonzero(BAR.points[BAR.blocks[0].nodes].mean(axis=1)[:, 0] > 1.0)[0]
 
     def model(scale):
-        return clamped().with_(mesh=BAR.with_(cell_groups={"outer": outer}), physics=Physics(
-            materials={
-                "in": Material("in", 200e9 * scale, 0.3, 8000),
-                "out": Material("out", 200e9 * scale * stiff, 0.3, 8000 * heavy),
-            },
-            assignments=(Assignment("*", "in", None, "hex8-full"), Assignment("outer", "out", None, "hex8-full")),
-            supports=(CLAMP,),
-        ))
+        return clamped().with_(
+            mesh=BAR.with_(cell_groups={"outer": outer}),
+            physics=Physics(
+                materials={
+                    "in": Material("in", 200e9 * scale, 0.3, 8000),
+                    "out": Material("out", 200e9 * scale * stiff, 0.3, 8000 * heavy),
+                },
+                assignments=(Assignment("*", "in", None, "hex8-full"), Assignment("outer", "out", None, "hex8-full")),
+                supports=(CLAMP,),
+            ),
+        )
 
     scale = float(energies(model(1.0), TRILINEAR, [0]).closure[0]) ** -2
     return model(scale), outer
@@ -143,11 +152,14 @@ def test_wrong_distribution_of_material_that_closes_leaves_a_residual(stiff, hea
 def test_residual_sits_where_the_model_is_wrong():
     centres = BAR.points[BAR.blocks[0].nodes].mean(axis=1)[:, 0]
     soft = np.nonzero((centres > 0.5) & (centres < 0.75))[0]
-    model = clamped().with_(mesh=BAR.with_(cell_groups={"soft": soft}), physics=Physics(
-        materials={"steel": STEEL, "soft": Material("soft", 20e9, 0.3, 8000)},
-        assignments=(Assignment("*", "steel", None, "hex8-full"), Assignment("soft", "soft", None, "hex8-full")),
-        supports=(CLAMP,),
-    ))
+    model = clamped().with_(
+        mesh=BAR.with_(cell_groups={"soft": soft}),
+        physics=Physics(
+            materials={"steel": STEEL, "soft": Material("soft", 20e9, 0.3, 8000)},
+            assignments=(Assignment("*", "steel", None, "hex8-full"), Assignment("soft", "soft", None, "hex8-full")),
+            supports=(CLAMP,),
+        ),
+    )
     found = energies(model, TRILINEAR)
     np.testing.assert_allclose(found.residual_cells.sum(axis=1), found.residual, rtol=1e-9)
     slabs = [found.residual_cells[:, (centres // 0.25) == i].sum(axis=1) for i in range(8)]

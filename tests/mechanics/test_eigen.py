@@ -15,9 +15,13 @@ from viewer.mechanics.assembly import assemble
 from viewer.mechanics.patch import rigid_fields
 from viewer.model.design import LumpedMass, Selector, Spring, Support
 
-BAR = box_mesh("hex8", (8, 3, 3), (2.0, 0.3, 0.3))     # square section: bending modes come in equal pairs
-SOLVERS = ["superlu", pytest.param("pardiso", marks=pytest.mark.skipif(
-    factor._mkl() is None, reason="the extra 'fast' is not installed"))]
+BAR = box_mesh("hex8", (8, 3, 3), (2.0, 0.3, 0.3))  # square section: bending modes come in equal pairs
+SOLVERS = [
+    "superlu",
+    pytest.param(
+        "pardiso", marks=pytest.mark.skipif(factor._mkl() is None, reason="the extra 'fast' is not installed")
+    ),
+]
 
 
 @pytest.mark.parametrize("solver", SOLVERS)
@@ -107,7 +111,8 @@ def spring_chain(middle_mass):
     if middle_mass:
         masses.append(LumpedMass("b", at[1], middle_mass))
     return design(
-        lone_nodes(3), masses=tuple(masses),
+        lone_nodes(3),
+        masses=tuple(masses),
         springs=(Spring("0", at[0], None, k), Spring("1", at[0], at[1], k), Spring("2", at[1], at[2], k)),
         supports=(Support("guide", Selector(nodes=[1, 2, 3]), ("uy", "uz")),),
     )
@@ -126,12 +131,16 @@ def test_direction_without_mass_follows_statically():
 def test_direction_without_mass_in_a_large_model(solver):
     """A massless node on soft springs in series at the tip of a bar acts like one spring of half the stiffness."""
     mesh = BAR.with_(
-        points=np.vstack([BAR.points, [2.5, 0.15, 0.15]]), node_ids=np.append(BAR.node_ids, 900),
+        points=np.vstack([BAR.points, [2.5, 0.15, 0.15]]),
+        node_ids=np.append(BAR.node_ids, 900),
     )
     tip, stray = Selector(near=[2.0, 0.1, 0.1]), Selector(nodes=[900])
     k = np.array([0, 4e6, 0, 0, 0, 0])
-    series = design(mesh, supports=(CLAMP, Support("guide", stray, ("ux", "uz"))), springs=(
-        Spring("near", tip, stray, k), Spring("far", stray, None, k)))
+    series = design(
+        mesh,
+        supports=(CLAMP, Support("guide", stray, ("ux", "uz"))),
+        springs=(Spring("near", tip, stray, k), Spring("far", stray, None, k)),
+    )
     single = design(BAR, supports=(CLAMP,), springs=(Spring("both", tip, None, k / 2),))
     np.testing.assert_allclose(
         eigen.solve(series, 5, solver=solver).freq_hz, eigen.solve(single, 5, solver=solver).freq_hz, rtol=1e-8
@@ -149,12 +158,15 @@ def test_soft_suspension_is_not_taken_for_a_rigid_body():
     """A body of 1440 kg on 4 springs of 1 N/m in z: √(4/m)/2π = 8.4 mHz, five decades below its bending."""
     corners = np.array([1, 2, 3, 4])
     mesh = box_mesh("hex8", (8, 3, 3), (2.0, 0.3, 0.3))
-    ends = mesh.node_ids[np.isin(mesh.points[:, 2], [0.0]) & np.isin(mesh.points[:, 0], [0.0, 2.0])
-                         & ((mesh.points[:, 1] == 0) | np.isclose(mesh.points[:, 1], 0.3))]
+    ends = mesh.node_ids[
+        np.isin(mesh.points[:, 2], [0.0])
+        & np.isin(mesh.points[:, 0], [0.0, 2.0])
+        & ((mesh.points[:, 1] == 0) | np.isclose(mesh.points[:, 1], 0.3))
+    ]
     assert len(ends) == len(corners)
     modes = eigen.solve(design(mesh, springs=(Spring("s", Selector(nodes=ends), None, [0, 0, 1.0, 0, 0, 0]),)), 7)
     bounce = np.sqrt(4 / 1440) / (2 * np.pi)
-    assert (modes.freq_hz[:3] == 0).all()          # sliding along x and y, turning about z
+    assert (modes.freq_hz[:3] == 0).all()  # sliding along x and y, turning about z
     assert np.abs(modes.freq_hz[3:6] / bounce - 1).min() < 1e-3
     assert (modes.freq_hz[3:6] > 0.5 * bounce).all()
 

@@ -23,7 +23,9 @@ MESHES = {
     "quadratic tetrahedra": (box_mesh("tet10", (4, 1, 1), (1.0, 0.2, 0.1)), None),
     "shells": (plate_mesh("quad4", (6, 3), (1.0, 0.5), 0.2), 0.01),
     "two kinds": (
-        merged(box_mesh("hex8", (6, 2, 2), (1.0, 0.2, 0.1)), box_mesh("tet4", (6, 2, 2), (1.0, 0.2, 0.1))), None),
+        merged(box_mesh("hex8", (6, 2, 2), (1.0, 0.2, 0.1)), box_mesh("tet4", (6, 2, 2), (1.0, 0.2, 0.1))),
+        None,
+    ),
 }
 FITTINGS = {
     "springs": (
@@ -55,9 +57,11 @@ def chain(k1, k2, k3):
     """Row S01: K = [[k1 + k2, −k2], [−k2, k2 + k3]], M = I along x."""
     at = [Selector(nodes=[1]), Selector(nodes=[2])]
     return design(
-        lone_nodes(2), masses=(LumpedMass("first", at[0], 1.0), LumpedMass("second", at[1], 1.0)),
+        lone_nodes(2),
+        masses=(LumpedMass("first", at[0], 1.0), LumpedMass("second", at[1], 1.0)),
         springs=(
-            Spring("ground 1", at[0], None, [k1, 0, 0, 0, 0, 0]), Spring("between", *at, [k2, 0, 0, 0, 0, 0]),
+            Spring("ground 1", at[0], None, [k1, 0, 0, 0, 0, 0]),
+            Spring("between", *at, [k2, 0, 0, 0, 0, 0]),
             Spring("ground 2", at[1], None, [k3, 0, 0, 0, 0, 0]),
         ),
         supports=(Support("guide", Selector(nodes=[1, 2]), ("uy", "uz")),),
@@ -94,7 +98,7 @@ def test_constant_strain_has_uniform_density(kind):
     found = energies(design(mesh), stretched(mesh))
     np.testing.assert_allclose(found.density(0), 1, rtol=1e-9)
     assert found.volumes.sum() == pytest.approx(1)
-    modulus = STEEL.youngs_modulus * 0.7 / (1.3 * 0.4)   # E(1 − ν)/((1 + ν)(1 − 2ν)), lateral strain held
+    modulus = STEEL.youngs_modulus * 0.7 / (1.3 * 0.4)  # E(1 − ν)/((1 + ν)(1 − 2ν)), lateral strain held
     assert found.total_strain[0] == pytest.approx(0.5 * modulus)
 
 

@@ -73,8 +73,10 @@ def test_rigid_motions_and_constant_strain_of_single_cells(jitter):
         strains[range(6), flat_brick.FIRST, flat_brick.SECOND] = 0.5
         moved = xyz @ (strains + np.swapaxes(strains, 1, 2))
         np.testing.assert_allclose(
-            np.einsum("in,nm,jm->ij", moved.reshape(6, -1), matrix, moved.reshape(6, -1)), moduli * volume,
-            rtol=0, atol=1e-9 * moduli.max() * volume,
+            np.einsum("in,nm,jm->ij", moved.reshape(6, -1), matrix, moved.reshape(6, -1)),
+            moduli * volume,
+            rtol=0,
+            atol=1e-9 * moduli.max() * volume,
         )
 
 
@@ -85,7 +87,8 @@ def test_numbering_does_not_matter():
         places = (3 * nodes[:, None] + np.arange(3)).ravel()
         turned = ELEMENT.stiffness(cells[:, nodes], ALUMINIUM)
         np.testing.assert_allclose(
-            turned, stiffness[:, places][:, :, places], rtol=0, atol=1e-12 * np.abs(stiffness).max())
+            turned, stiffness[:, places][:, :, places], rtol=0, atol=1e-12 * np.abs(stiffness).max()
+        )
 
 
 @pytest.mark.parametrize("shape", [{}, {"lean": 0.8}, {"warp": 0.5}, {"lean": 0.8, "warp": 0.5}, {"layers": 3}])
@@ -158,7 +161,7 @@ def test_curved_wall():
         share.append(load @ moved / ((np.pi / 4 - 2 / np.pi) / (1e9 * inertia)))
     error = 1 - np.array(share)
     assert 0 < error[1] < 0.02
-    assert error[0] / error[1] == pytest.approx(4, rel=0.1)        # second order, as polygons approach the circle
+    assert error[0] / error[1] == pytest.approx(4, rel=0.1)  # second order, as polygons approach the circle
 
 
 def test_stiffness_passes_smoothly_from_wall_to_solid():

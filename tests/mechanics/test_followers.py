@@ -97,8 +97,12 @@ def test_linked_body_moves_rigidly_and_keeps_its_mass():
 
 
 def test_energies_of_linked_modes_add_up():
-    model = design(CAPPED, links=(CAP,), supports=(CLAMP,), masses=(
-        LumpedMass("camera", Selector(nodes=[9999]), 3.0, None, np.diag([0.1, 0.2, 0.3])),))
+    model = design(
+        CAPPED,
+        links=(CAP,),
+        supports=(CLAMP,),
+        masses=(LumpedMass("camera", Selector(nodes=[9999]), 3.0, None, np.diag([0.1, 0.2, 0.3])),),
+    )
     modes, system = solve(model, 5), assemble(model)
     found = energies(model, modes)
     shapes = system.gather(modes.shapes.moved, modes.shapes.turned)
@@ -124,18 +128,32 @@ def test_link_equals_a_stiff_plate():
     nodes = whole.blocks[1].nodes.copy()
     for a in whole.node_groups["1x0"]:
         nodes[nodes == a] = whole.node_groups["0x1"][
-            np.linalg.norm(whole.points[whole.node_groups["0x1"]] - whole.points[a], axis=1).argmin()]
+            np.linalg.norm(whole.points[whole.node_groups["0x1"]] - whole.points[a], axis=1).argmin()
+        ]
     stiff = Material("stiff", 200e15, 0.3, 1e-6)
     mesh = whole.with_(
         blocks=(whole.blocks[0], CellBlock("hex8", nodes, whole.blocks[1].ids)),
         cell_groups={"bar": np.arange(24), "plate": np.arange(24, 28)},
     )
     root = Support("root", Selector(group="0x0"))
-    plated = Design("plated", mesh, Physics(
-        {"steel": STEEL, "stiff": stiff}, (Assignment("bar", "steel"), Assignment("plate", "stiff")), (root,)))
+    plated = Design(
+        "plated",
+        mesh,
+        Physics(
+            {"steel": STEEL, "stiff": stiff}, (Assignment("bar", "steel"), Assignment("plate", "stiff")), (root,)
+        ),
+    )
     bar = with_reference_node(mesh.with_(blocks=mesh.blocks[:1], cell_groups={}), [1.0, 0.1, 0.05])
-    linked = Design("linked", bar, Physics({"steel": STEEL}, (Assignment("*", "steel"),), (root,), links=(
-        Link("end", Selector(nodes=[9999]), Selector(group="0x1")),)))
+    linked = Design(
+        "linked",
+        bar,
+        Physics(
+            {"steel": STEEL},
+            (Assignment("*", "steel"),),
+            (root,),
+            links=(Link("end", Selector(nodes=[9999]), Selector(group="0x1")),),
+        ),
+    )
     np.testing.assert_allclose(solve(linked, 6).freq_hz, solve(plated, 6).freq_hz, rtol=1e-5)
 
 
@@ -144,10 +162,12 @@ def test_chained_links_pass_through():
     mesh = with_reference_node(CAPPED, [2.0, 0.3, 0.0])
     mesh = mesh.with_(node_ids=np.append(mesh.node_ids[:-1], 9998))
     body = (LumpedMass("far", Selector(nodes=[9998]), 2.0, None, np.eye(3)),)
-    through = design(mesh, supports=(CLAMP,), masses=body, links=(
-        CAP, Link("arm", Selector(nodes=[9999]), Selector(nodes=[9998]))))
-    turned = design(mesh, supports=(CLAMP,), masses=body, links=(
-        Link("arm", Selector(nodes=[9998]), Selector(nodes=[9999])), CAP))
+    through = design(
+        mesh, supports=(CLAMP,), masses=body, links=(CAP, Link("arm", Selector(nodes=[9999]), Selector(nodes=[9998])))
+    )
+    turned = design(
+        mesh, supports=(CLAMP,), masses=body, links=(Link("arm", Selector(nodes=[9998]), Selector(nodes=[9999])), CAP)
+    )
     np.testing.assert_allclose(solve(through, 5).freq_hz, solve(turned, 5).freq_hz, rtol=1e-9)
 
 
@@ -174,7 +194,7 @@ def test_a_rigid_bar_between_two_solid_nodes_has_no_loose_spin():
     assert found.freq_hz[6] > 100
     np.testing.assert_allclose(energies(model, found).closure[6:], 1, atol=1e-8)
     there = solve(design(BAR), 9).freq_hz
-    assert (found.freq_hz[6:] >= there[6:] * (1 - 1e-9)).all()       # a constraint never lowers a frequency
+    assert (found.freq_hz[6:] >= there[6:] * (1 - 1e-9)).all()  # a constraint never lowers a frequency
 
 
 # ---------------------------------------------------------------- ties
@@ -199,7 +219,7 @@ def test_tied_meshes_move_rigidly(name, gap):
     assert found[6] > 100
 
 
-PATCH_ERROR = 0.04      # of the largest displacement; measured 0.033 on these two or three cells a side
+PATCH_ERROR = 0.04  # of the largest displacement; measured 0.033 on these two or three cells a side
 
 
 @pytest.mark.parametrize("name", TIED)
@@ -210,8 +230,14 @@ def test_patch_through_a_tie(name):
     field = 1e-3 * mesh.points @ np.array([[1.0, 0.2, 0], [0.3, -0.5, 0.1], [0.2, 0.1, 0.7]])
     vector = system.gather(field)
     x, y, z = mesh.points.T
-    outer = (np.isclose(x, 0) | np.isclose(x, 1) | np.isclose(y, 0) | np.isclose(y, 0.6) | np.isclose(z, 0)
-             | np.isclose(z, 0.7))
+    outer = (
+        np.isclose(x, 0)
+        | np.isclose(x, 1)
+        | np.isclose(y, 0)
+        | np.isclose(y, 0.6)
+        | np.isclose(z, 0)
+        | np.isclose(z, 0.7)
+    )
     known = np.isin(system.free, system.dof[outer, :3])
     stiffness = system.restrict(system.K)
     found = vector[system.free].copy()
@@ -233,8 +259,9 @@ def test_tied_cantilever_against_the_whole_one():
         upper = moved(box_mesh("hex8", (8 * n, 3 * n, n), (1.0, 0.2, 0.05)), [0, 0, 0.05])
         mesh = joined(upper, lower)
         roots = Selector(nodes=mesh.node_ids[np.isclose(mesh.points[:, 0], 0)])
-        model = design(mesh, supports=(Support("root", roots),), ties=(
-            Tie("seam", Selector(group="0z0"), Selector(group="1")),))
+        model = design(
+            mesh, supports=(Support("root", roots),), ties=(Tie("seam", Selector(group="0z0"), Selector(group="1")),)
+        )
         errors.append(np.abs(solve(model, 4).freq_hz / whole - 1).max())
     assert errors[1] < 0.015
     assert errors[1] < 0.5 * errors[0]
@@ -247,8 +274,7 @@ def test_a_tie_of_like_meshes_is_a_weld():
     roots = Selector(nodes=mesh.node_ids[np.isclose(mesh.points[:, 0], 0)])
     seam = Tie("s", Selector(group="1z0"), Selector(group="0"))
     model = design(mesh, supports=(Support("root", roots),), ties=(seam,))
-    np.testing.assert_allclose(
-        solve(model, 5).freq_hz, solve(design(whole, supports=(CLAMP,)), 5).freq_hz, rtol=1e-8)
+    np.testing.assert_allclose(solve(model, 5).freq_hz, solve(design(whole, supports=(CLAMP,)), 5).freq_hz, rtol=1e-8)
 
 
 def test_shell_tied_to_a_solid_turns_with_it():
@@ -256,11 +282,16 @@ def test_shell_tied_to_a_solid_turns_with_it():
     clamp; untied rotations would let it swing free."""
     block = box_mesh("hex8", (4, 4, 2), (0.4, 0.4, 0.2))
     flat = plate_mesh("quad4", (5, 8), (0.3, 0.4))
-    sheet = flat.with_(points=np.column_stack([flat.points[:, 0] + 0.05, np.full(flat.n_nodes, 0.21),
-                                               flat.points[:, 1] + 0.2]))
+    sheet = flat.with_(
+        points=np.column_stack([flat.points[:, 0] + 0.05, np.full(flat.n_nodes, 0.21), flat.points[:, 1] + 0.2])
+    )
     mesh = joined(block, sheet)
-    tied = design(mesh, thickness=0.004, ties=(Tie("foot", Selector(group="1y0"), Selector(group="0")),), supports=(
-        Support("base", Selector(group="0z0")),))
+    tied = design(
+        mesh,
+        thickness=0.004,
+        ties=(Tie("foot", Selector(group="1y0"), Selector(group="0")),),
+        supports=(Support("base", Selector(group="0z0")),),
+    )
     system = assemble(tied)
     assert "6 of them in rotation too" in system.statements[0]
     assert any("foot" in text and "soft" in text for text in system.cautions)
@@ -293,12 +324,14 @@ def test_nodes_tied_off_a_shell_follow_its_rotation():
     link = Link("arm", Selector(nodes=[9999]), Selector(nodes=[9998]))
     mesh = with_reference_node(mesh, [0.45, 0.55, 0.3]).with_(node_ids=np.append(mesh.node_ids, 9998))
     tie = Tie("stud", Selector(nodes=[9999]), Selector(group="all"))
-    model = design(mesh, thickness=0.01, ties=(tie,), links=(link,), masses=(
-        LumpedMass("weight", Selector(nodes=[9998]), 1.0),))
+    model = design(
+        mesh, thickness=0.01, ties=(tie,), links=(link,), masses=(LumpedMass("weight", Selector(nodes=[9998]), 1.0),)
+    )
     follows_rigid_motions(assemble(model))
 
 
 # ---------------------------------------------------------------- what is said
+
 
 def far_tie(reach=None):
     mesh = joined(LOWER, moved(TIED["hex8 on hex8"], [0, 0, 0.5]))
@@ -308,23 +341,44 @@ def far_tie(reach=None):
 FOOT = Selector(group="x1")
 
 
-@pytest.mark.parametrize(("model", "words"), [
-    (lambda: design(CAPPED, links=(Link("cap", FOOT, FOOT),)), ["'cap'", "one node that leads", "9 and 9 nodes"]),
-    (lambda: design(CAPPED, links=(Link("cap", Selector(nodes=[9999]), Selector(nodes=[9999])),)), ["no node that"]),
-    (lambda: design(CAPPED, links=(CAP, Link("cup", Selector(nodes=[1]), FOOT))),
-     ["follows twice", "'cap'", "'cup'"]),
-    (lambda: design(CAPPED, links=(CAP, Link("cup", Selector(near=[1, 0, 0]), Selector(nodes=[9999])))),
-     ["circle", "'c"]),
-    (lambda: design(CAPPED, links=(CAP,), supports=(Support("tip", FOOT, ("uy",)),)),
-     ["holds uy of node", "follows others in link 'cap'", "hold the nodes that lead"]),
-    (far_tie, ["'seam'", "20 nodes lie too far", "0.5 m away", "at most 0.167 m"]),
-    (lambda: far_tie(0.4), ["at most 0.4 m"]),
-    (lambda: design(joined(LOWER, TIED["hex8 on hex8"]), ties=(Tie("seam", Selector(group="1z0"),
-                                                                   Selector(group="0x0y0")),)), ["0x0y0"]),
-    (lambda: design(joined(LOWER, TIED["hex8 on hex8"]), ties=(
-        Tie("s", Selector(group="1z0"), Selector(nodes=[1])),)), ["'s'", "no face"]),
-    (lambda: design(CAPPED, ties=(Tie("s", Selector(nodes=[9999]), Selector(group="x1")),)), ["no cell", "9999"]),
-])
+@pytest.mark.parametrize(
+    ("model", "words"),
+    [
+        (lambda: design(CAPPED, links=(Link("cap", FOOT, FOOT),)), ["'cap'", "one node that leads", "9 and 9 nodes"]),
+        (
+            lambda: design(CAPPED, links=(Link("cap", Selector(nodes=[9999]), Selector(nodes=[9999])),)),
+            ["no node that"],
+        ),
+        (
+            lambda: design(CAPPED, links=(CAP, Link("cup", Selector(nodes=[1]), FOOT))),
+            ["follows twice", "'cap'", "'cup'"],
+        ),
+        (
+            lambda: design(CAPPED, links=(CAP, Link("cup", Selector(near=[1, 0, 0]), Selector(nodes=[9999])))),
+            ["circle", "'c"],
+        ),
+        (
+            lambda: design(CAPPED, links=(CAP,), supports=(Support("tip", FOOT, ("uy",)),)),
+            ["holds uy of node", "follows others in link 'cap'", "hold the nodes that lead"],
+        ),
+        (far_tie, ["'seam'", "20 nodes lie too far", "0.5 m away", "at most 0.167 m"]),
+        (lambda: far_tie(0.4), ["at most 0.4 m"]),
+        (
+            lambda: design(
+                joined(LOWER, TIED["hex8 on hex8"]),
+                ties=(Tie("seam", Selector(group="1z0"), Selector(group="0x0y0")),),
+            ),
+            ["0x0y0"],
+        ),
+        (
+            lambda: design(
+                joined(LOWER, TIED["hex8 on hex8"]), ties=(Tie("s", Selector(group="1z0"), Selector(nodes=[1])),)
+            ),
+            ["'s'", "no face"],
+        ),
+        (lambda: design(CAPPED, ties=(Tie("s", Selector(nodes=[9999]), Selector(group="x1")),)), ["no cell", "9999"]),
+    ],
+)
 def test_what_cannot_be_joined_is_said(model, words):
     with pytest.raises(ModelError) as caught:
         assemble(model())

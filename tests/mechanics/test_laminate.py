@@ -46,6 +46,7 @@ def stack(*layers, material=PLY, **more) -> Property:
 
 # ---------------------------------------------------------------- matrices
 
+
 def test_ply_matrices_by_hand():
     """Q of Jones 1999, § 2.6: Q11 = E1/(1 − ν12 ν21), Q16 at 45° = (Q11 − Q22)/4, and [0/90] coupling
     B11 = −B22 = (E2-side − E1-side) t²/8."""
@@ -130,7 +131,8 @@ def test_mass_off_the_nodes(form):
     total = sum(rigid(x).T @ form.mass(x[None], Property(STEEL, t, offset=d))[0] @ rigid(x) for x in pieces)
     m = STEEL.density * a * b * t
     np.testing.assert_allclose(
-        np.diag(total)[:5], [m, m, m, m * ((b**2 + t**2) / 12 + d**2), m * ((a**2 + t**2) / 12 + d**2)])
+        np.diag(total)[:5], [m, m, m, m * ((b**2 + t**2) / 12 + d**2), m * ((a**2 + t**2) / 12 + d**2)]
+    )
     assert total[0, 4] == pytest.approx(m * d)
     assert total[1, 3] == pytest.approx(-m * d)
 
@@ -143,8 +145,9 @@ SIDES, THIN = (1.0, 0.7), 0.002
 def plate(kind, n, plies, edges) -> Design:
     mesh = plate_mesh(kind, (n, n), SIDES)
     supports = tuple(Support(f"{e}{d}", Selector(group=e), d) for e, d in edges)
-    return Design("plate", mesh, Physics(
-        {"ply": PLY}, (Assignment("*", direction=(1, 0, 0), plies=plies),), supports))
+    return Design(
+        "plate", mesh, Physics({"ply": PLY}, (Assignment("*", direction=(1, 0, 0), plies=plies),), supports)
+    )
 
 
 def navier(plies, numbers, kind: str) -> np.ndarray:
@@ -183,16 +186,20 @@ ANGLE = (Ply("ply", THIN / 2, 45), Ply("ply", THIN / 2, -45))
 def hard(along_x, along_y):
     """Edges x0 x1 held in ``along_x`` and y0 y1 in ``along_y`` beside uz and the turning across the edge."""
     return tuple((e, ("uz", "rx", *along_x)) for e in ("x0", "x1")) + tuple(
-        (e, ("uz", "ry", *along_y)) for e in ("y0", "y1"))
+        (e, ("uz", "ry", *along_y)) for e in ("y0", "y1")
+    )
 
 
 @KINDS
-@pytest.mark.parametrize(("name", "plies", "edges", "series"), [
-    ("specially orthotropic", SPECIAL, hard(("uy",), ("ux",)), "cross"),
-    ("turned by 90", (Ply("ply", THIN, 90),), hard(("uy",), ("ux",)), "cross"),
-    ("antisymmetric cross-ply", CROSS, hard(("uy",), ("ux",)), "cross"),
-    ("antisymmetric angle-ply", ANGLE, hard(("ux",), ("uy",)), "angle"),
-])
+@pytest.mark.parametrize(
+    ("name", "plies", "edges", "series"),
+    [
+        ("specially orthotropic", SPECIAL, hard(("uy",), ("ux",)), "cross"),
+        ("turned by 90", (Ply("ply", THIN, 90),), hard(("uy",), ("ux",)), "cross"),
+        ("antisymmetric cross-ply", CROSS, hard(("uy",), ("ux",)), "cross"),
+        ("antisymmetric angle-ply", ANGLE, hard(("ux",), ("uy",)), "angle"),
+    ],
+)
 def test_simply_supported_plates(kind, name, plies, edges, series):
     """Four frequencies, limits of three meshes within 2e-3 (shear and rotary inertia of a sheet 350 times as wide as
     thick take up to 1e-3)."""
@@ -225,13 +232,25 @@ def test_numbering_and_pose_do_not_matter(kind):
     turn *= np.sign(np.linalg.det(turn))
     found = []
     for points, cells_, direction in (
-        (mesh.points, mesh.blocks[0].nodes, (1, 0, 0)), (mesh.points, nodes, (1, 0, 0)),
+        (mesh.points, mesh.blocks[0].nodes, (1, 0, 0)),
+        (mesh.points, nodes, (1, 0, 0)),
         (mesh.points @ turn, mesh.blocks[0].nodes, tuple(np.array([1, 0, 0.0]) @ turn)),
     ):
         shape = Mesh(points, (CellBlock(kind, cells_, mesh.blocks[0].ids),), mesh.node_ids, mesh.node_groups)
-        found.append(solve(Design("d", shape, Physics(
-            {"ply": PLY}, (Assignment("*", direction=direction, plies=plies),),
-            (Support("root", Selector(group="x0")),))), 5).freq_hz)
+        found.append(
+            solve(
+                Design(
+                    "d",
+                    shape,
+                    Physics(
+                        {"ply": PLY},
+                        (Assignment("*", direction=direction, plies=plies),),
+                        (Support("root", Selector(group="x0")),),
+                    ),
+                ),
+                5,
+            ).freq_hz
+        )
     np.testing.assert_allclose(found[1:], [found[0]] * 2, rtol=1e-8)
 
 
@@ -254,9 +273,15 @@ def strips(kind: str, n: int, parts, supports=ROOT, length=1.0, width=0.04, **mo
     count = len(block)
     blocks = tuple(CellBlock(kind, block.nodes, block.ids + i * count) for i in range(len(parts)))
     groups = {f"{i}": np.arange(i * count, (i + 1) * count) for i in range(len(parts))}
-    return Design("strips", mesh.with_(blocks=blocks, cell_groups=groups), Physics(
-        {material.name: material for material, _, _ in parts},
-        tuple(Assignment(f"{i}", m.name, t, offset=o) for i, (m, t, o) in enumerate(parts)), supports))
+    return Design(
+        "strips",
+        mesh.with_(blocks=blocks, cell_groups=groups),
+        Physics(
+            {material.name: material for material, _, _ in parts},
+            tuple(Assignment(f"{i}", m.name, t, offset=o) for i, (m, t, o) in enumerate(parts)),
+            supports,
+        ),
+    )
 
 
 @KINDS
@@ -275,8 +300,15 @@ def test_offsets_equal_layers(kind):
     """A bimetal as layers, and as two sheets off the nodes: bending. (In the third mode, twisting, two sheets shear
     against each other with the nodes' rotations alone: 2 % apart with triangles on this mesh.)"""
     layered = plate_mesh(kind, (12, 2), (1.0, 0.04))
-    first = Design("layers", layered, Physics({"steel": STEEL, "aluminium": ALUMINIUM}, (
-        Assignment("*", plies=(Ply("steel", 0.004), Ply("aluminium", 0.006))),), ROOT))
+    first = Design(
+        "layers",
+        layered,
+        Physics(
+            {"steel": STEEL, "aluminium": ALUMINIUM},
+            (Assignment("*", plies=(Ply("steel", 0.004), Ply("aluminium", 0.006))),),
+            ROOT,
+        ),
+    )
     second = strips(kind, 12, ((STEEL, 0.004, -0.003), (ALUMINIUM, 0.006, 0.002)))
     np.testing.assert_allclose(solve(first, 2).freq_hz, solve(second, 2).freq_hz, rtol=3e-3)
 
@@ -300,9 +332,15 @@ def test_a_rib_off_a_strip_is_a_composite_beam(kind):
         block = CellBlock("line2", pairs, np.arange(len(pairs)) + 1000)
         both = mesh.with_(blocks=(*mesh.blocks, block), cell_groups={})
         section = Section("rectangle", width=rib_b, height=rib_h)
-        model = Design("rib", both, Physics({"plain": plain}, (
-            Assignment("*", "plain", sheet_t), Assignment("line2", "plain", None, "", section, (0, 0, 1), off)),
-            (Support("root", Selector(group="x0")), Support("plane", Selector(nodes=mesh.node_ids), ("uy",)))))
+        model = Design(
+            "rib",
+            both,
+            Physics(
+                {"plain": plain},
+                (Assignment("*", "plain", sheet_t), Assignment("line2", "plain", None, "", section, (0, 0, 1), off)),
+                (Support("root", Selector(group="x0")), Support("plane", Selector(nodes=mesh.node_ids), ("uy",))),
+            ),
+        )
         modes = solve(model, 2)
         lift = np.abs(modes.shapes.moved[..., 2]).mean(axis=1) > 1e-6
         return modes.freq_hz[lift][0]
@@ -311,25 +349,31 @@ def test_a_rib_off_a_strip_is_a_composite_beam(kind):
     reached = richardson(*(np.array([first(n)]) for n in (8, 16, 32)))
     assert reached.error([expected])[0] < 2e-3, reached.limit / expected - 1
     bare = np.sqrt(seconds.sum() / inertia)
-    assert bare < 0.75                      # without the offset's coupling it would be this much lower
+    assert bare < 0.75  # without the offset's coupling it would be this much lower
 
 
 # ---------------------------------------------------------------- what is said
 
+
 def sheet_design(**more) -> Design:
     bad = Material("bad", 1e9, 0.3, 1.0, Directional(1e9, 1e9, 1.1, 1e9, 1e9, 1e9))
-    return Design("d", plate_mesh("quad4", (2, 1), (1, 1)), Physics(
-        {"ply": PLY, "steel": STEEL, "bad": bad},
-        (Assignment("*", **more),)))
+    return Design(
+        "d",
+        plate_mesh("quad4", (2, 1), (1, 1)),
+        Physics({"ply": PLY, "steel": STEEL, "bad": bad}, (Assignment("*", **more),)),
+    )
 
 
-@pytest.mark.parametrize(("more", "words"), [
-    ({"material": "ply", "thickness": 0.01}, ["ply", "no direction", "axis 1"]),
-    ({"material": "ply", "thickness": 0.01, "direction": (0, 0, 1)}, ["stands square", "2 cells"]),
-    ({"material": "bad", "thickness": 0.01, "direction": (1, 0, 0)}, ["nu12", "below"]),
-    ({"plies": (Ply("steel", 0.01), Ply("steel", -0.001))}, ["thickness", "-0.001"]),
-    ({"plies": (Ply("steel", 0.01), Ply("stele", 0.001))}, ["unknown material 'stele'"]),
-])
+@pytest.mark.parametrize(
+    ("more", "words"),
+    [
+        ({"material": "ply", "thickness": 0.01}, ["ply", "no direction", "axis 1"]),
+        ({"material": "ply", "thickness": 0.01, "direction": (0, 0, 1)}, ["stands square", "2 cells"]),
+        ({"material": "bad", "thickness": 0.01, "direction": (1, 0, 0)}, ["nu12", "below"]),
+        ({"plies": (Ply("steel", 0.01), Ply("steel", -0.001))}, ["thickness", "-0.001"]),
+        ({"plies": (Ply("steel", 0.01), Ply("stele", 0.001))}, ["unknown material 'stele'"]),
+    ],
+)
 def test_what_a_sheet_lacks_is_said(more, words):
     with pytest.raises(ModelError) as caught:
         assemble(sheet_design(**more))

@@ -25,10 +25,15 @@ def channel(kind: str, thickness: float) -> Design:
     x, s, _ = flat.points.T
     folded = np.stack([x, np.clip(s - 0.03, 0, 0.06), np.maximum(0.03 - s, 0) + np.maximum(s - 0.09, 0)], axis=1)
     mesh = Mesh(folded, flat.blocks, flat.node_ids, flat.node_groups)
-    return Design("channel", mesh, Physics(
-        {"aluminium": ALUMINIUM}, (Assignment("*", "aluminium", thickness),),
-        (Support("root", Selector(group="x0")),),
-    ))
+    return Design(
+        "channel",
+        mesh,
+        Physics(
+            {"aluminium": ALUMINIUM},
+            (Assignment("*", "aluminium", thickness),),
+            (Support("root", Selector(group="x0")),),
+        ),
+    )
 
 
 def digits(count: int):
@@ -52,7 +57,7 @@ def test_energies_survive_the_loss_of_rotations(kind: str, thickness: float):
     for name, write in WRITTEN.items():
         found = examine(lay_out(design), write(moved))
         wrong = np.abs(cell_energies(lay_out(design), found.vectors, "stiffness") - whole).sum(axis=1)
-        bound = 1e-4 if name == "double" else 0.02          # double: only the neglected rotary inertia is missing
+        bound = 1e-4 if name == "double" else 0.02  # double: only the neglected rotary inertia is missing
         assert (wrong <= bound * whole.sum(axis=1)).all(), name
         assert len(found.lost) == 0
         assert found.cautions == ()
@@ -67,7 +72,7 @@ def test_too_few_digits_are_warned_of_with_an_honest_figure():
     wrong = np.abs(cell_energies(lay_out(design), found.vectors, "stiffness") - whole).sum(axis=1) / whole.sum(axis=1)
     assert wrong.max() > 0.02
     assert "too few digits" in found.cautions[0]
-    assert (found.error > wrong / 5).all()                  # the right order, not the very figure
+    assert (found.error > wrong / 5).all()  # the right order, not the very figure
     assert (found.error < 10 * wrong).all()
 
 
@@ -84,9 +89,12 @@ def test_complex_shapes_and_held_rotations():
 
 
 def test_rigid_motion_gives_its_own_rotation():
-    design = channel("quad4", 1e-3).with_(physics=Physics(
-        {"aluminium": ALUMINIUM}, (Assignment("*", "aluminium", 1e-3),),
-    ))
+    design = channel("quad4", 1e-3).with_(
+        physics=Physics(
+            {"aluminium": ALUMINIUM},
+            (Assignment("*", "aluminium", 1e-3),),
+        )
+    )
     spin = np.array([0.3, -0.2, 0.5])
     vector = recover(lay_out(design), np.cross(spin, design.mesh.points)[None])[0]
     turned = lay_out(design).spread(vector)[1]
@@ -107,10 +115,18 @@ def beam_line(points: np.ndarray) -> tuple[sp.csr_array, np.ndarray]:
         local = np.zeros((12, 12))
         for pair, value in (((0, 6), 144.0 / length), ((3, 9), 2000.0 / length)):
             local[np.ix_(pair, pair)] = value * np.array([[1, -1], [-1, 1]])
-        bend = 1728.0 / length**3 * np.array([
-            [12, 6 * length, -12, 6 * length], [6 * length, 4 * length**2, -6 * length, 2 * length**2],
-            [-12, -6 * length, 12, -6 * length], [6 * length, 2 * length**2, -6 * length, 4 * length**2],
-        ])
+        bend = (
+            1728.0
+            / length**3
+            * np.array(
+                [
+                    [12, 6 * length, -12, 6 * length],
+                    [6 * length, 4 * length**2, -6 * length, 2 * length**2],
+                    [-12, -6 * length, 12, -6 * length],
+                    [6 * length, 2 * length**2, -6 * length, 4 * length**2],
+                ]
+            )
+        )
         for where, sign in (((1, 5, 7, 11), 1.0), ((2, 4, 8, 10), -1.0)):
             flip = np.diag([1, sign, 1, sign])
             local[np.ix_(where, where)] += flip @ bend @ flip
@@ -123,7 +139,7 @@ def test_torsion_of_a_straight_beam_and_a_point_inertia_are_named():
     line = np.outer(np.linspace(0, 3, 7), [0.6, 0.64, 0.48])
     stiffness, dof = beam_line(line)
     operator = Rotations(stiffness, dof, np.zeros(stiffness.shape[0], bool))
-    assert operator.lost.tolist() == list(range(8))         # seven beam nodes and the inertia
+    assert operator.lost.tolist() == list(range(8))  # seven beam nodes and the inertia
     bent = np.vstack([line, [[2.0, 3.0, 0.0], [2.0, 4.0, 1.5]]])
     stiffness, dof = beam_line(bent)
     operator = Rotations(stiffness, dof, np.zeros(stiffness.shape[0], bool))
@@ -150,13 +166,17 @@ def test_bending_of_a_straight_beam_is_recovered_beside_its_lost_torsion():
     assert 0.5 * vector @ (stiffness @ vector) == pytest.approx(energy, rel=1e-9)
 
 
-@pytest.mark.parametrize(("write", "step"), [
-    (lambda v: digits(6)(v), lambda v: 0.5 * 10.0 ** (np.floor(np.log10(np.abs(v))) - 5)),
-    (lambda v: np.round(v, 6), lambda v: np.full_like(v, 0.5e-6)),
-    (lambda v: np.round(v, 4) * 1e-3, lambda v: np.full_like(v, 0.5e-7)),
-    (lambda v: v.astype(np.float32).astype(float), lambda v: 0.5 * np.spacing(np.abs(v).astype(np.float32))),
-    (lambda v: v, lambda v: 0.5 * np.spacing(np.abs(v))),
-], ids=["6 digits", "6 decimals", "4 decimals of mm", "single", "double"])
+@pytest.mark.parametrize(
+    ("write", "step"),
+    [
+        (lambda v: digits(6)(v), lambda v: 0.5 * 10.0 ** (np.floor(np.log10(np.abs(v))) - 5)),
+        (lambda v: np.round(v, 6), lambda v: np.full_like(v, 0.5e-6)),
+        (lambda v: np.round(v, 4) * 1e-3, lambda v: np.full_like(v, 0.5e-7)),
+        (lambda v: v.astype(np.float32).astype(float), lambda v: 0.5 * np.spacing(np.abs(v).astype(np.float32))),
+        (lambda v: v, lambda v: 0.5 * np.spacing(np.abs(v))),
+    ],
+    ids=["6 digits", "6 decimals", "4 decimals of mm", "single", "double"],
+)
 def test_rounding_is_read_from_the_digits(write, step):
     values = write(np.random.default_rng(2).normal(size=500))
     np.testing.assert_allclose(rounding(values), step(values), rtol=1e-6)

@@ -29,8 +29,9 @@ def cells(kind: str) -> np.ndarray:
     warped = flat + [0, 0, 0.25] * np.array([1, -1, 1, -1])[: len(corners), None]
     sliver = flat * [1, 1e-3, 1]
     turned = [np.linalg.qr(random.normal(size=(3, 3)))[0] for _ in range(24)]
-    return np.stack([x @ q + random.normal(size=3) for x, q in zip(np.vstack([flat, warped, sliver]), turned,
-                                                                   strict=True)])
+    return np.stack(
+        [x @ q + random.normal(size=3) for x, q in zip(np.vstack([flat, warped, sliver]), turned, strict=True)]
+    )
 
 
 def rigid(xyz: np.ndarray) -> np.ndarray:
@@ -54,7 +55,7 @@ def test_rigid_motions_are_free_and_nothing_else_is(form, thickness: float):
         values = np.linalg.eigvalsh(matrix / np.outer(scale, scale))
         assert values[0] > -1e-12
         assert (values[:6] < 1e-12).all()
-        if cell < 16:                   # slivers of 1000 : 1 hide their softest motion in rounding
+        if cell < 16:  # slivers of 1000 : 1 hide their softest motion in rounding
             assert values[6] > 1e-8
 
 
@@ -96,16 +97,18 @@ def test_inertia_of_a_flat_rectangle_is_that_of_the_plate():
         total = rigid(xyz[0]).T @ form.mass(xyz, Property(STEEL, t))[0] @ rigid(xyz[0])
         m = STEEL.density * a * b * t
         np.testing.assert_allclose(np.diag(total)[:5], [m, m, m, m * (b**2 + t**2) / 12, m * (a**2 + t**2) / 12])
-        assert total[5, 5] == pytest.approx(m * (a**2 + b**2) / 12, rel=1e-5)      # SPIN_INERTIA more
+        assert total[5, 5] == pytest.approx(m * (a**2 + b**2) / 12, rel=1e-5)  # SPIN_INERTIA more
 
 
 # ---------------------------------------------------------------- patches
 
+
 def patch(kind: str) -> Mesh:
     """The patch of MacNeal R.H., Harder R.L., A proposed standard set of problems to test finite element accuracy,
     Finite Elem. Anal. Des. 1 (1985) 3: 0.24 × 0.12, four inner nodes (coordinates from memory)."""
-    points = np.array([[0, 0], [0.24, 0], [0.24, 0.12], [0, 0.12],
-                       [0.04, 0.02], [0.18, 0.03], [0.16, 0.08], [0.08, 0.08]])
+    points = np.array(
+        [[0, 0], [0.24, 0], [0.24, 0.12], [0, 0.12], [0.04, 0.02], [0.18, 0.03], [0.16, 0.08], [0.08, 0.08]]
+    )
     quads = np.array([[0, 1, 5, 4], [1, 2, 6, 5], [2, 3, 7, 6], [3, 0, 4, 7], [4, 5, 6, 7]])
     nodes = quads if kind == "quad4" else np.concatenate([quads[:, [0, 1, 2]], quads[:, [0, 2, 3]]])
     return Mesh(np.pad(points, ((0, 0), (0, 1))), (CellBlock(kind, nodes, np.arange(len(nodes))),), np.arange(8))
@@ -126,7 +129,7 @@ def test_membrane_patch(kind: str):
     mesh = patch(kind)
     x, y, _ = mesh.points.T
     given = np.zeros((8, 6))
-    given[:, 0], given[:, 1] = 1e-3 * (x + y / 2), 1e-3 * (y + x / 2)       # no rotation: θz = 0
+    given[:, 0], given[:, 1] = 1e-3 * (x + y / 2), 1e-3 * (y + x / 2)  # no rotation: θz = 0
     found, energy = patch_answer(mesh, 1e-3, given)
     np.testing.assert_allclose(found, given, atol=1e-12)
     strain = 1e-3 * np.array([1, 1, 1])
@@ -142,7 +145,7 @@ def test_bending_patch(kind: str, thickness: float):
     x, y, _ = mesh.points.T
     given = np.zeros((8, 6))
     given[:, 2] = 1e-3 * (x**2 + x * y + y**2) / 2
-    given[:, 3], given[:, 4] = 1e-3 * (y + x / 2), -1e-3 * (x + y / 2)      # θx = w,y; θy = −w,x
+    given[:, 3], given[:, 4] = 1e-3 * (y + x / 2), -1e-3 * (x + y / 2)  # θx = w,y; θy = −w,x
     found, energy = patch_answer(mesh, thickness, given)
     np.testing.assert_allclose(found, given, atol=1e-9 * np.abs(given).max())
     curvature = 1e-3 * np.array([1, 1, 1])
@@ -153,8 +156,10 @@ def test_bending_patch(kind: str, thickness: float):
 
 # ---------------------------------------------------------------- statics
 
-def pushed(mesh: Mesh, material: Material, thickness: float, held: np.ndarray, load: np.ndarray,
-           formulation: str = "") -> np.ndarray:
+
+def pushed(
+    mesh: Mesh, material: Material, thickness: float, held: np.ndarray, load: np.ndarray, formulation: str = ""
+) -> np.ndarray:
     """(n_nodes, 6) displacements; ``held`` bool and ``load`` (n_nodes, 6)."""
     design = Design("static", mesh, Physics({"m": material}, (Assignment("*", "m", thickness, formulation),)))
     system = assemble(design)
@@ -196,16 +201,24 @@ def test_optimal_triangle_is_exact_in_bending_at_any_aspect_ratio():
         motion = np.zeros((4, 6))
         motion[:, 0], motion[:, 1], motion[:, 5] = x * y, -(x**2) / 2, -x
         energy = 0.0
-        for matrix, nodes in zip(form.stiffness(mesh.points[mesh.blocks[0].nodes], Property(STEEL, 0.01)),
-                                 mesh.blocks[0].nodes, strict=True):
+        for matrix, nodes in zip(
+            form.stiffness(mesh.points[mesh.blocks[0].nodes], Property(STEEL, 0.01)),
+            mesh.blocks[0].nodes,
+            strict=True,
+        ):
             energy += 0.5 * motion[nodes].ravel() @ matrix @ motion[nodes].ravel()
         assert energy == pytest.approx(0.5 * 200e9 * 0.01 * b**3 / 12 * a, rel=1e-9)
 
 
-@pytest.mark.parametrize(("kind", "fine", "thickness", "load", "wanted"), [
-    ("quad4", 1, 0.32, 1.0, (5.424e-3, 1.754e-3)), ("quad4", 1, 0.0032, 1e-6, (5.256e-3, 1.294e-3)),
-    ("tri3", 1, 0.32, 1.0, (5.424e-3, 1.754e-3)), ("tri3", 4, 0.0032, 1e-6, (5.256e-3, 1.294e-3)),
-])
+@pytest.mark.parametrize(
+    ("kind", "fine", "thickness", "load", "wanted"),
+    [
+        ("quad4", 1, 0.32, 1.0, (5.424e-3, 1.754e-3)),
+        ("quad4", 1, 0.0032, 1e-6, (5.256e-3, 1.294e-3)),
+        ("tri3", 1, 0.32, 1.0, (5.424e-3, 1.754e-3)),
+        ("tri3", 4, 0.0032, 1e-6, (5.256e-3, 1.294e-3)),
+    ],
+)
 def test_twisted_beam(kind: str, fine: int, thickness: float, load: float, wanted):
     """Warped cells: a strip 12 × 1.1 twisted by 90° (MacNeal and Harder 1985; the thin variant by Belytschko T. et
     al., 1989; values from memory). Within 2 % on 24 × 4 cells; flat triangles of the thin strip, whose cells are 150
@@ -218,7 +231,7 @@ def test_twisted_beam(kind: str, fine: int, thickness: float, load: float, wante
     held[flat.node_groups["x0"]] = True
     ends = flat.node_groups["x1"]
     material = Material("m", 29e6, 0.22, 1.0)
-    for direction, value in zip((2, 1), wanted, strict=True):     # along the tip's width, across it
+    for direction, value in zip((2, 1), wanted, strict=True):  # along the tip's width, across it
         found = pushed(mesh, material, thickness, held, end_load(mesh, ends, direction, load))[ends, direction]
         assert found.mean() == pytest.approx(value, rel=0.02)
 
@@ -261,7 +274,7 @@ def test_trapezoids_in_plane_bending_are_the_known_weak_spot():
         held[flat.node_groups["x0"]] = True
         ends = flat.node_groups["x1"]
         found = pushed(mesh, Material("m", 1e7, 0.3, 1.0), 0.1, held, end_load(mesh, ends, 1, 1.0))[ends, 1].mean()
-        ratios[name, layers] = found / 0.1081       # MacNeal and Harder 1985, from memory
+        ratios[name, layers] = found / 0.1081  # MacNeal and Harder 1985, from memory
     assert ratios["trapezoid", 1] == pytest.approx(0.049, abs=0.005)
     assert ratios["parallelogram", 1] == pytest.approx(0.61, abs=0.02)
     assert ratios["trapezoid", 4] == pytest.approx(0.79, abs=0.02)
@@ -279,7 +292,7 @@ def test_folded_channel_has_six_rigid_motions_and_the_beam_frequency(kind: str):
     assert (free[:6] == 0).all()
     assert free[6] > 1
     rail = Support("plane", Selector(group="y0"), ("uz",))
-    other = Support("plane2", Selector(group="y1"), ("uz",))          # no twist, no bending across the web
+    other = Support("plane2", Selector(group="y1"), ("uz",))  # no twist, no bending across the web
     root = Support("root", Selector(group="x0"))
     bent = solve(design.with_(physics=Physics({"s": STEEL}, design.physics.assignments, (rail, other, root))), 1)
     t = 2e-3
@@ -290,6 +303,7 @@ def test_folded_channel_has_six_rigid_motions_and_the_beam_frequency(kind: str):
 
 
 # ---------------------------------------------------------------- refusals
+
 
 @FORMS
 def test_bad_cells_and_missing_thickness_are_refused(form):

@@ -67,9 +67,7 @@ def test_stiffness_is_symmetric_and_matches_cell_by_cell(element):
     assert np.abs(together - np.swapaxes(together, 1, 2)).max() <= 1e-15 * np.abs(together).max()
     alone = np.concatenate([element.stiffness(cells[i : i + 1], ALUMINIUM) for i in range(3)])
     np.testing.assert_allclose(together[-3:], alone, rtol=0, atol=1e-14 * np.abs(alone).max())
-    np.testing.assert_allclose(
-        element.mass(cells, ALUMINIUM)[-3:], element.mass(cells[:3], ALUMINIUM), rtol=1e-12
-    )
+    np.testing.assert_allclose(element.mass(cells, ALUMINIUM)[-3:], element.mass(cells[:3], ALUMINIUM), rtol=1e-12)
     assert element.stiffness(cells[:0], ALUMINIUM).shape == (0, *together.shape[1:])
 
 
@@ -151,9 +149,7 @@ def test_one_brick_in_pure_bending(slenderness):
     corners = KINDS["hex8"].reference * half
     bent = np.stack([-corners[:, 0] * corners[:, 1], corners[:, 0] ** 2 / 2, 0 * corners[:, 0]], axis=1).ravel()
     exact = 1e9 * (2 * half[2] * (2 * half[1]) ** 3 / 12) / 2 * 2 * half[0]
-    energy = {
-        f.name: bent @ f.stiffness(corners[None], prop)[0] @ bent / 2 for f in FORMULATIONS["hex8"]
-    }
+    energy = {f.name: bent @ f.stiffness(corners[None], prop)[0] @ bent / 2 for f in FORMULATIONS["hex8"]}
     assert energy["hex8-incompatible"] == pytest.approx(exact, rel=1e-9)
     assert energy["hex8-full"] == pytest.approx(exact * (1 + slenderness**2 / 2), rel=1e-9)
 
@@ -202,8 +198,13 @@ def test_inside_out_cells_are_refused(element):
 
 @pytest.mark.parametrize(
     ("change", "word"),
-    [((0.0, 0.3, 1.0), "Young"), ((1.0, 0.5, 1.0), "Poisson"), ((1.0, 0.3, -1.0), "density"),
-     ((np.nan, 0.3, 1.0), "Young"), ((1.0, 0.3, np.inf), "density")],
+    [
+        ((0.0, 0.3, 1.0), "Young"),
+        ((1.0, 0.5, 1.0), "Poisson"),
+        ((1.0, 0.3, -1.0), "density"),
+        ((np.nan, 0.3, 1.0), "Young"),
+        ((1.0, 0.3, np.inf), "density"),
+    ],
 )
 def test_unusable_material(change, word):
     with pytest.raises(ModelError, match=f"'odd'.*{word}"):

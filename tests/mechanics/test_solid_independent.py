@@ -59,7 +59,7 @@ def compare(ours, mesh, model, element, order, mass_order):
     vector = skfem.Basis(model, skfem.ElementVector(element()), intorder=order)
     wanted = linear_elasticity(*lame_parameters(MATERIAL.youngs_modulus, MATERIAL.poisson)).assemble(vector).toarray()
     nodal = rows_of(vector, mesh)
-    direction = np.empty(len(nodal), int)                 # freedoms of one node follow one another: x, y, z
+    direction = np.empty(len(nodal), int)  # freedoms of one node follow one another: x, y, z
     for node in range(mesh.n_nodes):
         direction[nodal == node] = range(3)
     place = 3 * nodal + direction

@@ -19,17 +19,17 @@ from viewer.mechanics.patch import RigidPatch
 
 ROOT = Path(__file__).parents[2] / "sample_meshes"
 FOLDERS = ("boom", "fork", "trough")
-GROUPS = {                     # cells of every group, node groups; lengths in m
+GROUPS = {  # cells of every group, node groups; lengths in m
     "boom/baseline.vtu": ("top flange_left flange_right flap floor camera_seat nose", "root tip"),
     "boom/modified.vtu": ("top flange_left flange_right flap floor camera_seat nose lip", "root tip"),
     "fork/fork.vtu": ("tine_left bend_left crossbar bend_right tine_right stem", "root"),
     "trough/plain.vtu": ("floor wall_left wall_right", "fixed_end"),
     "trough/strapped.vtu": ("floor wall_left wall_right straps", "fixed_end"),
 }
-OPENINGS = {                   # openings of the sheet, counted on the part, and its Euler characteristic V − E + F
-    "boom/baseline.vtu": (3, -1),      # root end, window, underside between seat and nose with both slits: χ = 2 − 3
-    "boom/modified.vtu": (3, -1),      # the lip is a closed band, χ = 0
-    "trough/plain.vtu": (1, 1),        # a bent rectangle
+OPENINGS = {  # openings of the sheet, counted on the part, and its Euler characteristic V − E + F
+    "boom/baseline.vtu": (3, -1),  # root end, window, underside between seat and nose with both slits: χ = 2 − 3
+    "boom/modified.vtu": (3, -1),  # the lip is a closed band, χ = 0
+    "trough/plain.vtu": (1, 1),  # a bent rectangle
     # seven triangles between straps and one opening at each end; each of the 8 strips, χ = 1, shares two straight
     # lines, χ = 1, with the rims
     "trough/strapped.vtu": (9, -7),
@@ -63,10 +63,10 @@ def test_a_mesh_is_small_sound_and_whole(name):
     assert set(mesh.node_groups) == node_groups
     assert all(len(rows) for rows in (*mesh.cell_groups.values(), *mesh.node_groups.values()))
     everyone = np.sort(np.concatenate(list(mesh.cell_groups.values())))
-    assert np.array_equal(everyone, np.arange(mesh.n_cells))           # groups share nothing and leave nothing out
+    assert np.array_equal(everyone, np.arange(mesh.n_cells))  # groups share nothing and leave nothing out
 
     assert len(mesh.used_nodes) == mesh.n_nodes
-    assert len(np.unique(np.round(mesh.points * 1e5), axis=0)) == mesh.n_nodes    # none closer than about 10 µm
+    assert len(np.unique(np.round(mesh.points * 1e5), axis=0)) == mesh.n_nodes  # none closer than about 10 µm
     (block,) = mesh.blocks
     assert (measures(block.kind, mesh.points[block.nodes]) > 0).all()
     if KINDS[block.kind].dim == 3:
@@ -91,9 +91,15 @@ def test_sheets_are_open_only_where_they_should_be(name):
     openings, euler = OPENINGS[name]
     assert connected_components(graph, directed=False)[0] == openings
     assert mesh.n_nodes - len(lines) + mesh.n_cells == euler
-    if name.endswith("baseline.vtu"):                                 # the window's rim is rounded, not a staircase
-        rim = mesh.points[used[(mesh.points[used, 2] > -1e-9) & (np.abs(mesh.points[used, 1]) < 0.065)
-                               & (mesh.points[used, 0] > 0.05) & (mesh.points[used, 0] < 0.3)]]
+    if name.endswith("baseline.vtu"):  # the window's rim is rounded, not a staircase
+        rim = mesh.points[
+            used[
+                (mesh.points[used, 2] > -1e-9)
+                & (np.abs(mesh.points[used, 1]) < 0.065)
+                & (mesh.points[used, 0] > 0.05)
+                & (mesh.points[used, 0] < 0.3)
+            ]
+        ]
         corner = np.array([0.11 + 0.020, -0.062 + 0.020])
         near = rim[(rim[:, 0] < corner[0] - 1e-6) & (rim[:, 1] < corner[1] - 1e-6)]
         assert len(near) >= 3
@@ -152,13 +158,13 @@ def test_the_boom_does_what_its_names_say(solved, name):
     design, modes, found, _ = solved["boom", name]
     assert 60 < modes.freq_hz[0] < 120
     seat = [_motion(design, modes.shape(i), "camera_seat") for i in range(4)]
-    assert abs(seat[0][2]) > 0.5                                       # nods: up and down, no sideways motion
+    assert abs(seat[0][2]) > 0.5  # nods: up and down, no sideways motion
     assert abs(seat[0][1]) < 0.02
     nose = [_motion(design, modes.shape(i), "nose") for i in range(4)]
-    assert abs(nose[1][1]) > 5 * abs(nose[1][2])                       # sways: the tip goes sideways
-    assert abs(seat[2][3]) > 2 * abs(seat[1][3])                       # twists: about the boom's own axis
+    assert abs(nose[1][1]) > 5 * abs(nose[1][2])  # sways: the tip goes sideways
+    assert abs(seat[2][3]) > 2 * abs(seat[1][3])  # twists: about the boom's own axis
     flap = found.kinetic[:, design.mesh.cell_groups["flap"]].sum(axis=1) / found.total_kinetic
-    assert flap[3] > 0.6                                               # flap flaps: it alone carries the energy
+    assert flap[3] > 0.6  # flap flaps: it alone carries the energy
     assert found.trusted[:4].all()
 
 
@@ -168,14 +174,14 @@ def test_the_redesign_of_the_boom_helps_and_its_pairs_correspond(solved):
     for pair in dossier.pairs:
         assert _alike(first, mine, pair.first_mode, second, theirs, pair.second_mode) > 0.85
     lost = [_alike(first, mine, 5, second, theirs, mode) for mode in range(1, theirs.count + 1)]
-    assert max(lost) < 0.3                                             # mode 5 has no partner, as the dossier says
+    assert max(lost) < 0.3  # mode 5 has no partner, as the dossier says
 
 
 def test_the_fork_spreads(solved):
     design, modes, _, _ = solved["fork", "baseline"]
     left, right = (_motion(design, modes.shape(2), side) for side in ("tine_left", "tine_right"))
     assert left[1] * right[1] < 0
-    assert abs(left[1]) == pytest.approx(abs(right[1]), rel=0.01)      # the part is symmetric
+    assert abs(left[1]) == pytest.approx(abs(right[1]), rel=0.01)  # the part is symmetric
     together = [_motion(design, modes.shape(0), side)[1] for side in ("tine_left", "tine_right")]
     assert together[0] * together[1] > 0
 
@@ -189,7 +195,7 @@ def test_straps_raise_the_twisting_of_the_trough(solved):
         floor = _motion(design, modes.shape(mode - 1), "floor")
         assert abs(floor[3]) * 0.075 > 1.5 * np.abs(floor[1:3]).max()  # rim speed by turning beats going sideways
     nod = next(pair for pair in dossier.pairs if pair.first_mode == 2)
-    assert theirs.freq_hz[nod.second_mode - 1] == pytest.approx(mine.freq_hz[1], rel=0.1)   # bending hardly changes
+    assert theirs.freq_hz[nod.second_mode - 1] == pytest.approx(mine.freq_hz[1], rel=0.1)  # bending hardly changes
 
 
 def _alike(first, mine, i, second, theirs, j):

@@ -18,8 +18,15 @@ DRIVE, HELD = "belt drive at 12 Hz, 1.5 % damping", "clamped root, camera 1.2 kg
 def scale(**changes) -> Scale:
     """The finding of LOOK.md's sentences."""
     said = {
-        "mode": 1, "factor": 1.0, "magnification": 8342.0, "largest_real": 3.94e-6, "largest_row": 0,
-        "largest_place": "camera lens", "largest_word": "down", "drawn_percent": 8.0, "limited_by": "peak",
+        "mode": 1,
+        "factor": 1.0,
+        "magnification": 8342.0,
+        "largest_real": 3.94e-6,
+        "largest_row": 0,
+        "largest_place": "camera lens",
+        "largest_word": "down",
+        "drawn_percent": 8.0,
+        "limited_by": "peak",
         "condition": DRIVE,
     }
     return Scale(**{**said, **changes})
@@ -38,7 +45,12 @@ def marked(name: str = "baseline", **changes) -> Body:
     motion = np.concatenate([bare.shape[foot].mean(axis=0), [0.0, 2.0, 0.0]])
     at = np.array([0.9 * LENGTH, WIDTH / 2, -0.11])
     return Body(
-        bare.name, mesh, bare.shape, bare.factor, changes.get("freq_hz", 84.6), bare.density,
+        bare.name,
+        mesh,
+        bare.shape,
+        bare.factor,
+        changes.get("freq_hz", 84.6),
+        bare.density,
         (SupportMark("root", np.nonzero(x < 1e-9)[0]),),
         (MassMark("camera", 1.2, at, foot, motion),),
         (PointMark("image blur: sideways", at - np.array([0, 0, 0.04]), np.array([0.0, 1.0, 0.0]), motion),),
@@ -67,7 +79,13 @@ def side(**changes) -> Picture:
     note = scale_note(1, NAME, None, (scale(), scale(largest_real=2.4e-6)), HELD, one_colour_scale=True)
     words = "strain energy density ÷ own mean"
     return Picture(
-        pair, note, "side", 8342.0, energy_top=25.0, energy_words=words, height=576,
+        pair,
+        note,
+        "side",
+        8342.0,
+        energy_top=25.0,
+        energy_words=words,
+        height=576,
         energy_caution="not trusted: baseline, modified",
     ).with_(**changes)
 

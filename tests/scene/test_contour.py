@@ -18,7 +18,7 @@ def test_plate_shows_its_rim_only():
     mesh = plate_mesh("quad8", (5, 4), (1.0, 1.0))
     surface, normals, eye = seen(mesh, (0, 0, 1))
     assert not silhouettes(surface.edges, normals, eye).any()
-    assert len(contour(surface.edges, normals, eye)) == 2 * 2 * (5 + 4)      # two halves of each side
+    assert len(contour(surface.edges, normals, eye)) == 2 * 2 * (5 + 4)  # two halves of each side
 
 
 def test_tube_from_the_side_shows_two_generators():
@@ -27,8 +27,8 @@ def test_tube_from_the_side_shows_two_generators():
     edges = surface.edges.nodes[silhouettes(surface.edges, normals, eye)]
     ends = mesh.points[surface.nodes][edges]
     assert len(edges) == 2 * 5
-    assert ends[:, 0, :2] == pytest.approx(ends[:, 1, :2])                   # each runs along the tube
-    assert np.abs(ends[..., 1]).min() > np.cos(np.radians(10))               # at the left and right limb
+    assert ends[:, 0, :2] == pytest.approx(ends[:, 1, :2])  # each runs along the tube
+    assert np.abs(ends[..., 1]).min() > np.cos(np.radians(10))  # at the left and right limb
 
 
 def test_tube_from_its_end_shows_none():

@@ -37,10 +37,10 @@ def test_the_cover_is_where_the_body_is(make):
             quads = body.mesh.blocks[0].nodes
             middle = positions(body.mesh.points, body.shape, body.factor, phase)[quads].mean(axis=1)
             column, row = np.floor(frame.project(middle, index) / CELL).astype(int).T
-            assert grid[row, column].all()                                  # every cell's middle is covered …
+            assert grid[row, column].all()  # every cell's middle is covered …
             inside += len(middle)
     assert inside > 1000
-    assert grid.mean() < 0.6                                                # … and not simply everything
+    assert grid.mean() < 0.6  # … and not simply everything
 
 
 def test_a_label_stands_near_its_mark_below_it_when_nothing_is_in_the_way():

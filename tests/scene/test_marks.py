@@ -47,10 +47,10 @@ def test_pegs_are_spread_evenly_however_fine_the_mesh(count):
     places = peg_places(mesh, mesh.node_groups["x0"], mesh.diagonal)
     at = np.array([centre for centre, _ in places])
     gaps = np.diff(np.sort(at[:, 1]))
-    assert gaps.min() >= 1.05 * PEG * mesh.diagonal                         # they never merge
+    assert gaps.min() >= 1.05 * PEG * mesh.diagonal  # they never merge
     assert gaps.max() <= 2 * PEG_STEP * mesh.diagonal + 0.2 / count
-    assert np.ptp(at[:, 1]) > 0.2 - PEG * mesh.diagonal                     # both ends have theirs
-    assert np.all(at[:, 0] < 0)                                             # on the side where the plate is not
+    assert np.ptp(at[:, 1]) > 0.2 - PEG * mesh.diagonal  # both ends have theirs
+    assert np.all(at[:, 0] < 0)  # on the side where the plate is not
     assert at[:, 2] == pytest.approx(np.zeros(len(at)), abs=1e-12)
 
 
@@ -85,7 +85,7 @@ def test_a_single_held_node_has_one_peg():
     mesh = plate_mesh("quad4", (4, 4), (0.2, 0.2))
     places = peg_places(mesh, np.array([0]), mesh.diagonal)
     assert len(places) == 1
-    assert np.all(places[0][1][:2] < 0)                                     # out of the corner at the origin
+    assert np.all(places[0][1][:2] < 0)  # out of the corner at the origin
 
 
 def test_spread_takes_ends_first_and_does_not_depend_on_rounding():
@@ -107,7 +107,7 @@ def test_radius_grows_with_the_cube_root_of_the_mass():
 def test_the_sphere_is_round_closed_and_wound_outward():
     points, triangles = sphere(40, 20)
     a, b, c = points[triangles].transpose(1, 0, 2)
-    volume = np.einsum("ij,ij->i", a, np.cross(b, c)).sum() / 6             # divergence theorem: positive if outward
+    volume = np.einsum("ij,ij->i", a, np.cross(b, c)).sum() / 6  # divergence theorem: positive if outward
     assert volume == pytest.approx(4 / 3 * np.pi, rel=0.02)
     assert np.linalg.norm(points, axis=1) == pytest.approx(np.ones(len(points)))
 
@@ -124,7 +124,7 @@ def test_a_bead_moves_as_a_rigid_body():
     assert moved - bead.points == pytest.approx(motion[:3] + np.cross(turn, bead.points - centre), abs=1e-12)
     before = np.linalg.norm(bead.points[::7] - bead.points[3], axis=1)
     after = np.linalg.norm(moved[::7] - moved[3], axis=1)
-    assert after == pytest.approx(before, rel=turn @ turn)                  # lengths change in second order only
+    assert after == pytest.approx(before, rel=turn @ turn)  # lengths change in second order only
     assert bead.at(np.pi) + moved == pytest.approx(2 * bead.points, abs=1e-12)
 
 
@@ -148,7 +148,7 @@ def test_legs_run_from_the_bead_to_the_footprint_and_follow_both():
     assert reach.min() == pytest.approx(radius)
     feet = body.mesh.points[mark.footprint]
     ends = np.linalg.norm(legs.points[:, None] - feet[None], axis=2)
-    assert ends.min(axis=1).min() < 0.015 * body.mesh.diagonal   # the last dash (nearly) reaches the foot
+    assert ends.min(axis=1).min() < 0.015 * body.mesh.diagonal  # the last dash (nearly) reaches the foot
     nearest = mark.footprint[np.unravel_index(np.argmin(ends), ends.shape)[1]]
     k = np.unravel_index(np.argmin(ends), ends.shape)[0]
     assert legs.move[k] == pytest.approx(body.factor * body.shape[nearest], rel=0.15, abs=1e-4)
@@ -159,7 +159,7 @@ def test_a_bead_inside_its_footprint_has_no_legs():
     mesh = box_mesh("hex8", (4, 2, 2), (0.3, 0.1, 0.1))
     body = plain(mesh, masses=(MassMark("m", 2.0, mesh.points[5], np.array([5]), np.zeros(6)),))
     assert len(standing_marks(body, mesh.diagonal, 2.0)) == 1
-    assert len(facing_marks(body, mesh.diagonal, 2.0, EYE)) == 2            # rim, hidden rim
+    assert len(facing_marks(body, mesh.diagonal, 2.0, EYE)) == 2  # rim, hidden rim
 
 
 # ---- functional points
@@ -176,11 +176,11 @@ def test_the_arrow_lies_along_the_direction_and_stays_on_top(direction):
     away = piece.points - np.ones(3)
     tips = away[np.abs(away @ direction) > 0.99 * np.abs(away @ direction).max()]
     assert np.abs(tips @ direction) == pytest.approx(np.linalg.norm(tips, axis=1), rel=1e-9)
-    assert (tips @ direction).min() < 0 < (tips @ direction).max()          # both ways
+    assert (tips @ direction).min() < 0 < (tips @ direction).max()  # both ways
     ring = away[: 48 * 8]
     assert np.linalg.norm(ring, axis=1).mean() == pytest.approx(RING * mesh.diagonal, rel=0.05)
-    assert np.abs(ring @ EYE).max() < 0.2 * RING * mesh.diagonal            # it faces the eye
-    assert piece.at(0.0) - piece.points == pytest.approx(np.tile([0.01, 0, 0], (len(away), 1)))   # it does not turn
+    assert np.abs(ring @ EYE).max() < 0.2 * RING * mesh.diagonal  # it faces the eye
+    assert piece.at(0.0) - piece.points == pytest.approx(np.tile([0.01, 0, 0], (len(away), 1)))  # it does not turn
 
 
 def test_an_arrow_seen_end_on_is_a_dot_in_the_ring():
@@ -189,7 +189,7 @@ def test_an_arrow_seen_end_on_is_a_dot_in_the_ring():
     (piece,) = facing_marks(body, mesh.diagonal, 1.0, EYE)
     away = piece.points - np.ones(3)
     across = np.linalg.norm(away - np.outer(away @ EYE, EYE), axis=1)
-    assert across.max() < 1.2 * RING * mesh.diagonal                        # nothing beyond the ring
+    assert across.max() < 1.2 * RING * mesh.diagonal  # nothing beyond the ring
     assert across[48 * 8 :].max() == pytest.approx(0.45 * RING * mesh.diagonal)
 
 

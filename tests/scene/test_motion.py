@@ -35,7 +35,7 @@ def test_peak_equals_the_largest_of_many_phases(shape):
     sampled = np.max([np.linalg.norm(displacement(shape, 1.0, p), axis=1) for p in PHASES], axis=0)
     exact = cycle_peaks(shape)
     assert np.all(sampled <= exact * (1 + 1e-12))
-    assert sampled == pytest.approx(exact, rel=1e-6)          # 0.1° steps miss the peak by at most 1 − cos 0.05°
+    assert sampled == pytest.approx(exact, rel=1e-6)  # 0.1° steps miss the peak by at most 1 − cos 0.05°
     assert np.any(exact < np.linalg.norm(np.abs(shape), axis=1) * 0.95), "axes out of phase do not add up"
 
 

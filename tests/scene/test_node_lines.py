@@ -22,7 +22,7 @@ def upward(mesh, value):
     return np.stack([0 * value, 0 * value, value], axis=1)
 
 
-@pytest.mark.parametrize("counts", [(41, 31), (42, 32)])                       # lines between nodes, and through them
+@pytest.mark.parametrize("counts", [(41, 31), (42, 32)])  # lines between nodes, and through them
 def test_a_simply_supported_plate(counts):
     # sin(2πx/a) sin(πy/b), Timoshenko & Woinowsky-Krieger: one line at a/2; the supported edges are none
     mesh = plate_mesh("quad4", counts, (2.0, 1.0))
@@ -43,9 +43,7 @@ def test_a_clamped_beam_has_no_line_at_its_root():
     x = mesh.points[:, 0]
     k = 4.69409113297
     sigma = (np.cosh(k) + np.cos(k)) / (np.sinh(k) + np.sin(k))
-    lines, ends = drawn(
-        mesh, upward(mesh, np.cosh(k * x) - np.cos(k * x) - sigma * (np.sinh(k * x) - np.sin(k * x)))
-    )
+    lines, ends = drawn(mesh, upward(mesh, np.cosh(k * x) - np.cos(k * x) - sigma * (np.sinh(k * x) - np.sin(k * x))))
     assert words(lines) == "node lines, if any: no motion along z"
     assert ends[:, :, 0] == pytest.approx(0.7834, abs=2e-4)
     assert np.linalg.norm(ends[:, 1] - ends[:, 0], axis=1).sum() == pytest.approx(4 * 0.05)
@@ -86,7 +84,7 @@ def test_a_bell_has_lines_of_its_radial_motion():
 def test_a_sheet_that_moves_in_its_plane_has_lines_of_that_motion():
     mesh = plate_mesh("quad4", (20, 4), (2.0, 0.4))
     shape = np.zeros((mesh.n_nodes, 3))
-    shape[:, 0] = np.cos(np.pi * mesh.points[:, 0] / 2)                         # free-free rod
+    shape[:, 0] = np.cos(np.pi * mesh.points[:, 0] / 2)  # free-free rod
     lines, ends = drawn(mesh, shape)
     assert words(lines) == "node lines, if any: no motion along x"
     assert ends[:, :, 0] == pytest.approx(1.0, abs=1e-6)
@@ -107,7 +105,7 @@ def test_lines_ride_with_the_body():
     surface = surface_of(mesh)
     found = crossings(body, surface)
     still, moved = (found.segments((mesh.points + c * shape)[surface.nodes]) for c in (0.0, 0.5))
-    assert moved == pytest.approx(still, abs=1e-12)                              # that is what a node line is
+    assert moved == pytest.approx(still, abs=1e-12)  # that is what a node line is
 
 
 def test_a_travelling_mode_has_none():

@@ -31,7 +31,7 @@ def test_known_size():
 
 
 def test_thousands_are_set_apart_by_a_space_that_does_not_break():
-    assert "8\u202f300×" in scale_note(1, "", 1.0, scale()).drawing[0]      # LOOK.md: "U+202F (thousands space)"
+    assert "8\u202f300×" in scale_note(1, "", 1.0, scale()).drawing[0]  # LOOK.md: "U+202F (thousands space)"
 
 
 def test_unknown_size():
@@ -47,7 +47,8 @@ def test_unknown_size():
 
 def test_true_scale_is_not_called_exaggerated():
     assert said(1, NAME, 84.6, scale(magnification=1.0)) == [
-        "true scale, ×1", "largest real motion 3.9 µm, camera lens, down",
+        "true scale, ×1",
+        "largest real motion 3.9 µm, camera lens, down",
     ]
 
 
@@ -84,7 +85,7 @@ def test_compared_at_different_magnifications_shouts():
     drawn = said(1, NAME, None, (scale(), scale(magnification=12000.0)))
     assert drawn[0] == "DIFFERENT magnifications: baseline 8 300×, modified 12 000×"
     near = said(1, NAME, None, (scale(), scale(magnification=8349.0)), names=("old", "new"))
-    assert near[0] == "DIFFERENT magnifications: old 8 340×, new 8 350×"      # never the same figure twice
+    assert near[0] == "DIFFERENT magnifications: old 8 340×, new 8 350×"  # never the same figure twice
     one = said(1, NAME, None, (scale(), unknown()))
     assert one[0] == "DIFFERENT magnifications: baseline 8 300×, modified size arbitrary"
 
@@ -110,7 +111,7 @@ def test_titles_and_conditions():
     assert mode_title((1, 2), "nods") == "Modes 1 and 2 · nods"
     assert mode_title((2, 2), "nods") == "Mode 2 · nods"
     note = scale_note(1, "", 84.6, scale(), [HELD, f"{HELD} · {DRIVE}", ""])
-    assert note.condition == (DRIVE, HELD)                                  # each statement once
+    assert note.condition == (DRIVE, HELD)  # each statement once
 
 
 # ---- figures
@@ -127,7 +128,11 @@ def test_two_significant_digits(value, text):
 @pytest.mark.parametrize(
     ("metres", "text"),
     [
-        (3.94e-6, "3.9 µm"), (440e-6, "440 µm"), (9.99e-4, "1.0 mm"), (0.04, "40 mm"), (2.0, "2.0 m"),
+        (3.94e-6, "3.9 µm"),
+        (440e-6, "440 µm"),
+        (9.99e-4, "1.0 mm"),
+        (0.04, "40 mm"),
+        (2.0, "2.0 m"),
         (7.1e-10, "710 pm"),
     ],
 )
@@ -139,14 +144,14 @@ def test_lengths_take_the_unit_that_leaves_one_to_three_digits(metres, text):
 def test_lengths_read_back(value):
     number, unit = figures.length(value).split(figures.GAP)
     back = float(number.replace(figures.THIN, "")) * {"m": 1, "mm": 1e-3, "µm": 1e-6, "nm": 1e-9, "pm": 1e-12}[unit]
-    assert back == pytest.approx(value, rel=0.051)                          # two digits: at most 5 % off, at 1.0
+    assert back == pytest.approx(value, rel=0.051)  # two digits: at most 5 % off, at 1.0
 
 
 def test_frequencies_and_changes():
     assert figures.hertz(1243.3).translate(PLAIN) == "1 243 Hz"
     assert figures.hertz(3.456).translate(PLAIN) == "3.46 Hz"
     assert figures.hertz(2e-4).translate(PLAIN) == "below 0.01 Hz"
-    assert figures.change(104.1, 84.6).translate(PLAIN) == "+23 %"          # 104.1 ÷ 84.6 = 1.2305
+    assert figures.change(104.1, 84.6).translate(PLAIN) == "+23 %"  # 104.1 ÷ 84.6 = 1.2305
     assert figures.change(80.0, 84.6).translate(PLAIN) == "−5.4 %"
     assert figures.change(84.6, 84.6).translate(PLAIN) == "±0 %"
     assert figures.change(1.0, 0.0) == ""
@@ -165,7 +170,7 @@ def test_the_common_note_is_96_high_in_three_lines():
     found = texts(picture)
     assert [(t.size, t.bold) for t in found] == [(21, True), (21, True), (16, False), (16, False)]
     foot = frame_of(picture).height
-    edges = [t.box[3] - (foot - 96) for t in found]                         # lower edges: LOOK.md's 36, 36, 60, 83
+    edges = [t.box[3] - (foot - 96) for t in found]  # lower edges: LOOK.md's 36, 36, 60, 83
     assert edges == pytest.approx([36, 36, 60, 83], abs=0.5)
 
 
@@ -185,15 +190,15 @@ def test_lines_break_between_statements_first():
     lines = [t.words for t in texts(of_unknown_size()) if t.size == 16]
     statements = of_unknown_size().note.drawing
     shown = " · ".join(lines)
-    assert shown.startswith(" · ".join(statements))           # in order, none cut
-    assert all(any(statement in line for line in lines) for statement in statements)   # each whole on one line
+    assert shown.startswith(" · ".join(statements))  # in order, none cut
+    assert all(any(statement in line for line in lines) for statement in statements)  # each whole on one line
 
 
 def test_true_scale_below_a_pixel_says_so_from_the_camera():
     small, large = true(), true(width=1920, height=1440)
     for picture in (small, large):
         frame = frame_of(picture)
-        pixel = frame.metres_per_pixel * 960 / picture.width               # a real pixel, not a sheet pixel
+        pixel = frame.metres_per_pixel * 960 / picture.width  # a real pixel, not a sheet pixel
         words = " ".join(t.words for t in texts(picture))
         assert f"one pixel here is {figures.length(pixel)}: the motion cannot show" in words
     assert "one pixel" not in " ".join(t.words for t in texts(known()))
@@ -217,5 +222,5 @@ def test_the_knob_swings_with_the_phase():
     picture = known()
     frame = frame_of(picture)
     places = [note_knob(picture, frame, phase) for phase in (0, np.pi / 2, np.pi)]
-    assert [p.x for p in places] == pytest.approx([938, 883, 828])          # positions in look/1_energy_light.png
+    assert [p.x for p in places] == pytest.approx([938, 883, 828])  # positions in look/1_energy_light.png
     assert {p.y for p in places} == {720 - 26}

@@ -42,7 +42,7 @@ def test_oklab_there_and_back():
 @pytest.mark.parametrize("which", ["energy", "gain"])
 def test_ramp_passes_through_its_stops(theme, which):
     stops = getattr(THEMES[theme], which)
-    ramp = palette.ramp(stops, 257)              # 257 entries: every stop falls on one
+    ramp = palette.ramp(stops, 257)  # 257 entries: every stop falls on one
     assert [f"#{r:02X}{g:02X}{b:02X}" for r, g, b in ramp[::32]] == list(stops)
 
 
@@ -75,9 +75,9 @@ def test_lightness_is_monotone_for_every_eye(theme, eye):
 
 def test_top_is_an_area_weighted_percentile_rounded_to_a_square():
     density = np.array([1.0, 5.0, 80.0])
-    assert palette.energy_top([density], [np.array([90.0, 9.9, 0.1])]) == 9.0       # 80 holds 0.1 % of the area
-    assert palette.energy_top([density], [np.array([90.0, 9.0, 1.0])]) == 81.0      # 80 holds 1 %
-    assert palette.energy_top([np.array([4.0])], [np.ones(1)]) == 4.0               # a square stays
+    assert palette.energy_top([density], [np.array([90.0, 9.9, 0.1])]) == 9.0  # 80 holds 0.1 % of the area
+    assert palette.energy_top([density], [np.array([90.0, 9.0, 1.0])]) == 81.0  # 80 holds 1 %
+    assert palette.energy_top([np.array([4.0])], [np.ones(1)]) == 4.0  # a square stays
 
 
 def test_top_covers_all_compared_designs_and_only_what_is_drawn():

@@ -24,7 +24,7 @@ def test_round_lengths_are_1_2_5(longest):
     found = round_length(longest)
     assert f"{found:.6e}"[0] in "125"
     assert f"{found:.6e}"[1:8] == ".000000"
-    assert found <= longest * (1 + 1e-9) < 2.5 * found * (1 + 1e-9)          # never shorter than 40 % of the room
+    assert found <= longest * (1 + 1e-9) < 2.5 * found * (1 + 1e-9)  # never shorter than 40 % of the room
 
 
 @pytest.mark.parametrize("zoom", [0.11, 1.0, 3.7, 52.0])
@@ -38,17 +38,17 @@ def test_the_ruler_measures_what_it_says(zoom):
     assert bar[0] == LEFT
     assert bar[2] - bar[0] <= LONGEST + 1e-6
     assert read(body) == pytest.approx((bar[2] - bar[0]) * frame.metres_per_pixel)
-    assert read(motion) == pytest.approx(read(body) / picture.magnification, rel=0.05)     # two digits
+    assert read(motion) == pytest.approx(read(body) / picture.magnification, rel=0.05)  # two digits
 
 
 def test_second_line_only_when_the_size_is_known():
     assert sum(isinstance(i, Text) for i in ruler_items(of_unknown_size(), frame_of(of_unknown_size()))) == 1
     body, motion = (i.words for i in ruler_items(true(), frame_of(true())) if isinstance(i, Text))
-    assert body.replace("body", "motion") == motion                         # look/5_true_scale.png: 40 mm, 40 mm
+    assert body.replace("body", "motion") == motion  # look/5_true_scale.png: 40 mm, 40 mm
 
 
 def test_ticks_are_perfect_squares_up_to_the_top():
-    assert squares(25) == [0, 1, 4, 9, 16, 25]                              # LOOK.md: "ticks 0 1 4 9 16 25"
+    assert squares(25) == [0, 1, 4, 9, 16, 25]  # LOOK.md: "ticks 0 1 4 9 16 25"
     for root in range(1, 40):
         ticks = squares(float(root**2))
         roots = np.sqrt(ticks)
@@ -61,7 +61,7 @@ def test_ticks_are_perfect_squares_up_to_the_top():
 def test_ticks_fall_where_their_colour_is():
     items = colour_bar_items("title", 25.0, "", "light", 936.0, 14.0, 230.0)
     bar = next(item for item in items if isinstance(item, GradientBar))
-    assert (bar.width, bar.height) == (230, 13)                             # LOOK.md: "230×13"
+    assert (bar.width, bar.height) == (230, 13)  # LOOK.md: "230×13"
     assert np.array_equal(bar.colours, energy_ramp("light"))
     labels = [t for t in items if isinstance(t, Text) and t.size == 14]
     for label in labels:

@@ -55,8 +55,8 @@ def test_a_cut_box_keeps_the_right_volume_and_shows_the_right_face(kind, normal,
     assert volume(points, faces) == pytest.approx(below, rel=1e-9)
     on_plane = np.abs(points[faces] @ unit - offset).max(axis=1) < 1e-9
     vectors = cross_of(points, faces[on_plane]) / 2
-    assert vectors.sum(axis=0) == pytest.approx(area * unit, rel=1e-9, abs=1e-9)          # faces outward
-    assert np.linalg.norm(vectors, axis=1).sum() == pytest.approx(area, rel=1e-9)         # without overlap
+    assert vectors.sum(axis=0) == pytest.approx(area * unit, rel=1e-9, abs=1e-9)  # faces outward
+    assert np.linalg.norm(vectors, axis=1).sum() == pytest.approx(area, rel=1e-9)  # without overlap
     assert (points[np.unique(faces)] @ unit).max() <= offset + 1e-9
 
 
@@ -68,10 +68,13 @@ def _box_below(unit, offset):
     height = corners @ unit - offset
     kept = [corners[height <= 0]]
     pairs = [(a, b) for a in range(8) for b in range(a) if np.count_nonzero(corners[a] != corners[b]) == 1]
-    rim = np.array([
-        corners[a] + height[a] / (height[a] - height[b]) * (corners[b] - corners[a])
-        for a, b in pairs if height[a] * height[b] < 0
-    ])
+    rim = np.array(
+        [
+            corners[a] + height[a] / (height[a] - height[b]) * (corners[b] - corners[a])
+            for a, b in pairs
+            if height[a] * height[b] < 0
+        ]
+    )
     across = np.linalg.svd(unit[None])[2][1:]
     return ConvexHull(np.concatenate([*kept, rim])).volume, ConvexHull(rim @ across.T).volume
 
@@ -79,7 +82,7 @@ def _box_below(unit, offset):
 @pytest.mark.parametrize("kind", ["hex8", "hex20", "tet4", "tet10", "wedge6", "pyramid5"])
 def test_a_cut_through_nodes_leaves_whole_cells_and_a_closed_skin(kind):
     mesh = box_mesh(kind, (3, 2, 2), SIZE)
-    shown = cut(mesh, (1, 0, 0), 2.0)                             # a plane of the mesh
+    shown = cut(mesh, (1, 0, 0), 2.0)  # a plane of the mesh
     assert shown.mesh.n_nodes == mesh.n_nodes
     assert volume(shown.mesh.points, shown.drawn.faces) == pytest.approx(4.0)
 
@@ -103,7 +106,7 @@ def test_neighbouring_cells_share_the_cut_faces_edges():
 def test_fields_follow_linearly_and_cells_keep_their_energy():
     mesh = box_mesh("hex8", (3, 2, 2), SIZE)
     shown = cut(mesh, (1, 2, 3), 2.0)
-    expected = body(shown.mesh, density=None).shape               # the shape is linear in place
+    expected = body(shown.mesh, density=None).shape  # the shape is linear in place
     assert shown.shape == pytest.approx(expected, abs=1e-12)
     unit = np.array([1, 2, 3]) / np.sqrt(14)
     points, faces = shown.mesh.points, shown.drawn.faces
@@ -139,7 +142,7 @@ def test_sheets_and_beams_are_cut_through():
 def test_the_part_nearer_to_the_eye_is_taken_away():
     mesh = box_mesh("hex8", (3, 2, 2), SIZE)
     for eye, low, high in (((1, 0, 0), 0.0, 1.2), ((-1, 0, 0), 1.2, 3.0)):
-        for sign in (1, -1):                                      # the sense of the normal says nothing
+        for sign in (1, -1):  # the sense of the normal says nothing
             shown = cut(mesh, (sign, 0, 0), sign * 1.2, eye)
             x = shown.mesh.points[np.unique(shown.drawn.faces), 0]
             assert (x.min(), x.max()) == pytest.approx((low, high))

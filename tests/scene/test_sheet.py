@@ -37,7 +37,7 @@ def test_texts_are_legible_inside_and_apart(name, size):
     texts = [item for item in sheet.items if isinstance(item, Text)]
     assert len(texts) > 4
     for text in texts:
-        assert text.size >= 14                                             # LOOK.md: "No text below 14"
+        assert text.size >= 14  # LOOK.md: "No text below 14"
     for item in sheet.items:
         left, top, right, foot = item.box
         assert left >= 0
@@ -99,7 +99,7 @@ def test_the_magnifier_shows_value_place_and_phase():
     assert plan.magnifier is not None
     dots = [plan.magnifier.dot(phase) for phase in (0, np.pi / 2, np.pi)]
     x, y = plan.magnifier.centre
-    assert dots[0].y > y                                    # the motion at phase 0 is down, and down is drawn down
+    assert dots[0].y > y  # the motion at phase 0 is down, and down is drawn down
     assert dots[0].y - dots[1].y == pytest.approx(dots[1].y - dots[2].y)
     assert dots[1].y == pytest.approx(y)
     for dot in dots:
@@ -115,7 +115,7 @@ def test_a_level_motion_is_magnified_level():
     plan = plan_sheet(picture.with_(magnified=glass, view=view), frame_of(picture.with_(view=view)))
     one, other = plan.magnifier.dot(0.0), plan.magnifier.dot(np.pi)
     assert one.y == other.y
-    assert one.x > other.x                                  # seen from −y, x runs to the right
+    assert one.x > other.x  # seen from −y, x runs to the right
 
 
 def test_side_by_side_has_a_rule_between_the_viewports():
@@ -165,7 +165,7 @@ def test_areas_of_primitives():
 def test_dashes_cover_their_share_over_corners():
     line = Line(((0, 0), (50, 0), (50, 31)), "#000000", 2.0, (13.0, 6.0))
     sides = sum(np.linalg.norm(quad[1] - quad[0]) for quad in line_quads(line))
-    assert sides == pytest.approx(4 * 13 + 5)               # 81 = 4 · 19 + 5: four whole dashes, and 5 of the fifth
+    assert sides == pytest.approx(4 * 13 + 5)  # 81 = 4 · 19 + 5: four whole dashes, and 5 of the fifth
 
 
 def test_thin_lines_keep_a_least_width():

@@ -18,7 +18,12 @@ def body(**changes):
     x = mesh.points[:, 0]
     foot = np.nonzero(x > 3.5)[0]
     return Body(
-        "b", mesh, np.zeros((mesh.n_nodes, 3)), 1.0, 1.0, np.arange(mesh.n_cells, dtype=float),
+        "b",
+        mesh,
+        np.zeros((mesh.n_nodes, 3)),
+        1.0,
+        1.0,
+        np.arange(mesh.n_cells, dtype=float),
         (SupportMark("root", np.nonzero(x == 0)[0]),),
         (MassMark("m", 1.0, np.array([5.0, 0, 0]), foot, np.zeros(6)),),
         (PointMark("p", np.array([5.0, 0, 0]), np.array([0, 0, 1.0]), np.zeros(6), foot),),
@@ -36,7 +41,7 @@ def test_hidden_groups_vanish_and_open_what_lies_behind():
     assert reach(shown) == (0.0, 2.0)
     assert set(shown.drawn.cell) <= set(shown.mesh.cell_groups["left"])
     ends = shown.mesh.points[shown.drawn.faces][:, :, 0]
-    assert (ends == 2.0).all(axis=1).sum() == 2 * 4            # the face between, four squares of two triangles
+    assert (ends == 2.0).all(axis=1).sum() == 2 * 4  # the face between, four squares of two triangles
 
 
 def test_only_shows_these_and_hide_wins():
@@ -69,7 +74,9 @@ def test_nothing_asked_nothing_changed():
 def test_words():
     assert Showing(hide="top").words == ("hidden: top",)
     assert Showing(("a", "b"), ("c",), Plane((1, 0, 0), 0.12)).words == (
-        "shown: only c", "hidden: a, b", "cut at x = 120\u00a0mm",
+        "shown: only c",
+        "hidden: a, b",
+        "cut at x = 120\u00a0mm",
     )
 
 

@@ -28,7 +28,7 @@ def test_box_is_closed_outward_and_split_at_its_twelve_edges(kind):
     assert surface.areas.sum() == pytest.approx(2 * (6 + 3 + 2))
     corners = points[surface.node_triangles]
     volume = np.einsum("ij,ij->i", corners[:, 0], np.cross(corners[:, 1], corners[:, 2])).sum() / 6
-    assert volume == pytest.approx(6.0)          # divergence theorem: positive only with outward triangles
+    assert volume == pytest.approx(6.0)  # divergence theorem: positive only with outward triangles
     feature = surface.edges.nodes[surface.edges.feature]
     length = np.linalg.norm(points[feature[:, 0]] - points[feature[:, 1]], axis=1)
     assert length.sum() == pytest.approx(4 * SIZE.sum())
@@ -80,11 +80,13 @@ def test_mixed_winding_is_made_alike():
 
 
 def test_one_sided_band_is_torn_at_one_place():
-    around = 40                                   # a band with half a turn (Möbius)
+    around = 40  # a band with half a turn (Möbius)
     angle = 2 * np.pi * np.arange(around) / around
+
     def rim(side):
         radius = 1 + side * 0.2 * np.cos(angle / 2)
         return np.stack([radius * np.cos(angle), radius * np.sin(angle), side * 0.2 * np.sin(angle / 2)], 1)
+
     points = np.concatenate([rim(-1), rim(1)])
     quads = [[i, i + 1, around + i + 1, around + i] for i in range(around - 1)]
     quads.append([around - 1, around, 0, 2 * around - 1])
@@ -107,7 +109,7 @@ def test_energy_does_not_bleed_over_creases():
     mesh = box_mesh("hex8", (4, 4, 4), (1.0, 1.0, 1.0))
     surface = surface_of(mesh)
     middle = np.concatenate([mesh.points[b.nodes].mean(axis=1) for b in mesh.blocks])
-    values = np.where(middle[:, 2] > 0.75, 8.0, 0.0)            # the top layer is hot
+    values = np.where(middle[:, 2] > 0.75, 8.0, 0.0)  # the top layer is hot
     by_vertex = surface.vertex_values(values)
     points = mesh.points[surface.nodes]
     normals = surface.vertex_normals(surface.face_normals(points))
@@ -116,7 +118,7 @@ def test_energy_does_not_bleed_over_creases():
     assert by_vertex[bottom] == pytest.approx(0.0)
     side = ~top & ~bottom & (points[surface.vertex][:, 2] == 0.75)
     assert by_vertex[side].min() > 2
-    assert by_vertex[side].max() < 6                            # smooth within a patch
+    assert by_vertex[side].max() < 6  # smooth within a patch
 
 
 def test_values_are_bounded_and_unknown_is_zero():
@@ -142,7 +144,7 @@ def test_beams_only():
 def test_drawn_areas():
     mesh = box_mesh("hex8", (3, 3, 3), (3.0, 3.0, 3.0))
     areas = drawn_areas(mesh)
-    assert np.sort(areas) == pytest.approx(np.repeat([0.0, 1, 2, 3], [1, 6, 12, 8]))     # inside, side, edge, corner
+    assert np.sort(areas) == pytest.approx(np.repeat([0.0, 1, 2, 3], [1, 6, 12, 8]))  # inside, side, edge, corner
     assert drawn_areas(plate_mesh("tri6", (2, 2), (1.0, 1.0))) == pytest.approx(np.full(8, 0.125))
     points = np.array([[0, 0, 0], [1, 0, 0], [1, 2, 0.0]])
     beams = Mesh(points, (CellBlock("line2", np.array([[0, 1], [1, 2]]), np.arange(2)),), np.arange(3))

@@ -13,9 +13,9 @@ PHASES = np.linspace(0, 2 * np.pi, 25)
 
 def pixels(scene, camera, boxes, index):
     shown = scene.bodies[index]
-    return np.concatenate([
-        camera.project(positions(shown.mesh.points, shown.shape, shown.factor, p), boxes[index]) for p in PHASES
-    ])
+    return np.concatenate(
+        [camera.project(positions(shown.mesh.points, shown.shape, shown.factor, p), boxes[index]) for p in PHASES]
+    )
 
 
 def travelling():
@@ -35,7 +35,7 @@ def test_both_extremes_fit_tightly(eye, make):
     assert low[1] >= tokens.TOP - 1e-6
     assert high[1] <= 720 - 96 - tokens.MARGIN + 1e-6
     room = np.array([960 - 2 * tokens.MARGIN, 720 - 96 - tokens.MARGIN - tokens.TOP])
-    assert np.max((high - low) / room) == pytest.approx(1.0, abs=0.01)       # 15° phase steps miss little
+    assert np.max((high - low) / room) == pytest.approx(1.0, abs=0.01)  # 15° phase steps miss little
 
 
 def test_axes_are_orthonormal_even_looking_along_up():
@@ -51,7 +51,7 @@ def test_a_length_across_the_view_measures_the_same_in_pixels():
     ends = np.array([0.1, 0.02, 0.0]) + np.array([[0, 0, 0], 0.05 * camera.right, 0.05 * camera.up])
     xy = camera.project(ends, boxes[0])
     assert xy[1] - xy[0] == pytest.approx([0.05 / camera.metres_per_pixel, 0], abs=1e-9)
-    assert xy[2] - xy[0] == pytest.approx([0, -0.05 / camera.metres_per_pixel], abs=1e-9)   # y runs down
+    assert xy[2] - xy[0] == pytest.approx([0, -0.05 / camera.metres_per_pixel], abs=1e-9)  # y runs down
 
 
 def test_compared_designs_share_camera_and_scale():
@@ -83,13 +83,13 @@ def test_wide_bodies_are_stacked():
 def test_side_by_side_pictures_are_as_high_as_their_bodies_need(eye):
     side = picture(body(), body(name="modified"), layout="side", view=View(eye), width=960)
     height = view.side_height(side, 120)
-    assert height % 16 == 0                                  # video needs it
+    assert height % 16 == 0  # video needs it
     camera, boxes = view.fit(side.with_(height=height), 120)
     xy = pixels(side, camera, boxes, 0)
     left, _, right, _ = boxes[0]
-    if height < view.TALLEST:                                # bodies reach from margin to margin
+    if height < view.TALLEST:  # bodies reach from margin to margin
         assert np.ptp(xy[:, 0]) == pytest.approx(right - left - 2 * tokens.MARGIN, rel=0.02)
-    else:                                                    # and else use all the height there is
+    else:  # and else use all the height there is
         top, bottom = view._furniture(side, boxes[0][0] == boxes[1][0])
         assert np.ptp(xy[:, 1]) == pytest.approx(boxes[0][3] - boxes[0][1] - top - bottom, rel=0.02)
 

@@ -13,15 +13,16 @@ LENGTH, WIDTH, FLANGE = 0.6, 0.11, 0.075
 def channel(along: int = 48, across: int = 8, down: int = 6, window: float = 0.035) -> Mesh:
     """Shell of quad4: web in z = 0, two flanges below; ``window`` is the half width of the hole in the web, m."""
     x = np.linspace(0, LENGTH, along + 1)
-    run = np.concatenate([
-        np.linspace(-FLANGE, 0, down + 1), np.linspace(0, WIDTH, across + 1)[1:],
-        np.linspace(WIDTH, WIDTH + FLANGE, down + 1)[1:],
-    ])
+    run = np.concatenate(
+        [
+            np.linspace(-FLANGE, 0, down + 1),
+            np.linspace(0, WIDTH, across + 1)[1:],
+            np.linspace(WIDTH, WIDTH + FLANGE, down + 1)[1:],
+        ]
+    )
     y = np.clip(run, 0, WIDTH)
     z = np.where(run < 0, run, np.where(run > WIDTH, WIDTH - run, 0.0))
-    points = np.stack(
-        [np.repeat(x, len(run)), np.tile(y, len(x)), np.tile(z, len(x))], axis=1
-    )
+    points = np.stack([np.repeat(x, len(run)), np.tile(y, len(x)), np.tile(z, len(x))], axis=1)
     i, j = np.meshgrid(np.arange(along), np.arange(len(run) - 1), indexing="ij")
     n = len(run)
     quads = np.stack([i * n + j, (i + 1) * n + j, (i + 1) * n + j + 1, i * n + j + 1], axis=-1).reshape(-1, 4)

@@ -37,7 +37,7 @@ def plain(mesh, **changes):
 
 
 def above_note(image):
-    return image[: image.shape[0] - round(image.shape[1] * 120 / 960) - 2]       # the note of channel.NOTE is lower
+    return image[: image.shape[0] - round(image.shape[1] * 120 / 960) - 2]  # the note of channel.NOTE is lower
 
 
 def test_same_input_same_pixels():
@@ -155,8 +155,12 @@ def test_beams_are_drawn_as_lines():
 
 def test_overlay_shows_both_designs():
     scene = picture(
-        body(name="baseline"), body(channel(window=0.02), "modified", share=0.05), layout="overlay", energy_top=None,
-        width=960, height=720,
+        body(name="baseline"),
+        body(channel(window=0.02), "modified", share=0.05),
+        layout="overlay",
+        energy_top=None,
+        width=960,
+        height=720,
     )
     for theme in THEMES:
         image = above_note(render(scene.with_(theme=theme)))[70:]
@@ -208,9 +212,14 @@ def test_a_turned_camera_is_kept_and_followed():
 
 def test_rings_face_a_turned_camera():
     shown = body()
-    shown = Body(shown.name, shown.mesh, shown.shape, shown.factor, 84.6, points=(
-        PointMark("blur", np.array([0.3, -0.1, 0.1]), np.array([0.0, 0.0, 1.0]), np.zeros(6)),
-    ))
+    shown = Body(
+        shown.name,
+        shown.mesh,
+        shown.shape,
+        shown.factor,
+        84.6,
+        points=(PointMark("blur", np.array([0.3, -0.1, 0.1]), np.array([0.0, 0.0, 1.0]), np.zeros(6)),),
+    )
     first, turned = View((0.0, -1.0, 0.3)), View((1.0, -0.2, 0.3))
     scene = picture(shown, view=first)
     with Stage(scene) as stage, Stage(scene.with_(view=turned)) as other:
@@ -227,8 +236,9 @@ def test_reduce_is_the_rounded_mean_of_boxes():
 
 def test_tokens_of_the_contour_width():
     # a contour of 1.5 px at 960 wide covers about that much on the screen
-    scene = picture(plain(plate_mesh("quad4", (2, 2), (1.0, 1.0))), view=View((0, 0, 1)), ghost=False, width=960,
-                    height=720)
+    scene = picture(
+        plain(plate_mesh("quad4", (2, 2), (1.0, 1.0))), view=View((0, 0, 1)), ghost=False, width=960, height=720
+    )
     row = render(scene)[350, :, 0].astype(int)
     body_red, edge_red = byte(THEMES["light"].body)[0], byte(THEMES["light"].body_edge)[0]
     dark = np.clip((body_red - row) / (body_red - edge_red), 0, 1)
@@ -278,7 +288,11 @@ def test_node_lines_are_drawn_with_their_casing(theme):
     bare = Body("plate", mesh, shape, 0.05, 1.0)
     lined = Body("plate", mesh, shape, 0.05, 1.0, node_lines=NodeLines(None))
     options = {
-        "view": View((0, 0, 1), (0, 1, 0)), "ghost": False, "theme": theme, "width": 960, "height": 720,
+        "view": View((0, 0, 1), (0, 1, 0)),
+        "ghost": False,
+        "theme": theme,
+        "width": 960,
+        "height": 720,
     }
     before, after = render(picture(bare, **options), 1.0), render(picture(lined, **options), 1.0)
     scene = picture(lined, **options)

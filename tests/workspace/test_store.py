@@ -19,18 +19,20 @@ STEEL = Material("steel", 210e9, 0.3, 7850.0)
 
 
 def design() -> Design:
-    physics = Physics(
-        {"steel": STEEL}, (Assignment("*", "steel", 2e-3),), (Support("root", Selector(group="x0")),)
-    )
+    physics = Physics({"steel": STEEL}, (Assignment("*", "steel", 2e-3),), (Support("root", Selector(group="x0")),))
     return Design("plate", plate_mesh("quad4", (6, 3), (0.3, 0.1)), physics)
 
 
 def mode_set(count: int = 3) -> ModeSet:
     rng = np.random.default_rng(1)
     return ModeSet(
-        np.arange(10, 15), np.array([1.0, 2.0, 2.0])[:count],
+        np.arange(10, 15),
+        np.array([1.0, 2.0, 2.0])[:count],
         ArrayShapes(rng.normal(size=(count, 5, 3)), rng.normal(size=(count, 5, 3))),
-        np.full(count, 0.01), "mass", "computed", "somewhere",
+        np.full(count, 0.01),
+        "mass",
+        "computed",
+        "somewhere",
     )
 
 

@@ -173,13 +173,18 @@ def _wedge(degree: int) -> Powers:
 
 
 def _kind(
-    name: str, vtk_type: int, meshio_name: str, powers: Powers, *, centres: tuple[Nodes, ...] = (),
+    name: str,
+    vtk_type: int,
+    meshio_name: str,
+    powers: Powers,
+    *,
+    centres: tuple[Nodes, ...] = (),
     rational: tuple[Nodes, ...] = (),
 ) -> CellKind:
     family_name = name.rstrip("0123456789")
     family = _FAMILIES[family_name]
     corners = np.array(family.corners, float).reshape(len(family.corners), -1)
-    n_nodes, dim, n_corners = int(name[len(family_name):]), corners.shape[1], len(corners)
+    n_nodes, dim, n_corners = int(name[len(family_name) :]), corners.shape[1], len(corners)
     means: tuple[Nodes, ...] = tuple((i,) for i in range(n_corners))
     quadratic = n_nodes > n_corners
     if quadratic:
@@ -187,7 +192,7 @@ def _kind(
     reference = np.array([corners[list(m)].mean(axis=0) for m in means])
     exponents = np.array([*powers, *rational], np.int64).reshape(n_nodes, dim)
     apex = np.zeros(n_nodes, np.int64)
-    apex[n_nodes - len(rational):] = 1
+    apex[n_nodes - len(rational) :] = 1
     coefficients = np.linalg.inv(_monomials(exponents, apex, reference))
     swapped = reference[:, [1, 0, *range(2, dim)]] if dim > 1 else -reference
     mirror = np.linalg.norm(swapped[:, None] - reference, axis=2).argmin(axis=1)
@@ -201,36 +206,49 @@ def _kind(
     for array in (reference, exponents, apex, mirror, coefficients):
         array.flags.writeable = False
     return CellKind(
-        name=name, family=family_name, dim=dim, degree=2 if quadratic else min(dim, 1), n_nodes=n_nodes,
-        n_corners=n_corners, reference=reference, faces=tuple(face(ring) for ring in family.faces),
+        name=name,
+        family=family_name,
+        dim=dim,
+        degree=2 if quadratic else min(dim, 1),
+        n_nodes=n_nodes,
+        n_corners=n_corners,
+        reference=reference,
+        faces=tuple(face(ring) for ring in family.faces),
         edges=tuple((*e, node_of[frozenset(e)]) if quadratic else e for e in family.edges),
-        triangles=_TRIANGLES.get(name, ()), mirror=mirror, vtk_type=vtk_type, meshio_name=meshio_name,
-        powers=exponents, apex_power=apex, coefficients=coefficients,
+        triangles=_TRIANGLES.get(name, ()),
+        mirror=mirror,
+        vtk_type=vtk_type,
+        meshio_name=meshio_name,
+        powers=exponents,
+        apex_power=apex,
+        coefficients=coefficients,
     )
 
 
-KINDS: Mapping[str, CellKind] = MappingProxyType({
-    kind.name: kind
-    for kind in (
-        _kind("vertex1", 1, "vertex", [()]),
-        _kind("line2", 3, "line", _total(1, 1)),
-        _kind("line3", 21, "line3", _total(1, 2)),
-        _kind("tri3", 5, "triangle", _total(2, 1)),
-        _kind("tri6", 22, "triangle6", _total(2, 2)),
-        _kind("quad4", 9, "quad", _tensor(2, 1)),
-        _kind("quad8", 23, "quad8", _serendipity(2)),
-        _kind("quad9", 28, "quad9", _tensor(2, 2), centres=((0, 1, 2, 3),)),
-        _kind("tet4", 10, "tetra", _total(3, 1)),
-        _kind("tet10", 24, "tetra10", _total(3, 2)),
-        _kind("pyramid5", 14, "pyramid", _total(3, 1), rational=((1, 1, 0),)),
-        _kind("pyramid13", 27, "pyramid13", _total(3, 2), rational=((1, 1, 0), (2, 1, 0), (1, 2, 0))),
-        _kind("wedge6", 13, "wedge", _wedge(1)),
-        _kind("wedge15", 26, "wedge15", _wedge(2)),
-        _kind("hex8", 12, "hexahedron", _tensor(3, 1)),
-        _kind("hex20", 25, "hexahedron20", _serendipity(3)),
-        _kind("hex27", 29, "hexahedron27", _tensor(3, 2), centres=_HEX27_CENTRES),
-    )
-})
+KINDS: Mapping[str, CellKind] = MappingProxyType(
+    {
+        kind.name: kind
+        for kind in (
+            _kind("vertex1", 1, "vertex", [()]),
+            _kind("line2", 3, "line", _total(1, 1)),
+            _kind("line3", 21, "line3", _total(1, 2)),
+            _kind("tri3", 5, "triangle", _total(2, 1)),
+            _kind("tri6", 22, "triangle6", _total(2, 2)),
+            _kind("quad4", 9, "quad", _tensor(2, 1)),
+            _kind("quad8", 23, "quad8", _serendipity(2)),
+            _kind("quad9", 28, "quad9", _tensor(2, 2), centres=((0, 1, 2, 3),)),
+            _kind("tet4", 10, "tetra", _total(3, 1)),
+            _kind("tet10", 24, "tetra10", _total(3, 2)),
+            _kind("pyramid5", 14, "pyramid", _total(3, 1), rational=((1, 1, 0),)),
+            _kind("pyramid13", 27, "pyramid13", _total(3, 2), rational=((1, 1, 0), (2, 1, 0), (1, 2, 0))),
+            _kind("wedge6", 13, "wedge", _wedge(1)),
+            _kind("wedge15", 26, "wedge15", _wedge(2)),
+            _kind("hex8", 12, "hexahedron", _tensor(3, 1)),
+            _kind("hex20", 25, "hexahedron20", _serendipity(3)),
+            _kind("hex27", 29, "hexahedron27", _tensor(3, 2), centres=_HEX27_CENTRES),
+        )
+    }
+)
 _BY_VTK = {kind.vtk_type: kind for kind in KINDS.values()}
 _BY_MESHIO = {kind.meshio_name: kind for kind in KINDS.values()}
 

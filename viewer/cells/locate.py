@@ -21,10 +21,10 @@ from viewer.cells.kinds import KINDS
 from viewer.cells.skin import outer_faces
 
 Array = NDArray[Any]
-_INSIDE = 1e-9          # in reference coordinates
+_INSIDE = 1e-9  # in reference coordinates
 _STEPS = 40
-_PAIRS = 50_000         # point–cell pairs at a time
-_BULGE = 1.25           # a curved cell stays within this many times the reach of its nodes from its centre
+_PAIRS = 50_000  # point–cell pairs at a time
+_BULGE = 1.25  # a curved cell stays within this many times the reach of its nodes from its centre
 
 
 @dataclass(frozen=True, eq=False)
@@ -50,10 +50,17 @@ def nearest(blocks: Sequence[tuple[str, Array]], points: Array, queries: Array) 
     starts = np.cumsum([0, *(len(nodes) for _, nodes in blocks)])
     if starts[-1] == 0:
         raise ValueError("no cell to search")
-    best = Places(np.full(len(queries), -1), np.zeros((len(queries), 3)), np.full(len(queries), np.inf),
-                  np.zeros((len(queries), 3)))
-    rows = [(kind, np.asarray(nodes), np.arange(start, start + len(nodes)))
-            for (kind, nodes), start in zip(blocks, starts[:-1], strict=True) if len(nodes)]
+    best = Places(
+        np.full(len(queries), -1),
+        np.zeros((len(queries), 3)),
+        np.full(len(queries), np.inf),
+        np.zeros((len(queries), 3)),
+    )
+    rows = [
+        (kind, np.asarray(nodes), np.arange(start, start + len(nodes)))
+        for (kind, nodes), start in zip(blocks, starts[:-1], strict=True)
+        if len(nodes)
+    ]
     solids = [part for part in rows if KINDS[part[0]].dim == 3]
     if solids:
         _sweep(solids, points, queries, best, within=True)
@@ -80,7 +87,7 @@ def _sweep(
         count = min(count, len(centre))
         away, cells = tree.query(queries[open_rows], k=count)
         away, cells = away.reshape(len(open_rows), -1), cells.reshape(len(open_rows), -1)
-        for column in range(done, count):            # nearest centre first, so that most others can be dropped
+        for column in range(done, count):  # nearest centre first, so that most others can be dropped
             bound = np.where(np.isinf(best.distance[open_rows]), 0, -1) if within else best.distance[open_rows]
             wanted = away[:, column] - radius[cells[:, column]] <= bound
             _improve(best, parts, points, queries, open_rows[wanted], cells[wanted, column], within)
@@ -116,7 +123,12 @@ def _spheres(xyz: Array) -> tuple[Array, Array]:
 
 
 def _improve(
-    best: Places, parts: list[tuple[str, Array, Array]], points: Array, queries: Array, rows: Array, cells: Array,
+    best: Places,
+    parts: list[tuple[str, Array, Array]],
+    points: Array,
+    queries: Array,
+    rows: Array,
+    cells: Array,
     within: bool,
 ) -> None:
     """Try one cell (counted through ``parts``) for each of the query ``rows`` and keep what is nearer."""
@@ -191,7 +203,7 @@ def _descend(kind: str, xyz: Array, query: Array) -> tuple[Array, Array]:
             gram[convex] = curved[convex]
         gram += 1e-14 * np.trace(gram, axis1=1, axis2=2)[:, None, None] * np.eye(cell.dim) + 1e-300 * np.eye(cell.dim)
         step = np.linalg.solve(gram, np.einsum("mid,mi->md", slopes, miss)[..., None])[..., 0]
-        step /= np.maximum(np.abs(step).max(axis=1, keepdims=True), 1.0)    # at most half a cell
+        step /= np.maximum(np.abs(step).max(axis=1, keepdims=True), 1.0)  # at most half a cell
         before = np.sum(miss**2, axis=1)
         for _ in range(6):
             moved = target - np.einsum("mn,mni->mi", cell.shape(at + step), here)

@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 from viewer.cells.kinds import KINDS
 
 Array = NDArray[Any]
-_CHUNK = 500         # cells at a time: what the processor's cache holds
+_CHUNK = 500  # cells at a time: what the processor's cache holds
 
 
 def jacobian_components(xyz: Array, gradient: Array) -> Array:

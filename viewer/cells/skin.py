@@ -76,8 +76,12 @@ def skin(blocks: Sequence[tuple[str, Array]]) -> Skin:
             chain = (a, *mid, b)
             sides += [nodes[:, list(pair)] for pair in itertools.pairwise(chain)]
     return Skin(
-        np.concatenate(triangles), np.concatenate(cells), np.concatenate(faces), _once(np.concatenate(sides)),
-        np.concatenate(segments), np.concatenate(segment_cells),
+        np.concatenate(triangles),
+        np.concatenate(cells),
+        np.concatenate(faces),
+        _once(np.concatenate(sides)),
+        np.concatenate(segments),
+        np.concatenate(segment_cells),
     )
 
 
@@ -87,14 +91,15 @@ def outer_faces(blocks: Sequence[tuple[str, Array]]) -> list[tuple[str, Array, A
     starts = np.cumsum([0, *(len(nodes) for _, nodes in blocks)])
     surfaces = [
         (kind, np.asarray(nodes), np.arange(start, start + len(nodes)))
-        for (kind, nodes), start in zip(blocks, starts[:-1], strict=True) if KINDS[kind].dim == 2
+        for (kind, nodes), start in zip(blocks, starts[:-1], strict=True)
+        if KINDS[kind].dim == 2
     ]
     return surfaces + _exterior(blocks, starts)
 
 
 def _exterior(blocks: Sequence[tuple[str, Array]], starts: Array) -> list[tuple[str, Array, Array]]:
     """Exterior faces of the solid blocks, grouped: (face kind, nodes, cell rows)."""
-    slots: dict[int, list[tuple[int, int]]] = {3: [], 4: []}          # corners → (block, face)
+    slots: dict[int, list[tuple[int, int]]] = {3: [], 4: []}  # corners → (block, face)
     for number, (kind, _) in enumerate(blocks):
         for index, (face_kind, _) in enumerate(KINDS[kind].faces):
             slots[KINDS[face_kind].n_corners].append((number, index))
@@ -102,9 +107,9 @@ def _exterior(blocks: Sequence[tuple[str, Array]], starts: Array) -> list[tuple[
     for n_corners, group in slots.items():
         if not group:
             continue
-        corners = np.concatenate([
-            blocks[b][1][:, list(KINDS[blocks[b][0]].faces[f][1][:n_corners])] for b, f in group
-        ])
+        corners = np.concatenate(
+            [blocks[b][1][:, list(KINDS[blocks[b][0]].faces[f][1][:n_corners])] for b, f in group]
+        )
         single = _single(corners)
         end = 0
         for b, f in group:
@@ -138,6 +143,6 @@ def _once(pairs: Array) -> Array:
     if len(pairs) == 0:
         return pairs
     size = np.int64(pairs.max()) + 1
-    key = np.sort(pairs.min(axis=1) * size + pairs.max(axis=1))          # far faster than np.unique on millions
+    key = np.sort(pairs.min(axis=1) * size + pairs.max(axis=1))  # far faster than np.unique on millions
     key = key[np.diff(key, prepend=-1) > 0]
     return np.stack([key // size, key % size], axis=1)

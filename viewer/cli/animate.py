@@ -64,13 +64,19 @@ def animate(
     suffix = target.suffix.lower()
     if suffix not in (".gif", ".mp4", ".png") or (strip and suffix != ".png"):
         raise InputError(
-            "cannot tell what to draw", file=target, found=f"the ending '{target.suffix}'",
+            "cannot tell what to draw",
+            file=target,
+            found=f"the ending '{target.suffix}'",
             expected=".png for a strip" if strip else ".gif or .mp4 for a loop, .png for a still",
         )
     if against and energy == "given":
         raise InputError("given energies are of one design's own unit", do="leave out --energy given, or --against")
     options: dict[str, Any] = {
-        "theme": theme, "width": width, "ghost": not no_ghost, "mesh_edges": mesh_edges, "node_lines": node_lines,
+        "theme": theme,
+        "width": width,
+        "ghost": not no_ghost,
+        "mesh_edges": mesh_edges,
+        "node_lines": node_lines,
         "showing": Showing(tuple(hide or ()), tuple(only or ()), _plane(cut) if cut else None),
     }
     with progress_bar() as progress:
@@ -81,13 +87,24 @@ def animate(
             second = opened.study(other, None, progress)
             theirs = opened.partner(first, mode, other) if not number else _number(number)
             picture = pair_picture(
-                study, mode, second, theirs, layout="overlay" if overlay else "side", true_scale=true_scale,
-                energy=not no_energy, **options,
+                study,
+                mode,
+                second,
+                theirs,
+                layout="overlay" if overlay else "side",
+                true_scale=true_scale,
+                energy=not no_energy,
+                **options,
             )
         else:
             picture = single_picture(
-                study, mode, true_scale=true_scale, peak_percent=peak, energy=not no_energy,
-                given_energy=energy == "given" and not no_energy, **options
+                study,
+                mode,
+                true_scale=true_scale,
+                peak_percent=peak,
+                energy=not no_energy,
+                given_energy=energy == "given" and not no_energy,
+                **options,
             )
         if strip:
             save_strip(picture, target, progress)

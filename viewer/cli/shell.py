@@ -65,7 +65,7 @@ class _CtrlC:
 @contextmanager
 def _interrupts() -> Iterator[None]:
     if threading.current_thread() is not threading.main_thread():
-        yield       # only the main thread hears signals
+        yield  # only the main thread hears signals
         return
     earlier = signal.signal(signal.SIGINT, _CtrlC())
     try:
@@ -123,8 +123,12 @@ def progress_bar() -> Iterator[Progress]:
     from rich.progress import Progress as Bar
 
     with Bar(
-        TextColumn("{task.description}"), BarColumn(30), TextColumn("{task.fields[count]}"), TimeElapsedColumn(),
-        console=Console(stderr=True), transient=True,
+        TextColumn("{task.description}"),
+        BarColumn(30),
+        TextColumn("{task.fields[count]}"),
+        TimeElapsedColumn(),
+        console=Console(stderr=True),
+        transient=True,
     ) as bar:
         task = bar.add_task("", total=None, count="")
 

@@ -32,7 +32,7 @@ class Checkup:
 
     @property
     def text(self) -> str:
-        if self.draft:   # a dossier is printed so that it can be saved as it stands
+        if self.draft:  # a dossier is printed so that it can be saved as it stands
             said = [line for words in (*self.statements, *self.cautions) for line in words.splitlines()]
             return "\n".join([*(f"# {line}" for line in said), self.draft])
         lines = [*self.statements, *(f"caution: {c}" for c in self.cautions), *(f"error: {e}" for e in self.errors)]
@@ -115,7 +115,7 @@ def check_mesh(path: Path, modes_path: Path | None, progress: Progress = SILENT)
             modes = read_modes(path, mesh, progress=progress)
             modes_path = path
             statements.append(f"{modes.count} modes in the same file")
-        except LoadError as error:      # as for most meshes; the reason tells a broken mode set from none
+        except LoadError as error:  # as for most meshes; the reason tells a broken mode set from none
             statements.append(f"no modes taken from the same file: {error.problem}")
     return Checkup(tuple(statements), (*report.warnings, *report.notes), (), bare_dossier(mesh, path, modes_path))
 

@@ -16,7 +16,7 @@ from viewer.scene.picture import Picture
 from viewer.scene.tokens import FRAME_MS, FRAMES
 from viewer.stage import Stage
 
-PALETTE_PHASES = (0.0, 0.125, 0.25, 0.625, 0.75)       # of a cycle: both extremes, both directions, rest
+PALETTE_PHASES = (0.0, 0.125, 0.25, 0.625, 0.75)  # of a cycle: both extremes, both directions, rest
 
 
 def save_gif(picture: Picture, path: str | os.PathLike[str], progress: Progress = SILENT) -> Path:
@@ -49,7 +49,13 @@ def write_loop(frames: list[Image.Image], path: Path) -> None:
     A writer may join equal neighbours into one longer frame: their time must not be lost.
     """
     frames[0].save(
-        path, format="GIF", save_all=True, append_images=frames[1:], duration=FRAME_MS, loop=0, disposal=1,
+        path,
+        format="GIF",
+        save_all=True,
+        append_images=frames[1:],
+        duration=FRAME_MS,
+        loop=0,
+        disposal=1,
         optimize=False,
     )
     expected = FRAME_MS * len(frames)

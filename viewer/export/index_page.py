@@ -111,24 +111,26 @@ def page_text(
         "</main>",
         f'<footer><p class="soft">{_text(DEFERENCE)}</p></footer>',
     ]
-    return "\n".join([
-        "<!DOCTYPE html>",
-        '<html lang="en">',
-        "<head>",
-        '<meta charset="utf-8">',
-        '<meta name="viewport" content="width=device-width, initial-scale=1">',
-        '<meta name="color-scheme" content="light dark">',
-        "<meta http-equiv=\"Content-Security-Policy\" content=\"default-src 'none'; img-src 'self' file: data:; "
-        "style-src 'unsafe-inline'\">",
-        f"<title>{_text(dossier_title)}</title>",
-        f"<style>{_style()}</style>",
-        "</head>",
-        "<body>",
-        *(part for part in body if part),
-        "</body>",
-        "</html>",
-        "",
-    ])
+    return "\n".join(
+        [
+            "<!DOCTYPE html>",
+            '<html lang="en">',
+            "<head>",
+            '<meta charset="utf-8">',
+            '<meta name="viewport" content="width=device-width, initial-scale=1">',
+            '<meta name="color-scheme" content="light dark">',
+            "<meta http-equiv=\"Content-Security-Policy\" content=\"default-src 'none'; img-src 'self' file: data:; "
+            "style-src 'unsafe-inline'\">",
+            f"<title>{_text(dossier_title)}</title>",
+            f"<style>{_style()}</style>",
+            "</head>",
+            "<body>",
+            *(part for part in body if part),
+            "</body>",
+            "</html>",
+            "",
+        ]
+    )
 
 
 def _section(anchor: str, section: PageSection) -> str:
@@ -184,7 +186,9 @@ def _table(table: PageTable) -> str:
         parts += [
             f'<div class="table" tabindex="0" role="region" aria-label="{_text(table.title)}"><table>',
             f"<thead><tr>{head}</tr></thead>",
-            "<tbody>", *rows, "</tbody></table></div>",
+            "<tbody>",
+            *rows,
+            "</tbody></table></div>",
         ]
     else:
         parts.append('<p class="soft">nothing to list</p>')
@@ -224,7 +228,10 @@ def _check_links(folder: Path, sections: Sequence[PageSection]) -> None:
             pure = PurePosixPath(path)
             if pure.is_absolute() or ".." in pure.parts or "\\" in path or ":" in path:
                 raise ExportError(
-                    "the page can only show files inside its own folder", file=folder, place=owner, found=path,
+                    "the page can only show files inside its own folder",
+                    file=folder,
+                    place=owner,
+                    found=path,
                     do="give the path relative to the folder, with forward slashes",
                 )
             if not (folder / path).is_file():

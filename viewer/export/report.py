@@ -66,9 +66,7 @@ def write_review(
         sections = ([comparison] if comparison else []) + [_explain(desk, study) for study in studies]
         doubts = [words for s in studies for words in (*opened.doubts(s.design.name), *s.cautions)]
         cautions = tuple(dict.fromkeys((*opened.warnings, *doubts)))
-        write_index(
-            part, opened.dossier.title, sections, condition=opened.dossier.condition, cautions=cautions
-        )
+        write_index(part, opened.dossier.title, sections, condition=opened.dossier.condition, cautions=cautions)
         summary = _summary(opened, studies, desk, cautions)
         write_text(part / SUMMARY, json.dumps(plain(summary), indent=1, ensure_ascii=False, allow_nan=False) + "\n")
     return Review(Path(folder) / "index.html", summary, tuple(desk.printed), cautions)
@@ -215,9 +213,7 @@ def _compare_pair(desk: _Desk, pair: _Pair, row: Row) -> PageLoop:
     )
 
 
-def _summary(
-    opened: OpenDossier, studies: list[Study], desk: _Desk, cautions: tuple[str, ...]
-) -> dict[str, Any]:
+def _summary(opened: OpenDossier, studies: list[Study], desk: _Desk, cautions: tuple[str, ...]) -> dict[str, Any]:
     return {
         "made_by": f"hingelight {__version__}",
         "title": opened.dossier.title,

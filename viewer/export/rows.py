@@ -17,7 +17,7 @@ from viewer.scene.figures import change, digits, hertz, length
 from viewer.workspace import Study
 
 Row = dict[str, Any]
-_WHOLE = 0.95       # a group that holds more of the body than this says nothing about where
+_WHOLE = 0.95  # a group that holds more of the body than this says nothing about where
 
 
 # What terminal and page show of the rows; files carry every column.
@@ -74,7 +74,7 @@ def _mode_row(study: Study, index: int) -> Row:
         for word, values in (("strain", found.strain[index]), ("kinetic", found.kinetic[index])):
             name, share = _most(study, values, found.volumes)
             row[f"{word}_energy_most_in"], row[f"{word}_energy_most_percent"] = name, share
-        if not study.relative:      # springs and masses are left out of relative energies
+        if not study.relative:  # springs and masses are left out of relative energies
             row["springs_strain_percent"] = 100 * found.spring_share(index)
             row["masses_kinetic_percent"] = 100 * found.mass_share(index)
         else:

@@ -19,9 +19,7 @@ def image(picture: Picture, phase: float = 0.0) -> Array:
         return stage.image(phase)
 
 
-def save_png(
-    picture: Picture, path: str | os.PathLike[str], phase: float = 0.0, progress: Progress = SILENT
-) -> Path:
+def save_png(picture: Picture, path: str | os.PathLike[str], phase: float = 0.0, progress: Progress = SILENT) -> Path:
     """Write one phase as PNG; returns the path. Raises ``ExportError`` when the file cannot be written."""
     progress.tick("drawing", 0, 1)
     with atomic_path(path) as part:

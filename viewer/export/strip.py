@@ -21,7 +21,7 @@ from viewer.stage.sheet_actors import SheetActors
 from viewer.stage.stage import SUPERSAMPLE, reduce
 from viewer.stage.windows import off_screen, pixels
 
-LINES = 1.0                # line widths, of those of a picture 960 wide
+LINES = 1.0  # line widths, of those of a picture 960 wide
 
 
 def save_strip(picture: Picture, path: str | os.PathLike[str], progress: Progress = SILENT) -> Path:

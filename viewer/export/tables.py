@@ -27,8 +27,8 @@ _UNITS = {"hz": "Hz", "percent": "%", "m": "m", "kg": "kg", "s": "s", "deg": "°
 _PREFIXES = ((1.0, "m"), (1e-3, "mm"), (1e-6, "µm"), (1e-9, "nm"))
 _IDENTITY = ("design", "mode", "group", "point", "first_design", "first_mode", "second_design", "second_mode")
 _NOTHING = "–"
-_DIGITS = 4                        # significant digits of a number in text, when its key has no rule below
-_DECIMALS = {"%": 1}               # decimals by unit
+_DIGITS = 4  # significant digits of a number in text, when its key has no rule below
+_DECIMALS = {"%": 1}  # decimals by unit
 
 
 @dataclass(frozen=True)
@@ -89,7 +89,7 @@ def readable(rows: Rows, width: int = 118) -> str:
 def text_table(rows: Rows) -> TextTable:
     """The rows rounded and worded for reading: what the terminal and the page show."""
     keys = [key for key in _keys(rows) if any(_plain(row.get(key)) not in (None, "") for row in rows)]
-    keys.sort(key=lambda key: key not in _IDENTITY)          # stable: what a row is about comes first
+    keys.sort(key=lambda key: key not in _IDENTITY)  # stable: what a row is about comes first
     columns, units, numeric = [], [], []
     for key in keys:
         values = [_plain(row.get(key)) for row in rows]
@@ -98,8 +98,11 @@ def text_table(rows: Rows) -> TextTable:
         units.append(unit)
         numeric.append(all(v is None or (isinstance(v, int | float) and not isinstance(v, bool)) for v in values))
     return TextTable(
-        tuple(_words(key) for key in keys), tuple(units), tuple(zip(*columns, strict=True)) if columns else (),
-        tuple(numeric), sum(key in _IDENTITY for key in keys),
+        tuple(_words(key) for key in keys),
+        tuple(units),
+        tuple(zip(*columns, strict=True)) if columns else (),
+        tuple(numeric),
+        sum(key in _IDENTITY for key in keys),
     )
 
 
@@ -200,6 +203,4 @@ def _pad(text: str, width: int, right: bool) -> str:
 
 def _width(text: str) -> int:
     """Columns that a terminal gives the text."""
-    return sum(
-        0 if unicodedata.combining(c) else 2 if unicodedata.east_asian_width(c) in "WF" else 1 for c in text
-    )
+    return sum(0 if unicodedata.combining(c) else 2 if unicodedata.east_asian_width(c) in "WF" else 1 for c in text)

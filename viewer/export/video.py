@@ -21,8 +21,8 @@ from viewer.scene.picture import Picture
 from viewer.scene.tokens import FRAME_MS, FRAMES
 from viewer.stage import Stage
 
-LEAST_SECONDS = 5.0        # a player that does not repeat shows at least so much
-BLOCK = 16                 # H.264 codes blocks of 16 × 16 pixels
+LEAST_SECONDS = 5.0  # a player that does not repeat shows at least so much
+BLOCK = 16  # H.264 codes blocks of 16 × 16 pixels
 # constant quality, near the still; colours by ITU-R BT.709, and said so, since players guess otherwise
 _ENCODING = (
     "-crf", "14", "-preset", "medium", "-tune", "animation", "-movflags", "+faststart",
@@ -50,14 +50,18 @@ def save_mp4(picture: Picture, path: str | os.PathLike[str], progress: Progress 
             found = encoder.count_frames_and_secs(str(part))
         except (OSError, RuntimeError) as error:
             raise ExportError(
-                "the video cannot be encoded", file=path, found=str(error).strip().splitlines()[0],
+                "the video cannot be encoded",
+                file=path,
+                found=str(error).strip().splitlines()[0],
                 do="check space and rights, or write a .gif",
             ) from error
         seconds = len(order) * FRAME_MS / 1000
         if found[0] != len(order) or abs(found[1] - seconds) > FRAME_MS / 2000:
             raise ExportError(
-                "the video does not last as long as it should", file=path,
-                found=f"{found[0]} frames, {found[1]} s", expected=f"{len(order)} frames, {seconds} s",
+                "the video does not last as long as it should",
+                file=path,
+                found=f"{found[0]} frames, {found[1]} s",
+                expected=f"{len(order)} frames, {seconds} s",
             )
     return Path(path)
 
@@ -80,16 +84,26 @@ def _encoder(path: str | os.PathLike[str]) -> Any:
         encoder.get_ffmpeg_exe()
     except (ImportError, RuntimeError) as error:
         raise ExportError(
-            "a video needs an encoder that is not installed", file=path, found=str(error).splitlines()[0],
-            expected="imageio-ffmpeg", do="pip install 'hingelight[video]', or write a .gif",
+            "a video needs an encoder that is not installed",
+            file=path,
+            found=str(error).splitlines()[0],
+            expected="imageio-ffmpeg",
+            do="pip install 'hingelight[video]', or write a .gif",
         ) from error
     return encoder
 
 
 def _encode(encoder: Any, path: Path, size: tuple[int, int], frames: list[Array], progress: Progress) -> None:
     writer = encoder.write_frames(
-        str(path), size, fps=1000 / FRAME_MS, codec="libx264", pix_fmt_out="yuv420p", quality=None,
-        macro_block_size=1, ffmpeg_log_level="fatal", output_params=list(_ENCODING),
+        str(path),
+        size,
+        fps=1000 / FRAME_MS,
+        codec="libx264",
+        pix_fmt_out="yuv420p",
+        quality=None,
+        macro_block_size=1,
+        ffmpeg_log_level="fatal",
+        output_params=list(_ENCODING),
     )
     writer.send(None)
     try:

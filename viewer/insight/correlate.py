@@ -9,7 +9,7 @@ from viewer.errors import RefusedError
 from viewer.model.arrays import Array
 from viewer.model.mesh import Mesh
 
-NEAR = 0.02        # points further apart than this share of the diagonal are not the same place
+NEAR = 0.02  # points further apart than this share of the diagonal are not the same place
 
 
 def mac(a: Array, b: Array) -> Array:

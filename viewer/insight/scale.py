@@ -20,12 +20,11 @@ from viewer.model.cycle import cycle_peaks, steadiest_turn
 from viewer.model.design import Design, FunctionalPoint, LumpedMass
 from viewer.model.dossier import StatedAmplitude
 
-DRAWN_PEAK = 0.08              # drawn peak ÷ diagonal of the body (DESIGN §7 rule 5)
+DRAWN_PEAK = 0.08  # drawn peak ÷ diagonal of the body (DESIGN §7 rule 5)
 DRAWN_TURN = np.radians(12.0)  # no region turns more than this as drawn (same rule)
-TURN_SHARE = 0.005             # share of the body that may turn further: a single distorted cell is no region
-_SMALL_GROUP = 0.05            # share of the nodes up to which a group's name says enough about where
-LEAST_MOTION = 0.05            # a stated point must move at least this share of the peak (DESIGN §6)
-
+TURN_SHARE = 0.005  # share of the body that may turn further: a single distorted cell is no region
+_SMALL_GROUP = 0.05  # share of the nodes up to which a group's name says enough about where
+LEAST_MOTION = 0.05  # a stated point must move at least this share of the peak (DESIGN §6)
 
 
 @dataclass(frozen=True, eq=False)
@@ -302,9 +301,7 @@ def _automatic_factor(design: Design, shape: Array, peak: float) -> tuple[float,
     mesh = design.mesh
     by_peak = DRAWN_PEAK * mesh.diagonal / peak
     turns = cycle_peaks(cell_rotations(mesh, shape))
-    sizes = np.concatenate(
-        [np.abs(measures(b.kind, mesh.points[b.nodes])) for b in mesh.blocks] or [np.empty(0)]
-    )
+    sizes = np.concatenate([np.abs(measures(b.kind, mesh.points[b.nodes])) for b in mesh.blocks] or [np.empty(0)])
     if sizes.sum() > 0:
         order = np.argsort(turns)
         reached = np.cumsum(sizes[order]) / sizes.sum()

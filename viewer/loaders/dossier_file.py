@@ -121,7 +121,9 @@ class _Reader:
         return MatrixFiles(
             self.existing(item.stiffness, f"{place}, stiffness"),
             self.existing(item.mass_matrix, f"{place}, mass_matrix"),
-            order, self.stiffness_unit, self.mass_unit,
+            order,
+            self.stiffness_unit,
+            self.mass_unit,
         )
 
     def physics(self, item: schema.DesignTable, place: str, materials: dict[str, Material]) -> Physics:
@@ -134,7 +136,11 @@ class _Reader:
         links = tuple(self.link(m, f"{place}, links {n}", n) for n, m in enumerate(item.links, 1))
         ties = tuple(self.tie(m, f"{place}, ties {n}", n) for n, m in enumerate(item.ties, 1))
         named: dict[str, Iterable[Any]] = {
-            "supports": supports, "springs": springs, "masses": masses, "links": links, "ties": ties,
+            "supports": supports,
+            "springs": springs,
+            "masses": masses,
+            "links": links,
+            "ties": ties,
         }
         for word, things in named.items():
             self.no_duplicates(f"{place}, {word}", [thing.name for thing in things])
@@ -169,10 +175,16 @@ class _Reader:
             total = sum(ply.thickness for ply in plies) or (item.thickness or 0.0) * self.length
             thickness = self.plausible("thickness", total, place)
         return Assignment(
-            item.target, item.material or "", None if plies else thickness, item.formulation,
+            item.target,
+            item.material or "",
+            None if plies else thickness,
+            item.formulation,
             None if item.section is None else self.section(item.section),
-            self.vector(item.orientation, f"{place}, orientation"), item.offset * self.length,
-            item.offset_across * self.length, self.vector(item.direction, f"{place}, direction"), plies,
+            self.vector(item.orientation, f"{place}, orientation"),
+            item.offset * self.length,
+            item.offset_across * self.length,
+            self.vector(item.direction, f"{place}, direction"),
+            plies,
         )
 
     def section(self, item: schema.SectionTable) -> Section:
@@ -182,13 +194,15 @@ class _Reader:
 
     def link(self, item: schema.LinkTable, place: str, number: int) -> Link:
         return Link(
-            item.name or f"link {number}", self.selector(item.from_, f"{place}, from"),
+            item.name or f"link {number}",
+            self.selector(item.from_, f"{place}, from"),
             self.selector(item.to, f"{place}, to"),
         )
 
     def tie(self, item: schema.TieTable, place: str, number: int) -> Tie:
         return Tie(
-            item.name or f"tie {number}", self.selector(item.nodes, f"{place}, nodes"),
+            item.name or f"tie {number}",
+            self.selector(item.nodes, f"{place}, nodes"),
             self.selector(item.surface, f"{place}, surface"),
             None if item.reach is None else item.reach * self.length,
         )

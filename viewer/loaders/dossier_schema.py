@@ -302,7 +302,6 @@ class DesignTable(Table):
             raise ValueError(f"assign {bare[0]} says {_NO_MATERIAL}")
         return self
 
-
     def _only_matrices(self, matrices: dict[str, str | None]) -> None:
         missing = [key for key, value in matrices.items() if value is None]
         if missing:

@@ -67,7 +67,8 @@ def _model_lines(mesh: Mesh, name: str, modes: str) -> list[str]:
     place = f"group = {_quoted(group)}" if group else _lowest_end(mesh)
     sized = f"the sheet thickness{' (alone, without material: relative energies)' if modes else ''}, and "
     return [
-        "# Energies are relative only until a material is given: it brings closure and trust." if modes
+        "# Energies are relative only until a material is given: it brings closure and trust."
+        if modes
         else "# The material.",
         f"{optional}[materials.material]           # TO FILL IN: remove the # and put your material's values",
         "# youngs_modulus = ",

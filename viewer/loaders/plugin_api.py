@@ -1,4 +1,4 @@
-'''Readers for formats of your own: what a plug-in gives and gets.
+"""Readers for formats of your own: what a plug-in gives and gets.
 
 A plug-in is an installed package with an entry point in the group ``hingelight.readers``. The entry point names a
 module (or an object) with
@@ -49,7 +49,7 @@ and in its ``pyproject.toml``::
 
     [project.entry-points."hingelight.readers"]
     acme = "acme_readers"
-'''
+"""
 
 from __future__ import annotations
 

@@ -316,9 +316,7 @@ class _Grid:
             raise self.error(f"array '{name}' is missing", place=group.name or "")
         data = DataSet(self.path, found.name, found)
         if data.dtype.kind not in "iu" or len(data.shape) != 1:
-            raise self.error(
-                "is not a row of whole numbers", place=data.name, found=f"{data.shape} of {data.dtype}"
-            )
+            raise self.error("is not a row of whole numbers", place=data.name, found=f"{data.shape} of {data.dtype}")
         self._check_rows(data, first, count)
         return data.rows(first, count).astype(np.int64)
 

@@ -88,9 +88,7 @@ def _grids(document: Document) -> tuple[Element | None, list[_Step]]:
             found=", ".join(g.get("Name", "?") for g in series + alone)[:120] or "none",
             expected="one uniform grid, one temporal collection, or one of each",
         )
-    steps = [
-        _Step(grid, f"step {number}") for s in series for number, grid in enumerate(s.iterfind("Grid"), 1)
-    ]
+    steps = [_Step(grid, f"step {number}") for s in series for number, grid in enumerate(s.iterfind("Grid"), 1)]
     if series and not steps:
         raise document.error("holds no step", place=f"Grid '{series[0].get('Name', '')}'"[:80])
     for step in steps:

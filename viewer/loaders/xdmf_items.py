@@ -30,7 +30,9 @@ _MOST_HOPS = 16
 # The ways in which common writers point at the mesh of another grid of the same document.
 _POINTERS = (
     re.compile(r"""xpointer\(//Grid\[@Name=(["'])(?P<name>[^"']+)\1\](/Grid\[(?P<child>\d{1,9})\])?/\*\[.*\]\)"""),
-    re.compile(r"""xpointer\(//Grid\[@Name=(["'])(?P<name>[^"']+)\1\](/Grid\[(?P<child>\d{1,9})\])?/(?P<part>\w+)\)"""),
+    re.compile(
+        r"""xpointer\(//Grid\[@Name=(["'])(?P<name>[^"']+)\1\](/Grid\[(?P<child>\d{1,9})\])?/(?P<part>\w+)\)"""
+    ),
 )
 _STEPS_DOWN = re.compile(r"element\(/1((?:/\d{1,9})+)\)")
 

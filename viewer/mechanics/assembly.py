@@ -42,7 +42,7 @@ from viewer.mechanics.sections import constants
 from viewer.model.arrays import Array, frozen
 from viewer.model.design import DIRECTIONS, Design, Property
 
-_CHUNK = 2**21      # entries of element matrices at a time, 16 MB: kernels stay in reach of the cache
+_CHUNK = 2**21  # entries of element matrices at a time, 16 MB: kernels stay in reach of the cache
 
 
 @dataclass(frozen=True, eq=False)
@@ -186,9 +186,7 @@ class System(Layout):
     M: sp.csr_array
 
 
-def lay_out(
-    design: Design, progress: Progress = SILENT, *, formulations: Mapping[str, str] | None = None
-) -> Layout:
+def lay_out(design: Design, progress: Progress = SILENT, *, formulations: Mapping[str, str] | None = None) -> Layout:
     """Number the degrees of freedom and resolve groups, springs, masses, supports, links and ties.
 
     formulations  cell kind → name of the formulation to take instead of the design's own
@@ -219,12 +217,18 @@ def lay_out(
     n_dof = 3 * int(has.sum())
     if n_dof == 0:
         raise ModelError(
-            f"design '{design.name}' has no cell with a material and no spring", file=mesh.source or None,
+            f"design '{design.name}' has no cell with a material and no spring",
+            file=mesh.source or None,
             do="assign a material to the cells, for instance to '*'",
         )
     blocks = tuple(
-        ElementGroup(formulation, prop, frozen(cells), frozen(nodes), frozen(
-            dof[nodes][:, :, : 6 if formulation.rotations else 3].reshape(len(nodes), -1)))
+        ElementGroup(
+            formulation,
+            prop,
+            frozen(cells),
+            frozen(nodes),
+            frozen(dof[nodes][:, :, : 6 if formulation.rotations else 3].reshape(len(nodes), -1)),
+        )
         for formulation, prop, cells, nodes in parts
     )
     progress.tick("checking cells")
@@ -249,8 +253,17 @@ def lay_out(
     follow, dependent = follow_matrix(rules, design, n_dof)
     check_supports(follow, dependent, held, rules, design)
     return Layout(
-        design, frozen(dof), n_dof, frozen(held), blocks, tuple(springs), tuple(masses), follow, frozen(dependent),
-        tuple(dict.fromkeys([*cautions, *rules.cautions])), tuple(rules.statements),
+        design,
+        frozen(dof),
+        n_dof,
+        frozen(held),
+        blocks,
+        tuple(springs),
+        tuple(masses),
+        follow,
+        frozen(dependent),
+        tuple(dict.fromkeys([*cautions, *rules.cautions])),
+        tuple(rules.statements),
     )
 
 

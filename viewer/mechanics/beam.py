@@ -22,10 +22,10 @@ from viewer.mechanics.sections import SectionConstants, constants
 from viewer.model.arrays import Array
 from viewer.model.design import Property
 
-_PARALLEL = 1e-6        # sine of the angle between beam and orientation below which "up" is undefined
+_PARALLEL = 1e-6  # sine of the angle between beam and orientation below which "up" is undefined
 # one plane of bending: deflection and slope at both ends; the slope of z is minus the turn about y
 _PLANES = ((1, 5, 7, 11), 1.0), ((2, 4, 8, 10), -1.0)
-_POINTS, _WEIGHTS = np.polynomial.legendre.leggauss(4)      # exact for the sixth power
+_POINTS, _WEIGHTS = np.polynomial.legendre.leggauss(4)  # exact for the sixth power
 
 
 @dataclass(frozen=True)
@@ -48,16 +48,22 @@ class BeamFormulation:
         modulus, shear = prop.material.youngs_modulus, materials.shear_modulus(prop.material)
         local = np.zeros((len(length), 12, 12))
         for pair, value in (((0, 6), modulus * section.area), ((3, 9), shear * section.torsion)):
-            local[np.ix_(range(len(length)), pair, pair)] = \
-                (value / length)[:, None, None] * np.array([[1, -1], [-1, 1]])
+            local[np.ix_(range(len(length)), pair, pair)] = (value / length)[:, None, None] * np.array(
+                [[1, -1], [-1, 1]]
+            )
         for (where, sign), (inertia, slip) in zip(_PLANES, self._bending(section, prop, length), strict=True):
             one, size = np.ones_like(length), length
-            bend = np.array([
-                [12 * one, 6 * size, -12 * one, 6 * size],
-                [6 * size, (4 + slip) * size**2, -6 * size, (2 - slip) * size**2],
-                [-12 * one, -6 * size, 12 * one, -6 * size],
-                [6 * size, (2 - slip) * size**2, -6 * size, (4 + slip) * size**2],
-            ]).transpose(2, 0, 1) * (modulus * inertia / (length**3 * (1 + slip)))[:, None, None]
+            bend = (
+                np.array(
+                    [
+                        [12 * one, 6 * size, -12 * one, 6 * size],
+                        [6 * size, (4 + slip) * size**2, -6 * size, (2 - slip) * size**2],
+                        [-12 * one, -6 * size, 12 * one, -6 * size],
+                        [6 * size, (2 - slip) * size**2, -6 * size, (4 + slip) * size**2],
+                    ]
+                ).transpose(2, 0, 1)
+                * (modulus * inertia / (length**3 * (1 + slip)))[:, None, None]
+            )
             flip = np.array([1, sign, 1, sign])
             local[np.ix_(range(len(length)), where, where)] = bend * np.outer(flip, flip)
         return _symmetric(np.swapaxes(turn, 1, 2) @ local @ turn)
@@ -68,8 +74,9 @@ class BeamFormulation:
         density = materials.check(prop.material).density
         local = np.zeros((len(length), 12, 12))
         for pair, value in (((0, 6), section.area), ((3, 9), section.iy + section.iz)):
-            local[np.ix_(range(len(length)), pair, pair)] = \
-                (density * value * length / 6)[:, None, None] * np.array([[2, 1], [1, 2]])
+            local[np.ix_(range(len(length)), pair, pair)] = (density * value * length / 6)[:, None, None] * np.array(
+                [[2, 1], [1, 2]]
+            )
         for (where, sign), (inertia, slip) in zip(_PLANES, self._bending(section, prop, length), strict=True):
             moved, turned = _shapes(length, slip)
             rotary = 0.0 if self.slender else inertia
@@ -93,13 +100,24 @@ class BeamFormulation:
 def _shapes(length: Array, slip: Array) -> tuple[Array, Array]:
     """Deflection and slope (b, 4 points, 4) under unit end deflections and slopes."""
     x, size, phi = 0.5 * (_POINTS + 1), length[:, None], slip[:, None]
-    moved = np.stack(np.broadcast_arrays(
-        2 * x**3 - 3 * x**2 - phi * x + 1 + phi, size * (x**3 - (2 + phi / 2) * x**2 + (1 + phi / 2) * x),
-        -(2 * x**3 - 3 * x**2 - phi * x), size * (x**3 - (1 - phi / 2) * x**2 - phi / 2 * x),
-    ), axis=-1)
-    turned = np.stack(np.broadcast_arrays(
-        6 / size * (x**2 - x), 3 * x**2 - (4 + phi) * x + 1 + phi, -6 / size * (x**2 - x), 3 * x**2 - (2 - phi) * x,
-    ), axis=-1)
+    moved = np.stack(
+        np.broadcast_arrays(
+            2 * x**3 - 3 * x**2 - phi * x + 1 + phi,
+            size * (x**3 - (2 + phi / 2) * x**2 + (1 + phi / 2) * x),
+            -(2 * x**3 - 3 * x**2 - phi * x),
+            size * (x**3 - (1 - phi / 2) * x**2 - phi / 2 * x),
+        ),
+        axis=-1,
+    )
+    turned = np.stack(
+        np.broadcast_arrays(
+            6 / size * (x**2 - x),
+            3 * x**2 - (4 + phi) * x + 1 + phi,
+            -6 / size * (x**2 - x),
+            3 * x**2 - (2 - phi) * x,
+        ),
+        axis=-1,
+    )
     scale = (1 + phi)[..., None]
     return moved / scale, turned / scale
 
@@ -111,14 +129,14 @@ def _local(xyz: Array, prop: Property) -> tuple[SectionConstants, Array, Array]:
             f"line2 cells of material '{prop.material.name}' are beams and need a section",
             do="give 'section' in the assignment of these cells",
         )
-    materials.lame(prop.material)          # refuses what is no isotropic solid
+    materials.lame(prop.material)  # refuses what is no isotropic solid
     section = constants(prop.section, prop.material.poisson)
     axes, length = section_axes(xyz, prop, section)
     arm = prop.offset * axes[:, 2] + prop.offset_across * axes[:, 1]
     turn = np.zeros((len(xyz), 2, 6, 2, 6))
     for end in range(2):
         turn[:, end, :3, end, :3] = turn[:, end, 3:, end, 3:] = axes
-        turn[:, end, :3, end, 3:] = -axes @ cross_matrix(arm)       # u + θ × arm
+        turn[:, end, :3, end, 3:] = -axes @ cross_matrix(arm)  # u + θ × arm
     return section, turn.reshape(-1, 12, 12), length
 
 
@@ -147,7 +165,8 @@ def section_axes(xyz: Array, prop: Property, section: SectionConstants) -> tuple
         raise ModelError(
             f"{int((size <= _PARALLEL).sum())} beam(s) run along their own orientation",
             found=f"one near ({x:g}, {y:g}, {z:g}) m, orientation {list(prop.orientation or ())}",
-            expected="a direction that lies across the beam", do="give these cells another orientation",
+            expected="a direction that lies across the beam",
+            do="give these cells another orientation",
         )
     up = up / size
     return np.stack([along, np.cross(up, along), up], axis=1), length
@@ -159,8 +178,12 @@ def _symmetric(matrix: Array) -> Array:
 
 BEAMS: tuple[BeamFormulation, ...] = (
     BeamFormulation("line2-timoshenko"),
-    BeamFormulation("line2-slender", slender=True, caution=(
-        "line2-slender leaves out shear and rotary inertia: frequencies of deep beams and of high modes come out "
-        "high; use line2-timoshenko"
-    )),
+    BeamFormulation(
+        "line2-slender",
+        slender=True,
+        caution=(
+            "line2-slender leaves out shear and rotary inertia: frequencies of deep beams and of high modes come out "
+            "high; use line2-timoshenko"
+        ),
+    ),
 )

@@ -17,7 +17,7 @@ from viewer.model.arrays import Array
 from viewer.model.design import Design, Property
 from viewer.model.mesh import Mesh
 
-_WARP = 0.1         # height of a corner over the plane of the other three, in roots of twice the cell's area
+_WARP = 0.1  # height of a corner over the plane of the other three, in roots of twice the cell's area
 
 Part = tuple[Formulation, Property, Array, Array]
 
@@ -60,7 +60,7 @@ def element_parts(design: Design, instead: Mapping[str, str]) -> tuple[list[Part
 
 
 def name_cells(mesh: Mesh, kind: str, cells: Array) -> str:
-    """"12 cells tri3 (ids 4, 5 … in group 'web')" for messages."""
+    """ "12 cells tri3 (ids 4, 5 … in group 'web')" for messages."""
     groups = [name for name, rows in mesh.cell_groups.items() if np.isin(cells, rows).any()]
     inside = f" in group {', '.join(repr(name) for name in groups[:3])}" if groups else ""
     return f"{len(cells)} cells {kind} (ids {some_ids(mesh.cell_ids[cells])}{inside})"
@@ -78,13 +78,16 @@ def _idle_error(design: Design, kind: str, prop: Property | None, cells: Array) 
     parts: dict[str, Any] = {"file": mesh.source or None}
     if kind not in FORMULATIONS:
         return ModelError(
-            f"{what} have no element formulation", expected=f"kinds: {', '.join(sorted(FORMULATIONS))}",
-            do="mesh this region with one of these kinds, or leave the cells out of the mesh", **parts,
+            f"{what} have no element formulation",
+            expected=f"kinds: {', '.join(sorted(FORMULATIONS))}",
+            do="mesh this region with one of these kinds, or leave the cells out of the mesh",
+            **parts,
         )
     if prop is None:
         return ModelError(
             f"{what} have no material",
-            do="add an assignment whose target is their group, their kind or '*'", **parts,
+            do="add an assignment whose target is their group, their kind or '*'",
+            **parts,
         )
     word, lacking = {1: "beams", 2: "shells"}[KINDS[kind].dim], _lacks(prop, kind)
     return ModelError(f"{what} are {word} without {lacking}", do=f"give '{lacking}' in their assignment", **parts)
@@ -97,8 +100,10 @@ def _check_property(prop: Property, kind: str, mesh: Mesh, cells: Array) -> None
         raise error.at(file=mesh.source or None, place=name_cells(mesh, kind, cells)) from None
     if KINDS[kind].dim == 2 and not 0.0 < (prop.thickness or 0.0) < np.inf:
         raise ModelError(
-            f"{name_cells(mesh, kind, cells)} have an impossible thickness", found=str(prop.thickness),
-            expected="above 0 m", do="give 'thickness' in their assignment",
+            f"{name_cells(mesh, kind, cells)} have an impossible thickness",
+            found=str(prop.thickness),
+            expected="above 0 m",
+            do="give 'thickness' in their assignment",
         )
 
 
@@ -109,7 +114,8 @@ def check_shapes(parts: list[Part], mesh: Mesh) -> None:
         if len(bad):
             raise ModelError(
                 f"{name_cells(mesh, formulation.kind, cells[bad])} have a Jacobian that is zero or negative",
-                file=mesh.source or None, expected="cells that are not inside out, folded or flat",
+                file=mesh.source or None,
+                expected="cells that are not inside out, folded or flat",
                 do="repair the mesh there; if every cell is listed, its node order is that of another convention",
             )
 
@@ -143,7 +149,7 @@ def _sides(parts: list[Part]) -> list[str]:
     if not edges:
         return []
     _, count = np.unique(np.concatenate(edges), axis=0, return_counts=True)
-    if not (count > 1).any():       # neighbours on the same side run through their common edge in opposite directions
+    if not (count > 1).any():  # neighbours on the same side run through their common edge in opposite directions
         return []
     return [
         f"shells with an offset or with unlike layers disagree at {int((count > 1).sum())} common edges: their "

@@ -26,7 +26,7 @@ from viewer.mechanics.sums import real_parts, strain_and_kinetic
 from viewer.model.arrays import Array
 
 FACTOR_LIMIT = 200_000  # free directions up to which A is factorised; beyond, conjugate gradients
-_STEPS = 300            # of conjugate gradients
+_STEPS = 300  # of conjugate gradients
 
 
 def flexible_share(layout: Layout, vectors: Array) -> Array:
@@ -61,14 +61,14 @@ def residuals(layout: Layout, vectors: Array, omega: Array, progress: Progress =
     return shares, by_cell
 
 
-def _one_level(
-    system: System, vectors: Array, omega: Array, alpha: float, progress: Progress
-) -> tuple[Array, Array]:
+def _one_level(system: System, vectors: Array, omega: Array, alpha: float, progress: Progress) -> tuple[Array, Array]:
     shifted = sp.csr_array(system.K + alpha * system.M)
-    parts = real_parts(vectors)                                                                # (p, k, n_dof)
-    right = np.stack([  # (p, n_free, k)
-        system.force((system.K @ p.T - (system.M @ p.T) * omega**2).T).T for p in parts
-    ])
+    parts = real_parts(vectors)  # (p, k, n_dof)
+    right = np.stack(
+        [  # (p, n_free, k)
+            system.force((system.K @ p.T - (system.M @ p.T) * omega**2).T).T for p in parts
+        ]
+    )
     whole = np.sum([np.einsum("kn,nk->k", p, shifted @ p.T) for p in parts], axis=0)
     inner = system.restrict(shifted)
     progress.tick("residual")
@@ -89,7 +89,11 @@ def _iterate(matrix: sp.csr_array, right: Array, progress: Progress) -> Array:
     out = np.empty_like(right)
     for column in range(right.shape[1]):
         out[:, column], _ = spla.cg(
-            matrix, right[:, column], rtol=1e-3, maxiter=_STEPS, M=scale,
+            matrix,
+            right[:, column],
+            rtol=1e-3,
+            maxiter=_STEPS,
+            M=scale,
             callback=lambda _: progress.tick("residual", column, right.shape[1]),  # noqa: B023
         )
     return out

@@ -49,7 +49,7 @@ class Attachment:
 
 
 def some_ids(ids: Array, limit: int = 5) -> str:
-    """"3, 4, 5 and 12 more" for messages."""
+    """ "3, 4, 5 and 12 more" for messages."""
     shown = ", ".join(str(int(i)) for i in ids[:limit])
     return shown + (f" and {len(ids) - limit} more" if len(ids) > limit else "")
 
@@ -63,7 +63,8 @@ def spring_nodes(spring: Spring, mesh: Mesh) -> tuple[Array, Array | None]:
     second = spring.other.rows(mesh, what)
     if len(first) != 1 or len(second) != 1:
         raise ModelError(
-            f"{what} between two places needs one node at each end", found=f"{len(first)} and {len(second)} nodes",
+            f"{what} between two places needs one node at each end",
+            found=f"{len(first)} and {len(second)} nodes",
             do="select single nodes (near, or one id)",
         )
     if first[0] == second[0]:
@@ -81,7 +82,8 @@ def _check_stiffness(spring: Spring) -> None:
     if not (np.isfinite(values).all() and (values >= 0).all()):
         raise ModelError(
             f"spring '{spring.name}' has a stiffness that is negative or not a number",
-            found=f"{values.min():g}", expected="values ≥ 0 in N/m (N·m/rad about axes)",
+            found=f"{values.min():g}",
+            expected="values ≥ 0 in N/m (N·m/rad about axes)",
         )
     if not (spring.axial if spring.axis is not None else spring.stiffness.any()):
         raise ModelError(
@@ -142,7 +144,8 @@ def mass_attachment(mass: LumpedMass, design: Design, dof: Array) -> tuple[Attac
     symmetric = np.allclose(inertia, inertia.T, rtol=1e-9)
     if not (symmetric and np.linalg.eigvalsh(inertia).min() >= -1e-9 * np.abs(inertia).max()):
         raise ModelError(
-            f"{what} has an impossible inertia", found=f"{inertia.tolist()} kg·m²",
+            f"{what} has an impossible inertia",
+            found=f"{inertia.tolist()} kg·m²",
             expected="a symmetric matrix without negative principal moments",
         )
     rows = mass.where.rows(mesh, what)
@@ -150,11 +153,14 @@ def mass_attachment(mass: LumpedMass, design: Design, dof: Array) -> tuple[Attac
     if len(attached) == 0:
         raise ModelError(
             f"{what} sits on nodes that belong to no cell with a material and to no spring",
-            found=f"nodes {some_ids(mesh.node_ids[rows])}", do="select nodes of the structure",
+            found=f"nodes {some_ids(mesh.node_ids[rows])}",
+            do="select nodes of the structure",
         )
     if len(attached) > MAX_FOOTPRINT:
         raise ModelError(
-            f"{what} has too large a footprint", found=f"{len(attached)} nodes", expected=f"up to {MAX_FOOTPRINT}",
+            f"{what} has too large a footprint",
+            found=f"{len(attached)} nodes",
+            expected=f"up to {MAX_FOOTPRINT}",
             do="select fewer nodes, spread over the same area",
         )
     patch = RigidPatch(mesh.points[attached], mass.position)

@@ -26,11 +26,11 @@ from viewer.model.arrays import Array
 from viewer.model.design import Design
 from viewer.model.modes import ArrayShapes, ModeSet
 
-RESIDUAL_BOUND = 1e-8   # largest accepted residual share of a computed mode, see ``_residual_shares``
-_DENSE = 300            # free directions up to which the dense solver is used
-_COUNT_LIMIT = 30_000   # free directions up to which SuperLU factorises once more for the count
-_SHIFT = 0.1            # of the estimate of the first elastic eigenvalue
-_CLEAR = 100.0          # times the rounding of the lowest Rayleigh quotient: the shift stays above that
+RESIDUAL_BOUND = 1e-8  # largest accepted residual share of a computed mode, see ``_residual_shares``
+_DENSE = 300  # free directions up to which the dense solver is used
+_COUNT_LIMIT = 30_000  # free directions up to which SuperLU factorises once more for the count
+_SHIFT = 0.1  # of the estimate of the first elastic eigenvalue
+_CLEAR = 100.0  # times the rounding of the lowest Rayleigh quotient: the shift stays above that
 
 
 def solve(design: Design, count: int, progress: Progress = SILENT, *, solver: str = "") -> ModeSet:
@@ -63,8 +63,12 @@ def solve_system(system: System, count: int, progress: Progress = SILENT, *, sol
     problem.check(values, vectors, progress)
     moved, turned = system.spread(system.extend(vectors.T))
     return ModeSet(
-        node_ids=system.design.mesh.node_ids, freq_hz=np.sqrt(values) / (2 * np.pi),
-        shapes=ArrayShapes(moved, turned), normalisation="mass", origin="computed", source=system.design.name,
+        node_ids=system.design.mesh.node_ids,
+        freq_hz=np.sqrt(values) / (2 * np.pi),
+        shapes=ArrayShapes(moved, turned),
+        normalisation="mass",
+        origin="computed",
+        source=system.design.name,
     )
 
 
@@ -111,8 +115,15 @@ class _Problem:
         start = self.M @ np.random.default_rng(20).standard_normal(size)
         try:
             values, vectors = spla.eigsh(
-                self.K, asked, self.M, sigma=self.shift, which="LM", v0=factor.solve(start), tol=0,
-                OPinv=spla.LinearOperator((size, size), invert, dtype=float), ncv=min(size, max(2 * asked + 1, 24)),
+                self.K,
+                asked,
+                self.M,
+                sigma=self.shift,
+                which="LM",
+                v0=factor.solve(start),
+                tol=0,
+                OPinv=spla.LinearOperator((size, size), invert, dtype=float),
+                ncv=min(size, max(2 * asked + 1, 24)),
             )
         except spla.ArpackError as error:
             raise SolveError(
@@ -139,15 +150,18 @@ class _Problem:
         size = self.K.shape[0]
         if size > 6000:
             raise SolveError(
-                "too many modes asked", found=f"{asked} modes of {size} free directions",
-                expected="at most a third of them", do="ask for fewer modes",
+                "too many modes asked",
+                found=f"{asked} modes of {size} free directions",
+                expected="at most a third of them",
+                do="ask for fewer modes",
             )
         progress.tick("solving for modes")
         try:
             lower = np.linalg.cholesky(_shifted(self.K, self.M, self.shift).toarray())
         except np.linalg.LinAlgError as error:
             raise SolveError(
-                "some motion has neither stiffness nor mass", found=str(error),
+                "some motion has neither stiffness nor mass",
+                found=str(error),
                 do="hold it, or look for parts that hang together by nothing",
             ) from error
         half = sl.solve_triangular(lower, self.M.toarray(), lower=True)
@@ -163,8 +177,10 @@ class _Problem:
         if not shares.max() <= RESIDUAL_BOUND:
             worst = int(np.argmax(shares))
             raise SolveError(
-                f"mode {worst + 1} did not converge", found=f"residual share {shares[worst]:.1e}",
-                expected=f"at most {RESIDUAL_BOUND:.0e}", do="ask for fewer modes, or check units and thin cells",
+                f"mode {worst + 1} did not converge",
+                found=f"residual share {shares[worst]:.1e}",
+                expected=f"at most {RESIDUAL_BOUND:.0e}",
+                do="ask for fewer modes, or check units and thin cells",
             )
         missing = self._missing(values, progress)
         if missing:
@@ -199,9 +215,7 @@ class _Problem:
         point = 0.5 * (below[-1] + values[len(below)])
         progress.tick("counting modes")
         try:
-            negative = factorise(
-                _shifted(self.K, self.M, point), definite=False, solver=self.solver
-            ).negative
+            negative = factorise(_shifted(self.K, self.M, point), definite=False, solver=self.solver).negative
         except SolveError:
             return 0  # a point on an eigenvalue by accident: no count, the residual check stands
         return 0 if negative is None else negative - len(below)
@@ -254,11 +268,17 @@ def _smooth_fields(system: System) -> Array:
     x, y, z = (points / scale).T
     one, none = np.ones_like(x), np.zeros_like(x)
     values = np.stack([one, x, y, z, x * x, y * y, z * z, x * y, y * z, z * x])
-    slopes = np.stack([
-        np.stack([none, one, none, none, 2 * x, none, none, y, none, z]),
-        np.stack([none, none, one, none, none, 2 * y, none, x, z, none]),
-        np.stack([none, none, none, one, none, none, 2 * z, none, y, x]),
-    ], axis=-1) / scale  # (10, n, 3)
+    slopes = (
+        np.stack(
+            [
+                np.stack([none, one, none, none, 2 * x, none, none, y, none, z]),
+                np.stack([none, none, one, none, none, 2 * y, none, x, z, none]),
+                np.stack([none, none, none, one, none, none, 2 * z, none, y, x]),
+            ],
+            axis=-1,
+        )
+        / scale
+    )  # (10, n, 3)
     moved = np.zeros((3, *values.shape, 3))
     turned = np.zeros_like(moved)
     for axis in range(3):

@@ -40,8 +40,8 @@ from viewer.model.modes import ModeSet
 CLOSURE_BOUND = 0.05
 RESIDUAL_BOUND = 0.02
 RELATIVE = "relative only: one uniform material assumed"
-_OWN = 1e-6             # |closure − 1| up to which a computed mode set is that of this very design
-_RIGID = 1e-4           # share of kinetic energy beyond the rigid motion, below which a free mode is rigid
+_OWN = 1e-6  # |closure − 1| up to which a computed mode set is that of this very design
+_RIGID = 1e-4  # share of kinetic energy beyond the rigid motion, below which a free mode is rigid
 
 
 @dataclass(frozen=True, eq=False)
@@ -160,8 +160,13 @@ class Energies:
 
 
 def energies(
-    design: Design, modes: ModeSet, indices: Sequence[int] | None = None, progress: Progress = SILENT,
-    *, formulations: Mapping[str, str] | None = None, judged: bool = True,
+    design: Design,
+    modes: ModeSet,
+    indices: Sequence[int] | None = None,
+    progress: Progress = SILENT,
+    *,
+    formulations: Mapping[str, str] | None = None,
+    judged: bool = True,
 ) -> Energies:
     """Energies of the modes ``indices`` (None: all), complex ones by φᴴKφ.
 
@@ -174,14 +179,17 @@ def energies(
     picked = np.arange(modes.count) if indices is None else np.asarray(indices, np.int64)
     if not np.array_equal(modes.node_ids, design.mesh.node_ids):
         raise ModelError(
-            f"design '{design.name}': the modes are not given on the nodes of its mesh", file=modes.source or None,
-            found=f"{len(modes.node_ids)} nodes", expected=f"{design.mesh.n_nodes} nodes with the same ids",
+            f"design '{design.name}': the modes are not given on the nodes of its mesh",
+            file=modes.source or None,
+            found=f"{len(modes.node_ids)} nodes",
+            expected=f"{design.mesh.n_nodes} nodes with the same ids",
         )
     known = np.isfinite(modes.freq_hz[picked])
     if not known.all():
         raise ModelError(
             f"design '{design.name}': mode {picked[np.argmin(known)] + 1} has no frequency",
-            file=modes.source or None, do="give every mode a frequency in Hz, 0 for rigid-body modes",
+            file=modes.source or None,
+            do="give every mode a frequency in Hz, 0 for rigid-body modes",
         )
     layout = lay_out(design, progress, formulations=formulations)
     vectors, doubts = _vectors(layout, modes, picked, progress)
@@ -192,7 +200,8 @@ def energies(
     if not (modal_mass > 0).all():
         raise ModelError(
             f"design '{design.name}': mode {picked[int(np.argmin(modal_mass))] + 1} moves no mass",
-            file=modes.source or None, do="remove the empty mode from the set",
+            file=modes.source or None,
+            do="remove the empty mode from the set",
         )
     flexible = flexible_share(layout, vectors) >= _RIGID
     rigid = (omega <= 0) | (~flexible & (springs.sum(axis=1) <= 0.25 * np.abs(total)))
@@ -206,9 +215,17 @@ def energies(
     with np.errstate(invalid="ignore"):
         trusted = (np.abs(closure - 1) <= CLOSURE_BOUND) & (own | (residual <= RESIDUAL_BOUND))
     return Energies(
-        indices=picked, freq_hz=modes.freq_hz[picked], strain=strain, kinetic=moving * omega[:, None] ** 2,
-        springs=springs, masses=masses * omega[:, None] ** 2, volumes=cell_volumes(layout), closure=closure,
-        residual=residual, residual_cells=residual_cells, trusted=trusted,
+        indices=picked,
+        freq_hz=modes.freq_hz[picked],
+        strain=strain,
+        kinetic=moving * omega[:, None] ** 2,
+        springs=springs,
+        masses=masses * omega[:, None] ** 2,
+        volumes=cell_volumes(layout),
+        closure=closure,
+        residual=residual,
+        residual_cells=residual_cells,
+        trusted=trusted,
         spring_names=tuple(item.name for item in layout.springs),
         mass_names=tuple(item.name for item in layout.masses),
         formulations=tuple(dict.fromkeys(group.formulation.name for group in layout.blocks)),
@@ -239,7 +256,8 @@ class BestFormulation:
 
     def to_dict(self) -> dict[str, Any]:
         return {
-            "formulations": dict(self.names), "error": self.error,
+            "formulations": dict(self.names),
+            "error": self.error,
             "tried": [{"formulations": dict(names), "error": error} for names, error in self.tried],
         }
 
@@ -261,7 +279,8 @@ def best_formulation(design: Design, modes: ModeSet, progress: Progress = SILENT
     names, error = tried[0]
     if not np.isfinite(error):
         raise RefusedError(
-            f"design '{design.name}': closure needs an elastic mode", found="rigid-body modes only",
+            f"design '{design.name}': closure needs an elastic mode",
+            found="rigid-body modes only",
             do="give more modes",
         )
     return BestFormulation(names, error, tuple(tried))

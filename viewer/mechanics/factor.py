@@ -54,7 +54,9 @@ class SuperLU:
     def __init__(self, matrix: sp.csr_array) -> None:
         try:
             self._lu = spla.splu(
-                sp.csc_array(matrix.T), permc_spec="MMD_AT_PLUS_A", diag_pivot_thresh=0.001,
+                sp.csc_array(matrix.T),
+                permc_spec="MMD_AT_PLUS_A",
+                diag_pivot_thresh=0.001,
                 options={"SymmetricMode": True},
             )
         except (RuntimeError, MemoryError) as error:
@@ -111,10 +113,18 @@ class Pardiso:
         columns = ctypes.c_int32(1 if right.ndim == 1 else right.shape[1])
         void, whole, quiet = ctypes.c_void_p, ctypes.POINTER(ctypes.c_int32), ctypes.c_int32(0)
         library.pardiso(
-            self._pointers.ctypes.data_as(ctypes.POINTER(ctypes.c_int64)), *map(ctypes.byref, number),
-            self._values.ctypes.data_as(void), self._rows.ctypes.data_as(whole), self._columns.ctypes.data_as(whole),
-            np.zeros(1, np.int32).ctypes.data_as(whole), ctypes.byref(columns), self._settings.ctypes.data_as(whole),
-            ctypes.byref(quiet), right.ctypes.data_as(void), out.ctypes.data_as(void), ctypes.byref(error),
+            self._pointers.ctypes.data_as(ctypes.POINTER(ctypes.c_int64)),
+            *map(ctypes.byref, number),
+            self._values.ctypes.data_as(void),
+            self._rows.ctypes.data_as(whole),
+            self._columns.ctypes.data_as(whole),
+            np.zeros(1, np.int32).ctypes.data_as(whole),
+            ctypes.byref(columns),
+            self._settings.ctypes.data_as(whole),
+            ctypes.byref(quiet),
+            right.ctypes.data_as(void),
+            out.ctypes.data_as(void),
+            ctypes.byref(error),
         )
         if check and error.value:
             raise _failure({-2: "not enough memory", -4: "zero pivot"}.get(error.value, f"error {error.value}"))
@@ -123,7 +133,8 @@ class Pardiso:
 
 def _failure(found: str) -> SolveError:
     return SolveError(
-        "the stiffness matrix could not be factorised", found=found,
+        "the stiffness matrix could not be factorised",
+        found=found,
         do="if memory ran out use a coarser mesh; otherwise look for parts that hang together by nothing",
     )
 

@@ -37,9 +37,9 @@ from viewer.model.design import Material
 HEX = KINDS["hex8"]
 POINTS, WEIGHTS = HEX.rule(3)
 CENTRE = np.zeros((1, 3))
-FLAT, THICK = 0.25, 0.5     # thickness over width up to which a cell is all wall, and from which it is none
+FLAT, THICK = 0.25, 0.5  # thickness over width up to which a cell is all wall, and from which it is none
 
-FIRST, SECOND = np.array([0, 1, 2, 0, 1, 2]), np.array([0, 1, 2, 1, 2, 0])      # Voigt order xx yy zz xy yz zx
+FIRST, SECOND = np.array([0, 1, 2, 0, 1, 2]), np.array([0, 1, 2, 1, 2, 0])  # Voigt order xx yy zz xy yz zx
 _ENGINEERING = np.where(FIRST == SECOND, 0.5, 1.0)
 EVERY = np.arange(6)
 
@@ -50,7 +50,9 @@ def _tying() -> tuple[Array, Array, Array]:
     along, across = np.array([[0, -1, 0], [0, 1, 0]]), np.array([[-1, 0, 0], [1, 0, 0]])
     corners = np.array([[-1, -1, 0], [1, -1, 0], [1, 1, 0], [-1, 1, 0]])
     weights = [
-        (1 + y * along[:, 1]) / 2, (1 + x * across[:, 0]) / 2, (1 + x * corners[:, 0]) * (1 + y * corners[:, 1]) / 4
+        (1 + y * along[:, 1]) / 2,
+        (1 + x * across[:, 0]) / 2,
+        (1 + x * corners[:, 0]) * (1 + y * corners[:, 1]) / 4,
     ]
     return np.repeat([5, 4, 2], [2, 2, 4]), np.concatenate([along, across, corners]), np.hstack(weights)
 
@@ -70,8 +72,12 @@ TIED = (5, 4, 2)
 INNER = _inner_strains()
 # Local nodes when direction 0, 1, 2 of the cell takes the place of ζ: coordinates move round, right side out.
 TURNS = [
-    np.array([int(np.argmin(np.abs(HEX.reference[:, np.roll(range(3), -1 - thin)] - node).sum(axis=1)))
-              for node in HEX.reference])
+    np.array(
+        [
+            int(np.argmin(np.abs(HEX.reference[:, np.roll(range(3), -1 - thin)] - node).sum(axis=1)))
+            for node in HEX.reference
+        ]
+    )
     for thin in range(3)
 ]
 
@@ -103,8 +109,8 @@ def stiffness(xyz: Array, thin: Array, material: Material) -> Array:
 
 
 def _across_zeta(xyz: Array, moduli: Array) -> Array:
-    axes = jacobians("hex8", xyz, POINTS)                                       # (b, q, 3 of space, 3 natural)
-    volume = np.linalg.det(axes)                                                # all weights are 1
+    axes = jacobians("hex8", xyz, POINTS)  # (b, q, 3 of space, 3 natural)
+    volume = np.linalg.det(axes)  # all weights are 1
     back = _turned(np.linalg.inv(axes))
     natural = _natural(axes, HEX.gradient(POINTS), EVERY)
     strain = np.empty((*volume.shape, 6, 32))
@@ -112,7 +118,7 @@ def _across_zeta(xyz: Array, moduli: Array) -> Array:
     mean = np.einsum("bq,bqin->bin", volume / volume.sum(axis=1, keepdims=True), strain[..., :24])
     taken_axes = jacobians("hex8", xyz, PLACES)
     taken = _natural(taken_axes, HEX.gradient(PLACES), TAKEN[:, None])[:, :, 0]
-    linear, taken_linear = _turned(axes), _turned(taken_axes)[:, np.arange(8), TAKEN]      # of constant strains
+    linear, taken_linear = _turned(axes), _turned(taken_axes)[:, np.arange(8), TAKEN]  # of constant strains
     for tied in TIED:
         at = tied == TAKEN
         change = SHARES[:, at] @ taken[:, at] - natural[:, :, tied]

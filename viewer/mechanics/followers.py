@@ -23,7 +23,7 @@ from viewer.mechanics.patch import RigidPatch, cross_matrix
 from viewer.model.arrays import Array
 from viewer.model.design import DIRECTIONS, Design, Link, Tie
 
-REACH = 0.5     # of the face's longest edge: how far a tied node may lie off when the tie does not say
+REACH = 0.5  # of the face's longest edge: how far a tied node may lie off when the tie does not say
 
 
 @dataclass(eq=False)
@@ -47,7 +47,8 @@ class Rules:
                 node = int(np.nonzero((self.dof == number).any(axis=1))[0][0])
                 raise ModelError(
                     f"design '{design.name}': node {design.mesh.node_ids[node]} follows twice",
-                    found=f"{self.owner[number]} and {what}", do="leave it out of one of them",
+                    found=f"{self.owner[number]} and {what}",
+                    do="leave it out of one of them",
                 )
             self.owner[number] = what
 
@@ -70,7 +71,8 @@ def link_nodes(link: Link, design: Design) -> tuple[int, Array]:
         leader, others = others, leader
     if len(leader) != 1:
         raise ModelError(
-            f"{what} needs one node that leads", found=f"{len(others)} and {len(leader)} nodes at its ends",
+            f"{what} needs one node that leads",
+            found=f"{len(others)} and {len(leader)} nodes at its ends",
             do="select a single node at one end (near, or one id), and the nodes that follow at the other",
         )
     followers = np.setdiff1d(others, leader)
@@ -89,9 +91,7 @@ def add_link(rules: Rules, link: Link, design: Design) -> None:
     weights = np.concatenate([np.broadcast_to(np.eye(3), (len(arms), 3, 3)), -cross_matrix(arms)], axis=2)
     rules.add(moved, np.broadcast_to(dof[leader], (len(arms), 6)), weights)
     rules.add(turned, np.broadcast_to(dof[leader, 3:], (len(arms), 3)), np.broadcast_to(np.eye(3), (len(arms), 3, 3)))
-    rules.statements.append(
-        f"{what}: {len(followers)} nodes follow node {design.mesh.node_ids[leader]} rigidly"
-    )
+    rules.statements.append(f"{what}: {len(followers)} nodes follow node {design.mesh.node_ids[leader]} rigidly")
 
 
 def hold_loose_spins(rules: Rules, design: Design, turning: Array) -> None:
@@ -111,7 +111,7 @@ def hold_loose_spins(rules: Rules, design: Design, turning: Array) -> None:
         if patch.rank == 3:
             rules.claim(spin, what, design)
         else:
-            axis = loose[:, 0]                        # axis · θ = 0, solved for its largest component
+            axis = loose[:, 0]  # axis · θ = 0, solved for its largest component
             first = int(np.abs(axis).argmax())
             others = [i for i in range(3) if i != first]
             rules.claim(spin[[first]], what, design)
@@ -129,7 +129,8 @@ def add_tie(rules: Rules, tie: Tie, design: Design) -> None:
     loose = rows[dof[rows, 0] < 0]
     if len(loose):
         raise ModelError(
-            f"{what} names nodes of no cell with a material", found=f"nodes {some_ids(mesh.node_ids[loose])}",
+            f"{what} names nodes of no cell with a material",
+            found=f"nodes {some_ids(mesh.node_ids[loose])}",
             do="select nodes of the structure",
         )
     faces = _faces(tie, rows, design, dof)
@@ -141,8 +142,15 @@ def add_tie(rules: Rules, tie: Tie, design: Design) -> None:
     for (kind, nodes), start in zip(faces, starts[:-1], strict=True):
         mine = np.nonzero((places.cell >= start) & (places.cell < start + len(nodes)))[0]
         if len(mine):
-            _add_places(rules, mesh.points, kind, nodes[places.cell[mine] - start], places.xi[mine, :2], rows[mine],
-                        points[mine] - places.position[mine])
+            _add_places(
+                rules,
+                mesh.points,
+                kind,
+                nodes[places.cell[mine] - start],
+                places.xi[mine, :2],
+                rows[mine],
+                points[mine] - places.position[mine],
+            )
     turning = int((dof[rows, 3] >= 0).sum())
     gap = float(places.distance.max()) if places.distance.max() > 1e-9 * mesh.diagonal else 0.0
     rules.statements.append(
@@ -169,7 +177,8 @@ def _faces(tie: Tie, rows: Array, design: Design, dof: Array) -> list[tuple[str,
             found.append((kind, nodes[kept]))
     if not found:
         raise ModelError(
-            f"tie '{tie.name}': its surface has no face", file=mesh.source or None,
+            f"tie '{tie.name}': its surface has no face",
+            file=mesh.source or None,
             expected="outer faces of solids or shell cells, with all nodes selected in 'to' and none in 'nodes'",
         )
     return found
@@ -178,10 +187,18 @@ def _faces(tie: Tie, rows: Array, design: Design, dof: Array) -> list[tuple[str,
 def _check_reach(tie: Tie, rows: Array, places: Places, faces: list[tuple[str, Array]], design: Design) -> None:
     points = design.mesh.points
     if tie.reach is None:
-        longest = np.concatenate([
-            np.max([np.linalg.norm(points[nodes[:, e[0]]] - points[nodes[:, e[1]]], axis=1)
-                    for e in KINDS[kind].edges], axis=0) for kind, nodes in faces
-        ])
+        longest = np.concatenate(
+            [
+                np.max(
+                    [
+                        np.linalg.norm(points[nodes[:, e[0]]] - points[nodes[:, e[1]]], axis=1)
+                        for e in KINDS[kind].edges
+                    ],
+                    axis=0,
+                )
+                for kind, nodes in faces
+            ]
+        )
         allowed = REACH * longest[places.cell]
     else:
         allowed = np.full(len(rows), tie.reach)
@@ -191,23 +208,24 @@ def _check_reach(tie: Tie, rows: Array, places: Places, faces: list[tuple[str, A
         raise ModelError(
             f"tie '{tie.name}': {int(far.sum())} nodes lie too far from the surface",
             found=f"nodes {some_ids(design.mesh.node_ids[rows[far]])}; node {design.mesh.node_ids[rows[worst]]} is "
-                  f"{places.distance[worst]:.3g} m away",
-            expected=f"at most {allowed[worst]:.3g} m", do="select only nodes on the surface, or raise 'reach'",
+            f"{places.distance[worst]:.3g} m away",
+            expected=f"at most {allowed[worst]:.3g} m",
+            do="select only nodes on the surface, or raise 'reach'",
         )
 
 
 def _add_places(rules: Rules, points: Array, kind: str, nodes: Array, xi: Array, rows: Array, gap: Array) -> None:
     """Rules of followers ``rows`` (k,) on faces ``nodes`` (k, n) at ``xi`` (k, 2), ``gap`` (k, 3) m off."""
     dof, (count, n) = rules.dof, nodes.shape
-    values = KINDS[kind].shape(xi)                                                      # (k, n)
+    values = KINDS[kind].shape(xi)  # (k, n)
     turned = dof[nodes, 3:]
     shell = (turned >= 0).all(axis=(1, 2))
-    turn = np.zeros((count, 3, n, 6))                                                   # ω from the nodes' freedoms
+    turn = np.zeros((count, 3, n, 6))  # ω from the nodes' freedoms
     turn[shell, :, :, 3:] = np.einsum("kn,ij->kinj", values[shell], np.eye(3))
     turn[~shell, :, :, :3] = _surface_rotation(kind, points[nodes[~shell]], xi[~shell])
     move = np.zeros_like(turn)
     move[..., :3] = np.einsum("kn,ij->kinj", values, np.eye(3))
-    move += np.einsum("kij,kjnm->kinm", -cross_matrix(gap), turn)                       # ω × gap
+    move += np.einsum("kij,kjnm->kinm", -cross_matrix(gap), turn)  # ω × gap
     leaders = dof[nodes].reshape(count, 6 * n)
     rules.add(dof[rows, :3], leaders, move.reshape(count, 3, 6 * n))
     rules.add(dof[rows, 3:], leaders, turn.reshape(count, 3, 6 * n))
@@ -215,12 +233,12 @@ def _add_places(rules: Rules, points: Array, kind: str, nodes: Array, xi: Array,
 
 def _surface_rotation(kind: str, xyz: Array, xi: Array) -> Array:
     """(k, 3, n, 3) small rotation of faces ``xyz`` (k, n, 3) at ``xi`` (k, 2) from their nodes' translations."""
-    gradient = KINDS[kind].gradient(xi)                                                 # (k, n, 2)
+    gradient = KINDS[kind].gradient(xi)  # (k, n, 2)
     tangents = np.einsum("kni,knd->kdi", xyz, gradient)
     dual = np.linalg.solve(np.einsum("kdi,kei->kde", tangents, tangents), tangents)
     normal = np.cross(tangents[:, 0], tangents[:, 1])
     normal /= np.maximum(np.linalg.norm(normal, axis=1, keepdims=True), 1e-300)
-    slopes = np.einsum("knd,kdi->kni", gradient, dual)                                  # surface gradient of N
+    slopes = np.einsum("knd,kdi->kni", gradient, dual)  # surface gradient of N
     half = np.eye(3) - 0.5 * normal[:, :, None] * normal[:, None, :]
     return np.einsum("kij,knjm->kinm", half, cross_matrix(slopes))
 
@@ -233,10 +251,13 @@ def follow_matrix(rules: Rules, design: Design, n_dof: int) -> tuple[sp.csr_arra
     if not dependent.any():
         return None, dependent
     independent = np.nonzero(~dependent)[0]
-    step = sp.csr_array((
-        np.concatenate([*rules.values, np.ones(len(independent))]),
-        (np.concatenate([*rules.rows, independent]), np.concatenate([*rules.columns, independent])),
-    ), shape=(n_dof, n_dof))
+    step = sp.csr_array(
+        (
+            np.concatenate([*rules.values, np.ones(len(independent))]),
+            (np.concatenate([*rules.rows, independent]), np.concatenate([*rules.columns, independent])),
+        ),
+        shape=(n_dof, n_dof),
+    )
     follow = step
     for _ in range(len(rules.statements) + 1):
         open_ends = sp.csr_array(follow[:, dependent])
@@ -246,7 +267,8 @@ def follow_matrix(rules: Rules, design: Design, n_dof: int) -> tuple[sp.csr_arra
         follow.eliminate_zeros()
     number = int(np.nonzero(np.diff(open_ends.indptr))[0][0])
     raise ModelError(
-        f"design '{design.name}': links or ties follow each other in a circle", found=rules.owner[number],
+        f"design '{design.name}': links or ties follow each other in a circle",
+        found=rules.owner[number],
         do="let one of them lead only",
     )
 
@@ -264,5 +286,6 @@ def check_supports(follow: sp.csr_array | None, dependent: Array, held: Array, r
     raise ModelError(
         f"design '{design.name}': a support holds {DIRECTIONS[direction[0]]} of node "
         f"{design.mesh.node_ids[node[0]]}, which follows others in {rules.owner[int(open_ends[0])]}",
-        found=f"{len(open_ends)} such directions", do="hold the nodes that lead instead, or leave these nodes out",
+        found=f"{len(open_ends)} such directions",
+        do="hold the nodes that lead instead, or leave these nodes out",
     )

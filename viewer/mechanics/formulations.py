@@ -56,13 +56,15 @@ def formulation_for(kind: str, name: str = "") -> Formulation:
     offered = FORMULATIONS.get(kind, ())
     if not offered:
         raise ModelError(
-            f"cells of kind '{kind}' have no element formulation", expected=f"one of: {', '.join(FORMULATIONS)}",
+            f"cells of kind '{kind}' have no element formulation",
+            expected=f"one of: {', '.join(FORMULATIONS)}",
             do="assign no material to them, or mesh the part with another kind",
         )
     for formulation in offered:
         if name in ("", formulation.name):
             return formulation
     raise ModelError(
-        f"unknown formulation of '{kind}' cells", found=f"'{name}'",
+        f"unknown formulation of '{kind}' cells",
+        found=f"'{name}'",
         expected=f"one of: {', '.join(f.name for f in offered)}",
     )

@@ -18,7 +18,7 @@ from viewer.model.arrays import Array, frozen
 from viewer.model.design import Design
 from viewer.model.modes import ModeSet
 
-_RIGID = 1e-4           # as in ``energy.py``
+_RIGID = 1e-4  # as in ``energy.py``
 NO_CELLS = "its stiffness and mass were given as matrices, so energies by element are not known"
 
 
@@ -30,7 +30,8 @@ def given_system(design: Design) -> System:
     physics = design.physics
     if physics.assignments or physics.springs or physics.masses or physics.links or physics.ties:
         raise ModelError(
-            f"design '{design.name}' has matrices and parts of its own beside them", expected="supports only",
+            f"design '{design.name}' has matrices and parts of its own beside them",
+            expected="supports only",
             do="leave out the matrices, or what they contain already",
         )
     if len(given.dof) != design.mesh.n_nodes:
@@ -39,8 +40,19 @@ def given_system(design: Design) -> System:
     none = frozen(np.zeros(size, bool))
     held = held_dofs(design.physics.supports, design, given.dof, size)
     return System(
-        design, given.dof, size, frozen(held), blocks=(), springs=(), masses=(), follow=None, dependent=none,
-        cautions=(), statements=(), K=given.stiffness.csr(), M=given.mass.csr(),
+        design,
+        given.dof,
+        size,
+        frozen(held),
+        blocks=(),
+        springs=(),
+        masses=(),
+        follow=None,
+        dependent=none,
+        cautions=(),
+        statements=(),
+        K=given.stiffness.csr(),
+        M=given.mass.csr(),
     )
 
 
@@ -91,7 +103,8 @@ def totals(
     given = [values for values in turned if values is not None]
     if system.has_rotations and len(given) < len(turned):
         raise ModelError(
-            f"design '{design.name}': its matrices have rotations, the modes have none", file=modes.source or None,
+            f"design '{design.name}': its matrices have rotations, the modes have none",
+            file=modes.source or None,
             do="give modes with rotations",
         )
     vectors = system.gather(moved, np.stack(given) if len(given) == len(turned) else None)
@@ -107,7 +120,13 @@ def totals(
     if len(elastic):
         residual[elastic], _ = residuals(system, vectors[elastic], omega[elastic], progress)
     return Totals(
-        picked, modes.freq_hz[picked], strain, 0.5 * modal_mass * omega**2, modal_mass, closure, residual,
+        picked,
+        modes.freq_hz[picked],
+        strain,
+        0.5 * modal_mass * omega**2,
+        modal_mass,
+        closure,
+        residual,
         (np.abs(closure - 1) <= CLOSURE_BOUND) & (residual <= RESIDUAL_BOUND),
     )
 

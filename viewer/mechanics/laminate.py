@@ -20,8 +20,8 @@ from viewer.model.arrays import Array
 from viewer.model.design import Layer, Material, Property
 
 REISSNER = 5 / 6
-_GAUSS = np.polynomial.legendre.leggauss(3)     # exact for the square of a parabola
-_FLAT = 1e-6        # sine of the angle to the normal below which a direction says nothing
+_GAUSS = np.polynomial.legendre.leggauss(3)  # exact for the square of a parabola
+_FLAT = 1e-6  # sine of the angle to the normal below which a direction says nothing
 
 
 @dataclass(frozen=True, eq=False)
@@ -39,8 +39,10 @@ class Sheet:
         strain, slip = strain_turn(angle), slip_turn(angle)
         coupling = None if self.coupling is None else np.swapaxes(strain, 1, 2) @ self.coupling @ strain
         return Sheet(
-            np.swapaxes(strain, 1, 2) @ self.membrane @ strain, np.swapaxes(strain, 1, 2) @ self.bending @ strain,
-            np.swapaxes(slip, 1, 2) @ self.shear @ slip, coupling,
+            np.swapaxes(strain, 1, 2) @ self.membrane @ strain,
+            np.swapaxes(strain, 1, 2) @ self.bending @ strain,
+            np.swapaxes(slip, 1, 2) @ self.shear @ slip,
+            coupling,
         )
 
 
@@ -50,8 +52,10 @@ def layers_of(prop: Property) -> tuple[Layer, ...]:
     for layer in layers:
         if not 0 < layer.thickness < math.inf:
             raise ModelError(
-                f"a sheet of material '{layer.material.name}' needs a thickness", found=f"{layer.thickness:g} m",
-                expected="above 0 m", do="give 'thickness' in the assignment or its layers",
+                f"a sheet of material '{layer.material.name}' needs a thickness",
+                found=f"{layer.thickness:g} m",
+                expected="above 0 m",
+                do="give 'thickness' in the assignment or its layers",
             )
     return layers
 
@@ -69,10 +73,8 @@ def sheet(prop: Property, shear_factor: float = REISSNER) -> Sheet:
     low, high = heights[:-1, None, None], heights[1:, None, None]
     moduli = np.stack([reduced(layer.material, layer.angle) for layer in layers])
     shear = np.stack([transverse(layer.material, layer.angle) for layer in layers])
-    membrane, coupling, bending = (
-        (moduli * (high**power - low**power) / power).sum(axis=0) for power in (1, 2, 3)
-    )
-    if len(layers) == 1:                            # the cube of halves loses digits that the closed form keeps
+    membrane, coupling, bending = ((moduli * (high**power - low**power) / power).sum(axis=0) for power in (1, 2, 3))
+    if len(layers) == 1:  # the cube of halves loses digits that the closed form keeps
         bending = moduli[0] * layers[0].thickness ** 3 / 12
     total = (shear * (high - low)).sum(axis=0)
     factors = [_shear_factor(heights, moduli[:, i, i], shear[:, i, i]) for i in (0, 1)]
@@ -101,9 +103,13 @@ def reduced(material: Material, angle: float) -> Array:
     if constants is None:
         return plane_stress(material)
     back = constants.nu12 * constants.e2 / constants.e1
-    own = np.array([
-        [constants.e1, back * constants.e1, 0], [back * constants.e1, constants.e2, 0], [0, 0, 0],
-    ]) / (1 - constants.nu12 * back)
+    own = np.array(
+        [
+            [constants.e1, back * constants.e1, 0],
+            [back * constants.e1, constants.e2, 0],
+            [0, 0, 0],
+        ]
+    ) / (1 - constants.nu12 * back)
     own[2, 2] = constants.g12
     turn = strain_turn(np.radians([angle]))[0]
     return turn.T @ own @ turn
@@ -121,10 +127,14 @@ def transverse(material: Material, angle: float) -> Array:
 def strain_turn(angle: Array) -> Array:
     """(b, 3, 3) strains (xx yy, engineering xy) in axes turned by ``angle`` (b,) rad from strains in the old ones."""
     c, s = np.cos(angle), np.sin(angle)
-    return np.stack([
-        np.stack([c * c, s * s, c * s], axis=-1), np.stack([s * s, c * c, -c * s], axis=-1),
-        np.stack([-2 * c * s, 2 * c * s, c * c - s * s], axis=-1),
-    ], axis=-2)
+    return np.stack(
+        [
+            np.stack([c * c, s * s, c * s], axis=-1),
+            np.stack([s * s, c * c, -c * s], axis=-1),
+            np.stack([-2 * c * s, 2 * c * s, c * c - s * s], axis=-1),
+        ],
+        axis=-2,
+    )
 
 
 def slip_turn(angle: Array) -> Array:
@@ -148,7 +158,8 @@ def directions(prop: Property, axes: Array) -> Array:
     if not (flat > _FLAT).all():
         raise ModelError(
             f"the direction of material '{prop.material.name}' stands square to {int((flat <= _FLAT).sum())} cells",
-            found=f"direction {list(prop.direction)}", expected="a direction that lies in the sheet, or nearly",
+            found=f"direction {list(prop.direction)}",
+            expected="a direction that lies in the sheet, or nearly",
             do="give these cells another direction",
         )
     return np.arctan2(along[:, 1], along[:, 0])

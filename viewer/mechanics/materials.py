@@ -20,18 +20,23 @@ def check(material: Material) -> Material:
     if material.directional is None:
         checks = [
             ("Young's modulus", material.youngs_modulus, material.youngs_modulus > 0, "above 0 Pa"),
-            ("Poisson's ratio", material.poisson, -1 < material.poisson < 0.5, "above -1 and below 0.5"), *checks,
+            ("Poisson's ratio", material.poisson, -1 < material.poisson < 0.5, "above -1 and below 0.5"),
+            *checks,
         ]
     else:
         own = material.directional
-        checks += [(name, getattr(own, name), getattr(own, name) > 0, "above 0 Pa")
-                   for name in ("e1", "e2", "g12", "g13", "g23")]
+        checks += [
+            (name, getattr(own, name), getattr(own, name) > 0, "above 0 Pa")
+            for name in ("e1", "e2", "g12", "g13", "g23")
+        ]
         # else the strain energy of some plane stress would be negative (Jones 1999, § 2.4)
         checks.append(("nu12", own.nu12, own.nu12**2 * own.e2 < own.e1, "below √(e1/e2) in size"))
     for name, value, good, expected in checks:
         if not (good and math.isfinite(value)):
             raise ModelError(
-                f"material '{material.name}': {name} cannot be used", found=f"{value:g}", expected=expected,
+                f"material '{material.name}': {name} cannot be used",
+                found=f"{value:g}",
+                expected=expected,
                 do="correct the material",
             )
     return material
@@ -43,7 +48,8 @@ def lame(material: Material) -> tuple[float, float]:
     if material.directional is not None:
         raise ModelError(
             f"material '{material.name}' is directional and stands on solids or beams",
-            expected="directional material on shells only", do="give these cells an isotropic material",
+            expected="directional material on shells only",
+            do="give these cells an isotropic material",
         )
     modulus, ratio = material.youngs_modulus, material.poisson
     return modulus * ratio / ((1 + ratio) * (1 - 2 * ratio)), modulus / (2 * (1 + ratio))

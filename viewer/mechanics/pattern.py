@@ -14,7 +14,7 @@ from viewer.model.arrays import Array
 if TYPE_CHECKING:
     from viewer.mechanics.assembly import ElementGroup, Layout
 
-_SLAB = 2**25       # entries gathered before they are added to the matrix, 256 MB
+_SLAB = 2**25  # entries gathered before they are added to the matrix, 256 MB
 
 
 class Pattern:
@@ -37,8 +37,10 @@ class Pattern:
         graph.sort_indices()
         if 9 * graph.nnz >= 2**31:
             raise ModelError(
-                "the model is too large for the solver", found=f"{9 * graph.nnz:.2g} matrix entries",
-                expected="below 2.1e9", do="use a coarser mesh",
+                "the model is too large for the solver",
+                found=f"{9 * graph.nnz:.2g} matrix entries",
+                expected="below 2.1e9",
+                do="use a coarser mesh",
             )
         self.start, self.columns = graph.indptr, graph.indices
         self.length = np.diff(graph.indptr)

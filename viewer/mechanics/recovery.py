@@ -33,11 +33,11 @@ from viewer.mechanics.patch import RigidPatch
 from viewer.mechanics.sums import cell_energies
 from viewer.model.arrays import Array
 
-ENERGY_BOUND = 0.02         # Σ|ΔU_e| / ΣU_e above which the digits of a file are said to be too few
-_SOFT = 1e-12               # added to the diagonal, relative; taken off again by iterative refinement
-_UNSEEN = 1e-6              # share of a random rotation that survives three filterings by _SOFT / (λ + _SOFT)
+ENERGY_BOUND = 0.02  # Σ|ΔU_e| / ΣU_e above which the digits of a file are said to be too few
+_SOFT = 1e-12  # added to the diagonal, relative; taken off again by iterative refinement
+_UNSEEN = 1e-6  # share of a random rotation that survives three filterings by _SOFT / (λ + _SOFT)
 _STEPS, _SETTLED = 60, 1e-8  # of balancing with inertia: most steps, and relative change when settled
-_UNITS = (1.0, 1e-3, 1e-2, 0.0254, 0.3048)      # metres per unit in which the file may have been written
+_UNITS = (1.0, 1e-3, 1e-2, 0.0254, 0.3048)  # metres per unit in which the file may have been written
 
 
 class Rotations:
@@ -50,8 +50,13 @@ class Rotations:
     """
 
     def __init__(
-        self, stiffness: Any, dof: Array, held: Array, progress: Progress = SILENT,
-        shown: Sequence[tuple[int, Array, RigidPatch]] = (), mass: Any = None,
+        self,
+        stiffness: Any,
+        dof: Array,
+        held: Array,
+        progress: Progress = SILENT,
+        shown: Sequence[tuple[int, Array, RigidPatch]] = (),
+        mass: Any = None,
     ) -> None:
         self.dof, self.size, self.progress = np.asarray(dof), stiffness.shape[0], progress
         self.unsettled = np.empty(0, bool)
@@ -114,7 +119,7 @@ class Rotations:
             return vectors
         right = -(self.basis.T @ (self.coupling @ vectors.T))
         turned = np.zeros_like(right)
-        for _ in range(20):             # the softening on the diagonal leaves the answer with every step
+        for _ in range(20):  # the softening on the diagonal leaves the answer with every step
             self.progress.tick("recovering rotations")
             step = self._solve(right - self.inner @ turned)
             turned += step
@@ -170,7 +175,7 @@ class Rotations:
         found = np.zeros(len(self.dof), bool)
         nodes = np.nonzero(free.any(axis=1))[0]
         answers = np.where(free[nodes][..., None], np.moveaxis(vectors[:, self.dof[nodes, 3:]], 0, -1), 0.0)
-        strength = np.linalg.svd(answers, compute_uv=False)                          # (nodes, 3)
+        strength = np.linalg.svd(answers, compute_uv=False)  # (nodes, 3)
         count = free[nodes].sum(axis=1)
         least = np.take_along_axis(strength, count[:, None] - 1, axis=1)[:, 0]
         found[nodes] = least <= _UNSEEN * np.median(strength[:, 0])
@@ -203,9 +208,7 @@ def recover(layout: Layout, moved: Array, progress: Progress = SILENT, squares: 
     return _operator(layout, progress).complete(moved, squares)
 
 
-def examine(
-    layout: Layout, moved: Array, progress: Progress = SILENT, squares: Array | None = None
-) -> Recovery:
+def examine(layout: Layout, moved: Array, progress: Progress = SILENT, squares: Array | None = None) -> Recovery:
     """As :func:`recover`, with what cannot be recovered and what the digits of ``moved`` leave open."""
     operator = _operator(layout, progress)
     vectors = operator.complete(moved, squares)
@@ -254,7 +257,7 @@ def rounding(values: Array) -> Array:
         inside = sample / unit
         steps = [_significant(values / unit, inside), _decimals(values / unit, inside)]
         found = [step for step in steps if step is not None]
-        if found:                       # the coarser reading: 0.12 and 1.23 have two decimals, not three digits
+        if found:  # the coarser reading: 0.12 and 1.23 have two decimals, not three digits
             return unit * max(found, key=lambda step: float(np.log(step).mean()))
         with np.errstate(over="ignore"):
             short = np.abs(inside.astype(np.float32) - inside) <= 4 * np.finfo(float).eps * np.abs(inside)
@@ -312,7 +315,7 @@ class _Following(Rotations):
     def complete(self, moved: Array, squares: Array | None = None) -> Array:
         vectors = super().complete(moved, squares)
         if np.iscomplexobj(moved):
-            return vectors      # both parts have passed here
+            return vectors  # both parts have passed here
         numbers = self.dof[:, 3:][self.dof[:, 3:] >= 0]
         numbers = numbers[self.dependent[numbers]]
         vectors[:, numbers] = (self.follow[numbers] @ vectors.T).T

@@ -55,8 +55,13 @@ def relative_energies(design: Design, modes: ModeSet, progress: Progress = SILEN
     elastic = np.isfinite(found.closure)[:, None]
     nothing = np.full(len(found.indices), np.nan)
     return replace(
-        found, strain=np.where(elastic, _shares(found.strain), 0.0), kinetic=_shares(found.kinetic),
-        closure=nothing, residual=nothing, trusted=np.zeros(len(elastic), bool), relative=True,
+        found,
+        strain=np.where(elastic, _shares(found.strain), 0.0),
+        kinetic=_shares(found.kinetic),
+        closure=nothing,
+        residual=nothing,
+        trusted=np.zeros(len(elastic), bool),
+        relative=True,
     )
 
 
@@ -70,13 +75,12 @@ def _check_sizes(design: Design) -> None:
     mesh, (properties, index) = design.mesh, design.properties
     if not any(KINDS[block.kind].dim and len(block) for block in mesh.blocks):
         raise RefusedError(
-            f"design '{design.name}' has no cells that could hold energy", file=mesh.source or None,
+            f"design '{design.name}' has no cells that could hold energy",
+            file=mesh.source or None,
             do="give the mesh of the body with its cells",
         )
     carried = np.zeros(mesh.n_nodes, bool)
-    blocks = sorted(
-        zip(mesh.blocks, mesh.block_starts[:-1], strict=True), key=lambda item: -KINDS[item[0].kind].dim
-    )
+    blocks = sorted(zip(mesh.blocks, mesh.block_starts[:-1], strict=True), key=lambda item: -KINDS[item[0].kind].dim)
     for block, start in blocks:
         dim = KINDS[block.kind].dim
         if dim == 0:
@@ -87,7 +91,8 @@ def _check_sizes(design: Design) -> None:
             kind, wanted, other = _WANTED[dim]
             raise RefusedError(
                 f"design '{design.name}' states no materials, and relative energies of {kind} need {wanted}, since "
-                f"the ratio of bending to {other} depends on it", file=mesh.source or None,
+                f"the ratio of bending to {other} depends on it",
+                file=mesh.source or None,
                 do=f"assign {wanted}, and materials too for closure, trust and absolute energies",
             )
         carried[block.nodes[has]] = True

@@ -16,7 +16,9 @@ from viewer.errors import ModelError
 from viewer.model.design import Section
 
 _NEEDED = {
-    "rectangle": ("width", "height"), "round": ("diameter",), "tube": ("diameter", "wall"),
+    "rectangle": ("width", "height"),
+    "round": ("diameter",),
+    "tube": ("diameter", "wall"),
     "given": ("area", "iy", "iz", "torsion"),
 }
 
@@ -48,7 +50,8 @@ def constants(section: Section, poisson: float) -> SectionConstants:
     needed = _NEEDED.get(section.shape)
     if needed is None:
         raise ModelError(
-            f"unknown shape of section '{section.shape}'", expected=f"one of: {', '.join(_NEEDED)}",
+            f"unknown shape of section '{section.shape}'",
+            expected=f"one of: {', '.join(_NEEDED)}",
             do="or give area, iy, iz and torsion",
         )
     measures = {name: getattr(section, name) for names in _NEEDED.values() for name in names}
@@ -56,7 +59,8 @@ def constants(section: Section, poisson: float) -> SectionConstants:
         if (value is not None) != (name in needed):
             word = "is missing" if name in needed else "does not belong to it"
             raise ModelError(
-                f"section '{section.shape}': {name} {word}", expected=f"just {', '.join(needed)}",
+                f"section '{section.shape}': {name} {word}",
+                expected=f"just {', '.join(needed)}",
                 do="correct the section",
             )
     for name in (*needed, "shear_up", "shear_across"):
@@ -85,14 +89,15 @@ def rectangle_torsion(width: float, height: float) -> float:
 def _tube(poisson: float, diameter: float, wall: float) -> tuple[float, ...]:
     if wall > diameter / 2:
         raise ModelError(
-            "section 'tube': the wall is thicker than half the diameter", found=f"{wall:g} m of {diameter:g} m",
+            "section 'tube': the wall is thicker than half the diameter",
+            found=f"{wall:g} m of {diameter:g} m",
             do="give the outer diameter, or shape 'round'",
         )
     inner = diameter - 2 * wall
     ratio = (inner / diameter) ** 2
     second = math.pi / 64 * (diameter**4 - inner**4)
-    shear = 6 * (1 + poisson) * (1 + ratio) ** 2 / (
-        (7 + 6 * poisson) * (1 + ratio) ** 2 + (20 + 12 * poisson) * ratio
+    shear = (
+        6 * (1 + poisson) * (1 + ratio) ** 2 / ((7 + 6 * poisson) * (1 + ratio) ** 2 + (20 + 12 * poisson) * ratio)
     )
     return math.pi / 4 * (diameter**2 - inner**2), second, second, 2 * second, shear, shear
 

@@ -10,8 +10,8 @@ import scipy.linalg as sl
 
 from viewer.model.arrays import Array
 
-REPEATED = 1e-6         # relative gap of frequencies below which modes count as repeated
-_TIE = 1e-6             # relative difference below which two components are equally large
+REPEATED = 1e-6  # relative gap of frequencies below which modes count as repeated
+_TIE = 1e-6  # relative difference below which two components are equally large
 _ROUNDING = 200 * np.finfo(float).eps
 
 
@@ -62,7 +62,7 @@ def _aligned(block: Array, mass: Any, rigid: Array) -> Array:
     made M-orthogonal to the rest; among equal components the first one counts.
     """
     rank = block.shape[1]
-    chosen: list[Array] = []                                    # unit coordinates in the given basis
+    chosen: list[Array] = []  # unit coordinates in the given basis
 
     def rest(coordinates: Array) -> Array:
         for other in chosen + chosen:

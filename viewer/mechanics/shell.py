@@ -99,7 +99,8 @@ def _require_thickness(kind: str, prop: Property) -> None:
     if prop.thickness is None or not prop.thickness > 0:
         raise ModelError(
             f"{kind} cells of material '{prop.material.name}' are sheet and need a thickness",
-            found="none" if prop.thickness is None else f"{prop.thickness:g} m", expected="a thickness above zero",
+            found="none" if prop.thickness is None else f"{prop.thickness:g} m",
+            expected="a thickness above zero",
             do="give 'thickness' in the assignment of these cells",
         )
 
@@ -129,7 +130,8 @@ def _reject_flat(kind: str, xyz: Array, xy: Array) -> None:
         x, y, z = xyz[bad[0]].mean(axis=0)
         raise ModelError(
             f"{len(bad)} {kind} cell(s) have no area or are folded over",
-            found=f"the first near ({x:g}, {y:g}, {z:g}) m", expected="convex cells with an area",
+            found=f"the first near ({x:g}, {y:g}, {z:g}) m",
+            expected="convex cells with an area",
             do="repair the mesh there",
         )
 

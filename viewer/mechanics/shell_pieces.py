@@ -92,5 +92,6 @@ def _carried(matrix: Array, carry: Array | None) -> Array:
 PIECED_SHELLS: tuple[PiecedShell, ...] = tuple(
     PiecedShell(f"{kind}-{piece.name.split('-', 1)[1]}-pieces", kind, piece)
     for kind, corners in (("tri6", "tri3"), ("quad8", "quad4"), ("quad9", "quad4"))
-    for piece in SHELLS if piece.kind == corners
+    for piece in SHELLS
+    if piece.kind == corners
 )

@@ -21,7 +21,7 @@ from viewer.mechanics.laminate import Sheet
 from viewer.model.arrays import Array
 
 QUAD = KINDS["quad4"]
-POINTS = QUAD.rule(2)[0]                # the 2 × 2 Gauss rule, all weights 1
+POINTS = QUAD.rule(2)[0]  # the 2 × 2 Gauss rule, all weights 1
 U, V, _, RX, RY, RZ = (slice(i, None, 6) for i in range(6))
 
 
@@ -101,9 +101,9 @@ def _in_plane(xy: Array, values: Array, slopes: Array, area: Array, moduli: Arra
 
     both = np.zeros((*moduli.shape[:-2], 4, 4))
     both[..., :3, :3], both[..., 3, 3] = moduli, moduli[..., 2, 2]
-    full = np.concatenate([
-        np.concatenate([strain, misfit], axis=2), np.concatenate([extra_strain, extra_misfit], axis=2)
-    ], axis=3)
+    full = np.concatenate(
+        [np.concatenate([strain, misfit], axis=2), np.concatenate([extra_strain, extra_misfit], axis=2)], axis=3
+    )
     stiffness = integrate(full, both, area)
     follow = -np.linalg.solve(stiffness[:, 24:, 24:], stiffness[:, 24:, :24])[:, None]
     return strain + extra_strain @ follow, misfit + extra_misfit @ follow
@@ -111,6 +111,7 @@ def _in_plane(xy: Array, values: Array, slopes: Array, area: Array, moduli: Arra
 
 def _tied_shear(xy: Array) -> Array:
     """Covariant shear strains (b, 4 points, 2, 24), interpolated between the middles of opposite edges."""
+
     def along(i: int, j: int) -> Array:
         """Half the edge's mean of w,s + (rotation of the normal along s), times its length."""
         row = np.zeros((len(xy), 24))

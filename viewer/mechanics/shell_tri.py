@@ -22,12 +22,17 @@ from viewer.mechanics.shell_quad import RX, RY, integrate
 from viewer.model.arrays import Array
 
 TRIANGLE = KINDS["tri3"]
-POINTS = TRIANGLE.shape(TRIANGLE.rule(2)[0])            # area coordinates of the rule exact for quadratics
+POINTS = TRIANGLE.shape(TRIANGLE.rule(2)[0])  # area coordinates of the rule exact for quadratics
 EDGES = ((0, 1), (1, 2), (2, 0))
-BASIC = 1.5                                             # α_b of the optimal triangle
-PATTERN = np.array([[(1, 2, 1), (0, 1, -1), (-1, -1, -2)],
-                    [(-2, -1, -1), (1, 1, 2), (-1, 0, 1)],
-                    [(1, -1, 0), (-1, -2, -1), (2, 1, 1)]], float)   # β1…β9 as the three corners see them
+BASIC = 1.5  # α_b of the optimal triangle
+PATTERN = np.array(
+    [
+        [(1, 2, 1), (0, 1, -1), (-1, -1, -2)],
+        [(-2, -1, -1), (1, 1, 2), (-1, 0, 1)],
+        [(1, -1, 0), (-1, -2, -1), (2, 1, 1)],
+    ],
+    float,
+)  # β1…β9 as the three corners see them
 
 
 def determinants(xy: Array) -> Array:
@@ -51,7 +56,7 @@ def flat_parts(xy: Array, sheet: Sheet) -> dict[str, Array]:
         "shear": integrate(slip, sheet.shear, weights),
         "drilling": np.zeros_like(in_plane),
     }
-    if sheet.coupling is not None:      # between the means of membrane strain, basicᵀ / area, and curvature
+    if sheet.coupling is not None:  # between the means of membrane strain, basicᵀ / area, and curvature
         half = basic @ sheet.coupling @ curvature.mean(axis=1)
         parts["coupling"] = half + np.swapaxes(half, 1, 2)
     return parts
@@ -60,10 +65,10 @@ def flat_parts(xy: Array, sheet: Sheet) -> dict[str, Array]:
 def _optimal_triangle(xy: Array, area: Array, moduli: Array) -> tuple[Array, Array]:
     """Mean membrane strains times area (b, 18, 3) transposed, and membrane stiffness (b, 18, 18)."""
     batch = len(xy)
-    dx = xy[:, :, None, 0] - xy[:, None, :, 0]          # x_ij = x_i − x_j
+    dx = xy[:, :, None, 0] - xy[:, None, :, 0]  # x_ij = x_i − x_j
     dy = xy[:, :, None, 1] - xy[:, None, :, 1]
     basic = np.zeros((batch, 18, 3))
-    theta = np.zeros((batch, 3, 18))                    # hierarchical rotations: nodal minus that of the linear field
+    theta = np.zeros((batch, 3, 18))  # hierarchical rotations: nodal minus that of the linear field
     for i, j, k in ((0, 1, 2), (1, 2, 0), (2, 0, 1)):
         u, v, r = 6 * i, 6 * i + 1, 6 * i + 5
         basic[:, u, 0] = basic[:, v, 2] = dy[:, j, k]
@@ -76,15 +81,28 @@ def _optimal_triangle(xy: Array, area: Array, moduli: Array) -> tuple[Array, Arr
         theta[:, i, r] = 1
     basic *= 0.5
 
-    sides = np.stack([dx[:, j, i] ** 2 + dy[:, j, i] ** 2 for i, j in EDGES], axis=1)       # l21² l32² l13²
+    sides = np.stack([dx[:, j, i] ** 2 + dy[:, j, i] ** 2 for i, j in EDGES], axis=1)  # l21² l32² l13²
     others = ((0, 1, 2), (1, 2, 0), (2, 0, 1))
-    natural = np.stack([                                # strains along the sides → strains xx, yy, xy
-        np.stack([dy[:, j, k] * dy[:, i, k], dx[:, j, k] * dx[:, i, k],
-                  dy[:, j, k] * dx[:, k, i] + dx[:, k, j] * dy[:, i, k]], axis=1) * sides[:, n, None]
-        for n, (i, j, k) in enumerate(others)
-    ], axis=2) / (4 * area**2)[:, None, None]
+    natural = (
+        np.stack(
+            [  # strains along the sides → strains xx, yy, xy
+                np.stack(
+                    [
+                        dy[:, j, k] * dy[:, i, k],
+                        dx[:, j, k] * dx[:, i, k],
+                        dy[:, j, k] * dx[:, k, i] + dx[:, k, j] * dy[:, i, k],
+                    ],
+                    axis=1,
+                )
+                * sides[:, n, None]
+                for n, (i, j, k) in enumerate(others)
+            ],
+            axis=2,
+        )
+        / (4 * area**2)[:, None, None]
+    )
     side_moduli = np.swapaxes(natural, 1, 2) @ moduli @ natural
-    corner = (2 / 3 * area)[:, None, None, None] * PATTERN / sides[:, None, :, None]   # (b, corner, side, turn)
+    corner = (2 / 3 * area)[:, None, None, None] * PATTERN / sides[:, None, :, None]  # (b, corner, side, turn)
     middle = 0.5 * (corner + np.roll(corner, -1, axis=1))
     higher = np.einsum("bcsi,bst,bctj->bij", middle, side_moduli, middle) * area[:, None, None]
 
@@ -93,8 +111,9 @@ def _optimal_triangle(xy: Array, area: Array, moduli: Array) -> tuple[Array, Arr
     stiff = (3 * (moduli[..., 0, 0] + moduli[..., 1, 1]) + 2 * moduli[..., 0, 1] + 4 * moduli[..., 2, 2]) / 8
     poisson = (moduli[..., 0, 0] + moduli[..., 1, 1] + 6 * moduli[..., 0, 1] - 4 * moduli[..., 2, 2]) / 8 / stiff
     share = np.maximum(0.5 * (1 - 4 * poisson**2), 0.01)[..., None, None]
-    return basic, (basic @ moduli @ np.swapaxes(basic, 1, 2)) / area[:, None, None] \
-        + 0.75 * share * np.swapaxes(theta, 1, 2) @ higher @ theta
+    return basic, (basic @ moduli @ np.swapaxes(basic, 1, 2)) / area[:, None, None] + 0.75 * share * np.swapaxes(
+        theta, 1, 2
+    ) @ higher @ theta
 
 
 def _bending(xy: Array, area: Array, sheet: Sheet) -> tuple[Array, Array]:
@@ -119,22 +138,26 @@ def _bending(xy: Array, area: Array, sheet: Sheet) -> tuple[Array, Array]:
         bent, sheared = np.stack([c * c, s * s, 2 * c * s], axis=-1), np.stack([c, s], axis=-1)
         stiff = _along(bent, sheet.bending)
         phi = 12 * stiff / _along(sheared, sheet.shear) / length**2
-        gap = np.zeros((batch, 18))                     # w_j − w_i + L/2 (β_i + β_j) along the edge
+        gap = np.zeros((batch, 18))  # w_j − w_i + L/2 (β_i + β_j) along the edge
         gap[:, 6 * i + 2], gap[:, 6 * j + 2] = -1.0, 1.0
         for node in (i, j):
             gap[:, 6 * node + 4], gap[:, 6 * node + 3] = 0.5 * edge[:, 0], -0.5 * edge[:, 1]
         bulge = -1.5 / (length * (1 + phi))[:, None] * gap
         bump = 4 * (POINTS[:, i, None] * slopes[:, None, j] + POINTS[:, j, None] * slopes[:, None, i])
-        strain = np.stack([
-            bump[..., 0] * c[:, None], bump[..., 1] * s[:, None],
-            bump[..., 1] * c[:, None] + bump[..., 0] * s[:, None],
-        ], axis=2)
+        strain = np.stack(
+            [
+                bump[..., 0] * c[:, None],
+                bump[..., 1] * s[:, None],
+                bump[..., 1] * c[:, None] + bump[..., 0] * s[:, None],
+            ],
+            axis=2,
+        )
         curvature += strain[..., None] * bulge[:, None, None, :]
         tangents.append(np.stack([c, s], axis=1))
         mean_slip.append(-2 / 3 * phi[:, None] * bulge)
 
     slip = np.zeros((batch, 3, 2, 18))
-    for node in range(3):                               # the corner's shear has the mean slip of both its edges
+    for node in range(3):  # the corner's shear has the mean slip of both its edges
         before, after = (node + 2) % 3, node
         directions = np.stack([tangents[before], tangents[after]], axis=1)
         at_corner = np.linalg.solve(directions, np.stack([mean_slip[before], mean_slip[after]], axis=1))

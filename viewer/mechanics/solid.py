@@ -28,7 +28,7 @@ from viewer.mechanics import flat_brick, materials
 from viewer.model.arrays import Array
 from viewer.model.design import Material, Property
 
-_WORK = 1 << 17      # doubles in gradients and matrices of one chunk of cells: about what the processor's cache holds
+_WORK = 1 << 17  # doubles in gradients and matrices of one chunk of cells: about what the processor's cache holds
 
 
 @dataclass(frozen=True)
@@ -65,7 +65,7 @@ class SolidFormulation:
                 inner = matrix[:, kept:]
                 freed = np.linalg.solve(inner[:, :, kept:], inner[:, :, :kept])
                 matrix = matrix[:, :kept, :kept] - matrix[:, :kept, kept:] @ freed
-                matrix = (matrix + np.swapaxes(matrix, 1, 2)) / 2      # symmetric to the last digit, as the others
+                matrix = (matrix + np.swapaxes(matrix, 1, 2)) / 2  # symmetric to the last digit, as the others
                 _thin_walls(matrix, xyz[part], prop.material)
             out[part] = matrix
         return out
@@ -113,13 +113,13 @@ class SolidFormulation:
         inverse = cofactors(jacobian)
         determinant = (jacobian[:, 0] * inverse[:, 0]).sum(axis=0)
         self._require_positive(determinant.min(axis=1), "a Jacobian determinant at an integration point")
-        scale = np.sqrt(weights / determinant)                 # √(w det J) over the determinant of the inverse
+        scale = np.sqrt(weights / determinant)  # √(w det J) over the determinant of the inverse
         inverse *= scale
         slopes = _mapped(gradient, inverse)
         if not self.incompatible:
             return slopes
         centre = jacobian_components(xyz, _tables(self.kind, 1)[3])
-        bubbles = -2 * points[:, :, None] * np.eye(3)          # ∂(1 − ξ²)/∂ξ in each direction
+        bubbles = -2 * points[:, :, None] * np.eye(3)  # ∂(1 − ξ²)/∂ξ in each direction
         return np.concatenate([slopes, _mapped(bubbles, cofactors(centre) * scale)], axis=-1)
 
     def _require_positive(self, smallest: Array, what: str) -> None:
@@ -128,7 +128,9 @@ class SolidFormulation:
         if count:
             raise ModelError(
                 f"{count} {self.kind} cell{'s are' if count > 1 else ' is'} inside out or collapsed",
-                found=f"{what} of {smallest.min():.3g}", expected="above 0", do="repair the mesh there",
+                found=f"{what} of {smallest.min():.3g}",
+                expected="above 0",
+                do="repair the mesh there",
             )
 
 

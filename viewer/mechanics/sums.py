@@ -10,7 +10,7 @@ from viewer.mechanics.assembly import ElementGroup, Layout
 from viewer.mechanics.solid import SolidFormulation
 from viewer.model.arrays import Array
 
-_CHUNK = 2**17      # entries of element matrices at a time, 1 MB: they are used once, while the cache holds them
+_CHUNK = 2**17  # entries of element matrices at a time, 1 MB: they are used once, while the cache holds them
 
 
 def cell_energies(layout: Layout, vectors: Array, what: str, progress: Progress = SILENT) -> Array:

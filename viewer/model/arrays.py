@@ -11,19 +11,16 @@ from numpy.typing import ArrayLike, DTypeLike, NDArray
 Array = NDArray[Any]
 
 
-def frozen(values: ArrayLike, dtype: DTypeLike | None = None, *, shape: tuple[int | None, ...] | None = None) -> Array:
+def frozen(
+    values: ArrayLike, dtype: DTypeLike | None = None, *, shape: tuple[int | None, ...] | None = None
+) -> Array:
     """A read-only, contiguous copy of ``values``; ``shape`` (None = any length) is asserted.
 
     An array that is already read-only and owns its data is passed through, so that copies are made once.
     """
     source = np.asarray(values)
     wanted = np.dtype(dtype) if dtype is not None else source.dtype
-    if (
-        source.dtype == wanted
-        and not source.flags.writeable
-        and source.flags.owndata
-        and source.flags.c_contiguous
-    ):
+    if source.dtype == wanted and not source.flags.writeable and source.flags.owndata and source.flags.c_contiguous:
         array = source
     else:
         array = np.array(source, dtype=wanted, order="C", copy=True)

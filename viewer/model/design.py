@@ -119,7 +119,9 @@ class Selector:
 
     def __post_init__(self) -> None:
         for name, dtype, shape in (
-            ("nodes", np.int64, (None,)), ("box", np.float64, (2, 3)), ("near", np.float64, (3,)),
+            ("nodes", np.int64, (None,)),
+            ("box", np.float64, (2, 3)),
+            ("near", np.float64, (3,)),
         ):
             value = getattr(self, name)
             if value is not None:
@@ -246,8 +248,8 @@ class FunctionalPoint:
     where: Selector
     direction: Array
     position: Array | None = None
-    effect: str = ""               # what motion along the direction does: "image blur"
-    direction_word: str = ""       # "sideways"
+    effect: str = ""  # what motion along the direction does: "image blur"
+    direction_word: str = ""  # "sideways"
 
     def __post_init__(self) -> None:
         direction = np.asarray(self.direction, float)
@@ -267,7 +269,7 @@ class Physics:
     masses: tuple[LumpedMass, ...] = ()
     links: tuple[Link, ...] = ()
     ties: tuple[Tie, ...] = ()
-    matrices: GivenMatrices | None = None          # instead of assignments
+    matrices: GivenMatrices | None = None  # instead of assignments
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "materials", frozen_map(self.materials))
@@ -341,7 +343,13 @@ class Design:
         return Property(
             layers[0].material if layers else known[item.material],
             sum(layer.thickness for layer in layers) if layers else item.thickness,
-            item.formulation, item.section, item.orientation, item.offset, item.offset_across, item.direction, layers,
+            item.formulation,
+            item.section,
+            item.orientation,
+            item.offset,
+            item.offset_across,
+            item.direction,
+            layers,
         )
 
     def target_rows(self, target: str) -> Array:

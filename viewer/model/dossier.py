@@ -26,7 +26,7 @@ class StatedAmplitude:
     """
 
     design: str
-    mode: int                      # number from 1
+    mode: int  # number from 1
     value: float
     direction: Array
     point: str = ""
@@ -34,7 +34,7 @@ class StatedAmplitude:
     statistic: str = "peak"
     relative: bool = False
     condition: str = ""
-    place: str = ""                # words for the place when it is not a named point
+    place: str = ""  # words for the place when it is not a named point
 
     def __post_init__(self) -> None:
         direction = np.asarray(self.direction, float)
@@ -47,14 +47,14 @@ class DesignPlan:
 
     name: str
     mesh_file: Path
-    length_unit: float = 1.0               # metres per unit of length in the mesh file
-    modes_file: Path | None = None         # None: solve
+    length_unit: float = 1.0  # metres per unit of length in the mesh file
+    modes_file: Path | None = None  # None: solve
     mode_count: int = 6
     physics: Physics = field(default_factory=Physics)
     points: tuple[FunctionalPoint, ...] = ()
     mode_names: Mapping[int, str] = field(default_factory=dict)
     note: str = ""
-    matrices: MatrixFiles | None = None    # stiffness and mass instead of assignments
+    matrices: MatrixFiles | None = None  # stiffness and mass instead of assignments
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "mode_names", frozen_map(self.mode_names))
@@ -83,7 +83,7 @@ class Dossier:
     plans: tuple[DesignPlan, ...]
     amplitudes: tuple[StatedAmplitude, ...] = ()
     pairs: tuple[ModePair, ...] = ()
-    condition: str = ""                    # words for pictures that state no size: "clamped root, camera 1.2 kg"
+    condition: str = ""  # words for pictures that state no size: "clamped root, camera 1.2 kg"
 
     def plan(self, name: str) -> DesignPlan:
         for plan in self.plans:

@@ -41,12 +41,12 @@ class Mesh:
     A *node row* indexes ``points``. Groups hold rows, external ids stay in ``node_ids`` and the blocks' ``ids``.
     """
 
-    points: Array                                  # (n, 3) float64, m
+    points: Array  # (n, 3) float64, m
     blocks: tuple[CellBlock, ...]
-    node_ids: Array                                # (n,) int64
-    node_groups: Mapping[str, Array] = field(default_factory=dict)   # name -> node rows
-    cell_groups: Mapping[str, Array] = field(default_factory=dict)   # name -> cell rows
-    source: str = ""                               # where it came from, for messages
+    node_ids: Array  # (n,) int64
+    node_groups: Mapping[str, Array] = field(default_factory=dict)  # name -> node rows
+    cell_groups: Mapping[str, Array] = field(default_factory=dict)  # name -> cell rows
+    source: str = ""  # where it came from, for messages
 
     def __post_init__(self) -> None:
         put = lambda name, value: object.__setattr__(self, name, value)  # noqa: E731

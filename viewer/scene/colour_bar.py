@@ -13,11 +13,11 @@ from viewer.scene.primitives import Frame, GradientBar, Line, Polygon, Primitive
 from viewer.scene.tokens import BAR_HEIGHT, BAR_TICK, BAR_TITLE, BAR_WIDTH, THEMES
 from viewer.scene.typeface import wrap
 
-ROOM = 84.0                # height that the bar takes, free space beside the body included
-SIDE = 24.0                # right edge to the arrow tip
+ROOM = 84.0  # height that the bar takes, free space beside the body included
+SIDE = 24.0  # right edge to the arrow tip
 TIP = 10.0
 COMPARED_WIDTH = 200.0
-_TITLE, _BAR, _TICKS = 28.0, 39.0, 68.0        # title baseline, top of the bar, tick baseline
+_TITLE, _BAR, _TICKS = 28.0, 39.0, 68.0  # title baseline, top of the bar, tick baseline
 _CAUTION_LINE = 19.0
 CAUTION_ROOM = 370.0
 _MOST_STEPS = 7

@@ -30,7 +30,7 @@ from viewer.workspace import Study
 # Height ÷ width, so that 960 wide gives multiples of 16 (video needs them).
 SINGLE, OVERLAY = 720 / 960, 640 / 960
 WHOLE = Showing()
-SPRINGS_WORTH_SAYING = 0.005     # share of the strain energy
+SPRINGS_WORTH_SAYING = 0.005  # share of the strain energy
 
 
 def single_picture(
@@ -108,7 +108,7 @@ def pair_picture(
         first.design.mesh, first.modes.shape(indices[0]), second.design.mesh, second.modes.shape(indices[1])
     )
     scales = common_scale(found, masses, [1.0, turn])
-    energy = energy and layout == "side"        # an overlay shows form; two energy fields would hide one another
+    energy = energy and layout == "side"  # an overlay shows form; two energy fields would hide one another
     bodies = tuple(
         _body(study, i, scale, scale.turn, energy) for study, i, scale in zip(studies, indices, scales, strict=True)
     )
@@ -171,7 +171,8 @@ def _sizes(studies: Sequence[Study], indices: Sequence[int]) -> tuple[list[float
 def _index(study: Study, mode: int) -> int:
     if not 1 <= mode <= study.count:
         raise InputError(
-            f"design '{study.design.name}' has no mode {mode}", expected=f"1 to {study.count}",
+            f"design '{study.design.name}' has no mode {mode}",
+            expected=f"1 to {study.count}",
             do="choose another mode, or raise solve in the dossier",
         )
     return mode - 1

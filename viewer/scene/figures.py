@@ -4,8 +4,8 @@ from __future__ import annotations
 
 from math import floor, isfinite, log10
 
-THIN = "\u202f"        # narrow no-break space between groups of three digits
-GAP = "\u00a0"         # no-break space between a figure and its unit
+THIN = "\u202f"  # narrow no-break space between groups of three digits
+GAP = "\u00a0"  # no-break space between a figure and its unit
 
 _LENGTHS = (("pm", 1e-12), ("nm", 1e-9), ("µm", 1e-6), ("mm", 1e-3), ("m", 1.0))
 

@@ -11,7 +11,7 @@ from viewer.model.arrays import Array
 from viewer.scene.primitives import Disc, GradientBar, Line, Polygon, Primitive, Ring
 from viewer.scene.tokens import rgb
 
-_SIDES = 64                # of a circle
+_SIDES = 64  # of a circle
 
 
 def triangulate(items: Iterable[Primitive], least_width: float = 0.0) -> tuple[Array, Array, Array]:
@@ -64,7 +64,7 @@ def line_quads(line: Line, least_width: float = 0.0) -> list[Array]:
     corners = np.asarray(line.points, float)
     closed = len(corners) > 2 and np.allclose(corners[0], corners[-1])
     quads = []
-    run = 0.0                                                  # length along the line so far
+    run = 0.0  # length along the line so far
     for k, (a, b) in enumerate(pairwise(corners)):
         long = float(np.hypot(*(b - a)))
         if long == 0:

@@ -21,13 +21,13 @@ from viewer.scene.surface import Surface, surface_of
 from viewer.scene.tokens import THEMES
 from viewer.scene.typeface import text_width
 
-SIZE, LEADING = 15.0, 20.5       # label text, distance of its lines
-EDGE = 14.0                      # least distance to the frame's edge
-NEAR = 34.0                      # wished distance from the rim of the mark
-CELL = 6                         # px, grain of the map of what the body covers
-_STEP = 6                        # px, grain of the places tried
-_SHORT_LIST = 400               # places whose leaders are looked at
-_PAD = 5.0                       # free border of a label
+SIZE, LEADING = 15.0, 20.5  # label text, distance of its lines
+EDGE = 14.0  # least distance to the frame's edge
+NEAR = 34.0  # wished distance from the rim of the mark
+CELL = 6  # px, grain of the map of what the body covers
+_STEP = 6  # px, grain of the places tried
+_SHORT_LIST = 400  # places whose leaders are looked at
+_PAD = 5.0  # free border of a label
 _LEADER = 1.3
 
 
@@ -108,7 +108,8 @@ def picture_labels(picture: Picture, frame: Frame) -> list[Label]:
     unit = max(b.mesh.diagonal for b in picture.bodies) / frame.metres_per_pixel
     found = [
         Label(
-            ((mark.label, False),), tokens.point,
+            ((mark.label, False),),
+            tokens.point,
             Anchor(index, mark.position, body.factor * mark.motion[:3], (marks.RING + marks.RING_TUBE) * unit),
         )
         for mark in body.points
@@ -281,9 +282,11 @@ def _crossings(start: Array, wish: Wish, covered: Cover, taken: Sequence[Box], l
 
 def _cross(a: Array, b: Array, c: Array, d: Array) -> Array:
     """(n,) whether the segments from a (n, 2) to b cross the one from c to d."""
-    side = lambda p, q, r: (q[..., 0] - p[..., 0]) * (r[..., 1] - p[..., 1]) - (q[..., 1] - p[..., 1]) * (  # noqa: E731
-        r[..., 0] - p[..., 0]
-    )
+
+    def side(p: Array, q: Array, r: Array) -> Array:
+        along, across = q - p, r - p
+        return along[..., 0] * across[..., 1] - along[..., 1] * across[..., 0]
+
     return (side(a, b, c) * side(a, b, d) < 0) & (side(c, d, a) * side(c, d, b) < 0)
 
 
@@ -291,9 +294,7 @@ def _touches(boxes: Array, line: Array) -> Array:
     """(n,) whether a segment (2, 2) runs through boxes (n, 4)."""
     points = line[0] + np.linspace(0, 1, 60)[:, None] * (line[1] - line[0])
     x, y = points[:, 0], points[:, 1]
-    inside = (
-        (x >= boxes[:, :1]) & (x <= boxes[:, 2:3]) & (y >= boxes[:, 1:2]) & (y <= boxes[:, 3:])
-    )
+    inside = (x >= boxes[:, :1]) & (x <= boxes[:, 2:3]) & (y >= boxes[:, 1:2]) & (y <= boxes[:, 3:])
     return inside.any(axis=1)
 
 

@@ -15,8 +15,8 @@ from viewer.scene.tokens import THEMES
 from viewer.scene.typeface import text_width
 
 RADIUS = 74.0
-_SWING = 51.0              # px that the amplitude takes in the disc
-_BESIDE = 14.0             # between the disc and its words
+_SWING = 51.0  # px that the amplitude takes in the disc
+_BESIDE = 14.0  # between the disc and its words
 _NEAR = 230.0
 _TICKS = 8
 _BOLD = 16.0
@@ -30,8 +30,8 @@ class Magnifier:
     centre: Point
     left: bool
     target: Point
-    along: int             # 0: the motion is drawn level, 1: upright
-    sign: float            # +1 when the motion at phase 0 is toward larger x or y on the sheet
+    along: int  # 0: the motion is drawn level, 1: upright
+    sign: float  # +1 when the motion at phase 0 is toward larger x or y on the sheet
 
     def items(self) -> list[Primitive]:
         """All but the dot."""
@@ -51,7 +51,8 @@ class Magnifier:
         at = (x + 15, y - 8) if self.along == 1 else (x, y + 34)
         if self.along == 1:
             items += [
-                Text(*at, f"±{value}", tokens.ink, SIZE, True), Text(at[0], y + 14, unit, tokens.ink, SIZE),
+                Text(*at, f"±{value}", tokens.ink, SIZE, True),
+                Text(at[0], y + 14, unit, tokens.ink, SIZE),
             ]
         else:
             items.append(Text(*at, f"±{value}{GAP}{unit}", tokens.ink, SIZE, True, "middle"))

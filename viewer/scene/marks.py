@@ -17,25 +17,25 @@ from viewer.model.mesh import Mesh
 from viewer.scene.motion import displacement
 from viewer.scene.picture import Body, MassMark, Picture, PointMark
 
-PEG = 0.018                 # edge of a peg's cube
-PEG_STEP = 0.028            # least distance between pegs
-PEG_BITE = 0.2              # share of a peg's edge that lies in the body
-BEAD = 0.036                # radius of the heaviest bead of a picture
+PEG = 0.018  # edge of a peg's cube
+PEG_STEP = 0.028  # least distance between pegs
+PEG_BITE = 0.2  # share of a peg's edge that lies in the body
+BEAD = 0.036  # radius of the heaviest bead of a picture
 LEAST_BEAD = 0.008
-_PROUD = 1.006              # circles stand this much proud of the bead
-LEGS = 5                    # most legs of a bead
+_PROUD = 1.006  # circles stand this much proud of the bead
+LEGS = 5  # most legs of a bead
 LEG_DASH, LEG_GAP = 0.008, 0.006
 RING, RING_TUBE = 0.0145, 0.0024
-ARROW, ARROW_SHAFT = 0.058, 0.0027         # half length tip to tip, radius
+ARROW, ARROW_SHAFT = 0.058, 0.0027  # half length tip to tip, radius
 HEAD, HEAD_RADIUS = 0.022, 0.0095
-LONGEST_ARROW = 2.0         # an arrow seen at a slant is drawn longer, at most so much
-END_ON = 0.3                # share of its length at which an arrow, seen almost end-on, is drawn as ring and dot
+LONGEST_ARROW = 2.0  # an arrow seen at a slant is drawn longer, at most so much
+END_ON = 0.3  # share of its length at which an arrow, seen almost end-on, is drawn as ring and dot
 
-_INNER = 0.2                # "corner" measure below which a held point may be inside a held area
-_ONE_SIDED = 0.6            # share in which the cells around held nodes agree on the side where the body is
-_FEW = 4                    # neighbours that a point inside an area has at least
-_MANY = 4000                # held nodes above which one in each cube of a grid is enough
-_GRAIN = 0.25               # edge of these cubes, in peg steps
+_INNER = 0.2  # "corner" measure below which a held point may be inside a held area
+_ONE_SIDED = 0.6  # share in which the cells around held nodes agree on the side where the body is
+_FEW = 4  # neighbours that a point inside an area has at least
+_MANY = 4000  # held nodes above which one in each cube of a grid is enough
+_GRAIN = 0.25  # edge of these cubes, in peg steps
 _WORLD = np.eye(3)
 
 
@@ -196,14 +196,14 @@ def _surroundings(points: Array, reach: float) -> tuple[Array, Array]:
     pairs = tree.query_pairs(reach, output_type="ndarray")
     a, b = np.concatenate([pairs, pairs[:, ::-1]]).T
     away = points[b] - points[a]
-    count = 1 + np.bincount(a, minlength=n)                            # the point itself is one of those around
+    count = 1 + np.bincount(a, minlength=n)  # the point itself is one of those around
     total = np.stack([np.bincount(a, part, n) for part in away.T], axis=1)
     corner = np.linalg.norm(total / count[:, None], axis=1) / reach
     spreads = np.empty((n, 3, 3))
     for i in range(3):
         for j in range(3):
             spreads[:, i, j] = np.bincount(a, away[:, i] * away[:, j], n)
-    widths = np.sqrt(np.maximum(np.linalg.eigvalsh(spreads), 0.0))     # ascending
+    widths = np.sqrt(np.maximum(np.linalg.eigvalsh(spreads), 0.0))  # ascending
     inner = (corner < _INNER) & (count > _FEW) & (widths[:, 1] > 0.5 * widths[:, 2])
     return corner, inner if not inner.all() else ~inner
 
@@ -250,8 +250,13 @@ def _pegs(places: Sequence[tuple[Array, Array]], size: float) -> Piece:
     points = np.concatenate([centre + corners @ _axes(outward) for centre, outward in places])
     shift = 8 * np.arange(len(places))[:, None, None]
     return Piece(
-        points, np.zeros_like(points), (triangles + shift).reshape(-1, 3), (edges + shift).reshape(-1, 2),
-        "mass", "body_edge", 1.0,
+        points,
+        np.zeros_like(points),
+        (triangles + shift).reshape(-1, 3),
+        (edges + shift).reshape(-1, 2),
+        "mass",
+        "body_edge",
+        1.0,
     )
 
 
@@ -277,7 +282,13 @@ def _bead(body: Body, mark: MassMark, radius: float, diagonal: float) -> list[Pi
     lines = np.concatenate([around + len(flat) * k for k in range(3)]) + len(ball)
     points = np.concatenate([ball, rings])
     bead = Piece(
-        points, _carried(points, centre, motion), triangles, lines, "mass", "body_edge", 1.3,
+        points,
+        _carried(points, centre, motion),
+        triangles,
+        lines,
+        "mass",
+        "body_edge",
+        1.3,
         normals=np.concatenate([unit, (rings - centre) / (_PROUD * radius)]),
     )
     legs = _legs(body, mark, centre, motion, radius, diagonal)

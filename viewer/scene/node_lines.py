@@ -19,12 +19,12 @@ from viewer.scene.motion import is_standing
 from viewer.scene.picture import Body, NodeLines
 from viewer.scene.surface import Surface, cross_of
 
-ACROSS = 0.05              # a sheet that moves less across itself than this share of its motion moves in its plane
-SNAP_DEGREES = 15.0        # a dominant direction this close to an axis is taken along it
-LEAST_SWING = 0.05         # share of the peak that motion reaches on either side of a line: between regions that
-                           # hardly move, signs are those of side effects and of rounding
-STEEPNESS = 0.02           # where motion grows more slowly away from the line than this share of peak ÷ diagonal,
-                           # nobody could tell where the line is
+ACROSS = 0.05  # a sheet that moves less across itself than this share of its motion moves in its plane
+SNAP_DEGREES = 15.0  # a dominant direction this close to an axis is taken along it
+LEAST_SWING = 0.05  # share of the peak that motion reaches on either side of a line: between regions that
+# hardly move, signs are those of side effects and of rounding
+STEEPNESS = 0.02  # where motion grows more slowly away from the line than this share of peak ÷ diagonal,
+# nobody could tell where the line is
 
 
 @dataclass(frozen=True, eq=False)
@@ -99,7 +99,7 @@ def crossings(body: Body, surface: Surface) -> Crossings:
     least = STEEPNESS * peak / body.mesh.diagonal * np.sqrt(2 * surface.areas)
     rows = np.flatnonzero(mixed & swinging & (np.ptp(corner_value, axis=1) >= least))
     corners, corner_value, above = corners[rows], corner_value[rows], above[rows]
-    lone = np.argmax(above == (above.sum(axis=1) == 1)[:, None], axis=1)      # the corner on a side of its own
+    lone = np.argmax(above == (above.sum(axis=1) == 1)[:, None], axis=1)  # the corner on a side of its own
     order = (lone[:, None] + np.arange(3)) % 3
     corners, corner_value = np.take_along_axis(corners, order, 1), np.take_along_axis(corner_value, order, 1)
     share = corner_value[:, :1] / (corner_value[:, :1] - corner_value[:, 1:])

@@ -21,12 +21,12 @@ UNKNOWN = "real size needs a measured point or a service condition"
 
 # LOOK.md's 36, 60 and 83 are the lower edges of the lines, descenders included
 _FIRST, _SECOND, _THIRD = (y - descent(s) for y, s in zip(BASELINES, (TEXT_NAME, TEXT, TEXT), strict=True))
-SIDE = 22                  # left and right edge of the note's text
-SWING = 110                # length of the swing gauge
-FROM_FOOT = 26             # of the gauge above the band's lower edge
-_RAGGED = 16                # least free room to the right of a line
-_CLEAR = 14                # between the last line and the gauge
-_AT_TRUE_SCALE = 1e-9      # a magnification this close to 1 is true scale
+SIDE = 22  # left and right edge of the note's text
+SWING = 110  # length of the swing gauge
+FROM_FOOT = 26  # of the gauge above the band's lower edge
+_RAGGED = 16  # least free room to the right of a line
+_CLEAR = 14  # between the last line and the gauge
+_AT_TRUE_SCALE = 1e-9  # a magnification this close to 1 is true scale
 
 
 # ---- sentences

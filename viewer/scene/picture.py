@@ -111,7 +111,7 @@ class Magnified:
     place: str
     position: Array
     direction: Array
-    amplitude: float               # m, half swing
+    amplitude: float  # m, half swing
 
 
 @dataclass(frozen=True, eq=False)
@@ -133,11 +133,11 @@ class Picture:
 
     bodies: tuple[Body, ...]
     note: Note
-    layout: str = "single"                     # "single", "side", "overlay"
+    layout: str = "single"  # "single", "side", "overlay"
     magnification: float | None = None
     energy_top: float | None = None
     energy_words: str = "strain energy density ÷ mean"
-    energy_caution: str = ""                   # one short line under the bar when energies are not trusted
+    energy_caution: str = ""  # one short line under the bar when energies are not trusted
     magnified: Magnified | None = None
     view: View = View()
     theme: str = "light"

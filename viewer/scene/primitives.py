@@ -16,7 +16,7 @@ from viewer.scene.tokens import BASE_WIDTH
 from viewer.scene.typeface import ascent, descent, text_width
 
 Point = tuple[float, float]
-Box = tuple[float, float, float, float]            # left, top, right, bottom
+Box = tuple[float, float, float, float]  # left, top, right, bottom
 
 
 @dataclass(frozen=True)
@@ -51,7 +51,7 @@ class Line:
     @property
     def box(self) -> Box:
         left, top, right, foot = bounds(self.points)
-        if len(self.points) > 2:                                     # corners may reach over on any side
+        if len(self.points) > 2:  # corners may reach over on any side
             return grown((left, top, right, foot), self.width / 2)
         long = max(np.hypot(right - left, foot - top), 1e-300)
         x, y = self.width / 2 * (foot - top) / long, self.width / 2 * (right - left) / long

@@ -10,11 +10,11 @@ from viewer.scene.picture import Picture
 from viewer.scene.primitives import Frame, Line, Polygon, Primitive, Text
 from viewer.scene.tokens import TEXT_SMALL, THEMES
 
-LEFT, MIDDLE = 22.0, 37.5          # of the bar, sheet pixels
+LEFT, MIDDLE = 22.0, 37.5  # of the bar, sheet pixels
 THICK = 5.0
-LONGEST = 130.0                    # px that the bar may take
+LONGEST = 130.0  # px that the bar may take
 _FIELDS = 5
-_LINES = (32.0, 50.0)              # baselines
+_LINES = (32.0, 50.0)  # baselines
 
 
 def round_length(longest: float) -> float:
@@ -40,8 +40,7 @@ def ruler_items(picture: Picture, frame: Frame) -> list[Primitive]:
         said.append((f"{motion} of motion", tokens.ink))
     baselines = _LINES if len(said) == 2 else (MIDDLE + 5,)
     return items + [
-        Text(right + 10, y, words, colour, TEXT_SMALL)
-        for y, (words, colour) in zip(baselines, said, strict=True)
+        Text(right + 10, y, words, colour, TEXT_SMALL) for y, (words, colour) in zip(baselines, said, strict=True)
     ]
 
 

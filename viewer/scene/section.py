@@ -18,7 +18,7 @@ from viewer.errors import InputError
 from viewer.model.arrays import Array
 from viewer.scene.figures import digits, length
 
-_SNAP = 1e-7               # share of the diagonal within which a node counts as lying in the plane
+_SNAP = 1e-7  # share of the diagonal within which a node counts as lying in the plane
 _MINUS = str.maketrans("-", "−")
 
 
@@ -34,7 +34,8 @@ class Plane:
         size = float(np.linalg.norm(normal)) if normal.shape == (3,) else 0.0
         if not (np.isfinite(size) and size > 0 and np.isfinite(self.offset)):
             raise InputError(
-                "this is no plane", found=f"normal {self.normal}, offset {self.offset}",
+                "this is no plane",
+                found=f"normal {self.normal}, offset {self.offset}",
                 expected="a normal of three numbers that is not zero, and an offset in metres",
             )
         x, y, z = (float(c) for c in normal / size)
@@ -46,7 +47,7 @@ class Plane:
         """ "cut at x = 120 mm" """
         normal = np.array(self.normal)
         axis = int(np.argmax(np.abs(normal)))
-        offset = self.offset if abs(self.offset) > 1e-12 else 0.0          # rounding is no place
+        offset = self.offset if abs(self.offset) > 1e-12 else 0.0  # rounding is no place
         if abs(abs(normal[axis]) - 1) < 1e-12:
             at = length(offset * np.sign(normal[axis]), 6, trim=True)
             return f"cut at {'xyz'[axis]} = {at}".translate(_MINUS)
@@ -193,9 +194,7 @@ def _joined(pairs: Array, part: _Shortened, ids: Array) -> Array:
     return np.concatenate([pairs[part.whole], np.stack([part.low, ids[part.new]], axis=1)])
 
 
-def _segments(
-    kind: str, nodes: Array, rows: Array, below: Array, points: _NewPoints
-) -> tuple[Array, slice, slice]:
+def _segments(kind: str, nodes: Array, rows: Array, below: Array, points: _NewPoints) -> tuple[Array, slice, slice]:
     """Where the plane crosses the outlines of the faces of solid cells: cell row of each piece, its start and end,
     with the cut face on its left as seen from above the plane."""
     low = below[nodes]
@@ -224,7 +223,7 @@ def _caps(rim: Sequence[tuple[Array, Array, Array]]) -> tuple[Array, Array, Arra
     corner of each cell's outline, which is convex as long as the cell is."""
     none = np.empty(0, np.int64)
     cell, start, end = (np.concatenate([none, *parts]) for parts in (zip(*rim, strict=True) if rim else ((),) * 3))
-    long = start != end                                                # not where a face only touches the plane
+    long = start != end  # not where a face only touches the plane
     order = np.argsort(cell[long], kind="stable")
     cell, start, end = cell[long][order], start[long][order], end[long][order]
     first = np.flatnonzero(np.diff(cell, prepend=-1))

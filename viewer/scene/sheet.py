@@ -33,8 +33,21 @@ from viewer.scene.surface import Surface
 from viewer.scene.title_keys import title_key_items
 
 __all__ = [
-    "Box", "Disc", "Frame", "GradientBar", "Line", "Polygon", "Primitive", "Ring", "Sheet", "SheetPlan", "Text",
-    "compose_sheet", "note_height", "plan_sheet", "sheet_size",
+    "Box",
+    "Disc",
+    "Frame",
+    "GradientBar",
+    "Line",
+    "Polygon",
+    "Primitive",
+    "Ring",
+    "Sheet",
+    "SheetPlan",
+    "Text",
+    "compose_sheet",
+    "note_height",
+    "plan_sheet",
+    "sheet_size",
 ]
 
 

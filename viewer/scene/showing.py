@@ -72,12 +72,15 @@ class Showing:
             alive &= heights <= 0
             ids = np.concatenate([mesh.node_ids, np.full(len(cut.share), -1)])
             shown = replace(
-                body, mesh=mesh.with_(points=cut.extended(mesh.points), node_ids=ids),
-                shape=cut.extended(body.shape), skin=cut.skin,
+                body,
+                mesh=mesh.with_(points=cut.extended(mesh.points), node_ids=ids),
+                shape=cut.extended(body.shape),
+                skin=cut.skin,
             )
         if not len(shown.drawn.faces) and not len(shown.drawn.edges):
             raise InputError(
-                f"nothing of '{body.name}' is left to draw", found=", ".join(self.words),
+                f"nothing of '{body.name}' is left to draw",
+                found=", ".join(self.words),
                 do="hide fewer groups, or move the cut",
             )
         return _marked(shown, alive)
@@ -91,7 +94,8 @@ def _check_crossing(plane: section.Plane, bodies: Sequence[Body]) -> None:
     if not any(low < plane.offset < high for low, high in reaches):
         low, high = min(low for low, _ in reaches), max(high for _, high in reaches)
         raise InputError(
-            "the cut misses the body", found=plane.words,
+            "the cut misses the body",
+            found=plane.words,
             expected=f"a place between {length(low, 4)} and {length(high, 4)}",
         )
 

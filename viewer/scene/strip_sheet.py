@@ -24,16 +24,16 @@ from viewer.scene.typeface import wrap
 
 TYPE = 1.5
 WIDTH, HEIGHT = 1600, 500
-ROW, LEAST_ROW = 262.0, 222.0       # height of a row of bodies; less, when that keeps the strip 500 high
-LEAST_COMPARED, _BESIDE = 110.0, 32.0     # the same of compared bodies, as high as they need; free beside a body
-_WORD, _GAUGE, _RULE = 35.0, 58.0, 88.0       # baseline, line and rule below the last row
-_FIRST, _SECOND, _STEP = 44.0, 86.0, 38.0     # baselines below the rule, distance of further lines
-_FOOT = 26.0                       # below the last baseline
-_KEY, _KEY_LINE = 33.0, 42.0        # baseline and height of a title key
+ROW, LEAST_ROW = 262.0, 222.0  # height of a row of bodies; less, when that keeps the strip 500 high
+LEAST_COMPARED, _BESIDE = 110.0, 32.0  # the same of compared bodies, as high as they need; free beside a body
+_WORD, _GAUGE, _RULE = 35.0, 58.0, 88.0  # baseline, line and rule below the last row
+_FIRST, _SECOND, _STEP = 44.0, 86.0, 38.0  # baselines below the rule, distance of further lines
+_FOOT = 26.0  # below the last baseline
+_KEY, _KEY_LINE = 33.0, 42.0  # baseline and height of a title key
 _SIDE = 22.0
 _BAR_ROOM = 400.0
 _SWING = 164.0
-_UPRIGHT = 0.9                     # share of the largest motion along "up" that earns "up" and "down"
+_UPRIGHT = 0.9  # share of the largest motion along "up" that earns "up" and "down"
 GHOST_WORDS = "dashed: undeformed"
 
 
@@ -96,8 +96,13 @@ def strip_phases(picture: Picture) -> tuple[tuple[float, ...], tuple[str, ...]]:
     if all(is_standing(body.shape) for body in picture.bodies):
         one, other = _ways(picture)
         phases = tuple(float(np.arccos(share)) for share in (-1.0, -0.5, 0.0, 0.5, 1.0))
-        return phases, (f"full {one}", "half" if " " in one else f"half {one}", "rest",
-                        "half" if " " in one else f"half {other}", f"full {other}")
+        return phases, (
+            f"full {one}",
+            "half" if " " in one else f"half {one}",
+            "rest",
+            "half" if " " in one else f"half {other}",
+            f"full {other}",
+        )
     return tuple(float(k * np.pi / 4) for k in range(5)), ("start", "⅛ cycle", "¼ cycle", "⅜ cycle", "½ cycle")
 
 
@@ -131,7 +136,14 @@ def _note(picture: Picture, rule: float, items: list[Primitive]) -> float:
             y += _STEP
     if picture.energy_top is not None:
         items += colour_bar_items(
-            picture.energy_words, picture.energy_top, picture.energy_caution, "light",
-            WIDTH - 28.0, rule + 20.0, BAR_WIDTH * TYPE, TYPE, caution_room=BAR_WIDTH * TYPE,
+            picture.energy_words,
+            picture.energy_top,
+            picture.energy_caution,
+            "light",
+            WIDTH - 28.0,
+            rule + 20.0,
+            BAR_WIDTH * TYPE,
+            TYPE,
+            caution_room=BAR_WIDTH * TYPE,
         )
     return y - _STEP + _FOOT - rule

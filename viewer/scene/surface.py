@@ -150,7 +150,7 @@ def build(points: Array, found: Skin, rank: Array) -> Surface:
     turn = np.einsum("ij,ij->i", normals[a], normals[b])
     product = length[a] * length[b]
     feature[two] = (turn < np.cos(np.radians(CREASE_DEGREES)) * product) & (product > 0)
-    torn = (direction[two, 0] == direction[two, 1]) ^ flip[a] ^ flip[b]   # one-sided surfaces cannot be wound
+    torn = (direction[two, 0] == direction[two, 1]) ^ flip[a] ^ flip[b]  # one-sided surfaces cannot be wound
     feature[two[torn]] = True
 
     corners, vertex = _patches(tri, pairs[~feature], beside[~feature])
@@ -203,7 +203,7 @@ def _among(pairs: Array, others: Array, n: int) -> Array:
     if not len(others):
         return np.zeros(len(pairs), bool)
     key = np.sort(others.min(axis=1).astype(np.int64) * n + others.max(axis=1))
-    wanted = pairs[:, 0] * n + pairs[:, 1]                 # lower node first, as adjacency gives them
+    wanted = pairs[:, 0] * n + pairs[:, 1]  # lower node first, as adjacency gives them
     return key[np.minimum(np.searchsorted(key, wanted), len(key) - 1)] == wanted
 
 
@@ -242,7 +242,7 @@ def _patches(tri: Array, pairs: Array, beside: Array) -> tuple[Array, Array]:
     count, label = connected_components(graph, directed=False)
     node_of = np.empty(count, np.int64)
     node_of[label] = tri.ravel()
-    order = np.argsort(node_of, kind="stable")          # vertices ordered by node: memory is read in order
+    order = np.argsort(node_of, kind="stable")  # vertices ordered by node: memory is read in order
     rank = np.empty(count, np.int64)
     rank[order] = np.arange(count)
     return rank[label].reshape(t, 3).astype(np.int32), node_of[order].astype(np.int32)

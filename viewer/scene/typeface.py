@@ -10,7 +10,7 @@ from PIL import ImageFont
 
 from viewer.errors import ExportError
 
-_EM = 2048         # px at which the face is measured: its own units per em, so that hinting does not round
+_EM = 2048  # px at which the face is measured: its own units per em, so that hinting does not round
 
 
 @lru_cache(maxsize=2)

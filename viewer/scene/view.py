@@ -13,12 +13,12 @@ from viewer.scene.motion import swing
 from viewer.scene.picture import Picture, View
 from viewer.scene.primitives import Box, Frame, sheet_size
 
-Drawn = list[tuple[Array, Array]]      # points and drawn amplitudes, both (n, 3) m
+Drawn = list[tuple[Array, Array]]  # points and drawn amplitudes, both (n, 3) m
 
-WIDE = 3.0                     # a body wider than this on the screen is compared stacked, not left and right
-KEY_TOP = 60                   # left and right: the title key's height
-LEAST_BODY = 130               # side by side: least height kept for a body and its labels
-LOWEST, TALLEST = 384, 720     # side by side: the picture's height
+WIDE = 3.0  # a body wider than this on the screen is compared stacked, not left and right
+KEY_TOP = 60  # left and right: the title key's height
+LEAST_BODY = 130  # side by side: least height kept for a body and its labels
+LOWEST, TALLEST = 384, 720  # side by side: the picture's height
 
 
 @dataclass(frozen=True, eq=False)
@@ -130,7 +130,7 @@ def fit(
     room = np.maximum([x1 - x0 - 2 * tokens.MARGIN, y1 - y0 - top - bottom], 1.0)
     scale = float(np.max(size / room))
     middle = (low + high) / 2
-    middle[1] += (top - bottom) / 2 * scale            # the body sits in the middle of what is left free
+    middle[1] += (top - bottom) / 2 * scale  # the body sits in the middle of what is left free
     depth = float(eye @ _space_box(drawn).mean(axis=0))
     focus = middle[0] * right + middle[1] * up + depth * eye
     return Camera(focus, right, up, eye, scale), boxes

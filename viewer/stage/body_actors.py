@@ -19,12 +19,12 @@ from viewer.scene.tokens import THEMES, rgb
 from viewer.scene.view import Camera
 from viewer.stage.segments import Segments
 
-LIFT = 1.5                     # px: lines stand this far before the surface, so that they do not sink into it
-GHOST_LIFT = 0.5               # px: less, so that the contour wins where body and ghost coincide
-CASED_LIFT = (2.0, 2.5)        # px: casing and core of node lines
-DASHED_LIFT = 3.0              # px: more, so that the compared contour wins where both designs coincide
+LIFT = 1.5  # px: lines stand this far before the surface, so that they do not sink into it
+GHOST_LIFT = 0.5  # px: less, so that the contour wins where body and ghost coincide
+CASED_LIFT = (2.0, 2.5)  # px: casing and core of node lines
+DASHED_LIFT = 3.0  # px: more, so that the compared contour wins where both designs coincide
 
-_SAME_PLACE = 1e-6      # of the diagonal: edges this near to one another are one edge of the ghost
+_SAME_PLACE = 1e-6  # of the diagonal: edges this near to one another are one edge of the ghost
 
 
 class Motion:
@@ -134,10 +134,14 @@ class BodyActors:
             self._ghost = Segments(renderer, theme.ghost, scale * thick, origin)
         self._ghost_eye = np.zeros(3)
         self._still = crossings(body, surface)
-        self._still_lines = tuple(
-            Segments(renderer, colour, scale * width, origin)
-            for colour, width in ((theme.halo, tokens.NODE_CASING), (theme.ink, tokens.NODE_LINE))
-        ) if len(self._still.nodes) else ()
+        self._still_lines = (
+            tuple(
+                Segments(renderer, colour, scale * width, origin)
+                for colour, width in ((theme.halo, tokens.NODE_CASING), (theme.ink, tokens.NODE_LINE))
+            )
+            if len(self._still.nodes)
+            else ()
+        )
 
     def draw(self, phase: float, camera: Camera) -> None:
         """Go to ``phase``; contour, and the ghost when the camera has turned, are chosen for ``camera``."""

@@ -7,8 +7,8 @@ from vtkmodules.vtkRenderingCore import vtkTextProperty
 
 from viewer.scene.typeface import font_file
 
-DPI = 72                   # at which a font size in points is one in pixels
-_DESCENDER = 483 / 2048    # of DejaVu Sans, in em: VTK's lower edge of a line lies this far below the baseline
+DPI = 72  # at which a font size in points is one in pixels
+_DESCENDER = 483 / 2048  # of DejaVu Sans, in em: VTK's lower edge of a line lies this far below the baseline
 
 
 def set_face(paint: vtkTextProperty, size: float, bold: bool) -> int:

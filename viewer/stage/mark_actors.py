@@ -14,7 +14,7 @@ from viewer.model.arrays import Array
 from viewer.scene.marks import Piece
 from viewer.scene.tokens import THEMES, rgb
 
-_LIFT = 1.5                # depth units and slope factor by which lines stand before their faces
+_LIFT = 1.5  # depth units and slope factor by which lines stand before their faces
 
 
 class MarkActors:
@@ -45,7 +45,7 @@ class MarkActors:
 class _PieceActors:
     def __init__(self, renderer: vtkRenderer, piece: Piece, theme: str, scale: float) -> None:
         self._renderer, self._piece = renderer, piece
-        self._origin = piece.points.mean(axis=0)           # far-off coordinates keep their digits in float32
+        self._origin = piece.points.mean(axis=0)  # far-off coordinates keep their digits in float32
         self._points = vtkPoints()
         self._points.SetData(numpy_to_vtk(self._places(0.0), deep=True))
         self._actors: list[vtkActor] = []

@@ -18,9 +18,7 @@ class Segments:
     width    real pixels of the render window; origin (3,) m: what the given ends are relative to
     """
 
-    def __init__(
-        self, renderer: vtkRenderer, colour: str, width: float, origin: Array, opacity: float = 1.0
-    ) -> None:
+    def __init__(self, renderer: vtkRenderer, colour: str, width: float, origin: Array, opacity: float = 1.0) -> None:
         self._data = vtkPolyData()
         mapper = vtkPolyDataMapper()
         mapper.SetInputData(self._data)

@@ -64,8 +64,11 @@ class SheetActors:
             paint = actor.GetTextProperty()
             below = set_face(paint, text.size * scale, text.bold)
             paint.SetColor(*rgb(text.colour))
-            {"left": paint.SetJustificationToLeft, "middle": paint.SetJustificationToCentered,
-             "right": paint.SetJustificationToRight}[text.anchor]()
+            {
+                "left": paint.SetJustificationToLeft,
+                "middle": paint.SetJustificationToCentered,
+                "right": paint.SetJustificationToRight,
+            }[text.anchor]()
             actor.GetPositionCoordinate().SetValue(round(text.x * scale), height - round(text.y * scale) - below)
 
 

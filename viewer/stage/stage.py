@@ -152,7 +152,7 @@ class Stage:
         self._faced = camera.toward_eye
 
     def _mark_actors(self, pieces: Sequence[Sequence[Piece]]) -> list[MarkActors]:
-        shown = pieces[1:] if self._overlaid else pieces         # in an overlay, those of the body in front
+        shown = pieces[1:] if self._overlaid else pieces  # in an overlay, those of the body in front
         return [
             MarkActors(pane, over, of_body, self.picture.theme, self._scale)
             for pane, over, of_body in zip(self._panes, self._over, shown, strict=True)

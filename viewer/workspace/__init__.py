@@ -6,5 +6,11 @@ from viewer.workspace.study import Study, study
 from viewer.workspace.workspace import OpenDossier, Workspace
 
 __all__ = [
-    "BetterFormulation", "Cache", "OpenDossier", "Study", "Workspace", "better_formulation", "study",
+    "BetterFormulation",
+    "Cache",
+    "OpenDossier",
+    "Study",
+    "Workspace",
+    "better_formulation",
+    "study",
 ]

@@ -15,7 +15,7 @@ from viewer.mechanics.formulations import FORMULATIONS
 from viewer.model.design import Design
 from viewer.workspace.study import Study
 
-WORTH_SAYING = 1e-3     # of closure: a smaller gain is the difference of two programs' quadrature, not of elements
+WORTH_SAYING = 1e-3  # of closure: a smaller gain is the difference of two programs' quadrature, not of elements
 
 
 @dataclass(frozen=True)
@@ -44,9 +44,13 @@ class BetterFormulation:
 
     def to_dict(self) -> dict[str, Any]:
         return {
-            "design": self.design, "formulations": dict(self.names), "closure_error": self.error,
-            "used_formulations": list(self.used), "used_closure_error": self.used_error,
-            "choose": dict(self.choose), "sentence": self.sentence,
+            "design": self.design,
+            "formulations": dict(self.names),
+            "closure_error": self.error,
+            "used_formulations": list(self.used),
+            "used_closure_error": self.used_error,
+            "choose": dict(self.choose),
+            "sentence": self.sentence,
         }
 
 
@@ -70,9 +74,7 @@ def better_formulation(study: Study, progress: Progress = SILENT) -> BetterFormu
     if not names or best.error > used_error - WORTH_SAYING:
         return None
     choose = {kind: _how(study.design, kind, name, kinds) for kind, name in names.items()}
-    return BetterFormulation(
-        study.design.name, names, found.formulations, best.error, used_error, choose
-    )
+    return BetterFormulation(study.design.name, names, found.formulations, best.error, used_error, choose)
 
 
 def _how(design: Design, kind: str, name: str, used: set[str]) -> str:
@@ -84,7 +86,9 @@ def _how(design: Design, kind: str, name: str, used: set[str]) -> str:
         if kind in here:
             targets.append(f"'{item.target}'")
             mixed = mixed or len(here) > 1
-    where = f'in an assignment of {kind} cells alone (target = "{kind}")' if mixed else (
-        f"in the assignment{'s' * (len(targets) > 1)} to {', '.join(targets)}"
+    where = (
+        f'in an assignment of {kind} cells alone (target = "{kind}")'
+        if mixed
+        else (f"in the assignment{'s' * (len(targets) > 1)} to {', '.join(targets)}")
     )
     return f'write formulation = "{name}" {where}'

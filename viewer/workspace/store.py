@@ -12,7 +12,7 @@ import platformdirs
 from viewer.jobs import atomic_path
 from viewer.model.modes import ArrayShapes, ModeSet
 
-SIZE_CAP = 4 * 2**30   # bytes kept at most; the least recently used go first
+SIZE_CAP = 4 * 2**30  # bytes kept at most; the least recently used go first
 
 
 class Cache:
@@ -32,7 +32,7 @@ class Cache:
             return None
         try:
             modes = read_modes_npz(path)
-            path.touch()   # the time of last use decides what is dropped first
+            path.touch()  # the time of last use decides what is dropped first
         except (OSError, ValueError, KeyError, zipfile.BadZipFile, EOFError):
             path.unlink(missing_ok=True)
             return None
@@ -40,9 +40,7 @@ class Cache:
 
     def trim(self) -> None:
         """Drop the least recently used entries until the folder is within its cap."""
-        entries = sorted(
-            ((p.stat().st_mtime, p.stat().st_size, p) for p in self.folder.glob("*.npz")), reverse=True
-        )
+        entries = sorted(((p.stat().st_mtime, p.stat().st_size, p) for p in self.folder.glob("*.npz")), reverse=True)
         kept = 0
         for _, size, path in entries:
             kept += size

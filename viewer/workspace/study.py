@@ -144,6 +144,6 @@ def study(
             found = energies(design, modes, progress=progress)
         except ModelError as error:
             if modes.origin == "computed":
-                raise   # it was solved a moment ago: this would be our own fault
+                raise  # it was solved a moment ago: this would be our own fault
             why = str(error)
     return Study(design, modes, found, why, amplitudes or {}, condition, whole)

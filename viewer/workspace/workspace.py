@@ -124,7 +124,7 @@ class OpenDossier:
         modes = self.modes(name, count, progress)
         amplitudes = self._amplitudes(name, modes)
         found = study(design, modes, amplitudes, self.dossier.condition, progress, energy=energy)
-        for number in found.amplitudes:      # a stated amplitude that cannot be used is said before anything is drawn
+        for number in found.amplitudes:  # a stated amplitude that cannot be used is said before anything is drawn
             try:
                 found.scale(number - 1)
             except RefusedError as error:
