@@ -35,10 +35,10 @@ def modes(
     cautions: list[str] = list(opened.warnings)
     better: list[dict[str, object]] = []
     with progress_bar() as progress:
-        for name in design or opened.names:
-            study = opened.study(name, count, progress)
+        for each in design or opened.names:
+            study = opened.study(each, count, progress)
             rows += mode_rows(study)
-            cautions += [*opened.doubts(name), *study.cautions]
+            cautions += [*opened.doubts(each), *study.cautions]
             if as_json and (advice := better_formulation(study, progress)) is not None:
                 better.append(advice.to_dict())
     if out is not None:
