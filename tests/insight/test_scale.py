@@ -98,6 +98,12 @@ def test_common_scale_unknown_takes_equal_modal_mass(design):
     assert second.turn == pytest.approx(-first.turn)
 
 
+def test_a_group_of_the_whole_body_is_no_place(design):
+    mesh = design.mesh.with_(cell_groups={"plate": np.arange(design.mesh.n_cells)}, node_groups={})
+    scale = scale_mode(design.with_(mesh=mesh, points=()), parabola(design), 1)
+    assert scale.largest_place == f"node {mesh.node_ids[scale.largest_row]}"
+
+
 def test_cycle_peak_of_a_complex_shape_against_sampling():
     rng = np.random.default_rng(3)
     shape = rng.normal(size=(50, 3)) + 1j * rng.normal(size=(50, 3))

@@ -24,6 +24,7 @@ DRAWN_PEAK = 0.08  # drawn peak ÷ diagonal of the body (DESIGN §7 rule 5)
 DRAWN_TURN = np.radians(12.0)  # no region turns more than this as drawn (same rule)
 TURN_SHARE = 0.005  # share of the body that may turn further: a single distorted cell is no region
 _SMALL_GROUP = 0.05  # share of the nodes up to which a group's name says enough about where
+_WHOLE_BODY = 0.95  # share of the nodes above which a group's name says nothing about where
 LEAST_MOTION = 0.05  # a stated point must move at least this share of the peak (DESIGN §6)
 
 
@@ -271,6 +272,7 @@ def _place_words(design: Design, row: int) -> str:
         nodes = mesh.nodes_of_cells(cells)
         if row in nodes:
             holders[name] = nodes
+    holders = {name: rows for name, rows in holders.items() if len(rows) <= _WHOLE_BODY * len(mesh.used_nodes)}
     if not holders:
         return words
     name = min(holders, key=lambda name: len(holders[name]))
