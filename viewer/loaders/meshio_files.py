@@ -21,7 +21,7 @@ from viewer.errors import LoadError
 from viewer.jobs import SILENT, Progress
 from viewer.loaders.file_shapes import Stretch
 from viewer.loaders.raw_data import RawBlock, RawMesh, RawModes
-from viewer.loaders.vtk_arrays import mesh_of, modes_of
+from viewer.loaders.vtk_arrays import mesh_of, modes_of, shaped
 from viewer.loaders.vtu_xml import DataArray
 from viewer.loaders.worker_client import shared_worker
 from viewer.model.arrays import Array
@@ -70,14 +70,7 @@ class _Answer:
 
     def read(self, array: DataArray, tuples: int) -> Array:
         values = self._values[array.section, array.name]
-        if values.size != tuples * array.components:
-            raise self.error(
-                "an array has a wrong length",
-                place=f"{array.section}, array '{array.name}'",
-                found=str(values.size),
-                expected=str(tuples * array.components),
-            )
-        return values.reshape(tuples) if array.components == 1 else values.reshape(tuples, array.components)
+        return shaped(values, array, tuples, self.error)
 
     def stretch(self, array: DataArray, tuples: int) -> Stretch | None:
         return None

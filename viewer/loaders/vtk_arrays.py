@@ -5,7 +5,7 @@ The names stand in :mod:`viewer.loaders.vtu_files`.
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Callable, Iterator, Mapping
 from pathlib import Path
 from typing import Protocol
 
@@ -52,6 +52,18 @@ class VtkArrays(Protocol):
 
     def error(self, problem: str, **parts: str) -> LoadError:
         """An error about this file."""
+
+
+def shaped(values: Array, array: DataArray, tuples: int, error: Callable[..., LoadError]) -> Array:
+    """``values`` as (tuples,) or (tuples, components), as ``array`` declares; ``error`` makes what is raised."""
+    if values.size != tuples * array.components:
+        raise error(
+            "an array has a wrong length",
+            place=f"{array.section}, array '{array.name}'",
+            found=str(values.size),
+            expected=str(tuples * array.components),
+        )
+    return values.reshape(tuples) if array.components == 1 else values.reshape(tuples, array.components)
 
 
 def mesh_of(file: VtkArrays, progress: Progress = SILENT) -> RawMesh:

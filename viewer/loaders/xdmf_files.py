@@ -22,7 +22,7 @@ from viewer.loaders.csv_tables import frequency_table
 from viewer.loaders.file_shapes import FileShapes, Stretch, stamp_of
 from viewer.loaders.raw_data import RawMesh, RawModes
 from viewer.loaders.step_modes import shape_names, step_frequencies
-from viewer.loaders.vtk_arrays import mesh_of, modes_of
+from viewer.loaders.vtk_arrays import mesh_of, modes_of, shaped
 from viewer.loaders.vtu_xml import DataArray
 from viewer.loaders.xdmf_cells import cells_of
 from viewer.loaders.xdmf_items import Document, Item
@@ -125,14 +125,7 @@ class _Grid:
     def read(self, array: DataArray, tuples: int) -> Array:
         values = self._values[array.section, array.name]
         values = values.read() if isinstance(values, Item) else values
-        if values.size != tuples * array.components:
-            raise self.error(
-                "an array has a wrong length",
-                place=f"{array.section}, array '{array.name}'",
-                found=str(values.size),
-                expected=str(tuples * array.components),
-            )
-        return values.reshape(tuples) if array.components == 1 else values.reshape(tuples, array.components)
+        return shaped(values, array, tuples, self.error)
 
     def stretch(self, array: DataArray, tuples: int) -> Stretch | None:
         return None  # the bytes lie in another file
