@@ -119,6 +119,14 @@ class Run:
                     continue  # it has just ended
         return found
 
+    def left_over(self, patience: float = 20) -> dict[int, str]:
+        """``group`` once it is empty, or what still runs after ``patience`` s: a process that is on its way out, its
+        memory already given back, may be seen for a moment after its parent has ended."""
+        end = time.monotonic() + patience
+        while (found := self.group) and time.monotonic() < end:
+            time.sleep(0.05)
+        return found
+
     def wait_until(self, ready: Callable[[], bool], seconds: float = 120) -> None:
         end = time.monotonic() + seconds
         while not ready():

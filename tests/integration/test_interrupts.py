@@ -33,7 +33,7 @@ def stopped_cleanly(run: Run, *folders: Path) -> None:
     assert "Traceback" not in out + errors
     assert len(errors.strip().splitlines()) == 1
     assert "stopped" in errors
-    assert run.group == {}, "no process is left"
+    assert run.left_over() == {}, "no process is left"
     for folder in folders:
         assert not folder.exists() or parts(folder) == []
 
