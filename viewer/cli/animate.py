@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import re
 from pathlib import Path
 from typing import Annotated, Any, Literal
@@ -109,7 +110,7 @@ def animate(
         if strip:
             save_strip(picture, target, progress)
         elif suffix == ".png":
-            save_png(picture, target, phase * 3.141592653589793 / 180, progress)
+            save_png(picture, target, math.radians(phase), progress)
         else:
             (save_mp4 if suffix == ".mp4" else save_gif)(picture, target, progress)
     if as_json:

@@ -54,9 +54,10 @@ def modes(
 def _save_name(dossier: Path, order: str) -> None:
     """Carry out one ``--name``; the dossier keeps its comments and layout."""
     from viewer.loaders import save_mode_name
+    from viewer.workspace.workspace import dossier_file
 
     where, equals, words = order.partition("=")
     design, _, number = where.rpartition(":")
     if not (equals and design and number.isdigit()):
         raise typer.BadParameter(f"'{order}' is not DESIGN:NUMBER=words", param_hint="--name")
-    save_mode_name(dossier / "dossier.toml" if dossier.is_dir() else dossier, design, int(number), words.strip())
+    save_mode_name(dossier_file(dossier), design, int(number), words.strip())

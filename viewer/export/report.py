@@ -240,7 +240,10 @@ def _slugs(names: tuple[str, ...]) -> dict[str, str]:
     found: dict[str, str] = {}
     for number, name in enumerate(names, 1):
         slug = re.sub(r"[^A-Za-z0-9]+", "-", name).strip("-").lower() or f"design-{number}"
-        found[name] = f"{slug}-{number}" if slug in found.values() else slug
+        stem = slug
+        while stem in found.values():  # a numbered stem may itself be the plain one of another design
+            stem, number = f"{slug}-{number}", number + 1
+        found[name] = stem
     return found
 
 

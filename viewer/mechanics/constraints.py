@@ -42,11 +42,6 @@ class Attachment:
         motion = self.operator @ vectors[:, self.dofs].T
         return 0.5 * np.real(np.sum(np.conj(motion) * (self.core @ motion), axis=0))
 
-    def apply(self, vectors: Array, out: Array) -> None:
-        """Add (matrix) v of the vectors (k, n_dof) to ``out`` (k, n_dof)."""
-        motion = self.core @ (self.operator @ vectors[:, self.dofs].T)
-        out[:, self.dofs] += (self.operator.T @ motion).T  # dofs of an attachment never repeat
-
 
 def some_ids(ids: Array, limit: int = 5) -> str:
     """ "3, 4, 5 and 12 more" for messages."""

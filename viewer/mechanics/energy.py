@@ -102,10 +102,6 @@ class Energies:
         volume or the cells hold no energy."""
         return _relative_density(self.strain[j], self.volumes)
 
-    def kinetic_density(self, j: int) -> Array:
-        """(n_cells,) the same of the kinetic energy."""
-        return _relative_density(self.kinetic[j], self.volumes)
-
     def spring_share(self, j: int) -> float:
         """Share of the strain energy that springs hold: no picture of densities shows it."""
         return _share(self.springs[j].sum(), self.total_strain[j])

@@ -33,7 +33,7 @@ class Workspace:
 
     def open(self, path: str | Path) -> OpenDossier:
         """Read and check ``dossier.toml`` (or a folder that holds one); meshes stay on disk until asked for."""
-        dossier, warnings = read_dossier_report(_dossier_file(path))
+        dossier, warnings = read_dossier_report(dossier_file(path))
         return OpenDossier(self, dossier, warnings)
 
     def design(self, dossier: Dossier, name: str, progress: Progress = SILENT) -> Design:
@@ -154,7 +154,8 @@ class OpenDossier:
         return found
 
 
-def _dossier_file(path: str | Path) -> Path:
+def dossier_file(path: str | Path) -> Path:
+    """The dossier that ``path`` names: the file itself, or ``dossier.toml`` in a folder."""
     path = Path(path)
     return path / "dossier.toml" if path.is_dir() else path
 
