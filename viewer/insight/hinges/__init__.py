@@ -1,0 +1,5 @@
+"""Where a mode folds and what merely flaps: hinge lines, joints and flaps (DESIGN §6)."""
+
+from viewer.insight.hinges.finding import Flap, Hinge, HingeFinding
+
+__all__ = ["Flap", "Hinge", "HingeFinding"]
