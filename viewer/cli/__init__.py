@@ -6,6 +6,7 @@ import typer
 
 from viewer.cli.animate import animate
 from viewer.cli.check import check
+from viewer.cli.hinges import hinges
 from viewer.cli.modes import modes
 from viewer.cli.review import review
 
@@ -17,7 +18,7 @@ app = typer.Typer(
     pretty_exceptions_enable=False,
     context_settings={"help_option_names": ["-h", "--help"]},
 )
-for command in (review, modes, animate, check):
+for command in (review, modes, hinges, animate, check):
     app.command()(command)
 
 

@@ -33,8 +33,9 @@ DEFERENCE = (
 @dataclass(frozen=True)
 class PageLoop:
     """One mode, or one pair of modes. ``gif``, ``still``, ``strip``, ``overlay`` and ``true_scale`` are files
-    relative to the page's folder, empty where there is none; ``caption`` is one or two sentences; ``alt`` says in
-    words what the loop shows."""
+    relative to the page's folder, empty where there is none; ``findings`` are further pictures as (words, file);
+    ``caption`` is one or two sentences, ``sentences`` are what was found about the mode; ``alt`` says in words what
+    the loop shows."""
 
     title: str
     gif: str = ""
@@ -44,10 +45,13 @@ class PageLoop:
     true_scale: str = ""
     caption: str = ""
     alt: str = ""
+    sentences: tuple[str, ...] = ()
+    findings: tuple[tuple[str, str], ...] = ()
 
     @property
     def files(self) -> tuple[str, ...]:
-        return tuple(f for f in (self.gif, self.still, self.strip, self.overlay, self.true_scale) if f)
+        own = (self.gif, self.still, self.strip, self.overlay, self.true_scale)
+        return tuple(f for f in (*own, *(file for _, file in self.findings)) if f)
 
 
 @dataclass(frozen=True)
@@ -157,13 +161,16 @@ def _loop(loop: PageLoop) -> str:
     parts.append(f"<figcaption><strong>{_text(loop.title)}</strong>")
     if loop.caption:
         parts.append(f"<p>{_text(loop.caption)}</p>")
+    if loop.sentences:
+        parts += ["<ul>", *(f"<li>{_text(sentence)}</li>" for sentence in loop.sentences), "</ul>"]
     files = [
         ("still picture", loop.still),
         ("phase strip for print", loop.strip),
         ("overlay", loop.overlay),
         ("at true scale", loop.true_scale),
+        *loop.findings,
     ]
-    links = [f'<a href="{_link(path)}">{words}</a>' for words, path in files if path and path != shown]
+    links = [f'<a href="{_link(path)}">{_text(words)}</a>' for words, path in files if path and path != shown]
     if links:
         parts.append(f'<p class="files">{" · ".join(links)}</p>')
     return "\n".join([*parts, "</figcaption></figure>"])
@@ -278,6 +285,8 @@ background:var(--band);border-left:4px solid var(--accent)}
 figure{margin:0;border:1px solid var(--rule);background:var(--band);max-width:960px}
 img{display:block;width:100%;height:auto}
 figcaption{padding:.8rem 1.1rem 1rem;overflow-wrap:anywhere}
+figcaption ul{margin:.4rem 0;padding-left:1.2rem;max-width:70ch}
+figcaption li{margin:.25rem 0}
 .files{font-size:.9rem}
 .table{overflow-x:auto;border-top:1px solid var(--rule);border-bottom:1px solid var(--rule)}
 table{border-collapse:collapse;font-size:.92rem;font-variant-numeric:tabular-nums}

@@ -7,7 +7,6 @@ from __future__ import annotations
 
 import json
 import os
-import re
 import shutil
 import tempfile
 from collections.abc import Iterator
@@ -19,6 +18,7 @@ from typing import Any
 from viewer import __version__
 from viewer.errors import ExportError
 from viewer.export.checkup import mesh_words
+from viewer.export.file_names import slugs
 from viewer.export.gif_loop import save_gif
 from viewer.export.index_page import PageLoop, PageSection, PageTable, write_index
 from viewer.export.rows import Row, group_rows, mode_caption, mode_rows, pair_caption, pair_row, point_rows, short
@@ -61,7 +61,7 @@ def write_review(
     pairs = _pairs(opened, studies)
     steps = _Steps(progress, sum(s.count for s in studies) + len(pairs))
     with _aside(Path(folder)) as part:
-        desk = _Desk(part, theme, width, steps, _slugs(opened.names))
+        desk = _Desk(part, theme, width, steps, slugs(opened.names))
         comparison = _compare(desk, pairs) if pairs else None
         sections = ([comparison] if comparison else []) + [_explain(desk, study) for study in studies]
         doubts = [words for s in studies for words in (*opened.doubts(s.design.name), *s.cautions)]
@@ -233,18 +233,6 @@ def _summary(opened: OpenDossier, studies: list[Study], desk: _Desk, cautions: t
         "cautions": list(cautions),
         "files": sorted({SUMMARY, *(path.name for path in desk.folder.iterdir())}),
     }
-
-
-def _slugs(names: tuple[str, ...]) -> dict[str, str]:
-    """File-safe, distinct stems for design names."""
-    found: dict[str, str] = {}
-    for number, name in enumerate(names, 1):
-        slug = re.sub(r"[^A-Za-z0-9]+", "-", name).strip("-").lower() or f"design-{number}"
-        stem = slug
-        while stem in found.values():  # a numbered stem may itself be the plain one of another design
-            stem, number = f"{slug}-{number}", number + 1
-        found[name] = stem
-    return found
 
 
 def _check_place(folder: Path) -> None:

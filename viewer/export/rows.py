@@ -28,6 +28,9 @@ _SHORT = (
     "point", "effect", "direction", "motion_percent_of_largest", "real_motion_m",
     "first_design", "first_mode", "first_name", "second_design", "second_mode", "first_hz", "second_hz",
     "change_percent", "mac_common_support",
+    "group", "strain_energy_percent", "kinetic_energy_percent", "volume_percent",
+    "verdict", "hinge", "kind", "label", "confidence_percent", "fold_drawn_deg", "fold_real_deg", "stiffness_nmrad",
+    "length_m",
 )  # fmt: skip
 
 

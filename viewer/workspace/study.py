@@ -8,7 +8,8 @@ from functools import cached_property
 
 import numpy as np
 
-from viewer.errors import ModelError, RefusedError
+from viewer.errors import InputError, ModelError, RefusedError
+from viewer.insight.hinges import HingeFinding
 from viewer.insight.scale import CarriedPoint, Scale, carried_points, scale_mode
 from viewer.jobs import SILENT, Progress
 from viewer.mechanics.energy import RELATIVE, Energies, energies
@@ -40,6 +41,7 @@ class Study:
     condition: str = ""
     totals: Totals | None = None
     _scales: dict[tuple[int, bool, float | None], Scale] = field(default_factory=dict, init=False, repr=False)
+    _hinges: dict[int, HingeFinding] = field(default_factory=dict, init=False, repr=False)
 
     @property
     def count(self) -> int:
@@ -73,6 +75,16 @@ class Study:
     def figures(self) -> Energies | Totals | None:
         """Where closure, residual and trust stand, whether energies are known by element or as wholes."""
         return self.totals if self.energies is None or self.relative else self.energies
+
+    def index_of(self, number: int) -> int:
+        """Index of mode ``number`` (from 1); ``InputError`` for a mode that is not there."""
+        if not 1 <= number <= self.count:
+            raise InputError(
+                f"design '{self.design.name}' has no mode {number}",
+                expected=f"1 to {self.count}",
+                do="choose another mode, or raise solve in the dossier",
+            )
+        return number - 1
 
     def has_strain(self, index: int) -> bool:
         """Whether mode ``index`` has strain energy to show: it has physics and is no rigid-body mode."""
@@ -109,6 +121,15 @@ class Study:
                 peak_percent=peak_percent,
             )
         return self._scales[key]
+
+    def hinges(self, index: int, progress: Progress = SILENT) -> HingeFinding:
+        """Where mode ``index`` (from 0) folds and what flaps, its angles at the mode's own scale; found once."""
+        from viewer.insight.hinges import find_hinges
+
+        if index not in self._hinges:
+            found = find_hinges(self.design, self.modes, index + 1, self.energies, progress)
+            self._hinges[index] = found.with_scale(self.scale(index))
+        return self._hinges[index]
 
     def turned_shape(self, index: int, turn: complex) -> Array:
         """The shape times a unit complex factor; a real shape stays real (its factor is a sign)."""
