@@ -5,20 +5,9 @@ import pytest
 
 from tests.meshes import box_mesh, plate_mesh
 from tests.scene.sheets import known, marked
-from viewer.scene.marks import (
-    BEAD,
-    PEG,
-    PEG_BITE,
-    PEG_STEP,
-    RING,
-    bead_radius,
-    facing_marks,
-    mark_pieces,
-    peg_places,
-    sphere,
-    spread,
-    standing_marks,
-)
+from viewer.scene.forms import sphere
+from viewer.scene.marks import BEAD, RING, bead_radius, facing_marks, mark_pieces, standing_marks
+from viewer.scene.pegs import PEG, PEG_BITE, PEG_STEP, peg_places, spread
 from viewer.scene.picture import Body, MassMark, PointMark
 
 EYE = np.array([-0.55, -0.75, 0.42]) / np.linalg.norm([-0.55, -0.75, 0.42])

@@ -11,7 +11,7 @@ from vtkmodules.vtkCommonDataModel import vtkCellArray, vtkPolyData
 from vtkmodules.vtkRenderingCore import vtkActor, vtkPolyDataMapper, vtkRenderer
 
 from viewer.model.arrays import Array
-from viewer.scene.marks import Piece
+from viewer.scene.forms import Piece
 from viewer.scene.tokens import THEMES, rgb
 
 _LIFT = 1.5  # depth units and slope factor by which lines stand before their faces

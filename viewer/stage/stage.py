@@ -16,7 +16,8 @@ from vtkmodules.vtkRenderingCore import vtkLight, vtkRenderer
 
 from viewer.model.arrays import Array
 from viewer.scene import view
-from viewer.scene.marks import Piece, facing_pieces, standing_pieces
+from viewer.scene.forms import Piece
+from viewer.scene.marks import facing_pieces, standing_pieces
 from viewer.scene.picture import Body, Picture, View
 from viewer.scene.sheet import SheetPlan, note_height, plan_sheet
 from viewer.scene.surface import Surface, surface_of
