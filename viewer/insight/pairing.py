@@ -1,0 +1,222 @@
+"""Which mode of one design became which mode of another (DESIGN §6 "Correlate").
+
+Modes are assigned so that the sum of their MAC, weighted by mass over the common support, is largest. A pair below
+``PAIRED`` is no pair: the mode has vanished, or is new. Two modes whose frequencies nearly coincide may come out in
+any mixture; such groups are compared as subspaces, and the pair says so.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from scipy.optimize import linear_sum_assignment
+
+from viewer.insight.common_support import CommonSupport, common_support
+from viewer.insight.correlate import mac
+from viewer.jobs import SILENT, Progress
+from viewer.model.arrays import Array, frozen
+from viewer.model.design import Design
+from viewer.model.modes import ModeSet
+
+PAIRED = 0.5  # MAC: less than half of the shape in common is another mode
+CLOSE = 0.02  # relative difference of frequencies up to which modes of one design count as a group
+MERGED = 0.25  # least MAC with the mode that took a mode up, when that mode lies in the span of both
+
+
+@dataclass(frozen=True)
+class ModePair:
+    """What became of one mode. Numbers from 1; None where there is no partner.
+
+    kind      "paired", "vanished", "new", "merged" (taken up by a mode that has another partner)
+    mac       of the two shapes, weighted by mass; of the best candidate where there is no partner, 0 without any
+    subspace  least cos² of the angles between the groups of close modes that both belong to; None when neither has
+              close company
+    group     numbers of the modes of the first and of the second design in that comparison
+    into      for "merged": number of the second design's mode that took this one up
+    """
+
+    kind: str
+    first: int | None
+    second: int | None
+    first_hz: float | None
+    second_hz: float | None
+    mac: float
+    subspace: float | None = None
+    group: tuple[tuple[int, ...], tuple[int, ...]] = ((), ())
+    into: int | None = None
+
+    @property
+    def agreement(self) -> float:
+        """MAC, or the comparison of subspaces where the modes have close company."""
+        return self.mac if self.subspace is None else self.subspace
+
+    def to_dict(self) -> dict[str, Any]:
+        change = None
+        if self.first_hz and self.second_hz is not None:
+            change = 100 * (self.second_hz / self.first_hz - 1)
+        return {
+            "kind": self.kind,
+            "first_mode": self.first,
+            "second_mode": self.second,
+            "first_hz": self.first_hz,
+            "second_hz": self.second_hz,
+            "change_percent": change,
+            "mac": self.mac,
+            "subspace_agreement": self.subspace,
+            "close_modes_first": list(self.group[0]),
+            "close_modes_second": list(self.group[1]),
+            "merged_into": self.into,
+        }
+
+
+@dataclass(frozen=True, eq=False)
+class Pairing:
+    """Two mode sets compared: ``matrix`` (modes of first, modes of second) MAC, and what became of each mode, first
+    the modes of the first design in order, then what is new."""
+
+    first: str
+    second: str
+    support: CommonSupport
+    matrix: Array
+    pairs: tuple[ModePair, ...]
+
+    def __post_init__(self) -> None:
+        object.__setattr__(self, "matrix", frozen(self.matrix, np.float64, shape=(None, None)))
+
+    def partner(self, first: int) -> int | None:
+        """Number of the mode of the second design that mode ``first`` became."""
+        return next((p.second for p in self.pairs if p.first == first), None)
+
+    @property
+    def sentence(self) -> str:
+        return sentence_of(self.to_dict())
+
+    def to_dict(self) -> dict[str, Any]:
+        count = {kind: sum(p.kind == kind for p in self.pairs) for kind in ("paired", "vanished", "new", "merged")}
+        return {
+            "first_design": self.first,
+            "second_design": self.second,
+            "counts": count,
+            "pairs": [p.to_dict() for p in self.pairs],
+            "mac_matrix": self.matrix.tolist(),
+            "support": self.support.to_dict(),
+        }
+
+
+def sentence_of(facts: dict[str, Any]) -> str:
+    """The plain sentence made of the figures of ``Pairing.to_dict``."""
+    count, one, two = facts["counts"], facts["first_design"], facts["second_design"]
+    words = f"From {one} to {two}, {count['paired']} modes keep their shape"
+    for kind, said in (("vanished", "have no counterpart"), ("merged", "are taken up by others")):
+        if count[kind]:
+            listed = [p["first_mode"] for p in facts["pairs"] if p["kind"] == kind]
+            words += f"; of {one}, {_modes(listed)} {said if len(listed) > 1 else _singular(said)}"
+    if count["new"]:
+        listed = [p["second_mode"] for p in facts["pairs"] if p["kind"] == "new"]
+        words += f"; {_modes(listed)} of {two} {'are' if len(listed) > 1 else 'is'} new among those compared"
+    return words + "."
+
+
+def pair(
+    first: Design,
+    first_modes: ModeSet,
+    second: Design,
+    second_modes: ModeSet,
+    support: CommonSupport | None = None,
+    progress: Progress = SILENT,
+) -> Pairing:
+    """Pair the modes of two designs, whose meshes need not be alike. Raises what ``common_support`` raises."""
+    support = common_support(first, second, progress) if support is None else support
+    one, two = _vectors(first_modes, support, 0, progress), _vectors(second_modes, support, 1, progress)
+    matrix = mac(one, two)
+    # the cube sharpens: one excellent pair and one poor are better than two middling ones
+    rows, columns = linear_sum_assignment(-(matrix**3))
+    partner = {int(i): int(j) for i, j in zip(rows, columns, strict=True)}
+    groups = _groups(first_modes.freq_hz), _groups(second_modes.freq_hz)
+    pairs = []
+    for i in range(first_modes.count):
+        pairs.append(_became(i, partner.get(i), matrix, groups, (one, two), (first_modes, second_modes)))
+    taken = {p.second for p in pairs}
+    for j in range(second_modes.count):
+        if j + 1 not in taken:
+            best = float(matrix[:, j].max(initial=0.0))
+            pairs.append(ModePair("new", None, j + 1, None, float(second_modes.freq_hz[j]), best))
+    return Pairing(first.name, second.name, support, matrix, tuple(_mergers(pairs, matrix, one, two)))
+
+
+def subspace_agreement(one: Array, two: Array) -> float:
+    """Least cos² of the principal angles between the spans of the rows of ``one`` (a, n) and ``two`` (b, n): 1 when
+    the smaller span lies in the larger. Björck & Golub, Math. Comp. 27 (1973) 579."""
+    first, second = np.linalg.qr(one.T)[0], np.linalg.qr(two.T)[0]
+    cosines = np.linalg.svd(first.conj().T @ second, compute_uv=False)
+    return float(min(cosines.min(), 1.0) ** 2)
+
+
+def _vectors(modes: ModeSet, support: CommonSupport, which: int, progress: Progress) -> Array:
+    carry = support.values_of_second if which else support.values_of_first
+    out = []
+    for index in range(modes.count):
+        progress.tick("shapes to the common support", index, modes.count)
+        out.append(carry(modes.shape(index)))
+    return np.array(out)
+
+
+def _groups(freq_hz: Array) -> list[tuple[int, ...]]:
+    """By mode the modes (indices) that lie close to it in frequency, itself included."""
+    label, out = 0, np.zeros(len(freq_hz), int)
+    for i in range(1, len(freq_hz)):
+        label += bool(freq_hz[i] - freq_hz[i - 1] > CLOSE * max(freq_hz[i], 1e-300))
+        out[i] = label
+    return [tuple(int(j) for j in np.nonzero(out == out[i])[0]) for i in range(len(freq_hz))]
+
+
+def _became(
+    i: int,
+    j: int | None,
+    matrix: Array,
+    groups: tuple[list[tuple[int, ...]], list[tuple[int, ...]]],
+    vectors: tuple[Array, Array],
+    modes: tuple[ModeSet, ModeSet],
+) -> ModePair:
+    one_hz = float(modes[0].freq_hz[i])
+    if j is None:
+        return ModePair("vanished", i + 1, None, one_hz, None, float(matrix[i].max(initial=0.0)))
+    value, subspace = float(matrix[i, j]), None
+    named: tuple[tuple[int, ...], tuple[int, ...]] = ((), ())
+    mine, theirs = groups[0][i], groups[1][j]
+    if len(mine) > 1 or len(theirs) > 1:
+        # the side with fewer modes must lie in the span of the other
+        subspace = subspace_agreement(vectors[0][list(mine)], vectors[1][list(theirs)])
+        named = (tuple(k + 1 for k in mine), tuple(k + 1 for k in theirs))
+    if max(value, subspace or 0.0) < PAIRED:
+        return ModePair("vanished", i + 1, None, one_hz, None, float(matrix[i].max()))
+    return ModePair("paired", i + 1, j + 1, one_hz, float(modes[1].freq_hz[j]), value, subspace, named)
+
+
+def _mergers(pairs: list[ModePair], matrix: Array, one: Array, two: Array) -> list[ModePair]:
+    """Vanished modes that a paired mode of the second design took up: it has a good part of them, and lies in the
+    span of its partner and them far better than in its partner alone."""
+    by_second = {p.second: p for p in pairs if p.kind == "paired"}
+    out = []
+    for p in pairs:
+        if p.kind == "vanished" and p.first is not None and matrix.shape[1]:
+            best = int(np.argmax(matrix[p.first - 1]))
+            host = by_second.get(best + 1)
+            if host is not None and host.first is not None and matrix[p.first - 1, best] >= MERGED:
+                both = subspace_agreement(one[[p.first - 1, host.first - 1]], two[[best]])
+                if both >= max(PAIRED, host.mac + 0.5 * MERGED):
+                    p = ModePair("merged", p.first, None, p.first_hz, None, p.mac, into=best + 1)
+        out.append(p)
+    return out
+
+
+def _modes(numbers: list[int]) -> str:
+    if len(numbers) == 1:
+        return f"mode {numbers[0]}"
+    return f"modes {', '.join(str(n) for n in numbers[:-1])} and {numbers[-1]}"
+
+
+def _singular(words: str) -> str:
+    return words.replace("have", "has").replace("are taken", "is taken").replace("by others", "by another")
