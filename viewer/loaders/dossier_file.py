@@ -19,6 +19,7 @@ from viewer.loaders.dossier_parse import parsed, short
 from viewer.model.design import (
     DIRECTIONS,
     Assignment,
+    Clearance,
     Directional,
     FunctionalPoint,
     Link,
@@ -29,6 +30,7 @@ from viewer.model.design import (
     Section,
     Selector,
     Spring,
+    Strut,
     Support,
     Tie,
 )
@@ -111,7 +113,19 @@ class _Reader:
             self.mode_names(item, place),
             item.note,
             self.matrices(item, place),
+            self.clearances(item.name),
         )
+
+    def clearances(self, design: str) -> tuple[Clearance, ...]:
+        """The boxes that must stay empty in ``design``."""
+        found = []
+        for number, item in enumerate(self.table.clearances, 1):
+            place = f"clearances {number}"
+            for name in item.designs or ():
+                self.known("design", name, [each.name for each in self.table.designs], f"{place}, designs")
+            if item.designs is None or design in item.designs:
+                found.append(Clearance(item.name or f"clearance {number}", self.box(item.box, place)))
+        return tuple(found)
 
     def matrices(self, item: schema.DesignTable, place: str) -> MatrixFiles | None:
         if item.stiffness is None or item.mass_matrix is None or item.matrix_order is None:
@@ -135,18 +149,20 @@ class _Reader:
         masses = tuple(self.mass(m, f"{place}, masses {n}", n) for n, m in enumerate(item.masses, 1))
         links = tuple(self.link(m, f"{place}, links {n}", n) for n, m in enumerate(item.links, 1))
         ties = tuple(self.tie(m, f"{place}, ties {n}", n) for n, m in enumerate(item.ties, 1))
+        struts = tuple(self.strut(s, f"{place}, struts {n}", n) for n, s in enumerate(item.struts, 1))
         named: dict[str, Iterable[Any]] = {
             "supports": supports,
             "springs": springs,
             "masses": masses,
             "links": links,
             "ties": ties,
+            "struts": struts,
         }
         for word, things in named.items():
             self.no_duplicates(f"{place}, {word}", [thing.name for thing in things])
         used = {a.material for a in assignments} | {ply.material for a in assignments for ply in a.plies}
         kept = {n: m for n, m in materials.items() if n in used}
-        return Physics(kept, assignments, supports, springs, masses, links, ties)
+        return Physics(kept, assignments, supports, springs, masses, links, ties, struts)
 
     def material(self, name: str, item: schema.MaterialTable) -> Material:
         place = f"materials.{name}"
@@ -224,6 +240,15 @@ class _Reader:
             (item.axial or 0.0) * self.stiffness_unit,
         )
 
+    def strut(self, item: schema.StrutTable, place: str, number: int) -> Strut:
+        return Strut(
+            item.name or f"strut {number}",
+            self.selector(item, place),
+            self.selector(item.to, f"{place}, to"),
+            item.stiffness * self.stiffness_unit,
+            item.mass * self.mass_unit,
+        )
+
     def mass(self, item: schema.MassTable, place: str, number: int) -> LumpedMass:
         value = self.plausible("mass", item.mass * self.mass_unit, place)
         inertia = self.inertia(item.inertia, f"{place}, inertia")
@@ -299,17 +324,21 @@ class _Reader:
     # --- parts ---
 
     def selector(self, item: schema.Place, place: str) -> Selector:
-        box = None if item.box is None else np.array(item.box) * self.length
-        if box is not None and (box[0] > box[1]).any():
+        box = None if item.box is None else self.box(item.box, place)
+        near = None if item.near is None else np.array(item.near) * self.length
+        return Selector(item.group or "", item.nodes, box, near)  # type: ignore[arg-type]
+
+    def box(self, given: list[list[float]], place: str) -> np.ndarray:
+        box = np.array(given) * self.length
+        if (box[0] > box[1]).any():
             raise DossierError(
                 "the lower corner of the box lies above the upper one",
                 file=self.path,
                 place=f"{place}, box",
-                found=short(item.box),
+                found=short(given),
                 expected="[[xmin, ymin, zmin], [xmax, ymax, zmax]]",
             )
-        near = None if item.near is None else np.array(item.near) * self.length
-        return Selector(item.group or "", item.nodes, box, near)  # type: ignore[arg-type]
+        return box
 
     def position(self, given: list[float] | None) -> np.ndarray | None:
         return None if given is None else np.array(given) * self.length

@@ -31,6 +31,7 @@ turning springs N·m/rad::
     links = [{name = "bracket", from = {near = [0, 0, 500]}, to = {group = "pad"}}]    # rigid; the one node leads
     # (near and box find nodes of cells only: name a node of no cell by nodes = [id] or by its group)
     ties = [{name = "seam", nodes = {group = "edge"}, surface = {group = "block"}}]    # glued; reach = 2 if far off
+    struts = [{name = "brace", group = "left pad", to = {group = "right pad"}, stiffness = 2000}]    # mass = 0.1
     mode_names = {1 = "boom nods"}
     # instead of assign, matrices of another program (their numbers in the units of stiffness and mass above), which
     # contain all but the supports: stiffness = "K.mtx", mass_matrix = "M.mtx", matrix_order = "by node" (ux uy uz of
@@ -50,6 +51,11 @@ turning springs N·m/rad::
     group = "pad"               # or: nodes = [12, 13]; box = [[…], […]]; near = [x, y, z]
     direction = "+y"            # or [0, 1, 0]
     effect = "image blur"
+
+    [[clearances]]              # boxes that no proposed strut may pass
+    name = "belt"
+    box = [[-50, 0, 200], [50, 80, 900]]
+    designs = ["baseline"]      # default: all
 
     [[amplitudes]]
     design = "baseline"
@@ -235,6 +241,13 @@ class SpringTable(Place):
         return self
 
 
+class StrutTable(Place):
+    name: Name | None = None
+    to: OtherPlace
+    stiffness: Positive
+    mass: NotNegative = 0.0
+
+
 class MassTable(Place):
     name: Name | None = None
     mass: Positive
@@ -278,6 +291,7 @@ class DesignTable(Table):
     masses: list[MassTable] = []
     links: list[LinkTable] = []
     ties: list[TieTable] = []
+    struts: list[StrutTable] = []
     points: list[PointTable] = []
     mode_names: dict[str, Name] = {}
     note: str = ""
@@ -309,7 +323,8 @@ class DesignTable(Table):
                 f"says no {missing[0]}, expected stiffness, mass_matrix and matrix_order together; matrix_order is "
                 '"by node", "by direction" or a table with the columns node, direction'
             )
-        others = [key for key in ("assign", "springs", "masses", "links", "ties") if getattr(self, key, None)]
+        own = ("assign", "springs", "masses", "links", "ties", "struts")
+        others = [key for key in own if getattr(self, key)]
         if others:
             raise ValueError(f"says both stiffness and {others[0]}, expected one: matrices contain everything")
 
@@ -348,6 +363,12 @@ class PairTable(Table):
     second: ModeReference
 
 
+class ClearanceTable(Table):
+    name: Name | None = None
+    box: Annotated[list[Vector], Field(min_length=2, max_length=2)]
+    designs: Annotated[list[Name], Field(min_length=1)] | None = None
+
+
 class DossierTable(Table):
     title: Name
     condition: str = ""
@@ -355,5 +376,6 @@ class DossierTable(Table):
     materials: dict[str, MaterialTable] = {}
     designs: Annotated[list[DesignTable], Field(min_length=1)]
     points: list[PointTable] = []
+    clearances: list[ClearanceTable] = []
     amplitudes: list[AmplitudeTable] = []
     pairs: list[PairTable] = []

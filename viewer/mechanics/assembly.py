@@ -8,7 +8,7 @@ place of a block's row in the data of the CSR matrix follows from the pattern al
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 
 import numpy as np
@@ -39,8 +39,9 @@ from viewer.mechanics.followers import (
 from viewer.mechanics.formulations import Formulation
 from viewer.mechanics.pattern import Pattern
 from viewer.mechanics.sections import constants
+from viewer.mechanics.struts import strut_attachments
 from viewer.model.arrays import Array, frozen
-from viewer.model.design import DIRECTIONS, Design, Property
+from viewer.model.design import DIRECTIONS, Design, Property, Strut
 
 _CHUNK = 2**21  # entries of element matrices at a time, 16 MB: kernels stay in reach of the cache
 
@@ -95,7 +96,8 @@ class Layout:
     dof       (n_nodes, 6) number of ux uy uz rx ry rz, −1 where the node has none
     held      (n_dof,) True where a support holds
     blocks    element groups
-    springs, masses   one attachment per entry of the design's physics, in its order
+    springs, masses   one attachment per entry of the design's physics, in its order; struts come after the springs,
+              their masses after the masses
     follow    (n_dof, n_dof) every degree of freedom from the independent ones, None when nothing follows anything
     dependent (n_dof,) True for those that follow others through a link or tie
     cautions  what a reader of the results must know
@@ -242,6 +244,11 @@ def lay_out(design: Design, progress: Progress = SILENT, *, formulations: Mappin
         attachment, caution = mass_attachment(mass, design, dof)
         masses.append(attachment)
         cautions += [caution] if caution else []
+    for strut in physics.struts:
+        spring, ends, caution = strut_attachments(strut, design, dof)
+        springs.append(spring)
+        masses += ends
+        cautions += [caution] if caution else []
     held = held_dofs(physics.supports, design, dof, n_dof)
     rules = Rules(dof)
     for link in physics.links:
@@ -286,6 +293,18 @@ def assemble_layout(layout: Layout, progress: Progress = SILENT) -> System:
     _check_attached(layout, stiffness, mass)
     fields = {name: getattr(layout, name) for name in Layout.__dataclass_fields__}
     return System(**fields, K=stiffness, M=mass)
+
+
+def with_strut(system: System, strut: Strut) -> System:
+    """The same system, its matrices given ones too, with one strut more. Raises ``ModelError``."""
+    spring, ends, _ = strut_attachments(strut, system.design, system.dof)
+    return replace(
+        system,
+        springs=(*system.springs, spring),
+        masses=(*system.masses, *ends),
+        K=_with_attachments(system.K, (spring,)),
+        M=_with_attachments(system.M, tuple(ends)),
+    )
 
 
 def _with_attachments(matrix: sp.csr_array, attachments: tuple[Attachment, ...]) -> sp.csr_array:

@@ -28,7 +28,7 @@ def given_system(design: Design) -> System:
     if given is None:
         raise ModelError(f"design '{design.name}' has no matrices")
     physics = design.physics
-    if physics.assignments or physics.springs or physics.masses or physics.links or physics.ties:
+    if any((physics.assignments, physics.springs, physics.masses, physics.links, physics.ties, physics.struts)):
         raise ModelError(
             f"design '{design.name}' has matrices and parts of its own beside them",
             expected="supports only",

@@ -191,6 +191,32 @@ class Spring:
 
 
 @dataclass(frozen=True, eq=False)
+class Strut:
+    """A link between the centres of two footprints, stiff along the line between them and in no other way.
+
+    Each end follows the mean translation of its nodes, so that rigid motions of the whole strain nothing.
+    ``stiffness`` N/m along the line; ``mass`` kg, half of it carried by each end.
+    """
+
+    name: str
+    where: Selector
+    other: Selector
+    stiffness: float
+    mass: float = 0.0
+
+
+@dataclass(frozen=True, eq=False)
+class Clearance:
+    """A box that must stay empty, (2, 3) lower and upper corner, m: no strut is proposed through it."""
+
+    name: str
+    box: Array
+
+    def __post_init__(self) -> None:
+        object.__setattr__(self, "box", frozen(self.box, np.float64, shape=(2, 3)))
+
+
+@dataclass(frozen=True, eq=False)
 class LumpedMass:
     """A rigid body of mass ``mass`` kg whose centre sits at ``position`` and follows the selected nodes.
 
@@ -269,6 +295,7 @@ class Physics:
     masses: tuple[LumpedMass, ...] = ()
     links: tuple[Link, ...] = ()
     ties: tuple[Tie, ...] = ()
+    struts: tuple[Strut, ...] = ()
     matrices: GivenMatrices | None = None  # instead of assignments
 
     def __post_init__(self) -> None:

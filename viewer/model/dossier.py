@@ -10,7 +10,7 @@ import numpy as np
 
 from viewer.errors import DossierError
 from viewer.model.arrays import Array, frozen, frozen_map
-from viewer.model.design import Design, FunctionalPoint, Physics, Selector
+from viewer.model.design import Clearance, Design, FunctionalPoint, Physics, Selector
 from viewer.model.matrices import GivenMatrices, MatrixFiles
 from viewer.model.mesh import Mesh
 
@@ -55,6 +55,7 @@ class DesignPlan:
     mode_names: Mapping[int, str] = field(default_factory=dict)
     note: str = ""
     matrices: MatrixFiles | None = None  # stiffness and mass instead of assignments
+    clearances: tuple[Clearance, ...] = ()  # boxes that no strut may pass
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "mode_names", frozen_map(self.mode_names))
