@@ -10,8 +10,10 @@ _NUMBER = re.compile(
     r"(?<![\w.])(?P<sign>[-−+]?)(?P<digits>\d[\d\u202f,]*(?:\.\d+)?(?:e[-+]?\d+)?)"
     r"[\s\u00a0]?(?P<unit>%|°|kN/mm|N/mm|kN/m|N/m|N·m/rad|kHz|Hz/kg|Hz|µm|nm|mm|kg|km|m\b|g\b)?"
 )
-_FACTORS = {"%": (1.0, 100.0), "mm": (1e3,), "µm": (1e6,), "nm": (1e9,), "g": (1e3,), "kHz": (1e-3,), "kN/mm": (1e-6,),
-            "N/mm": (1e-3,), "kN/m": (1e-3,), "km": (1e-3,)}  # fmt: skip
+_FACTORS = {
+    "%": (1.0, 100.0), "mm": (1e3,), "µm": (1e6,), "nm": (1e9,), "g": (1e3,), "kHz": (1e-3,), "kN/mm": (1e-6,),
+    "N/mm": (1e-3,), "kN/m": (1e-3,), "km": (1e-3,),
+}  # fmt: skip
 
 
 def figures(facts: Any) -> Iterator[float]:

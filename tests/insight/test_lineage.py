@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from itertools import pairwise
+
 import numpy as np
 import pytest
 
@@ -13,7 +15,7 @@ def pendula(values, coupling):
     """Two coupled pendula, the second one detuned by each of ``values``: frequencies, shapes, products of shapes."""
     found = [np.linalg.eigh([[1 + coupling, -coupling], [-coupling, 1 + coupling + e]]) for e in values]
     freq_hz = [np.sqrt(squares) / (2 * np.pi) for squares, _ in found]
-    return freq_hz, [a.T @ b for (_, a), (_, b) in zip(found, found[1:], strict=False)]
+    return freq_hz, [a.T @ b for (_, a), (_, b) in pairwise(found)]
 
 
 @pytest.mark.parametrize("count", [8, 15, 40])
