@@ -61,6 +61,10 @@ BAD = {
         r"node ids repeat; found: node 7",
     ),
     "units zero": (sample.units(0.0) + WHOLE, r"line 5 \(data set 164\): a factor of units is not above zero"),
+    "units of a raised digit": (  # found by fuzzing
+        sample.units().replace(f"{1:10d}", f"{'³':>10}", 1) + WHOLE,
+        r"line 3 \(data set 164\): the code of units is no number; found: '³'",
+    ),
     "units twice": (sample.units() + sample.units(1000.0) + WHOLE, r"units of length are stated twice"),
     "system on a line": (
         sample.data_set(

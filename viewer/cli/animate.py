@@ -120,7 +120,7 @@ def animate(
 
 
 def _number(text: str) -> int:
-    if not text.isdigit() or int(text) < 1:
+    if not text.isdecimal() or int(text) < 1:
         raise typer.BadParameter(f"'{text}' is not a mode number", param_hint="--against")
     return int(text)
 

@@ -58,6 +58,6 @@ def _save_name(dossier: Path, order: str) -> None:
 
     where, equals, words = order.partition("=")
     design, _, number = where.rpartition(":")
-    if not (equals and design and number.isdigit()):
+    if not (equals and design and number.isdecimal()):
         raise typer.BadParameter(f"'{order}' is not DESIGN:NUMBER=words", param_hint="--name")
     save_mode_name(dossier_file(dossier), design, int(number), words.strip())

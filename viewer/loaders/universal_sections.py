@@ -155,7 +155,7 @@ def read_universal(path: Path, wanted: frozenset[int] = GEOMETRY | RESULTS, prog
 def _units(records: Records, before: Units | None) -> Units:
     line = records.lines[records.take(1, "the units")[0]].decode("latin-1")
     code = line[:10].strip()
-    if not code.isdigit():
+    if not (code.isascii() and code.isdigit()):
         raise records.error("the code of units is no number", found=repr(code))
     length, force, _, _ = records.reals(4, "the units", 3, 25)
     if not (0 < length < np.inf and 0 < force < np.inf):
