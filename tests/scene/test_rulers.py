@@ -31,7 +31,7 @@ def test_round_lengths_are_1_2_5(longest):
 def test_the_ruler_measures_what_it_says(zoom):
     picture = known()
     frame = frame_of(picture)
-    frame = type(frame)(frame.width, frame.height, frame.boxes, zoom * frame.metres_per_pixel, frame.project)
+    frame = type(frame)(frame.width, frame.height, frame.boxes, zoom * frame.metres_per_pixel, frame.project, frame.toward_eye)
     items = ruler_items(picture, frame)
     bar = next(item for item in items if isinstance(item, Polygon)).box
     body, motion = (t.words for t in items if isinstance(t, Text))

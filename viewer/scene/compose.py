@@ -11,17 +11,20 @@ import numpy as np
 from viewer.errors import InputError
 from viewer.insight.correlate import shared_turn
 from viewer.insight.given_energy import given_density
+from viewer.insight.hinges import HingeFinding
 from viewer.insight.scale import Scale, common_scale
 from viewer.mechanics.energy import RELATIVE
 from viewer.model.arrays import Array
 from viewer.model.design import LumpedMass
 from viewer.scene.figures import digits
+from viewer.scene.finding_marks import flap_marks, hinge_marks
 from viewer.scene.node_lines import lines_of
 from viewer.scene.node_lines import words as lines_words
 from viewer.scene.note_layout import note_height, scale_note
 from viewer.scene.palette import energy_top
 from viewer.scene.picture import Body, Magnified, MassMark, Picture, PointMark, SupportMark, View
 from viewer.scene.showing import Showing
+from viewer.scene.strut_marks import Strut, strut_marks
 from viewer.scene.surface import drawn_areas
 from viewer.scene.tokens import BASE_WIDTH
 from viewer.scene.view import side_height
@@ -44,11 +47,16 @@ def single_picture(
     width: int = 960,
     showing: Showing = WHOLE,
     node_lines: bool = False,
+    finding: HingeFinding | None = None,
+    chosen: int = 0,
+    struts: Sequence[Strut] = (),
     **look: Any,
 ) -> Picture:
     """The picture of mode number ``mode`` (from 1). ``look``: theme, ghost, mesh_edges, view of ``Picture``.
 
     ``given_energy`` colours by the strain energies that came with the modes.
+    ``finding`` marks the hinges and flaps of the mode; hinge number ``chosen`` is set off from the others.
+    ``struts`` are drawn between two places each, with words.
     ``showing`` leaves parts out; ``node_lines`` draws where a standing mode does not move.
 
     ``RefusedError`` when true scale is asked for and no size is known; ``InputError`` for a mode that is not there.
@@ -58,6 +66,7 @@ def single_picture(
     body = _body(study, index, scale, scale.turn, energy and not given_energy)
     if given_energy:
         body = replace(body, density=_given_density(study, index))
+    body = replace(_with_finding(body, finding, scale, chosen), struts=strut_marks(body, struts))
     note = scale_note(
         mode,
         study.name(index),
@@ -93,11 +102,13 @@ def pair_picture(
     paired_by: str = "",
     showing: Showing = WHOLE,
     node_lines: bool = False,
+    findings: tuple[HingeFinding | None, HingeFinding | None] = (None, None),
     **look: Any,
 ) -> Picture:
     """The picture of two modes of two designs, ``layout`` "side" or "overlay", on one colour scale.
 
     ``showing`` and ``node_lines`` as for one mode.
+    ``findings`` mark hinges and flaps of designs side by side, named only; an overlay shows form alone.
     ``paired_by`` says in the note who or what decided that these two correspond.
     """
     studies, modes = (first, second), (first_mode, second_mode)
@@ -112,6 +123,11 @@ def pair_picture(
     bodies = tuple(
         _body(study, i, scale, scale.turn, energy) for study, i, scale in zip(studies, indices, scales, strict=True)
     )
+    if layout == "side":
+        bodies = tuple(
+            _with_finding(body, finding, scale, brief=True)
+            for body, finding, scale in zip(bodies, findings, scales, strict=True)
+        )
     coloured = [body for body in bodies if body.density is not None]
     remarks = [first.condition, second.condition, paired_by]
     remarks += [
@@ -145,6 +161,16 @@ def pair_picture(
     if layout == "overlay":
         return picture
     return picture.with_(height=_height(width, side_height(picture, note_height(picture)) / BASE_WIDTH))
+
+
+def _with_finding(
+    body: Body, finding: HingeFinding | None, scale: Scale, chosen: int = 0, *, brief: bool = False
+) -> Body:
+    """The body with marks for what was found in its mode, drawn turned and sized by ``scale``."""
+    if finding is None:
+        return body
+    hinges = hinge_marks(finding, scale, scale.turn, body.mesh, chosen, brief=brief)
+    return replace(body, hinges=hinges, flaps=flap_marks(finding, brief=brief))
 
 
 def _shown(

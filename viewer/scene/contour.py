@@ -15,9 +15,14 @@ def silhouettes(edges: Edges, face_normals: Array, toward_eye: Array) -> Array:
     return (front[a] != front[b]) & (b >= 0)
 
 
+def drawn(edges: Edges, face_normals: Array, toward_eye: Array) -> Array:
+    """(e,) bool: all contour edges at this shape and camera."""
+    return edges.feature | silhouettes(edges, face_normals, toward_eye)
+
+
 def contour(edges: Edges, face_normals: Array, toward_eye: Array) -> Array:
     """(k, 2) skin nodes of all contour edges at this shape and camera."""
-    return edges.nodes[edges.feature | silhouettes(edges, face_normals, toward_eye)]
+    return edges.nodes[drawn(edges, face_normals, toward_eye)]
 
 
 def median_length(points: Array, pairs: Array) -> float:

@@ -12,13 +12,13 @@ from dataclasses import dataclass
 import numpy as np
 
 from viewer.model.arrays import Array
-from viewer.scene import marks
+from viewer.scene import hinge_marks, marks
 from viewer.scene.figures import kilograms
 from viewer.scene.motion import displacement, is_standing, positions
 from viewer.scene.picture import Body, Picture
-from viewer.scene.primitives import Box, Frame, Line, Point, Primitive, Text, bounds, grown
+from viewer.scene.primitives import Box, Disc, Frame, Line, Point, Primitive, Text, bounds, grown
 from viewer.scene.surface import Surface, surface_of
-from viewer.scene.tokens import THEMES
+from viewer.scene.tokens import THEMES, Tokens
 from viewer.scene.typeface import text_width
 
 SIZE, LEADING = 15.0, 20.5  # label text, distance of its lines
@@ -29,6 +29,8 @@ _STEP = 6  # px, grain of the places tried
 _SHORT_LIST = 400  # places whose leaders are looked at
 _PAD = 5.0  # free border of a label
 _LEADER = 1.3
+DOT = 3.0  # radius of the dot in which a leader to an area ends
+SIGN = 8.5  # radius of the disc that holds a sign
 
 
 @dataclass(frozen=True, eq=False)
@@ -57,11 +59,17 @@ class Anchor:
 
 @dataclass(frozen=True, eq=False)
 class Label:
-    """Lines of (words, bold) in one colour that belong to an anchor."""
+    """Lines of (words, bold) that belong to an anchor.
+
+    colour   of the first line and the leader; ``further`` of the other lines, empty: the same
+    end      what the leader ends in: "" nothing, "dot", or the sign "+" or "−" in a disc
+    """
 
     lines: tuple[tuple[str, bool], ...]
     colour: str
     anchor: Anchor
+    further: str = ""
+    end: str = ""
 
     @property
     def size(self) -> tuple[float, float]:
@@ -79,11 +87,17 @@ class Placed:
 
     def texts(self) -> list[Primitive]:
         """The label's lines, set flush left."""
-        left, top = self.box[0], self.box[1]
+        left, top, label = self.box[0], self.box[1], self.label
+        colours = (label.colour, *(label.further or label.colour for _ in label.lines[1:]))
         return [
-            Text(left, top + 0.8 * SIZE + LEADING * k, words, self.label.colour, SIZE, bold)
-            for k, (words, bold) in enumerate(self.label.lines)
+            Text(left, top + 0.8 * SIZE + LEADING * k, words, colour, SIZE, bold)
+            for k, ((words, bold), colour) in enumerate(zip(label.lines, colours, strict=True))
         ]
+
+    def moving(self, frame: Frame, phase: float, halo: str) -> list[Primitive]:
+        """The leader and what it ends in, at a phase."""
+        line = self.leader(frame, phase)
+        return [*([line] if line is not None else []), *_end(self.label, frame, phase, halo)]
 
     def leader(self, frame: Frame, phase: float) -> Line | None:
         """From the label to the rim of the mark at a phase; None when the mark is beside the label."""
@@ -100,13 +114,31 @@ def leader(start: Point, end: Point, clear: float, colour: str, width: float = _
     return Line((start, (float(x), float(y))), colour, width)
 
 
+def _end(label: Label, frame: Frame, phase: float, halo: str) -> list[Primitive]:
+    if not label.end:
+        return []
+    x, y = label.anchor.seen(frame, phase)
+    if label.end == "dot":
+        return [Disc(x, y, DOT, label.colour)]
+    arm, thick = 0.55 * SIGN, 2.4
+    bars = [Line(((x - arm, y), (x + arm, y)), halo, thick)]
+    if label.end == "+":
+        bars.append(Line(((x, y - arm), (x, y + arm)), halo, thick))
+    return [Disc(x, y, SIGN + 1.6, halo), Disc(x, y, SIGN, label.colour), *bars]
+
+
 def picture_labels(picture: Picture, frame: Frame) -> list[Label]:
-    """Functional points, then masses; of two compared bodies only the first, or in an overlay the one in front."""
+    """Hinges, flaps, struts and call-outs of every body; functional points, then masses, of two compared bodies only
+    the first's, or in an overlay of the one in front."""
     tokens = THEMES[picture.theme]
+    diagonal = max(b.mesh.diagonal for b in picture.bodies)
+    unit = diagonal / frame.metres_per_pixel
+    found = [
+        label for k, body in enumerate(picture.bodies) for label in _found_labels(body, k, frame, diagonal, tokens)
+    ]
     index = 1 if picture.layout == "overlay" else 0
     body = picture.bodies[index]
-    unit = max(b.mesh.diagonal for b in picture.bodies) / frame.metres_per_pixel
-    found = [
+    found += [
         Label(
             ((mark.label, False),),
             tokens.point,
@@ -120,6 +152,39 @@ def picture_labels(picture: Picture, frame: Frame) -> list[Label]:
         anchor = Anchor(index, mass.position, body.factor * mass.motion[:3], clear)
         found.append(Label(((mass.name, True), (kilograms(mass.mass), False)), tokens.ink, anchor))
     return found
+
+
+def _found_labels(body: Body, index: int, frame: Frame, diagonal: float, tokens: Tokens) -> list[Label]:
+    """Labels of what was found about a body, or is tried on it."""
+    found = []
+    for hinge in body.hinges:
+        at, move = hinge_marks.near_head(hinge, body.factor, diagonal, frame.toward_eye)
+        anchor = Anchor(index, at, move, hinge_marks.head_radius(diagonal) / frame.metres_per_pixel)
+        colour = tokens.accent if hinge.chosen else tokens.ink
+        found.append(Label(_lines(hinge.title, hinge.lines), colour, anchor, tokens.ink))
+    for flap in body.flaps:
+        row = _middle_node(body, flap.cells)
+        anchor = Anchor(index, body.mesh.points[row], body.factor * body.shape[row], 0.0)
+        found.append(Label(_lines(flap.title, flap.lines), tokens.accent, anchor, tokens.ink, "dot"))
+    for strut in body.struts:
+        anchor = Anchor(index, strut.ends.mean(axis=0), body.factor * strut.motion.mean(axis=0), 6.0)
+        found.append(Label(_lines(strut.title, strut.lines), tokens.modified, anchor, tokens.ink))
+    for call in body.call_outs:
+        anchor = Anchor(index, call.position, body.factor * call.motion, SIGN + 1.6)
+        colour, end = (tokens.gain[-1], "+") if call.sign > 0 else (tokens.gain[0], "−")
+        found.append(Label(_lines(call.lines[0], call.lines[1:]), colour, anchor, tokens.ink, end))
+    return found
+
+
+def _lines(title: str, further: Sequence[str]) -> tuple[tuple[str, bool], ...]:
+    return ((title, True), *((words, False) for words in further))
+
+
+def _middle_node(body: Body, cells: Array) -> int:
+    """The drawn node of the cells that is nearest to their middle."""
+    rows = np.intersect1d(body.mesh.nodes_of_cells(cells), body.drawn.nodes)
+    points = body.mesh.points[rows]
+    return int(rows[np.argmin(np.linalg.norm(points - points.mean(axis=0), axis=1))])
 
 
 # ---- what is taken

@@ -10,8 +10,10 @@ import numpy as np
 
 from viewer.model.arrays import Array
 from viewer.scene.forms import Piece, axes, circle, revolved, ring, sphere
+from viewer.scene.hinge_marks import fans, pins
 from viewer.scene.pegs import PEG, peg_places, pegs, spread
 from viewer.scene.picture import Body, MassMark, Picture, PointMark
+from viewer.scene.strut_marks import bars
 
 BEAD = 0.036  # radius of the heaviest bead of a picture
 LEAST_BEAD = 0.008
@@ -35,13 +37,13 @@ def mark_pieces(picture: Picture, toward_eye: Array | None = None) -> tuple[tupl
 
 
 def standing_pieces(picture: Picture) -> tuple[tuple[Piece, ...], ...]:
-    """By body the marks that are the same from any side: pegs, beads and legs."""
+    """By body the marks that are the same from any side: pegs, beads and legs, pins of hinges, struts."""
     diagonal, heaviest = _common(picture)
     return tuple(standing_marks(body, diagonal, heaviest) for body in picture.bodies)
 
 
 def facing_pieces(picture: Picture, toward_eye: Array | None = None) -> tuple[tuple[Piece, ...], ...]:
-    """By body the marks that face the eye: rims of beads, functional points."""
+    """By body the marks that face the eye: rims of beads, fans of hinges, functional points."""
     diagonal, heaviest = _common(picture)
     eye = np.asarray(picture.view.toward_eye if toward_eye is None else toward_eye, float)
     eye = eye / np.linalg.norm(eye)
@@ -54,7 +56,7 @@ def _common(picture: Picture) -> tuple[float, float]:
 
 
 def standing_marks(body: Body, diagonal: float, heaviest: float) -> tuple[Piece, ...]:
-    """Pegs as one piece, then beads with their legs.
+    """Pegs as one piece, then beads with their legs, pins of hinges, struts.
 
     diagonal  m, by which marks are sized
     heaviest  kg, the mass whose bead has the full radius
@@ -65,14 +67,15 @@ def standing_marks(body: Body, diagonal: float, heaviest: float) -> tuple[Piece,
         pieces.append(pegs(places, PEG * diagonal))
     for mass in body.masses:
         pieces += _bead(body, mass, bead_radius(mass.mass, heaviest, diagonal), diagonal)
-    return tuple(pieces)
+    return (*pieces, *pins(body, diagonal), *bars(body, diagonal))
 
 
 def facing_marks(body: Body, diagonal: float, heaviest: float, toward_eye: Array) -> tuple[Piece, ...]:
-    """Rims of beads, then functional points; they face the unit vector ``toward_eye``."""
+    """Rims of beads, fans of hinges, then functional points; they face the unit vector ``toward_eye``."""
     pieces: list[Piece] = []
     for mass in body.masses:
         pieces += _rims(body, mass, bead_radius(mass.mass, heaviest, diagonal), toward_eye)
+    pieces += fans(body, diagonal, toward_eye)
     return (*pieces, *(_point(body, mark, diagonal, toward_eye) for mark in body.points))
 
 

@@ -137,8 +137,16 @@ def _larger(magnification: float) -> str:
 
 
 def _real(scale: Scale) -> str:
-    words = {"peak": "", "3 sigma": " 3σ"}.get(scale.statistic, f" {scale.statistic}")
-    return length(scale.largest_real or 0.0) + words + (" relative to the base" if scale.relative else "")
+    return (
+        length(scale.largest_real or 0.0)
+        + statistic_words(scale)
+        + (" relative to the base" if scale.relative else "")
+    )
+
+
+def statistic_words(scale: Scale) -> str:
+    """The statistic of real figures as it stands behind one: "", " rms", " 3σ"."""
+    return {"peak": "", "3 sigma": " 3σ"}.get(scale.statistic, f" {scale.statistic}")
 
 
 def _where(scale: Scale) -> str:

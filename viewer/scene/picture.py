@@ -60,12 +60,79 @@ class NodeLines:
 
 
 @dataclass(frozen=True, eq=False)
+class HingeMark:
+    """Where a part folds: drawn as a pin through the part along its axis, a fan at its near end, and a label.
+
+    title   "hinge 1"; ``lines`` are what its label says below
+    axis    (k, 3) m at rest, k ≥ 2 for a line; (1, 3) for a joint, which has a place but no length
+    motion  (k, 3) of these points in units of the shape
+    fold    (3,) rad per unit of the shape: rotation of the folding side relative to the other
+    arm     (3,) unit, from the axis into the folding side; ``reach`` m, how far that side goes
+    cells   cell rows of the band: the mark goes where none of them is shown
+    chosen  set off from other hinges
+    """
+
+    title: str
+    lines: tuple[str, ...]
+    axis: Array
+    motion: Array
+    fold: Array
+    arm: Array
+    reach: float
+    cells: Array
+    chosen: bool = False
+
+
+@dataclass(frozen=True, eq=False)
+class FlapMark:
+    """A region that swings as one piece: tinted, outlined, its border with the rest dashed.
+
+    title   "flap 1"; ``lines`` are what its label says below
+    cells   cell rows
+    """
+
+    title: str
+    lines: tuple[str, ...]
+    cells: Array
+
+
+@dataclass(frozen=True, eq=False)
+class StrutMark:
+    """A strut on trial: a dashed bar between two places of the body.
+
+    title   "strut"; ``lines`` are what its label says below
+    ends    (2, 3) m at rest
+    motion  (2, 3) of the ends in units of the shape
+    """
+
+    title: str
+    lines: tuple[str, ...]
+    ends: Array
+    motion: Array
+
+
+@dataclass(frozen=True, eq=False)
+class CallOut:
+    """Words about one place of a coloured body; ``sign`` +1 or −1 is marked so that it can be told without colour.
+
+    motion  (3,) of the place in units of the shape
+    """
+
+    lines: tuple[str, ...]
+    position: Array
+    motion: Array
+    sign: int
+    cells: Array
+
+
+@dataclass(frozen=True, eq=False)
 class Body:
     """One design in one mode.
 
     shape    (n_nodes, 3) float64 or complex128, rows as in ``mesh.points``
     factor   drawn metres per unit of the shape
     density  (n_cells,) strain-energy density ÷ the body's mean by cell row, or None: plain body
+    gain     (n_cells,) Hz per kg put into the cell, NaN where none, in place of the density, or None
     skin     what is drawn, over rows of ``mesh.points``; None: the skin of the whole mesh (see ``drawn``)
     """
 
@@ -80,6 +147,11 @@ class Body:
     points: tuple[PointMark, ...] = ()
     skin: Skin | None = None
     node_lines: NodeLines | None = None
+    hinges: tuple[HingeMark, ...] = ()
+    flaps: tuple[FlapMark, ...] = ()
+    struts: tuple[StrutMark, ...] = ()
+    gain: Array | None = None
+    call_outs: tuple[CallOut, ...] = ()
 
     @property
     def drawn(self) -> Skin:
@@ -90,6 +162,8 @@ class Body:
         object.__setattr__(self, "shape", frozen(self.shape, shape=(self.mesh.n_nodes, 3)))
         if self.density is not None:
             object.__setattr__(self, "density", frozen(self.density, np.float64, shape=(self.mesh.n_cells,)))
+        if self.gain is not None:
+            object.__setattr__(self, "gain", frozen(self.gain, np.float64, shape=(self.mesh.n_cells,)))
 
 
 @dataclass(frozen=True)
@@ -128,6 +202,7 @@ class Picture:
 
     magnification  drawn ÷ real, 1.0 at true scale, None when the size is arbitrary (no second ruler line)
     energy_top     top of the colour scale (a perfect square), one for all bodies; None: no colour bar
+    gain_top       the same for bodies coloured by gain, from −gain_top to +gain_top
     energy_words   title of the colour bar
     """
 
@@ -137,6 +212,7 @@ class Picture:
     magnification: float | None = None
     energy_top: float | None = None
     energy_words: str = "strain energy density ÷ mean"
+    gain_top: float | None = None
     energy_caution: str = ""  # one short line under the bar when energies are not trusted
     magnified: Magnified | None = None
     view: View = View()

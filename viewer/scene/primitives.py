@@ -125,6 +125,7 @@ class Frame:
     boxes             one viewport (left, top, right, bottom) per body; the same box twice in an overlay
     metres_per_pixel  of a sheet pixel; cameras are parallel and compared bodies share it
     project           ``(points (n, 3) in metres, body index) -> (n, 2)`` sheet pixels in the whole picture
+    toward_eye        (3,) unit vector from the bodies to the eye
     """
 
     width: float
@@ -132,6 +133,7 @@ class Frame:
     boxes: tuple[Box, ...]
     metres_per_pixel: float
     project: Callable[[Array, int], Array]
+    toward_eye: Array
 
 
 @dataclass(frozen=True, eq=False)

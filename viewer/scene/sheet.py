@@ -31,6 +31,7 @@ from viewer.scene.primitives import (
 from viewer.scene.rulers import ruler_items
 from viewer.scene.surface import Surface
 from viewer.scene.title_keys import title_key_items
+from viewer.scene.tokens import THEMES
 
 __all__ = [
     "Box",
@@ -63,8 +64,8 @@ class SheetPlan:
 
     def at(self, phase: float) -> Sheet:
         """The sheet at a phase; ``fixed`` is the same object every time."""
-        leaders = (placed.leader(self.frame, phase) for placed in self.labels)
-        moving: list[Primitive] = [line for line in leaders if line is not None]
+        halo = THEMES[self.picture.theme].halo
+        moving = [item for placed in self.labels for item in placed.moving(self.frame, phase, halo)]
         if self.magnifier is not None:
             moving.append(self.magnifier.dot(phase))
         moving.append(note_knob(self.picture, self.frame, phase))

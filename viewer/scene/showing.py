@@ -83,7 +83,7 @@ class Showing:
                 found=", ".join(self.words),
                 do="hide fewer groups, or move the cut",
             )
-        return _marked(shown, alive)
+        return _marked(shown, alive, kept)
 
 
 def _check_crossing(plane: section.Plane, bodies: Sequence[Body]) -> None:
@@ -126,8 +126,12 @@ def _skin_of(mesh: Mesh, kept: Array) -> Skin:
     return replace(found, cell=rows[found.cell], edge_cell=rows[found.edge_cell])
 
 
-def _marked(body: Body, alive: Array) -> Body:
-    """Marks stay where something they hold, or are held by, is shown."""
+def _marked(body: Body, alive: Array, kept: Array) -> Body:
+    """Marks stay where something they hold, are held by or tell about is shown: nodes ``alive``, cells ``kept``."""
+    cells = kept.copy()
+    for _, nodes, rows in _by_block(body.mesh, kept):
+        cells[rows] = alive[nodes].any(axis=1)
+    flaps = [replace(mark, cells=mark.cells[cells[mark.cells]]) for mark in body.flaps]
     supports = [replace(mark, rows=mark.rows[alive[mark.rows]]) for mark in body.supports]
     masses = [replace(mark, footprint=mark.footprint[alive[mark.footprint]]) for mark in body.masses]
     return replace(
@@ -135,4 +139,7 @@ def _marked(body: Body, alive: Array) -> Body:
         supports=tuple(mark for mark in supports if len(mark.rows)),
         masses=tuple(mark for mark in masses if len(mark.footprint)),
         points=tuple(mark for mark in body.points if mark.footprint is None or alive[mark.footprint].any()),
+        hinges=tuple(mark for mark in body.hinges if cells[mark.cells].any()),
+        flaps=tuple(mark for mark in flaps if len(mark.cells)),
+        call_outs=tuple(mark for mark in body.call_outs if cells[mark.cells].any()),
     )

@@ -164,4 +164,5 @@ def _furniture(picture: Picture, wide: bool) -> tuple[float, float]:
 def frame(picture: Picture, camera: Camera, boxes: tuple[Box, ...]) -> Frame:
     """What the sheet over this picture must know about the camera."""
     width, height = sheet_size(picture.width, picture.height)
-    return Frame(width, height, boxes, camera.metres_per_pixel, lambda p, k: camera.project(p, boxes[k]))
+    project = lambda p, k: camera.project(p, boxes[k])  # noqa: E731
+    return Frame(width, height, boxes, camera.metres_per_pixel, project, camera.toward_eye)

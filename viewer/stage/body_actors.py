@@ -10,13 +10,16 @@ from vtkmodules.vtkRenderingCore import vtkActor, vtkPolyDataMapper, vtkRenderer
 
 from viewer.model.arrays import Array
 from viewer.scene import contour, ghost, tokens
+from viewer.scene.colouring import colouring
+from viewer.scene.flap_outline import flap_outline
 from viewer.scene.motion import displacement
 from viewer.scene.node_lines import crossings
-from viewer.scene.palette import energy_ramp, energy_share, mix, pick
+from viewer.scene.palette import mix, pick
 from viewer.scene.picture import Body, Picture
 from viewer.scene.surface import Surface
 from viewer.scene.tokens import THEMES, rgb
 from viewer.scene.view import Camera
+from viewer.stage.flap_actors import FlapActors
 from viewer.stage.segments import Segments
 
 LIFT = 1.5  # px: lines stand this far before the surface, so that they do not sink into it
@@ -24,6 +27,7 @@ GHOST_LIFT = 0.5  # px: less, so that the contour wins where body and ghost coin
 CASED_LIFT = (2.0, 2.5)  # px: casing and core of node lines
 DASHED_LIFT = 3.0  # px: more, so that the compared contour wins where both designs coincide
 
+_TINT_LIFT = 1.0  # depth units and slope factor by which a tint stands before the surface it lies on
 _SAME_PLACE = 1e-6  # of the diagonal: edges this near to one another are one edge of the ghost
 
 
@@ -51,30 +55,44 @@ class SurfaceActor:
         self._points = numpy_to_vtk(motion.rest[surface.vertex], deep=True)
         self._normals = numpy_to_vtk(np.zeros((surface.n_vertices, 3), np.float32), deep=True)
         self._normals.SetName("normals")
-        points, cells, self._data = vtkPoints(), vtkCellArray(), vtkPolyData()
-        points.SetData(self._points)
-        count = len(surface.triangles)
+        self._corners = vtkPoints()
+        self._corners.SetData(self._points)
+        self._renderer, self._origin = renderer, motion.origin
+        self._sheets: list[vtkPolyData] = []
+        self.actor, self._mapper, self._data = self._lay(surface.triangles, colour)
+
+    def _lay(self, triangles: Array, colour: str) -> tuple[vtkActor, vtkPolyDataMapper, vtkPolyData]:
+        """An actor of triangles (t, 3) of vertices, which go where this surface goes."""
+        cells, data, mapper, actor = vtkCellArray(), vtkPolyData(), vtkPolyDataMapper(), vtkActor()
         cells.SetData(
-            numpy_to_vtkIdTypeArray(np.arange(0, 3 * count + 1, 3, dtype=np.int64), deep=True),
-            numpy_to_vtkIdTypeArray(surface.triangles.ravel().astype(np.int64), deep=True),
+            numpy_to_vtkIdTypeArray(np.arange(0, 3 * len(triangles) + 1, 3, dtype=np.int64), deep=True),
+            numpy_to_vtkIdTypeArray(triangles.ravel().astype(np.int64), deep=True),
         )
-        self._data.SetPoints(points)
-        self._data.SetPolys(cells)
-        self._data.GetPointData().SetNormals(self._normals)
-        self._mapper = vtkPolyDataMapper()
-        self._mapper.SetInputData(self._data)
-        self._mapper.ScalarVisibilityOff()
-        self.actor = vtkActor()
-        self.actor.SetMapper(self._mapper)
-        self.actor.SetPosition(*motion.origin)
-        self.actor.SetVisibility(count > 0)
-        paint = self.actor.GetProperty()
+        data.SetPoints(self._corners)
+        data.SetPolys(cells)
+        data.GetPointData().SetNormals(self._normals)
+        mapper.SetInputData(data)
+        mapper.ScalarVisibilityOff()
+        actor.SetMapper(mapper)
+        actor.SetPosition(*self._origin)
+        actor.SetVisibility(len(triangles) > 0)
+        paint = actor.GetProperty()
         paint.SetColor(*rgb(colour))
         paint.SetInterpolationToPhong()
         paint.SetAmbient(0.70)
         paint.SetDiffuse(0.30)
         paint.SetSpecular(0.0)
-        renderer.AddActor(self.actor)
+        self._renderer.AddActor(actor)
+        self._sheets.append(data)
+        return actor, mapper, data
+
+    def tint(self, some: Array, colour: str, opacity: float) -> None:
+        """Lay a see-through ``colour`` over the triangles ``some`` (t,) bool."""
+        actor, mapper, _ = self._lay(self._surface.triangles[some], colour)
+        actor.GetProperty().SetOpacity(opacity)
+        actor.PickableOff()
+        mapper.SetResolveCoincidentTopologyToPolygonOffset()
+        mapper.SetRelativeCoincidentTopologyPolygonOffsetParameters(-_TINT_LIFT, -_TINT_LIFT)
 
     def colour_by(self, share: Array, colours: Array) -> None:
         """Colour by a value 0…1 by vertex through a ramp (n, 3) uint8."""
@@ -95,8 +113,9 @@ class SurfaceActor:
         vtk_to_numpy(self._normals)[:] = self._surface.vertex_normals(face_normals)
         self._points.Modified()
         self._normals.Modified()
-        self._data.GetPoints().Modified()
-        self._data.Modified()
+        self._corners.Modified()
+        for data in self._sheets:
+            data.Modified()
 
 
 class BodyActors:
@@ -116,15 +135,22 @@ class BodyActors:
         colour = mix(theme.body, tint, tokens.OVERLAY_TINT) if tint else theme.body
         self._solid = SurfaceActor(renderer, surface, self._motion, colour)
         self._beam_colours: Array | None = None
-        if body.density is not None and picture.energy_top and not tint:
-            ramp = energy_ramp(picture.theme)
-            share = energy_share(surface.vertex_values(body.density), picture.energy_top)
-            self._solid.colour_by(share, ramp)
-            self._beam_colours = pick(ramp, energy_share(body.density[surface.line_cells], picture.energy_top))
+        found = None if tint else colouring(picture, body)
+        if found is not None:
+            self._solid.colour_by(found.share(surface.vertex_values(found.values)), found.ramp)
+            self._beam_colours = pick(found.ramp, found.share(found.values[surface.line_cells]))
         edge = tint or theme.body_edge
         width = tokens.OVERLAY_SOLID if tint else tokens.CONTOUR
         self._contour = Segments(renderer, edge, scale * width, origin)
         self._beams = Segments(renderer, edge, scale * tokens.BEAM, origin) if len(surface.lines) else None
+        self._flaps: FlapActors | None = None
+        self._own = np.ones(len(surface.edges.nodes), bool)
+        if body.flaps and not tint:
+            outline = flap_outline(surface, body.flaps)
+            self._solid.tint(outline.inside, theme.flap, tokens.FLAP_TINT)
+            rest = self._motion.rest
+            self._flaps = FlapActors(renderer, surface, outline, rest, origin, self._diagonal, theme, scale)
+            self._own = ~outline.owned
         self._mesh = None
         if picture.mesh_edges:
             self._mesh = Segments(renderer, theme.mesh_edge, scale, origin, tokens.MESH_EDGE_OPACITY)
@@ -150,7 +176,10 @@ class BodyActors:
         self._solid.move(points, normals)
         lift = (LIFT * camera.metres_per_pixel * camera.toward_eye).astype(np.float32)
         raised = points + lift
-        self._contour.show(raised[contour.contour(surface.edges, normals, camera.toward_eye)])
+        drawn = contour.drawn(surface.edges, normals, camera.toward_eye)
+        self._contour.show(raised[surface.edges.nodes[drawn & self._own]])
+        if self._flaps is not None:
+            self._flaps.draw(raised, drawn)
         if self._beams is not None:
             self._beams.show(raised[surface.lines], self._beam_colours)
         for line, height in zip(self._still_lines, CASED_LIFT, strict=False):

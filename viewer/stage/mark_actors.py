@@ -56,6 +56,8 @@ class _PieceActors:
             paint.SetAmbient(0.70)
             paint.SetDiffuse(0.30)
             paint.SetSpecular(0.0)
+            paint.SetOpacity(piece.opacity)
+            paint.SetFrontfaceCulling(piece.inside_out)
             if not piece.shaded:
                 paint.LightingOff()
             elif piece.normals is None:
