@@ -12,7 +12,7 @@ from viewer.cells import KINDS
 from viewer.model.mesh import CellBlock, Mesh
 
 # Corner cells of a unit brick whose corners are numbered as in hex8 (8: its centre).
-_SPLITS = {
+SPLITS = {
     "hex": ((0, 1, 2, 3, 4, 5, 6, 7),),
     "wedge": ((0, 1, 2, 4, 5, 6), (0, 2, 3, 4, 6, 7)),
     "tet": ((0, 1, 2, 6), (0, 2, 3, 6), (0, 3, 7, 6), (0, 7, 4, 6), (0, 4, 5, 6), (0, 5, 1, 6)),
@@ -69,8 +69,8 @@ def _structured(kind: str, counts: tuple[int, ...], size: np.ndarray, distort: f
     if cell.family == "pyramid":
         bricks = np.hstack([bricks, np.arange(len(points), len(points) + len(bricks))[:, None]])
         points = np.vstack([points, points[bricks[:, :-1]].mean(axis=1)])
-    corners = bricks[:, np.array(_SPLITS[cell.family])].reshape(-1, cell.n_corners)
-    points, nodes = _elevate(cell, points, corners)
+    corners = bricks[:, np.array(SPLITS[cell.family])].reshape(-1, cell.n_corners)
+    points, nodes = elevate(cell, points, corners)
     groups = {}
     for axis, name in zip(range(dim), "xyz", strict=False):
         for end, value in enumerate((0.0, size[axis])):
@@ -92,7 +92,7 @@ def _means(cell) -> np.ndarray:
     return weights / weights.sum(axis=1, keepdims=True)
 
 
-def _elevate(cell, points: np.ndarray, corners: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+def elevate(cell, points: np.ndarray, corners: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
     """Add the mid-side and centre nodes of ``cell``, shared between neighbours."""
     columns = [corners[:, i] for i in range(cell.n_corners)]
     for weights in _means(cell)[cell.n_corners :]:

@@ -1,0 +1,192 @@
+"""Score the search for hinge lines: ``python -m tests.collection.score [--families tuning|held|unseen|all] [--write]``.
+
+Prints totals and the rows that went wrong; ``--write`` puts all rows into table.csv and the totals into totals.csv.
+``--noise`` adds the run with noisy shapes, ``--invariance`` that with other meshes of the same parts.
+"""
+
+from __future__ import annotations
+
+import argparse
+import csv
+import io
+import sys
+import time
+from collections.abc import Callable, Iterable, Sequence
+from dataclasses import asdict, fields
+from importlib import import_module
+from pathlib import Path
+
+import numpy as np
+
+from tests.collection.parts import SEED, VERSION, Part
+from tests.collection.scoring import Row, score
+from tests.collection.solved import Solved, solved
+from viewer.jobs import write_text
+
+FAMILIES = {"tuning": "tuning", "held": "held_out", "unseen": "unseen"}
+HERE = Path(__file__).parent
+TABLE = HERE / "table.csv"
+TOTALS = HERE / "totals.csv"
+DIRECTION_DEG, POSITION, SHARE_OFF = 3.0, 0.01, 0.15  # what a strong hinge must keep to
+
+
+def parts_of(name: str) -> list[Part]:
+    return import_module(f"tests.collection.{FAMILIES[name]}").parts()
+
+
+def totals(rows: Sequence[Row]) -> dict[str, float]:
+    """Figures over rows of lines, joints and modes without hinges."""
+    strong = [r for r in rows if r.level == "strong"]
+    lines = [r for r in strong if not _joint(r)]
+    joints = [r for r in strong if _joint(r)]
+    hits = [r for r in lines if r.hit]
+    free = _modes(r for r in rows if r.free)
+    bent = _modes(r for r in rows if not r.free)
+    out: dict[str, float] = {
+        "parts": len({r.part for r in rows}),
+        "modes": len(free) + len(bent),
+        "strong hinges": len(lines),
+        "found": len(hits),
+        "recall": _ratio(len(hits), len(lines)),
+        "within all bounds": sum(_within(r) for r in hits),
+        "joints": len(joints),
+        "joints found": sum(r.hit for r in joints),
+        "joints called joints": sum(r.hit and r.found.startswith("joint") for r in joints),
+        "strong by energy only": sum(r.level == "energy only" for r in rows),
+        "of these found": sum(r.level == "energy only" and r.hit for r in rows),
+        "hinge-free modes": len(free),
+        "of these with a false hinge": sum(any(r.false for r in m) for m in free),
+        "false share": _ratio(sum(any(r.false for r in m) for m in free), len(free)),
+        "of these with an idle band named": sum(any(r.idle for r in m) for m in free),
+        "other modes with a stray hinge": sum(any(r.false for r in m) for m in bent),
+        "other modes": len(bent),
+    }
+    for name in ("position", "direction", "axis", "fold", "stiffness"):
+        values = np.abs([getattr(r, name) for r in hits])
+        values = values[np.isfinite(values)]
+        for word, figure in (("median", np.median), ("worst", np.max)):
+            out[f"{name} {word}"] = float(figure(values)) if len(values) else float("nan")
+        bound = {"position": POSITION, "direction": DIRECTION_DEG, "axis": DIRECTION_DEG}.get(name, SHARE_OFF)
+        out[f"{name} beyond {bound:g}"] = int((values > bound).sum())
+    return out
+
+
+def _joint(row: Row) -> bool:
+    return row.part.split("-")[0] in ("square_neck", "point_joint")
+
+
+def _within(r: Row) -> bool:
+    pairs = ((r.position, POSITION), (r.direction, DIRECTION_DEG), (r.axis, DIRECTION_DEG), (r.fold, SHARE_OFF),
+             (r.stiffness, SHARE_OFF))  # fmt: skip
+    return all(not abs(value) > bound for value, bound in pairs)
+
+
+def _ratio(part: int, whole: int) -> float:
+    return part / whole if whole else float("nan")
+
+
+def _modes(rows: Iterable[Row]) -> list[list[Row]]:
+    groups: dict[tuple, list[Row]] = {}
+    for r in rows:
+        groups.setdefault((r.part, r.density, r.mode), []).append(r)
+    return list(groups.values())
+
+
+def wrong(row: Row) -> str:
+    """What is to be looked at in a row, "" when nothing is."""
+    words = []
+    if row.level == "strong" and not row.hit:
+        words.append("MISSED")
+    if row.level == "strong" and row.hit and not _joint(row) and not _within(row):
+        words.append("INEXACT")
+    if row.false:
+        words.append("FALSE" if row.free else "STRAY")
+    return " ".join(words)
+
+
+def text_of(rows: Sequence[Row]) -> str:
+    """The table as text; its first line states seed and version of the generator."""
+    out = io.StringIO()
+    out.write(f"# seed {SEED}, generator version {VERSION}\n")
+    writer = csv.DictWriter(out, [f.name for f in fields(Row)], lineterminator="\n")
+    writer.writeheader()
+    for row in rows:
+        writer.writerow({name: _cell(value) for name, value in asdict(row).items()})
+    return out.getvalue()
+
+
+def _cell(value: object) -> object:
+    if isinstance(value, bool):
+        return int(value)
+    if isinstance(value, float):
+        return "" if np.isnan(value) else f"{value:.4g}"
+    return value
+
+
+def read_table(path: Path = TABLE) -> tuple[str, list[dict[str, str]]]:
+    """First line and rows of a table written by :func:`text_of`."""
+    first, rest = path.read_text("utf-8").split("\n", 1)
+    return first, list(csv.DictReader(io.StringIO(rest)))
+
+
+def run(parts: Iterable[Part], say: Callable[[str], None], density: int = 1) -> list[Row]:
+    """All parts scored; ``say`` hears what went wrong."""
+    rows: list[Row] = []
+    for part in parts:
+        ready: Solved = solved(part, density)
+        start = time.perf_counter()
+        fresh = score(ready)
+        took = (time.perf_counter() - start) / max(1, part.modes)
+        say(f"{part.name} ({ready.built.mesh.n_cells} cells, {took:.2f} s a mode)")
+        for row in fresh:
+            if wrong(row):
+                say(
+                    f"    {wrong(row)}: " + " ".join(f"{k}={_cell(v)}" for k, v in asdict(row).items() if k != "part")
+                )
+        rows += fresh
+    return rows
+
+
+def show(title: str, figures: dict[str, float], say: Callable[[str], None]) -> None:
+    say(f"\n{title}")
+    for name, value in figures.items():
+        say(f"    {name:34s} {value if isinstance(value, int) else format(value, '.4g')}")
+
+
+def main(arguments: Sequence[str] | None = None) -> int:
+    parser = argparse.ArgumentParser(prog="python -m tests.collection.score", description=__doc__)
+    parser.add_argument("--families", choices=[*FAMILIES, "scored", "all"], default="tuning")
+    parser.add_argument("--part", default="", help="only parts whose names contain this")
+    parser.add_argument("--fine", action="store_true", help="twice the density")
+    parser.add_argument("--noise", action="store_true")
+    parser.add_argument("--invariance", action="store_true")
+    parser.add_argument("--write", action="store_true", help="write table.csv and totals.csv (with --families all)")
+    given = parser.parse_args(arguments)
+    say = lambda line: print(line, flush=True)  # noqa: E731, T201
+    chosen = {"scored": ["held", "unseen"], "all": list(FAMILIES)}.get(given.families, [given.families])
+    parts = {name: [p for p in parts_of(name) if given.part in p.name] for name in chosen}
+    rows = {name: run(parts[name], say, 1 + given.fine) for name in chosen}
+    results = {name: totals(rows[name]) for name in chosen}
+    if "held" in rows and "unseen" in rows:
+        results["scored half"] = totals(rows["held"] + rows["unseen"])
+    if len(chosen) == len(FAMILIES):
+        results["all"] = totals([r for group in rows.values() for r in group])
+    everything = [p for name in chosen for p in parts[name]]
+    if given.noise:
+        results["noise"] = import_module("tests.collection.noise").run(everything, say)
+    if given.invariance:
+        results["invariance"] = import_module("tests.collection.invariance").run(everything, say)
+    for title, figures in results.items():
+        show(title, figures, say)
+    if given.write:
+        write_text(TABLE, text_of([r for group in rows.values() for r in group]))
+        lines = [f"# seed {SEED}, generator version {VERSION}", "run,figure,value"]
+        lines += [
+            f"{title},{name},{_cell(value)}" for title, group in results.items() for name, value in group.items()
+        ]
+        write_text(TOTALS, "\n".join(lines) + "\n")
+    return 0
+
+
+if __name__ == "__main__":
+    sys.exit(main())
