@@ -188,7 +188,7 @@ def energies(
             do="give every mode a frequency in Hz, 0 for rigid-body modes",
         )
     layout = lay_out(design, progress, formulations=formulations)
-    vectors, doubts = _vectors(layout, modes, picked, progress)
+    vectors, doubts = shape_vectors(layout, modes, picked, progress)
     omega = 2 * np.pi * modes.freq_hz[picked]
     strain, moving = strain_and_kinetic(layout, vectors, progress)
     springs, masses = _attached(layout.springs, vectors), _attached(layout.masses, vectors)
@@ -284,7 +284,7 @@ def best_formulation(design: Design, modes: ModeSet, progress: Progress = SILENT
 
 def _closure_error(design: Design, modes: ModeSet, names: Mapping[str, str], progress: Progress) -> float:
     layout = lay_out(design, progress, formulations=names)
-    vectors, _ = _vectors(layout, modes, np.arange(modes.count), progress)
+    vectors, _ = shape_vectors(layout, modes, np.arange(modes.count), progress)
     strain, moving = strain_and_kinetic(layout, vectors, progress)
     total = strain.sum(axis=1) + _attached(layout.springs, vectors).sum(axis=1)
     mass = moving.sum(axis=1) + _attached(layout.masses, vectors).sum(axis=1)
@@ -295,8 +295,11 @@ def _closure_error(design: Design, modes: ModeSet, names: Mapping[str, str], pro
     return float(np.median(np.abs(np.sqrt(total[elastic] / mass[elastic]) / omega[elastic] - 1)))
 
 
-def _vectors(layout: Layout, modes: ModeSet, picked: Array, progress: Progress) -> tuple[Array, tuple[str, ...]]:
-    """(k, n_dof) shapes as vectors and cautions; shells whose shapes come without rotations have them recovered."""
+def shape_vectors(
+    layout: Layout, modes: ModeSet, picked: Array, progress: Progress = SILENT
+) -> tuple[Array, tuple[str, ...]]:
+    """(k, n_dof) shapes of the modes ``picked`` (indices from 0) as vectors, and cautions; shells whose shapes come
+    without rotations have them recovered."""
     moved = np.stack([modes.shape(int(i)) for i in picked])
     if not layout.has_rotations:
         return layout.gather(moved), ()
