@@ -8,6 +8,7 @@ not depend on how finely a region is meshed.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 import scipy.sparse as sp
@@ -76,6 +77,8 @@ class CommonSupport:
     @property
     def sentence(self) -> str:
         facts = self.to_dict()
+        if not facts["largest_distance_m"] and not facts["regions"]:
+            return f"Shapes are compared at {facts['places']} nodes that both designs share."
         words = (
             f"Shapes are compared at {facts['places']} places, at most {1000 * facts['largest_distance_m']:.2g} mm "
             f"from the other design's mesh"
@@ -84,7 +87,7 @@ class CommonSupport:
             words += f"; {region['place']} is in {region['design']} only ({region['mass_share']:.1%} of its mass)"
         return words + "."
 
-    def to_dict(self) -> dict[str, object]:
+    def to_dict(self) -> dict[str, Any]:
         return {
             "places": len(self.weights),
             "largest_distance_m": float(self.distances.max()),
@@ -98,10 +101,12 @@ class CommonSupport:
 
 
 def common_support(first: Design, second: Design, progress: Progress = SILENT) -> CommonSupport:
-    """The places that two designs share.
+    """The places that two designs share; designs on the same cells (one swept from the other) share every node.
 
     ``RefusedError`` when fewer than three places are shared: the meshes do not lie at the same place.
     """
+    if _same_cells(first.mesh, second.mesh):
+        return _every_node(first, second)
     swap = len(first.mesh.used_nodes) > len(second.mesh.used_nodes)
     fine, coarse = (first, second) if swap else (second, first)
     near = NEAR * min(first.mesh.diagonal, second.mesh.diagonal)
@@ -133,6 +138,21 @@ def common_support(first: Design, second: Design, progress: Progress = SILENT) -
         distances[shared],
         tuple(sorted(regions, key=lambda region: (region.design != first.name, -region.mass_share))),
     )
+
+
+def _same_cells(first: Mesh, second: Mesh) -> bool:
+    return (
+        first.n_nodes == second.n_nodes
+        and [b.kind for b in first.blocks] == [b.kind for b in second.blocks]
+        and all(np.array_equal(one.nodes, two.nodes) for one, two in zip(first.blocks, second.blocks, strict=True))
+    )
+
+
+def _every_node(first: Design, second: Design) -> CommonSupport:
+    rows = first.mesh.used_nodes
+    pick = sp.csr_array((np.ones(len(rows)), (np.arange(len(rows)), rows)), shape=(len(rows), first.mesh.n_nodes))
+    weights = (_nodal_masses(first)[rows] + _nodal_masses(second)[rows]) / 2
+    return CommonSupport(pick, pick, weights, _shared_masses(first, second), np.zeros(len(rows)), ())
 
 
 def _looked_up(mesh: Mesh, queries: Array) -> tuple[sp.csr_array, Array]:

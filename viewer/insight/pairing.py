@@ -146,6 +146,17 @@ def pair(
     return Pairing(first.name, second.name, support, matrix, tuple(_mergers(pairs, matrix, one, two)))
 
 
+def cross_products(
+    first: Design, first_modes: ModeSet, second: Design, second_modes: ModeSet, progress: Progress = SILENT
+) -> Array:
+    """(modes of first, modes of second) products of shapes over the common support, weighted by mass, of shapes of
+    unit size: their squares are MAC, their signs tell how the shapes turn into one another."""
+    support = common_support(first, second, progress)
+    one, two = _vectors(first_modes, support, 0, progress), _vectors(second_modes, support, 1, progress)
+    one, two = (v / np.maximum(np.linalg.norm(v, axis=1, keepdims=True), 1e-300) for v in (one, two))
+    return np.asarray(one.conj() @ two.T)
+
+
 def subspace_agreement(one: Array, two: Array) -> float:
     """Least cos² of the principal angles between the spans of the rows of ``one`` (a, n) and ``two`` (b, n): 1 when
     the smaller span lies in the larger. Björck & Golub, Math. Comp. 27 (1973) 579."""

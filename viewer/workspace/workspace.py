@@ -68,21 +68,31 @@ class Workspace:
     def solve(self, design: Design, count: int, progress: Progress = SILENT) -> ModeSet:
         """The first ``count`` modes of ``design``; large ones in a process that can be killed."""
         key = design_key(design, count)
-        found = self._modes.get(key) or (self.cache.get(key) if self.cache else None)
+        found = self.known(design, count)
         if found is None:
             found = self._solved(design, count, key, progress)
         self._modes[key] = found
         return found
 
+    def known(self, design: Design, count: int) -> ModeSet | None:
+        """The modes if they were solved before."""
+        key = design_key(design, count)
+        return self._modes.get(key) or (self.cache.get(key) if self.cache else None)
+
+    def keep(self, design: Design, count: int, modes: ModeSet) -> ModeSet:
+        """Keep modes that were solved elsewhere; returns them."""
+        key = design_key(design, count)
+        if self.cache:
+            write_modes_npz(self.cache.path(key), modes)
+            self.cache.trim()
+        self._modes[key] = modes
+        return modes
+
     def _solved(self, design: Design, count: int, key: str, progress: Progress) -> ModeSet:
         stage = f"solving {design.name}"
         progress.tick(stage)
         if design.mesh.n_nodes <= IN_CHILD_ABOVE:
-            modes = solve(design, count, progress)
-            if self.cache:
-                write_modes_npz(self.cache.path(key), modes)
-                self.cache.trim()
-            return modes
+            return self.keep(design, count, solve(design, count, progress))
         if self.cache:
             path = in_child(_solve_into, design, count, self.cache.path(key), progress=progress, stage=stage)
             self.cache.trim()

@@ -1,0 +1,137 @@
+"""A design solved at many values of one quantity, in parallel, from the cache where it was solved before.
+
+Any ``concurrent.futures`` executor serves: processes of this machine, or a cluster's. The parent alone writes the
+cache, as soon as a value is solved, so that a sweep that is stopped goes on where it was.
+"""
+
+from __future__ import annotations
+
+import multiprocessing
+import os
+from collections.abc import Sequence
+from concurrent.futures import FIRST_COMPLETED, Executor, Future, ProcessPoolExecutor, wait
+from dataclasses import dataclass
+
+from viewer.insight.lineage import Encounter, LineageFinding, follow
+from viewer.insight.pairing import cross_products
+from viewer.jobs import SILENT, Progress
+from viewer.mechanics.eigen import solve
+from viewer.model.design import Design
+from viewer.model.modes import ModeSet
+from viewer.model.variation import Variation
+from viewer.workspace.workspace import Workspace
+
+_ROUNDS = 4  # of steps put between others
+_INSERTED = 12  # steps a round and encounter at most
+_LOOK = 0.2  # s between looks for a wish to stop
+
+
+@dataclass(frozen=True, eq=False)
+class Sweep:
+    """Designs and mode sets by value, ascending, and how the modes pass one another."""
+
+    values: tuple[float, ...]
+    designs: tuple[Design, ...]
+    modes: tuple[ModeSet, ...]
+    lineage: LineageFinding
+
+
+def sweep(
+    workspace: Workspace,
+    design: Design,
+    variation: Variation,
+    values: Sequence[float],
+    count: int = 6,
+    *,
+    insert: bool = False,
+    executor: Executor | None = None,
+    progress: Progress = SILENT,
+) -> Sweep:
+    """Solve ``design`` at ``values`` (SI) and follow its modes.
+
+    insert    put further steps where a passage is unresolved, a few rounds at most
+    executor  None: processes of this machine
+    Raises what solving raises; ``Cancelled`` when asked to stop, with every value solved so far in the cache.
+    """
+    steps = sorted({float(v) for v in values})
+    varied = {v: variation.apply(design, v) for v in steps}
+    solved = solve_all(workspace, [varied[v] for v in steps], count, executor, progress)
+    modes = dict(zip(steps, solved, strict=True))
+    words = variation.what.replace("_", " ") + f" of {variation.target}"
+    for last in [not insert] * (not insert) + [k == _ROUNDS for k in range(_ROUNDS + 1)] * insert:
+        steps = sorted(modes)
+        found = _followed([varied[v] for v in steps], [modes[v] for v in steps], steps, words, design, progress)
+        more = [] if last else sorted({v for e in found.encounters for v in _between(e)} - set(steps))
+        if not more:
+            break
+        varied |= {v: variation.apply(design, v) for v in more}
+        modes |= dict(
+            zip(more, solve_all(workspace, [varied[v] for v in more], count, executor, progress), strict=True)
+        )
+    return Sweep(tuple(steps), tuple(varied[v] for v in steps), tuple(modes[v] for v in steps), found)
+
+
+def solve_all(
+    workspace: Workspace, designs: Sequence[Design], count: int, executor: Executor | None, progress: Progress
+) -> list[ModeSet]:
+    """The first ``count`` modes of every design; only those that the workspace does not know are solved."""
+    found: dict[int, ModeSet] = {}
+    for k, design in enumerate(designs):
+        if (known := workspace.known(design, count)) is not None:
+            found[k] = known
+    missing = [k for k in range(len(designs)) if k not in found]
+    if not missing:
+        return [found[k] for k in range(len(designs))]
+    own = None
+    if executor is None:
+        context = multiprocessing.get_context("spawn")
+        executor = own = ProcessPoolExecutor(min(len(missing), os.cpu_count() or 1), mp_context=context)
+    waiting: dict[Future, int] = {}
+    try:
+        waiting = {executor.submit(solve, designs[k], count): k for k in missing}
+        while waiting:
+            progress.tick("solving the steps", len(found), len(designs))
+            done, _ = wait(waiting, timeout=_LOOK, return_when=FIRST_COMPLETED)
+            for future in done:
+                k = waiting.pop(future)
+                found[k] = workspace.keep(designs[k], count, future.result())
+    finally:
+        for future in waiting:
+            future.cancel()
+        if own is not None:
+            _end(own, kill=bool(waiting))
+    return [found[k] for k in range(len(designs))]
+
+
+def _end(pool: ProcessPoolExecutor, kill: bool) -> None:
+    """A factorisation hears no wish to stop: its process is ended."""
+    processes = list((pool._processes or {}).values()) if kill else []
+    pool.shutdown(wait=not kill, cancel_futures=True)
+    for process in processes:
+        process.kill()
+
+
+def _followed(
+    designs: list[Design], modes: list[ModeSet], values: list[float], words: str, design: Design, progress: Progress
+) -> LineageFinding:
+    crosses = []
+    for k in range(len(designs) - 1):
+        progress.tick("following the modes", k, len(designs) - 1)
+        crosses.append(cross_products(designs[k], modes[k], designs[k + 1], modes[k + 1]))
+    names = [design.mode_names.get(number, "") for number in range(1, modes[0].count + 1)]
+    return follow(values, [m.freq_hz for m in modes], crosses, parameter=words, names=names)
+
+
+def _between(encounter: Encounter) -> list[float]:
+    """Values that would resolve an encounter: around its place, at the step that it asks for."""
+    if encounter.step is None:
+        return []
+    low, high = encounter.between
+    around = [encounter.at + k * encounter.step for k in range(-_INSERTED // 2, _INSERTED // 2 + 1)]
+    return [v for v in around if low < v < high]
+
+
+def renamed(modes: ModeSet, sweep_: Sweep, step: int) -> dict[int, str]:
+    """Names of the modes at a step, carried over from the first one along their lineages."""
+    names = {line.modes[step]: line.name for line in sweep_.lineage.lines if line.name and line.modes[step]}
+    return {number: name for number, name in sorted(names.items()) if number <= modes.count}
