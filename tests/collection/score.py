@@ -1,4 +1,4 @@
-"""Score the search for hinge lines: ``python -m tests.collection.score [--families tuning|held|unseen|all] [--write]``.
+"""Score the search for hinge lines: ``python -m tests.collection.score --families tuning|held|unseen|scored|all``.
 
 Prints totals and the rows that went wrong; ``--write`` puts all rows into table.csv and the totals into totals.csv.
 ``--noise`` adds the run with noisy shapes, ``--invariance`` that with other meshes of the same parts.
@@ -37,8 +37,8 @@ def parts_of(name: str) -> list[Part]:
 def totals(rows: Sequence[Row]) -> dict[str, float]:
     """Figures over rows of lines, joints and modes without hinges."""
     strong = [r for r in rows if r.level == "strong"]
-    lines = [r for r in strong if not _joint(r)]
-    joints = [r for r in strong if _joint(r)]
+    lines = [r for r in strong if r.kind != "joint"]
+    joints = [r for r in strong if r.kind == "joint"]
     hits = [r for r in lines if r.hit]
     free = _modes(r for r in rows if r.free)
     bent = _modes(r for r in rows if not r.free)
@@ -71,10 +71,6 @@ def totals(rows: Sequence[Row]) -> dict[str, float]:
     return out
 
 
-def _joint(row: Row) -> bool:
-    return row.part.split("-")[0] in ("square_neck", "point_joint")
-
-
 def _within(r: Row) -> bool:
     pairs = ((r.position, POSITION), (r.direction, DIRECTION_DEG), (r.axis, DIRECTION_DEG), (r.fold, SHARE_OFF),
              (r.stiffness, SHARE_OFF))  # fmt: skip
@@ -97,7 +93,7 @@ def wrong(row: Row) -> str:
     words = []
     if row.level == "strong" and not row.hit:
         words.append("MISSED")
-    if row.level == "strong" and row.hit and not _joint(row) and not _within(row):
+    if row.level == "strong" and row.hit and row.kind != "joint" and not _within(row):
         words.append("INEXACT")
     if row.false:
         words.append("FALSE" if row.free else "STRAY")
@@ -140,9 +136,8 @@ def run(parts: Iterable[Part], say: Callable[[str], None], density: int = 1) -> 
         say(f"{part.name} ({ready.built.mesh.n_cells} cells, {took:.2f} s a mode)")
         for row in fresh:
             if wrong(row):
-                say(
-                    f"    {wrong(row)}: " + " ".join(f"{k}={_cell(v)}" for k, v in asdict(row).items() if k != "part")
-                )
+                facts = {name: _cell(value) for name, value in asdict(row).items() if name != "part"}
+                say(f"    {wrong(row)}: " + " ".join(f"{name}={value}" for name, value in facts.items()))
         rows += fresh
     return rows
 
@@ -181,9 +176,8 @@ def main(arguments: Sequence[str] | None = None) -> int:
     if given.write:
         write_text(TABLE, text_of([r for group in rows.values() for r in group]))
         lines = [f"# seed {SEED}, generator version {VERSION}", "run,figure,value"]
-        lines += [
-            f"{title},{name},{_cell(value)}" for title, group in results.items() for name, value in group.items()
-        ]
+        for title, figures in results.items():
+            lines += [f"{title},{name},{_cell(value)}" for name, value in figures.items()]
         write_text(TOTALS, "\n".join(lines) + "\n")
     return 0
 

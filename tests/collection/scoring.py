@@ -22,11 +22,11 @@ NAN = float("nan")
 class Row:
     """A band in a mode, or a mode without bands (band 0).
 
-    mode     number among the elastic ones; band from 1; level, share, contrast, evenness as in ``truth.py``
+    mode     number among the elastic ones; band from 1, kind as built in; level, share, contrast, evenness as in ``truth.py``
     found    "" or kind and label of the finding that is nearest to the band and close enough to be meant
     hit      position within 0.05 of the diagonal and, for lines and curves, direction within 20°
-    position distance of the position from the true centre line in the plane of the sheet ÷ diagonal (curves: the mean
-             of the axis's points when that is larger); direction degrees between direction and true turn; axis
+    position distance of the position from the true centre line in the plane of the sheet ÷ diagonal (curves: mean
+             over the axis's points, since no arc holds its own centroid); direction degrees between direction and true turn; axis
              degrees between the axis's ends and the true line (lines)
     fold     |fold| ÷ true turn − 1; stiffness k ÷ static solution − 1; NaN where there is no one angle or no k
     free     the mode has no hinge; false: findings off every band in this mode (counted in the mode's first row)
@@ -38,6 +38,7 @@ class Row:
     mode: int
     freq_hz: float
     band: int
+    kind: str
     level: str
     share: float
     contrast: float
@@ -60,8 +61,8 @@ def named(finding: HingeFinding) -> tuple[Hinge, ...]:
 
 
 def score(solved: Solved, modes: ModeSet | None = None, only: Sequence[int] | None = None) -> list[Row]:
-    """Rows of every elastic mode (``only``: those indices among them). ``modes``: other shapes on the same nodes, as a
-    bare import without energies."""
+    """Rows of every elastic mode (``only``: those indices among them). ``modes``: other shapes on the same nodes, as
+    a bare import without energies."""
     out = []
     for j in range(len(solved.truths)) if only is None else only:
         number = solved.first + j + 1
@@ -88,10 +89,17 @@ def score_mode(solved: Solved, j: int, hinges: Sequence[Hinge]) -> list[Row]:
     }
     counts = {"false": on.count(False), "idle": on.count(True) if free else 0}
     if not truths:
-        return [Row(**base, band=0, level="none", share=NAN, contrast=NAN, evenness=NAN, **counts)]
+        return [Row(**base, band=0, kind="", level="none", share=NAN, contrast=NAN, evenness=NAN, **counts)]
     rows = []
     for i, t in enumerate(truths):
-        facts = {"band": i + 1, "level": t.level, "share": t.share, "contrast": t.contrast, "evenness": t.evenness}
+        facts = {
+            "band": i + 1,
+            "kind": bands[i].kind,
+            "level": t.level,
+            "share": t.share,
+            "contrast": t.contrast,
+            "evenness": t.evenness,
+        }
         best = min((h for h in hinges if gap(built, bands[i], h) <= NEAR),
                    key=lambda h, band=bands[i]: gap(built, band, h), default=None)  # fmt: skip
         errors = {} if best is None else compare(built, bands[i], t, best, solved.stiffness[i])
@@ -124,10 +132,8 @@ def gap(built: Built, band: Band, hinge: Hinge) -> float:
     if band.kind == "joint":
         centre = built.line(band, 3)[1]
         return in_plane(built, band, hinge.position, centre) / built.mesh.diagonal
-    place = to_line(built, band, hinge.position)
-    if band.kind == "curve":
-        place = max(place, float(np.mean([to_line(built, band, point) for point in hinge.axis])))
-    return place / built.mesh.diagonal
+    points = hinge.axis if band.kind == "curve" else hinge.position[None]
+    return float(np.mean([to_line(built, band, point) for point in points])) / built.mesh.diagonal
 
 
 def to_line(built: Built, band: Band, point: Array) -> float:

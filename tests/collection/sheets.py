@@ -1,7 +1,7 @@
 """Parts described as a sheet: a rectangle in (s, t), cut, thinned, and placed in space; meshed as shell or solid.
 
-All that is built in (grooves, slits, necks) is a rectangle in (s, t), so that the cells of a band, its centre line and
-its edges are known exactly, in every kind of cell and at every density.
+All that is built in (grooves, slits, necks) is a rectangle in (s, t), so that the cells of a band, its centre line
+and its edges are known exactly, in every kind of cell and at every density.
 """
 
 from __future__ import annotations

@@ -61,10 +61,8 @@ def solved(part: Part, density: int = 1) -> Solved:
     ids = built.mesh.node_ids
     if path.exists():
         with np.load(path) as kept:
-            turned = kept["turned"] if "turned" in kept else None
-            modes = ModeSet(
-                ids, kept["freq"], ArrayShapes(kept["moved"], turned), None, "mass", "computed", part.name
-            )
+            shapes = ArrayShapes(kept["moved"], kept.get("turned"))
+            modes = ModeSet(ids, kept["freq"], shapes, None, "mass", "computed", part.name)
             return Solved(part, density, built, modes, kept["stiffness"])
     modes = solve(built.design, part.modes + 6 * part.free)
     stiffness = np.array([statics.stiffness(built, band) for band in part.sheet.bands])
