@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 
 from tests.scene.sheets import frame_of, known, of_unknown_size, side, true
-from viewer.scene.colour_bar import colour_bar_items, picture_bar, squares
+from viewer.scene.colour_bar import colour_bar_items, energy_scale, picture_bar, squares
 from viewer.scene.palette import energy_ramp, energy_share
 from viewer.scene.rulers import LEFT, LONGEST, round_length, ruler_items
 from viewer.scene.sheet import GradientBar, Line, Polygon, Text
@@ -59,7 +59,7 @@ def test_ticks_are_perfect_squares_up_to_the_top():
 
 
 def test_ticks_fall_where_their_colour_is():
-    items = colour_bar_items("title", 25.0, "", "light", 936.0, 14.0, 230.0)
+    items = colour_bar_items("title", energy_scale(25.0, "light"), "", "light", 936.0, 14.0, 230.0)
     bar = next(item for item in items if isinstance(item, GradientBar))
     assert (bar.width, bar.height) == (230, 13)  # LOOK.md: "230×13"
     assert np.array_equal(bar.colours, energy_ramp("light"))

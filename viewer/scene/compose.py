@@ -61,9 +61,9 @@ def single_picture(
 
     ``RefusedError`` when true scale is asked for and no size is known; ``InputError`` for a mode that is not there.
     """
-    index = _index(study, mode)
+    index = mode_index(study, mode)
     scale = study.scale(index, true_scale=true_scale, peak_percent=peak_percent)
-    body = _body(study, index, scale, scale.turn, energy and not given_energy)
+    body = mode_body(study, index, scale, scale.turn, energy and not given_energy)
     if given_energy:
         body = replace(body, density=_given_density(study, index))
     body = replace(_with_finding(body, finding, scale, chosen), struts=strut_marks(body, struts))
@@ -84,7 +84,7 @@ def single_picture(
         energy_caution="" if given_energy else _caution([study], [index], [body]),
         magnified=_magnified(scale) if true_scale else None,
         width=width,
-        height=_height(width, SINGLE),
+        height=picture_height(width, SINGLE),
         **look,
     )
 
@@ -112,7 +112,7 @@ def pair_picture(
     ``paired_by`` says in the note who or what decided that these two correspond.
     """
     studies, modes = (first, second), (first_mode, second_mode)
-    indices = [_index(study, mode) for study, mode in zip(studies, modes, strict=True)]
+    indices = [mode_index(study, mode) for study, mode in zip(studies, modes, strict=True)]
     found = [study.scale(i, true_scale=true_scale) for study, i in zip(studies, indices, strict=True)]
     masses, basis = _sizes(studies, indices)
     turn = shared_turn(
@@ -121,7 +121,8 @@ def pair_picture(
     scales = common_scale(found, masses, [1.0, turn])
     energy = energy and layout == "side"  # an overlay shows form; two energy fields would hide one another
     bodies = tuple(
-        _body(study, i, scale, scale.turn, energy) for study, i, scale in zip(studies, indices, scales, strict=True)
+        mode_body(study, i, scale, scale.turn, energy)
+        for study, i, scale in zip(studies, indices, scales, strict=True)
     )
     if layout == "side":
         bodies = tuple(
@@ -155,12 +156,12 @@ def pair_picture(
         energy_words="strain energy density ÷ own mean",
         energy_caution=_caution(studies, indices, bodies),
         width=width,
-        height=_height(width, OVERLAY),
+        height=picture_height(width, OVERLAY),
         **look,
     )
     if layout == "overlay":
         return picture
-    return picture.with_(height=_height(width, side_height(picture, note_height(picture)) / BASE_WIDTH))
+    return picture.with_(height=picture_height(width, side_height(picture, note_height(picture)) / BASE_WIDTH))
 
 
 def _with_finding(
@@ -194,7 +195,8 @@ def _sizes(studies: Sequence[Study], indices: Sequence[int]) -> tuple[list[float
     return [float(np.mean(np.sum(np.abs(m) ** 2, axis=1))) for m in moved], "mean square motion"
 
 
-def _index(study: Study, mode: int) -> int:
+def mode_index(study: Study, mode: int) -> int:
+    """The index of mode number ``mode``; ``InputError`` when it is not there."""
     if not 1 <= mode <= study.count:
         raise InputError(
             f"design '{study.design.name}' has no mode {mode}",
@@ -204,7 +206,8 @@ def _index(study: Study, mode: int) -> int:
     return mode - 1
 
 
-def _body(study: Study, index: int, scale: Scale, turn: complex, energy: bool) -> Body:
+def mode_body(study: Study, index: int, scale: Scale, turn: complex, energy: bool) -> Body:
+    """The body of mode ``index`` (from 0) with its marks, coloured by ``energy`` where it is known."""
     design, shape = study.design, study.turned_shape(index, turn)
     supports = tuple(
         SupportMark(item.name, item.where.rows(design.mesh, f"support '{item.name}'"))
@@ -285,5 +288,6 @@ def _magnified(scale: Scale) -> Magnified:
     )
 
 
-def _height(width: int, ratio: float) -> int:
+def picture_height(width: int, ratio: float) -> int:
+    """Height in real pixels of a picture, a multiple of 16 (video needs it)."""
     return 16 * round(width * ratio / 16)

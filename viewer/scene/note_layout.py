@@ -201,7 +201,12 @@ def note_items(picture: Picture, frame: Frame) -> list[Primitive]:
     for words, colour in (*((w, tokens.ink) for w in lines.drawing), *((w, tokens.soft) for w in lines.condition)):
         items.append(Text(SIDE, y, words, colour, TEXT))
         y += _THIRD - _SECOND
-    return items + gauge(right - SWING, right, frame.height - FROM_FOOT, tokens)
+    return items + (gauge(right - SWING, right, frame.height - FROM_FOOT, tokens) if swings(picture) else [])
+
+
+def swings(picture: Picture) -> bool:
+    """Whether anything moves; a picture drawn at rest has no swing gauge."""
+    return any(body.factor != 0 for body in picture.bodies)
 
 
 def gauge(left: float, right: float, y: float, tokens: Tokens, scale: float = 1.0) -> list[Primitive]:

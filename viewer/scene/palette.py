@@ -7,6 +7,7 @@ sRGB transfer function: IEC 61966-2-1.
 from __future__ import annotations
 
 from collections.abc import Sequence
+from math import ceil, log10
 
 import numpy as np
 
@@ -72,15 +73,29 @@ def energy_top(densities: Sequence[Array], areas: Sequence[Array]) -> float:
     The area-weighted 99.5th percentile over everything drawn, rounded up; a peak of a few small cells
     (a re-entrant corner) therefore does not wash out the rest.
     """
-    value = np.concatenate([np.asarray(d, float).ravel() for d in densities])
+    return float(max(np.ceil(np.sqrt(max(_high(densities, areas), 0.0)) - 1e-9), 1.0) ** 2)
+
+
+def gain_top(gain: Array, areas: Array) -> float:
+    """End of the gain scale on both sides: 4, 9 or 16 times a power of ten, from the same percentile of the size of
+    ``gain`` (n,); 0.0 when there is none."""
+    high = _high([np.abs(gain)], [areas])
+    if not high > 0:
+        return 0.0
+    decade = 10.0 ** (ceil(log10(high) - 1e-9) - 1)
+    return float(max(np.ceil(np.sqrt(high / decade) - 1e-9), 2.0) ** 2 * decade)
+
+
+def _high(values: Sequence[Array], areas: Sequence[Array]) -> float:
+    """The value that ``PERCENTILE`` % of the drawn area do not exceed."""
+    value = np.concatenate([np.asarray(v, float).ravel() for v in values])
     weight = np.concatenate([np.asarray(a, float).ravel() for a in areas])
     good = np.isfinite(value) & (weight > 0)
     if not good.any():
-        return 1.0
+        return 0.0
     order = np.argsort(value[good])
     value, weight = value[good][order], np.cumsum(weight[good][order])
-    at = value[min(np.searchsorted(weight, PERCENTILE / 100 * weight[-1]), len(value) - 1)]
-    return float(max(np.ceil(np.sqrt(max(at, 0.0)) - 1e-9), 1.0) ** 2)
+    return float(value[min(np.searchsorted(weight, PERCENTILE / 100 * weight[-1]), len(value) - 1)])
 
 
 def energy_share(density: Array, top: float) -> Array:

@@ -12,7 +12,7 @@ from dataclasses import dataclass
 from viewer.scene.colour_bar import picture_bar
 from viewer.scene.labels import Placed, cover, picture_labels, place_label
 from viewer.scene.magnifier import Magnifier, place_magnifier
-from viewer.scene.note_layout import note_height, note_items, note_knob
+from viewer.scene.note_layout import note_height, note_items, note_knob, swings
 from viewer.scene.picture import Picture
 from viewer.scene.primitives import (
     Box,
@@ -68,7 +68,8 @@ class SheetPlan:
         moving = [item for placed in self.labels for item in placed.moving(self.frame, phase, halo)]
         if self.magnifier is not None:
             moving.append(self.magnifier.dot(phase))
-        moving.append(note_knob(self.picture, self.frame, phase))
+        if swings(self.picture):
+            moving.append(note_knob(self.picture, self.frame, phase))
         return Sheet(self.frame.width, self.frame.height, self.fixed, tuple(moving))
 
 

@@ -13,7 +13,7 @@ import numpy as np
 from viewer.model.arrays import Array
 from viewer.model.cycle import cycle_peaks
 from viewer.scene import view
-from viewer.scene.colour_bar import colour_bar_items
+from viewer.scene.colour_bar import colour_bar_items, energy_scale
 from viewer.scene.motion import is_standing
 from viewer.scene.note_layout import gauge, is_true, knob
 from viewer.scene.picture import Picture
@@ -137,7 +137,7 @@ def _note(picture: Picture, rule: float, items: list[Primitive]) -> float:
     if picture.energy_top is not None:
         items += colour_bar_items(
             picture.energy_words,
-            picture.energy_top,
+            energy_scale(picture.energy_top, "light"),
             picture.energy_caution,
             "light",
             WIDTH - 28.0,

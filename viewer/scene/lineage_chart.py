@@ -1,0 +1,101 @@
+"""Frequency against the parameter of a sweep, each lineage a line; crossings, veerings and open questions marked."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from viewer.insight.lineage import Encounter, LineageFinding
+from viewer.scene.chart import HEIGHT, apart, chart_sheet, fitted, ticks
+from viewer.scene.figures import hertz
+from viewer.scene.primitives import Disc, Line, Primitive, Ring, Sheet, Text
+from viewer.scene.tokens import BAND_HEIGHT, BASE_WIDTH, MARGIN, TEXT_SMALL, THEMES, Tokens
+
+LEFT, RIGHT, TOP, FOOT = 84.0, BASE_WIDTH - 236.0, 56.0, HEIGHT - BAND_HEIGHT - 58
+_WORDS = {"crossing": "cross", "veering": "veer", "unresolved": "?"}
+
+
+def lineage_chart(finding: LineageFinding, title: str = "", theme: str = "light") -> Sheet:
+    """The chart of a finding; designs without a common parameter stand at 1, 2, 3 … with their names."""
+    tokens = THEMES[theme]
+    x, y = _axes(finding)
+    items: list[Primitive] = [*_grid(finding, x, y, tokens)]
+    for line in finding.lines:
+        items += _line(finding, line.freq_hz, x, y, tokens)
+    items += [mark for e in finding.encounters for mark in _mark(e, finding, x, y, tokens)]
+    items += _names(finding, y, tokens)
+    kinds = {e.kind for e in finding.encounters}
+    legend = [
+        words
+        for kind, words in (
+            ("crossing", "× cross: shapes pass unchanged"),
+            ("veering", "○ veer: frequencies turn away, shapes are traded"),
+            ("unresolved", "? steps too coarse to tell"),
+        )
+        if kind in kinds
+    ]
+    notes = (" · ".join(legend) or "no two modes meet", finding.sentence.removesuffix("."))
+    return chart_sheet(tokens, title or f"natural frequencies against {finding.parameter}", notes, items)
+
+
+def _axes(finding: LineageFinding):  # noqa: ANN202
+    low, high = float(finding.values[0]), float(finding.values[-1])
+    hz = np.concatenate([line.freq_hz[np.isfinite(line.freq_hz)] for line in finding.lines])
+    least, most = float(hz.min(initial=np.inf)), float(hz.max(initial=0.0))
+    room = 0.05 * (most - least or most or 1.0)
+    least, most = max(0.0, least - room), most + room
+    x = lambda value: LEFT + (value - low) / (high - low or 1.0) * (RIGHT - LEFT)  # noqa: E731
+    y = lambda value: FOOT - (value - least) / (most - least) * (FOOT - TOP)  # noqa: E731
+    y.low, y.high = least, most  # type: ignore[attr-defined]
+    return x, y
+
+
+def _grid(finding: LineageFinding, x, y, tokens: Tokens) -> list[Primitive]:  # noqa: ANN001
+    items: list[Primitive] = [Text(LEFT - 12, 34, "Hz", tokens.soft, TEXT_SMALL, False, "right")]
+    for value in ticks(y.low, y.high, 7):
+        items.append(Line(((LEFT, y(value)), (RIGHT, y(value))), tokens.rule, 1.0))
+        items.append(Text(LEFT - 12, y(value) + 5, f"{value:g}", tokens.soft, TEXT_SMALL, False, "right"))
+    numeric = all(label == f"{value:g}" for label, value in zip(finding.labels, finding.values, strict=True))
+    if numeric:
+        places = [(v, f"{v:g}") for v in ticks(float(finding.values[0]), float(finding.values[-1]), 6)]
+    else:
+        places = list(zip(finding.values, finding.labels, strict=True))
+    for value, words in places:
+        items.append(Line(((x(value), FOOT), (x(value), FOOT + 6)), tokens.soft, 1.0))
+        items.append(Text(x(value), FOOT + 24, fitted(words, 150), tokens.soft, TEXT_SMALL, False, "middle"))
+    items.append(Text((LEFT + RIGHT) / 2, FOOT + 46, finding.parameter, tokens.ink, TEXT_SMALL, False, "middle"))
+    return items
+
+
+def _line(finding: LineageFinding, hz, x, y, tokens: Tokens) -> list[Primitive]:  # noqa: ANN001
+    known = np.isfinite(hz)
+    points = tuple((float(x(v)), float(y(f))) for v, f in zip(finding.values[known], hz[known], strict=True))
+    dots: list[Primitive] = [Disc(*p, 2.6, tokens.baseline) for p in points] if len(finding.values) <= 40 else []
+    return [Line(points, tokens.baseline, 2.4), *dots] if len(points) > 1 else dots
+
+
+def _mark(e: Encounter, finding: LineageFinding, x, y, tokens: Tokens) -> list[Primitive]:  # noqa: ANN001
+    lines = {line.number: line.freq_hz for line in finding.lines}
+    at = [float(np.interp(e.at, finding.values, lines[n])) for n in (e.first, e.second)]
+    cx, cy = float(x(e.at)), float(y(sum(at) / 2))
+    words = Text(cx, cy - 18, _WORDS[e.kind], tokens.accent, TEXT_SMALL, True, "middle")
+    if e.kind == "crossing":
+        arms = [((cx - 7, cy - 7), (cx + 7, cy + 7)), ((cx - 7, cy + 7), (cx + 7, cy - 7))]
+        return [*(Line(arm, tokens.accent, 2.4) for arm in arms), words]
+    return [Ring(cx, cy, 11.0, tokens.accent, 2.4), words]
+
+
+def _names(finding: LineageFinding, y, tokens: Tokens) -> list[Primitive]:  # noqa: ANN001
+    """Number and name of each lineage at its end, kept apart."""
+    ends = []
+    for line in finding.lines:
+        known = np.nonzero(np.isfinite(line.freq_hz))[0]
+        if len(known) and known[-1] == len(line.freq_hz) - 1:
+            ends.append((float(y(line.freq_hz[-1])), line))
+    ends.sort(key=lambda end: end[0])
+    items: list[Primitive] = []
+    for (wished, line), at in zip(ends, apart([e[0] for e in ends], 19.0, TOP, FOOT), strict=True):
+        items.append(Line(((RIGHT + 4, wished), (RIGHT + 20, float(at))), tokens.soft, 1.0))
+        words = line.name or f"mode {line.modes[0] or line.number}"
+        text = f"{words}, {hertz(float(line.freq_hz[-1]))}"
+        items.append(Text(RIGHT + 26, float(at) + 5, fitted(text, 236 - 26 - MARGIN / 2), tokens.ink, TEXT_SMALL))
+    return items
