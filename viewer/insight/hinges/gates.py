@@ -1,0 +1,68 @@
+"""When a measured candidate is a hinge: gates, score, label and confidence."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from viewer.insight.hinges.band import JOINT, Draft
+from viewer.insight.hinges.field import Field
+
+# Least value of each figure; a figure that must be small is given as its reciprocal.
+THRESHOLDS = {
+    "share of the energy": 0.03,
+    "contrast": 4.0,
+    "sharp edges": 3.0,
+    "turn against the bending beside it": 0.2,
+    "steepness": 2.5,
+    "slenderness": 1 / 0.16,
+    "turn about the line": 0.85,
+    "one sense along the line": 0.3,
+    "turn against the whole": 0.05,
+    "even density across": 0.2,
+}
+STRONG_SCORE, STRONG_TURN = 1.5, 0.35
+_JOINT_SIZE = 0.6  # a joint as large as this share over the bound on slenderness, 1/10 of the part, is none
+_CAPPED = {"turn about the line", "one sense along the line", "even density across"}  # shares: they say no more
+
+
+def is_joint(draft: Draft) -> bool:
+    return draft.length < JOINT * draft.width
+
+
+def values(field: Field, draft: Draft) -> dict[str, float]:
+    """The figure of every gate."""
+    joint = is_joint(draft)
+    return {
+        "share of the energy": draft.strain,
+        "contrast": draft.contrast,
+        "sharp edges": draft.step,
+        "turn against the bending beside it": draft.turn_share,
+        "steepness": draft.steep,
+        "slenderness": _JOINT_SIZE * field.size / draft.width if joint else draft.length / draft.width,
+        "turn about the line": draft.aligned,
+        "one sense along the line": draft.even,
+        "turn against the whole": draft.bend / max(field.turn_rms, 1e-300),
+        "even density across": draft.filled,
+    }
+
+
+def score(field: Field, draft: Draft) -> tuple[float, str]:
+    """Smallest figure over its threshold and the name of that gate. Shares pass or fail and never count above 1.5
+    times their threshold's worth."""
+    ratios = {}
+    for name, value in values(field, draft).items():
+        ratio = value / THRESHOLDS[name]
+        ratios[name] = max(ratio, 3.0) if name in _CAPPED and ratio >= 1 else ratio
+    gate = min(ratios, key=lambda name: ratios[name])
+    return float(ratios[gate]), gate
+
+
+def label(score_: float, draft: Draft) -> str:
+    if score_ >= STRONG_SCORE and draft.turn_share >= STRONG_TURN:
+        return "strong"
+    return "weak" if score_ >= 1 else "undecided"
+
+
+def confidence(score_: float) -> float:
+    """Chance that a candidate of this score is a hinge line."""
+    return float(1 / (1 + np.exp(-(0.5 + 3.0 * np.log(max(score_, 1e-6))))))

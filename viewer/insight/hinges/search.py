@@ -1,0 +1,223 @@
+"""The search: from a mode to its hinges and flaps."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from viewer.errors import HingelightError, RefusedError
+from viewer.insight.hinges.band import Draft, examine
+from viewer.insight.hinges.candidates import candidates
+from viewer.insight.hinges.curve import Line
+from viewer.insight.hinges.field import Field, make_field
+from viewer.insight.hinges.finding import Hinge, HingeFinding
+from viewer.insight.hinges.flaps import find_flaps, regions
+from viewer.insight.hinges.gates import confidence, is_joint, label, score
+from viewer.jobs import SILENT, Progress
+from viewer.mechanics.energy import RELATIVE, Energies
+from viewer.mechanics.energy import energies as form_energies
+from viewer.mechanics.relative import relative_energies, states_no_material
+from viewer.model.arrays import Array
+from viewer.model.design import Design
+from viewer.model.modes import ModeSet
+
+_CURVE_POINTS = 17
+_SAME = 0.3  # share of the smaller band's energy in common from which two candidates are one
+
+
+def find_hinges(
+    design: Design,
+    modes: ModeSet,
+    number: int,
+    energies: Energies | None = None,
+    progress: Progress = SILENT,
+) -> HingeFinding:
+    """Hinge lines, joints and flaps of mode ``number`` (from 1).
+
+    energies  of any modes that include this one; formed for it alone when None
+    Method: dense strain energy proposes bands (``candidates``), each is measured (``band``) and must pass gates.
+    Raises ``ModelError`` as ``energies`` does, ``RefusedError`` when no energies can be formed, ``Cancelled``.
+    """
+    index = number - 1
+    freq = float(modes.freq_hz[index])
+    modes, index, basis, noise, cautions = _without_noise(design, modes, index, progress)
+    if basis == "smoothed":
+        energies = None
+    given, row = _energies(design, modes, index, energies, progress)
+    cautions += _doubts(given, row)
+    moved, turned = modes.shape(index), modes.rotations(index)
+    if np.iscomplexobj(moved):
+        phase = np.exp(-0.5j * np.angle((moved**2).sum()))
+        moved, turned = (moved * phase).real, None if turned is None else (turned * phase).real
+        cautions.append("the shape is complex: rotations are those at the phase of largest motion")
+    answer = {"mode": number, "freq_hz": freq, "basis": basis, "noise": noise}
+    whole = given.total_strain[row]
+    if np.isnan(given.closure[row]) and not given.relative:
+        return HingeFinding(verdict="rigid-body mode", cautions=tuple(cautions), **answer)
+    if not given.strain[row].sum() > 1e-9 * max(whole, 0.0) or whole <= 0:
+        verdict = "rigid-body mode" if whole <= 0 else "does not bend"
+        return HingeFinding(verdict=verdict, cautions=tuple(cautions), **answer)
+    field = make_field(
+        design, moved, turned, given.strain[row] / whole, given.kinetic[row] / given.total_kinetic[row], given.volumes
+    )
+    drafts = _chosen(field, progress)
+    region = regions(field, [draft.cells for draft, _, _ in drafts])
+    absolute = None if given.relative else whole
+    hinges = tuple(_hinge(field, region, i + 1, *found, absolute) for i, found in enumerate(drafts))
+    flaps = find_flaps(field, hinges, region)
+    return HingeFinding(
+        verdict="hinges" if hinges else "bending is spread",
+        hinges=hinges,
+        flaps=flaps,
+        cautions=tuple(cautions),
+        **answer,
+    )
+
+
+def _without_noise(design, modes, index, progress):
+    """The mode set and index to look at, its basis, the share of noise, and cautions."""
+    if modes.origin == "computed":
+        return modes, index, "energies", 0.0, []
+    from viewer.insight.smoothing import NOISE_BOUND, noise_estimate, smoothed
+
+    shape = modes.shape(index)
+    noise = float(np.nan_to_num(noise_estimate(design, shape.real if np.iscomplexobj(shape) else shape, progress)))
+    if noise <= NOISE_BOUND:
+        return modes, index, "energies", noise, []
+    try:
+        found = smoothed(design, modes, index + 1, progress)
+    except (RefusedError, HingelightError) as error:
+        return modes, index, "energies", noise, [f"the shape holds noise that could not be taken out: {error}"]
+    return found.modes, 0, "smoothed", found.noise, [found.caution]
+
+
+def _energies(design, modes, index, given: Energies | None, progress) -> tuple[Energies, int]:
+    """Energies that hold mode ``index`` and the row it is in."""
+    if given is not None:
+        rows = np.nonzero(np.asarray(given.indices) == index)[0]
+        if len(rows):
+            return given, int(rows[0])
+    if states_no_material(design):
+        return relative_energies(design, _one(modes, index), progress), 0
+    return form_energies(design, modes, [index], progress, judged=modes.origin != "computed"), 0
+
+
+def _one(modes: ModeSet, index: int) -> ModeSet:
+    from viewer.model.modes import ArrayShapes
+
+    turned = modes.rotations(index)
+    shapes = ArrayShapes(modes.shape(index)[None], None if turned is None else turned[None])
+    return modes.with_(freq_hz=modes.freq_hz[index : index + 1], shapes=shapes, damping=None, cell_energy=None)
+
+
+def _doubts(given: Energies, row: int) -> list[str]:
+    if given.relative:
+        return [f"energies are {RELATIVE}"]
+    words = []
+    if not given.trusted[row] and np.isfinite(given.closure[row]):
+        words.append("the energies are not to be trusted for absolute figures")
+    if given.spring_share(row) > 0.05:
+        words.append(f"springs hold {given.spring_share(row):.0%} of the strain energy")
+    return words
+
+
+def _chosen(field: Field, progress: Progress) -> list[tuple[Draft, float, str]]:
+    """The best of the candidates that pass, no two for one band, the strongest first."""
+    found: list[tuple[Draft, float, str]] = []
+    seen: set[bytes] = set()
+    proposed = candidates(field, progress)
+    for i, cells in enumerate(proposed):
+        progress.tick("looking at bands", i, len(proposed))
+        draft = examine(field, cells)
+        if draft is None or draft.cells.tobytes() in seen:
+            continue
+        seen.add(draft.cells.tobytes())
+        worth, gate = score(field, draft)
+        if worth >= 1:
+            found.append((draft, worth, gate))
+    found.sort(key=lambda item: -min(item[1], 2.0) * np.sqrt(item[0].strain))
+    kept: list[tuple[Draft, float, str]] = []
+    for item in found:
+        if all(_apart(field, item[0], other[0]) for other in kept):
+            kept.append(item)
+    kept.sort(key=lambda item: -item[1] * item[0].strain)
+    return kept
+
+
+def _apart(field: Field, one: Draft, other: Draft) -> bool:
+    common = field.strain[np.intersect1d(one.cells, other.cells)].sum()
+    if common > _SAME * min(one.strain, other.strain):
+        return False
+    # A candidate that lies beside a band, within its own width, only sees the band's flank.
+    gap = np.linalg.norm(one.position - other.position)
+    return bool(gap > max(one.width, other.width))
+
+
+def _hinge(
+    field: Field, region: Array, number: int, draft: Draft, worth: float, gate: str, whole: float | None
+) -> Hinge:
+    curve, joint = draft.curve, is_joint(draft)
+    straight = isinstance(curve, Line)
+    count = 2 if straight else _CURVE_POINTS
+    along = np.linspace(*draft.ends, count)
+    axis = curve.foot(along)
+    if straight:
+        axis = axis + (draft.position - curve.foot(curve.along(draft.position[None]))[0])
+    direction = draft.fold / max(np.linalg.norm(draft.fold), 1e-300)
+    near_a, near_b = (side.cells for side in draft.sides)
+    sides, swap = _regions_joined(field, region, draft, near_a, near_b)
+    fold, arm = draft.fold, draft.across
+    if swap:
+        fold, arm, sides = -fold, -arm, sides[::-1]
+    arm = arm - (arm @ direction) * direction
+    kind = "joint" if joint else curve.kind
+    return Hinge(
+        number=number,
+        kind=kind,
+        axis=axis,
+        motion=_motion(field, draft, axis),
+        position=draft.position,
+        direction=direction if fold @ direction >= 0 else -direction,
+        length=draft.length,
+        width=draft.width,
+        fold=fold,
+        stiffness=None if whole is None else 2 * draft.strain * whole / draft.bend**2,
+        strain_share=draft.strain,
+        volume_share=draft.volume,
+        contrast=draft.contrast,
+        turn_share=draft.turn_share,
+        cells=draft.cells,
+        sides=sides,
+        arm=arm / max(np.linalg.norm(arm), 1e-300),
+        score=worth,
+        gate=gate,
+        confidence=confidence(worth),
+        label=label(worth, draft),
+    )
+
+
+def _regions_joined(field, region, draft, near_a, near_b):
+    """Cells of the regions on both sides, and whether they must change places for A to be the held or larger one."""
+    numbers = [_majority(region[near]) for near in (near_a, near_b)]
+    if numbers[0] != numbers[1]:
+        sides = tuple(np.nonzero(region == n)[0] if n >= 0 else np.empty(0, np.int64) for n in numbers)
+    else:  # the band does not go all the way: what turns about it is its surroundings only
+        sides = near_a, near_b
+    ground = [draft.sides[i].ground for i in (0, 1)]
+    if any(ground):
+        return sides, ground[1]
+    held = [field.clamped[s].any() for s in sides]
+    if held[0] != held[1]:
+        return sides, held[1]
+    return sides, bool(field.volume[sides[1]].sum() > field.volume[sides[0]].sum())
+
+
+def _majority(numbers: Array) -> int:
+    numbers = numbers[numbers >= 0]
+    return int(np.bincount(numbers).argmax()) if len(numbers) else -1
+
+
+def _motion(field: Field, draft: Draft, axis: Array) -> Array:
+    """(k, 3) translation of points on the axis: that of the nearest cell of the band and its rotation."""
+    middle = field.middle[draft.cells]
+    nearest = draft.cells[np.linalg.norm(axis[:, None] - middle[None], axis=2).argmin(axis=1)]
+    return field.shift[nearest] + np.cross(field.turn[nearest], axis - field.middle[nearest])
