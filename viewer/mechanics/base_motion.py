@@ -1,0 +1,199 @@
+"""Inertia against rigid motion: what a moving base, or the body moving as one piece, has to do with its modes.
+
+The supports move as one rigid base, grounded springs with them: u = r a + F y, with r the six rigid motions, F what the
+free degrees of freedom y carry (links and ties included) and a the base's motion. The base then drives the free ones
+through g = Fᵀ M r, which without links is M_ff r_f + M_fs r_s, and a mode φ = F y answers with (gᵀy)²/(φᵀMφ), its
+effective mass. The sum over all modes is gᵀ M_ff⁻¹ g; what is missing from rᵀ M r rides on the supports. (Wijker J.,
+Mechanical Vibrations in Spacecraft Design, 2004, ch. 9; from memory.)
+
+Only the mass enters: no stiffness is formed.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+import scipy.sparse as sp
+
+from viewer.errors import ModelError
+from viewer.jobs import SILENT, Progress
+from viewer.mechanics.assembly import Layout, lay_out
+from viewer.mechanics.given_matrices import given_system
+from viewer.mechanics.patch import rigid_fields
+from viewer.mechanics.pattern import Pattern
+from viewer.mechanics.turning import cell_rotations
+from viewer.model.arrays import Array
+from viewer.model.design import Design
+from viewer.model.modes import ModeSet
+
+MOTIONS = ("x", "y", "z", "about x", "about y", "about z")
+_CLOSE = 1e-11  # residual of M_ff⁻¹ g, relative
+_STEPS = 2000
+
+
+@dataclass(frozen=True, eq=False)
+class Inertia:
+    """The mass of a design. layout; cells (n_dof, n_dof) the mass of its cells alone, kg."""
+
+    layout: Layout
+    cells: sp.csr_array
+
+    def times(self, vectors: Array) -> Array:
+        """(k, n_dof) M v of the vectors (k, n_dof), lumped masses included."""
+        out = np.ascontiguousarray((self.cells @ vectors.T).T)
+        for item in self.layout.masses:
+            pull = item.operator.T @ (item.core @ (item.operator @ vectors[:, item.dofs].T))
+            np.add.at(out, (slice(None), item.dofs), pull.T)
+        return out
+
+    @cached_property
+    def centre(self) -> Array:
+        """(3,) m, centre of mass. Raises ``ModelError`` when nothing has mass."""
+        origin = self.layout.points.mean(axis=0)
+        fields = self.rigid(origin)
+        crossed = fields @ self.times(fields[:3]).T  # (6, 3): rows 3… hold the first moments
+        mass = np.trace(crossed[:3]) / 3
+        if not mass > 0:
+            raise ModelError(f"design '{self.layout.design.name}' has no mass", do="give its materials a density")
+        moments = crossed[3:]  # m (arm × …): entry (about y, x) is m z
+        arm = np.array([moments[2, 1] - moments[1, 2], moments[0, 2] - moments[2, 0], moments[1, 0] - moments[0, 1]])
+        return origin + arm / (2 * mass)
+
+    def rigid(self, about: Array) -> Array:
+        """(6, n_dof) the unit rigid motions ux uy uz rx ry rz about a point."""
+        return rigid_vectors(self.layout, about)
+
+
+@dataclass(frozen=True, eq=False)
+class BaseMotion:
+    """What a base that moves by the six unit motions about a point has to do with a body.
+
+    about   (3,) m
+    fields  (6, n_dof) the body following as one piece; forces (6, n_dof) M times these
+    pull    (6, n_free) g on the free degrees of freedom
+    whole   (6,) kg and kg·m²: rᵀ M r; free (6,): gᵀ M_ff⁻¹ g, what all modes together hold
+    """
+
+    about: Array
+    fields: Array
+    forces: Array
+    pull: Array
+    whole: Array
+    free: Array
+
+
+def weigh(design: Design, progress: Progress = SILENT) -> Inertia:
+    """The mass of a design, from its materials and lumped masses or from the matrix it was given. ``ModelError``."""
+    if design.physics.matrices is not None:
+        system = given_system(design)
+        return Inertia(system, system.M)
+    layout = lay_out(design, progress)
+    return Inertia(layout, Pattern(layout).matrix(layout, "mass", progress))
+
+
+def rigid_vectors(layout: Layout, about: Array) -> Array:
+    """(6, n_dof) the unit rigid motions ux uy uz rx ry rz about a point, rotations of nodes included."""
+    moved = np.moveaxis(rigid_fields(layout.points, about), 2, 0)
+    turned = np.zeros_like(moved)
+    turned[3:] = np.eye(3)[:, None, :]
+    return layout.gather(moved, turned)
+
+
+def base_motion(inertia: Inertia, about: Array | None = None, progress: Progress = SILENT) -> BaseMotion:
+    """The six motions of a rigid base about ``about`` (None: the centre of mass)."""
+    layout = inertia.layout
+    point = inertia.centre if about is None else np.asarray(about, float)
+    fields = inertia.rigid(point)
+    forces = inertia.times(fields)
+    pull = layout.force(forces)
+
+    def mass(values: Array) -> Array:
+        return layout.force(inertia.times(layout.extend(values)))
+
+    answer = _conjugate_gradients(mass, pull, fields[:, layout.free], _diagonal(inertia), progress)
+    return BaseMotion(
+        point,
+        fields,
+        forces,
+        pull,
+        np.einsum("in,in->i", fields, forces),
+        np.einsum("in,in->i", pull, answer),
+    )
+
+
+def mode_vectors(layout: Layout, modes: ModeSet, picked: Array) -> tuple[Array, tuple[str, ...]]:
+    """(k, n_dof) the shapes of the modes ``picked`` and cautions.
+
+    Where nodes have rotations and the modes have none, a node turns as the cells around it do on average: good enough
+    for inertia, in which rotations of sheets weigh little, not for strain.
+    """
+    moved = np.stack([modes.shape(int(i)) for i in picked])
+    if not layout.has_rotations:
+        return layout.gather(moved), ()
+    given = [modes.rotations(int(i)) for i in picked]
+    known = [values for values in given if values is not None]
+    if len(known) == len(given):
+        return layout.gather(moved, np.stack(known)), ()
+    turned = np.stack([_nodal_turns(layout, shape) for shape in moved])
+    return layout.gather(moved, turned), ("rotations missing from the shapes are taken from the cells around a node",)
+
+
+def _nodal_turns(layout: Layout, shape: Array) -> Array:
+    mesh = layout.design.mesh
+    turns = cell_rotations(mesh, shape)
+    total, count = np.zeros(shape.shape, shape.dtype), np.zeros(mesh.n_nodes)
+    for block, start in zip(mesh.blocks, mesh.block_starts[:-1], strict=True):
+        for nodes in block.nodes.T:
+            np.add.at(total, nodes, turns[start : start + len(block)])
+            count += np.bincount(nodes, minlength=mesh.n_nodes)
+    return total / np.maximum(count, 1)[:, None]
+
+
+def _diagonal(inertia: Inertia) -> Array:
+    """(n_free,) of Fᵀ M F near enough to precondition with: 1 where there is no mass."""
+    layout = inertia.layout
+    diagonal = np.abs(inertia.cells.diagonal())
+    for item in layout.masses:
+        np.add.at(diagonal, item.dofs, np.abs(item.matrix().tocsr().diagonal()))
+    if layout.follow is not None:
+        carrier = sp.csr_array(layout.follow[:, layout.free])
+        diagonal = carrier.multiply(carrier).T @ diagonal
+    else:
+        diagonal = diagonal[layout.free]
+    return np.where(diagonal > 0, diagonal, 1.0)
+
+
+def _conjugate_gradients(
+    matrix: Callable[[Array], Array], right: Array, start: Array, diagonal: Array, progress: Progress
+) -> Array:
+    """(k, n) x with matrix(x) = right, all rows at once, preconditioned by the diagonal (Hestenes and Stiefel 1952).
+
+    A mass matrix needs few steps, since its condition does not grow with the mesh (Wathen A.J., IMA J. Numer. Anal. 7
+    (1987) 449; from memory). ``start`` is the answer far from the supports. A matrix that leaves some directions
+    without mass is met too, since ``right`` lies in its range.
+    """
+    found = start.astype(float)
+    left = right - matrix(found)
+    scaled = left / diagonal
+    size = np.einsum("kn,kn->k", left, scaled)
+    bound = _CLOSE**2 * np.maximum(np.einsum("kn,kn->k", right, right / diagonal), 1e-300)
+    step = scaled.copy()
+    for number in range(_STEPS):
+        if (size <= bound).all():
+            return found
+        progress.tick("inertia of the supports", number)
+        along = matrix(step)
+        bend = np.einsum("kn,kn->k", step, along)
+        length = np.divide(size, bend, out=np.zeros_like(size), where=(bend > 0) & (size > bound))
+        found += length[:, None] * step
+        left -= length[:, None] * along
+        scaled = left / diagonal
+        last, size = size, np.einsum("kn,kn->k", left, scaled)
+        step = scaled + np.divide(size, last, out=np.zeros_like(size), where=last > 0)[:, None] * step
+    raise ModelError(
+        "the mass that rides on the supports could not be found: the mass matrix is too badly scaled",
+        do="look for materials without density or with a density in another unit",
+    )
