@@ -14,12 +14,14 @@ from viewer.scene.picture import Body, HingeMark
 from viewer.scene.tokens import FAN_OPACITY, PIN_RADIUS
 
 HEAD = 2.5  # radius of a pin's heads, in radii of the pin; their length
-HEAD_LENGTH = 1.5
+HEAD_LENGTH = 1.1
+LEAST_RADIUS = 0.62  # of the full one, for short hinges, which a full pin would hide …
+SLIM = 0.032  # … namely those whose axis is shorter than a full radius over this
 CASING = 0.7  # the casing stands so far out, in radii: 1.7 radii in all
 OVERHANG = 0.15  # of the axis, at each end …
 MOST_OVERHANG = 0.045  # … and of the diagonal
-BALL = 2.7  # radius of a joint's ball, in radii of the pin
-JOINT_PIN = 0.03  # half length of the pin through a joint, of the diagonal
+BALL = 2.7  # radius of a joint's ball, in radii of a full pin
+JOINT_PIN = 0.04  # half length of the pin through a joint, of the diagonal
 FAN = 0.19  # length of the fan, of the diagonal, where the folding side reaches so far
 LEAST_FAN = 0.06
 FAN_LINE = 1.4
@@ -32,11 +34,11 @@ def pins(body: Body, diagonal: float) -> list[Piece]:
     found: list[Piece] = []
     for mark in body.hinges:
         path, move = _spindle(mark, body.factor, diagonal)
-        radius = PIN_RADIUS * diagonal
+        radius = pin_radius(mark, diagonal)
         for grown in (CASING * radius, 0.0):
             found.append(_pin(mark, path, move, radius, grown))
             if len(mark.axis) == 1:
-                found.append(_ball(mark, body.factor, BALL * radius, grown))
+                found.append(_ball(mark, body.factor, BALL * PIN_RADIUS * diagonal, grown))
     return found
 
 
@@ -52,9 +54,27 @@ def near_head(mark: HingeMark, factor: float, diagonal: float, toward_eye: Array
     return path[end], move[end]
 
 
-def head_radius(diagonal: float) -> float:
+def pin_radius(mark: HingeMark, diagonal: float) -> float:
+    """Radius of a hinge's pin, m."""
+    full = PIN_RADIUS * diagonal
+    if len(mark.axis) == 1:
+        return LEAST_RADIUS * full
+    long = float(np.linalg.norm(np.diff(mark.axis, axis=0), axis=1).sum())
+    return float(np.clip(SLIM * long, LEAST_RADIUS * full, full))
+
+
+def head_radius(mark: HingeMark, diagonal: float) -> float:
     """Radius of a pin's heads with their casing, m."""
-    return (HEAD + CASING) * PIN_RADIUS * diagonal
+    return (HEAD + CASING) * pin_radius(mark, diagonal)
+
+
+def middle_line(mark: HingeMark, diagonal: float) -> Array:
+    """(k, 3) m, the pin's middle line at rest without its ends, which labels belong to."""
+    path, _ = _spindle(mark, 0.0, diagonal)
+    inner = path.copy()
+    for end, next_ in ((0, 1), (-1, -2)):
+        inner[end] += 0.1 * (path[next_] - path[end])
+    return inner
 
 
 def _colour(mark: HingeMark) -> str:
@@ -128,7 +148,7 @@ def _fan(mark: HingeMark, factor: float, diagonal: float, toward_eye: Array) -> 
     moved = np.concatenate([[move], move + share * turned])
     k = np.arange(1, _STEPS + 1)
     triangles = np.stack([0 * k, k, k + 1], axis=1)
-    lines = np.array([[0, 1], [0, _STEPS + 1]])
+    lines = np.concatenate([[[0, 1], [0, _STEPS + 1]], np.stack([k, k + 1], axis=1)])  # both arms and the arc
     colour = _colour(mark)
     return Piece(
         points, moved, triangles, lines, colour, colour, FAN_LINE, on_top=True, shaded=False, opacity=FAN_OPACITY

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 
@@ -128,7 +129,7 @@ def _end(label: Label, frame: Frame, phase: float, halo: str) -> list[Primitive]
 
 
 def picture_labels(picture: Picture, frame: Frame) -> list[Label]:
-    """Hinges, flaps, struts and call-outs of every body; functional points, then masses, of two compared bodies only
+    """Flaps, hinges, struts and call-outs of every body; functional points, then masses, of two compared bodies only
     the first's, or in an overlay of the one in front."""
     tokens = THEMES[picture.theme]
     diagonal = max(b.mesh.diagonal for b in picture.bodies)
@@ -157,15 +158,15 @@ def picture_labels(picture: Picture, frame: Frame) -> list[Label]:
 def _found_labels(body: Body, index: int, frame: Frame, diagonal: float, tokens: Tokens) -> list[Label]:
     """Labels of what was found about a body, or is tried on it."""
     found = []
-    for hinge in body.hinges:
-        at, move = hinge_marks.near_head(hinge, body.factor, diagonal, frame.toward_eye)
-        anchor = Anchor(index, at, move, hinge_marks.head_radius(diagonal) / frame.metres_per_pixel)
-        colour = tokens.accent if hinge.chosen else tokens.ink
-        found.append(Label(_lines(hinge.title, hinge.lines), colour, anchor, tokens.ink))
     for flap in body.flaps:
         row = _middle_node(body, flap.cells)
         anchor = Anchor(index, body.mesh.points[row], body.factor * body.shape[row], 0.0)
         found.append(Label(_lines(flap.title, flap.lines), tokens.accent, anchor, tokens.ink, "dot"))
+    for hinge in body.hinges:
+        at, move = hinge_marks.near_head(hinge, body.factor, diagonal, frame.toward_eye)
+        anchor = Anchor(index, at, move, hinge_marks.head_radius(hinge, diagonal) / frame.metres_per_pixel)
+        colour = tokens.accent if hinge.chosen else tokens.ink
+        found.append(Label(_lines(hinge.title, hinge.lines), colour, anchor, tokens.ink))
     for strut in body.struts:
         anchor = Anchor(index, strut.ends.mean(axis=0), body.factor * strut.motion.mean(axis=0), 6.0)
         found.append(Label(_lines(strut.title, strut.lines), tokens.modified, anchor, tokens.ink))
@@ -173,6 +174,18 @@ def _found_labels(body: Body, index: int, frame: Frame, diagonal: float, tokens:
         anchor = Anchor(index, call.position, body.factor * call.motion, SIGN + 1.6)
         colour, end = (tokens.gain[-1], "+") if call.sign > 0 else (tokens.gain[0], "−")
         found.append(Label(_lines(call.lines[0], call.lines[1:]), colour, anchor, tokens.ink, end))
+    return found
+
+
+def marked_lines(picture: Picture, frame: Frame) -> list[Line]:
+    """Lines on the sheet that labels and leaders should not run over: pins and struts at rest."""
+    diagonal = max(b.mesh.diagonal for b in picture.bodies)
+    found = []
+    for index, body in enumerate(picture.bodies):
+        paths = [hinge_marks.middle_line(mark, diagonal) for mark in body.hinges]
+        for path in (*paths, *(mark.ends for mark in body.struts)):
+            at = frame.project(path, index)
+            found += [Line(((a[0], a[1]), (b[0], b[1])), "#000000") for a, b in pairwise(at.tolist())]
     return found
 
 

@@ -10,7 +10,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 from viewer.scene.colour_bar import picture_bar
-from viewer.scene.labels import Placed, cover, picture_labels, place_label
+from viewer.scene.labels import Placed, cover, marked_lines, picture_labels, place_label
 from viewer.scene.magnifier import Magnifier, place_magnifier
 from viewer.scene.note_layout import note_height, note_items, note_knob, swings
 from viewer.scene.picture import Picture
@@ -85,7 +85,7 @@ def plan_sheet(picture: Picture, frame: Frame, surfaces: Sequence[Surface] | Non
         covered = cover(picture, frame, surfaces)
         taken = [grown(item.box, 4.0) for item in furniture if not isinstance(item, Line)]
         taken.append((0.0, band_top, frame.width, frame.height))
-        leaders: list[Line] = []
+        leaders = marked_lines(picture, frame)
         left, top, right, foot = frame.boxes[0]
         magnifier = place_magnifier(picture, frame, (left, top, right, min(foot, band_top)), covered, taken, leaders)
         for label in wanted:

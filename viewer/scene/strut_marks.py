@@ -11,7 +11,7 @@ from viewer.scene.forms import Piece, tube
 from viewer.scene.picture import Body, StrutMark
 
 RADIUS = 0.0036  # of the bar, as a share of the diagonal
-FOOT, FOOT_LENGTH = 2.6, 1.4  # radius and length of a foot, in radii of the bar
+FOOT, FOOT_LENGTH = 2.8, 1.0  # radius and length of a foot, in radii of the bar
 CASING = 0.7
 DASH, GAP = 0.026, 0.014  # about, of the diagonal
 COLOUR = "modified"
