@@ -7,7 +7,7 @@ the noise, but also whatever the part has and the model has not, so the share is
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -24,7 +24,7 @@ from viewer.model.design import Design
 from viewer.model.modes import ArrayShapes, ModeSet
 
 NOISE_BOUND = 0.004  # share of noise from which energies of a shape are not to be formed without smoothing
-_EXCESS = 2.0  # times the noise seen beforehand: what was taken out beyond is called something else than noise
+_EXCESS, _SPARE = 1.3, 0.003  # the noise seen beforehand is known within 25 %: beyond, what was taken is not noise
 
 
 @dataclass(frozen=True, eq=False)
@@ -53,7 +53,7 @@ class Smoothed:
     @property
     def foreign(self) -> bool:
         """Whether clearly more went away than there was noise: the shape is not one of this model."""
-        return bool(self.noise > _EXCESS * np.nan_to_num(self.expected) + 0.01)
+        return bool(self.noise > _EXCESS * self.expected + _SPARE)
 
     @property
     def caution(self) -> str:
@@ -109,13 +109,11 @@ def smoothed(design: Design, modes: ModeSet, number: int, progress: Progress = S
     expected = float("nan") if design.physics.matrices is not None else noise_of(system, moved, progress)
     omega = float(np.nan_to_num(modes.omega(index)))
     square = omega**2 if omega > 0 and not states_no_material(design) else None
+    absent = np.zeros(system.n_dof, bool)
+    if turned is None:
+        absent[system.dof[:, 3:][system.dof[:, 3:] >= 0]] = True
     vector = system.gather(moved, turned)
-    missing = turned is None and system.has_rotations
-    wanted = float(np.nan_to_num(expected))
-    found = low_pass(system, vector, square, wanted, progress)
-    if missing:  # rotations at rest pull a little by their inertia: once more with those that were found
-        _, turned = system.spread(found.vector)
-        found = low_pass(system, system.gather(moved, turned), found.square, wanted, progress)
+    found = low_pass(system, vector, square, float(np.nan_to_num(expected)), absent, progress)
     shape, rotations = system.spread(found.vector)
     there = (system.dof[:, :3] >= 0).any(axis=1)
     rest = float(np.linalg.norm(moved[there]))
@@ -131,7 +129,12 @@ def smoothed(design: Design, modes: ModeSet, number: int, progress: Progress = S
 
 
 def _material(design: Design) -> Design:
-    return assume_material(design) if states_no_material(design) else design
+    """The design, of one uniform material where it states none, held and joined as it is."""
+    if not states_no_material(design):
+        return design
+    assumed, given = assume_material(design), design.physics
+    held = replace(assumed.physics, supports=given.supports, links=given.links, ties=given.ties)
+    return assumed.with_(physics=held)
 
 
 def _system(design: Design, progress: Progress) -> System:
