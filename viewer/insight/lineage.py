@@ -222,8 +222,7 @@ def _encounters(
     for s, p in enumerate(passages):
         if p is not None and p.d[0] * p.d[1] < 0:
             found.append(_swapped(a, b, p, values[s], values[s + 1]))
-    for run in _turning(passages):
-        found.append(_veered(a, b, run, passages, values))
+    found += [v for run in _turning(passages) if (v := _veered(a, b, run, passages, values)) is not None]
     return found
 
 
@@ -254,9 +253,13 @@ def _turning(passages: Sequence[_Passage | None]) -> list[range]:
     return runs
 
 
-def _veered(a: int, b: int, run: range, passages: Sequence[_Passage | None], values: Array) -> Encounter:
+def _veered(a: int, b: int, run: range, passages: Sequence[_Passage | None], values: Array) -> Encounter | None:
+    """The veering of a run; None when the frequencies do not turn away from one another within it: shapes also change
+    into one another slowly, far apart in frequency."""
     inside = [(s, p) for s in run if (p := passages[s]) is not None]
     s, p = min(inside, key=lambda item: item[1].gap)
+    if (s == run.start and p.t == 0.0) or (s == run.stop - 1 and p.t == 1.0):
+        return None
     at = float(values[s] + p.t * (values[s + 1] - values[s]))
     turned = float(np.degrees(sum(q.turn for _, q in inside)))
     between = (float(values[run.start]), float(values[run.stop]))

@@ -8,7 +8,18 @@ import numpy as np
 
 from viewer.model.arrays import Array
 from viewer.scene.primitives import Box, Polygon, Primitive, Sheet, Text
-from viewer.scene.tokens import BAND_HEIGHT, BASE_WIDTH, BASELINES, MARGIN, TEXT, TEXT_NAME, TEXT_SMALL, Tokens, rgb
+from viewer.scene.tokens import (
+    BAND_HEIGHT,
+    BASE_WIDTH,
+    BASELINES,
+    MARGIN,
+    OVERFLOW_LINE,
+    TEXT,
+    TEXT_NAME,
+    TEXT_SMALL,
+    Tokens,
+    rgb,
+)
 from viewer.scene.typeface import text_width
 
 HEIGHT = 720.0
@@ -17,17 +28,32 @@ HEIGHT = 720.0
 def chart_sheet(
     tokens: Tokens, title: str, notes: Sequence[str], items: Sequence[Primitive], height: float = HEIGHT
 ) -> Sheet:
-    """A sheet 960 wide: ``items`` above the note band that every picture has, with title and up to two notes."""
+    """A sheet 960 wide: ``items`` above the note band that every picture has, with its title and notes, the first in
+    ink. ``height`` is meant for two lines of notes; each further one adds a line below."""
     top = height - BAND_HEIGHT
+    lines = [(line, tokens.soft if k else tokens.ink) for k, words in enumerate(notes) for line in _broken(words)]
+    height += OVERFLOW_LINE * max(len(lines) - 2, 0)
     band: list[Primitive] = [
         rectangle((0, 0, BASE_WIDTH, height), tokens.background),
         rectangle((0, top, BASE_WIDTH, height), tokens.band),
         rectangle((0, top, BASE_WIDTH, top + 1), tokens.rule),
         Text(MARGIN, top + BASELINES[0], title, tokens.ink, TEXT_NAME, True),
     ]
-    for words, baseline, colour in zip(notes, BASELINES[1:], (tokens.ink, tokens.soft), strict=False):
-        band.append(Text(MARGIN, top + baseline, fitted(words, BASE_WIDTH - 2 * MARGIN, TEXT), colour, TEXT))
+    for k, (words, colour) in enumerate(lines):
+        band.append(Text(MARGIN, top + BASELINES[1] + (BASELINES[2] - BASELINES[1]) * k, words, colour, TEXT))
     return Sheet(BASE_WIDTH, height, (*band, *items))
+
+
+def _broken(words: str) -> list[str]:
+    """Lines no wider than the band, broken at spaces."""
+    lines = [""]
+    for word in words.split(" "):
+        longer = f"{lines[-1]} {word}".strip()
+        if lines[-1] and text_width(longer, TEXT) > BASE_WIDTH - 2 * MARGIN:
+            lines.append(word)
+        else:
+            lines[-1] = longer
+    return lines
 
 
 def rectangle(box: Box, colour: str) -> Polygon:

@@ -56,7 +56,7 @@ def _rail(x: float, at: Sequence[float], colour: str, side: int) -> list[Primiti
     return [rail, *(Line(((x, y), (x + side * RUNG, y)), colour, 3.0) for y in at)]
 
 
-def _scale(low: float, high: float, y, tokens: Tokens) -> list[Primitive]:  # noqa: ANN001
+def _scale(low: float, high: float, y, tokens: Tokens) -> list[Primitive]:
     middle, items = sum(RAILS) / 2, []
     for value in ticks(low, high, 7):
         items.append(Text(middle, y(value) + 5, f"{value:g}", tokens.soft, TEXT_SMALL, False, "middle"))
@@ -65,7 +65,7 @@ def _scale(low: float, high: float, y, tokens: Tokens) -> list[Primitive]:  # no
     return [*items, Text(middle, 50, "Hz", tokens.soft, TEXT_SMALL, False, "middle")]
 
 
-def _ribbons(pairing: Pairing, y, tokens: Tokens) -> list[Primitive]:  # noqa: ANN001
+def _ribbons(pairing: Pairing, y, tokens: Tokens) -> list[Primitive]:
     items: list[Primitive] = []
     colour = blend(tokens.background, tokens.modified, 0.22)
     for p in pairing.pairs:
@@ -85,9 +85,13 @@ def _ribbons(pairing: Pairing, y, tokens: Tokens) -> list[Primitive]:  # noqa: A
 
 
 def _labels(
-    pairs: Sequence[ModePair], numbers: Sequence[int | None], at: Sequence[float], names: Sequence[str], tokens: Tokens,
+    pairs: Sequence[ModePair],
+    numbers: Sequence[int | None],
+    at: Sequence[float],
+    names: Sequence[str],
+    tokens: Tokens,
     side: int,
-) -> list[Primitive]:  # fmt: skip
+) -> list[Primitive]:
     """Number, frequency and name beside each rung; leaders where they had to move apart."""
     colour = tokens.baseline if side < 0 else tokens.modified
     rail = RAILS[0] if side < 0 else RAILS[1]
@@ -107,7 +111,7 @@ def _labels(
     return items
 
 
-def _changes(pairing: Pairing, y, tokens: Tokens) -> list[Primitive]:  # noqa: ANN001
+def _changes(pairing: Pairing, y, tokens: Tokens) -> list[Primitive]:
     """The change in frequency of each pair, at a third of its ribbon, kept apart."""
     paired = [p for p in pairing.pairs if p.kind == "paired" and change(p.second_hz or 0.0, p.first_hz or 0.0)]
     x = RAILS[1] - 62

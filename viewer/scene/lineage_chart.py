@@ -37,7 +37,7 @@ def lineage_chart(finding: LineageFinding, title: str = "", theme: str = "light"
     return chart_sheet(tokens, title or f"natural frequencies against {finding.parameter}", notes, items)
 
 
-def _axes(finding: LineageFinding):  # noqa: ANN202
+def _axes(finding: LineageFinding):
     low, high = float(finding.values[0]), float(finding.values[-1])
     hz = np.concatenate([line.freq_hz[np.isfinite(line.freq_hz)] for line in finding.lines])
     least, most = float(hz.min(initial=np.inf)), float(hz.max(initial=0.0))
@@ -49,7 +49,7 @@ def _axes(finding: LineageFinding):  # noqa: ANN202
     return x, y
 
 
-def _grid(finding: LineageFinding, x, y, tokens: Tokens) -> list[Primitive]:  # noqa: ANN001
+def _grid(finding: LineageFinding, x, y, tokens: Tokens) -> list[Primitive]:
     items: list[Primitive] = [Text(LEFT - 12, 34, "Hz", tokens.soft, TEXT_SMALL, False, "right")]
     for value in ticks(y.low, y.high, 7):
         items.append(Line(((LEFT, y(value)), (RIGHT, y(value))), tokens.rule, 1.0))
@@ -66,14 +66,14 @@ def _grid(finding: LineageFinding, x, y, tokens: Tokens) -> list[Primitive]:  # 
     return items
 
 
-def _line(finding: LineageFinding, hz, x, y, tokens: Tokens) -> list[Primitive]:  # noqa: ANN001
+def _line(finding: LineageFinding, hz, x, y, tokens: Tokens) -> list[Primitive]:
     known = np.isfinite(hz)
     points = tuple((float(x(v)), float(y(f))) for v, f in zip(finding.values[known], hz[known], strict=True))
     dots: list[Primitive] = [Disc(*p, 2.6, tokens.baseline) for p in points] if len(finding.values) <= 40 else []
     return [Line(points, tokens.baseline, 2.4), *dots] if len(points) > 1 else dots
 
 
-def _mark(e: Encounter, finding: LineageFinding, x, y, tokens: Tokens) -> list[Primitive]:  # noqa: ANN001
+def _mark(e: Encounter, finding: LineageFinding, x, y, tokens: Tokens) -> list[Primitive]:
     lines = {line.number: line.freq_hz for line in finding.lines}
     at = [float(np.interp(e.at, finding.values, lines[n])) for n in (e.first, e.second)]
     cx, cy = float(x(e.at)), float(y(sum(at) / 2))
@@ -84,7 +84,7 @@ def _mark(e: Encounter, finding: LineageFinding, x, y, tokens: Tokens) -> list[P
     return [Ring(cx, cy, 11.0, tokens.accent, 2.4), words]
 
 
-def _names(finding: LineageFinding, y, tokens: Tokens) -> list[Primitive]:  # noqa: ANN001
+def _names(finding: LineageFinding, y, tokens: Tokens) -> list[Primitive]:
     """Number and name of each lineage at its end, kept apart."""
     ends = []
     for line in finding.lines:

@@ -10,8 +10,8 @@ from viewer.scene.figures import hertz
 from viewer.scene.primitives import Line, Primitive, Sheet, Text
 from viewer.scene.tokens import BAND_HEIGHT, BASE_WIDTH, MARGIN, TEXT, TEXT_SMALL, THEMES
 
-LEFT, TOP = 250.0, 96.0  # px kept for names at the side and above
-CELL = (34.0, 92.0)  # px, least and largest side of a cell
+LEFT, TOP = 330.0, 96.0  # px kept for names at the side and above
+CELL = (34.0, 100.0)  # px, least and largest side of a cell
 SAID = 0.05  # MAC from which on the value is written
 
 
@@ -52,9 +52,10 @@ def mac_chart(
         for j in range(columns):
             items += _cell(pairing, i, j, side, size, theme)
     counts = pairing.to_dict()["counts"]
+    lost = counts["vanished"] + counts["merged"]
     notes = (
         "1 = same shape, 0 = nothing in common (modal assurance criterion, weighted by mass); framed: paired",
-        f"{counts['paired']} paired, {counts['vanished'] + counts['merged']} without counterpart, {counts['new']} new "
+        f"{counts['paired']} paired, {lost} without counterpart, {counts['new']} new "
         f"· shapes compared at {len(pairing.support.weights)} places",
     )
     return chart_sheet(tokens, f"{pairing.first} against {pairing.second}", notes, items, height)

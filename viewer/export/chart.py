@@ -1,0 +1,42 @@
+"""A flat chart as a PNG."""
+
+from __future__ import annotations
+
+import os
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+from PIL import Image
+
+from viewer.jobs import SILENT, Progress, atomic_path
+from viewer.model.arrays import Array
+from viewer.scene.primitives import Sheet
+from viewer.scene.tokens import BASE_WIDTH
+from viewer.stage.sheet_actors import SheetActors
+from viewer.stage.stage import SUPERSAMPLE, reduce
+from viewer.stage.windows import off_screen, pixels
+
+
+def save_chart(
+    sheet: Sheet, path: str | os.PathLike[str], *, width: int = BASE_WIDTH, progress: Progress = SILENT
+) -> Path:
+    """Write a sheet as PNG, ``width`` pixels wide; returns the path. Raises ``ExportError``."""
+    progress.tick("drawing", 0, 1)
+    with atomic_path(path) as part:
+        Image.fromarray(sheet_image(sheet, width / sheet.width)).save(part, format="PNG")
+    return Path(path)
+
+
+def sheet_image(sheet: Sheet, scale: float = 1.0) -> Array:
+    """(h, w, 3) uint8 of a sheet alone, on white; a sheet pixel is ``scale`` pixels."""
+    size = round(scale * sheet.width), round(scale * sheet.height)
+    plotter = off_screen(SUPERSAMPLE * size[0], SUPERSAMPLE * size[1])
+    try:
+        plotter.renderer.SetBackground(1, 1, 1)
+        window: Any = plotter.render_window
+        window.SetMultiSamples(0)
+        SheetActors(plotter.renderer).show(sheet)
+        return np.array(reduce(pixels(window)))
+    finally:
+        plotter.close()
