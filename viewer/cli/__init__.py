@@ -9,6 +9,7 @@ from viewer.cli.check import check
 from viewer.cli.hinges import hinges
 from viewer.cli.modes import modes
 from viewer.cli.review import review
+from viewer.cli.struts import struts
 
 app = typer.Typer(
     name="hingelight",
@@ -18,7 +19,7 @@ app = typer.Typer(
     pretty_exceptions_enable=False,
     context_settings={"help_option_names": ["-h", "--help"]},
 )
-for command in (review, modes, hinges, animate, check):
+for command in (review, modes, hinges, struts, animate, check):
     app.command()(command)
 
 

@@ -25,11 +25,12 @@ Rows = Sequence[Mapping[str, Any]]
 
 _UNITS = {
     "hz": "Hz", "percent": "%", "m": "m", "kg": "kg", "s": "s", "deg": "°", "j": "J", "n": "N", "nmrad": "N·m/rad",
-    "hzperkg": "Hz/kg",
+    "hzperkg": "Hz/kg", "nperm": "N/m",
 }  # fmt: skip
 _PREFIXES = ((1.0, "m"), (1e-3, "mm"), (1e-6, "µm"), (1e-9, "nm"))
 _IDENTITY = (
-    "design", "mode", "group", "point", "hinge", "flap", "first_design", "first_mode", "second_design", "second_mode",
+    "design", "mode", "group", "point", "hinge", "flap", "strut",
+    "first_design", "first_mode", "second_design", "second_mode",
 )  # fmt: skip
 _NOTHING = "–"
 _DIGITS = 4  # significant digits of a number in text, when its key has no rule below

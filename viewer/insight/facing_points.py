@@ -133,8 +133,8 @@ class _Surface:
         self.mesh, self.points = mesh, points
         there = usable[skin.faces].all(axis=1)
         self.faces = skin.faces[there]
-        sheet = np.concatenate([[KINDS[b.kind].dim == 2] * len(b) for b in mesh.blocks]) if mesh.blocks else []
-        self.sheet = np.asarray(sheet, bool)[skin.cell[there]]
+        sheet = np.repeat([KINDS[b.kind].dim == 2 for b in mesh.blocks], [len(b) for b in mesh.blocks]).astype(bool)
+        self.sheet = sheet[skin.cell[there]]
         corners = points[self.faces]
         self.middles = corners.mean(axis=1)
         normals = np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])

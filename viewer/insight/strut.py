@@ -363,8 +363,8 @@ def follow(system: System, force: Array, count: int, progress: Progress = SILENT
     while True:
         found = solve_system(system, count, progress)
         moved = np.stack([found.shape(i) for i in range(found.count)])
-        turned = np.stack([found.rotations(i) for i in range(found.count)]) if system.has_rotations else None
-        shares = (system.gather(moved, turned) @ force) ** 2
+        turned = [values for i in range(found.count) if (values := found.rotations(i)) is not None]
+        shares = (system.gather(moved, np.stack(turned) if turned else None) @ force) ** 2
         if shares.max() >= 1 - shares.sum() or found.count < count or count >= _MOST_MODES:
             return _followed((2 * np.pi * found.freq_hz) ** 2, shares)
         count = min(2 * count, _MOST_MODES)

@@ -78,8 +78,8 @@ class TrialStrut:
 
     def strut(self, name: str, mesh: Mesh) -> Strut:
         """The same as an entry of a design. Not for a rigid one."""
-        ends = (Selector(nodes=mesh.node_ids[each.nodes]) for each in (self.first, self.other))
-        return Strut(name, *ends, self.stiffness)
+        first, other = (Selector(nodes=mesh.node_ids[each.nodes]) for each in (self.first, self.other))
+        return Strut(name, first, other, self.stiffness)
 
     def to_dict(self) -> dict[str, Any]:
         return {
@@ -149,11 +149,18 @@ class StrutTrial:
 
 
 def _place(footprint: Footprint) -> dict[str, Any]:
+    numbers = ", ".join(_coordinate(value) for value in footprint.centre)
     return {
+        "words": f"{footprint.group} at ({numbers}) mm" if footprint.group else f"({numbers}) mm",
         "centre_m": footprint.centre.tolist(),
         "group": footprint.group or None,
         "nodes": len(footprint.nodes),
     }
+
+
+def _coordinate(metres: float) -> str:
+    text = f"{1e3 * metres:.0f}" if abs(metres) >= 0.01 else f"{1e3 * metres:.1f}"
+    return "0" if float(text) == 0 else text.replace("-", "−")
 
 
 def sentence_of(facts: Mapping[str, Any]) -> str:
@@ -172,10 +179,10 @@ def sentence_of(facts: Mapping[str, Any]) -> str:
             f"no strut within the part raises it noticeably; the best of {facts['pairs']} tried takes it from "
             f"{_hertz(own)} to {_hertz(final['frequency_hz'])} Hz."
         )
-    rise = _hertz(best["predicted"]["frequency_hz"])
+    most = "" if facts["residual_flexibility"] else "at most "
     parts = [
-        f"{_strut_words(best)} between {_where(best['from'])} and {_where(best['to'])} is predicted to raise it from "
-        f"{_hertz(before)} to {'' if facts['residual_flexibility'] else 'at most '}{rise} Hz"
+        f"{_strut_words(best)} between {best['from']['words']} and {best['to']['words']} is predicted to raise it "
+        f"from {_hertz(before)} to {most}{_hertz(best['predicted']['frequency_hz'])} Hz"
     ]
     if best["resolved"]:
         solved = f"re-solved {_hertz(best['resolved']['frequency_hz'])} Hz"
@@ -211,11 +218,6 @@ def _strut_words(best: Mapping[str, Any]) -> str:
         return "a rigid strut"
     value, unit = (stiffness / 1e6, "kN/mm") if stiffness >= 1e6 else (stiffness / 1e3, "N/mm")
     return f"a strut of {value:.2g} {unit}" if value < 100 else f"a strut of {value:.0f} {unit}"
-
-
-def _where(place: Mapping[str, Any]) -> str:
-    numbers = ", ".join(f"{1e3 * value:.0f}".replace("-0", "0").replace("-", "−") for value in place["centre_m"])
-    return f"{place['group']} at ({numbers}) mm" if place["group"] else f"({numbers}) mm"
 
 
 def _hertz(value: float) -> str:

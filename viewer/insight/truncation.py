@@ -24,6 +24,7 @@ from viewer.mechanics.factor import Factor, factorise
 from viewer.model.arrays import Array
 
 _ALPHA = 0.1  # of the first elastic eigenvalue
+_RIGID = 1e-6  # of the highest known eigenvalue, below which a given mode is taken as rigid
 _COLUMNS = 48  # right-hand sides at a time
 _NOTHING = 1e-9  # share of the flexibility below which nothing is left
 
@@ -37,7 +38,7 @@ class Truncation:
     def __init__(self, system: System, poles: Array, progress: Progress = SILENT) -> None:
         progress.tick("factorising")
         self.system, self.poles = system, poles
-        self.alpha = _ALPHA * float(poles[poles > 0].min())
+        self.alpha = _ALPHA * float(poles[poles > _RIGID * poles.max()].min())
         self.mass = system.restrict(system.M)
         matrix = sp.csr_array(system.restrict(system.K) + self.alpha * self.mass)
         self.factor: Factor = factorise(matrix, definite=True)

@@ -245,8 +245,8 @@ def lay_out(design: Design, progress: Progress = SILENT, *, formulations: Mappin
         masses.append(attachment)
         cautions += [caution] if caution else []
     for strut in physics.struts:
-        spring, ends, caution = strut_attachments(strut, design, dof)
-        springs.append(spring)
+        link_spring, ends, caution = strut_attachments(strut, design, dof)
+        springs.append(link_spring)
         masses += ends
         cautions += [caution] if caution else []
     held = held_dofs(physics.supports, design, dof, n_dof)
