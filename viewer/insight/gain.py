@@ -93,7 +93,11 @@ def gain_map(
     vectors, doubts = shape_vectors(layout, modes, members, progress)
     if not _independent(layout, vectors):
         members, vectors = members[members == index], vectors[members == index]
-    found = _derivatives(layout, vectors, progress)
+    known = None
+    if len(members) == 1 and not relative and _same_elements(energies, layout):
+        square = (2 * np.pi * energies.freq_hz[own]) ** 2
+        known = 2 * energies.strain[own][:, None, None], 2 * energies.kinetic[own][:, None, None] / square
+    found = _derivatives(layout, vectors, known or cell_forms(layout, vectors, progress), progress)
     cautions = (*energies.cautions, *doubts, *_cautions(modes.freq_hz, members, relative, absolute))
     return _finding(layout, modes, number, members, found, absolute, tuple(dict.fromkeys(cautions)))
 
@@ -111,8 +115,9 @@ class _Derivatives:
     per_mass: Array
 
 
-def _derivatives(layout: Layout, vectors: Array, progress: Progress) -> _Derivatives:
-    stiffness, mass = cell_forms(layout, vectors, progress)
+def _derivatives(layout: Layout, vectors: Array, forms: tuple[Array, Array], progress: Progress) -> _Derivatives:
+    """From the vectors (m, n_dof) and the forms of the cells in stiffness and mass, (n_cells, m, m) each."""
+    stiffness, mass = forms
     grown_stiffness, grown_mass = growth_forms(layout, vectors, stiffness, mass, progress)
     springs, masses = attached_forms(layout.springs, vectors), attached_forms(layout.masses, vectors)
     # φ' = φ L⁻ᴴ with L Lᴴ = M has unit modal mass; a form F becomes L⁻¹ F L⁻ᴴ
@@ -144,6 +149,10 @@ def _members(freq_hz: Array, index: int) -> Array:
         return np.array([index])
     runs = [order[part] for part in clusters(freq_hz[order], REPEATED)]
     return np.sort(next(run for run in runs if index in run))
+
+
+def _same_elements(energies: Energies, layout: Layout) -> bool:
+    return set(energies.formulations) == {group.formulation.name for group in layout.blocks}
 
 
 def _independent(layout: Layout, vectors: Array) -> bool:

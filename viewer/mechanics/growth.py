@@ -48,7 +48,7 @@ def cell_forms(layout: Layout, vectors: Array, progress: Progress = SILENT) -> t
 def _products(energy: Array, count: int, phases: int) -> Array:
     """(n_cells, m, m) Hermitian products from energies (m + pairs, n_cells) of vectors, sums and turned sums."""
     first, second = np.triu_indices(count, 1)
-    out = np.zeros((energy.shape[1], count, count), float if phases == 1 else complex)
+    out = np.zeros((energy.shape[1], count, count), float if phases == 1 or count == 1 else complex)
     out[:, np.arange(count), np.arange(count)] = 2 * energy[:count].T
     if len(first):
         crossed = energy[count:].reshape(phases, len(first), -1) - energy[first] - energy[second]
