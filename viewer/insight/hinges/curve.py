@@ -55,6 +55,11 @@ class Arc:
         spoke = np.cos(angle)[:, None] * self.first + np.sin(angle)[:, None] * self.second
         return self.centre + np.polyval(self.radius, angle)[:, None] * spoke
 
+    def spoke(self, along: Array) -> Array:
+        """(n, 3) unit vectors away from the centre."""
+        angle = np.asarray(along)[:, None] / self.mean
+        return np.cos(angle) * self.first + np.sin(angle) * self.second
+
     def tangent(self, along: Array) -> Array:
         angle = np.asarray(along) / self.mean
         spoke = np.cos(angle)[:, None] * self.first + np.sin(angle)[:, None] * self.second

@@ -4,8 +4,10 @@ from __future__ import annotations
 
 import numpy as np
 
-from viewer.insight.hinges.band import JOINT, Draft
+from viewer.insight.hinges.band import Draft
 from viewer.insight.hinges.field import Field
+
+JOINT = 1.6  # elongation below which a band has no line
 
 # Least value of each figure; a figure that must be small is given as its reciprocal.
 THRESHOLDS = {
@@ -13,6 +15,7 @@ THRESHOLDS = {
     "contrast": 4.0,
     "sharp edges": 3.0,
     "turn against the bending beside it": 0.2,
+    "abrupt edges": 2.0,
     "steepness": 2.5,
     "slenderness": 1 / 0.16,
     "turn about the line": 0.85,
@@ -26,7 +29,10 @@ _CAPPED = {"turn about the line", "one sense along the line", "even density acro
 
 
 def is_joint(draft: Draft) -> bool:
-    return draft.length < JOINT * draft.width
+    """Without length, or turning about an axis that is not its line."""
+    return draft.length < JOINT * draft.width or bool(
+        draft.frame.blob and abs(draft.frame.about[0] @ draft.direction) < 0.8
+    )
 
 
 def values(field: Field, draft: Draft) -> dict[str, float]:
@@ -37,6 +43,7 @@ def values(field: Field, draft: Draft) -> dict[str, float]:
         "contrast": draft.contrast,
         "sharp edges": draft.step,
         "turn against the bending beside it": draft.turn_share,
+        "abrupt edges": draft.jump,
         "steepness": draft.steep,
         "slenderness": _JOINT_SIZE * field.size / draft.width if joint else draft.length / draft.width,
         "turn about the line": draft.aligned,

@@ -20,6 +20,21 @@ class Profile:
     step: float
 
 
+@dataclass(frozen=True)
+class Edges:
+    """The step in a profile.
+
+    low, high  m, its two edges
+    filled     least density inside over the mean there
+    jump       density just inside over just outside, the smaller of the two edges
+    """
+
+    low: float
+    high: float
+    filled: float
+    jump: float
+
+
 def profile(low: Array, high: Array, strain: Array, volume: Array, span: tuple[float, float]) -> Profile:
     """Every cell spreads its energy and volume evenly over its extent ``low`` to ``high`` across the band."""
     edges = np.linspace(*span, _BINS + 1)
@@ -43,11 +58,11 @@ def profile(low: Array, high: Array, strain: Array, volume: Array, span: tuple[f
     return Profile((edges[1:] + edges[:-1]) / 2, density, float(step))
 
 
-def edges_of(found: Profile) -> tuple[float, float, float] | None:
-    """The two edges of the densest step in the profile, m, and the least density inside over the mean there.
+def edges_of(found: Profile) -> Edges | None:
+    """The densest step in the profile, None when there is none upwards.
 
     Root of density, which goes as curvature, is fitted by three levels: before, in and after the band; the breaks
-    with the least squares of deviations win. None when there is no step upwards.
+    with the least squares of deviations win.
     """
     there = np.isfinite(found.density)
     if there.sum() < 8:
@@ -57,18 +72,27 @@ def edges_of(found: Profile) -> tuple[float, float, float] | None:
     total = np.concatenate([[0.0], np.cumsum(y)])
     start, stop = np.triu_indices(n + 1, 1)
     inside = (total[stop] - total[start]) / (stop - start)
-    gain = (stop - start) * inside**2
     with np.errstate(invalid="ignore", divide="ignore"):
         before = np.where(start > 0, total[start] / start, 0.0)
         after = np.where(stop < n, (total[n] - total[stop]) / (n - stop), 0.0)
-    gain = gain + start * before**2 + (n - stop) * after**2
+    gain = (stop - start) * inside**2 + start * before**2 + (n - stop) * after**2
     good = (inside > before) & (inside > after) & (stop - start < 0.9 * n)
     if not good.any():
         return None
     best = int(np.argmax(np.where(good, gain, -np.inf)))
-    a, b = start[best], stop[best]
+    a, b = int(start[best]), int(stop[best])
     inner = y[a:b] ** 2
-    width = max(1, (b - a) // 6)
+    width, edge = max(1, (b - a) // 6), max(1, (b - a) // 4)
     smooth = np.convolve(inner, np.ones(width) / width, mode="valid")
+    jumps = [
+        inner[part].mean() / max((y[outer] ** 2).mean(), 1e-300)
+        for part, outer in ((slice(0, edge), slice(max(0, a - edge), a)), (slice(-edge, None), slice(b, b + edge)))
+        if len(y[outer])
+    ]
     half = found.step / 2
-    return float(x[a] - half), float(x[b - 1] + half), float(smooth.min() / inner.mean())
+    return Edges(
+        float(x[a] - half),
+        float(x[b - 1] + half),
+        float(smooth.min() / max(inner.mean(), 1e-300)),
+        float(min(jumps, default=np.inf)),
+    )

@@ -134,13 +134,18 @@ def _chosen(field: Field, progress: Progress) -> list[tuple[Draft, float, str]]:
         worth, gate = score(field, draft)
         if worth >= 1:
             found.append((draft, worth, gate))
-    found.sort(key=lambda item: -min(item[1], 2.0) * np.sqrt(item[0].strain))
+    found.sort(key=lambda item: -_rank(*item[:2]))
     kept: list[tuple[Draft, float, str]] = []
     for item in found:
         if all(_apart(field, item[0], other[0]) for other in kept):
             kept.append(item)
     kept.sort(key=lambda item: -item[1] * item[0].strain)
     return kept
+
+
+def _rank(draft: Draft, worth: float) -> float:
+    """Which of the candidates for one band is taken: much energy, sharp edges, one sense along the line."""
+    return min(worth, 2.0) * np.sqrt(draft.strain) * draft.even * np.sqrt(min(draft.jump, 5.0))
 
 
 def _apart(field: Field, one: Draft, other: Draft) -> bool:
@@ -155,14 +160,18 @@ def _apart(field: Field, one: Draft, other: Draft) -> bool:
 def _hinge(
     field: Field, region: Array, number: int, draft: Draft, worth: float, gate: str, whole: float | None
 ) -> Hinge:
-    curve, joint = draft.curve, is_joint(draft)
+    curve, joint = draft.frame.curve, is_joint(draft)
     straight = isinstance(curve, Line)
-    count = 2 if straight else _CURVE_POINTS
+    count = 2 if straight or joint else _CURVE_POINTS
     along = np.linspace(*draft.ends, count)
     axis = curve.foot(along)
-    if straight:
-        axis = axis + (draft.position - curve.foot(curve.along(draft.position[None]))[0])
     direction = draft.fold / max(np.linalg.norm(draft.fold), 1e-300)
+    if joint:  # without a length of its own: a bar along the fold as long as the joint is large
+        half = max(draft.width, draft.length) / 2
+        axis = draft.position + half * np.array([[-1.0], [1.0]]) * direction
+    elif straight:
+        axis = axis + (draft.position - curve.foot(curve.along(draft.position[None]))[0])
+    position = draft.position if straight else curve.foot(curve.along(draft.position[None]))[0]
     near_a, near_b = (side.cells for side in draft.sides)
     sides, swap = _regions_joined(field, region, draft, near_a, near_b)
     fold, arm = draft.fold, draft.across
@@ -175,12 +184,12 @@ def _hinge(
         kind=kind,
         axis=axis,
         motion=_motion(field, draft, axis),
-        position=draft.position,
+        position=position,
         direction=direction if fold @ direction >= 0 else -direction,
         length=draft.length,
         width=draft.width,
         fold=fold,
-        stiffness=None if whole is None else 2 * draft.strain * whole / draft.bend**2,
+        stiffness=None if whole is None else stiffness_of(draft, whole),
         strain_share=draft.strain,
         volume_share=draft.volume,
         contrast=draft.contrast,
@@ -193,6 +202,12 @@ def _hinge(
         confidence=confidence(worth),
         label=label(worth, draft),
     )
+
+
+def stiffness_of(draft: Draft, whole: float) -> float:
+    """N·m/rad: moment over turn. The energy is half of moment times the turn that the band's own cells show; the
+    edges turn more where the ends of a notch give way, too."""
+    return 2 * draft.strain * whole / (draft.bend**2 * float(np.clip(draft.inner, 0.3, 1.2)))
 
 
 def _regions_joined(field, region, draft, near_a, near_b):
