@@ -75,8 +75,8 @@ class Character:
         return replace(self, name=name)
 
     @property
-    def suggested_name(self) -> str:
-        """A name the figures suggest; only ever a suggestion."""
+    def suggested_name(self) -> str | None:
+        """A name that the figures suggest, None when they suggest none; only ever a suggestion."""
         return suggestion(self._figures())[0]
 
     @property
@@ -137,8 +137,9 @@ def describe(
     """The character of mode ``number`` (from 1).
 
     energies   of a set that holds the mode, formed here when None
-    effective  of a set that holds the mode (:func:`masses_of`), facing (:func:`viewer.insight.facing.facing_surfaces`):
-               give them when several modes are described, since what they need is the same for all
+    effective  of a set that holds the mode (:func:`masses_of`)
+    facing     (:func:`viewer.insight.facing.facing_surfaces`). Give both when several modes are described: most of
+               the work is the same for all
     scale      gives motions in m where the real size is known
     Raises ``InputError`` for a mode that is not there. What cannot be known is None, with a caution that says why.
     """

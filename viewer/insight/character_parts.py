@@ -1,4 +1,4 @@
-"""The pieces of a mode's character that need no matrices: energy by group, concentration, sheets, points that matter."""
+"""Pieces of a mode's character that need no matrices: energy by group, concentration, sheets, points that matter."""
 
 from __future__ import annotations
 
@@ -8,7 +8,7 @@ from typing import Any
 import numpy as np
 
 from viewer.cells import KINDS
-from viewer.insight.scale import CarriedPoint, carried_points
+from viewer.insight.scale import carried_points
 from viewer.mechanics.energy import Energies
 from viewer.model.arrays import Array
 from viewer.model.cycle import cycle_peaks
@@ -73,7 +73,7 @@ class PointMotion:
 
 
 def group_shares(design: Design, energies: Energies, j: int, masses: Array, lumped: Array) -> tuple[GroupShare, ...]:
-    """Of the cell groups that are not the whole body, most kinetic energy first; masses (n_cells,), lumped (m,) kg."""
+    """Of the cell groups that are not the whole body, most kinetic energy first; masses (n_cells,), lumped (m,)."""
     mesh = design.mesh
     kinetic, strain = energies.total_kinetic[j], energies.total_strain[j]
     total = masses.sum() + lumped.sum()
@@ -127,9 +127,9 @@ def out_of_plane(mesh: Mesh, shape: Array, masses: Array) -> tuple[float, bool] 
 def point_motions(design: Design, shape: Array) -> tuple[PointMotion, ...]:
     """Of every functional point; the largest motion is that of all nodes and of all named points."""
     carried = carried_points(design)
-    largest = float(
-        cycle_peaks(np.concatenate([shape[design.mesh.used_nodes], *_moves(carried, shape)])).max(initial=0)
-    )
+    moving = design.mesh.used_nodes if len(design.mesh.used_nodes) else slice(None)
+    moves = [shape[moving], *(point.motion(shape)[None, :3] for point in carried)]
+    largest = float(cycle_peaks(np.concatenate(moves)).max(initial=0))
     found = []
     for point in carried:
         if not isinstance(point.item, FunctionalPoint):
@@ -149,7 +149,3 @@ def point_motions(design: Design, shape: Array) -> tuple[PointMotion, ...]:
             )
         )
     return tuple(found)
-
-
-def _moves(carried: tuple[CarriedPoint, ...], shape: Array) -> list[Array]:
-    return [point.motion(shape)[None, :3] for point in carried]

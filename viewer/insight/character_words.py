@@ -1,7 +1,7 @@
 """A mode's character in words, made of the figures of ``Character.to_dict`` and of nothing else.
 
-Both the sentence and the suggested name come from one reading of the figures: what moves, what it does, and the figure
-that says so. The bounds below decide which words are chosen, never which figures are shown.
+Both the sentence and the suggested name come from one reading of the figures: what moves, what it does, and the
+figure that says so. The bounds below decide which words are chosen, never which figures are shown.
 """
 
 from __future__ import annotations
@@ -16,15 +16,22 @@ Facts = Mapping[str, Any]
 WHOLE = "the whole part"
 
 _RIGID = 0.9995  # rigid content from which nothing bends to speak of
-_ALMOST_RIGID = 0.9  # from which it is said
 _MOST = 0.5  # a share that decides
 _SECOND = 0.35  # of the leading share, from which the second is named too
 _MOVES = 0.3  # motion of facing surfaces ÷ largest, from which they are what the mode is about
 _LOCAL_ENERGY, _LOCAL_MASS = 0.5, 0.25  # a part that holds so much kinetic energy with so little mass is on its own
+_SHOWN = 0.1  # a share of the sections' motion that is told
 _HEAVY = 0.25  # kinetic share of a lumped mass that is said
+_HARDLY = 0.02  # of the largest motion
 _DRIVEN = 0.1  # effective mass share that is said
 _STRAIGHT = 0.8
-_AXES = {"x": "along x", "y": "along y", "z": "up and down"}
+_KINDS = {
+    "bending_share": "bending",
+    "twisting_share": "twisting",
+    "stretching_share": "along its length",
+    "warping_share": "a change of its sections' shape",
+}
+_AXES = {"x": "along x", "y": "along y", "z": "up and down"}  # z is up
 
 
 @dataclass(frozen=True)
@@ -42,10 +49,12 @@ def sentence_of(facts: Facts) -> str:
     head = f"Mode {facts['mode']}"
     if facts["name"]:
         head += f" ({facts['name']})"
+    elif reading is not None:
+        head += f" (suggested name: {reading.name})"
     if reading is None and not facts["points"]:
         return f"{head}: what it does cannot be said in figures: {'; '.join(facts['cautions']) or 'nothing moves'}."
     parts = [reading.clause] if reading is not None else []
-    parts += [words for words in (_direction(facts), *_lumped(facts), _rigid(facts), _driven(facts)) if words]
+    parts += [words for words in (_direction(facts), *_lumped(facts), _driven(facts)) if words]
     parts += [_point(point) for point in facts["points"]]
     if facts["relative"]:
         parts.append("shares assume one material throughout")
@@ -104,6 +113,9 @@ def _arms(facts: Facts) -> _Reading | None:
         if pair["slides_share"] >= _MOST:
             way = _way(pair["slide_direction"])
             figure = f"{pair['slides_share']:.0%} of their motion slides one past the other"
+            sections = facts["long_axis"]
+            still = _still(sections) if sections is not None and sections["twisting_share"] >= _MOST else ""
+            figure += f", standing still {still.replace('its', 'the')}" if still else ""
             return _Reading(
                 f"{who} move opposite ways, {way} ({figure})", f"{_short(pair)} move in turn, {way}", figure
             )
@@ -139,22 +151,26 @@ def _long(facts: Facts) -> _Reading | None:
     }
     shares = sorted(((sections[key], key) for key in verbs), reverse=True)
     (first, key), (second, other) = shares[0], shares[1]
-    what = verbs[key]
-    figures = [_share_words(first, key)]
-    named = [what]
-    if second >= _SECOND * first:
-        what += f" and {verbs[other]}"
-        figures.append(_share_words(second, other))
-        if other != "warping_share":
-            named.append(verbs[other].partition(" ")[0])
-    name = f"whole part {' and '.join(word.partition(',')[0] for word in named)}"
-    still = sections["still_sections"] if key in ("bending_share", "twisting_share") else 0
+    named = [verbs[key]]
+    if second >= _SECOND * first and other != "warping_share":
+        named.append(verbs[other])
+    short = [word.partition(",")[0] for word in named]
+    clause = named[0] if len(named) == 1 else " and ".join(short)
+    if len(named) == 2 and "," in named[0]:
+        clause += f", {named[0].partition(', ')[2]}"
+    figure = f"{first:.0%} of its motion is {_KINDS[key]}"
+    figure += "".join(f", {value:.0%} {_KINDS[name]}" for value, name in shares[1:] if value >= _SHOWN)
+    still = _still(sections)
+    figure += f", standing still {still}" if still else ""
+    name = f"whole part {' and '.join(short)}"
     if still:
-        where = " and ".join(f"{place:.0%}" for place in sections["still_at"])
-        figures.append(f"standing still at {where} of its length")
-        name += f", {still} still section{'s' if still > 1 else ''}"
-    figure = ", ".join(figures)
-    return _Reading(f"{WHOLE} {what} ({figure})", name, figure)
+        name += f", {sections['still_sections']} still section{'s' if sections['still_sections'] > 1 else ''}"
+    return _Reading(f"{WHOLE} {clause} ({figure})", name, figure)
+
+
+def _still(sections: Facts) -> str:
+    places = [f"{place:.0%}" for place in sections["still_at"]]
+    return f"at {' and '.join(places)} of its length" if places else ""
 
 
 def _sheet(facts: Facts) -> _Reading | None:
@@ -192,13 +208,6 @@ def _lumped(facts: Facts) -> list[str]:
     return [f"the {_plain(name)} carries {share:.0%} of it" for name, share in held.items() if share >= _HEAVY]
 
 
-def _rigid(facts: Facts) -> str:
-    share = facts["rigid_share"]
-    if share is None or not _ALMOST_RIGID <= share < _RIGID:
-        return ""
-    return f"{share:.0%} of the motion is that of one rigid piece"
-
-
 def _driven(facts: Facts) -> str:
     """What a shaking support would excite."""
     if not facts["held"] or facts["effective_share"] is None:
@@ -207,15 +216,15 @@ def _driven(facts: Facts) -> str:
     axis = max(along, key=lambda name: along[name])
     if along[axis] < _DRIVEN:
         return ""
-    return f"a support that shakes {_AXES[axis]} drives {along[axis]:.0%} of the mass in it"
+    return f"shaking the support {_AXES[axis]} drives {along[axis]:.0%} of the mass in this mode"
 
 
 def _point(facts: Facts) -> str:
     way = facts["direction_word"] or _way(facts["direction"])
-    if facts["ratio_to_largest"] < 0.02:
-        return f"the {facts['point']} hardly moves {way}, {facts['ratio_to_largest']:.3f} of the largest motion"
-    words = f"the {facts['point']} moves {way}, {facts['ratio_to_largest']:.2g} of the largest motion"
-    real = facts["along_real_m"]
+    ratio, real = facts["ratio_to_largest"], facts["along_real_m"]
+    if ratio < _HARDLY:
+        return f"the {facts['point']} hardly moves {way}, {ratio:.3f} of the largest motion"
+    words = f"the {facts['point']} moves {way}, {ratio:.2g} of the largest motion"
     return words if real is None else f"{words}, {_length(real)} real"
 
 
@@ -229,16 +238,6 @@ def _bends(sections: Facts) -> str:
     if abs(across[2]) <= np.sin(np.radians(25)):
         return f"sways, {_way(across)}"
     return f"bends, {_way(across)}"
-
-
-def _share_words(share: float, key: str) -> str:
-    words = {
-        "bending_share": "of its motion is bending",
-        "twisting_share": "of its motion is twisting",
-        "stretching_share": "of its motion goes along its length",
-        "warping_share": "of its motion distorts its sections",
-    }
-    return f"{share:.0%} {words[key]}"
 
 
 def _between(pair: Facts) -> str:

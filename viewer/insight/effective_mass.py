@@ -1,7 +1,7 @@
 """How much of the body's mass each mode carries along a moving base, and how much of a mode is rigid motion.
 
-Effective mass, for base motions along x, y, z and about them (``mechanics/base_motion.py``): modes with much of it are
-the ones a shaking support excites. Rigid content: the mode's mass-weighted projection on the six rigid motions.
+Effective mass, for base motions along x, y, z and about them (``mechanics/base_motion.py``): modes with much of it
+are the ones a shaking support excites. Rigid content: the mode's mass-weighted projection on the six rigid motions.
 """
 
 from __future__ import annotations
@@ -35,7 +35,7 @@ class EffectiveMasses:
     free       (6,) what all modes together hold; the rest, ``supports``, rides on the supports and moves with no mode
     modal_mass (k,) φᴴMφ, kg times the square of the shape's unit
     rigid      (k, 6) share of the mode that is rigid motion, by motion; sums to the whole rigid content.
-               The six motions are made orthogonal in the mass symmetrically (Löwdin 1950), so that each keeps its name
+               The six motions are made orthogonal in the mass symmetrically (Löwdin 1950): each keeps its name
     direction  (k, 4) share of the kinetic energy along x, y, z (the lumped masses' own motion included), and of
                turning (of the nodes of sheets and beams, and of lumped masses)
     cautions   what a reader must know

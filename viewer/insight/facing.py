@@ -303,7 +303,7 @@ def _gather(mesh: Mesh, found: _Places, patches: Array, count: int) -> tuple[tup
         return ()
     ends = np.column_stack([patches[found.first], patches[found.second]])
     key = np.sort(ends, axis=1) @ np.array([int(patches.max()) + 1, 1])
-    names, inverse, counts = np.unique(key, return_inverse=True, return_counts=True)
+    _, inverse, counts = np.unique(key, return_inverse=True, return_counts=True)
     pairs = []
     for number in np.argsort(-counts, kind="stable")[:_PAIRS]:
         if counts[number] < max(_LEAST_SHARE * count, 8):

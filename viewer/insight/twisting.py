@@ -1,14 +1,18 @@
 """Bending, twisting, stretching or warping of a long body: how its sections move along its long axis.
 
 The body is cut into slices along the axis of largest extent of its mass. Each slice's motion is split into its best
-rigid motion and the rest (least squares, weighted by mass), and the rigid motion about the slice's centre of mass into
-turning about the long axis (twist), motion along it (stretch), and the rest (bending: motion across, and the tilt that
-goes with it). The shares of mass-weighted squared motion add up to one.
+rigid motion and the rest (least squares, weighted by mass; the rest is a change of the section's shape), and the
+rigid motion about the slice's centre of mass into turning about the long axis (twist), motion along it (stretch), and
+what is left (bending: motion across, and the tilt that goes with it). The shares of Σ m |u|² add up to one.
+
+A body of open section sways and twists at once, since its shear centre is not its centre of mass; the larger share
+then says which.
 """
 
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import pairwise
 from typing import Any
 
 import numpy as np
@@ -20,6 +24,7 @@ from viewer.model.cycle import steadiest_turn
 SLENDER = 1.8  # length ÷ width from which a body has a long axis (common practice, no source)
 _SLICES = 24
 _LEAST = 6  # points in a slice
+_LEADS = 0.5  # share of bending or twist from which it is asked where it stands still
 _STILL = 0.05  # of the largest: smaller values do not count as a change of sign
 
 
@@ -31,7 +36,7 @@ class LongAxis:
     bending, twisting, stretching, warping   shares; warping: sections lose their shape
     across     (3,) unit, the direction in which the sections mostly move across the axis
     straight   share of the motion across that goes along ``across``
-    nodes      where along the axis (0 … 1) sections stand still in the larger of bending and twist
+    nodes      where along the axis (0 … 1) sections stand still, when most of the motion is bending or is twisting
     """
 
     axis: Array
@@ -72,7 +77,7 @@ def long_axis(points: Array, masses: Array, shape: Array) -> LongAxis | None:
     extents = np.ptp(points @ frame.T, axis=0)
     if extents[0] < SLENDER * extents[1:].max() or extents[0] <= 0:
         return None
-    slices = _slices(along, masses)
+    slices = _slices(along)
     motions = [_motion(points[rows], masses[rows], shape[rows], frame[0]) for rows in slices]
     energy = np.array([m.energy for m in motions])
     total = energy.sum()
@@ -86,9 +91,7 @@ def long_axis(points: Array, masses: Array, shape: Array) -> LongAxis | None:
     strength, axes = np.linalg.eigh(spread)
     across = axes[:, -1] * np.sign(axes[np.argmax(np.abs(axes[:, -1])), -1])
     parts = np.array([m.parts for m in motions]).sum(axis=0) / total
-    place = np.array(
-        [(weight_along @ along[rows]) / weight_along.sum() for rows, weight_along in _weights(slices, masses)]
-    )
+    place = np.array([masses[rows] @ along[rows] / masses[rows].sum() for rows in slices])
     place = (place - along.min()) / extents[0]
     leading = turned if parts[1] > parts[0] else sideways @ across
     return LongAxis(
@@ -101,7 +104,7 @@ def long_axis(points: Array, masses: Array, shape: Array) -> LongAxis | None:
         warping=float(1 - parts.sum()),
         across=across,
         straight=float(strength[-1] / max(strength.sum(), 1e-300)),
-        nodes=_still(place, leading),
+        nodes=_still(place, leading) if max(parts[:2]) >= _LEADS else (),
     )
 
 
@@ -129,7 +132,7 @@ def _frame(points: Array, masses: Array) -> Array:
     return np.stack([axis, second, np.cross(axis, second)])
 
 
-def _slices(along: Array, masses: Array) -> list[Array]:
+def _slices(along: Array) -> list[Array]:
     """Rows of the points of each slice; a slice with too few points joins the one before."""
     edges = np.linspace(along.min(), along.max(), _SLICES + 1)
     number = np.clip(np.searchsorted(edges, along, side="right") - 1, 0, _SLICES - 1)
@@ -143,10 +146,6 @@ def _slices(along: Array, masses: Array) -> list[Array]:
         else:
             found.append(rows)
     return found
-
-
-def _weights(slices: list[Array], masses: Array) -> list[tuple[Array, Array]]:
-    return [(rows, masses[rows]) for rows in slices]
 
 
 def _motion(points: Array, masses: Array, shape: Array, axis: Array) -> _Motion:
@@ -174,7 +173,7 @@ def _still(place: Array, values: Array) -> tuple[float, ...]:
     size = np.abs(swing).max()
     rows = np.nonzero(np.abs(swing) > _STILL * size)[0]
     found = []
-    for a, b in zip(rows[:-1], rows[1:], strict=True):
+    for a, b in pairwise(rows):
         if swing[a] * swing[b] < 0:
             found.append(float(place[a] + (place[b] - place[a]) * swing[a] / (swing[a] - swing[b])))
     return tuple(found)

@@ -1,7 +1,7 @@
 """Inertia against rigid motion: what a moving base, or the body moving as one piece, has to do with its modes.
 
-The supports move as one rigid base, grounded springs with them: u = r a + F y, with r the six rigid motions, F what the
-free degrees of freedom y carry (links and ties included) and a the base's motion. The base then drives the free ones
+The supports move as one rigid base, grounded springs with them: u = r a + F y, with r the six rigid motions, a the
+base's motion and F what the free degrees of freedom y carry (links and ties included). The base drives the free ones
 through g = Fᵀ M r, which without links is M_ff r_f + M_fs r_s, and a mode φ = F y answers with (gᵀy)²/(φᵀMφ), its
 effective mass. The sum over all modes is gᵀ M_ff⁻¹ g; what is missing from rᵀ M r rides on the supports. (Wijker J.,
 Mechanical Vibrations in Spacecraft Design, 2004, ch. 9; from memory.)
@@ -43,11 +43,10 @@ class Inertia:
 
     def times(self, vectors: Array) -> Array:
         """(k, n_dof) M v of the vectors (k, n_dof), lumped masses included."""
-        out = np.ascontiguousarray((self.cells @ vectors.T).T)
+        out = self.cells @ vectors.T
         for item in self.layout.masses:
-            pull = item.operator.T @ (item.core @ (item.operator @ vectors[:, item.dofs].T))
-            np.add.at(out, (slice(None), item.dofs), pull.T)
-        return out
+            out[item.dofs] += item.operator.T @ (item.core @ (item.operator @ vectors[:, item.dofs].T))
+        return np.ascontiguousarray(out.T)
 
     @cached_property
     def centre(self) -> Array:
@@ -138,7 +137,12 @@ def mode_vectors(layout: Layout, modes: ModeSet, picked: Array) -> tuple[Array, 
     if len(known) == len(given):
         return layout.gather(moved, np.stack(known)), ()
     turned = np.stack([_nodal_turns(layout, shape) for shape in moved])
-    return layout.gather(moved, turned), ("rotations missing from the shapes are taken from the cells around a node",)
+    words = "rotations missing from the shapes are taken from the cells around a node"
+    turns = layout.dof[:, 3:][layout.dof[:, 3:] >= 0]
+    spun = [item.name for item in layout.masses if np.isin(item.dofs, turns).any()]
+    if spun:
+        words += f"; how {', '.join(spun)} turns follows from them alone and is rough"
+    return layout.gather(moved, turned), (words,)
 
 
 def _nodal_turns(layout: Layout, shape: Array) -> Array:
