@@ -1,6 +1,7 @@
 """The twin ruler and the colour bar: what they say is what they measure."""
 
 import re
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -31,7 +32,7 @@ def test_round_lengths_are_1_2_5(longest):
 def test_the_ruler_measures_what_it_says(zoom):
     picture = known()
     frame = frame_of(picture)
-    frame = type(frame)(frame.width, frame.height, frame.boxes, zoom * frame.metres_per_pixel, frame.project, frame.toward_eye)
+    frame = replace(frame, metres_per_pixel=zoom * frame.metres_per_pixel)
     items = ruler_items(picture, frame)
     bar = next(item for item in items if isinstance(item, Polygon)).box
     body, motion = (t.words for t in items if isinstance(t, Text))

@@ -12,6 +12,7 @@ from viewer.scene.figures import GAP, digits
 from viewer.scene.note_layout import is_true, statistic_words
 from viewer.scene.picture import FlapMark, HingeMark
 
+ALWAYS_TOLD = 2  # hinges, from the strongest, whose figures are told even when they are weak
 REACH_PERCENTILE = 98  # of the folding side's nodes: one stray corner does not lengthen the fan
 
 
@@ -21,25 +22,27 @@ def hinge_marks(
     """Marks of the hinges of ``finding``, whose shape is drawn multiplied by ``turn`` at ``scale``.
 
     chosen  number of the hinge to set off, 0: none; the others are then named only
-    brief   all are named only
+    brief   all are named only; weak ones after the first two always are
     """
     facts = finding.with_scale(scale).to_dict()["hinges"]
     found = []
     for hinge, said in zip(finding.hinges, facts, strict=True):
         joint = hinge.kind == "joint"
-        quiet = brief or (chosen > 0 and hinge.number != chosen)
-        doubt = "" if hinge.label == "strong" else f" ({hinge.label})"
+        sure, number = hinge.label == "strong", hinge.number
+        told = number == chosen if chosen > 0 else sure or number <= ALWAYS_TOLD
+        doubt = "" if sure else f" ({hinge.label})"
         found.append(
             HingeMark(
-                f"{'joint' if joint else 'hinge'} {hinge.number}{doubt}",
-                () if quiet else _hinge_lines(said, scale),
+                f"{'joint' if joint else 'hinge'} {number}{doubt}",
+                _hinge_lines(said, scale) if told and not brief else (),
                 hinge.position[None] if joint else hinge.axis,
                 turned(hinge.motion.mean(axis=0, keepdims=True) if joint else hinge.motion, turn),
                 turned(hinge.fold, turn),
                 hinge.arm,
                 _reach(mesh, hinge.sides[1], hinge.position, hinge.arm),
                 hinge.cells,
-                hinge.number == chosen,
+                number == chosen,
+                sure,
             )
         )
     return tuple(found)

@@ -15,7 +15,7 @@ from viewer.scene.tokens import FAN_OPACITY, PIN_RADIUS
 
 HEAD = 2.5  # radius of a pin's heads, in radii of the pin; their length
 HEAD_LENGTH = 1.1
-LEAST_RADIUS = 0.62  # of the full one, for short hinges, which a full pin would hide …
+LEAST_RADIUS = 0.62  # of the full one: joints, unsure hinges, short hinges, which a full pin would hide …
 SLIM = 0.032  # … namely those whose axis is shorter than a full radius over this
 CASING = 0.7  # the casing stands so far out, in radii: 1.7 radii in all
 OVERHANG = 0.15  # of the axis, at each end …
@@ -24,6 +24,7 @@ BALL = 2.7  # radius of a joint's ball, in radii of a full pin
 JOINT_PIN = 0.04  # half length of the pin through a joint, of the diagonal
 FAN = 0.19  # length of the fan, of the diagonal, where the folding side reaches so far
 LEAST_FAN = 0.06
+LEAST_ANGLE = np.radians(1.5)  # as drawn, below which a fan would be a mere line
 FAN_LINE = 1.4
 _STEPS = 12  # of the fan
 _NO_LINES = np.empty((0, 2), np.int64)
@@ -43,8 +44,14 @@ def pins(body: Body, diagonal: float) -> list[Piece]:
 
 
 def fans(body: Body, diagonal: float, toward_eye: Array) -> list[Piece]:
-    """The fan of each hinge at the head that is nearer to the eye: from the undeformed arm to the arm as drawn."""
-    return [_fan(mark, body.factor, diagonal, toward_eye) for mark in body.hinges if mark.reach > 0]
+    """The fan of each hinge that visibly folds, at the head nearer to the eye: from the undeformed arm to the arm as
+    drawn."""
+    return [_fan(mark, body.factor, diagonal, toward_eye) for mark in body.hinges if _folds(mark, body.factor)]
+
+
+def _folds(mark: HingeMark, factor: float) -> bool:
+    turn = np.linalg.norm(np.abs(factor * np.cross(np.asarray(mark.fold), np.asarray(mark.arm, float))))
+    return mark.reach > 0 and bool(turn >= LEAST_ANGLE)
 
 
 def near_head(mark: HingeMark, factor: float, diagonal: float, toward_eye: Array) -> tuple[Array, Array]:
@@ -57,7 +64,7 @@ def near_head(mark: HingeMark, factor: float, diagonal: float, toward_eye: Array
 def pin_radius(mark: HingeMark, diagonal: float) -> float:
     """Radius of a hinge's pin, m."""
     full = PIN_RADIUS * diagonal
-    if len(mark.axis) == 1:
+    if len(mark.axis) == 1 or not mark.sure:
         return LEAST_RADIUS * full
     long = float(np.linalg.norm(np.diff(mark.axis, axis=0), axis=1).sum())
     return float(np.clip(SLIM * long, LEAST_RADIUS * full, full))
@@ -78,7 +85,7 @@ def middle_line(mark: HingeMark, diagonal: float) -> Array:
 
 
 def _colour(mark: HingeMark) -> str:
-    return "accent" if mark.chosen else "ink"
+    return "accent" if mark.chosen else "ink" if mark.sure else "soft"
 
 
 def _spindle(mark: HingeMark, factor: float, diagonal: float) -> tuple[Array, Array]:

@@ -69,7 +69,7 @@ class HingeMark:
     fold    (3,) rad per unit of the shape: rotation of the folding side relative to the other
     arm     (3,) unit, from the axis into the folding side; ``reach`` m, how far that side goes
     cells   cell rows of the band: the mark goes where none of them is shown
-    chosen  set off from other hinges
+    chosen  set off from other hinges; sure: False for a weak or undecided one, whose pin is slim and soft
     """
 
     title: str
@@ -81,6 +81,7 @@ class HingeMark:
     reach: float
     cells: Array
     chosen: bool = False
+    sure: bool = True
 
 
 @dataclass(frozen=True, eq=False)
