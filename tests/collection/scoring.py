@@ -6,6 +6,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
+from scipy.optimize import linear_sum_assignment
 
 from tests.collection.sheets import Band, Built
 from tests.collection.solved import Solved
@@ -22,12 +23,13 @@ NAN = float("nan")
 class Row:
     """A band in a mode, or a mode without bands (band 0).
 
-    mode     number among the elastic ones; band from 1, kind as built in; level, share, contrast, evenness as in ``truth.py``
+    mode     number among the elastic ones; band from 1, kind as built in; level, share, contrast and evenness as
+             in ``truth.py``
     found    "" or kind and label of the finding that is nearest to the band and close enough to be meant
     hit      position within 0.05 of the diagonal and, for lines and curves, direction within 20°
     position distance of the position from the true centre line in the plane of the sheet ÷ diagonal (curves: mean
-             over the axis's points, since no arc holds its own centroid); direction degrees between direction and true turn; axis
-             degrees between the axis's ends and the true line (lines)
+             along the axis, since no arc holds its own centroid)
+    direction degrees between direction and true turn; axis degrees between the axis's ends and the true line (lines)
     fold     |fold| ÷ true turn − 1; stiffness k ÷ static solution − 1; NaN where there is no one angle or no k
     free     the mode has no hinge; false: findings off every band in this mode (counted in the mode's first row)
     idle     findings on bands of the part although the mode is free of hinges
@@ -79,7 +81,10 @@ def score_mode(solved: Solved, j: int, hinges: Sequence[Hinge]) -> list[Row]:
     built, truths = solved.built, solved.truths[j]
     bands = built.sheet.bands
     free = all(t.level == "none" for t in truths)
-    on = [any(gap(built, band, h) <= NEAR for band in bands) for h in hinges]
+    gaps = np.array([[gap(built, band, h) for h in hinges] for band in bands]).reshape(len(bands), len(hinges))
+    on = [bool((gaps[:, k] <= NEAR).any()) for k in range(len(hinges))]
+    # A finding stands for one band only: two lines merged into one are not both found.
+    taken = dict(zip(*linear_sum_assignment(np.where(gaps <= NEAR, gaps, 1e3)), strict=True))
     base = {
         "part": solved.part.name,
         "density": solved.density,
@@ -100,8 +105,7 @@ def score_mode(solved: Solved, j: int, hinges: Sequence[Hinge]) -> list[Row]:
             "contrast": t.contrast,
             "evenness": t.evenness,
         }
-        best = min((h for h in hinges if gap(built, bands[i], h) <= NEAR),
-                   key=lambda h, band=bands[i]: gap(built, band, h), default=None)  # fmt: skip
+        best = hinges[taken[i]] if i in taken and gaps[i, taken[i]] <= NEAR else None
         errors = {} if best is None else compare(built, bands[i], t, best, solved.stiffness[i])
         rows.append(Row(**base, **facts, **errors, **(counts if i == 0 else {})))
     return rows
@@ -132,8 +136,15 @@ def gap(built: Built, band: Band, hinge: Hinge) -> float:
     if band.kind == "joint":
         centre = built.line(band, 3)[1]
         return in_plane(built, band, hinge.position, centre) / built.mesh.diagonal
-    points = hinge.axis if band.kind == "curve" else hinge.position[None]
+    points = _resampled(hinge.axis) if band.kind == "curve" else hinge.position[None]
     return float(np.mean([to_line(built, band, point) for point in points])) / built.mesh.diagonal
+
+
+def _resampled(axis: Array, count: int = 33) -> Array:
+    """Points evenly along a polyline: a chord of an arc does not lie on it."""
+    marks = np.concatenate([[0], np.cumsum(np.linalg.norm(np.diff(axis, axis=0), axis=1))])
+    at = np.linspace(0, marks[-1], count)
+    return np.stack([np.interp(at, marks, axis[:, i]) for i in range(3)], axis=1)
 
 
 def to_line(built: Built, band: Band, point: Array) -> float:

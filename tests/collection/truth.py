@@ -13,9 +13,9 @@ none       share < 2 % and contrast < 2 (the larger of the two figures): the ban
 between    anything else: the search may name it or not, neither counts
 
 A mode is *free of hinges* when none of the part's bands works in it, or the part has no band; whatever the search
-names there off the bands is false. Energy crowding at a clamp or where ribs end, stiff folds, thin halves of a stepped
-plate, and holes of a plate perforated all over are no bands. Naming a band that works little is never false (how
-often it happens is counted).
+names there off the bands is false. Energy crowding at a clamp or where ribs end, stiff folds, thin halves of a
+stepped plate, and holes of a plate perforated all over are no bands. Naming a band that works little is never false
+(how often it happens is counted).
 
 Energy alone does not say that two regions turn about the line. Further figures of every strong band:
 
