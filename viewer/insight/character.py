@@ -10,29 +10,29 @@ from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from typing import Any
 
-import numpy as np
-
-from viewer.errors import InputError, ModelError, RefusedError
+from viewer.errors import InputError
 from viewer.insight.character_parts import (
     Concentration,
     GroupShare,
     PointMotion,
+    SheetMotion,
     concentration,
     group_shares,
-    out_of_plane,
     point_motions,
+    sheet_motion,
 )
 from viewer.insight.character_words import sentence_of, suggestion
-from viewer.insight.effective_mass import EffectiveMasses, effective_masses
+from viewer.insight.effective_mass import EffectiveMasses
 from viewer.insight.facing import FacingPair, FacingSurfaces, facing_surfaces
-from viewer.insight.scale import Scale, carried_points
+from viewer.insight.moving_mass import masses_of, moving_mass, weighed_points
+from viewer.insight.scale import Scale
 from viewer.insight.twisting import LongAxis, long_axis
 from viewer.jobs import SILENT, Progress
-from viewer.mechanics.energy import RELATIVE, Energies, energies
-from viewer.mechanics.relative import assume_material, relative_energies, states_no_material
-from viewer.model.arrays import Array
+from viewer.mechanics.energy import Energies
 from viewer.model.design import Design
-from viewer.model.modes import ArrayShapes, ModeSet
+from viewer.model.modes import ModeSet
+
+__all__ = ["Character", "describe", "facing_surfaces", "masses_of"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -45,8 +45,9 @@ class Character:
                no mass is known
     groups     energy by cell group; springs and lumped masses hold the shares ``springs`` and ``lumped`` by name
     facing     the largest pairs of facing surfaces; long: sections along the long axis, None for a stocky body
-    local      how local the mode is; sheets: (share of motion square to the sheets, all one flat sheet)
+    local      how local the mode is; sheets: how sheets move, None for a body of solids
     points     the functional points
+    assumed    what was assumed for want of materials, in words; shares hold for that; empty when nothing was
     """
 
     mode: int
@@ -60,9 +61,9 @@ class Character:
     facing: tuple[FacingPair, ...]
     long: LongAxis | None
     local: Concentration | None
-    sheets: tuple[float, bool] | None
+    sheets: SheetMotion | None
     points: tuple[PointMotion, ...]
-    relative: bool = False
+    assumed: str = ""
     cautions: tuple[str, ...] = ()
     scale: Scale | None = None
 
@@ -95,7 +96,7 @@ class Character:
             "frequency_hz": self.freq_hz,
             "name": self.name or None,
             "held": self.held,
-            "relative": self.relative,
+            "assumed": self.assumed or None,
             **{key: None if self.masses is None else self.masses[key] for key in _MASS_KEYS},
             "groups": [group.to_dict() for group in self.groups],
             "springs_strain_share": dict(self.springs),
@@ -104,8 +105,9 @@ class Character:
             "long_axis": None if self.long is None else self.long.to_dict(),
             "half_of_kinetic_in_mass_share": None if self.local is None else self.local.half_in,
             "participation": None if self.local is None else self.local.participation,
-            "out_of_plane_share": None if self.sheets is None else self.sheets[0],
-            "flat_sheet": None if self.sheets is None else self.sheets[1],
+            "out_of_plane_share": None if self.sheets is None else self.sheets.out_of_plane,
+            "flat_sheet": None if self.sheets is None else self.sheets.flat,
+            "fields": None if self.sheets is None else self.sheets.fields,
             "points": [point.to_dict(real) for point in self.points],
             "cautions": list(self.cautions),
         }
@@ -137,148 +139,38 @@ def describe(
     """The character of mode ``number`` (from 1).
 
     energies   of a set that holds the mode, formed here when None
-    effective  of a set that holds the mode (:func:`masses_of`)
-    facing     (:func:`viewer.insight.facing.facing_surfaces`). Give both when several modes are described: most of
-               the work is the same for all
+    effective  of a set that holds the mode (:func:`masses_of`), facing (:func:`facing_surfaces`): give both when
+               several modes are described, since most of the work is the same for all
     scale      gives motions in m where the real size is known
     Raises ``InputError`` for a mode that is not there. What cannot be known is None, with a caution that says why.
     """
     if not 1 <= number <= modes.count:
         raise InputError(f"design '{design.name}' has no mode {number}", expected=f"1 to {modes.count}")
-    index, shape = number - 1, modes.shape(number - 1)
-    cautions: list[str] = []
+    shape = modes.shape(number - 1)
+    moving, cautions = moving_mass(design, modes, number - 1, energies, progress)
     if effective is None or effective.row(number) is None:
-        effective = masses_of(design, modes, progress, indices=[index], why=cautions)
-    found, j = _energies(design, modes, index, energies, cautions, progress)
-    masses, lumped = _mass_by_cell(design, found)
-    if facing is None:
-        facing = facing_surfaces(design.mesh, progress)
+        effective = masses_of(design, modes, progress, indices=[number - 1])
     row = None if effective is None else effective.row(number)
     if effective is not None:
         cautions += effective.cautions
-    known = found is not None and masses.sum() > 0
+    if facing is None:
+        facing = facing_surfaces(design.mesh, progress)
+    physics = design.physics
     return Character(
         mode=number,
-        freq_hz=float(modes.freq_hz[index]),
+        freq_hz=float(modes.freq_hz[number - 1]),
         name=design.mode_names.get(number, ""),
-        held=bool(design.physics.supports),
+        held=bool(physics.supports) or any(spring.other is None for spring in physics.springs),
         masses=None if effective is None or row is None else effective.to_dict(row),
-        groups=group_shares(design, found, j, masses, lumped) if found is not None and known else (),
-        springs=_shares(found.spring_names, found.springs[j], found.total_strain[j]) if found is not None else {},
-        lumped=_shares(found.mass_names, found.masses[j], found.total_kinetic[j]) if found is not None else {},
+        groups=() if moving is None else group_shares(design.mesh, moving),
+        springs={} if moving is None else moving.springs,
+        lumped={} if moving is None else moving.lumped_shares,
         facing=facing.pair_motions(shape),
-        long=long_axis(*_weighed_points(design, shape, masses, lumped)) if known else None,
-        local=_local(found, j, masses, lumped) if found is not None and known else None,
-        sheets=out_of_plane(design.mesh, shape, masses) if known else None,
+        long=None if moving is None else long_axis(*weighed_points(design, moving, shape)),
+        local=None if moving is None else concentration(moving),
+        sheets=None if moving is None else sheet_motion(design.mesh, shape, moving.masses),
         points=point_motions(design, shape),
-        relative=found is not None and found.relative,
+        assumed="" if moving is None else moving.assumed,
         cautions=tuple(dict.fromkeys(cautions)),
         scale=scale,
     )
-
-
-def masses_of(
-    design: Design,
-    modes: ModeSet,
-    progress: Progress = SILENT,
-    *,
-    indices: list[int] | None = None,
-    why: list[str] | None = None,
-) -> EffectiveMasses | None:
-    """Effective masses of all modes (or of ``indices``); of one assumed material when none is stated, and then marked
-    relative. None when not even that is possible; ``why`` is given the reason."""
-    try:
-        if states_no_material(design):
-            return effective_masses(assume_material(design), modes, indices, progress, relative=True)
-        return effective_masses(design, modes, indices, progress)
-    except (ModelError, RefusedError) as error:
-        if why is not None:
-            why.append(f"masses are not known: {error.problem}")
-        return None
-
-
-def _energies(
-    design: Design, modes: ModeSet, index: int, given: Energies | None, cautions: list[str], progress: Progress
-) -> tuple[Energies | None, int]:
-    """Energies that hold the mode, and its row in them."""
-    if given is not None and index in given.indices:
-        found, j = given, int(np.nonzero(given.indices == index)[0][0])
-    else:
-        found, j = None, 0
-    if found is None or not found.total_kinetic[j] > 0:  # at 0 Hz the shares are those at any other frequency
-        alone, j = _alone(modes, index), 0
-        form = relative_energies if states_no_material(design) else _energies_of
-        try:
-            found = form(design, alone, progress=progress)
-        except (ModelError, RefusedError) as error:
-            cautions.append(f"energies are not known: {error.problem}")
-            return None, 0
-    note = found.note(j)
-    if found.relative:
-        cautions.append(f"shares are {RELATIVE}; springs and lumped masses are left out")
-    elif note:
-        cautions.append(f"energies are {note}")
-    return found, j
-
-
-def _energies_of(design: Design, modes: ModeSet, progress: Progress) -> Energies:
-    return energies(design, modes, progress=progress)
-
-
-def _alone(modes: ModeSet, index: int) -> ModeSet:
-    """A set of this one mode, at 1 Hz when it has none."""
-    turned = modes.rotations(index)
-    shapes = ArrayShapes(modes.shape(index)[None], None if turned is None else turned[None])
-    frequency = modes.freq_hz[index]
-    return ModeSet(
-        modes.node_ids,
-        np.array([frequency if frequency > 0 else 1.0]),
-        shapes,
-        origin=modes.origin,
-        source=modes.source,
-    )
-
-
-def _mass_by_cell(design: Design, found: Energies | None) -> tuple[Array, Array]:
-    """Masses (n_cells,) of the cells, kg (or m³ of the one assumed material), and of the lumped ones."""
-    if found is None:
-        return np.zeros(design.mesh.n_cells), np.zeros(0)
-    if found.relative:
-        return np.array(found.volumes), np.zeros(0)
-    properties, index = design.properties
-    density = np.array([_density(prop) for prop in properties] + [0.0])
-    return found.volumes * density[index], np.array([item.mass for item in design.physics.masses])
-
-
-def _density(prop) -> float:
-    """kg/m³, of all layers together."""
-    if not prop.layers:
-        return prop.material.density
-    return sum(layer.material.density * layer.thickness for layer in prop.layers) / prop.thickness
-
-
-def _weighed_points(design: Design, shape: Array, masses: Array, lumped: Array) -> tuple[Array, Array, Array]:
-    """Points with their masses and motions: nodes with an equal part of their cells' mass, and lumped masses."""
-    mesh = design.mesh
-    weight = np.zeros(mesh.n_nodes)
-    for block, start in zip(mesh.blocks, mesh.block_starts[:-1], strict=True):
-        part = np.repeat(masses[start : start + len(block)] / block.nodes.shape[1], block.nodes.shape[1])
-        weight += np.bincount(block.nodes.ravel(), part, minlength=mesh.n_nodes)
-    carried = carried_points(design)[: len(lumped)]
-    points = np.concatenate([mesh.points, *(item.position[None] for item in carried)])
-    motion = np.concatenate([shape, *(item.motion(shape)[None, :3] for item in carried)])
-    return points, np.concatenate([weight, lumped]), motion
-
-
-def _local(found: Energies, j: int, masses: Array, lumped: Array) -> Concentration | None:
-    kinetic = np.concatenate([found.kinetic[j], found.masses[j][: len(lumped)]])
-    if not kinetic.sum() > 0:
-        return None
-    return concentration(kinetic, np.concatenate([masses, lumped]))
-
-
-def _shares(names: tuple[str, ...], values: Array, whole: float) -> dict[str, float]:
-    out = dict.fromkeys(names, 0.0)
-    for name, value in zip(names, values, strict=True):
-        out[name] += float(value / whole) if whole > 0 else 0.0
-    return out

@@ -6,16 +6,19 @@ from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
+import scipy.sparse as sp
+from scipy.sparse.csgraph import connected_components
 
 from viewer.cells import KINDS
+from viewer.insight.moving_mass import Moving
 from viewer.insight.scale import carried_points
-from viewer.mechanics.energy import Energies
 from viewer.model.arrays import Array
-from viewer.model.cycle import cycle_peaks
+from viewer.model.cycle import cycle_peaks, steadiest_turn
 from viewer.model.design import Design, FunctionalPoint
 from viewer.model.mesh import Mesh
 
 _WHOLE = 0.95  # share of the cells above which a group is the whole body
+_CLEAR, _SPECK = 0.02, 0.005  # of the largest lift, of the nodes: less is no field
 _FLAT = np.cos(np.radians(10))  # to the common normal: sheets within it are one flat sheet
 
 
@@ -72,37 +75,45 @@ class PointMotion:
         }
 
 
-def group_shares(design: Design, energies: Energies, j: int, masses: Array, lumped: Array) -> tuple[GroupShare, ...]:
-    """Of the cell groups that are not the whole body, most kinetic energy first; masses (n_cells,), lumped (m,)."""
-    mesh = design.mesh
-    kinetic, strain = energies.total_kinetic[j], energies.total_strain[j]
-    total = masses.sum() + lumped.sum()
-    found = []
-    for name, rows in mesh.cell_groups.items():
-        if not 0 < len(rows) < _WHOLE * mesh.n_cells or not masses[rows].any():
-            continue
-        share = float(energies.kinetic[j, rows].sum() / kinetic) if kinetic > 0 else 0.0
-        held = float(energies.strain[j, rows].sum() / strain) if strain > 0 else None
-        found.append(GroupShare(name, share, held, float(masses[rows].sum() / total)))
+@dataclass(frozen=True)
+class SheetMotion:
+    """out_of_plane: share of the sheets' Σ m|u|² along their normals; flat: all form one flat sheet; fields: in how
+    many fields that one bends, parted by lines that stand still, None when it does not."""
+
+    out_of_plane: float
+    flat: bool
+    fields: int | None
+
+
+def group_shares(mesh: Mesh, moving: Moving) -> tuple[GroupShare, ...]:
+    """Of the cell groups that are not the whole body, most kinetic energy first."""
+    total = moving.masses.sum() + moving.lumped.sum()
+    found = [
+        GroupShare(
+            name,
+            float(moving.kinetic[rows].sum()),
+            None if moving.strain is None else float(moving.strain[rows].sum()),
+            float(moving.masses[rows].sum() / total),
+        )
+        for name, rows in mesh.cell_groups.items()
+        if 0 < len(rows) < _WHOLE * mesh.n_cells and moving.masses[rows].any()
+    ]
     return tuple(sorted(found, key=lambda group: -group.kinetic))
 
 
-def concentration(kinetic: Array, masses: Array) -> Concentration:
-    """From the kinetic energies and masses of all cells and lumped masses."""
-    there = masses > 0
-    kinetic, masses = np.maximum(kinetic[there], 0), masses[there]
-    density = kinetic / masses
-    order = np.argsort(-density)
+def concentration(moving: Moving) -> Concentration:
+    """By cells and lumped masses."""
+    masses = np.concatenate([moving.masses, moving.lumped])
+    kinetic = np.maximum(np.concatenate([moving.kinetic, moving.lumped_kinetic]), 0)[masses > 0]
+    masses = masses[masses > 0]
+    order = np.argsort(-kinetic / masses)
     energy, mass = np.cumsum(kinetic[order]) / kinetic.sum(), np.cumsum(masses[order]) / masses.sum()
     half = float(np.interp(0.5, np.append(0, energy), np.append(0, mass)))
     return Concentration(half, float(kinetic.sum() ** 2 / (masses.sum() * (kinetic**2 / masses).sum())))
 
 
-def out_of_plane(mesh: Mesh, shape: Array, masses: Array) -> tuple[float, bool] | None:
-    """Share of Σ m|u|² of the sheets that goes along their normals, and whether they form one flat sheet.
-
-    None when less than half the mass is in sheets. Motion of a cell: the mean of its nodes'.
-    """
+def sheet_motion(mesh: Mesh, shape: Array, masses: Array) -> SheetMotion | None:
+    """None when less than half the mass is in sheets. Motion of a cell: the mean of its nodes'."""
     normals, motions, weights = [], [], []
     for block, start in zip(mesh.blocks, mesh.block_starts[:-1], strict=True):
         if KINDS[block.kind].dim != 2:
@@ -121,7 +132,19 @@ def out_of_plane(mesh: Mesh, shape: Array, masses: Array) -> tuple[float, bool] 
         return None
     share = float(weight @ np.abs(np.einsum("ci,ci->c", motion, normal)) ** 2) / whole
     _, axes = np.linalg.eigh((weight[:, None] * normal).T @ normal)
-    return share, bool((np.abs(normal @ axes[:, -1]) >= _FLAT)[weight > 0].all())
+    flat = bool((np.abs(normal @ axes[:, -1]) >= _FLAT)[weight > 0].all())
+    return SheetMotion(share, flat, _fields(mesh, shape @ axes[:, -1]) if flat and share >= 0.5 else None)
+
+
+def _fields(mesh: Mesh, lift: Array) -> int:
+    """Number of connected fields that lift together, parted by lines that stand still."""
+    swing = (lift * steadiest_turn(lift)).real
+    ends = mesh.skin.outline
+    clear = np.abs(swing) > _CLEAR * np.abs(swing).max()
+    same = ends[(swing[ends[:, 0]] * swing[ends[:, 1]] > 0) & clear[ends].all(axis=1)]
+    graph = sp.coo_array((np.ones(len(same), bool), same.T), shape=(mesh.n_nodes, mesh.n_nodes))
+    _, label = connected_components(graph, directed=False)
+    return int((np.bincount(label[clear]) >= max(_SPECK * mesh.n_nodes, 1)).sum())
 
 
 def point_motions(design: Design, shape: Array) -> tuple[PointMotion, ...]:

@@ -41,6 +41,7 @@ class _Reading:
     clause: str
     name: str
     reason: str
+    tells_direction: bool = False
 
 
 def sentence_of(facts: Facts) -> str:
@@ -54,10 +55,11 @@ def sentence_of(facts: Facts) -> str:
     if reading is None and not facts["points"]:
         return f"{head}: what it does cannot be said in figures: {'; '.join(facts['cautions']) or 'nothing moves'}."
     parts = [reading.clause] if reading is not None else []
-    parts += [words for words in (_direction(facts), *_lumped(facts), _driven(facts)) if words]
+    along = "" if reading is None or reading.tells_direction else _direction(facts)
+    parts += [words for words in (along, *_lumped(facts), _driven(facts)) if words]
     parts += [_point(point) for point in facts["points"]]
-    if facts["relative"]:
-        parts.append("shares assume one material throughout")
+    if facts["assumed"]:
+        parts.append(f"shares assume {facts['assumed']}")
     return f"{head}: {'; '.join(parts)}."
 
 
@@ -181,7 +183,10 @@ def _sheet(facts: Facts) -> _Reading | None:
     if not facts["flat_sheet"]:
         return _Reading(f"its sheets bend ({figure})", "sheets bend", figure)
     if share >= _MOST:
-        return _Reading(f"the sheet bends out of its plane ({figure})", "sheet bends", figure)
+        fields = facts["fields"]
+        how = f", in {fields} fields that lift in turn" if fields > 1 else ""
+        name = f"sheet bends in {fields} fields" if fields > 1 else "sheet bends"
+        return _Reading(f"the sheet bends out of its plane{how} ({figure})", name, figure)
     return _Reading(f"the sheet moves in its own plane ({figure})", "sheet moves in its plane", figure)
 
 
@@ -189,9 +194,17 @@ def _mainly(facts: Facts) -> _Reading | None:
     shares = facts["kinetic_share"]
     if shares is None:
         return None
-    axis = max("xyz", key=lambda name: shares[name])
-    figure = f"{shares[axis]:.0%} of the kinetic energy"
-    return _Reading(f"{WHOLE} moves mostly {_AXES[axis]} ({figure})", f"whole part moves {_AXES[axis]}", figure)
+    if shares["turning"] >= _MOST:
+        figure = f"{shares['turning']:.0%} of the kinetic energy is turning on the spot"
+        return _Reading(f"{WHOLE} turns more than it moves ({figure})", "whole part turns on the spot", figure, True)
+    first, second = sorted("xyz", key=lambda name: -shares[name])[:2]
+    figure = f"{shares[first]:.0%} of the kinetic energy {_AXES[first]}"
+    if shares[first] >= _MOST:
+        words, name = f"mostly {_AXES[first]}", _AXES[first]
+    else:
+        words = name = "in several directions"
+        figure += f", {shares[second]:.0%} {_AXES[second]}"
+    return _Reading(f"{WHOLE} moves {words} ({figure})", f"whole part moves {name}", figure, tells_direction=True)
 
 
 def _direction(facts: Facts) -> str:
@@ -205,7 +218,11 @@ def _direction(facts: Facts) -> str:
 
 def _lumped(facts: Facts) -> list[str]:
     held = facts["lumped_kinetic_share"]
-    return [f"the {_plain(name)} carries {share:.0%} of it" for name, share in held.items() if share >= _HEAVY]
+    return [
+        f"the {_plain(name)} carries {share:.0%} of the kinetic energy"
+        for name, share in held.items()
+        if share >= _HEAVY
+    ]
 
 
 def _driven(facts: Facts) -> str:
