@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, fields, replace
 
 import numpy as np
 
@@ -23,6 +23,7 @@ class Frame:
     low, high, along_low, along_high   (n,) m, extents of the cells
     outward   (n, 3) unit vectors in which ``across`` is counted
     spin      (n,) rotation about ``about`` (n, 3), the line or, for a blob, the axis its surroundings turn about
+    off       (n,) m away from the surface that runs along the line and across it
     blob      the candidate is no longer than wide: its line is a guess
     """
 
@@ -37,6 +38,7 @@ class Frame:
     outward: Array
     about: Array
     spin: Array
+    off: Array
     blob: bool
 
 
@@ -52,16 +54,18 @@ def frame_of(field: Field, cells: Array) -> Frame | None:
     near = surroundings(field, cells, corners, float(max(0.5 * spans[0], 2.0 * spans[1], 4 * grain)))
     if len(near) < 4:
         return None
+    slack = float(2 * spans[1] + grain)
     arc = _arc(field, points, weight, spans)
     if arc is not None:
-        return _frame(field, arc, near, None, None, False)
+        return _kept(_frame(field, arc, near, None, None, False), slack)
     blob = bool(spans[0] < LONG * spans[1])
     close = float(max(spans[1], 2 * grain))
     if not blob:
         line = Line(centre, directions[0])
         arm = field.middle[near] - centre
         arm = arm - (arm @ line.axis)[:, None] * line.axis
-        return _frame(field, line, near, _sides(field, near, arm, line.axis, close), line.axis, False)
+        out = _sides(field, near, arm, line.axis, close)
+        return _kept(_frame(field, line, near, out, line.axis, False), slack)
     arm = field.middle[near] - centre
     about, out = _gradient(field, near, arm, float(max(spans[0], 2 * grain)))
     flat = (corners - centre) - ((corners - centre) @ out)[:, None] * out
@@ -69,7 +73,7 @@ def frame_of(field: Field, cells: Array) -> Frame | None:
     if abs(about @ axis) > 0.8:  # it folds about its line, whose direction the rotation knows better
         axis = about - (about @ out) * out
         axis = axis / np.linalg.norm(axis)
-    return _frame(field, Line(centre, axis), near, np.tile(out, (len(near), 1)), about, True)
+    return _kept(_frame(field, Line(centre, axis), near, np.tile(out, (len(near), 1)), about, True), slack)
 
 
 def surroundings(field: Field, cells: Array, corners: Array, reach: float) -> Array:
@@ -95,7 +99,9 @@ def _arc(field: Field, points: Array, weight: Array, spans: Array) -> Arc | None
     ends = arc.foot(np.array([along.min(), (along.min() + along.max()) / 2, along.max()]))
     chord = ends[2] - ends[0]
     sag = np.linalg.norm(np.cross(ends[1] - ends[0], chord)) / max(float(np.linalg.norm(chord)), 1e-300)
-    return arc if sag > BENT * field.size and rest < 0.6 * straight else None
+    bow = 0.3 * sag  # root mean square of an arc about its chord
+    nearer = straight**2 - rest**2 > 0.5 * bow**2
+    return arc if sag > BENT * field.size and rest < 0.4 * sag and nearer else None
 
 
 def _frame(field: Field, curve, near: Array, outward: Array | None, about: Array | None, blob: bool) -> Frame:
@@ -110,6 +116,11 @@ def _frame(field: Field, curve, near: Array, outward: Array | None, about: Array
         corner_out = np.repeat(outward, corners.shape[1], axis=0)
         about_each = np.broadcast_to(about, (len(near), 3))
     corner_across = np.einsum("ni,ni->n", flat - curve.foot(corner_along), corner_out).reshape(corners.shape[:2])
+    arm = field.middle[near] - curve.foot(along)
+    arm = arm - np.einsum("ni,ni->n", arm, outward)[:, None] * outward
+    off = np.linalg.norm(
+        arm - np.einsum("ni,ni->n", arm, curve.tangent(along))[:, None] * curve.tangent(along), axis=1
+    )
     corner_along = corner_along.reshape(corners.shape[:2])
     low, high = corner_across.min(axis=1), corner_across.max(axis=1)
     return Frame(
@@ -124,7 +135,20 @@ def _frame(field: Field, curve, near: Array, outward: Array | None, about: Array
         outward,
         about_each,
         np.einsum("ni,ni->n", field.turn[near], about_each),
+        off,
         blob,
+    )
+
+
+def _kept(frame: Frame, slack: float) -> Frame:
+    """Without cells that lie above or below the strip: other walls of the part, other legs of a fold."""
+    keep = frame.off <= slack + np.abs(frame.across)
+    return (
+        frame
+        if keep.all()
+        else replace(
+            frame, **{f.name: getattr(frame, f.name)[keep] for f in fields(frame) if f.name not in ("curve", "blob")}
+        )
     )
 
 

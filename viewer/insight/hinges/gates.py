@@ -23,6 +23,8 @@ THRESHOLDS = {
     "turn against the whole": 0.05,
     "even density across": 0.2,
 }
+# Bending crowds at any clamp, so a band that lies on one must be clearer.
+AT_CLAMP = {"contrast": 6.0, "sharp edges": 4.5, "abrupt edges": 3.0, "steepness": 3.5}
 STRONG_SCORE, STRONG_TURN = 1.5, 0.35
 _JOINT_SIZE = 0.6  # a joint as large as this share over the bound on slenderness, 1/10 of the part, is none
 _CAPPED = {"turn about the line", "one sense along the line", "even density across"}  # shares: they say no more
@@ -57,8 +59,9 @@ def score(field: Field, draft: Draft) -> tuple[float, str]:
     """Smallest figure over its threshold and the name of that gate. Shares pass or fail and never count above 1.5
     times their threshold's worth."""
     ratios = {}
+    thresholds = THRESHOLDS | AT_CLAMP if draft.grounded else THRESHOLDS
     for name, value in values(field, draft).items():
-        ratio = value / THRESHOLDS[name]
+        ratio = value / thresholds[name]
         ratios[name] = max(ratio, 3.0) if name in _CAPPED and ratio >= 1 else ratio
     gate = min(ratios, key=lambda name: ratios[name])
     return float(ratios[gate]), gate

@@ -9,6 +9,7 @@ import numpy as np
 from viewer.model.arrays import Array
 
 _BINS = 160
+_POWER = 0.75
 
 
 @dataclass(frozen=True, eq=False)
@@ -61,13 +62,15 @@ def profile(low: Array, high: Array, strain: Array, volume: Array, span: tuple[f
 def edges_of(found: Profile) -> Edges | None:
     """The densest step in the profile, None when there is none upwards.
 
-    Root of density, which goes as curvature, is fitted by three levels: before, in and after the band; the breaks
-    with the least squares of deviations win.
+    Density to a power is fitted by three levels: before, in and after the band; the breaks with the least squares of
+    deviations win. The root, which goes as curvature, takes the crowded surroundings of a short neck for part of it;
+    density itself cuts grooves across a skew mesh too narrow: 3/4 found the true edges of most tuning parts.
     """
     there = np.isfinite(found.density)
     if there.sum() < 8:
         return None
-    x, y = found.centres[there], np.sqrt(found.density[there])
+    x, y = found.centres[there], found.density[there] ** _POWER
+    density = found.density[there]
     n = len(y)
     total = np.concatenate([[0.0], np.cumsum(y)])
     start, stop = np.triu_indices(n + 1, 1)
@@ -81,13 +84,13 @@ def edges_of(found: Profile) -> Edges | None:
         return None
     best = int(np.argmax(np.where(good, gain, -np.inf)))
     a, b = int(start[best]), int(stop[best])
-    inner = y[a:b] ** 2
+    inner = density[a:b]
     width, edge = max(1, (b - a) // 6), max(1, (b - a) // 4)
     smooth = np.convolve(inner, np.ones(width) / width, mode="valid")
     jumps = [
-        inner[part].mean() / max((y[outer] ** 2).mean(), 1e-300)
+        inner[part].mean() / max(density[outer].mean(), 1e-300)
         for part, outer in ((slice(0, edge), slice(max(0, a - edge), a)), (slice(-edge, None), slice(b, b + edge)))
-        if len(y[outer])
+        if len(density[outer]) >= max(1, edge // 2)
     ]
     half = found.step / 2
     return Edges(
