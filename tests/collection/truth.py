@@ -101,11 +101,15 @@ def fold(built: Built, band: Band, moved: Array, turned: Array | None) -> tuple[
     local, means, weights = [], [], None
     for side in band.sides:
         rows, along, weight = edge(built, band, side)
-        means.append(_rotation(built, rows, weight, moved, turned))
         places, first = np.unique(np.round(along, 9), return_inverse=True)
         tangent, normal = frame(built, band, side, places)
-        local.append((places, _turning(built, rows, first, tangent, normal, moved, turned)))
-        weights = np.bincount(first, weight) if weights is None else weights
+        spins = _spins(built, rows, first, tangent, normal, moved, turned)
+        each = np.bincount(first, weight)
+        # A curved edge that bends out of its plane passes for a turned one in a fit to all of its nodes.
+        fitted = built.solid and band.kind != "curve"
+        means.append(_rigid_turn(built, rows, weight, moved) if fitted else each @ spins / each.sum())
+        local.append((places, np.einsum("ki,ki->k", spins, tangent)))
+        weights = each if weights is None else weights
     turn = means[1] - means[0]
     common = local[0][0]
     theta = np.interp(common, *local[1]) - local[0][1]
@@ -144,27 +148,27 @@ def frame(built: Built, band: Band, side: float, along: Array) -> tuple[Array, A
     return tuple(v / np.linalg.norm(v, axis=1, keepdims=True) for v in (tangent, normal))
 
 
-def _rotation(built: Built, rows: Array, weight: Array, moved: Array, turned: Array | None) -> Array:
-    """(3,) rotation of the nodes: mean of their own, or of the best rigid motion where they have none."""
-    if not built.solid:
-        return weight @ turned[rows] / weight.sum()
+def _rigid_turn(built: Built, rows: Array, weight: Array, moved: Array) -> Array:
+    """(3,) rotation of the best rigid motion of the nodes."""
     arm = built.mesh.points[rows]
     arm = arm - weight @ arm / weight.sum()
     inertia = weight @ np.einsum("ni,ni->n", arm, arm) * np.eye(3) - np.einsum("n,ni,nj->ij", weight, arm, arm)
     return np.linalg.solve(inertia, weight @ np.cross(arm, moved[rows]))
 
 
-def _turning(built, rows, place, tangent, normal, moved, turned) -> Array:
-    """(k,) rotation about the tangent at each place along an edge."""
+def _spins(built, rows, place, tangent, normal, moved, turned) -> Array:
+    """(k, 3) rotation at each place along an edge: the nodes' own on shells; on solids how the fibre through the
+    thickness leans, ω × ν = σ (ω·τ) − τ (ω·σ) with σ = τ × ν, which says nothing of the spin about ν (taken as 0)."""
     count = np.bincount(place)
     if not built.solid:
-        mean = np.stack([np.bincount(place, turned[rows, i]) / count for i in range(3)], axis=1)
-        return np.einsum("ki,ki->k", mean, tangent)
-    # Least squares through the thickness: the fibre's lean towards σ = τ × ν.
+        return np.stack([np.bincount(place, turned[rows, i]) / count for i in range(3)], axis=1)
     height = built.where[rows, 2]
     height = height - (np.bincount(place, height) / count)[place]
-    lean = np.einsum("ni,ni->n", moved[rows], np.cross(tangent, normal)[place])
-    return np.bincount(place, height * lean) / np.maximum(np.bincount(place, height**2), 1e-300)
+    square = np.maximum(np.bincount(place, height**2), 1e-300)
+    lean = np.stack([np.bincount(place, height * moved[rows, i]) / square for i in range(3)], axis=1)
+    across = np.cross(tangent, normal)
+    turn = [np.einsum("ki,ki->k", lean, v)[:, None] for v in (across, tangent)]
+    return turn[0] * tangent - turn[1] * across
 
 
 def _mean_tangent(built: Built, band: Band) -> Array:
