@@ -144,9 +144,10 @@ def _nothing(layout: Layout) -> _Derivatives:
 
 def _members(freq_hz: Array, index: int) -> Array:
     """Indices, ascending, of the modes whose frequencies are as good as that of mode ``index``, itself included."""
-    order = np.argsort(freq_hz, kind="stable")
     if not freq_hz[index] > 0:
         return np.array([index])
+    elastic = np.nonzero(freq_hz > 0)[0]
+    order = elastic[np.argsort(freq_hz[elastic], kind="stable")]
     runs = [order[part] for part in clusters(freq_hz[order], REPEATED)]
     return np.sort(next(run for run in runs if index in run))
 
@@ -178,7 +179,7 @@ def _cautions(freq_hz: Array, members: Array, relative: bool, absolute: bool) ->
             f"mode {near + 1} lies only {abs(freq_hz[near] - own):.2g} Hz away: the figures hold for changes that "
             "move the frequency by much less, larger ones mix the two shapes"
         )
-    if freq_hz[members].max() >= freq_hz.max():
+    if freq_hz[members].max() >= np.nanmax(freq_hz):
         words.append(
             "no mode above this one is known: if the next has nearly the same frequency, the figures by place "
             "hold for neither"

@@ -6,7 +6,7 @@ from math import floor, log10
 from typing import Any
 
 _WORTH = 0.1  # share of the energy from which on a spring or a lumped mass is spoken of
-_MORE = {"sheet": "more thickness", "beams": "more section", "solid": "more stiffness and mass"}
+_CHANGED = {"sheet": "thickness", "beams": "area of section", "solid": "stiffness and mass"}
 
 
 def sentence_of(facts: dict[str, Any]) -> str:
@@ -19,8 +19,9 @@ def sentence_of(facts: dict[str, Any]) -> str:
         return f"{head}: {_shares(facts)}; energies here give shares only, so no figure in hertz."
     if several:
         listed = f"{', '.join(str(n) for n in several[:-1])} and {several[-1]}"
-        head = f"Modes {listed} (equal frequencies, {facts['frequency_hz']:.4g} Hz, figures are their mean)"
-    parts = [_place(facts, "stiffen", "it", "more"), _place(facts, "lighten", "it", "less")]
+        head = f"Modes {listed} (as good as equal, {facts['frequency_hz']:.4g} Hz)"
+    what = "their mean" if several else "it"
+    parts = [_place(facts, "stiffen", what, "more"), _place(facts, "lighten", what, "less")]
     parts += [_spring(facts), _mass(facts)]
     said = [part for part in parts if part] or ["no change of material at one place moves it noticeably"]
     return f"{head}: {'; '.join(said)}; first-order estimates, to be checked by solving the changed design."
@@ -36,7 +37,7 @@ def plain(value: float, significant: int = 2) -> str:
     if value == 0:
         return "0"
     rounded = float(f"{value:.{significant - 1}e}")
-    return f"{rounded:.{max(significant - 1 - floor(log10(abs(rounded))), 0)}f}"
+    return f"{rounded:.{max(significant - 1 - floor(log10(abs(rounded))), 0)}f}".replace("-", "−")
 
 
 def mass_words(kilograms: float) -> str:
@@ -46,14 +47,15 @@ def mass_words(kilograms: float) -> str:
 def _place(facts: dict[str, Any], listed: str, what: str, more: str) -> str:
     if not facts[listed]:
         return ""
-    place = facts[listed][0]
-    thing = _MORE.get(place["made_of"], "more material")
+    place, sign = facts[listed][0], 1 if more == "more" else -1
+    change = _CHANGED.get(place["made_of"], "material")
     rise = place["hz_for_tenth_more" if more == "more" else "hz_for_tenth_less"]
-    change = thing if more == "more" else thing.replace("more", "less")
-    return (
-        f"{facts['change']:.0%} {change} on {place['name']}, {mass_words(place['tenth_kg'])}, raises {what} by about "
-        f"{plain(rise)} Hz ({plain(abs(place['hz_per_kg']))} Hz per kg)"
-    )
+    per_kg = f"{plain(sign * place['hz_per_kg'])} Hz per kg"
+    if place["hz_per_kg_split"]:
+        ends = sorted(sign * value for value in place["hz_per_kg_split"])
+        per_kg += f", {plain(ends[0])} Hz per kg for one and {plain(ends[-1])} Hz per kg for another of them"
+    place_words = f"{facts['change']:.0%} {more} {change} on {place['name']}, {mass_words(place['tenth_kg'])}"
+    return f"{place_words}, raises {what} by about {plain(rise)} Hz ({per_kg})"
 
 
 def _spring(facts: dict[str, Any]) -> str:

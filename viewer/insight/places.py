@@ -13,7 +13,9 @@ from scipy.sparse.csgraph import connected_components
 from viewer.model.arrays import Array, frozen
 from viewer.model.mesh import Mesh
 
-PEAK_SHARE = 0.01  # of the mass: the peak of a field is what so much of the body reaches, not one cell at a corner
+# The peak of a field is not one cell at a corner: it is the level that so much of the mass reaches, or above which so
+# much of the whole effect lies, whichever is higher (a narrow neck may hold much of the effect and hardly any mass).
+PEAK_MASS, PEAK_EFFECT = 0.01, 0.1
 EDGE = 0.5  # of the peak: a patch ends where the field falls below
 WORTH = 0.1  # of the strongest patch's effect, below which a patch is not named
 ALIKE = 0.05  # relative difference of effect and weight up to which two patches are taken for mirrored halves
@@ -85,8 +87,12 @@ def cell_centres(mesh: Mesh) -> Array:
 
 def _peak(height: Array, weights: Array) -> float:
     order = np.argsort(-height)
-    reached = np.cumsum(weights[order])
-    return float(height[order[np.searchsorted(reached, PEAK_SHARE * reached[-1])]]) if len(order) else 0.0
+    levels = [0.0]
+    for share, amounts in ((PEAK_MASS, weights), (PEAK_EFFECT, np.maximum(height, 0.0) * weights)):
+        reached = np.cumsum(amounts[order])
+        if len(order) and reached[-1] > 0:
+            levels.append(float(height[order[np.searchsorted(reached, share * reached[-1])]]))
+    return max(levels)
 
 
 def _pieces(mesh: Mesh, height: Array, weights: Array, edge: float) -> list[_Piece]:
