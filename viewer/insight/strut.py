@@ -34,7 +34,7 @@ from viewer.model.modes import ModeSet
 
 ROD = 0.01  # diameter of the rod that is tried, in diagonals of the part
 RESOLVED = 3  # struts solved again
-_FINALISTS = 4  # times ``top``: pairs predicted once more with the unknown modes as one mode
+_FINALISTS = 2  # times ``top``: best pairs, and best pairs in different places, that are predicted more closely
 _APART = 3.0  # footprint radii: struts with both ends nearer than this are one suggestion
 _WORK = 2e7  # unknowns times right-hand sides of the flexibility of footprints
 _REACH = 0.7  # of the highest known frequency: predictions above rest on the modes left out
@@ -209,6 +209,7 @@ class _Field:
         self.candidates, self.known = candidates, known
         footprints, lines = candidates.footprints, candidates.lines
         self.means = np.stack([known.moved[:, each.nodes].mean(axis=1) for each in footprints], axis=1)
+        self.ends = np.array([each.centre for each in footprints]).reshape(-1, 3)[candidates.pairs]  # (p, 2, 3) m
         length = np.linalg.norm(lines, axis=1)
         self.directions = lines / length[:, None]
         first, second = candidates.pairs.T
@@ -240,7 +241,24 @@ class _Field:
             with np.errstate(divide="ignore"):
                 softened = 1 / (1 / stiffness[rows] + residual)
             order = rows[self._order(raised(self.known.poles, self.stretch[rows], softened), index)]
-        return order[: _FINALISTS * top], 0 if truncation is None else len(rows)
+        chosen = [*order[: _FINALISTS * top].tolist(), *self._distinct(order, _FINALISTS * top)]
+        return np.array(list(dict.fromkeys(chosen))), 0 if truncation is None else len(rows)
+
+    def _distinct(self, order: Array, count: int) -> list[int]:
+        """The first ``count`` of the pairs ``order`` without those that lie near an earlier one at both ends."""
+        kept: list[int] = []
+        for pair in order.tolist():
+            if not self._near(pair, kept).any():
+                kept.append(pair)
+            if len(kept) == count:
+                break
+        return kept
+
+    def _near(self, pair: int, others: Sequence[int]) -> Array:
+        ends, reach = self.ends, _APART * self.candidates.radius
+        gap = lambda other: np.linalg.norm(other - ends[pair], axis=2).max(axis=1)  # noqa: E731
+        those = ends[list(others)]
+        return (gap(those) < reach) | (gap(those[:, ::-1]) < reach)
 
     def _order(self, found: Raised, index: int) -> Array:
         """Best first: modes that go on as one before those that do not, then by frequency."""
@@ -282,18 +300,21 @@ class _Field:
             raised(poles, stretch, np.full(len(rows), np.inf)),
             raised(known, self.stretch[rows], self.stiffness[rows]),
         ]
-        out: list[TrialStrut] = []
-        for at in self._order(answers[0], index):
-            i, j = self.candidates.pairs[rows[at]]
-            strut = TrialStrut(
-                self.candidates.footprints[i],
-                self.candidates.footprints[j],
-                float(self.stiffness[rows[at]]),
-                bool(self.candidates.facing[rows[at]]),
-                *(_followed(each.roots[at], each.shares[at, index]) for each in answers),
+        order = self._order(answers[0], index)
+        place = {int(row): at for at, row in enumerate(rows)}
+        out = []
+        for row in self._distinct(rows[order], len(rows)):
+            i, j = self.candidates.pairs[row]
+            at = place[row]
+            out.append(
+                TrialStrut(
+                    self.candidates.footprints[i],
+                    self.candidates.footprints[j],
+                    float(self.stiffness[row]),
+                    bool(self.candidates.facing[row]),
+                    *(_followed(each.roots[at], each.shares[at, index]) for each in answers),
+                )
             )
-            if not any(_near(strut, other, _APART * self.candidates.radius) for other in out):
-                out.append(strut)
         return out
 
 
@@ -309,13 +330,6 @@ def _followed(roots: Array, shares: Array) -> Followed:
         float(freq[rest]),
         float(shares[rest]) if others else 0.0,
         float(freq.min()),
-    )
-
-
-def _near(one: TrialStrut, other: TrialStrut, reach: float) -> bool:
-    gap = lambda a, b: float(np.linalg.norm(a.centre - b.centre))  # noqa: E731
-    return (gap(one.first, other.first) < reach and gap(one.other, other.other) < reach) or (
-        gap(one.first, other.other) < reach and gap(one.other, other.first) < reach
     )
 
 
