@@ -96,6 +96,19 @@ def test_the_strip_is_1600_by_500_with_five_phases(tmp_path):
     assert heights[0] + 8 < heights[-1]
 
 
+@pytest.mark.parametrize("width", [400, 900])
+def test_a_strip_of_another_width_is_the_same_drawing_at_another_size(tmp_path, width):
+    found = [np.array(Image.open(save_strip(known(), tmp_path / f"{w}.png", width=w))) for w in (1600, width)]
+    assert found[1].shape[:2] == (round(500 * width / 1600), width)
+    boxes = []
+    for image, scale in zip(found, (1.0, width / 1600), strict=True):
+        for left, top, right, foot in (np.array(cell) * scale for cell in strip_layout(known()).cells[0]):
+            cell = image[round(top) : round(foot), round(left) : round(right)]
+            rows, columns = np.nonzero((cell != 255).any(axis=2))
+            boxes.append(np.array([columns.min(), rows.min(), columns.max(), rows.max()]) / scale)
+    assert np.array(boxes[5:]) == pytest.approx(np.array(boxes[:5]), abs=3 * 1600 / width)
+
+
 def test_compared_designs_get_a_row_each(tmp_path):
     picture = side()
     strip = strip_layout(picture)

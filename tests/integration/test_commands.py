@@ -216,8 +216,7 @@ def test_animate(dossier, tmp_path, options, suffix, size):
     with Image.open(path) as picture:
         if "--strip" in options:
             assert picture.width > picture.height * 2.5, "five phases in a row"
-        else:
-            assert picture.width == int(WIDTH)
+        assert picture.width == int(WIDTH)
         assert size is None or picture.size == size
     if "--true-scale" in options:
         assert answer["magnification"] == 1

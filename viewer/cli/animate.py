@@ -14,7 +14,6 @@ from viewer.cli.shell import (
     Json,
     NoCache,
     Theme,
-    Width,
     answer,
     command,
     progress_bar,
@@ -48,7 +47,10 @@ def animate(
         str, typer.Option(help="Cut the body open and take away the nearer part: x=120mm, or NX,NY,NZ=120mm.")
     ] = "",
     theme: Theme = "light",
-    width: Width = 960,
+    width: Annotated[
+        int | None,
+        typer.Option(min=320, max=3840, help="Width in pixels; default: 960, of a strip 1600.", show_default=False),
+    ] = None,
     as_json: Json = False,
     no_cache: NoCache = False,
 ) -> None:
@@ -74,7 +76,7 @@ def animate(
         raise InputError("given energies are of one design's own unit", do="leave out --energy given, or --against")
     options: dict[str, Any] = {
         "theme": theme,
-        "width": width,
+        "width": width or 960,
         "ghost": not no_ghost,
         "mesh_edges": mesh_edges,
         "node_lines": node_lines,
@@ -108,7 +110,7 @@ def animate(
                 **options,
             )
         if strip:
-            save_strip(picture, target, progress)
+            save_strip(picture, target, progress, **({"width": width} if width else {}))
         elif suffix == ".png":
             save_png(picture, target, math.radians(phase), progress)
         else:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import os
+from collections.abc import Sequence
 from pathlib import Path
 from typing import Any
 
@@ -14,7 +15,7 @@ from viewer.model.arrays import Array
 from viewer.scene import view
 from viewer.scene.picture import Picture
 from viewer.scene.primitives import Box, Sheet
-from viewer.scene.strip_sheet import Strip, strip_layout
+from viewer.scene.strip_sheet import WIDTH, Strip, strip_layout
 from viewer.scene.tokens import BASE_WIDTH
 from viewer.stage import Stage
 from viewer.stage.sheet_actors import SheetActors
@@ -24,30 +25,42 @@ from viewer.stage.windows import off_screen, pixels
 LINES = 1.0  # line widths, of those of a picture 960 wide
 
 
-def save_strip(picture: Picture, path: str | os.PathLike[str], progress: Progress = SILENT) -> Path:
-    """Write the strip of a picture as PNG, 1600 wide; returns the path.
+def save_strip(
+    picture: Picture, path: str | os.PathLike[str], progress: Progress = SILENT, *, width: int = WIDTH
+) -> Path:
+    """Write the strip of a picture as PNG, ``width`` pixels wide whatever the picture's own width; returns the path.
 
-    500 high; taller when the note needs it, or with a second row of bodies when they are compared side by side.
+    At 1600 wide, the size made for print, it is 500 high; taller when the note needs it, or with a second row of
+    bodies when they are compared side by side.
     Raises ``ExportError`` when the file cannot be written, ``Cancelled`` when asked to stop.
     """
     with atomic_path(path) as part:
-        Image.fromarray(strip_image(picture, progress)).save(part, format="PNG", dpi=(300, 300))
+        Image.fromarray(strip_image(picture, progress, width=width)).save(part, format="PNG", dpi=(300, 300))
     return Path(path)
 
 
-def strip_image(picture: Picture, progress: Progress = SILENT) -> Array:
-    """(h, 1600, 3) uint8 of the strip."""
+def strip_image(picture: Picture, progress: Progress = SILENT, *, width: int = WIDTH) -> Array:
+    """(h, width, 3) uint8 of the strip."""
     strip = strip_layout(picture)
-    image = _sheet_image(strip.sheet)
-    rows = _drawings(picture, strip, progress)
-    for cells, drawings in zip(strip.cells, rows, strict=True):
+    scale = width / WIDTH
+    image = _sheet_image(strip.sheet, scale)
+    rows = [tuple(_scaled(cell, scale) for cell in row) for row in strip.cells]
+    drawn = _drawings(picture, strip, rows, scale, progress)
+    for cells, drawings in zip(rows, drawn, strict=True):
         _paste(image, cells, drawings)
     return image
 
 
-def _drawings(picture: Picture, strip: Strip, progress: Progress) -> list[list[Array]]:
+def _scaled(box: Box, scale: float) -> Box:
+    left, top, right, foot = (scale * edge for edge in box)
+    return left, top, right, foot
+
+
+def _drawings(
+    picture: Picture, strip: Strip, rows: Sequence[tuple[Box, ...]], size: float, progress: Progress
+) -> list[list[Array]]:
     """By row and phase the bare drawings; one camera and one scale for all."""
-    left, top, right, foot = strip.cells[0][0]
+    left, top, right, foot = rows[0][0]
     wide, tall = round(right - left), round(foot - top)
     bare = picture.with_(theme="light", width=wide, height=tall, magnified=None)
     if len(strip.cells) > 1:
@@ -59,7 +72,7 @@ def _drawings(picture: Picture, strip: Strip, progress: Progress) -> list[list[A
     found: list[list[Array]] = [[] for _ in strip.cells]
     scale = bare.width / BASE_WIDTH
     boxes = [tuple(round(edge * scale) for edge in box) for box in view.fit(bare, 0.0, bare=True)[1]]
-    with Stage(bare, bare=LINES) as stage:
+    with Stage(bare, bare=LINES * size) as stage:
         for done, phase in enumerate(strip.phases):
             progress.tick("drawing phases", done, len(strip.phases))
             image = stage.image(phase)
@@ -85,9 +98,9 @@ def _paste(image: Array, cells: tuple[Box, ...], drawings: list[Array]) -> None:
         image[y : y + part.shape[0], x : x + part.shape[1]] = part
 
 
-def _sheet_image(sheet: Sheet) -> Array:
-    """(h, w, 3) uint8 of a sheet alone, on white; one sheet pixel is one pixel."""
-    plotter = off_screen(SUPERSAMPLE * round(sheet.width), SUPERSAMPLE * round(sheet.height))
+def _sheet_image(sheet: Sheet, scale: float) -> Array:
+    """(h, w, 3) uint8 of a sheet alone, on white; one sheet pixel is ``scale`` pixels."""
+    plotter = off_screen(SUPERSAMPLE * round(scale * sheet.width), SUPERSAMPLE * round(scale * sheet.height))
     try:
         plotter.renderer.SetBackground(1, 1, 1)
         window: Any = plotter.render_window
