@@ -49,6 +49,8 @@ def totals(rows: Sequence[Row]) -> dict[str, float]:
         "found": len(hits),
         "recall": _ratio(len(hits), len(lines)),
         "within all bounds": sum(_within(r) for r in hits),
+        "curves": sum(r.kind == "curve" for r in lines),
+        "curves called curves": sum(r.found.startswith("curve") for r in hits if r.kind == "curve"),
         "joints": len(joints),
         "joints found": sum(r.hit for r in joints),
         "joints called joints": sum(r.hit and r.found.startswith("joint") for r in joints),
@@ -107,11 +109,11 @@ def text_of(rows: Sequence[Row]) -> str:
     writer = csv.DictWriter(out, [f.name for f in fields(Row)], lineterminator="\n")
     writer.writeheader()
     for row in rows:
-        writer.writerow({name: _cell(value) for name, value in asdict(row).items()})
+        writer.writerow({name: cell(value) for name, value in asdict(row).items()})
     return out.getvalue()
 
 
-def _cell(value: object) -> object:
+def cell(value: object) -> object:
     if isinstance(value, bool):
         return int(value)
     if isinstance(value, float):
@@ -136,7 +138,7 @@ def run(parts: Iterable[Part], say: Callable[[str], None], density: int = 1) -> 
         say(f"{part.name} ({ready.built.mesh.n_cells} cells, {took:.2f} s a mode)")
         for row in fresh:
             if wrong(row):
-                facts = {name: _cell(value) for name, value in asdict(row).items() if name != "part"}
+                facts = {name: cell(value) for name, value in asdict(row).items() if name != "part"}
                 say(f"    {wrong(row)}: " + " ".join(f"{name}={value}" for name, value in facts.items()))
         rows += fresh
     return rows
@@ -177,7 +179,7 @@ def main(arguments: Sequence[str] | None = None) -> int:
         write_text(TABLE, text_of([r for group in rows.values() for r in group]))
         lines = [f"# seed {SEED}, generator version {VERSION}", "run,figure,value"]
         for title, figures in results.items():
-            lines += [f"{title},{name},{_cell(value)}" for name, value in figures.items()]
+            lines += [f"{title},{name},{cell(value)}" for name, value in figures.items()]
         write_text(TOTALS, "\n".join(lines) + "\n")
     return 0
 
