@@ -79,8 +79,11 @@ def in_child(function: Callable[..., Any], *args: Any, progress: Progress = SILE
     """Run ``function(*args)`` in a fresh process and return its result; cancelling kills it at once.
 
     ``function`` must be importable and everything picklable; large results belong in a file whose path is
-    returned. Errors of our tree come back as they were; anything else becomes a ``SolveError``.
+    returned. Errors of our tree come back as they were; anything else becomes a ``SolveError``. Within such a child
+    the function runs in place: whoever kills the child ends it too.
     """
+    if multiprocessing.current_process().daemon:
+        return function(*args)
     context = multiprocessing.get_context("spawn")
     mine, theirs = context.Pipe(duplex=False)
     process = context.Process(target=_child, args=(theirs, function, args), daemon=True)

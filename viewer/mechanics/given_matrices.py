@@ -115,10 +115,11 @@ def totals(
     rigid = (omega <= 0) | (flexible_share(system, vectors) < _RIGID)
     with np.errstate(divide="ignore", invalid="ignore"):
         closure = np.where(rigid, np.nan, np.sqrt(np.maximum(2 * strain, 0) / modal_mass) / omega)
-    residual = np.full(len(picked), np.nan)
+    residual, missing = np.full(len(picked), np.nan), np.zeros(len(picked))
     elastic = np.nonzero(~rigid)[0]
     if len(elastic):
-        residual[elastic], _ = residuals(system, vectors[elastic], omega[elastic], progress)
+        found = residuals(system, vectors[elastic], omega[elastic], progress)
+        residual[elastic], missing[elastic] = found.share, found.missing
     return Totals(
         picked,
         modes.freq_hz[picked],
@@ -127,7 +128,7 @@ def totals(
         modal_mass,
         closure,
         residual,
-        (np.abs(closure - 1) <= CLOSURE_BOUND) & (residual <= RESIDUAL_BOUND),
+        (np.abs(closure - 1) <= CLOSURE_BOUND) & (residual + missing <= RESIDUAL_BOUND),
     )
 
 

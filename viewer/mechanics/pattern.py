@@ -17,6 +17,19 @@ if TYPE_CHECKING:
 _SLAB = 2**25  # entries gathered before they are added to the matrix, 256 MB
 
 
+def joined_triples(layout: Layout) -> sp.csr_array:
+    """(triples, triples) bool: True where an element joins the two, and on the diagonal."""
+    size = layout.n_dof // 3
+    triples = [group.dofs[:, ::3] // 3 for group in layout.blocks]
+    columns = np.concatenate([t.ravel() for t in triples] + [np.arange(size)])
+    lengths = np.concatenate([np.full(len(t), t.shape[1]) for t in triples] + [np.ones(size, np.int64)])
+    ends = np.append(0, np.cumsum(lengths)).astype(np.int32)
+    membership = sp.csr_array(
+        (np.ones(len(columns), bool), columns.astype(np.int32), ends), shape=(len(lengths), size)
+    )
+    return sp.csr_array(membership.T @ membership)
+
+
 class Pattern:
     """The sparsity of triples that share an element, and where each entry of an element matrix goes.
 
@@ -26,14 +39,7 @@ class Pattern:
 
     def __init__(self, layout: Layout) -> None:
         self.size = layout.n_dof // 3
-        triples = [group.dofs[:, ::3] // 3 for group in layout.blocks]
-        columns = np.concatenate([t.ravel() for t in triples] + [np.arange(self.size)])
-        lengths = np.concatenate([np.full(len(t), t.shape[1]) for t in triples] + [np.ones(self.size, np.int64)])
-        ends = np.append(0, np.cumsum(lengths)).astype(np.int32)
-        membership = sp.csr_array(
-            (np.ones(len(columns), bool), columns.astype(np.int32), ends), shape=(len(lengths), self.size)
-        )
-        graph = sp.csr_array(membership.T @ membership)  # (triples, triples): True where an element joins them
+        graph = joined_triples(layout)
         graph.sort_indices()
         if 9 * graph.nnz >= 2**31:
             raise ModelError(
