@@ -30,41 +30,35 @@ def struts(
     no_cache: NoCache = False,
 ) -> None:
     """Rank struts between facing places by how far they raise a mode; the dossier's clearances stay empty."""
-    import numpy as np
-
     from viewer.export.strut_rows import strut_rows
     from viewer.export.tables import readable, write_table
-    from viewer.insight.strut import RESOLVED, strut_trial
+    from viewer.insight.strut import RESOLVED
+    from viewer.workspace.trials import try_struts
 
     opened = workspace(no_cache).open(dossier)
     name = design or opened.names[0]
-    plan = opened.dossier.plan(name)
     with progress_bar() as progress:
-        body = opened.design(name, progress)
-        count = None if mode is None else max(mode, plan.mode_count)
-        modes = opened.modes(name, count, progress)
-        number = mode or 1 + int(np.argmax(modes.freq_hz > 0))
-        found = strut_trial(
-            body,
-            modes,
-            number,
+        found = try_struts(
+            opened,
+            name,
+            mode,
             stiffness=stiffness,
-            clearances=plan.clearances,
             top=top,
             resolve=RESOLVED if resolve else 0,
             progress=progress,
         )
-    cautions = [*opened.warnings, *opened.doubts(name), *(f"{name}: {words}" for words in found.cautions)]
-    facts = found.to_dict() | {"cautions": cautions}
+    facts = found.to_dict()
     rows = strut_rows(name, facts)
     if out is not None:
         write_table(out, rows)
+    cautions = [*opened.warnings, *opened.doubts(name), *(f"{name}: {words}" for words in found.cautions)]
     if as_json:
-        answer({"title": opened.dossier.title, "design": name, "sentence": found.sentence, **facts})
+        about = {"title": opened.dossier.title, "design": name, "sentence": found.sentence}
+        answer({**about, **facts, "cautions": cautions})
         return
     typer.echo(found.sentence)
     if rows:
         typer.echo("\n" + readable(rows) + "\n")
-    typer.echo(f"Stiffness: {found.stiffness_words}.")
+        typer.echo(f"Stiffness: {found.stiffness_words}.")
     for caution in cautions:
         typer.echo(f"caution: {caution}")
