@@ -2,9 +2,11 @@
 
 import numpy as np
 import pytest
+from scipy.spatial import Delaunay
 
 from tests.meshes import box_mesh, plate_mesh
 from tests.scene.sheets import known, marked
+from viewer.model.mesh import CellBlock, Mesh
 from viewer.scene.forms import sphere
 from viewer.scene.marks import BEAD, RING, bead_radius, facing_marks, mark_pieces, standing_marks
 from viewer.scene.pegs import PEG, PEG_BITE, PEG_STEP, peg_places, spread
@@ -60,6 +62,28 @@ def test_of_a_held_area_only_the_outline_is_marked():
     depth = np.min([at[:, 1], 0.1 - at[:, 1], at[:, 2], 0.1 - at[:, 2]], axis=0)
     assert depth.max() < PEG_STEP * mesh.diagonal
     assert len(at) >= 16
+
+
+def test_pegs_on_irregular_tetrahedra_keep_to_the_outline_and_stand_square():
+    size = np.array([0.3, 0.1, 0.1])
+    grid = box_mesh("hex8", (12, 5, 5), size).points
+    rng = np.random.default_rng(3)
+    free = (grid > 1e-9) & (grid < size - 1e-9)  # a coordinate on the box's surface stays on it
+    points = grid + np.where(free, rng.uniform(-0.4, 0.4, grid.shape) * size / (12, 5, 5), 0.0)
+    cells = Delaunay(points).simplices
+    corners = points[cells]
+    volume = np.linalg.det(corners[:, 1:] - corners[:, :1])
+    cells[volume < 0] = cells[volume < 0][:, [0, 2, 1, 3]]
+    cells = cells[np.abs(volume) > 1e-9 * np.prod(size)]
+    mesh = Mesh(points, (CellBlock("tet4", cells, np.arange(len(cells))),), np.arange(len(points)))
+    places = peg_places(mesh, np.nonzero(points[:, 0] < 1e-12)[0], mesh.diagonal)
+    edge = PEG * mesh.diagonal
+    for centre, outward in places:
+        assert outward == pytest.approx([-1, 0, 0], abs=1e-9)
+        assert min(*centre[1:], *(size[1:] - centre[1:])) < 0.5 * edge
+    assert len(places) >= 12
+    for corner in ((0, 0), (0, 0.1), (0.1, 0), (0.1, 0.1)):
+        assert min(np.linalg.norm(centre[1:] - corner) for centre, _ in places) < 0.5 * edge
 
 
 def test_a_line_held_within_a_plate_is_pegged_from_below():

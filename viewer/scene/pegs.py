@@ -7,17 +7,18 @@ from collections.abc import Sequence
 import numpy as np
 from scipy.spatial import cKDTree
 
+from viewer.cells import KINDS
 from viewer.model.arrays import Array
 from viewer.model.mesh import Mesh
 from viewer.scene.forms import Piece, axes
+from viewer.scene.surface import cross_of
 
 PEG = 0.018  # edge of a peg's cube
 PEG_STEP = 0.028  # least distance between pegs
 PEG_BITE = 0.2  # share of a peg's edge that lies in the body
 
-_INNER = 0.2  # "corner" measure below which a held point may be inside a held area
 _ONE_SIDED = 0.6  # share in which the cells around held nodes agree on the side where the body is
-_FEW = 4  # neighbours that a point inside an area has at least
+_FEW = 4  # neighbours that a point is seen among at least
 _MANY = 4000  # held nodes above which one in each cube of a grid is enough
 _GRAIN = 0.25  # edge of these cubes, in peg steps
 _WORLD = np.eye(3)
@@ -27,25 +28,29 @@ def peg_places(mesh: Mesh, rows: Array, diagonal: float) -> list[tuple[Array, Ar
     """(centre, outward unit vector) of each peg along held nodes, spread by at least ``PEG_STEP``.
 
     Of a held area only the outline gets pegs. Held nodes are thinned by farthest-point selection, so that corners
-    and ends of an edge get their peg first and the rest fall evenly between. A peg sits on the side of the held
-    nodes where no cell is, found from the cells around; a line held within a sheet has none, and its pegs all sit
-    on the sheet's lower side.
+    and ends of an edge get their peg first and the rest fall evenly between. A peg stands square on held faces of
+    solids; else on the side of the held nodes where no cell is, found from the cells around; a line held within a
+    sheet has none, and its pegs all sit on the sheet's lower side.
     """
     rows = np.unique(np.asarray(rows, np.int64))
+    outline, normals = _held_faces(mesh, rows)
     if len(rows) > _MANY:
         grid = np.floor(mesh.points[rows] / (_GRAIN * PEG_STEP * diagonal)).astype(np.int64)
-        rows = rows[np.sort(np.unique(grid, axis=0, return_index=True)[1])]
+        some = np.sort(np.unique(np.column_stack([grid, outline]), axis=0, return_index=True)[1])
+        rows, outline, normals = rows[some], outline[some], normals[some]
     size, held = PEG * diagonal, mesh.points[rows]
-    corner, inner = _surroundings(held, PEG_STEP * diagonal)
+    corner = _cornered(held, PEG_STEP * diagonal)
     inward, count = _inward(mesh, rows)
     centres: list[Array] = []
     found = []
-    edge = np.nonzero(~inner)[0]
+    edge = np.nonzero(outline)[0]
     for k in edge[spread(held[edge], PEG_STEP * diagonal, favour=corner[edge])]:
         near = np.linalg.norm(held - held[k], axis=1) <= 1.2 * size
         at = _middle_of_thickness(held, k, 0.5 * size)
-        outward = -inward[near].sum(axis=0)
-        if np.linalg.norm(outward) < _ONE_SIDED * max(float(count[near].sum()), 1e-300):
+        outward = normals[near].sum(axis=0)
+        if np.linalg.norm(outward) <= _ONE_SIDED * np.linalg.norm(normals[near], axis=1).sum():
+            outward = -inward[near].sum(axis=0)
+        if not normals[near].any() and np.linalg.norm(outward) < _ONE_SIDED * max(float(count[near].sum()), 1e-300):
             outward = _lower_side(mesh, rows[near])
         outward = outward / np.linalg.norm(outward)
         centre = at + (0.5 - PEG_BITE) * size * outward
@@ -73,14 +78,33 @@ def spread(points: Array, step: float, most: int = 160, favour: Array | None = N
     return chosen
 
 
-def _surroundings(points: Array, reach: float) -> tuple[Array, Array]:
-    """How held points lie among those within ``reach``, or further where they are few.
+def _held_faces(mesh: Mesh, rows: Array) -> tuple[Array, Array]:
+    """By held node: whether it is on the outline of the held faces, or on none of them (then it is its own outline);
+    and the sum (n, 3) of the outward normals of the held faces of solids around it, m²."""
+    held = np.zeros(mesh.n_nodes, bool)
+    held[rows] = True
+    skin = mesh.skin
+    mine = held[skin.faces].all(axis=1)
+    faces = skin.faces[mine]
+    sides = np.sort(faces[:, [[0, 1], [1, 2], [2, 0]]].reshape(-1, 2), axis=1)
+    pairs, beside = np.unique(sides, axis=0, return_counts=True)
+    inner = np.zeros(mesh.n_nodes, bool)
+    if len(faces):
+        inner |= ~np.isin(np.arange(mesh.n_nodes), skin.nodes)  # nodes within a solid
+        inner[faces] = True
+        inner[pairs[beside == 1]] = False
+    outline = ~inner[rows]
+    solid = np.concatenate([np.full(len(block), KINDS[block.kind].dim == 3) for block in mesh.blocks] or [[]])
+    of_solids = faces[solid[skin.cell[mine]].astype(bool)]
+    normals = np.zeros((mesh.n_nodes, 3))
+    for corner in of_solids.T:
+        np.add.at(normals, corner, cross_of(mesh.points, of_solids))
+    return outline if outline.any() else ~outline, normals[rows]
 
-    corner  (n,) distance from the middle of those around, in ``reach``: 0 along a straight line, about ⅓ at a right
-            angle, ½ at an end
-    inner   (n,) bool: others lie all around in two directions, so that the point is inside a held area, not on its
-            outline; never all of them
-    """
+
+def _cornered(points: Array, reach: float) -> Array:
+    """(n,) distance from the middle of those within ``reach``, or further where points are few, in ``reach``: 0 along
+    a straight line, about ⅓ at a right angle, ½ at an end."""
     n = len(points)
     tree = cKDTree(points)
     if n > _FEW:
@@ -90,14 +114,7 @@ def _surroundings(points: Array, reach: float) -> tuple[Array, Array]:
     away = points[b] - points[a]
     count = 1 + np.bincount(a, minlength=n)  # the point itself is one of those around
     total = np.stack([np.bincount(a, part, n) for part in away.T], axis=1)
-    corner = np.linalg.norm(total / count[:, None], axis=1) / reach
-    spreads = np.empty((n, 3, 3))
-    for i in range(3):
-        for j in range(3):
-            spreads[:, i, j] = np.bincount(a, away[:, i] * away[:, j], n)
-    widths = np.sqrt(np.maximum(np.linalg.eigvalsh(spreads), 0.0))  # ascending
-    inner = (corner < _INNER) & (count > _FEW) & (widths[:, 1] > 0.5 * widths[:, 2])
-    return corner, inner if not inner.all() else ~inner
+    return np.linalg.norm(total / count[:, None], axis=1) / reach
 
 
 def _inward(mesh: Mesh, rows: Array) -> tuple[Array, Array]:
