@@ -188,7 +188,7 @@ LENGTH, WIDTH, DEPTH, BEND = 0.90, 0.16, 0.10, 0.008  # boom: along x, across y,
 WINDOW, WINDOW_CORNER = (0.11, 0.26), 0.020  # the cable window, along x, and its corner radius
 FLOOR, SEAT = (0.0, 0.58), (0.58, 0.73)  # plates that close the section from below; the camera's last
 SLITS, SLIT = (0.752, 0.866), 0.008  # centres and width of the slits in the right flange
-SLIT_TOP = 0.028  # distance of their ends from the fold
+SLIT_TOP = 0.042  # distance of their ends from the fold
 
 
 def folded(x: Floats, s: Floats) -> Floats:
@@ -238,6 +238,7 @@ def boom(window_half_width: float, lip: float = 0.0) -> Mesh:
     group = np.where(middle[..., 1] > half, "flange_left", np.where(middle[..., 1] < -half, "flange_right", "top"))
     flap = (middle[..., 0] > SLITS[0]) & (middle[..., 0] < SLITS[1]) & (middle[..., 1] < -slit_end)
     group = np.where(flap, "flap", group)
+    group = np.where(flap & (middle[..., 1] > -slit_end - SLIT / 2), "score_line", group)
     parts = Sheets()
     parts.add(folded(plane.at[..., 0], plane.at[..., 1]), group, plane.keep)
 

@@ -20,8 +20,8 @@ from viewer.mechanics.patch import RigidPatch
 ROOT = Path(__file__).parents[2] / "sample_meshes"
 FOLDERS = ("boom", "fork", "trough")
 GROUPS = {  # cells of every group, node groups; lengths in m
-    "boom/baseline.vtu": ("top flange_left flange_right flap floor camera_seat nose", "root tip"),
-    "boom/modified.vtu": ("top flange_left flange_right flap floor camera_seat nose lip", "root tip"),
+    "boom/baseline.vtu": ("top flange_left flange_right flap score_line floor camera_seat nose", "root tip"),
+    "boom/modified.vtu": ("top flange_left flange_right flap score_line floor camera_seat nose lip", "root tip"),
     "fork/fork.vtu": ("tine_left bend_left crossbar bend_right tine_right stem", "root"),
     "trough/plain.vtu": ("floor wall_left wall_right", "fixed_end"),
     "trough/strapped.vtu": ("floor wall_left wall_right straps", "fixed_end"),
