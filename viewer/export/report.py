@@ -19,6 +19,8 @@ from viewer import __version__
 from viewer.errors import ExportError
 from viewer.export.checkup import mesh_words
 from viewer.export.file_names import slugs
+from viewer.export.finding_rows import flap_rows, hinge_rows
+from viewer.export.findings import Pictures, write_gain_still, write_hinge_stills
 from viewer.export.gif_loop import save_gif
 from viewer.export.index_page import PageLoop, PageSection, PageTable, write_index
 from viewer.export.rows import Row, group_rows, mode_caption, mode_rows, pair_caption, pair_row, point_rows, short
@@ -29,6 +31,7 @@ from viewer.jobs import SILENT, Progress, write_text
 from viewer.model.plain import plain
 from viewer.scene.compose import pair_picture, single_picture
 from viewer.workspace import OpenDossier, Study
+from viewer.workspace.explanation import Explanation
 
 SUMMARY = "summary.json"
 
@@ -65,6 +68,7 @@ def write_review(
         comparison = _compare(desk, pairs) if pairs else None
         sections = ([comparison] if comparison else []) + [_explain(desk, study) for study in studies]
         doubts = [words for s in studies for words in (*opened.doubts(s.design.name), *s.cautions)]
+        doubts += [f"{name}: {words}" for name, told in desk.findings.items() for t in told for words in t.cautions]
         cautions = tuple(dict.fromkeys((*opened.warnings, *doubts)))
         write_index(part, opened.dossier.title, sections, condition=opened.dossier.condition, cautions=cautions)
         summary = _summary(opened, studies, desk, cautions)
@@ -97,6 +101,7 @@ class _Desk:
     slugs: dict[str, str]
     printed: list[tuple[str, list[Row]]] = field(default_factory=list)
     tables: dict[str, list[Row]] = field(default_factory=dict)
+    findings: dict[str, list[Explanation]] = field(default_factory=dict)
 
     @property
     def look(self) -> dict[str, Any]:
@@ -119,9 +124,21 @@ def _explain(desk: _Desk, study: Study) -> PageSection:
     name = study.design.name
     slug = desk.slugs[name]
     rows = mode_rows(study)
-    loops = [_explain_mode(desk, study, index, row) for index, row in enumerate(rows)]
+    loops, told = [], []
+    for index, row in enumerate(rows):
+        progress = desk.steps.next(f"{name} mode {index + 1}")
+        told.append(study.explain(index, progress))
+        loops.append(_explain_mode(desk, study, index, row, told[-1], progress))
+    desk.findings[name] = told
+    folds = [explained.hinges.to_dict() for explained in told if explained.hinges is not None]
     tables = (
         *desk.table(f"{slug}_modes", f"Modes of {name}", rows, show=True),
+        *desk.table(
+            f"{slug}_hinges", f"Where {name} folds", [r for f in folds for r in hinge_rows(name, f)], show=True
+        ),
+        *desk.table(
+            f"{slug}_flaps", f"What flaps in {name}", [r for f in folds for r in flap_rows(name, f)], show=True
+        ),
         *desk.table(f"{slug}_points", f"Motion of the functional points of {name}", point_rows(study), show=True),
         *desk.table(f"{slug}_groups", f"Energy by group of {name}", group_rows(study)),
     )
@@ -131,11 +148,10 @@ def _explain(desk: _Desk, study: Study) -> PageSection:
     return PageSection(name, tuple(text), tuple(loops), tables)
 
 
-def _explain_mode(desk: _Desk, study: Study, index: int, row: Row) -> PageLoop:
+def _explain_mode(desk: _Desk, study: Study, index: int, row: Row, told: Explanation, progress: Progress) -> PageLoop:
     number, slug = index + 1, desk.slugs[study.design.name]
     stem = f"{slug}_mode_{number:02d}"
-    progress = desk.steps.next(f"drawing {study.design.name} mode {number}")
-    picture = single_picture(study, number, **desk.look)
+    picture = single_picture(study, number, finding=told.hinges, **desk.look)
     save_gif(picture, desk.folder / f"{stem}.gif", progress)
     save_png(picture, desk.folder / f"{stem}.png", progress=progress)
     save_strip(picture, desk.folder / f"{stem}_phases.png", progress)
@@ -143,6 +159,11 @@ def _explain_mode(desk: _Desk, study: Study, index: int, row: Row) -> PageLoop:
     if true_scale:
         true = single_picture(study, number, true_scale=True, **desk.look)
         save_png(true, desk.folder / true_scale, progress=progress)
+    pictures: Pictures = ()
+    if told.hinges is not None:
+        pictures += write_hinge_stills(desk.folder, stem, study, number, told.hinges, progress=progress, **desk.look)
+    if told.gain is not None:
+        pictures += write_gain_still(desk.folder, stem, study, number, told.gain, progress=progress, **desk.look)
     return PageLoop(
         title=picture.note.title,
         gif=f"{stem}.gif",
@@ -150,6 +171,8 @@ def _explain_mode(desk: _Desk, study: Study, index: int, row: Row) -> PageLoop:
         strip=f"{stem}_phases.png",
         true_scale=true_scale,
         caption=mode_caption(row),
+        sentences=(*told.sentences, *told.refused),
+        findings=pictures,
         alt=f"{study.design.name}, {picture.note.title}, {picture.note.frequency}: {', '.join(picture.note.drawing)}",
     )
 
@@ -225,6 +248,7 @@ def _summary(opened: OpenDossier, studies: list[Study], desk: _Desk, cautions: t
                 "modes": desk.tables.get(f"{desk.slugs[s.design.name]}_modes", []),
                 "points": desk.tables.get(f"{desk.slugs[s.design.name]}_points", []),
                 "groups": desk.tables.get(f"{desk.slugs[s.design.name]}_groups", []),
+                "findings": [explained.to_dict() for explained in desk.findings[s.design.name]],
                 "drawing": [s.scale(i).to_dict() for i in range(s.count)],
             }
             for s in studies

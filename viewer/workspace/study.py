@@ -2,14 +2,19 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field
 from functools import cached_property
+from typing import Any, cast
 
 import numpy as np
 
 from viewer.errors import InputError, ModelError, RefusedError
-from viewer.insight.hinges import HingeFinding
+from viewer.insight.character import Character, describe, masses_of
+from viewer.insight.facing import facing_surfaces
+from viewer.insight.gain import gain_map
+from viewer.insight.gain_finding import GainMap
+from viewer.insight.hinges import HingeFinding, find_hinges
 from viewer.insight.scale import CarriedPoint, Scale, carried_points, scale_mode
 from viewer.jobs import SILENT, Progress
 from viewer.mechanics.energy import RELATIVE, Energies, energies
@@ -19,6 +24,7 @@ from viewer.model.arrays import Array
 from viewer.model.design import Design
 from viewer.model.dossier import StatedAmplitude
 from viewer.model.modes import ModeSet
+from viewer.workspace.explanation import Answer, Explanation, asked
 
 _WANTED = "add materials and assign them for closure, trust and absolute energies"
 
@@ -41,7 +47,7 @@ class Study:
     condition: str = ""
     totals: Totals | None = None
     _scales: dict[tuple[int, bool, float | None], Scale] = field(default_factory=dict, init=False, repr=False)
-    _hinges: dict[int, HingeFinding] = field(default_factory=dict, init=False, repr=False)
+    _found: dict[tuple[str, int], Any] = field(default_factory=dict, init=False, repr=False)
 
     @property
     def count(self) -> int:
@@ -122,14 +128,50 @@ class Study:
             )
         return self._scales[key]
 
+    def explain(self, index: int, progress: Progress = SILENT) -> Explanation:
+        """All that is found about mode ``index`` (from 0)."""
+        refused: list[str] = []
+        return Explanation(
+            index + 1,
+            asked(lambda: self.character(index, progress), refused),
+            asked(lambda: self.hinges(index, progress), refused),
+            asked(lambda: self.gain(index, progress), refused),
+            tuple(dict.fromkeys(refused)),
+        )
+
     def hinges(self, index: int, progress: Progress = SILENT) -> HingeFinding:
         """Where mode ``index`` (from 0) folds and what flaps, its angles at the mode's own scale; found once."""
-        from viewer.insight.hinges import find_hinges
+        find = lambda: find_hinges(self.design, self.modes, index + 1, self.energies, progress)  # noqa: E731
+        return self._once("hinges", index, lambda: find().with_scale(self.scale(index)))
 
-        if index not in self._hinges:
-            found = find_hinges(self.design, self.modes, index + 1, self.energies, progress)
-            self._hinges[index] = found.with_scale(self.scale(index))
-        return self._hinges[index]
+    def character(self, index: int, progress: Progress = SILENT) -> Character:
+        """What mode ``index`` does; found once."""
+        masses = self._once("masses", 0, lambda: masses_of(self.design, self.modes, progress))
+        facing = self._once("facing", 0, lambda: facing_surfaces(self.design.mesh, progress))
+        return self._once(
+            "character",
+            index,
+            lambda: describe(
+                self.design,
+                self.modes,
+                index + 1,
+                self.energies,
+                self.scale(index),
+                progress,
+                effective=masses,
+                facing=facing,
+            ),
+        )
+
+    def gain(self, index: int, progress: Progress = SILENT) -> GainMap:
+        """Where stiffness and weight move mode ``index``; found once."""
+        find = lambda: gain_map(self.design, self.modes, index + 1, self.energies, progress)  # noqa: E731
+        return self._once("gain", index, find)
+
+    def _once(self, question: str, index: int, find: Callable[[], Answer]) -> Answer:
+        if (question, index) not in self._found:
+            self._found[question, index] = find()
+        return cast(Answer, self._found[question, index])
 
     def turned_shape(self, index: int, turn: complex) -> Array:
         """The shape times a unit complex factor; a real shape stays real (its factor is a sign)."""
