@@ -85,12 +85,19 @@ def test_everything_comes_out_in_si(dossier):
     np.testing.assert_allclose(physics.ties[0].surface.box[1], 1e-3)
 
 
+def test_what_solids_need_of_directional_material(dossier):
+    more = "g23 = 3.5\ne3 = 9\nnu13 = 0.25\nnu23 = 0.4\n"
+    physics = read_dossier(dossier(TEXT.replace("g23 = 3.5\n", more))).plans[0].physics
+    assert physics.materials["ply"].directional == Directional(140e9, 10e9, 0.3, 5e9, 5e9, 3.5e9, 9e9, 0.25, 0.4)
+
+
 @pytest.mark.parametrize(
     ("old", "new", "words"),
     [
         ("youngs_modulus = 210\n", "", ["materials, steel", "'youngs_modulus' is missing"]),
         ("g23 = 3.5\n", "", ["materials, ply", "'g23' is missing", "'e1', 'e2'"]),
         ("g23 = 3.5\n", "g23 = 3.5\npoisson = 0.3\n", ["materials, ply", "mixes two kinds"]),
+        ("g23 = 3.5\n", "g23 = 3.5\ne3 = 10\n", ["materials, ply", "'nu13' is missing (and 1 more)", "'nu23'"]),
         ('material = "steel", section', "section", ["assign 2", "says no material"]),
         ("layers = [", 'material = "steel", layers = [', ["assign 4", "layers alone"]),
         ('{material = "ply"', '{material = "plie"', ["assign 4, layers", "no material named 'plie'"]),

@@ -381,7 +381,7 @@ def test_what_a_sheet_lacks_is_said(more, words):
         assert word in str(caught.value)
 
 
-def test_directional_material_on_a_solid_is_refused():
+def test_directional_material_of_sheets_on_a_solid_is_refused():
     with pytest.raises(ModelError, match=r"ply.*directional.*solids"):
         assemble(design(box_mesh("hex8", (1, 1, 1), (1, 1, 1)), material=PLY))
 

@@ -177,7 +177,8 @@ class _Reader:
         e1, e2, g12, g13, g23 = (float(getattr(item, key) or 0) * unit for key in ("e1", "e2", "g12", "g13", "g23"))
         for modulus in (e1, e2):
             self.plausible("youngs_modulus", modulus, place)
-        directional = Directional(e1, e2, item.nu12 or 0.0, g12, g13, g23)
+        e3 = None if item.e3 is None else self.plausible("youngs_modulus", item.e3 * unit, place)
+        directional = Directional(e1, e2, item.nu12 or 0.0, g12, g13, g23, e3, item.nu13, item.nu23)
         return Material(name, e1, directional.nu12, density, directional)
 
     def assignment(self, item: schema.AssignTable, place: str, materials: dict[str, Material]) -> Assignment:

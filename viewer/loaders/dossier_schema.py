@@ -17,7 +17,8 @@ turning springs N·m/rad::
     [materials.aluminium]
     youngs_modulus = 70
     poisson = 0.33
-    density = 2700              # of a directional material: e1, e2, nu12, g12, g13, g23, density
+    density = 2700              # of a directional material: e1, e2, nu12, g12, g13, g23, density, and for solids also
+                                # e3, nu13, nu23 (nu12: contraction along 2 under stress along 1)
 
     [[designs]]
     name = "baseline"
@@ -45,6 +46,7 @@ turning springs N·m/rad::
     #   shells: offset = 5 moves the sheet off its nodes along the normal; direction = [1, 0, 0] is axis 1 of
     #     directional material; layers = [{material = "ply", thickness = 0.2, angle = 45}, …] stand for both material
     #     and thickness; thickness or section without any material are enough for relative energies of given modes
+    #   solids of directional material: direction is axis 1, orientation shows where axis 3 points
 
     [[points]]                  # of all designs; a design's own `points` add to them or replace by name
     name = "camera lens"
@@ -111,6 +113,7 @@ class Units(Table):
 
 
 _ISOTROPIC, _DIRECTIONAL = ("youngs_modulus", "poisson"), ("e1", "e2", "nu12", "g12", "g13", "g23")
+_ACROSS = ("e3", "nu13", "nu23")  # of directional material that solids are made of
 
 
 class MaterialTable(Table):
@@ -123,6 +126,9 @@ class MaterialTable(Table):
     g12: Positive | None = None
     g13: Positive | None = None
     g23: Positive | None = None
+    e3: Positive | None = None
+    nu13: float | None = None
+    nu23: float | None = None
 
     @property
     def directional(self) -> bool:
@@ -130,10 +136,12 @@ class MaterialTable(Table):
 
     @model_validator(mode="after")
     def _one_kind(self):
-        given = {name for name in (*_ISOTROPIC, *_DIRECTIONAL) if getattr(self, name) is not None}
-        if given & set(_ISOTROPIC) and given & set(_DIRECTIONAL):
+        directional = {name for name in (*_DIRECTIONAL, *_ACROSS) if getattr(self, name) is not None}
+        if directional and any(getattr(self, name) is not None for name in _ISOTROPIC):
             raise ValueError(f"mixes two kinds of material, expected {_said(_ISOTROPIC)}, or {_said(_DIRECTIONAL)}")
-        wanted = _DIRECTIONAL if given & set(_DIRECTIONAL) else _ISOTROPIC
+        wanted: tuple[str, ...] = _DIRECTIONAL if directional else _ISOTROPIC
+        if directional & set(_ACROSS):
+            wanted += _ACROSS
         missing = [name for name in (*wanted, "density") if getattr(self, name) is None]
         if missing:
             more = f" (and {len(missing) - 1} more)" if missing[1:] else ""

@@ -14,8 +14,8 @@ import scipy.sparse.linalg as spla
 from viewer.errors import SolveError
 from viewer.model.arrays import Array
 
-# Unknowns up to which a factorisation takes an instant; larger ones belong in a process that can be killed, since they
-# hear neither Ctrl-C nor a cancel.
+# Unknowns up to which a factorisation takes an instant; larger ones belong in a process that can be killed, since
+# they hear neither Ctrl-C nor a cancel.
 AT_ONCE = 12_000
 _ONE_CODE_PATH = 2  # MKL_CBWR_AUTO
 

@@ -5,20 +5,21 @@ Every kind goes through one class; what differs is the quadrature and whether th
 
 - Stiffness of an isotropic solid: K[a i, b j] = ∫ λ ∂ᵢNₐ ∂ⱼN_b + μ ∂ⱼNₐ ∂ᵢN_b + μ δᵢⱼ ∇Nₐ·∇N_b dV
   (Zienkiewicz & Taylor, The Finite Element Method, vol. 1), so that one product of gradients per cell serves all.
+- Directional material the same way: K[a i, b j] = ∫ C_ikjl ∂ₖNₐ ∂ₗN_b dV, C in global axes.
 - Incompatible modes 1 − ξ², 1 − η², 1 − ζ² in each displacement (Wilson, Taylor, Doherty & Ghaboussi 1973), condensed
   cell by cell, with the gradients of Taylor, Beresford & Wilson (1976, "A non-conforming element for stress
   analysis", Int. J. Numer. Meth. Engng 10:1211–1219): Jacobian of the centre, scaled by det J₀ / det J, so that
   they do no work on constant stress and the patch test holds on every shape. Cells flatter than two to one are
-  pieces of thin wall, whose strains across are tied as well: ``flat_brick``.
+  pieces of thin wall, whose strains across are tied as well: ``flat_brick`` (isotropic material only).
 - Consistent mass ρ ∫ Nₐ N_b dV, the same for the three directions and therefore given once (b, n, n). Incompatible
   modes carry no mass.
 """
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass
-from functools import cache
+from functools import cache, partial
 
 import numpy as np
 
@@ -55,18 +56,19 @@ class SolidFormulation:
         ``ModelError`` for an unusable material or a cell that is inside out or collapsed.
         """
         xyz = np.asarray(xyz, float)
-        first, second = materials.lame(prop.material)
+        combine = _combination(prop)
         points, weights, _, gradient = _tables(self.kind, self.stiffness_order)
         kept = 3 * xyz.shape[1]
         out = np.empty((len(xyz), kept, kept))
         for part in _chunks(len(xyz), (len(points) + kept) * kept):
-            matrix = _elastic(self._slopes(xyz[part], gradient, points, weights), first, second)
+            matrix = combine(self._slopes(xyz[part], gradient, points, weights))
             if self.incompatible:
                 inner = matrix[:, kept:]
                 freed = np.linalg.solve(inner[:, :, kept:], inner[:, :, :kept])
                 matrix = matrix[:, :kept, :kept] - matrix[:, :kept, kept:] @ freed
                 matrix = (matrix + np.swapaxes(matrix, 1, 2)) / 2  # symmetric to the last digit, as the others
-                _thin_walls(matrix, xyz[part], prop.material)
+                if prop.material.directional is None:
+                    _thin_walls(matrix, xyz[part], prop.material)
             out[part] = matrix
         return out
 
@@ -94,11 +96,13 @@ class SolidFormulation:
         From the strains at the integration points; K itself, which would cost more, is not formed. Not for
         ``incompatible``, whose condensed modes are known by their stiffness only.
         """
-        first, second = materials.lame(prop.material)
         points, weights, _, gradient = _tables(self.kind, self.stiffness_order)
         shape = len(xyz), 3 * len(points), gradient.shape[1]
         slopes = np.swapaxes(self._slopes(xyz, gradient, points, weights), 0, 1).reshape(shape)
         slopes = (slopes @ moved.reshape(len(xyz), shape[2], -1)).reshape(len(xyz), 3, len(points), 3, -1)
+        if prop.material.directional is not None:
+            return _directional_energy(slopes, materials.voigt(materials.tensor(prop)))
+        first, second = materials.lame(prop.material)
         trace = slopes[:, 0, :, 0] + slopes[:, 1, :, 1] + slopes[:, 2, :, 2]
         energy = first / 2 * _squares(trace)
         for i in range(3):
@@ -168,6 +172,41 @@ def _mapped(reference: Array, inverse: Array) -> Array:
     for d in (1, 2):
         out += inverse[:, d, :, :, None] * reference[:, :, d]
     return out
+
+
+def _combination(prop: Property) -> Callable[[Array], Array]:
+    """From weighted gradients (3, b, q, m) to stiffness (b, 3m, 3m)."""
+    if prop.material.directional is not None:
+        return partial(_directional, elasticity=materials.tensor(prop))
+    first, second = materials.lame(prop.material)
+    return partial(_elastic, first=first, second=second)
+
+
+def _directional(slopes: Array, elasticity: Array) -> Array:
+    """(b, 3m, 3m) stiffness from weighted gradients (3, b, q, m) and the elasticity tensor."""
+    _, batch, _, modes = slopes.shape
+    out = np.zeros((batch, modes, 3, modes, 3))
+    turned = np.swapaxes(slopes, 2, 3)
+    for k in range(3):
+        for m in range(k + 1):
+            product = turned[k] @ slopes[m]
+            for i in range(3):
+                for j in range(3):
+                    out[:, :, i, :, j] += elasticity[i, k, j, m] * product
+                    if m < k:
+                        out[:, :, i, :, j] += elasticity[i, m, j, k] * np.swapaxes(product, 1, 2)
+    return out.reshape(batch, 3 * modes, 3 * modes)
+
+
+def _directional_energy(slopes: Array, moduli: Array) -> Array:
+    """(b, k) J from weighted displacement gradients (b, direction, q, displacement, k) and (6, 6) moduli."""
+    strains = [slopes[:, i, :, i] for i in range(3)]
+    strains += [slopes[:, i, :, j] + slopes[:, j, :, i] for i, j in ((0, 1), (1, 2), (2, 0))]
+    energy = np.zeros((len(slopes), slopes.shape[-1]))
+    for m, strain in enumerate(strains):
+        for n in range(m + 1):
+            energy += (0.5 if n == m else 1.0) * moduli[m, n] * np.einsum("bqk,bqk->bk", strain, strains[n])
+    return energy
 
 
 def _elastic(slopes: Array, first: float, second: float) -> Array:

@@ -20,7 +20,8 @@ DIRECTIONS = ("ux", "uy", "uz", "rx", "ry", "rz")
 class Directional:
     """Elastic constants along the axes 1 (grain, fibre), 2 and 3 of an orthotropic material; Pa.
 
-    ``nu12``: contraction along 2 under stress along 1, so that nu21 = nu12 e2 / e1.
+    ``nu12``: contraction along 2 under stress along 1, so that nu21 = nu12 e2 / e1. Sheets need nothing about axis 3
+    but its shear moduli; solids need e3, nu13 and nu23 as well.
     """
 
     e1: float
@@ -29,6 +30,9 @@ class Directional:
     g12: float
     g13: float
     g23: float
+    e3: float | None = None
+    nu13: float | None = None
+    nu23: float | None = None
 
 
 @dataclass(frozen=True)
@@ -83,10 +87,11 @@ class Assignment:
 
     target       a cell group, a cell kind ("quad4"), or "*" for all; later assignments win
     formulation  an element formulation by name; empty takes the default of the kind
-    section      of line cells; orientation (3,) points "up" in the section, any length
+    section      of line cells; orientation (3,) points "up" in the section, any length; in solids of directional
+                 material axis 3, as far as it is square to ``direction``
     offset       m from the nodes to the middle of the sheet along its normal, or to the axis of the beam upwards;
                  offset_across the same across the beam
-    direction    (3,) axis 1 of directional material, projected on the sheet
+    direction    (3,) axis 1 of directional material, in sheets projected on them
     plies        layers of a sheet from its lower side (against the normal) up, instead of material and thickness
     """
 
