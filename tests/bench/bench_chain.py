@@ -10,6 +10,7 @@ is read from Linux's /proc.
 from __future__ import annotations
 
 import multiprocessing
+import os
 import sys
 import tempfile
 import time
@@ -65,12 +66,12 @@ def held(word: str) -> float:
 def stage(name: str, size: float, work: Callable[[], Any]) -> tuple[Any, bool]:
     """Run one stage; its result, and whether it kept to the goal."""
     Path("/proc/self/clear_refs").write_text("5")  # forgets the peak so far
-    start = time.perf_counter()
+    start, before = time.perf_counter(), sum(os.times()[:4])
     result = work()
-    seconds, peak = time.perf_counter() - start, held("VmHWM")
+    seconds, busy, peak = time.perf_counter() - start, sum(os.times()[:4]) - before, held("VmHWM")
     good = peak - size <= GOAL
     print(
-        f"{name:9} {seconds:8.1f} s   peak {peak:5.2f} GB, {peak - size:5.2f} GB above the file, "
+        f"{name:9} {seconds:8.1f} s, busy {busy:7.1f} s   peak {peak:5.2f} GB, {peak - size:5.2f} above the file, "
         f"kept {held('VmRSS'):5.2f} GB   {'' if good else 'ABOVE THE GOAL'}",
         flush=True,
     )

@@ -8,6 +8,7 @@ import pytest
 import skfem
 
 from tests.mechanics.models import CLAMP
+from tests.mechanics.test_followers import joined, moved
 from tests.mechanics.test_solid_independent import PAIRS, assembled, rows_of, scikit_mesh
 from tests.meshes import box_mesh, distorted_cells, line_mesh
 from viewer.cells import KINDS
@@ -18,7 +19,18 @@ from viewer.mechanics.eigen import solve
 from viewer.mechanics.energy import energies
 from viewer.mechanics.formulations import formulation_for
 from viewer.mechanics.solid import SOLIDS
-from viewer.model.design import Assignment, Design, Directional, Material, Physics, Property, Section
+from viewer.model.design import (
+    Assignment,
+    Design,
+    Directional,
+    Material,
+    Physics,
+    Property,
+    Section,
+    Selector,
+    Support,
+    Tie,
+)
 
 # a softwood's order of magnitude (from memory): stiff along the grain, three different planes
 CONSTANTS = Directional(11e9, 0.9e9, 0.37, 0.7e9, 0.75e9, 0.04e9, e3=0.5e9, nu13=0.42, nu23=0.47)
@@ -125,7 +137,7 @@ def bar(prop):
 
 
 def test_slender_bars_bend_by_the_modulus_along_them():
-    """Clamped and free at the end, l/h = 17: ω = 1.8751² √(E I / (m l⁴)) with the modulus along the bar (Blevins R.D.,
+    """Clamped and free at the end, l/h = 17: ω = 1.8751² √(E I / (m l⁴)) with the modulus along the bar (Blevins,
     Formulas for Natural Frequency and Mode Shape, 1979, table 8-1), lowered by shear and rotary inertia in first
     order: 1 − 3.3 (r/l)² (E/κG + 1), r² = h²/12; the 3.3 from memory."""
     for direction, orientation, modulus, shears in (
@@ -138,6 +150,24 @@ def test_slender_bars_bend_by_the_modulus_along_them():
         wanted = sorted(plain * (1 - 3.3 * 0.0003 * (6 / 5 * modulus / g + 1)) for g in shears)
         np.testing.assert_allclose(found, wanted, rtol=0.02)
         assert energies(model, solve(model, 2)).trusted.all()
+
+
+def test_unlike_meshes_tied_are_one_body():
+    """Grain aslant to the seam, 10-node tetrahedra on hexahedra of 20 nodes, against hexahedra throughout: the bound
+    is that of isotropic halves (``test_followers``)."""
+    whole = box_mesh("hex20", (10, 2, 2), (1.0, 0.2, 0.1))
+    lower = box_mesh("hex20", (10, 2, 1), (1.0, 0.2, 0.05))
+    upper = moved(box_mesh("tet10", (8, 3, 1), (1.0, 0.2, 0.05)), [0, 0, 0.05])
+    given = (Assignment("*", "wood", direction=(1.0, 0.5, 0.7), orientation=(0.3, 0.1, 1.0)),)
+    found = []
+    for mesh, ties in (
+        (whole, ()),
+        (joined(upper, lower), (Tie("seam", Selector(group="0z0"), Selector(group="1")),)),
+    ):
+        roots = Selector(nodes=mesh.node_ids[np.isclose(mesh.points[:, 0], 0)])
+        physics = Physics({"wood": WOOD}, given, supports=(Support("root", roots),), ties=ties)
+        found.append(solve(Design("plank", mesh, physics), 4).freq_hz)
+    np.testing.assert_allclose(found[1], found[0], rtol=0.015)
 
 
 SHEET_ONLY = Material("ply", 140e9, 0.3, 1600.0, Directional(140e9, 10e9, 0.3, 5e9, 5e9, 3.5e9))
