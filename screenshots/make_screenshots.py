@@ -5,9 +5,12 @@ from __future__ import annotations
 from pathlib import Path
 
 from viewer.export import save_gif, save_png, save_strip
+from viewer.insight.strut import strut_trial
 from viewer.scene.compose import pair_picture, single_picture
+from viewer.scene.gain_picture import gain_picture
 from viewer.scene.section import Plane
 from viewer.scene.showing import Showing
+from viewer.scene.strut_picture import strut_picture
 from viewer.workspace import OpenDossier, Study, Workspace
 
 HERE = Path(__file__).parent
@@ -28,8 +31,20 @@ def main() -> None:
             write(save_png, pair, f"{layout}_{theme}.png")
         write(save_png, single_picture(baseline, 2, theme=theme, energy=False), f"ghost_{theme}.png")
     write(save_gif, single_picture(baseline, 1, width=640), "boom_mode_1.gif")
+    folding = next(number for number in range(1, baseline.count + 1) if baseline.hinges(number - 1).hinges)
+    hinges = baseline.hinges(folding - 1)
+    for theme in ("light", "dark"):
+        write(
+            save_png, single_picture(baseline, folding, finding=hinges, chosen=1, theme=theme), f"hinge_{theme}.png"
+        )
+        write(save_png, gain_picture(baseline, 1, baseline.gain(0), theme=theme), f"gain_{theme}.png")
+    flap = single_picture(baseline, 4, finding=baseline.hinges(3), width=640)
+    write(save_png, flap.with_(width=960, height=720), "flap_light.png")
+    write(save_gif, flap, "boom_mode_4.gif")
     fork = workspace.open(SAMPLES / "fork")
     write(save_png, single_picture(only(fork), 3), "fork_light.png")
+    spread = strut_trial(only(fork).design, only(fork).modes, 3)
+    write(save_png, strut_picture(only(fork), 3, spread), "strut_light.png")
     write(save_png, single_picture(only(fork), 6, node_lines=True, energy=False), "node_lines_light.png")
     cut = Showing(plane=Plane((0.0, 0.0, 1.0), 0.0))
     write(save_png, single_picture(only(fork), 3, showing=cut), "cut_light.png")

@@ -74,6 +74,13 @@ def test_a_short_hinge_has_a_slimmer_pin():
     assert 0.5 * 0.0042 * 4 < pin_radius(mark, 4.0) < 0.0042 * 4
 
 
+def test_the_pin_of_a_narrow_band_leaves_its_glow_in_sight():
+    for width, rod in ((0.1, 1.0), (0.005, 0.0015 / 0.0021), (0.001, 0.4)):
+        _, pin = pins(shown(width=width), 0.5)
+        _, radius = from_line(pin.points, np.array([FOLD_AT, 0, -0.03]), np.array([0.0, 1.0, 0.0]))
+        assert sorted(set(np.round(radius / 0.0021, 6))) == pytest.approx([0.0, rod, 2.5], abs=1e-6)
+
+
 @pytest.mark.parametrize("phase", [0.0, 0.7, np.pi])
 def test_a_straight_pin_moves_with_its_axis_and_stays_straight(phase):
     turn = np.array([0.3, 0.0, -0.2])  # small rotation about its start
@@ -135,8 +142,8 @@ def test_the_fan_opens_from_the_arm_at_rest_to_the_arm_as_drawn(factor):
 
 
 def test_the_fan_is_as_long_as_the_folding_side_when_that_is_short():
-    (fan,) = fans(shown(reach=0.07), MESH.diagonal, EYE)
-    assert np.linalg.norm(fan.points[1] - fan.points[0]) == pytest.approx(0.07)
+    (fan,) = fans(shown(reach=0.08), MESH.diagonal, EYE)
+    assert np.linalg.norm(fan.points[1] - fan.points[0]) == pytest.approx(0.08)
 
 
 def test_a_fold_too_small_to_see_has_no_fan():

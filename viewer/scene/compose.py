@@ -17,7 +17,7 @@ from viewer.mechanics.energy import RELATIVE
 from viewer.model.arrays import Array
 from viewer.model.design import LumpedMass
 from viewer.scene.figures import digits
-from viewer.scene.finding_marks import flap_marks, hinge_marks
+from viewer.scene.finding_marks import flap_marks, hinge_marks, verdict_words
 from viewer.scene.node_lines import lines_of
 from viewer.scene.node_lines import words as lines_words
 from viewer.scene.note_layout import note_height, scale_note
@@ -75,6 +75,8 @@ def single_picture(
         [study.condition, *_energy_remarks(study, index, energy and not given_energy)],
     )
     shown, said = _shown([body], showing, node_lines, look)
+    if finding is not None and not finding.hinges:
+        said = (*said, verdict_words(finding))
     return Picture(
         bodies=shown,
         note=replace(note, drawing=(*note.drawing, *said)),

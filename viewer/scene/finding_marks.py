@@ -40,6 +40,7 @@ def hinge_marks(
                 turned(hinge.fold, turn),
                 hinge.arm,
                 _reach(mesh, hinge.sides[1], hinge.position, hinge.arm),
+                hinge.width,
                 hinge.cells,
                 number == chosen,
                 sure,
@@ -54,6 +55,17 @@ def flap_marks(finding: HingeFinding, *, brief: bool = False) -> tuple[FlapMark,
         (flap, () if brief else (f"{_percent(flap.kinetic_share)} of the kinetic energy",)) for flap in finding.flaps
     )
     return tuple(FlapMark(f"flap {flap.number}", lines, flap.cells) for flap, lines in said)
+
+
+def verdict_words(finding: HingeFinding) -> str:
+    """What the note says when there is no hinge to mark: that, too, is an answer."""
+    if finding.hinges:
+        return ""
+    return {
+        "bending is spread": "no hinge line: bending is spread",
+        "rigid-body mode": "rigid-body mode: nothing folds",
+        "does not bend": "no strain energy in the elements: nothing folds",
+    }.get(finding.verdict, "may fold, but no line is certain enough to mark")
 
 
 def turned(values: Array, turn: complex) -> Array:

@@ -18,12 +18,14 @@ HEAD_LENGTH = 1.1
 LEAST_RADIUS = 0.62  # of the full one: joints, unsure hinges, short hinges, which a full pin would hide …
 SLIM = 0.032  # … namely those whose axis is shorter than a full radius over this
 CASING = 0.7  # the casing stands so far out, in radii: 1.7 radii in all
+ROD = 0.3  # most radius of the rod between the heads, of the band's width, so that the band's glow is seen …
+LEAST_ROD = 0.4  # … but never thinner than this, of a full radius
 OVERHANG = 0.15  # of the axis, at each end …
 MOST_OVERHANG = 0.045  # … and of the diagonal
 BALL = 2.7  # radius of a joint's ball, in radii of a full pin
 JOINT_PIN = 0.04  # half length of the pin through a joint, of the diagonal
 FAN = 0.19  # length of the fan, of the diagonal, where the folding side reaches so far
-LEAST_FAN = 0.06
+LEAST_FAN = 0.085
 LEAST_ANGLE = np.radians(1.5)  # as drawn, below which a fan would be a mere line
 FAN_LINE = 1.4
 _STEPS = 12  # of the fan
@@ -36,8 +38,9 @@ def pins(body: Body, diagonal: float) -> list[Piece]:
     for mark in body.hinges:
         path, move = _spindle(mark, body.factor, diagonal)
         radius = pin_radius(mark, diagonal)
-        for grown in (CASING * radius, 0.0):
-            found.append(_pin(mark, path, move, radius, grown))
+        rod = min(radius, max(ROD * mark.width, LEAST_ROD * PIN_RADIUS * diagonal))
+        for grown in (CASING * rod, 0.0):
+            found.append(_pin(mark, path, move, radius, rod, grown))
             if len(mark.axis) == 1:
                 found.append(_ball(mark, body.factor, BALL * PIN_RADIUS * diagonal, grown))
     return found
@@ -116,10 +119,10 @@ def _joint_axis(mark: HingeMark) -> Array:
     return real / long if long > 0 else axes(np.asarray(mark.arm, float))[1]
 
 
-def _pin(mark: HingeMark, path: Array, move: Array, radius: float, grown: float) -> Piece:
-    """The tube with its two flat heads, ``grown`` m larger all around for the casing."""
+def _pin(mark: HingeMark, path: Array, move: Array, radius: float, rod: float, grown: float) -> Piece:
+    """The rod with its two flat heads, ``grown`` m larger all around for the casing."""
     lengths = np.concatenate([[0.0], np.cumsum(np.linalg.norm(np.diff(path, axis=0), axis=1))])
-    long, thin, wide = float(lengths[-1]), radius + grown, HEAD * radius + grown
+    long, thin, wide = float(lengths[-1]), rod + grown, HEAD * radius + grown
     head = min(HEAD_LENGTH * radius, 0.3 * long) + grown
     first = [(-grown, 0.0), (-grown, wide), (head, wide), (head, thin)]
     profile = first + [(long - place, size) for place, size in reversed(first)]

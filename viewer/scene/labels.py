@@ -178,12 +178,16 @@ def _found_labels(body: Body, index: int, frame: Frame, diagonal: float, tokens:
 
 
 def marked_lines(picture: Picture, frame: Frame) -> list[Line]:
-    """Lines on the sheet that labels and leaders should not run over: pins and struts at rest."""
+    """Lines on the sheet that labels and leaders should not run over: pins, struts and arrows at rest."""
     diagonal = max(b.mesh.diagonal for b in picture.bodies)
     found = []
     for index, body in enumerate(picture.bodies):
         paths = [hinge_marks.middle_line(mark, diagonal) for mark in body.hinges]
-        for path in (*paths, *(mark.ends for mark in body.struts)):
+        paths += [mark.ends for mark in body.struts]
+        for point in body.points:
+            tip = diagonal * marks.ARROW * np.asarray(point.direction) / np.linalg.norm(point.direction)
+            paths += [point.position + sign * np.array([[0.5], [1.0]]) * tip for sign in (-1, 1)]
+        for path in paths:
             at = frame.project(path, index)
             found += [Line(((a[0], a[1]), (b[0], b[1])), "#000000") for a, b in pairwise(at.tolist())]
     return found

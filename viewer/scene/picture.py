@@ -68,6 +68,7 @@ class HingeMark:
     motion  (k, 3) of these points in units of the shape
     fold    (3,) rad per unit of the shape: rotation of the folding side relative to the other
     arm     (3,) unit, from the axis into the folding side; ``reach`` m, how far that side goes
+    width   m, of the band across the axis: the pin leaves its glow in sight
     cells   cell rows of the band: the mark goes where none of them is shown
     chosen  set off from other hinges; sure: False for a weak or undecided one, whose pin is slim and soft
     """
@@ -79,6 +80,7 @@ class HingeMark:
     fold: Array
     arm: Array
     reach: float
+    width: float
     cells: Array
     chosen: bool = False
     sure: bool = True
