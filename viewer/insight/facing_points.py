@@ -142,12 +142,18 @@ class _Surface:
         self.edges = skin.edges[usable[skin.edges].all(axis=1)]
         sides = skin.outline if len(skin.outline) else skin.edges
         self.side = float(np.median(np.linalg.norm(np.diff(points[sides], axis=1), axis=2))) if len(sides) else 0.0
-        reach = np.linalg.norm(corners - self.middles[:, None], axis=2)
-        self.reach = float(reach.max(initial=0.0)) * (1 + 1e-9)
         self.tree = cKDTree(self.middles) if len(self.faces) else None
+        # Triangles of one size in one tree: how many lie near a point is bounded then, whatever the mesh's grading.
+        reach = np.linalg.norm(corners - self.middles[:, None], axis=2).max(axis=1) * (1 + 1e-9)
+        size = np.floor(np.log2(np.maximum(reach, 1e-300)) / 2)
+        self.sizes = [
+            (cKDTree(self.middles[rows]), rows, float(reach[rows].max()))
+            for rows in (np.nonzero(size == value)[0] for value in np.unique(size))
+        ]
 
     def radius(self) -> float:
-        return max(RADIUS * self.mesh.diagonal, ELEMENTS * self.side)
+        share = RADIUS * self.mesh.diagonal
+        return max(share, ELEMENTS * self.side) if len(self.faces) else share  # a node of a beam is no bare point
 
     def footprints(self, count: int, radius: float, progress: Progress) -> list[Footprint]:
         """Half of ``count`` spread over the surface, the rest where their normals meet another surface."""
@@ -237,24 +243,21 @@ class _Surface:
         Triangles near points along the lines are tried (Möller T., Trumbore B., Fast, minimum storage ray–triangle
         intersection, J. Graphics Tools 2 (1997) 21).
         """
-        none = np.empty(0, np.int64)
-        if self.tree is None or not len(start):
-            return none, none, np.empty(0)
         way = end - start
-        steps = np.ceil(np.linalg.norm(way, axis=1) / (2 * self.reach)).astype(int) + 1
-        line = np.repeat(np.arange(len(start)), steps)
-        step = np.arange(len(line)) - np.repeat(np.cumsum(steps) - steps, steps)
-        share = (step + 0.5) / steps[line]
-        found: list[tuple[Array, Array, Array]] = []
-        for at in range(0, len(line), _SAMPLES):
-            progress.tick("clear lines", at, len(line))
-            part = slice(at, at + _SAMPLES)
-            near = self.tree.query_ball_point(start[line[part]] + share[part, None] * way[line[part]], 2 * self.reach)
-            sizes = np.fromiter(map(len, near), np.int64, len(near))
-            triangle = np.concatenate([np.asarray(n, np.int64) for n in near]) if len(near) else none
-            which = np.repeat(line[part], sizes)
-            key = np.unique(which * len(self.faces) + triangle)
-            found.append(self._met_by(key // len(self.faces), key % len(self.faces), start, way))
+        found = [(np.empty(0, np.int64), np.empty(0, np.int64), np.empty(0))]
+        for tree, rows, reach in self.sizes:
+            steps = np.ceil(np.linalg.norm(way, axis=1) / (2 * reach)).astype(int) + 1
+            line = np.repeat(np.arange(len(start)), steps)
+            step = np.arange(len(line)) - np.repeat(np.cumsum(steps) - steps, steps)
+            share = (step + 0.5) / steps[line]
+            for at in range(0, len(line), _SAMPLES):
+                progress.tick("clear lines", at, len(line))
+                which = line[at : at + _SAMPLES]
+                near = tree.query_ball_point(start[which] + share[at : at + _SAMPLES, None] * way[which], 2 * reach)
+                triangle = rows[np.concatenate([np.asarray(each, np.int64) for each in near])]
+                which = np.repeat(which, [len(each) for each in near])
+                key = np.unique(which * len(self.faces) + triangle)
+                found.append(self._met_by(key // len(self.faces), key % len(self.faces), start, way))
         lines, triangles, along = (np.concatenate(part) for part in zip(*found, strict=True))
         return lines, triangles, along
 

@@ -241,8 +241,8 @@ class _Field:
             with np.errstate(divide="ignore"):
                 softened = 1 / (1 / stiffness[rows] + residual)
             order = rows[self._order(raised(self.known.poles, self.stretch[rows], softened), index)]
-        chosen = [*order[: _FINALISTS * top].tolist(), *self._distinct(order, _FINALISTS * top)]
-        return np.array(list(dict.fromkeys(chosen))), 0 if truncation is None else len(rows)
+        best = [*order[: _FINALISTS * top].tolist(), *self._distinct(order, _FINALISTS * top)]
+        return np.array(list(dict.fromkeys(best))), 0 if truncation is None else len(rows)
 
     def _distinct(self, order: Array, count: int) -> list[int]:
         """The first ``count`` of the pairs ``order`` without those that lie near an earlier one at both ends."""

@@ -103,7 +103,7 @@ class Pardiso:
 
     def __del__(self) -> None:
         # At the interpreter's end the library's names may be gone, and so is then the memory it held.
-        with contextlib.suppress(TypeError, AttributeError):
+        with contextlib.suppress(TypeError, AttributeError, ImportError):
             if self._pointers.any():
                 self._call(-1, np.zeros((self._size, 1), order="F"), check=False)
 
