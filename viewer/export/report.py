@@ -16,7 +16,7 @@ from pathlib import Path
 from typing import Any
 
 from viewer import __version__
-from viewer.errors import ExportError
+from viewer.errors import ExportError, ModelError, RefusedError
 from viewer.export.checkup import mesh_words
 from viewer.export.file_names import slugs
 from viewer.export.finding_rows import flap_rows, hinge_rows
@@ -26,12 +26,16 @@ from viewer.export.index_page import PageLoop, PageSection, PageTable, write_ind
 from viewer.export.rows import Row, group_rows, mode_caption, mode_rows, pair_caption, pair_row, point_rows, short
 from viewer.export.stills import save_png
 from viewer.export.strip import save_strip
+from viewer.export.strut_rows import strut_rows
 from viewer.export.tables import write_table
+from viewer.insight.strut_finding import StrutTrial
 from viewer.jobs import SILENT, Progress, write_text
 from viewer.model.plain import plain
 from viewer.scene.compose import pair_picture, single_picture
+from viewer.scene.strut_picture import strut_picture
 from viewer.workspace import OpenDossier, Study
 from viewer.workspace.explanation import Explanation
+from viewer.workspace.trials import try_struts
 
 SUMMARY = "summary.json"
 
@@ -62,11 +66,11 @@ def write_review(
     _check_place(Path(folder))
     studies = [opened.study(name, count, progress) for name in opened.names]
     pairs = _pairs(opened, studies)
-    steps = _Steps(progress, sum(s.count for s in studies) + len(pairs))
+    steps = _Steps(progress, sum(s.count + 1 for s in studies) + len(pairs))
     with _aside(Path(folder)) as part:
         desk = _Desk(part, theme, width, steps, slugs(opened.names))
         comparison = _compare(desk, pairs) if pairs else None
-        sections = ([comparison] if comparison else []) + [_explain(desk, study) for study in studies]
+        sections = ([comparison] if comparison else []) + [_explain(desk, opened, study) for study in studies]
         doubts = [words for s in studies for words in (*opened.doubts(s.design.name), *s.cautions)]
         doubts += [f"{name}: {words}" for name, told in desk.findings.items() for t in told for words in t.cautions]
         cautions = tuple(dict.fromkeys((*opened.warnings, *doubts)))
@@ -102,6 +106,7 @@ class _Desk:
     printed: list[tuple[str, list[Row]]] = field(default_factory=list)
     tables: dict[str, list[Row]] = field(default_factory=dict)
     findings: dict[str, list[Explanation]] = field(default_factory=dict)
+    struts: dict[str, StrutTrial] = field(default_factory=dict)
 
     @property
     def look(self) -> dict[str, Any]:
@@ -119,7 +124,7 @@ class _Desk:
         return (PageTable(title, short(rows), f"{stem}.csv", f"{stem}.json"),)
 
 
-def _explain(desk: _Desk, study: Study) -> PageSection:
+def _explain(desk: _Desk, opened: OpenDossier, study: Study) -> PageSection:
     """Loops, stills, strips and tables of one design."""
     name = study.design.name
     slug = desk.slugs[name]
@@ -130,6 +135,7 @@ def _explain(desk: _Desk, study: Study) -> PageSection:
         told.append(study.explain(index, progress))
         loops.append(_explain_mode(desk, study, index, row, told[-1], progress))
     desk.findings[name] = told
+    trial, pictured = _try_struts(desk, opened, study, told)
     folds = [explained.hinges.to_dict() for explained in told if explained.hinges is not None]
     tables = (
         *desk.table(f"{slug}_modes", f"Modes of {name}", rows, show=True),
@@ -142,10 +148,36 @@ def _explain(desk: _Desk, study: Study) -> PageSection:
         *desk.table(f"{slug}_points", f"Motion of the functional points of {name}", point_rows(study), show=True),
         *desk.table(f"{slug}_groups", f"Energy by group of {name}", group_rows(study)),
     )
+    if trial is not None:
+        desk.struts[name] = trial
+        rows = strut_rows(name, trial.to_dict())
+        tables += desk.table(
+            f"{slug}_struts", f"Struts that would raise mode {trial.mode} of {name}", rows, show=True
+        )
     text = [mesh_words(study.design.mesh)]
     if study.design.note:
         text.append(study.design.note)
-    return PageSection(name, tuple(text), tuple(loops), tables)
+    return PageSection(name, tuple(text), (*loops, *pictured), tables)
+
+
+def _try_struts(
+    desk: _Desk, opened: OpenDossier, study: Study, told: list[Explanation]
+) -> tuple[StrutTrial | None, tuple[PageLoop, ...]]:
+    """A strut trial on the lowest mode in which facing surfaces move apart, else on the lowest elastic one, with a
+    picture of the best strut; nothing where struts cannot be told."""
+    name = study.design.name
+    spreading = [t.number for t in told if t.character is not None and t.character.spreads]
+    progress = desk.steps.next(f"trying struts on {name}")
+    try:
+        trial = try_struts(opened, name, spreading[0] if spreading else None, progress=progress)
+        picture = strut_picture(study, trial.mode, trial, **desk.look)
+    except (RefusedError, ModelError):
+        return None, ()
+    still = f"{desk.slugs[name]}_mode_{trial.mode:02d}_strut.png"
+    save_png(picture, desk.folder / still, progress=progress)
+    title = f"A strut that would raise mode {trial.mode}"
+    loop = PageLoop(title, still=still, sentences=(trial.sentence,), alt=f"{name}, {title}: {trial.sentence}")
+    return trial, (loop,)
 
 
 def _explain_mode(desk: _Desk, study: Study, index: int, row: Row, told: Explanation, progress: Progress) -> PageLoop:
@@ -249,6 +281,7 @@ def _summary(opened: OpenDossier, studies: list[Study], desk: _Desk, cautions: t
                 "points": desk.tables.get(f"{desk.slugs[s.design.name]}_points", []),
                 "groups": desk.tables.get(f"{desk.slugs[s.design.name]}_groups", []),
                 "findings": [explained.to_dict() for explained in desk.findings[s.design.name]],
+                "struts": _told(desk.struts.get(s.design.name)),
                 "drawing": [s.scale(i).to_dict() for i in range(s.count)],
             }
             for s in studies
@@ -257,6 +290,10 @@ def _summary(opened: OpenDossier, studies: list[Study], desk: _Desk, cautions: t
         "cautions": list(cautions),
         "files": sorted({SUMMARY, *(path.name for path in desk.folder.iterdir())}),
     }
+
+
+def _told(trial: StrutTrial | None) -> dict[str, Any] | None:
+    return None if trial is None else {**trial.to_dict(), "sentence": trial.sentence}
 
 
 def _check_place(folder: Path) -> None:

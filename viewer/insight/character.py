@@ -21,7 +21,7 @@ from viewer.insight.character_parts import (
     point_motions,
     sheet_motion,
 )
-from viewer.insight.character_words import sentence_of, suggestion
+from viewer.insight.character_words import MOST, MOVES, sentence_of, suggestion
 from viewer.insight.effective_mass import EffectiveMasses
 from viewer.insight.facing import FacingPair, FacingSurfaces, facing_surfaces
 from viewer.insight.moving_mass import masses_of, moving_mass, weighed_points
@@ -74,6 +74,11 @@ class Character:
     def with_name(self, name: str) -> Character:
         """The same under the user's name."""
         return replace(self, name=name)
+
+    @property
+    def spreads(self) -> bool:
+        """Whether two facing surfaces move apart and together: what a strut between them can hold."""
+        return any(pair.motion >= MOVES and pair.opens >= MOST for pair in self.facing)
 
     @property
     def suggested_name(self) -> str | None:

@@ -16,9 +16,9 @@ Facts = Mapping[str, Any]
 WHOLE = "the whole part"
 
 _RIGID = 0.9995  # rigid content from which nothing bends to speak of
-_MOST = 0.5  # a share that decides
+MOST = 0.5  # a share that decides
 _SECOND = 0.35  # of the leading share, from which the second is named too
-_MOVES = 0.3  # motion of facing surfaces ÷ largest, from which they are what the mode is about
+MOVES = 0.3  # motion of facing surfaces ÷ largest, from which they are what the mode is about
 _LOCAL_ENERGY, _LOCAL_MASS = 0.5, 0.25  # a part that holds so much kinetic energy with so little mass is on its own
 _SHOWN = 0.1  # a share of the sections' motion that is told
 _HEAVY = 0.25  # kinetic share of a lumped mass that is said
@@ -56,7 +56,7 @@ def sentence_of(facts: Facts) -> str:
         return f"{head}: what it does cannot be said in figures: {'; '.join(facts['cautions']) or 'nothing moves'}."
     parts = [reading.clause] if reading is not None else []
     along = "" if reading is None or reading.tells_direction else _direction(facts)
-    parts += [words for words in (along, *_lumped(facts), _driven(facts)) if words]
+    parts += [words for words in (along, _together(facts), *_lumped(facts), _driven(facts)) if words]
     parts += [_point(point) for point in facts["points"]]
     if facts["assumed"]:
         parts.append(f"shares assume {facts['assumed']}")
@@ -101,10 +101,10 @@ def _own_part(facts: Facts) -> _Reading | None:
 def _arms(facts: Facts) -> _Reading | None:
     """Two arms with empty space between them."""
     for pair in facts["facing"]:
-        if not pair["arms"] or pair["motion_to_largest"] < _MOVES:
+        if not pair["arms"] or pair["motion_to_largest"] < MOVES:
             continue
         who = _both(pair)
-        if pair["opens_share"] >= _MOST:
+        if pair["opens_share"] >= MOST:
             figure = f"{pair['opens_share']:.0%} of their motion opens and closes the gap{_between(pair)}"
             what = (
                 "spread apart and close"
@@ -112,11 +112,11 @@ def _arms(facts: Facts) -> _Reading | None:
                 else "spread in one place and close in another"
             )
             return _Reading(f"{who} {what} ({figure})", f"{_short(pair)} spread", figure)
-        if pair["slides_share"] >= _MOST:
+        if pair["slides_share"] >= MOST:
             way = _way(pair["slide_direction"])
             figure = f"{pair['slides_share']:.0%} of their motion slides one past the other"
             sections = facts["long_axis"]
-            still = _still(sections) if sections is not None and sections["twisting_share"] >= _MOST else ""
+            still = _still(sections) if sections is not None and sections["twisting_share"] >= MOST else ""
             figure += f", standing still {still.replace('its', 'the')}" if still else ""
             return _Reading(
                 f"{who} move opposite ways, {way} ({figure})", f"{_short(pair)} move in turn, {way}", figure
@@ -127,7 +127,7 @@ def _arms(facts: Facts) -> _Reading | None:
 def _walls(facts: Facts) -> _Reading | None:
     """Facing walls that bulge."""
     for pair in facts["facing"]:
-        if pair["arms"] or pair["motion_to_largest"] < _MOVES or pair["opens_share"] < _MOST:
+        if pair["arms"] or pair["motion_to_largest"] < MOVES or pair["opens_share"] < MOST:
             continue
         who = _both(pair)
         figure = f"{pair['opens_share']:.0%} of their motion opens and closes the space{_between(pair)}"
@@ -177,12 +177,12 @@ def _still(sections: Facts) -> str:
 
 def _sheet(facts: Facts) -> _Reading | None:
     share = facts["out_of_plane_share"]
-    if share is None or not (share >= _MOST or facts["flat_sheet"]):
+    if share is None or not (share >= MOST or facts["flat_sheet"]):
         return None
     figure = f"{share:.0%} of the motion is square to the sheet"
     if not facts["flat_sheet"]:
         return _Reading(f"its sheets bend ({figure})", "sheets bend", figure)
-    if share >= _MOST:
+    if share >= MOST:
         fields = facts["fields"]
         how = f", in {fields} fields that lift in turn" if fields > 1 else ""
         name = f"sheet bends in {fields} fields" if fields > 1 else "sheet bends"
@@ -194,12 +194,12 @@ def _mainly(facts: Facts) -> _Reading | None:
     shares = facts["kinetic_share"]
     if shares is None:
         return None
-    if shares["turning"] >= _MOST:
+    if shares["turning"] >= MOST:
         figure = f"{shares['turning']:.0%} of the kinetic energy is turning on the spot"
         return _Reading(f"{WHOLE} turns more than it moves ({figure})", "whole part turns on the spot", figure, True)
     first, second = sorted("xyz", key=lambda name: -shares[name])[:2]
     figure = f"{shares[first]:.0%} of the kinetic energy {_AXES[first]}"
-    if shares[first] >= _MOST:
+    if shares[first] >= MOST:
         words, name = f"mostly {_AXES[first]}", _AXES[first]
     else:
         words = name = "in several directions"
@@ -214,6 +214,14 @@ def _direction(facts: Facts) -> str:
     axis = max("xyz", key=lambda name: shares[name])
     verb = "goes" if axis == "z" else "moves"
     return f"{shares[axis]:.0%} of the kinetic energy {verb} {_AXES[axis]}"
+
+
+def _together(facts: Facts) -> str:
+    """Said of arms, which might have moved otherwise; walls joined to one another mostly move together."""
+    for pair in facts["facing"]:
+        if pair["arms"] and pair["together_share"] >= _STRAIGHT and pair["motion_to_largest"] >= MOVES:
+            return f"{_both(pair)} move together ({pair['together_share']:.0%} of their motion)"
+    return ""
 
 
 def _lumped(facts: Facts) -> list[str]:
