@@ -1,7 +1,7 @@
 """Score the search for hinge lines: ``python -m tests.collection.score --families tuning|held|unseen|scored|all``.
 
 Prints totals and the rows that went wrong; ``--write`` puts all rows into table.csv and the totals into totals.csv.
-``--noise`` adds the run with noisy shapes, ``--invariance`` that with other meshes of the same parts.
+``--fine`` adds the doubled density, ``--noise`` the run with noisy shapes, ``--invariance`` that with other meshes of the same parts.
 """
 
 from __future__ import annotations
@@ -20,6 +20,7 @@ import numpy as np
 
 from tests.collection.parts import SEED, VERSION, Part
 from tests.collection.scoring import Row, score
+from tests.collection.sheets import build
 from tests.collection.solved import Solved, solved
 from viewer.jobs import write_text
 
@@ -27,6 +28,7 @@ FAMILIES = {"tuning": "tuning", "held": "held_out", "unseen": "unseen"}
 HERE = Path(__file__).parent
 TABLE = HERE / "table.csv"
 TOTALS = HERE / "totals.csv"
+LARGEST = {"quad4": 6_500, "tri3": 7_500, "quad8": 3_500, "hex8": 4_000, "hex20": 2_800, "tet10": 6_000}  # cells
 DIRECTION_DEG, POSITION, SHARE_OFF = 3.0, 0.01, 0.15  # what a strong hinge must keep to
 
 
@@ -128,9 +130,12 @@ def read_table(path: Path = TABLE) -> tuple[str, list[dict[str, str]]]:
 
 
 def run(parts: Iterable[Part], say: Callable[[str], None], density: int = 1) -> list[Row]:
-    """All parts scored; ``say`` hears what went wrong."""
+    """All parts scored, those of more cells than ``LARGEST`` at the coarse density only; ``say`` hears what went
+    wrong."""
     rows: list[Row] = []
     for part in parts:
+        if density > 1 and build(part.name, part.sheet, part.kind, density).mesh.n_cells > LARGEST[part.kind]:
+            continue
         ready: Solved = solved(part, density)
         start = time.perf_counter()
         fresh = score(ready)
@@ -154,7 +159,7 @@ def main(arguments: Sequence[str] | None = None) -> int:
     parser = argparse.ArgumentParser(prog="python -m tests.collection.score", description=__doc__)
     parser.add_argument("--families", choices=[*FAMILIES, "scored", "all"], default="tuning")
     parser.add_argument("--part", default="", help="only parts whose names contain this")
-    parser.add_argument("--fine", action="store_true", help="twice the density")
+    parser.add_argument("--fine", action="store_true", help="score the doubled density as well")
     parser.add_argument("--noise", action="store_true")
     parser.add_argument("--invariance", action="store_true")
     parser.add_argument("--write", action="store_true", help="write table.csv and totals.csv (with --families all)")
@@ -162,13 +167,19 @@ def main(arguments: Sequence[str] | None = None) -> int:
     say = lambda line: print(line, flush=True)  # noqa: E731, T201
     chosen = {"scored": ["held", "unseen"], "all": list(FAMILIES)}.get(given.families, [given.families])
     parts = {name: [p for p in parts_of(name) if given.part in p.name] for name in chosen}
-    rows = {name: run(parts[name], say, 1 + given.fine) for name in chosen}
+    rows = {name: run(parts[name], say) for name in chosen}
     results = {name: totals(rows[name]) for name in chosen}
     if "held" in rows and "unseen" in rows:
         results["scored half"] = totals(rows["held"] + rows["unseen"])
     if len(chosen) == len(FAMILIES):
         results["all"] = totals([r for group in rows.values() for r in group])
     everything = [p for name in chosen for p in parts[name]]
+    if given.fine:
+        rows["fine"] = run(everything, say, 2)
+        results["fine: all" if len(chosen) == len(FAMILIES) else "fine"] = totals(rows["fine"])
+        if "held" in chosen and "unseen" in chosen:
+            half = {p.name for name in ("held", "unseen") for p in parts[name]}
+            results["fine: scored half"] = totals([r for r in rows["fine"] if r.part in half])
     if given.noise:
         results["noise"] = import_module("tests.collection.noise").run(everything, say)
     if given.invariance:
