@@ -14,7 +14,7 @@ from tests.mechanics.models import CLAMP, STEEL, design
 from tests.meshes import box_mesh, line_mesh, plate_mesh
 from tests.sentences import unfounded
 from viewer.errors import InputError, RefusedError
-from viewer.insight.gain import gain_map
+from viewer.insight.gain import gain_map, gain_maps
 from viewer.insight.places import cell_centres
 from viewer.mechanics.assembly import assemble, lay_out
 from viewer.mechanics.eigen import solve
@@ -321,6 +321,19 @@ def test_a_pair_has_no_basis_of_its_own(turn):
     assert one.stiffness_total == pytest.approx(1)
     assert "Modes 2 and 3" in one.sentence
     assert not unfounded(one.sentence, one.to_dict())
+
+
+def test_all_maps_at_once_are_those_one_by_one():
+    model = clamped()
+    modes = solve(model, 6)
+    together = gain_maps(model, modes)
+    assert [found.mode for found in together] == [1, 2, 3, 4, 5, 6]
+    assert together[1].modes == together[2].modes == (2, 3)
+    for found in together:
+        alone = gain_map(model, modes, found.mode)
+        np.testing.assert_allclose(found.per_kg, alone.per_kg, rtol=1e-9, atol=1e-9 * np.abs(alone.per_kg).max())
+        assert found.sentence == alone.sentence
+    assert gain_maps(model, modes, []) == []
 
 
 def test_the_same_shape_twice_is_one_mode():

@@ -23,6 +23,7 @@ for a change of that cell, group or place alone, which do not add up.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -36,6 +37,7 @@ from viewer.mechanics.energy import RELATIVE, Energies, shape_vectors
 from viewer.mechanics.energy import energies as form_energies
 from viewer.mechanics.given_matrices import NO_CELLS
 from viewer.mechanics.growth import (
+    Forms,
     attached_forms,
     cell_forms,
     cell_masses,
@@ -49,7 +51,7 @@ from viewer.model.arrays import Array
 from viewer.model.design import Design
 from viewer.model.modes import ModeSet
 
-__all__ = ["CLOSE", "REPEATED", "GainMap", "gain_map"]
+__all__ = ["CLOSE", "REPEATED", "GainMap", "gain_map", "gain_maps"]
 
 REPEATED = 1e-3  # relative difference of frequencies below which modes are taken together
 CLOSE = 0.02  # and below which the nearest other mode is named, since a larger change mixes the two
@@ -59,47 +61,67 @@ _INDEPENDENT = 1e-6  # smallest eigenvalue of the shapes' cross-products at unit
 def gain_map(
     design: Design, modes: ModeSet, number: int, energies: Energies | None = None, progress: Progress = SILENT
 ) -> GainMap:
-    """What stiffening, lightening and thickening every cell does to mode ``number`` (from 1).
+    """What stiffening, lightening and thickening every cell does to mode ``number`` (from 1); see :func:`gain_maps`,
+    which takes hardly longer for many modes of sheets than this for one."""
+    return gain_maps(design, modes, [number], energies, progress)[0]
 
-    energies  of this design and mode set, when they are known already; formed for the mode otherwise
+
+def gain_maps(
+    design: Design,
+    modes: ModeSet,
+    numbers: Sequence[int] | None = None,
+    energies: Energies | None = None,
+    progress: Progress = SILENT,
+) -> list[GainMap]:
+    """The gain maps of the modes ``numbers`` (from 1; None: all).
+
+    energies  of this design and mode set, when they are known already; formed otherwise
     Raises ``InputError`` for a mode that is not there, ``RefusedError`` when the design has no cells to change (its
-    matrices were given) and as ``relative_energies``, ``ModelError`` as ``energies``. Memory: for m modes of equal
-    frequency five arrays (n_cells, m, m), and chunks of element matrices.
+    matrices were given) and as ``relative_energies``, ``ModelError`` as ``energies``. Memory: for every set of m
+    modes of equal frequency five arrays (n_cells, m, m), and chunks of element matrices.
     """
-    if not 1 <= number <= modes.count:
-        raise InputError(
-            f"design '{design.name}' has no mode {number}", expected=f"1 to {modes.count}", do="choose another mode"
-        )
+    numbers = list(range(1, modes.count + 1)) if numbers is None else list(numbers)
+    if not numbers:
+        return []
+    for number in numbers:
+        if not 1 <= number <= modes.count:
+            raise InputError(
+                f"design '{design.name}' has no mode {number}",
+                expected=f"1 to {modes.count}",
+                do="choose another mode",
+            )
     if design.physics.matrices is not None:
         raise RefusedError(
             f"design '{design.name}': {NO_CELLS}, and where to change it cannot be told",
             do="give materials and assignments instead of matrices",
         )
-    index, relative = number - 1, states_no_material(design)
-    members = _members(modes.freq_hz, index)
-    if energies is None or not np.isin(members, energies.indices).all():
+    relative = states_no_material(design)
+    members = [_members(modes.freq_hz, number - 1) for number in numbers]
+    wanted = np.unique(np.concatenate(members))
+    if energies is None or not np.isin(wanted, energies.indices).all():
         energies = (
             relative_energies(design, modes, progress)
             if relative
-            else form_energies(design, modes, members.tolist(), progress)
+            else form_energies(design, modes, wanted.tolist(), progress)
         )
-    rows = np.array([int(np.nonzero(energies.indices == i)[0][0]) for i in members])
-    own = rows[members == index][0]
-    rigid = not energies.total_strain[own] > 0 if relative else bool(np.isnan(energies.closure[own]))
-    absolute = not relative and not rigid and bool(energies.trusted[rows].all())
     layout = lay_out(assume_material(design) if relative else design, progress)
-    if rigid:
-        return _finding(layout, modes, number, members[members == index], _nothing(layout), False, energies.cautions)
-    vectors, doubts = shape_vectors(layout, modes, members, progress)
-    if not _independent(layout, vectors):
-        members, vectors = members[members == index], vectors[members == index]
-    known = None
-    if len(members) == 1 and not relative and _same_elements(energies, layout):
-        square = (2 * np.pi * energies.freq_hz[own]) ** 2
-        known = 2 * energies.strain[own][:, None, None], 2 * energies.kinetic[own][:, None, None] / square
-    found = _derivatives(layout, vectors, known or cell_forms(layout, vectors, progress), progress)
-    cautions = (*energies.cautions, *doubts, *_cautions(modes.freq_hz, members, relative, absolute))
-    return _finding(layout, modes, number, members, found, absolute, tuple(dict.fromkeys(cautions)))
+    row = {int(i): j for j, i in enumerate(energies.indices)}
+    rigid = np.array([_is_rigid(energies, row[number - 1]) for number in numbers])
+    vectors, doubts = shape_vectors(layout, modes, wanted, progress)
+    together = [_independent(vectors, wanted, each, n - 1) for each, n in zip(members, numbers, strict=True)]
+    sets = list(dict.fromkeys(tuple(each) for each, still in zip(together, rigid, strict=True) if not still))
+    bases = [vectors[np.isin(wanted, each)] for each in sets]
+    found = dict(zip(sets, _derivatives(layout, bases, sets, energies, progress), strict=True))
+    maps = []
+    for number, each, still in zip(numbers, together, rigid, strict=True):
+        if still:
+            maps.append(_finding(layout, modes, number, np.array([number - 1]), None, False, energies.cautions))
+            continue
+        absolute = not relative and bool(energies.trusted[[row[i] for i in each]].all())
+        cautions = (*energies.cautions, *doubts, *_cautions(modes.freq_hz, np.array(each), relative, absolute))
+        distinct = tuple(dict.fromkeys(cautions))
+        maps.append(_finding(layout, modes, number, np.array(each), found[tuple(each)], absolute, distinct))
+    return maps
 
 
 @dataclass(frozen=True, eq=False)
@@ -115,24 +137,40 @@ class _Derivatives:
     per_mass: Array
 
 
-def _derivatives(layout: Layout, vectors: Array, forms: tuple[Array, Array], progress: Progress) -> _Derivatives:
-    """From the vectors (m, n_dof) and the forms of the cells in stiffness and mass, (n_cells, m, m) each."""
-    stiffness, mass = forms
-    grown_stiffness, grown_mass = growth_forms(layout, vectors, stiffness, mass, progress)
+def _derivatives(
+    layout: Layout, bases: list[Array], sets: list[tuple[int, ...]], energies: Energies, progress: Progress
+) -> list[_Derivatives]:
+    """Of every basis (m, n_dof), the shapes of the modes in ``sets`` (indices)."""
+    if not bases:
+        return []
+    known = [_known_forms(energies, each, layout) for each in sets]
+    unknown = [basis for basis, forms in zip(bases, known, strict=True) if forms is None]
+    formed = iter(cell_forms(layout, unknown, progress) if unknown else [])
+    forms = [one if one is not None else next(formed) for one in known]
+    slopes = growth_forms(layout, bases, forms, progress)
+    return [_settled(layout, *parts) for parts in zip(bases, forms, slopes, strict=True)]
+
+
+def _settled(layout: Layout, vectors: Array, forms: Forms, slopes: Forms) -> _Derivatives:
     springs, masses = attached_forms(layout.springs, vectors), attached_forms(layout.masses, vectors)
     # φ' = φ L⁻ᴴ with L Lᴴ = M has unit modal mass; a form F becomes L⁻¹ F L⁻ᴴ
-    turn = np.linalg.inv(np.linalg.cholesky(mass.sum(axis=0) + masses.sum(axis=0)))
-    settled = lambda forms: turn @ forms @ turn.conj().T  # noqa: E731
-    stiffness, springs, grown_stiffness = settled(stiffness), settled(springs), settled(grown_stiffness)
-    square = np.trace(stiffness.sum(axis=0) + springs.sum(axis=0)).real / len(vectors)  # λ, mean over the modes
-    return _Derivatives(
-        stiffness / square,
-        -settled(mass),
-        grown_stiffness / square - settled(grown_mass),
-        springs / square,
-        -settled(masses),
-        -settled(centre_forms(layout.masses, vectors)),
+    turn = np.linalg.inv(np.linalg.cholesky(forms[1].sum(axis=0) + masses.sum(axis=0)))
+    stiffness, springs, grown, mass, grown_mass, masses, centres = (
+        turn @ form @ turn.conj().T
+        for form in (forms[0], springs, slopes[0], forms[1], slopes[1], masses, centre_forms(layout.masses, vectors))
     )
+    square = np.trace(stiffness.sum(axis=0) + springs.sum(axis=0)).real / len(vectors)  # λ, mean over the modes
+    return _Derivatives(stiffness / square, -mass, grown / square - grown_mass, springs / square, -masses, -centres)
+
+
+def _known_forms(energies: Energies, members: tuple[int, ...], layout: Layout) -> Forms | None:
+    """Forms of a mode of its own from its energies, when these are of the same elements and in joules."""
+    elements = {group.formulation.name for group in layout.blocks}
+    if len(members) > 1 or energies.relative or set(energies.formulations) != elements:
+        return None
+    j = int(np.nonzero(energies.indices == members[0])[0][0])
+    square = (2 * np.pi * energies.freq_hz[j]) ** 2
+    return 2 * energies.strain[j][:, None, None], 2 * energies.kinetic[j][:, None, None] / square
 
 
 def _nothing(layout: Layout) -> _Derivatives:
@@ -152,16 +190,16 @@ def _members(freq_hz: Array, index: int) -> Array:
     return np.sort(next(run for run in runs if index in run))
 
 
-def _same_elements(energies: Energies, layout: Layout) -> bool:
-    return set(energies.formulations) == {group.formulation.name for group in layout.blocks}
+def _is_rigid(energies: Energies, j: int) -> bool:
+    return not energies.total_strain[j] > 0 if energies.relative else bool(np.isnan(energies.closure[j]))
 
 
-def _independent(layout: Layout, vectors: Array) -> bool:
-    """Whether shapes are several and not one given twice."""
-    if len(vectors) == 1:
-        return True
-    unit = vectors / np.linalg.norm(vectors, axis=1, keepdims=True)
-    return bool(np.linalg.eigvalsh(unit @ unit.conj().T)[0] > _INDEPENDENT)
+def _independent(vectors: Array, indices: Array, members: Array, index: int) -> list[int]:
+    """``members``, or mode ``index`` alone when their shapes are one given twice."""
+    unit = vectors[np.isin(indices, members)]
+    unit = unit / np.linalg.norm(unit, axis=1, keepdims=True)
+    several = np.linalg.eigvalsh(unit @ unit.conj().T)[0] > _INDEPENDENT
+    return [int(i) for i in members] if several else [index]
 
 
 def _cautions(freq_hz: Array, members: Array, relative: bool, absolute: bool) -> list[str]:
@@ -192,14 +230,14 @@ def _finding(
     modes: ModeSet,
     number: int,
     members: Array,
-    found: _Derivatives,
+    found: _Derivatives | None,
     absolute: bool,
     cautions: tuple[str, ...],
 ) -> GainMap:
+    rigid, found = found is None, found or _nothing(layout)
     mesh, masses, dimension = layout.design.mesh, cell_masses(layout), dimensions(layout)
     mean = lambda forms: np.trace(forms, axis1=-2, axis2=-1).real / len(members)  # noqa: E731
     growth, freq_hz = mean(found.growth), float(modes.freq_hz[members].mean())
-    rigid = not found.stiffness.any() and not found.springs.any()
     per_kg, split = np.full(mesh.n_cells, np.nan), None
     if absolute:
         there = masses > 0

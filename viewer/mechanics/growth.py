@@ -33,22 +33,38 @@ _STEP = 0.01
 _LENGTHS, _MOMENTS = ("width", "height", "diameter", "wall"), ("iy", "iz", "torsion")
 
 
-def cell_forms(layout: Layout, vectors: Array, progress: Progress = SILENT) -> tuple[Array, Array]:
-    """φᵢᴴKₑφⱼ and φᵢᴴMₑφⱼ, (n_cells, m, m) each, of the vectors (m, n_dof), real or complex.
+Forms = tuple[Array, Array]
+
+
+def cell_forms(layout: Layout, bases: Sequence[Array], progress: Progress = SILENT) -> list[Forms]:
+    """φᵢᴴKₑφⱼ and φᵢᴴMₑφⱼ, (n_cells, m, m) each, of every basis (m, n_dof) of real or complex vectors; one pass over
+    the cells for all of them.
 
     The products off the diagonal come from the energies of sums: aᴴAb = E(a + b) − E(a) − E(b), E = ½vᴴAv."""
-    count = len(vectors)
-    first, second = np.triu_indices(count, 1)
-    phases = [1.0, 1.0j] if np.iscomplexobj(vectors) else [1.0]
-    sums = [vectors[first] + phase * vectors[second] for phase in phases]
-    both = strain_and_kinetic(layout, np.concatenate([vectors, *sums]), progress)
-    return _products(both[0], count, len(phases)), _products(both[1], count, len(phases))
+    stacked = [_with_sums(basis) for basis in bases]
+    both = strain_and_kinetic(layout, np.concatenate(stacked), progress)
+    ends = np.cumsum([len(part) for part in stacked])[:-1]
+    strain, moving = (np.split(energy, ends) for energy in both)
+    return [
+        (_products(one, basis), _products(two, basis)) for one, two, basis in zip(strain, moving, bases, strict=True)
+    ]
 
 
-def _products(energy: Array, count: int, phases: int) -> Array:
-    """(n_cells, m, m) Hermitian products from energies (m + pairs, n_cells) of vectors, sums and turned sums."""
+def _phases(basis: Array) -> list[complex]:
+    return [1.0, 1.0j] if np.iscomplexobj(basis) and len(basis) > 1 else [1.0]
+
+
+def _with_sums(basis: Array) -> Array:
+    """The vectors, then the sums of all pairs, then those with the second turned by a quarter if complex."""
+    first, second = np.triu_indices(len(basis), 1)
+    return np.concatenate([basis, *(basis[first] + phase * basis[second] for phase in _phases(basis))])
+
+
+def _products(energy: Array, basis: Array) -> Array:
+    """(n_cells, m, m) Hermitian products from the energies (…, n_cells) of :func:`_with_sums`."""
+    count, phases = len(basis), len(_phases(basis))
     first, second = np.triu_indices(count, 1)
-    out = np.zeros((energy.shape[1], count, count), float if phases == 1 or count == 1 else complex)
+    out = np.zeros((energy.shape[1], count, count), float if phases == 1 else complex)
     out[:, np.arange(count), np.arange(count)] = 2 * energy[:count].T
     if len(first):
         crossed = energy[count:].reshape(phases, len(first), -1) - energy[first] - energy[second]
@@ -73,20 +89,19 @@ def centre_forms(masses: Sequence[Attachment], vectors: Array) -> Array:
 
 
 def growth_forms(
-    layout: Layout, vectors: Array, stiffness: Array, mass: Array, progress: Progress = SILENT
-) -> tuple[Array, Array]:
-    """Derivatives of the forms ``stiffness`` and ``mass`` (n_cells, m, m; :func:`cell_forms`) by the factor by which
-    each cell grows."""
-    thin = [group for group in layout.blocks if KINDS[group.kind].dim < 3]
-    slopes = stiffness.copy(), mass.copy()
+    layout: Layout, bases: Sequence[Array], forms: Sequence[Forms], progress: Progress = SILENT
+) -> list[Forms]:
+    """Derivatives of the ``forms`` of the ``bases`` (:func:`cell_forms`) by the factor by which each cell grows."""
+    slopes = [(stiffness.copy(), mass.copy()) for stiffness, mass in forms]
+    thin = [group for group in layout.blocks if _dim(group) < 3]
     if thin:
-        ends = []
         for factor in (1 + _STEP, 1 - _STEP):
             grown = tuple(replace(group, prop=grown_property(group.prop, _dim(group), factor)) for group in thin)
-            forms = cell_forms(replace(layout, blocks=grown), vectors, progress)
-            ends.append([form / factor for form in forms])
-        for slope, above, below in zip(slopes, *ends, strict=True):
-            slope += (above - below) / (2 * _STEP)  # zero in solids, which are in neither
+            ends = cell_forms(replace(layout, blocks=grown), bases, progress)
+            weight = np.sign(factor - 1) / (2 * _STEP * factor)
+            for slope, end in zip(slopes, ends, strict=True):
+                for part, value in zip(slope, end, strict=True):
+                    part += weight * value  # zero in solids, which are in neither
     return slopes
 
 
