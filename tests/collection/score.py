@@ -1,7 +1,8 @@
 """Score the search for hinge lines: ``python -m tests.collection.score --families tuning|held|unseen|scored|all``.
 
 Prints totals and the rows that went wrong; ``--write`` puts all rows into table.csv and the totals into totals.csv.
-``--fine`` adds the doubled density, ``--noise`` the run with noisy shapes, ``--invariance`` that with other meshes of the same parts.
+``--fine`` adds the doubled density, ``--noise`` the run with noisy shapes, ``--invariance`` that with other meshes of
+the same parts.
 """
 
 from __future__ import annotations
