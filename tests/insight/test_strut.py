@@ -26,6 +26,7 @@ from viewer.mechanics.eigen import solve
 from viewer.mechanics.energy import energies
 from viewer.mechanics.factor import factorise
 from viewer.model.design import Clearance, Physics, Selector, Strut, Support
+from viewer.model.matrices import GivenMatrices, SymmetricMatrix
 from viewer.model.mesh import Mesh
 from viewer.workspace import Workspace
 
@@ -271,6 +272,19 @@ def test_without_a_model_the_answer_is_an_upper_bound(held):
     assert "a rigid strut" in rigid.sentence and rigid.to_dict()["struts"][0]["stiffness_n_per_m"] is None
     with pytest.raises(RefusedError, match="size of its mode shapes is not known"):
         strut_trial(bare, given.with_(normalisation="unknown"), 1)
+
+
+def test_given_matrices_are_tried_with_the_stiffness_stated_or_a_rigid_strut(held):
+    model, modes = held
+    system = assemble(model)
+    parts = (SymmetricMatrix(each.data, each.indices, each.indptr) for each in (system.K, system.M))
+    given = model.with_(physics=Physics(supports=model.physics.supports, matrices=GivenMatrices(*parts, system.dof)))
+    ours, theirs = (strut_trial(each, modes, SPREAD, stiffness=2e5, top=1, resolve=1) for each in (model, given))
+    assert theirs.struts[0].resolved.freq_hz == pytest.approx(ours.struts[0].resolved.freq_hz, rel=1e-9)
+    rigid = strut_trial(given, modes, SPREAD, top=1, resolve=1).struts[0]
+    assert rigid.stiffness == np.inf
+    assert rigid.resolved.freq_hz == pytest.approx(rigid.predicted.freq_hz, rel=5e-3)
+    assert rigid.predicted == rigid.rigid
 
 
 def test_shapes_of_any_size_and_complex_ones_give_the_same(held):
