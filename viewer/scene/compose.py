@@ -9,13 +9,13 @@ from typing import Any
 import numpy as np
 
 from viewer.errors import InputError
-from viewer.insight.correlate import shared_turn
 from viewer.insight.given_energy import given_density
 from viewer.insight.hinges import HingeFinding
 from viewer.insight.scale import Scale, common_scale
 from viewer.mechanics.energy import RELATIVE
 from viewer.model.arrays import Array
 from viewer.model.design import LumpedMass
+from viewer.scene.facing_view import facing_view
 from viewer.scene.figures import digits
 from viewer.scene.finding_marks import flap_marks, hinge_marks, verdict_words
 from viewer.scene.node_lines import lines_of
@@ -74,7 +74,12 @@ def single_picture(
         scale,
         [study.condition, *_energy_remarks(study, index, energy and not given_energy)],
     )
+    turned_view = _view_of(body, chosen, finding) if chosen and "view" not in look else None
+    if turned_view is not None:
+        look["view"] = turned_view
     shown, said = _shown([body], showing, node_lines, look)
+    if turned_view is not None:
+        said = (*said, "view turned to show the hinge")
     if finding is not None and not finding.hinges:
         said = (*said, verdict_words(finding))
     return Picture(
@@ -117,9 +122,7 @@ def pair_picture(
     indices = [mode_index(study, mode) for study, mode in zip(studies, modes, strict=True)]
     found = [study.scale(i, true_scale=true_scale) for study, i in zip(studies, indices, strict=True)]
     masses, basis = _sizes(studies, indices)
-    turn = shared_turn(
-        first.design.mesh, first.modes.shape(indices[0]), second.design.mesh, second.modes.shape(indices[1])
-    )
+    turn = first.turn_of(indices[0], second, indices[1])
     scales = common_scale(found, masses, [1.0, turn])
     energy = energy and layout == "side"  # an overlay shows form; two energy fields would hide one another
     bodies = tuple(
@@ -164,6 +167,16 @@ def pair_picture(
     if layout == "overlay":
         return picture
     return picture.with_(height=picture_height(width, side_height(picture, note_height(picture)) / BASE_WIDTH))
+
+
+def _view_of(body: Body, chosen: int, finding: HingeFinding | None) -> View | None:
+    """The side that shows hinge number ``chosen`` and its flaps; None when that is the usual one."""
+    if finding is None:
+        return None
+    cells = [hinge.cells for hinge in finding.hinges if hinge.number == chosen]
+    cells += [flap.cells for flap in finding.flaps if chosen in flap.hinges]
+    found = facing_view(body, np.concatenate(cells), View()) if cells else View()
+    return None if found.toward_eye == View().toward_eye else found
 
 
 def _with_finding(
