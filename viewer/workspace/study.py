@@ -11,8 +11,10 @@ import numpy as np
 
 from viewer.errors import InputError, ModelError, RefusedError
 from viewer.insight.character import Character, describe, masses_of
+from viewer.insight.common_support import CommonSupport, common_support
+from viewer.insight.correlate import modal_scale_factor
 from viewer.insight.facing import facing_surfaces
-from viewer.insight.gain import gain_map
+from viewer.insight.gain import gain_maps
 from viewer.insight.gain_finding import GainMap
 from viewer.insight.hinges import HingeFinding, find_hinges
 from viewer.insight.scale import CarriedPoint, Scale, carried_points, scale_mode
@@ -144,6 +146,10 @@ class Study:
         find = lambda: find_hinges(self.design, self.modes, index + 1, self.energies, progress)  # noqa: E731
         return self._once("hinges", index, lambda: find().with_scale(self.scale(index)))
 
+    def hinges_if_known(self, index: int) -> HingeFinding | None:
+        """The same when it can be had, else None."""
+        return asked(lambda: self.hinges(index), [])
+
     def character(self, index: int, progress: Progress = SILENT) -> Character:
         """What mode ``index`` does; found once."""
         masses = self._once("masses", 0, lambda: masses_of(self.design, self.modes, progress))
@@ -164,9 +170,22 @@ class Study:
         )
 
     def gain(self, index: int, progress: Progress = SILENT) -> GainMap:
-        """Where stiffness and weight move mode ``index``; found once."""
-        find = lambda: gain_map(self.design, self.modes, index + 1, self.energies, progress)  # noqa: E731
-        return self._once("gain", index, find)
+        """Where stiffness and weight move mode ``index``; found once, for all modes together: the passes over the
+        cells of sheets cost what they do for one."""
+        find = lambda: gain_maps(self.design, self.modes, None, self.energies, progress)  # noqa: E731
+        return self._once("gain", 0, find)[index]
+
+    def support_with(self, other: Study, progress: Progress = SILENT) -> CommonSupport:
+        """The places that this design and ``other``'s share; found once."""
+        find = lambda: common_support(self.design, other.design, progress)  # noqa: E731
+        return self._once("support", id(other), find)
+
+    def turn_of(self, index: int, other: Study, theirs: int) -> complex:
+        """Unit complex factor that brings mode ``theirs`` of ``other`` into sign and phase with mode ``index``."""
+        support = self.support_with(other)
+        mine = support.values_of_first(self.modes.shape(index))
+        factor = modal_scale_factor(mine, support.values_of_second(other.modes.shape(theirs)))
+        return factor / abs(factor) if abs(factor) > 0 else 1.0 + 0.0j
 
     def _once(self, question: str, index: int, find: Callable[[], Answer]) -> Answer:
         if (question, index) not in self._found:
