@@ -11,7 +11,8 @@ from scipy.sparse import coo_matrix
 from scipy.sparse.csgraph import connected_components
 
 from viewer.cells import KINDS, measures, repair_orientation
-from viewer.insight.correlate import common_support, mac
+from viewer.insight.common_support import common_support
+from viewer.insight.correlate import mac
 from viewer.loaders import read_dossier, read_mesh
 from viewer.mechanics.eigen import solve
 from viewer.mechanics.energy import energies
@@ -199,5 +200,6 @@ def test_straps_raise_the_twisting_of_the_trough(solved):
 
 
 def _alike(first, mine, i, second, theirs, j):
-    rows, others = common_support(first.mesh, second.mesh)
-    return float(mac(mine.shape(i - 1)[rows].ravel(), theirs.shape(j - 1)[others].ravel())[0, 0])
+    support = common_support(first, second)
+    one, two = support.values_of_first(mine.shape(i - 1)), support.values_of_second(theirs.shape(j - 1))
+    return float(mac(one, two)[0, 0])

@@ -35,6 +35,40 @@ def flap_rows(design: str, finding: dict[str, Any]) -> list[Row]:
     ]
 
 
+def outcome_rows(comparison: dict[str, Any]) -> list[Row]:
+    """One row for each mode of the first design, and for each that is new, of ``Comparison.to_dict``."""
+    return [
+        {
+            "first_design": facts["first_design"],
+            "first_mode": facts["first_mode"],
+            "first_name": facts["first_name"],
+            "second_design": facts["second_design"],
+            "second_mode": facts["second_mode"],
+            "second_name": facts["second_name"],
+            "became": facts["kind"],
+            "first_hz": facts["first_hz"],
+            "second_hz": facts["second_hz"],
+            "change_percent": facts["change_percent"],
+            "mac": facts["mac"],
+            "close_group_agreement": facts["subspace_agreement"],
+            "hinge_change": "; ".join(_hinge_change(change) for change in facts["hinges"] or ()),
+            "paired_by": facts["paired_by"],
+        }
+        for facts in comparison["outcomes"]
+    ]
+
+
+def _hinge_change(facts: dict[str, Any]) -> str:
+    at = f" at {facts['place']}" if facts["place"] else ""
+    if facts["second_hinge"] is None:
+        return f"hinge {facts['first_hinge']}{at} gone"
+    if facts["first_hinge"] is None:
+        return f"new hinge{at}"
+    if facts["share_change"] is None:
+        return f"hinge {facts['first_hinge']}{at} stays"
+    return f"hinge {facts['first_hinge']}{at} {facts['share_change']:+.0%} of its share".replace("-", "−")
+
+
 def _hinge(facts: dict[str, Any]) -> Row:
     percent = lambda share: None if share is None else 100 * share  # noqa: E731
     x, y, z = facts["position_m"]

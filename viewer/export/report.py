@@ -11,27 +11,28 @@ import shutil
 import tempfile
 from collections.abc import Iterator
 from contextlib import contextmanager, suppress
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
 from viewer import __version__
 from viewer.errors import ExportError, ModelError, RefusedError
 from viewer.export.checkup import mesh_words
+from viewer.export.compare_page import compared, comparison_section
+from viewer.export.desk import Desk, Steps
 from viewer.export.file_names import slugs
 from viewer.export.finding_rows import flap_rows, hinge_rows
 from viewer.export.findings import Pictures, write_gain_still, write_hinge_stills
 from viewer.export.gif_loop import save_gif
-from viewer.export.index_page import PageLoop, PageSection, PageTable, write_index
-from viewer.export.rows import Row, group_rows, mode_caption, mode_rows, pair_caption, pair_row, point_rows, short
+from viewer.export.index_page import PageLoop, PageSection, write_index
+from viewer.export.rows import Row, group_rows, mode_caption, mode_rows, point_rows
 from viewer.export.stills import save_png
 from viewer.export.strip import save_strip
 from viewer.export.strut_rows import strut_rows
-from viewer.export.tables import write_table
 from viewer.insight.strut_finding import StrutTrial
 from viewer.jobs import SILENT, Progress, write_text
 from viewer.model.plain import plain
-from viewer.scene.compose import pair_picture, single_picture
+from viewer.scene.compose import single_picture
 from viewer.scene.strut_picture import strut_picture
 from viewer.workspace import OpenDossier, Study
 from viewer.workspace.explanation import Explanation
@@ -65,66 +66,22 @@ def write_review(
     """
     _check_place(Path(folder))
     studies = [opened.study(name, count, progress) for name in opened.names]
-    pairs = _pairs(opened, studies)
-    steps = _Steps(progress, sum(s.count + 1 for s in studies) + len(pairs))
+    comparisons, apart = compared(opened, studies, progress)
+    steps = Steps(progress, sum(s.count + 1 for s in studies) + sum(len(c.outcomes) for c in comparisons))
     with _aside(Path(folder)) as part:
-        desk = _Desk(part, theme, width, steps, slugs(opened.names))
-        comparison = _compare(desk, pairs) if pairs else None
-        sections = ([comparison] if comparison else []) + [_explain(desk, opened, study) for study in studies]
+        desk = Desk(part, theme, width, steps, slugs(opened.names))
+        sections = [comparison_section(desk, comparison) for comparison in comparisons]
+        sections += [_explain(desk, opened, study) for study in studies]
         doubts = [words for s in studies for words in (*opened.doubts(s.design.name), *s.cautions)]
         doubts += [f"{name}: {words}" for name, told in desk.findings.items() for t in told for words in t.cautions]
-        cautions = tuple(dict.fromkeys((*opened.warnings, *doubts)))
+        cautions = tuple(dict.fromkeys((*opened.warnings, *doubts, *apart)))
         write_index(part, opened.dossier.title, sections, condition=opened.dossier.condition, cautions=cautions)
         summary = _summary(opened, studies, desk, cautions)
         write_text(part / SUMMARY, json.dumps(plain(summary), indent=1, ensure_ascii=False, allow_nan=False) + "\n")
     return Review(Path(folder) / "index.html", summary, tuple(desk.printed), cautions)
 
 
-@dataclass
-class _Steps:
-    """Counts drawn modes, so that the bar of a review moves evenly."""
-
-    progress: Progress
-    total: int
-    done: int = 0
-
-    def next(self, words: str) -> Progress:
-        self.progress.tick(words, self.done, self.total)
-        self.done += 1
-        return Progress(lambda *_: self.progress.tick(words, self.done - 1, self.total))
-
-
-@dataclass
-class _Desk:
-    """Where a review writes, and what it has written so far."""
-
-    folder: Path
-    theme: str
-    width: int
-    steps: _Steps
-    slugs: dict[str, str]
-    printed: list[tuple[str, list[Row]]] = field(default_factory=list)
-    tables: dict[str, list[Row]] = field(default_factory=dict)
-    findings: dict[str, list[Explanation]] = field(default_factory=dict)
-    struts: dict[str, StrutTrial] = field(default_factory=dict)
-
-    @property
-    def look(self) -> dict[str, Any]:
-        return {"theme": self.theme, "width": self.width}
-
-    def table(self, stem: str, title: str, rows: list[Row], *, show: bool = False) -> tuple[PageTable, ...]:
-        """Write rows as CSV and JSON; nothing when there are none."""
-        if not rows:
-            return ()
-        for suffix in (".csv", ".json"):
-            write_table(self.folder / f"{stem}{suffix}", rows)
-        self.tables[stem] = rows
-        if show:
-            self.printed.append((title, short(rows)))
-        return (PageTable(title, short(rows), f"{stem}.csv", f"{stem}.json"),)
-
-
-def _explain(desk: _Desk, opened: OpenDossier, study: Study) -> PageSection:
+def _explain(desk: Desk, opened: OpenDossier, study: Study) -> PageSection:
     """Loops, stills, strips and tables of one design."""
     name = study.design.name
     slug = desk.slugs[name]
@@ -161,7 +118,7 @@ def _explain(desk: _Desk, opened: OpenDossier, study: Study) -> PageSection:
 
 
 def _try_struts(
-    desk: _Desk, opened: OpenDossier, study: Study, told: list[Explanation]
+    desk: Desk, opened: OpenDossier, study: Study, told: list[Explanation]
 ) -> tuple[StrutTrial | None, tuple[PageLoop, ...]]:
     """A strut trial on the lowest mode in which facing surfaces move apart, else on the lowest elastic one, with a
     picture of the best strut; nothing where struts cannot be told."""
@@ -180,7 +137,7 @@ def _try_struts(
     return trial, (loop,)
 
 
-def _explain_mode(desk: _Desk, study: Study, index: int, row: Row, told: Explanation, progress: Progress) -> PageLoop:
+def _explain_mode(desk: Desk, study: Study, index: int, row: Row, told: Explanation, progress: Progress) -> PageLoop:
     number, slug = index + 1, desk.slugs[study.design.name]
     stem = f"{slug}_mode_{number:02d}"
     picture = single_picture(study, number, finding=told.hinges, **desk.look)
@@ -209,66 +166,7 @@ def _explain_mode(desk: _Desk, study: Study, index: int, row: Row, told: Explana
     )
 
 
-@dataclass(frozen=True)
-class _Pair:
-    first: Study
-    first_mode: int
-    second: Study
-    second_mode: int
-    paired_by: str
-
-
-def _pairs(opened: OpenDossier, studies: list[Study]) -> list[_Pair]:
-    """The pairs that the dossier states; without any, equal numbers of the first design and each other one."""
-    by_name = {study.design.name: study for study in studies}
-    stated = [
-        _Pair(by_name[p.first_design], p.first_mode, by_name[p.second_design], p.second_mode, "paired by the dossier")
-        for p in opened.dossier.pairs
-        if p.first_mode <= by_name[p.first_design].count and p.second_mode <= by_name[p.second_design].count
-    ]
-    if opened.dossier.pairs:
-        return stated
-    first = studies[0]
-    return [
-        _Pair(first, number, other, number, "paired by number, not by shape")
-        for other in studies[1:]
-        for number in range(1, min(first.count, other.count) + 1)
-    ]
-
-
-def _compare(desk: _Desk, pairs: list[_Pair]) -> PageSection:
-    """Loops side by side and overlays of every pair, and the table of what became of each mode."""
-    rows, loops = [], []
-    for pair in pairs:
-        row = pair_row(pair.first, pair.first_mode, pair.second, pair.second_mode, pair.paired_by)
-        rows.append(row)
-        loops.append(_compare_pair(desk, pair, row))
-    tables = desk.table("comparison", "What became of each mode", rows, show=True)
-    text = ("Compared designs share camera, phase and magnification; energy colours share one scale.",)
-    return PageSection("Designs compared", text, tuple(loops), tables, comparison=True)
-
-
-def _compare_pair(desk: _Desk, pair: _Pair, row: Row) -> PageLoop:
-    one, two = pair.first.design.name, pair.second.design.name
-    stem = f"{desk.slugs[one]}_{pair.first_mode:02d}_{desk.slugs[two]}_{pair.second_mode:02d}"
-    progress = desk.steps.next(f"comparing {one} mode {pair.first_mode}")
-    arguments = (pair.first, pair.first_mode, pair.second, pair.second_mode)
-    side = pair_picture(*arguments, layout="side", paired_by=pair.paired_by, **desk.look)
-    save_gif(side, desk.folder / f"{stem}_side.gif", progress)
-    save_png(side, desk.folder / f"{stem}_side.png", progress=progress)
-    overlay = pair_picture(*arguments, layout="overlay", paired_by=pair.paired_by, **desk.look)
-    save_png(overlay, desk.folder / f"{stem}_overlay.png", progress=progress)
-    return PageLoop(
-        title=side.note.title,
-        gif=f"{stem}_side.gif",
-        still=f"{stem}_side.png",
-        overlay=f"{stem}_overlay.png",
-        caption=pair_caption(row),
-        alt=f"{one} beside {two}, {side.note.title}: {', '.join(side.note.drawing)}",
-    )
-
-
-def _summary(opened: OpenDossier, studies: list[Study], desk: _Desk, cautions: tuple[str, ...]) -> dict[str, Any]:
+def _summary(opened: OpenDossier, studies: list[Study], desk: Desk, cautions: tuple[str, ...]) -> dict[str, Any]:
     return {
         "made_by": f"hingelight {__version__}",
         "title": opened.dossier.title,
@@ -286,7 +184,7 @@ def _summary(opened: OpenDossier, studies: list[Study], desk: _Desk, cautions: t
             }
             for s in studies
         },
-        "comparison": desk.tables.get("comparison", []),
+        "comparisons": [c.to_dict() for c in desk.comparisons],
         "cautions": list(cautions),
         "files": sorted({SUMMARY, *(path.name for path in desk.folder.iterdir())}),
     }

@@ -7,13 +7,11 @@ from typing import Any
 
 import numpy as np
 
-from viewer.errors import RefusedError
-from viewer.insight.correlate import common_support, mac
 from viewer.insight.given_energy import agreement
 from viewer.model.arrays import Array
 from viewer.model.cycle import cycle_peaks
 from viewer.model.design import FunctionalPoint
-from viewer.scene.figures import change, digits, hertz, length
+from viewer.scene.figures import digits, hertz, length
 from viewer.workspace import Study
 
 Row = dict[str, Any]
@@ -27,7 +25,7 @@ _SHORT = (
     "given_energy_agreement",
     "point", "effect", "direction", "motion_percent_of_largest", "real_motion_m",
     "first_design", "first_mode", "first_name", "second_design", "second_mode", "first_hz", "second_hz",
-    "change_percent", "mac_common_support",
+    "change_percent", "became", "mac", "close_group_agreement", "hinge_change",
     "group", "strain_energy_percent", "kinetic_energy_percent", "volume_percent",
     "verdict", "hinge", "kind", "label", "confidence_percent", "fold_drawn_deg", "fold_real_deg", "stiffness_nmrad",
     "length_m",
@@ -110,20 +108,6 @@ def mode_caption(row: Row) -> str:
     return text
 
 
-def pair_caption(row: Row) -> str:
-    """One plain sentence made of a pair row's own figures."""
-    text = (
-        f"{row['first_design']} mode {row['first_mode']} at {hertz(row['first_hz'])}, {row['second_design']} mode "
-        f"{row['second_mode']} at {hertz(row['second_hz'])}"
-    )
-    moved = change(row["second_hz"], row["first_hz"])
-    if moved:
-        text += f" ({moved})"
-    if row["mac_common_support"] is not None:
-        text += f"; the shapes agree with MAC {row['mac_common_support']:.2f} where both designs have material"
-    return f"{text}; {row['paired_by']}."
-
-
 def group_rows(study: Study) -> list[Row]:
     """One row for each mode and cell group: its shares of strain energy, kinetic energy and volume, in percent of
     what the cells hold (springs and lumped masses apart), and of the strain energy that the modes' file gives."""
@@ -177,33 +161,6 @@ def point_rows(study: Study) -> list[Row]:
                 }
             )
     return rows
-
-
-def pair_row(first: Study, first_mode: int, second: Study, second_mode: int, paired_by: str) -> Row:
-    """What became of one mode: both frequencies, the change, and how alike the shapes are on the common support."""
-    one = float(first.modes.freq_hz[first_mode - 1])
-    two = float(second.modes.freq_hz[second_mode - 1])
-    return {
-        "first_design": first.design.name,
-        "first_mode": first_mode,
-        "first_name": first.name(first_mode - 1),
-        "second_design": second.design.name,
-        "second_mode": second_mode,
-        "second_name": second.name(second_mode - 1),
-        "first_hz": one,
-        "second_hz": two,
-        "change_percent": 100 * (two / one - 1) if one > 0 else None,
-        "mac_common_support": _mac(first, first_mode - 1, second, second_mode - 1),
-        "paired_by": paired_by,
-    }
-
-
-def _mac(first: Study, i: int, second: Study, j: int) -> float | None:
-    try:
-        mine, theirs = common_support(first.design.mesh, second.design.mesh)
-    except RefusedError:
-        return None
-    return float(mac(first.modes.shape(i)[mine].ravel(), second.modes.shape(j)[theirs].ravel())[0, 0])
 
 
 def _most(study: Study, values: Array, volumes: Array) -> tuple[str | None, float | None]:

@@ -107,10 +107,10 @@ def common_support(first: Design, second: Design, progress: Progress = SILENT) -
     """
     if _same_cells(first.mesh, second.mesh):
         return _every_node(first, second)
-    swap = len(first.mesh.used_nodes) > len(second.mesh.used_nodes)
+    swap = len(_places(first.mesh)) > len(_places(second.mesh))
     fine, coarse = (first, second) if swap else (second, first)
     near = NEAR * min(first.mesh.diagonal, second.mesh.diagonal)
-    rows = coarse.mesh.used_nodes
+    rows = _places(coarse.mesh)
     progress.tick("common support", 0, 3)
     carried, distances = _looked_up(fine.mesh, coarse.mesh.points[rows])
     shared = distances <= near
@@ -149,15 +149,24 @@ def _same_cells(first: Mesh, second: Mesh) -> bool:
 
 
 def _every_node(first: Design, second: Design) -> CommonSupport:
-    rows = first.mesh.used_nodes
+    rows = _places(first.mesh)
     pick = sp.csr_array((np.ones(len(rows)), (np.arange(len(rows)), rows)), shape=(len(rows), first.mesh.n_nodes))
     weights = (_nodal_masses(first)[rows] + _nodal_masses(second)[rows]) / 2
     return CommonSupport(pick, pick, weights, _shared_masses(first, second), np.zeros(len(rows)), ())
 
 
+def _places(mesh: Mesh) -> Array:
+    """Rows of the nodes that count: those of cells, or all points where there is no cell, as of a test."""
+    return mesh.used_nodes if mesh.n_cells else np.arange(mesh.n_nodes)
+
+
 def _looked_up(mesh: Mesh, queries: Array) -> tuple[sp.csr_array, Array]:
     """The operator (q, n_nodes) that carries nodal values of ``mesh`` to the nearest places, and distances (q,)."""
     blocks = [(block.kind, block.nodes) for block in mesh.blocks]
+    if not mesh.n_cells:  # points alone, as of a test
+        distance, row_of = cKDTree(mesh.points).query(queries)
+        ones = np.ones(len(queries))
+        return sp.csr_array((ones, (np.arange(len(queries)), row_of)), shape=(len(queries), mesh.n_nodes)), distance
     places = nearest(blocks, mesh.points, queries)
     data, row, column = [], [], []
     for mine, nodes, weights in interpolation(blocks, places):
@@ -171,8 +180,8 @@ def _looked_up(mesh: Mesh, queries: Array) -> tuple[sp.csr_array, Array]:
 def _far_nodes(mesh: Mesh, other: Mesh, near: float) -> Array:
     """(n_nodes,) bool: used nodes farther than ``near`` from the other mesh. Only nodes without a close node of the
     other mesh are looked up in its cells."""
-    rows = mesh.used_nodes
-    distance, _ = cKDTree(other.points[other.used_nodes]).query(mesh.points[rows])
+    rows = _places(mesh)
+    distance, _ = cKDTree(other.points[_places(other)]).query(mesh.points[rows])
     far = np.zeros(mesh.n_nodes, bool)
     open_rows = rows[distance > near]
     if len(open_rows):
@@ -193,8 +202,10 @@ def cell_masses(design: Design) -> Array:
 
 
 def _nodal_masses(design: Design) -> Array:
-    """(n_nodes,) each cell's mass shared equally by its nodes."""
+    """(n_nodes,) each cell's mass shared equally by its nodes; 1 everywhere for points without cells."""
     mesh, out = design.mesh, np.zeros(design.mesh.n_nodes)
+    if not mesh.n_cells:
+        return np.ones(mesh.n_nodes)
     masses = cell_masses(design)
     for block, start in zip(mesh.blocks, mesh.block_starts[:-1], strict=True):
         share = masses[start : start + len(block)] / block.nodes.shape[1]

@@ -154,6 +154,16 @@ class OpenDossier:
                     return theirs[1]
         return mode
 
+    def stated_pairs(self, first: str, second: str) -> tuple[tuple[int, int], ...]:
+        """Numbers of the modes of two designs that the dossier says correspond."""
+        found = []
+        for p in self.dossier.pairs:
+            if (p.first_design, p.second_design) == (first, second):
+                found.append((p.first_mode, p.second_mode))
+            elif (p.first_design, p.second_design) == (second, first):
+                found.append((p.second_mode, p.first_mode))
+        return tuple(found)
+
     def _amplitudes(self, name: str, modes: ModeSet) -> dict[int, StatedAmplitude]:
         found = {}
         for item in self.dossier.amplitudes:

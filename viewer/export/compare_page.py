@@ -1,0 +1,95 @@
+"""The part of a review that compares two designs: charts of the pairing, loops and overlays of every pair."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from viewer.errors import RefusedError
+from viewer.export.chart import save_chart
+from viewer.export.desk import Desk
+from viewer.export.finding_rows import outcome_rows
+from viewer.export.gif_loop import save_gif
+from viewer.export.index_page import PageLoop, PageSection
+from viewer.export.stills import save_png
+from viewer.insight.outcome import Outcome
+from viewer.jobs import SILENT, Progress
+from viewer.scene.compose import pair_picture
+from viewer.scene.ladder_chart import ladder_chart
+from viewer.scene.mac_chart import mac_chart
+from viewer.workspace import OpenDossier, Study
+from viewer.workspace.comparison import Comparison, compare
+
+
+def compared(
+    opened: OpenDossier, studies: Sequence[Study], progress: Progress = SILENT
+) -> tuple[list[Comparison], list[str]]:
+    """The first design against each other one, and why where that cannot be."""
+    found, apart = [], []
+    for other in studies[1:]:
+        first = studies[0]
+        stated = opened.stated_pairs(first.design.name, other.design.name)
+        try:
+            found.append(compare(first, other, stated, progress))
+        except RefusedError as error:
+            apart.append(f"{first.design.name} and {other.design.name} are not compared: {error.problem}")
+    return found, apart
+
+
+def comparison_section(desk: Desk, comparison: Comparison) -> PageSection:
+    """Write what shows a comparison; returns its part of the page."""
+    one, two = comparison.first.design.name, comparison.second.design.name
+    stem = f"{desk.slugs[one]}_{desk.slugs[two]}"
+    facts = comparison.to_dict()
+    desk.comparisons.append(comparison)
+    tables = desk.table(
+        f"{stem}_comparison", f"What became of each mode of {one} in {two}", outcome_rows(facts), show=True
+    )
+    loops = [_charts(desk, comparison, stem)]
+    for item in comparison.outcomes:
+        progress = desk.steps.next(f"comparing {one} with {two}")
+        if item.pair.kind == "paired":
+            loops.append(_pair_loop(desk, comparison, item, progress))
+    lost = [item.sentence for item in comparison.outcomes if item.pair.kind != "paired"]
+    text = (
+        comparison.sentence,
+        facts["support_sentence"],
+        *lost,
+        "Compared designs share camera, phase and magnification; energy colours share one scale.",
+    )
+    return PageSection(f"{one} and {two} compared", text, tuple(loops), tables, comparison=True)
+
+
+def _charts(desk: Desk, comparison: Comparison, stem: str) -> PageLoop:
+    names = [[s.name(i) for i in range(s.count)] for s in (comparison.first, comparison.second)]
+    theme, width = desk.theme, desk.width
+    save_chart(ladder_chart(comparison.pairing, *names, theme=theme), desk.folder / f"{stem}_ladder.png", width=width)
+    save_chart(mac_chart(comparison.pairing, *names, theme=theme), desk.folder / f"{stem}_agreement.png", width=width)
+    return PageLoop(
+        "Which mode became which",
+        still=f"{stem}_ladder.png",
+        caption=comparison.sentence,
+        alt=comparison.sentence,
+        findings=(("how alike the shapes are", f"{stem}_agreement.png"),),
+    )
+
+
+def _pair_loop(desk: Desk, comparison: Comparison, item: Outcome, progress: Progress) -> PageLoop:
+    first, second = comparison.first, comparison.second
+    one, two = item.pair.first or 1, item.pair.second or 1
+    stem = f"{desk.slugs[first.design.name]}_{one:02d}_{desk.slugs[second.design.name]}_{two:02d}"
+    paired_by = comparison.paired_by(item)
+    arguments = (first, one, second, two)
+    findings = (first.hinges_if_known(one - 1), second.hinges_if_known(two - 1))
+    side = pair_picture(*arguments, layout="side", paired_by=paired_by, findings=findings, **desk.look)
+    save_gif(side, desk.folder / f"{stem}_side.gif", progress)
+    save_png(side, desk.folder / f"{stem}_side.png", progress=progress)
+    overlay = pair_picture(*arguments, layout="overlay", paired_by=paired_by, **desk.look)
+    save_png(overlay, desk.folder / f"{stem}_overlay.png", progress=progress)
+    return PageLoop(
+        title=side.note.title,
+        gif=f"{stem}_side.gif",
+        still=f"{stem}_side.png",
+        overlay=f"{stem}_overlay.png",
+        caption=item.sentence,
+        alt=f"{first.design.name} beside {second.design.name}, {side.note.title}: {', '.join(side.note.drawing)}",
+    )
