@@ -143,6 +143,26 @@ def test_links_and_ties_carry_the_base_along():
             assert found.free == pytest.approx(found.whole, rel=1e-8)
 
 
+LONG = {
+    "solid": design(box_mesh("hex8", (60, 1, 1), (3.0, 0.05, 0.1), distort=0.3), supports=(CLAMP,)),
+    "quadratic solid": design(box_mesh("hex20", (40, 1, 1), (3.0, 0.05, 0.1)), supports=(CLAMP,), masses=(LUMP,)),
+    "sheet": design(plate_mesh("quad4", (60, 1), (3.0, 0.05)), thickness=0.02, supports=(CLAMP,)),
+}
+
+
+@pytest.mark.parametrize("name", LONG)
+def test_supports_are_not_felt_far_away(name):
+    """Bodies longer than the reach within which the supports' share is looked for: as by the whole matrix."""
+    model = LONG[name]
+    found = effective_masses(model, solve(model, 1))
+    motion, system = rigid(model, found.about)
+    pull = system.force((system.M @ motion.T).T)
+    inside = np.linalg.pinv(system.restrict(system.M).toarray(), hermitian=True)
+    exact = np.einsum("kn,nm,km->k", pull, inside, pull)
+    assert (np.abs(found.free - exact) <= 1e-9 * np.maximum(found.whole, 1e-3 * found.whole[:3].max())).all()
+    assert found.supports[0] > 1e-3 * found.whole[0]
+
+
 def test_shares_of_direction_and_rigid_motion():
     """A body pushed as one piece: all of its motion is rigid, along the push; kinetic shares add up to one."""
     model = solid(masses=(LUMP,))
