@@ -74,19 +74,26 @@ class Draft:
         return any(side.ground for side in self.sides)
 
 
-def examine(field: Field, cells: Array, rounds: int = 2) -> Draft | None:
-    """Measure the candidate ``cells``, and once more what came out as the band; None when it is no band between two
-    sides."""
-    draft = None
-    for _ in range(rounds):
-        if len(cells) == 0 or field.strain[cells].sum() <= 0:
-            return None
-        frame = frame_of(field, cells)
-        draft = None if frame is None else _measured(field, cells, frame)
-        if draft is None or np.array_equal(draft.cells, cells):
-            break
-        cells = draft.cells
-    return draft
+class Examiner:
+    """Measures candidates of one field, no set of cells twice."""
+
+    def __init__(self, field: Field) -> None:
+        self._field = field
+        self._known: dict[bytes, Draft | None] = {}
+
+    def __call__(self, cells: Array) -> Draft | None:
+        """Measure the candidate ``cells``, and once more what came out as the band; None when it is no band between
+        two sides."""
+        draft = self._once(cells)
+        return None if draft is None else self._once(draft.cells)
+
+    def _once(self, cells: Array) -> Draft | None:
+        key = cells.tobytes()
+        if key not in self._known:
+            field = self._field
+            frame = frame_of(field, cells) if field.strain[cells].sum() > 0 else None
+            self._known[key] = None if frame is None else _measured(field, cells, frame)
+        return self._known[key]
 
 
 def _measured(field: Field, cells: Array, frame: Frame) -> Draft | None:

@@ -17,16 +17,17 @@ from viewer.insight.hinges.field import Field
 from viewer.jobs import Progress
 from viewer.model.arrays import Array
 
-LEAST_SHARE = 0.02  # of the strain energy of the whole, for a set to be looked at
+LEAST_SHARE = 0.025  # of the strain energy of the whole, for a set to be looked at
 MOST_VOLUME = 0.3  # share of the volume: no band is larger
 BRIDGES = (0.0, 0.03, 0.07)  # of the size: gaps within one band
+_ALIKE = 0.85  # share of energy in common from which two sets are one candidate
 _LEVELS = 12
 _NEAR = 0.08  # of the size: boxes of the neighbourhood
 
 
 def candidates(field: Field, progress: Progress) -> list[Array]:
     """Sets of cell rows, each once, the densest levels first."""
-    found: dict[bytes, Array] = {}
+    found: list[tuple[Array, Array]] = []
     whole = field.volume.sum()
     for measure, first in ((field.density, 2.0), (_local(field), 2.0)):
         for level in first * 2.0 ** np.arange(_LEVELS):
@@ -39,9 +40,20 @@ def candidates(field: Field, progress: Progress) -> list[Array]:
                 strain = np.bincount(piece, field.strain[rows])
                 volume = np.bincount(piece, field.volume[rows])
                 for number in np.nonzero((strain >= LEAST_SHARE) & (volume <= MOST_VOLUME * whole))[0]:
-                    cells = rows[piece == number]
-                    found[cells.tobytes()] = cells
-    return list(found.values())[::-1]
+                    _add(found, field, rows[piece == number])
+    return [cells for cells, _ in found][::-1]
+
+
+def _add(found: list[tuple[Array, Array]], field: Field, cells: Array) -> None:
+    """Keep a set unless it is nearly one of those kept."""
+    whole = field.strain[cells].sum()
+    for other, inside in found:
+        common = field.strain[cells[inside[cells]]].sum()
+        if common > _ALIKE * max(whole, field.strain[other].sum()):
+            return
+    inside = np.zeros(len(field.strain), bool)
+    inside[cells] = True
+    found.append((cells, inside))
 
 
 def _bridged(points: Array, box: float) -> Array:

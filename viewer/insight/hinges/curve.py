@@ -78,26 +78,50 @@ def principal(points: Array, weights: Array) -> tuple[Array, Array, Array]:
     return centre, np.sqrt(np.maximum(values[::-1], 0)), vectors[:, ::-1].T
 
 
+_BINS = 12  # places along an arc, whose means are fitted: scatter across the band would pull the circle in
+_ROUNDS = 2
+
+
 def fit_arc(points: Array, weights: Array) -> Arc | None:
-    """The arc through weighted points, None when they do not lie on one: least-squares circle in their plane."""
+    """The arc through weighted points, None when they do not lie on one: least-squares circle in their plane, through
+    the points and then through their means from place to place along it; the radius may vary as a cubic."""
     centre, spread, directions = principal(points, weights)
     if spread[1] < 1e-9 * spread[0] or len(points) < 8:
         return None
     flat = (points - centre) @ directions[:2].T
-    root = np.sqrt(weights / weights.sum())
-    system = np.column_stack([2 * flat, np.ones(len(flat))])
-    solution = np.linalg.lstsq(system * root[:, None], (flat**2).sum(axis=1) * root, rcond=None)[0]
-    middle = solution[:2]
-    radius = float(np.sqrt(max(solution[2] + middle @ middle, 0.0)))
-    if not np.isfinite(radius) or radius == 0:
+    spots, mass = flat, weights
+    for _ in range(1 + _ROUNDS):
+        middle = _circle(spots, mass)
+        if middle is None:
+            return None
+        arm = flat - middle
+        mean = weights @ (arm / np.maximum(np.linalg.norm(arm, axis=1, keepdims=True), 1e-300))
+        first = mean / np.linalg.norm(mean) if np.linalg.norm(mean) > 1e-6 * weights.sum() else np.array([1.0, 0.0])
+        second = np.array([-first[1], first[0]])
+        angle = np.arctan2(arm @ second, arm @ first)
+        place = np.minimum((angle - angle.min()) / max(np.ptp(angle), 1e-300) * _BINS, _BINS - 1).astype(int)
+        mass = np.bincount(place, weights, minlength=_BINS)
+        full = mass > 0
+        spots = np.stack([np.bincount(place, weights * c, minlength=_BINS)[full] for c in flat.T], axis=1)
+        mass = mass[full]
+        spots = spots / mass[:, None]
+    arm = spots - middle
+    angles, radii = np.arctan2(arm @ second, arm @ first), np.linalg.norm(arm, axis=1)
+    degree = 3 if len(angles) == _BINS and np.ptp(angle) < 5 else 0
+    return Arc(
+        centre + middle @ directions[:2],
+        first @ directions[:2],
+        second @ directions[:2],
+        np.polyfit(angles, radii, degree, w=np.sqrt(mass)),
+        float(np.average(radii, weights=mass)),
+    )
+
+
+def _circle(spots: Array, mass: Array) -> Array | None:
+    """(2,) centre of the least-squares circle."""
+    if len(spots) < 3:
         return None
-    arm = flat - middle
-    mean = (root**2) @ (arm / np.maximum(np.linalg.norm(arm, axis=1, keepdims=True), 1e-300))
-    if np.linalg.norm(mean) < 1e-6:
-        mean = np.array([1.0, 0.0])
-    first2 = mean / np.linalg.norm(mean)
-    second2 = np.array([-first2[1], first2[0]])
-    angle = np.arctan2(arm @ second2, arm @ first2)
-    degree = 3 if len(points) > 40 and np.ptp(angle) < 5 else 0
-    fitted = np.polyfit(angle, np.linalg.norm(arm, axis=1), degree, w=root)
-    return Arc(centre + middle @ directions[:2], first2 @ directions[:2], second2 @ directions[:2], fitted, radius)
+    root = np.sqrt(mass / mass.sum())[:, None]
+    system = np.column_stack([2 * spots, np.ones(len(spots))])
+    solution = np.linalg.lstsq(system * root, (spots**2).sum(axis=1) * root[:, 0], rcond=None)[0]
+    return solution[:2] if np.isfinite(solution).all() else None

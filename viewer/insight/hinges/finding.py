@@ -194,7 +194,9 @@ def _hinge_words(facts: dict[str, Any]) -> str:
     what = "joint" if facts["kind"] == "joint" else "curved hinge" if facts["kind"] == "curve" else "hinge"
     words = f"{what} {facts['number']}"
     if facts["strain_share"] is not None:
-        words += f", with {facts['strain_share']:.0%} of the energy in {100 * facts['volume_share']:.2g}% of the material"
+        words += (
+            f", with {facts['strain_share']:.0%} of the energy in {100 * facts['volume_share']:.2g}% of the material"
+        )
     if facts["fold_real_deg"] is not None:
         words += f", by {facts['fold_real_deg']:.2g}° real"
     return words + ("" if facts["label"] == "strong" else f" ({facts['label']})")

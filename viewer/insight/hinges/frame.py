@@ -54,7 +54,7 @@ def frame_of(field: Field, cells: Array) -> Frame | None:
     near = surroundings(field, cells, corners, float(max(0.5 * spans[0], 2.0 * spans[1], 4 * grain)))
     if len(near) < 4:
         return None
-    slack = float(2 * spans[1] + grain)
+    slack = float(1.5 * spans[1])
     arc = _arc(field, points, weight, spans)
     if arc is not None:
         return _kept(_frame(field, arc, near, None, None, False), slack)
@@ -100,7 +100,7 @@ def _arc(field: Field, points: Array, weight: Array, spans: Array) -> Arc | None
     chord = ends[2] - ends[0]
     sag = np.linalg.norm(np.cross(ends[1] - ends[0], chord)) / max(float(np.linalg.norm(chord)), 1e-300)
     bow = 0.3 * sag  # root mean square of an arc about its chord
-    nearer = straight**2 - rest**2 > 0.5 * bow**2
+    nearer = straight**2 - rest**2 > 0.3 * bow**2
     return arc if sag > BENT * field.size and rest < 0.4 * sag and nearer else None
 
 

@@ -15,7 +15,7 @@ THRESHOLDS = {
     "contrast": 4.0,
     "sharp edges": 3.0,
     "turn against the bending beside it": 0.2,
-    "abrupt edges": 2.0,
+    "abrupt edges": 2.5,
     "steepness": 2.5,
     "slenderness": 1 / 0.16,
     "turn about the line": 0.85,
@@ -25,6 +25,8 @@ THRESHOLDS = {
 }
 # Bending crowds at any clamp, so a band that lies on one must be clearer.
 AT_CLAMP = {"contrast": 6.0, "sharp edges": 4.5, "abrupt edges": 3.0, "steepness": 3.5}
+# A joint's surroundings are crowded, which blurs its edges; but it must stand out and turn all the more.
+AT_JOINT = {"contrast": 8.0, "abrupt edges": 2.0, "turn against the bending beside it": 0.3}
 STRONG_SCORE, STRONG_TURN = 1.5, 0.35
 _JOINT_SIZE = 0.6  # a joint as large as this share over the bound on slenderness, 1/10 of the part, is none
 _CAPPED = {"turn about the line", "one sense along the line", "even density across"}  # shares: they say no more
@@ -59,7 +61,7 @@ def score(field: Field, draft: Draft) -> tuple[float, str]:
     """Smallest figure over its threshold and the name of that gate. Shares pass or fail and never count above 1.5
     times their threshold's worth."""
     ratios = {}
-    thresholds = THRESHOLDS | AT_CLAMP if draft.grounded else THRESHOLDS
+    thresholds = THRESHOLDS | (AT_JOINT if is_joint(draft) else {}) | (AT_CLAMP if draft.grounded else {})
     for name, value in values(field, draft).items():
         ratio = value / thresholds[name]
         ratios[name] = max(ratio, 3.0) if name in _CAPPED and ratio >= 1 else ratio

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from viewer.errors import HingelightError, RefusedError
-from viewer.insight.hinges.band import Draft, examine
+from viewer.insight.hinges.band import Draft, Examiner
 from viewer.insight.hinges.candidates import candidates
 from viewer.insight.hinges.curve import Line
 from viewer.insight.hinges.field import Field, make_field
@@ -125,9 +125,10 @@ def _chosen(field: Field, progress: Progress) -> list[tuple[Draft, float, str]]:
     found: list[tuple[Draft, float, str]] = []
     seen: set[bytes] = set()
     proposed = candidates(field, progress)
+    examine = Examiner(field)
     for i, cells in enumerate(proposed):
         progress.tick("looking at bands", i, len(proposed))
-        draft = examine(field, cells)
+        draft = examine(cells)
         if draft is None or draft.cells.tobytes() in seen:
             continue
         seen.add(draft.cells.tobytes())
@@ -145,7 +146,8 @@ def _chosen(field: Field, progress: Progress) -> list[tuple[Draft, float, str]]:
 
 def _rank(draft: Draft, worth: float) -> float:
     """Which of the candidates for one band is taken: much energy, sharp edges, one sense along the line."""
-    return min(worth, 2.0) * np.sqrt(draft.strain) * draft.even * np.sqrt(min(draft.jump, 5.0))
+    sharp = min(draft.jump, 5.0) ** 0.5 * min(draft.step, 30.0) ** 0.25
+    return float(min(worth, 2.0) * np.sqrt(draft.strain) * draft.even * sharp)
 
 
 def _apart(field: Field, one: Draft, other: Draft) -> bool:
