@@ -223,13 +223,14 @@ def lay_out(design: Design, progress: Progress = SILENT, *, formulations: Mappin
             file=mesh.source or None,
             do="assign a material to the cells, for instance to '*'",
         )
+    small = dof.astype(np.int32)  # half the room: every cell names all its directions
     blocks = tuple(
         ElementGroup(
             formulation,
             prop,
             frozen(cells),
             frozen(nodes),
-            frozen(dof[nodes][:, :, : 6 if formulation.rotations else 3].reshape(len(nodes), -1)),
+            frozen(small[nodes, : 6 if formulation.rotations else 3].reshape(len(nodes), -1)),
         )
         for formulation, prop, cells, nodes in parts
     )

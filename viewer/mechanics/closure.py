@@ -34,7 +34,7 @@ from viewer.model.arrays import Array
 
 FACTOR_LIMIT = 200_000  # free directions up to which A is factorised; beyond, x is searched for
 MOST_ROOM = 4 * 10**9  # bytes of the matrices for that search
-_COLUMNS = 4  # vectors searched for at a time: each takes the room of six
+_NUMBERS = 8_000_000  # in the vectors searched for at a time; each takes the room of nine
 _ENOUGH = 2e-4  # of the whole energy: what a search may leave open
 
 
@@ -159,8 +159,7 @@ class _Lean(LeanMatrices):
         correct = self._zones.correction(alpha, progress)
 
         def push(way: Array) -> Array:
-            full = self._layout.extend(way.T).T
-            return self._layout.force((self.stiffness(full) + alpha * self.mass(full)).T).T
+            return self._layout.force(self.shifted(self._layout.extend(way.T).T, alpha).T).T
 
         return lambda right, enough: search(push, correct, right, enough, progress)
 
@@ -186,8 +185,9 @@ def _missed(layout: Layout, matrices: _Matrices, vectors: Array, omega: Array, p
     for shift in np.unique(alpha):
         same = np.nonzero(alpha == shift)[0]
         solve = matrices.solver(shift, progress)
-        for start in range(0, len(same), _COLUMNS):
-            which = same[start : start + _COLUMNS]
+        most = max(1, _NUMBERS // layout.n_dof)
+        for start in range(0, len(same), most):
+            which = same[start : start + most]
             for part in range(len(parts)):
                 moved = parts[part, which].T
                 right, heavy = matrices.stiffness(moved), matrices.mass(moved)

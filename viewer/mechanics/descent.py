@@ -75,7 +75,7 @@ class Zones:
     """The preconditioner of one layout: blocks of triples and rigid motions of zones, for any α."""
 
     def __init__(self, layout: Layout, matrices: LeanMatrices, progress: Progress = SILENT) -> None:
-        self._blocks = _free_blocks(layout, matrices)
+        self._layout, self._matrices = layout, matrices
         progress.tick("zones")
         triple_node = np.empty(layout.n_dof // 3, np.int64)
         for numbers in layout.dof[:, ::3].T:
@@ -92,14 +92,13 @@ class Zones:
         coarse = sp.csr_array(self._stiffness + alpha * self._mass)
         coarse.sort_indices()
         factor = factorise(coarse, definite=True)
-        stiff, heavy, place = self._blocks
-        local = np.linalg.inv(stiff + alpha * heavy)
+        local, place = _local_inverses(self._layout, self._matrices, alpha)
         motions, mixed = self._motions, self._mixed
 
         def correct(rest: Array) -> Array:
-            padded = np.zeros((3 * len(local), rest.shape[1]))
+            padded = np.zeros((3 * len(local), rest.shape[1]), np.float32)
             padded[place] = rest
-            out = np.matmul(local, padded.reshape(len(local), 3, -1)).reshape(padded.shape)[place]
+            out = np.matmul(local, padded.reshape(len(local), 3, -1)).reshape(padded.shape)[place].astype(float)
             out += motions @ (mixed @ factor.solve(mixed.T @ (motions.T @ rest)).reshape(coarse.shape[0], -1))
             return out
 
@@ -116,18 +115,21 @@ def _still_to_come(gains: list[Array]) -> Array:
     return np.where(ratio < 1, late / np.maximum(1 - ratio, 1e-12), np.inf) * (late > 0)
 
 
-def _free_blocks(layout: Layout, matrices: LeanMatrices) -> tuple[Array, Array, Array]:
-    """Diagonal blocks of K and M of the triples with a free direction, unit blocks where held or following, and the
-    place of every free direction among them. What follows a triple is left out of its block."""
+def _local_inverses(layout: Layout, matrices: LeanMatrices, alpha: float) -> tuple[Array, Array]:
+    """Inverses (t, 3, 3), in single precision, of the diagonal blocks of K + αM of the triples with a free direction,
+    unit blocks where held or following, and the place of every free direction among them. What follows a triple is
+    left out of its block."""
     triples, which = np.unique(layout.free // 3, return_inverse=True)
     place = 3 * which + layout.free % 3
     free = np.zeros((len(triples), 3), bool)
     free[which, layout.free % 3] = True
-    stiff, heavy = (blocks[triples] * (free[:, :, None] & free[:, None, :]) for blocks in matrices.blocks())
-    stiff[:, range(3), range(3)] += ~free
-    idle = (stiff[:, range(3), range(3)] <= 0) & (heavy[:, range(3), range(3)] <= 0)  # moved by followers only
-    stiff[:, range(3), range(3)] += idle * max(float(stiff.max(initial=0.0)), 1.0)
-    return stiff, heavy, place
+    blocks, heavy = matrices.blocks()
+    blocks += alpha * heavy
+    blocks = blocks[triples] * (free[:, :, None] & free[:, None, :])
+    least = blocks[:, range(3), range(3)].max(initial=0.0) or 1.0
+    idle = free & (blocks[:, range(3), range(3)] <= 0)  # moved by followers only
+    blocks[:, range(3), range(3)] += least * (idle | ~free)
+    return np.linalg.inv(blocks).astype(np.float32), place
 
 
 def _boxes(points: Array, used: Array) -> Array:
@@ -172,9 +174,10 @@ def _rigid_motions(layout: Layout, zone: Array, triple_node: Array) -> tuple[sp.
     strength, axes = np.linalg.eigh(gram)
     shown = strength > _SEEN * np.maximum(strength[:, -1:], 1e-300)
     axes = np.where(shown[:, None, :], axes / np.sqrt(np.where(shown, strength, 1.0))[:, None, :], 0.0)
-    column = np.broadcast_to(6 * where[:, None] + np.arange(6), rows.shape)
+    del spins, arms
+    column = (6 * where[:, None] + np.arange(6)).astype(np.int32)
     filled = rows != 0
-    ends = np.append(0, np.cumsum(filled.sum(axis=1)))
+    ends = np.append(0, np.cumsum(filled.sum(axis=1))).astype(np.int32)
     plain = sp.csr_array((rows[filled], column[filled], ends), shape=(len(free), 6 * zones))
     mixed = sp.bsr_array((axes, np.arange(zones), np.arange(zones + 1))).tocsr()[:, np.nonzero(shown.ravel())[0]]
     return plain, sp.csr_array(mixed)
@@ -184,6 +187,8 @@ def _lifted(layout: Layout, basis: sp.csr_array) -> sp.csr_array:
     """The sparse basis (n_free, c) on all directions."""
     if layout.follow is not None:
         return sp.csr_array(layout.follow[:, layout.free] @ basis)
-    lengths = np.zeros(layout.n_dof + 1, np.int64)
+    lengths = np.zeros(layout.n_dof + 1, np.int32)
     lengths[layout.free + 1] = np.diff(basis.indptr)
-    return sp.csr_array((basis.data, basis.indices, np.cumsum(lengths)), shape=(layout.n_dof, basis.shape[1]))
+    return sp.csr_array(
+        (basis.data, basis.indices, np.cumsum(lengths, dtype=np.int32)), shape=(layout.n_dof, basis.shape[1])
+    )

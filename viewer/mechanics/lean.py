@@ -36,24 +36,25 @@ class LeanMatrices:
         progress.tick("pattern of the matrices")
         graph = sp.triu(joined_triples(layout), 1, format="csr")
         graph.sort_indices()
-        self._place = sp.csr_array((np.arange(graph.nnz, dtype=np.int32), graph.indices, graph.indptr), graph.shape)
-        self._place.has_canonical_format = True
-        self._stiffness = self._sum(layout, "stiffness", 9, progress)
+        self._ends, self._others, self.n_pairs = graph.indptr, graph.indices, graph.nnz
+        place = sp.csr_array((np.arange(graph.nnz, dtype=np.int32), graph.indices, graph.indptr), graph.shape)
+        place.has_canonical_format = True
+        del graph
+        self._stiffness = _summed(layout, place, "stiffness", 9, progress)
         scalar = all(group.formulation.scalar_mass for group in layout.blocks)
-        self._mass = self._sum(layout, "mass", 1 if scalar else 9, progress)
-
-    @property
-    def n_pairs(self) -> int:
-        """Blocks above the diagonal."""
-        return self._place.nnz
+        self._mass = _summed(layout, place, "mass", 1 if scalar else 9, progress)
 
     def stiffness(self, columns: Array) -> Array:
         """K x of real columns (n_dof, k)."""
-        return self._stiffness.times(columns)
+        return self._stiffness.add(columns, np.zeros(columns.shape))
 
     def mass(self, columns: Array) -> Array:
         """M x of real columns (n_dof, k)."""
-        return self._mass.times(columns)
+        return self._mass.add(columns, np.zeros(columns.shape))
+
+    def shifted(self, columns: Array, alpha: float) -> Array:
+        """(K + αM) x of real columns (n_dof, k)."""
+        return self._stiffness.add(columns, self._mass.add(columns, np.zeros(columns.shape), alpha))
 
     def onto(self, basis: sp.csr_array) -> tuple[sp.csr_array, sp.csr_array]:
         """BᵀKB and BᵀMB of a sparse basis (n_dof, c)."""
@@ -65,35 +66,39 @@ class LeanMatrices:
 
     def parts(self, label: Array) -> Array:
         """Labels (n_dof / 3,) from 0 for the connected parts of sets of triples of one ``label``."""
-        rows = np.repeat(np.arange(self._place.shape[0], dtype=np.int32), np.diff(self._place.indptr))
-        kept = label[rows] == label[self._place.indices]
-        ends = (rows[kept], self._place.indices[kept])
-        graph = sp.coo_array((np.ones(len(ends[0]), bool), ends), shape=self._place.shape)
+        rows = np.repeat(np.arange(len(label), dtype=np.int32), np.diff(self._ends))
+        kept = label[rows] == label[self._others]
+        count = np.append(0, np.cumsum(np.bincount(rows[kept], minlength=len(label)))).astype(np.int32)
+        del rows
+        # real numbers: SciPy would copy any other kind
+        graph = sp.csr_array((np.ones(int(count[-1])), self._others[kept], count), shape=(len(label),) * 2)
         return sp.csgraph.connected_components(graph, directed=False)[1]
 
-    def _sum(self, layout: Layout, what: str, count: int, progress: Progress) -> _Half:
-        upper, diagonal = np.zeros((count, self._place.nnz)), np.zeros((count, self._place.shape[0]))
-        done, total = 0, sum(len(group) for group in layout.blocks)
-        for group in layout.blocks:
-            for part in group.chunks(_CHUNK):
-                progress.tick(what, done, total)
-                self._add(upper, diagonal, group.dofs[part, ::3] // 3, getattr(group, what)(layout.points, part))
-                done += part.stop - part.start
-        return _Half(self._place, upper, diagonal, layout.springs if what == "stiffness" else layout.masses)
 
-    def _add(self, upper: Array, diagonal: Array, triples: Array, matrices: Array) -> None:
-        cells, nodes = triples.shape
-        if len(upper) == 9 and matrices.shape[1] == nodes:  # a scalar mass among full ones
-            matrices = np.einsum("eij,ab->eiajb", matrices, np.eye(3))
-        size = 3 if len(upper) == 9 else 1
-        blocks = matrices.reshape(cells, nodes, size, nodes, size).transpose(2, 4, 0, 1, 3)
-        blocks = blocks.reshape(len(upper), cells, nodes, nodes)
-        rows, columns = np.broadcast_arrays(triples[:, :, None], triples[:, None, :])
-        same, above = rows == columns, rows < columns  # a collapsed cell names a node twice
-        place = np.asarray(self._place[rows[above], columns[above]]).astype(np.intp)
-        for values, whole, block in zip(upper, diagonal, blocks, strict=True):
-            np.add.at(values, place, block[above])
-            np.add.at(whole, rows[same], block[same])
+def _summed(layout: Layout, place: sp.csr_array, what: str, count: int, progress: Progress) -> _Half:
+    upper, diagonal = np.zeros((count, place.nnz)), np.zeros((count, place.shape[0]))
+    done, total = 0, sum(len(group) for group in layout.blocks)
+    for group in layout.blocks:
+        for part in group.chunks(_CHUNK):
+            progress.tick(what, done, total)
+            _add(upper, diagonal, place, group.dofs[part, ::3] // 3, getattr(group, what)(layout.points, part))
+            done += part.stop - part.start
+    return _Half(place, upper, diagonal, layout.springs if what == "stiffness" else layout.masses)
+
+
+def _add(upper: Array, diagonal: Array, place: sp.csr_array, triples: Array, matrices: Array) -> None:
+    cells, nodes = triples.shape
+    if len(upper) == 9 and matrices.shape[1] == nodes:  # a scalar mass among full ones
+        matrices = np.einsum("eij,ab->eiajb", matrices, np.eye(3))
+    size = 3 if len(upper) == 9 else 1
+    blocks = matrices.reshape(cells, nodes, size, nodes, size).transpose(2, 4, 0, 1, 3)
+    blocks = blocks.reshape(len(upper), cells, nodes, nodes)
+    rows, columns = np.broadcast_arrays(triples[:, :, None], triples[:, None, :])
+    same, above = rows == columns, rows < columns  # a collapsed cell names a node twice
+    where, middle = np.asarray(place[rows[above], columns[above]]).astype(np.intp), rows[same].astype(np.intp)
+    for values, whole, block in zip(upper, diagonal, blocks, strict=True):
+        np.add.at(values, where, block[above])
+        np.add.at(whole, middle, block[same])
 
 
 class _Half:
@@ -115,16 +120,17 @@ class _Half:
             ends = item.dofs[piece.row], item.dofs[piece.col]
             self._attached += sp.coo_array((piece.data, ends), shape=(size, size)).tocsr()
 
-    def times(self, columns: Array) -> Array:
-        given = [np.ascontiguousarray(columns[a::3]) for a in range(3)]
-        out = self._attached @ columns
-        for a in range(3):
-            for b in range(3):
+    def add(self, columns: Array, out: Array, factor: float = 1.0) -> Array:
+        """``out`` with factor · A x added, of columns x (n, k)."""
+        out += factor * (self._attached @ columns)
+        for b in range(3):
+            given = factor * columns[b::3]
+            for a in range(3):
                 above, below, middle = self._upper[a][b], self._upper[b][a], self._middle[a][b]
                 if above is not None and below is not None and middle is not None:
-                    out[a::3] += above @ given[b]
-                    out[a::3] += below.T @ given[b]
-                    out[a::3] += middle[:, None] * given[b]
+                    out[a::3] += above @ given
+                    out[a::3] += below.T @ given
+                    out[a::3] += middle[:, None] * given
         return out
 
     def onto(self, basis: sp.csr_array) -> sp.csr_array:
