@@ -103,9 +103,9 @@ def test_noise_is_taken_out_and_the_mode_stays(name):
             added = error(rough.shape(0), clean)
             assert noise_estimate(part, rough.shape(0)) == pytest.approx(added, rel=0.25)
             found = smoothed(part, rough, 1)
-            # N values and about ten modes below the edge leave √(10/N) of the noise, 0.06 to 0.12; consistent mass
-            # weighs the nodes of a layer of 20-node bricks unevenly (−1/2, 1/3, 2/3), which costs a factor of 3.
-            assert error(found.shape, clean) < (0.5 if part.mesh.blocks[0].kind == "hex20" else 0.28) * added
+            # N values (about 1 000, a third along the sheet's normal) and up to ten modes below the edge leave
+            # √(10 · 3/N) of the noise: 0.17, with some chance above.
+            assert error(found.shape, clean) < 0.25 * added
             assert found.noise == pytest.approx(added, rel=0.1)
             assert not found.foreign
             assert mac(found.shape.ravel(), clean.ravel()) > 0.9998
@@ -113,7 +113,7 @@ def test_noise_is_taken_out_and_the_mode_stays(name):
             after = energies(part, found.modes, judged=False)
             assert after.closure[0] == pytest.approx(1, abs=0.001)
             assert np.abs(after.strain[0] - strain).sum() < 0.02 * strain.sum()
-            assert after.strain[0, band].sum() / strain[band].sum() == pytest.approx(1, abs=0.02)
+            assert after.strain[0, band].sum() / strain[band].sum() == pytest.approx(1, abs=0.05)
 
 
 def test_without_smoothing_the_energies_are_lost():
