@@ -8,6 +8,7 @@ from viewer.cli.animate import animate
 from viewer.cli.check import check
 from viewer.cli.hinges import hinges
 from viewer.cli.modes import modes
+from viewer.cli.pair import pair
 from viewer.cli.review import review
 from viewer.cli.struts import struts
 
@@ -19,7 +20,7 @@ app = typer.Typer(
     pretty_exceptions_enable=False,
     context_settings={"help_option_names": ["-h", "--help"]},
 )
-for command in (review, modes, hinges, struts, animate, check):
+for command in (review, modes, hinges, struts, pair, animate, check):
     app.command()(command)
 
 

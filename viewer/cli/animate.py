@@ -35,6 +35,7 @@ def animate(
     strip: Annotated[bool, typer.Option("--strip", help="Draw a strip of five phases (.png).")] = False,
     peak: Annotated[float | None, typer.Option(min=0.01, max=50, help="Drawn peak in % of the diagonal.")] = None,
     no_energy: Annotated[bool, typer.Option("--no-energy", help="Leave out the energy colours.")] = False,
+    no_hinges: Annotated[bool, typer.Option("--no-hinges", help="Leave out hinges and flaps.")] = False,
     energy: Annotated[
         Literal["own", "given"], typer.Option(help='Whose strain energies: our "own", or "given" with the modes.')
     ] = "own",
@@ -59,6 +60,7 @@ def animate(
     from viewer.export import save_gif, save_mp4, save_png, save_strip
     from viewer.scene.compose import pair_picture, single_picture
     from viewer.scene.showing import Showing
+    from viewer.workspace.comparison import partner
 
     theme_checked(theme)
     opened = workspace(no_cache).open(dossier)
@@ -82,13 +84,14 @@ def animate(
         "node_lines": node_lines,
         "showing": Showing(tuple(hide or ()), tuple(only or ()), _plane(cut) if cut else None),
     }
+    hinges = not (no_hinges or no_energy)
     with progress_bar() as progress:
         # compared modes are sized by energies even where those are not shown
         study = opened.study(first, None, progress, energy=bool(against) or not no_energy)
         if against:
             other, _, number = against.partition(":")
             second = opened.study(other, None, progress)
-            theirs = opened.partner(first, mode, other) if not number else _number(number)
+            theirs = _number(number) if number else partner(opened, study, mode, second, progress)
             picture = pair_picture(
                 study,
                 mode,
@@ -97,6 +100,7 @@ def animate(
                 layout="overlay" if overlay else "side",
                 true_scale=true_scale,
                 energy=not no_energy,
+                findings=(_hinges(study, mode, hinges), _hinges(second, theirs, hinges)),
                 **options,
             )
         else:
@@ -107,6 +111,7 @@ def animate(
                 peak_percent=peak,
                 energy=not no_energy,
                 given_energy=energy == "given" and not no_energy,
+                finding=_hinges(study, mode, hinges),
                 **options,
             )
         if strip:
@@ -119,6 +124,10 @@ def animate(
         answer({"file": target, "note": picture.note.__dict__, "magnification": picture.magnification})
         return
     typer.echo(str(target))
+
+
+def _hinges(study: Any, mode: int, wanted: bool) -> Any:
+    return study.hinges_if_known(study.index_of(mode)) if wanted else None
 
 
 def _number(text: str) -> int:

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from viewer.errors import RefusedError
-from viewer.export.chart import save_chart
+from viewer.export.charts import save_pairing_charts
 from viewer.export.desk import Desk
 from viewer.export.finding_rows import outcome_rows
 from viewer.export.gif_loop import save_gif
@@ -14,8 +14,6 @@ from viewer.export.stills import save_png
 from viewer.insight.outcome import Outcome
 from viewer.jobs import SILENT, Progress
 from viewer.scene.compose import pair_picture
-from viewer.scene.ladder_chart import ladder_chart
-from viewer.scene.mac_chart import mac_chart
 from viewer.workspace import OpenDossier, Study
 from viewer.workspace.comparison import Comparison, compare
 
@@ -60,16 +58,13 @@ def comparison_section(desk: Desk, comparison: Comparison) -> PageSection:
 
 
 def _charts(desk: Desk, comparison: Comparison, stem: str) -> PageLoop:
-    names = [[s.name(i) for i in range(s.count)] for s in (comparison.first, comparison.second)]
-    theme, width = desk.theme, desk.width
-    save_chart(ladder_chart(comparison.pairing, *names, theme=theme), desk.folder / f"{stem}_ladder.png", width=width)
-    save_chart(mac_chart(comparison.pairing, *names, theme=theme), desk.folder / f"{stem}_agreement.png", width=width)
+    ladder, agreement = save_pairing_charts(comparison, desk.folder, stem, desk.theme, desk.width)
     return PageLoop(
         "Which mode became which",
-        still=f"{stem}_ladder.png",
+        still=ladder.name,
         caption=comparison.sentence,
         alt=comparison.sentence,
-        findings=(("how alike the shapes are", f"{stem}_agreement.png"),),
+        findings=(("how alike the shapes are", agreement.name),),
     )
 
 

@@ -5,22 +5,19 @@ from __future__ import annotations
 import os
 from collections.abc import Sequence
 from pathlib import Path
-from typing import Any
 
 import numpy as np
 from PIL import Image
 
+from viewer.export.charts import sheet_image
 from viewer.jobs import SILENT, Progress, atomic_path
 from viewer.model.arrays import Array
 from viewer.scene import view
 from viewer.scene.picture import Picture
-from viewer.scene.primitives import Box, Sheet
+from viewer.scene.primitives import Box
 from viewer.scene.strip_sheet import WIDTH, Strip, strip_layout
 from viewer.scene.tokens import BASE_WIDTH
 from viewer.stage import Stage
-from viewer.stage.sheet_actors import SheetActors
-from viewer.stage.stage import SUPERSAMPLE, reduce
-from viewer.stage.windows import off_screen, pixels
 
 LINES = 1.0  # line widths, of those of a picture 960 wide
 
@@ -43,7 +40,7 @@ def strip_image(picture: Picture, progress: Progress = SILENT, *, width: int = W
     """(h, width, 3) uint8 of the strip."""
     strip = strip_layout(picture)
     scale = width / WIDTH
-    image = _sheet_image(strip.sheet, scale)
+    image = sheet_image(strip.sheet, scale)
     rows = [tuple(_scaled(cell, scale) for cell in row) for row in strip.cells]
     drawn = _drawings(picture, strip, rows, scale, progress)
     for cells, drawings in zip(rows, drawn, strict=True):
@@ -96,16 +93,3 @@ def _paste(image: Array, cells: tuple[Box, ...], drawings: list[Array]) -> None:
         y = round((top + foot - part.shape[0]) / 2)
         x = round((left + right - part.shape[1]) / 2)
         image[y : y + part.shape[0], x : x + part.shape[1]] = part
-
-
-def _sheet_image(sheet: Sheet, scale: float) -> Array:
-    """(h, w, 3) uint8 of a sheet alone, on white; one sheet pixel is ``scale`` pixels."""
-    plotter = off_screen(SUPERSAMPLE * round(scale * sheet.width), SUPERSAMPLE * round(scale * sheet.height))
-    try:
-        plotter.renderer.SetBackground(1, 1, 1)
-        window: Any = plotter.render_window
-        window.SetMultiSamples(0)
-        SheetActors(plotter.renderer).show(sheet)
-        return np.array(reduce(pixels(window)))
-    finally:
-        plotter.close()

@@ -57,7 +57,8 @@ def _rail(x: float, at: Sequence[float], colour: str, side: int) -> list[Primiti
 
 
 def _scale(low: float, high: float, y, tokens: Tokens) -> list[Primitive]:
-    middle, items = sum(RAILS) / 2, []
+    middle = sum(RAILS) / 2
+    items: list[Primitive] = []
     for value in ticks(low, high, 7):
         items.append(Text(middle, y(value) + 5, f"{value:g}", tokens.soft, TEXT_SMALL, False, "middle"))
         items.append(Line(((RAILS[0], y(value)), (RAILS[0] + 8, y(value))), tokens.soft, 1.0))

@@ -6,11 +6,13 @@ from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from typing import Any
 
+from viewer.errors import InputError
 from viewer.insight.outcome import Outcome, outcome
 from viewer.insight.pairing import ModePair, Pairing, pair
 from viewer.jobs import SILENT, Progress
 from viewer.workspace.explanation import asked
 from viewer.workspace.study import Study
+from viewer.workspace.workspace import OpenDossier
 
 STATED, BY_SHAPE = "paired by the dossier", "paired by shape"
 
@@ -62,6 +64,22 @@ def compare(
     pairs = _with_stated(found, stated)
     outcomes = tuple(_outcome(first, second, p, explain, progress) for p in pairs)
     return Comparison(first, second, replace(found, pairs=pairs), outcomes, frozenset(one for one, _ in stated))
+
+
+def partner(opened: OpenDossier, first: Study, mode: int, second: Study, progress: Progress = SILENT) -> int:
+    """Number of the mode of ``second`` that mode ``mode`` of ``first`` became: as the dossier states, else by shape.
+
+    ``InputError`` when none looks like it.
+    """
+    first.index_of(mode)
+    stated = opened.stated_pairs(first.design.name, second.design.name)
+    found = dict(stated).get(mode) or compare(first, second, stated, progress, explain=False).pairing.partner(mode)
+    if found is None:
+        raise InputError(
+            f"mode {mode} of '{first.design.name}' has no counterpart among the modes of '{second.design.name}'",
+            do=f"name one: {second.design.name}:NUMBER",
+        )
+    return found
 
 
 def _with_stated(found: Pairing, stated: Sequence[tuple[int, int]]) -> tuple[ModePair, ...]:

@@ -112,6 +112,11 @@ class Study:
             return None
         return 2 * float(self.energies.total_kinetic[index]) / self.modes.omega(index) ** 2
 
+    @property
+    def names(self) -> tuple[str, ...]:
+        """The user's names by mode, empty where there is none."""
+        return tuple(self.name(index) for index in range(self.count))
+
     def name(self, index: int) -> str:
         """The user's name of mode ``index`` (from 0), or empty."""
         return self.design.mode_names.get(index + 1, "")

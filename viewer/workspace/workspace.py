@@ -145,15 +145,6 @@ class OpenDossier:
         """What reading the named design's mesh found hard to believe: an implausible size, nodes far off."""
         return tuple(f"{name}: {words}" for words in self.workspace.report(self.dossier, name).warnings)
 
-    def partner(self, first: str, mode: int, second: str) -> int:
-        """Number of the mode of ``second`` that the dossier pairs with mode ``mode`` of ``first``; else the same."""
-        for pair in self.dossier.pairs:
-            here, there = (pair.first_design, pair.first_mode), (pair.second_design, pair.second_mode)
-            for mine, theirs in ((here, there), (there, here)):
-                if mine == (first, mode) and theirs[0] == second:
-                    return theirs[1]
-        return mode
-
     def stated_pairs(self, first: str, second: str) -> tuple[tuple[int, int], ...]:
         """Numbers of the modes of two designs that the dossier says correspond."""
         found = []

@@ -1,4 +1,4 @@
-"""A flat chart as a PNG."""
+"""Flat charts as PNG."""
 
 from __future__ import annotations
 
@@ -11,11 +11,14 @@ from PIL import Image
 
 from viewer.jobs import SILENT, Progress, atomic_path
 from viewer.model.arrays import Array
+from viewer.scene.ladder_chart import ladder_chart
+from viewer.scene.mac_chart import mac_chart
 from viewer.scene.primitives import Sheet
 from viewer.scene.tokens import BASE_WIDTH
 from viewer.stage.sheet_actors import SheetActors
 from viewer.stage.stage import SUPERSAMPLE, reduce
 from viewer.stage.windows import off_screen, pixels
+from viewer.workspace.comparison import Comparison
 
 
 def save_chart(
@@ -26,6 +29,18 @@ def save_chart(
     with atomic_path(path) as part:
         Image.fromarray(sheet_image(sheet, width / sheet.width)).save(part, format="PNG")
     return Path(path)
+
+
+def save_pairing_charts(
+    comparison: Comparison, folder: Path, stem: str, theme: str = "light", width: int = BASE_WIDTH
+) -> tuple[Path, Path]:
+    """The ladder of frequencies and the field of agreement of a comparison; returns both paths."""
+    first, second = comparison.first.names, comparison.second.names
+    ladder, field = (chart(comparison.pairing, first, second, theme) for chart in (ladder_chart, mac_chart))
+    return (
+        save_chart(ladder, folder / f"{stem}_ladder.png", width=width),
+        save_chart(field, folder / f"{stem}_agreement.png", width=width),
+    )
 
 
 def sheet_image(sheet: Sheet, scale: float = 1.0) -> Array:
