@@ -18,7 +18,7 @@ from tests.mechanics.models import CLAMP, STEEL, design
 from tests.meshes import box_mesh, plate_mesh
 from viewer.errors import Cancelled, RefusedError
 from viewer.insight.correlate import mac
-from viewer.insight.smoothing import NOISE_BOUND, noise_estimate, smoothed
+from viewer.insight.smoothing import NOISE_BOUND, needs_smoothing, noise_estimate, smoothed
 from viewer.jobs import Progress
 from viewer.mechanics.eigen import solve
 from viewer.mechanics.energy import energies
@@ -122,6 +122,19 @@ def test_without_smoothing_the_energies_are_lost():
     modes = solve(part, 1)
     rough = energies(part, one(modes, 0, LEVEL), judged=False)
     assert rough.closure[0] > 10
+
+
+def test_little_noise_is_smoothed_where_it_spoils_energies():
+    part = grooved_sheet()
+    modes = solve(part, 6)
+    for index, level, needed in ((0, 0.0, False), (0, 3e-4, True), (5, 1e-4, False), (5, LEVEL, True)):
+        rough = one(modes, index, level)
+        closure = energies(part, rough, judged=False).closure[0]
+        assert needs_smoothing(noise_estimate(part, rough.shape(0)), closure) is needed
+        assert needed or abs(closure - 1) < 0.02
+    assert not needs_smoothing(float("nan"), 1.5)
+    assert not needs_smoothing(1e-9, float("nan"))  # a rigid-body mode
+    assert needs_smoothing(1e-3, float("nan"))  # no material stated, no closure
 
 
 def test_clean_shapes_pass_unchanged():
