@@ -38,7 +38,7 @@ def test_every_public_name_resolves():
         viewer.no_such_name  # noqa: B018
 
 
-@pytest.mark.parametrize("command", ["review", "modes", "check"])
+@pytest.mark.parametrize("command", ["review", "modes", "hinges", "struts", "pair", "check"])
 def test_missing_dossier_is_one_line_and_exit_1(command, tmp_path):
     done = run(command, str(tmp_path / "nowhere" / "dossier.toml"))
     assert done.returncode == 1

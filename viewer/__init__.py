@@ -21,7 +21,13 @@ _WHERE = {
     "still": "viewer.script",
     "Showing": "viewer.scene.showing",
     "Plane": "viewer.scene.section",
+    "find_hinges": "viewer.insight.hinges",
+    "describe": "viewer.insight.character",
+    "gain_map": "viewer.insight.gain",
+    "strut_trial": "viewer.insight.strut",
     "mac": "viewer.insight.correlate",
+    "pair": "viewer.script",
+    "Strut": "viewer.model.design",
     "Material": "viewer.model.design",
     "Assignment": "viewer.model.design",
     "Selector": "viewer.model.design",
@@ -42,7 +48,11 @@ __all__ = ["__version__", *_WHERE]
 
 if TYPE_CHECKING:
     from viewer.errors import HingelightError
+    from viewer.insight.character import describe
     from viewer.insight.correlate import mac
+    from viewer.insight.gain import gain_map
+    from viewer.insight.hinges import find_hinges
+    from viewer.insight.strut import strut_trial
     from viewer.loaders import write_interchange
     from viewer.model.design import (
         Assignment,
@@ -53,13 +63,14 @@ if TYPE_CHECKING:
         Physics,
         Selector,
         Spring,
+        Strut,
         Support,
     )
     from viewer.model.mesh import CellBlock, Mesh
     from viewer.model.modes import ArrayShapes, ModeSet
     from viewer.scene.section import Plane
     from viewer.scene.showing import Showing
-    from viewer.script import animate, energies, open_dossier, read_mesh, read_modes, solve, still
+    from viewer.script import animate, energies, open_dossier, pair, read_mesh, read_modes, solve, still
 
 
 def __getattr__(name: str) -> object:

@@ -18,9 +18,10 @@ from viewer.model.design import Design
 from viewer.model.dossier import StatedAmplitude
 from viewer.model.modes import ModeSet
 from viewer.scene.picture import Picture
-from viewer.workspace import OpenDossier, Workspace, study
+from viewer.workspace import OpenDossier, Study, Workspace, study
+from viewer.workspace.comparison import Comparison, compare
 
-__all__ = ["animate", "energies", "open_dossier", "read_mesh", "read_modes", "solve", "still"]
+__all__ = ["animate", "energies", "open_dossier", "pair", "read_mesh", "read_modes", "solve", "still"]
 
 
 def open_dossier(path: str | os.PathLike[str], *, cache: bool = True) -> OpenDossier:
@@ -39,6 +40,11 @@ def energies(design: Design, modes: ModeSet, progress: Progress = SILENT) -> Ene
     if states_no_material(design):
         return relative_energies(design, modes, progress)
     return form_energies(design, modes, progress=progress)
+
+
+def pair(first: Study, second: Study, progress: Progress = SILENT) -> Comparison:
+    """Which mode of one study became which of another, by shape: ``pair(opened.study("a"), opened.study("b"))``."""
+    return compare(first, second, progress=progress)
 
 
 @dataclass(frozen=True, eq=False)
@@ -75,13 +81,15 @@ def animate(
     condition: str = "",
     **options: Any,
 ) -> Loop:
-    """The loop of mode number ``mode``; ``options`` are those of ``viewer.scene.compose.single_picture``:
+    """The loop of mode number ``mode``, its hinges and flaps marked where energies are drawn; ``options`` are those of ``viewer.scene.compose.single_picture``:
     true_scale, peak_percent, energy, theme, width, ghost, mesh_edges, node_lines, showing, view. Parts:
     ``showing=viewer.Showing(hide=("lid",), plane=viewer.Plane((1, 0, 0), 0.12))``."""
     from viewer.scene.compose import single_picture
 
     stated = {a.mode: a for a in amplitudes}
     studied = study(design, modes, stated, condition, energy=options.get("energy", True))
+    if options.get("energy", True):
+        options.setdefault("finding", studied.hinges_if_known(studied.index_of(mode)))
     return Loop(single_picture(studied, mode, **options))
 
 
