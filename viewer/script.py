@@ -81,7 +81,9 @@ def animate(
     condition: str = "",
     **options: Any,
 ) -> Loop:
-    """The loop of mode number ``mode``, its hinges and flaps marked where energies are drawn; ``options`` are those of ``viewer.scene.compose.single_picture``:
+    """The loop of mode number ``mode``, its hinges and flaps marked where energies are drawn.
+
+    ``options`` are those of ``viewer.scene.compose.single_picture``:
     true_scale, peak_percent, energy, theme, width, ghost, mesh_edges, node_lines, showing, view. Parts:
     ``showing=viewer.Showing(hide=("lid",), plane=viewer.Plane((1, 0, 0), 0.12))``."""
     from viewer.scene.compose import single_picture
