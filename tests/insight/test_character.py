@@ -13,10 +13,21 @@ from tests.meshes import box_mesh, line_mesh, plate_mesh
 from tests.sentences import unfounded
 from viewer.errors import InputError
 from viewer.insight.character import describe, facing_surfaces, masses_of
+from viewer.insight.effective_mass import effective_masses
 from viewer.insight.scale import scale_mode
 from viewer.mechanics.eigen import solve
 from viewer.mechanics.energy import energies
-from viewer.model.design import Assignment, Design, FunctionalPoint, LumpedMass, Physics, Section, Selector, Spring
+from viewer.model.design import (
+    Assignment,
+    Design,
+    FunctionalPoint,
+    LumpedMass,
+    Physics,
+    Section,
+    Selector,
+    Spring,
+    Strut,
+)
 from viewer.model.dossier import StatedAmplitude
 from viewer.model.mesh import Mesh
 from viewer.model.modes import ArrayShapes, ModeSet
@@ -280,6 +291,20 @@ def test_a_heavy_lumped_mass_is_told():
     share = found.to_dict()["lumped_kinetic_share"]["block"]
     assert share > 0.9
     assert f"the block carries {share:.0%} of the kinetic energy" in found.sentence
+
+
+def test_a_struts_mass_is_part_of_it():
+    """Half of a strut at either end; the modes' motion weighs it where it is."""
+    strut = Strut("rod", Selector(group="z0"), Selector(group="z1"), 1.0, mass=4.0)
+    braced = bar(struts=(strut,))
+    modes = solve(braced, 7)
+    facts = describe(braced, modes, 7).to_dict()
+    bare = STEEL.density * 0.03 * 0.04 * 0.5
+    assert effective_masses(braced, modes).whole[0] == pytest.approx(bare + 4.0, rel=1e-9)
+    assert facts["lumped_kinetic_share"]["rod"] == pytest.approx(
+        energies(braced, modes, [6]).masses.sum() / energies(braced, modes, [6]).total_kinetic[0]
+    )
+    assert facts["long_axis"]["bending_share"] > 0.99
 
 
 def test_energies_of_a_set_are_taken_by_mode():

@@ -18,7 +18,7 @@ from viewer.mechanics.energy import Energies, energies
 from viewer.mechanics.relative import ASSUMED, assume_material, relative_energies, states_no_material
 from viewer.mechanics.sums import cell_energies, cell_volumes
 from viewer.model.arrays import Array
-from viewer.model.design import Assignment, Design, Physics, Property, Section
+from viewer.model.design import Assignment, Design, Physics, Property, Section, Strut
 from viewer.model.mesh import Mesh
 from viewer.model.modes import ArrayShapes, ModeSet
 
@@ -101,10 +101,20 @@ def weighed_points(design: Design, moving: Moving, shape: Array) -> tuple[Array,
         count = block.nodes.shape[1]
         part = np.repeat(moving.masses[start : start + len(block)] / count, count)
         weight += np.bincount(block.nodes.ravel(), part, minlength=mesh.n_nodes)
-    carried = carried_points(design)[: len(moving.lumped)]
-    points = np.concatenate([mesh.points, *(item.position[None] for item in carried)])
-    motion = np.concatenate([shape, *(item.motion(shape)[None, :3] for item in carried)])
-    return points, np.concatenate([weight, moving.lumped]), motion
+    if not len(moving.lumped):
+        return mesh.points, weight, shape
+    carried = carried_points(design)[: len(design.physics.masses)]
+    places = [(item.position, item.motion(shape)[:3]) for item in carried]
+    for strut in _heavy_struts(design):
+        for end in (strut.where, strut.other):
+            rows = end.rows(mesh, f"strut '{strut.name}'")
+            places.append((mesh.points[rows].mean(axis=0), shape[rows].mean(axis=0)))
+    where, how = (np.stack(part) for part in zip(*places, strict=True))
+    return np.concatenate([mesh.points, where]), np.concatenate([weight, moving.lumped]), np.concatenate([shape, how])
+
+
+def _heavy_struts(design: Design) -> list[Strut]:
+    return [strut for strut in design.physics.struts if strut.mass > 0]
 
 
 def _formed(design: Design, alone: ModeSet, progress: Progress) -> Energies:
@@ -191,12 +201,14 @@ def _alone(modes: ModeSet, index: int) -> ModeSet:
 
 
 def _masses(design: Design, found: Energies) -> tuple[Array, Array]:
-    """Masses (n_cells,) of the cells, kg (or volumes of the one assumed material), and of the lumped masses."""
+    """Masses (n_cells,) of the cells, kg (or volumes of the one assumed material), and of the lumped masses: those
+    stated, then half of each strut at either end, as in ``assembly.Layout``."""
     if found.relative:
         return np.array(found.volumes), np.zeros(0)
     properties, index = design.properties
     density = np.array([*(_density(prop) for prop in properties), 0.0])
-    return found.volumes * density[index], np.array([item.mass for item in design.physics.masses])
+    ends = [strut.mass / 2 for strut in _heavy_struts(design) for _ in range(2)]
+    return found.volumes * density[index], np.array([*(item.mass for item in design.physics.masses), *ends])
 
 
 def _density(prop: Property) -> float:
