@@ -21,6 +21,10 @@ def facing_view(body: Body, cells: Array, view: View) -> View:
     """The first of ``view`` and its mirror images about the axes that shows enough of ``cells``: looked at from the
     same height before from below."""
     views = [replace(view, toward_eye=tuple(np.multiply(turn, view.toward_eye).tolist())) for turn in _MIRRORS]
+    normals = 0.5 * cross_of(body.mesh.points, body.drawn.faces[np.isin(body.drawn.cell, cells)])
+    most = max(float(np.abs(normals @ axes(candidate)[2]).sum()) for candidate in views)  # were nothing in the way
+    if seen_area(body, cells, view) >= ENOUGH * most:
+        return view
     shown = np.array([seen_area(body, cells, candidate) for candidate in views])
     return views[int(np.argmax(shown >= ENOUGH * shown.max()))]
 
@@ -56,7 +60,7 @@ def _cover(depth: Array, corners: Array) -> None:
     for _ in range(10):
         for point in corners.transpose(1, 0, 2):
             x, y = point[:, :2].astype(np.int64).T
-            np.maximum.at(depth, (x, y), point[:, 2])
+            np.maximum.at(depth.reshape(-1), x * depth.shape[1] + y, point[:, 2])  # flat: many times faster
         large = (np.ptp(corners[:, :, :2], axis=1) > 1.0).any(axis=1)
         if not large.any():
             return

@@ -94,8 +94,10 @@ def _held_faces(mesh: Mesh, rows: Array) -> tuple[Array, Array]:
         inner[faces] = True
         inner[pairs[beside == 1]] = False
     outline = ~inner[rows]
-    solid = np.concatenate([np.full(len(block), KINDS[block.kind].dim == 3) for block in mesh.blocks] or [[]])
-    of_solids = faces[solid[skin.cell[mine]].astype(bool)]
+    solid = np.zeros(mesh.n_cells, bool)
+    for block, start in zip(mesh.blocks, mesh.block_starts[:-1], strict=True):
+        solid[start : start + len(block)] = KINDS[block.kind].dim == 3
+    of_solids = faces[solid[skin.cell[mine]]]
     normals = np.zeros((mesh.n_nodes, 3))
     for corner in of_solids.T:
         np.add.at(normals, corner, cross_of(mesh.points, of_solids))
