@@ -191,7 +191,7 @@ def tiny_tab(rng: np.random.Generator, i: int) -> Sheet:
     start, low = s * rng.uniform(0.45, 0.6), t * rng.uniform(0.3, 0.6)
     width, h, thin = wide * rng.uniform(0.06, 0.09), s / rng.uniform(22, 30), long / rng.uniform(22, 30)
     box = (start, start + width, low, low + wide)
-    band = Band(box, (start - 0.5 * width, start + 1.5 * width, low, low + wide), through=False)
+    band = Band(box, (start - 0.5 * width, start + 1.5 * width, low, low + wide))
     end = start + long
     patches = (
         Patch((start, end + slit, low - slit, low), 0),

@@ -6,15 +6,16 @@ middle of the sheet, sampled in s and t); a pair counts when MAC ≥ 0.9 and a b
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterable, Sequence
 
 import numpy as np
 from scipy.interpolate import LinearNDInterpolator, NearestNDInterpolator
 from scipy.optimize import linear_sum_assignment
 
 from tests.collection.parts import Part
+from tests.collection.registry import part_named
 from tests.collection.scoring import NEAR, gap, in_plane, named
-from tests.collection.sheets import Sheet
+from tests.collection.sheets import Sheet, build
 from tests.collection.solved import Solved, solved
 from viewer.insight.correlate import mac
 from viewer.insight.hinges import Hinge, find_hinges
@@ -84,14 +85,14 @@ def compare(first: Solved, second: Solved) -> list[dict]:
                     in_plane(first.built, band, picked[1].position, picked[0].position) / first.built.mesh.diagonal
                 )
             out.append({
-                "mode": i + 1, "band": number + 1, "found": [h is not None for h in picked], "moved": moved,
+                "mode": int(i) + 1, "band": number + 1, "found": [h is not None for h in picked], "moved": moved,
                 "counts": tuple(len(hinges) for hinges in both), "levels": (first.truths[i][number].level,
                                                                            second.truths[j][number].level),
             })  # fmt: skip
     return out
 
 
-def pairs(parts: Sequence[Part]) -> list[tuple[str, Solved, Solved]]:
+def pairs(parts: Sequence[Part]) -> list[tuple[str, Part, Part, int]]:
     """The pairs, one part per family and change."""
     out, done = [], set()
     for part in parts:
@@ -104,23 +105,29 @@ def pairs(parts: Sequence[Part]) -> list[tuple[str, Solved, Solved]]:
         for word, other, density in changes:
             if (part.family, word) in done:
                 continue
-            first, second = solved(part), solved(other, density)
-            if second.built.mesh.n_cells > CELLS * (1 if second.built.solid else 2):
+            mesh = build(other.name, other.sheet, other.kind, density)
+            if mesh.mesh.n_cells > CELLS * (1 if mesh.solid else 2):
                 continue
             done.add((part.family, word))
-            out.append((word, first, second))
+            out.append((word, part, other, density))
     return out
 
 
-def run(parts: Sequence[Part], say: Callable[[str], None]) -> dict[str, float]:
+def _compared(pair: tuple[str, str, int]) -> list[dict]:
+    first, second, density = pair
+    return compare(solved(part_named(first)), solved(part_named(second), density))
+
+
+def run(parts: Sequence[Part], say: Callable[[str], None], each: Callable[..., Iterable] = map) -> dict[str, float]:
     """Totals of all pairs, by kind of change."""
     entries: dict[str, list[dict]] = {}
-    for word, first, second in pairs(parts):
-        fresh = compare(first, second)
+    picked = pairs(parts)
+    tasks = [(first.name, second.name, density) for _, first, second, density in picked]
+    for (word, first, _, _), fresh in zip(picked, each(_compared, tasks), strict=True):
         entries.setdefault(word, []).extend(fresh)
         for e in fresh:
             if not all(e["found"]) or e["moved"] > 0.005 or e["counts"][0] != e["counts"][1]:
-                say(f"invariance: {first.part.name} {word}: {e}")
+                say(f"invariance: {first.name} {word}: {e}")
     out: dict[str, float] = {}
     for word, group in entries.items():
         moved = np.array([e["moved"] for e in group if np.isfinite(e["moved"])])

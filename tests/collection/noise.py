@@ -7,11 +7,12 @@ or, where it has none, in three modes free of hinges; modes free of hinges of pa
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterable, Sequence
 
 import numpy as np
 
 from tests.collection.parts import SEED, Part
+from tests.collection.registry import part_named
 from tests.collection.scoring import Row, score
 from tests.collection.solved import Solved, solved
 from viewer.model.modes import ArrayShapes, ModeSet
@@ -34,7 +35,7 @@ def noisy(given: ModeSet, seed: Sequence[int], rotations: bool) -> ModeSet:
     return given.with_(shapes=ArrayShapes(moved, turned), origin="imported", normalisation="unknown")
 
 
-def chosen(parts: Sequence[Part]) -> list[tuple[Solved, list[int], list[int]]]:
+def chosen(parts: Sequence[Part]) -> list[tuple[Part, list[int], list[int]]]:
     """One part a family, of every kind of cell in turn, with its modes with hinges and without."""
     families: dict[str, list[Part]] = {}
     for part in parts:
@@ -50,7 +51,7 @@ def chosen(parts: Sequence[Part]) -> list[tuple[Solved, list[int], list[int]]]:
             if (part.sheet.bands and not bent) or count[bent] >= (WITH if bent else WITHOUT):
                 continue
             count[bent] += 1
-            out.append((ready, strong, free[: FREE if bent else FREE + 1]))
+            out.append((part, strong, free[: FREE if bent else FREE + 1]))
             break
     return out
 
@@ -63,15 +64,26 @@ def _line(ready: Solved, t) -> bool:
     return ready.part.sheet.bands[t.band].kind != "joint"
 
 
-def run(parts: Sequence[Part], say: Callable[[str], None]) -> dict[str, float]:
+def _scored(task: tuple[int, str, list[int]]) -> list[Row]:
+    number, name, wanted = task
+    ready, rows = solved(part_named(name)), []
+    for seed in range(SEEDS):
+        modes = noisy(ready.modes, [SEED, number, seed], rotations=number % 2 == 0)
+        rows += score(ready, modes, wanted)
+    return rows
+
+
+def run(parts: Sequence[Part], say: Callable[[str], None], each: Callable[..., Iterable] = map) -> dict[str, float]:
     """Totals of the run with noise."""
     picked = chosen(parts)
     rows: list[Row] = []
-    for number, (ready, strong, free) in enumerate(picked):
-        for seed in range(SEEDS):
-            modes = noisy(ready.modes, [SEED, number, seed], rotations=number % 2 == 0)
-            rows += score(ready, modes, sorted({*strong, *free}))
-        say(f"noise: {ready.part.name}, modes {[j + 1 for j in strong]} and {[j + 1 for j in free]}")
+    tasks = [(number, part.name, sorted({*strong, *free})) for number, (part, strong, free) in enumerate(picked)]
+    for (part, strong, free), fresh in zip(picked, each(_scored, tasks), strict=True):
+        lines = [r for r in fresh if r.level == "strong" and r.kind != "joint"]
+        hits, false = sum(r.hit for r in lines), sum(bool(r.false) for r in fresh if r.free and r.band <= 1)
+        say(f"noise: {part.name}, modes {[j + 1 for j in strong]}: {hits} of {len(lines)} found; "
+            f"free modes {[j + 1 for j in free]}: {false} of {SEEDS * len(free)} false")  # fmt: skip
+        rows += fresh
     lines = [r for r in rows if r.level == "strong" and r.kind != "joint"]
     hits = [r for r in lines if r.hit]
     clear = [r for r in rows if r.free and r.band <= 1]

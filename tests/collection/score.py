@@ -10,31 +10,31 @@ from __future__ import annotations
 import argparse
 import csv
 import io
+import multiprocessing
 import sys
 import time
 from collections.abc import Callable, Iterable, Sequence
+from concurrent.futures import ProcessPoolExecutor
 from dataclasses import asdict, fields
+from functools import partial
 from importlib import import_module
 from pathlib import Path
 
 import numpy as np
 
 from tests.collection.parts import SEED, VERSION, Part
+from tests.collection.registry import GROUPS, part_named, parts_of
 from tests.collection.scoring import Row, score
 from tests.collection.sheets import build
-from tests.collection.solved import Solved, solved
+from tests.collection.solved import solved
 from viewer.jobs import write_text
 
-FAMILIES = {"tuning": "tuning", "held": "held_out", "unseen": "unseen"}
+Each = Callable[..., Iterable]  # map, or that of a pool of processes
 HERE = Path(__file__).parent
 TABLE = HERE / "table.csv"
 TOTALS = HERE / "totals.csv"
 LARGEST = {"quad4": 6_500, "tri3": 7_500, "quad8": 3_500, "hex8": 4_000, "hex20": 2_800, "tet10": 6_000}  # cells
 DIRECTION_DEG, POSITION, SHARE_OFF = 3.0, 0.01, 0.15  # what a strong hinge must keep to
-
-
-def parts_of(name: str) -> list[Part]:
-    return import_module(f"tests.collection.{FAMILIES[name]}").parts()
 
 
 def totals(rows: Sequence[Row]) -> dict[str, float]:
@@ -130,24 +130,33 @@ def read_table(path: Path = TABLE) -> tuple[str, list[dict[str, str]]]:
     return first, list(csv.DictReader(io.StringIO(rest)))
 
 
-def run(parts: Iterable[Part], say: Callable[[str], None], density: int = 1) -> list[Row]:
+def run(parts: Sequence[Part], say: Callable[[str], None], each: Each = map, density: int = 1) -> list[Row]:
     """All parts scored, those of more cells than ``LARGEST`` at the coarse density only; ``say`` hears what went
     wrong."""
     rows: list[Row] = []
-    for part in parts:
-        if density > 1 and build(part.name, part.sheet, part.kind, density).mesh.n_cells > LARGEST[part.kind]:
-            continue
-        ready: Solved = solved(part, density)
-        start = time.perf_counter()
-        fresh = score(ready)
-        took = (time.perf_counter() - start) / max(1, part.modes)
-        say(f"{part.name} ({ready.built.mesh.n_cells} cells, {took:.2f} s a mode)")
+    fits = [p for p in parts if density == 1 or _cells(p, density) <= LARGEST[p.kind]]
+    for part, (fresh, cells, took) in zip(
+        fits, each(partial(_scored, density=density), [p.name for p in fits]), strict=True
+    ):
+        say(f"{part.name} ({cells} cells, {took:.2f} s a mode)")
         for row in fresh:
             if wrong(row):
                 facts = {name: cell(value) for name, value in asdict(row).items() if name != "part"}
                 say(f"    {wrong(row)}: " + " ".join(f"{name}={value}" for name, value in facts.items()))
         rows += fresh
     return rows
+
+
+def _cells(part: Part, density: int) -> int:
+    return build(part.name, part.sheet, part.kind, density).mesh.n_cells
+
+
+def _scored(name: str, density: int) -> tuple[list[Row], int, float]:
+    part = part_named(name)
+    ready = solved(part, density)
+    start = time.perf_counter()
+    rows = score(ready)
+    return rows, ready.built.mesh.n_cells, (time.perf_counter() - start) / max(1, part.modes)
 
 
 def show(title: str, figures: dict[str, float], say: Callable[[str], None]) -> None:
@@ -158,33 +167,39 @@ def show(title: str, figures: dict[str, float], say: Callable[[str], None]) -> N
 
 def main(arguments: Sequence[str] | None = None) -> int:
     parser = argparse.ArgumentParser(prog="python -m tests.collection.score", description=__doc__)
-    parser.add_argument("--families", choices=[*FAMILIES, "scored", "all"], default="tuning")
+    parser.add_argument("--families", choices=[*GROUPS, "scored", "all"], default="tuning")
     parser.add_argument("--part", default="", help="only parts whose names contain this")
     parser.add_argument("--fine", action="store_true", help="score the doubled density as well")
     parser.add_argument("--noise", action="store_true")
     parser.add_argument("--invariance", action="store_true")
+    parser.add_argument("--jobs", type=int, default=1, help="processes")
     parser.add_argument("--write", action="store_true", help="write table.csv and totals.csv (with --families all)")
     given = parser.parse_args(arguments)
     say = lambda line: print(line, flush=True)  # noqa: E731, T201
-    chosen = {"scored": ["held", "unseen"], "all": list(FAMILIES)}.get(given.families, [given.families])
+    if given.jobs > 1:
+        pool = ProcessPoolExecutor(given.jobs, multiprocessing.get_context("forkserver"))
+        each: Each = pool.map
+    else:
+        each = map
+    chosen = {"scored": ["held", "unseen"], "all": list(GROUPS)}.get(given.families, [given.families])
     parts = {name: [p for p in parts_of(name) if given.part in p.name] for name in chosen}
-    rows = {name: run(parts[name], say) for name in chosen}
+    rows = {name: run(parts[name], say, each) for name in chosen}
     results = {name: totals(rows[name]) for name in chosen}
     if "held" in rows and "unseen" in rows:
         results["scored half"] = totals(rows["held"] + rows["unseen"])
-    if len(chosen) == len(FAMILIES):
+    if len(chosen) == len(GROUPS):
         results["all"] = totals([r for group in rows.values() for r in group])
     everything = [p for name in chosen for p in parts[name]]
     if given.fine:
-        rows["fine"] = run(everything, say, 2)
-        results["fine: all" if len(chosen) == len(FAMILIES) else "fine"] = totals(rows["fine"])
+        rows["fine"] = run(everything, say, each, 2)
+        results["fine: all" if len(chosen) == len(GROUPS) else "fine"] = totals(rows["fine"])
         if "held" in chosen and "unseen" in chosen:
             half = {p.name for name in ("held", "unseen") for p in parts[name]}
             results["fine: scored half"] = totals([r for r in rows["fine"] if r.part in half])
     if given.noise:
-        results["noise"] = import_module("tests.collection.noise").run(everything, say)
+        results["noise"] = import_module("tests.collection.noise").run(everything, say, each)
     if given.invariance:
-        results["invariance"] = import_module("tests.collection.invariance").run(everything, say)
+        results["invariance"] = import_module("tests.collection.invariance").run(everything, say, each)
     for title, figures in results.items():
         show(title, figures, say)
     if given.write:

@@ -38,9 +38,9 @@ class Band:
 
     box      (s0, s1, t0, t1) of its cells; the line runs along t in the middle, or along s when ``along`` says so
     kind     "line", "curve" or "joint" (as long as wide: its length means nothing)
-    through  every path from one side to the other crosses the band
-    cut      (s0, s1, t0, t1) cut out for the static solution: the band with a margin of its surroundings;
-             None: none is made, since the sides of a curved band cannot turn as rigid lines
+    cut      (s0, s1, t0, t1) cut out for the static solution: the band with a margin of its surroundings, so that
+             every path from one side to the other crosses the band; None: none is made, since the sides of a curved
+             band cannot turn as rigid lines
     root     one side of the band is the clamp
     """
 
@@ -48,7 +48,6 @@ class Band:
     cut: tuple[float, float, float, float] | None
     along: str = "t"
     kind: str = "line"
-    through: bool = True
     root: bool = False
 
     @property

@@ -89,7 +89,6 @@ def tab(rng: np.random.Generator, i: int) -> Sheet:
     band = Band(
         (start, start + width, low, low + wide),
         (start - 0.1 * wide, start + width + 0.1 * wide, low, low + wide),
-        through=False,
     )
     end = start + long
     patches = (
@@ -129,7 +128,7 @@ def part_groove(rng: np.random.Generator, i: int) -> Sheet:
     s, t, h = plate(rng)
     at, width = s * rng.uniform(0.3, 0.6), t * rng.uniform(0.03, 0.05)
     end = t * rng.uniform(0.5, 0.75)
-    band = line_across((s, t), at, width, max(1.5 * h, width), (0, end), through=i % 2 == 0)
+    band = line_across((s, t), at, width, max(1.5 * h, width), (0, end))
     rest = Patch((*band.box[:2], end, t), 0.0)
     patches = (Patch(band.box, h * rng.uniform(0.3, 0.45)), rest)[: 2 - i % 2]
     return Sheet((s, t), h, s / 20, patches, (band,), clamp=root((s, t)))

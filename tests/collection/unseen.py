@@ -17,7 +17,7 @@ def hatch(rng: np.random.Generator, i: int) -> Sheet:
     slit, strap = wide * 0.03, wide * rng.uniform(0.2, 0.3)
     end, high = start + long, low + wide
     box = (start - slit, start, low, high)
-    band = Band(box, (start - slit - 0.3 * strap, start + 0.3 * strap, low, high), through=False)
+    band = Band(box, (start - slit - 0.3 * strap, start + 0.3 * strap, low, high))
     thin = h * rng.uniform(0.35, 0.5)
     patches = (
         Patch((start - slit, end + slit, low - slit, low), 0),
@@ -52,7 +52,7 @@ def angle_tongue(rng: np.random.Generator, i: int) -> Sheet:
     width = wide * rng.uniform(0.05, 0.08)
     box = (start, start + width, low, low + wide)
     reach = max(1.2 * h, width)
-    band = Band(box, (start - reach, start + width + reach, low, low + wide), through=False)
+    band = Band(box, (start - reach, start + width + reach, low, low + wide))
     patches = (
         Patch((start, length, low - slit, low), 0),
         Patch((start, length, low + wide, low + wide + slit), 0),
