@@ -35,21 +35,31 @@ from viewer.model.arrays import Array
 FACTOR_LIMIT = 200_000  # free directions up to which A is factorised; beyond, x is searched for
 MOST_ROOM = 4 * 10**9  # bytes of the matrices for that search
 _NUMBERS = 8_000_000  # in the vectors searched for at a time; each takes the room of nine
+_NODES = 1 << 17  # nodes whose rigid motions are formed at a time
 _ENOUGH = 2e-4  # of the whole energy: what a search may leave open
 
 
 def flexible_share(layout: Layout, vectors: Array) -> Array:
-    """(k,) share of the mean square translation of the nodes that is beyond their best rigid motion."""
+    """(k,) share of the mean square translation of the nodes that is beyond their best rigid motion.
+
+    From sums over the nodes alone: with F their rigid motions, the rigid share takes FᵀF and Fᵀv.
+    """
     nodes = np.nonzero((layout.dof[:, :3] >= 0).any(axis=1))[0]
-    fields = rigid_fields(layout.points[nodes], layout.points[nodes].mean(axis=0)).reshape(-1, 6)
-    strength, axes = np.linalg.eigh(fields.T @ fields / np.maximum((fields**2).sum(), 1e-300))
+    centre = layout.points[nodes].mean(axis=0)
+    radius = max(float(np.sqrt(((layout.points[nodes] - centre) ** 2).sum(axis=1).mean())), 1e-300)
+    gram, pushed, whole = np.zeros((6, 6)), np.zeros((6, len(vectors)), vectors.dtype), np.zeros(len(vectors))
+    for start in range(0, len(nodes), _NODES):
+        rows = nodes[start : start + _NODES]
+        places = layout.dof[rows, :3].ravel()
+        fields = rigid_fields((layout.points[rows] - centre) / radius, np.zeros(3)).reshape(-1, 6)[places >= 0]
+        moved = vectors[:, places[places >= 0]]
+        gram += fields.T @ fields
+        pushed += fields.T @ moved.T
+        whole += np.sum(np.abs(moved) ** 2, axis=1)
+    strength, axes = np.linalg.eigh(gram)
     seen = strength > 1e-12 * strength[-1]
-    basis, _ = np.linalg.qr(fields @ axes[:, seen])
-    places = layout.dof[nodes, :3].ravel()
-    rigid, counted = np.zeros((layout.n_dof, basis.shape[1])), np.zeros(layout.n_dof)
-    rigid[places[places >= 0]], counted[places[places >= 0]] = basis[places >= 0], 1.0
-    whole = np.maximum(np.einsum("kn,kn,n->k", vectors, vectors.conj(), counted).real, 1e-300)
-    return np.maximum(1 - np.sum(np.abs(vectors @ rigid) ** 2, axis=1) / whole, 0.0)
+    rigid = np.sum(np.abs(axes[:, seen].T @ pushed) ** 2 / strength[seen, None], axis=0)
+    return np.maximum(1 - rigid / np.maximum(whole, 1e-300), 0.0)
 
 
 @dataclass(frozen=True, eq=False)
