@@ -26,6 +26,7 @@ class Field:
     volume    (n_cells,) m³; strain, kinetic (n_cells,) shares of the whole
     mass      (n_cells,) share of the mass of the cells
     shift     (n_cells, 3) translation of the middle; turn (n_cells, 3) rotation, per unit of the shape
+    own       (n_cells,) cells whose rotation is that of their nodes, and so belongs to their middle
     touch     (n_cells, n_cells) symmetric CSR pattern of cells with a common side
     clamped   (n_cells,) cells with nodes that are held in every way that matters there
     """
@@ -41,6 +42,7 @@ class Field:
     mass: Array
     shift: Array
     turn: Array
+    own: Array
     touch: sp.csr_array
     clamped: Array
 
@@ -73,9 +75,10 @@ def make_field(
     mesh = design.mesh
     corners = _corners(mesh)
     dim = np.concatenate([np.full(len(b), KINDS[b.kind].dim) for b in mesh.blocks])
-    turn = cell_rotations(mesh, shape)
-    if rotations is not None and (dim == 1).any():
-        turn[dim == 1] = rotations[corners[dim == 1][:, :2]].mean(axis=1)
+    turn, own = cell_rotations(mesh, shape), np.zeros(mesh.n_cells, bool)
+    if rotations is not None and (dim < 3).any():
+        own = (dim == 1) | (dim == 2)
+        turn[own] = _own_turns(mesh.points, corners[own], turn[own], rotations, dim[own])
     return Field(
         size=mesh.diagonal,
         points=mesh.points,
@@ -88,9 +91,23 @@ def make_field(
         mass=_masses(design, volume),
         shift=_means(mesh, shape),
         turn=turn,
+        own=own,
         touch=touching(mesh),
         clamped=_clamped(design, dim),
     )
+
+
+def _own_turns(points: Array, corners: Array, turn: Array, rotations: Array, dim: Array) -> Array:
+    """Rotation of sheets and beams by their nodes' own rotations; about the normal of a sheet that of its best rigid
+    motion is kept, since the nodes' rotation about it is hardly held by anything."""
+    distinct = np.ones(corners.shape)
+    distinct[:, 1:] = corners[:, 1:] != corners[:, :1]
+    mean = np.einsum("nk,nki->ni", distinct, rotations[corners]) / distinct.sum(axis=1, keepdims=True)
+    a, b, c = (points[corners[:, i % corners.shape[1]]] for i in range(3))
+    normal = np.cross(b - a, c - a)
+    size = np.linalg.norm(normal, axis=1, keepdims=True)
+    normal = np.where((dim == 2)[:, None], normal / np.maximum(size, 1e-300), 0.0)
+    return mean + np.einsum("ni,ni->n", turn - mean, normal)[:, None] * normal
 
 
 def _corners(mesh: Mesh) -> Array:

@@ -127,7 +127,10 @@ def _frame(field: Field, curve, near: Array, outward: Array | None, about: Array
         curve,
         near,
         along,
-        (low + high) / 2,  # not the centroid: triangles of one row share their rotation, and must share their place
+        # A rigid motion fitted to a triangle belongs to the row it lies in, not to its centroid.
+        np.where(
+            field.own[near], np.einsum("ni,ni->n", field.middle[near] - curve.foot(along), outward), (low + high) / 2
+        ),
         low,
         high,
         corner_along.min(axis=1),

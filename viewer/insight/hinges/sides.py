@@ -42,10 +42,13 @@ def side_of(field: Field, frame: Frame, rows: Array, away: Array, window: float)
         return None
     x, turn = away[close], field.turn[frame.near[close]]
     mean, centre = w @ turn / w.sum(), w @ x / w.sum()
-    square = w @ (x - centre) ** 2
+    # Rotation grows along the line, too (twist): both slopes are fitted, or cells of a skew mesh mix them up.
+    places = np.stack([x - centre, frame.along[close] - w @ frame.along[close] / w.sum()], axis=1)
+    square = np.einsum("n,ni,nj->ij", w, places, places)
     slope = np.zeros(3)
-    if square > 1e-3 * w.sum() * window**2:
-        slope = (w * (x - centre)) @ (turn - mean) / square
+    if square[0, 0] > 1e-3 * w.sum() * window**2:
+        slopes = np.linalg.pinv(square, rcond=1e-6, hermitian=True) @ ((w[:, None] * places).T @ (turn - mean))
+        slope = slopes[0]
     far = rows & (away <= _FAR * window)
     wide, turns = field.volume[frame.near[far]], field.turn[frame.near[far]]
     spread = wide @ ((turns - wide @ turns / wide.sum()) ** 2).sum(axis=1) / wide.sum()
