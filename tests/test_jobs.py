@@ -55,5 +55,17 @@ def test_child_that_dies_is_an_error():
         in_child(_die, stage="dying")
 
 
+class _Unreadable:
+    """Fails in the child, as a module that cannot be imported there does."""
+
+    def __reduce__(self):
+        return _refuse, ("cannot be read",)
+
+
+def test_a_child_that_cannot_read_a_large_order_does_not_leave_us_waiting():
+    with pytest.raises(ModelError, match="cannot be read"):
+        in_child(len, [_Unreadable(), b"0" * 2**22], stage="reading")
+
+
 def test_child_returns_its_answer():
     assert in_child(divmod, 17, 5) == (3, 2)

@@ -10,6 +10,7 @@ from __future__ import annotations
 import contextlib
 import multiprocessing
 import os
+import pickle
 import sys
 import tempfile
 import traceback
@@ -84,10 +85,19 @@ def in_child(function: Callable[..., Any], *args: Any, progress: Progress = SILE
     """
     if multiprocessing.current_process().daemon:
         return function(*args)
+    with tempfile.TemporaryDirectory(prefix="hingelight-") as folder:
+        # not through the pipe that starts the process: a child that fails before it reads would leave us writing
+        order = Path(folder) / "order"
+        with open(order, "wb") as file:
+            pickle.dump((function, args), file, protocol=pickle.HIGHEST_PROTOCOL)
+        return _answer_of(order, progress, stage)
+
+
+def _answer_of(order: Path, progress: Progress, stage: str) -> Any:
     context = multiprocessing.get_context("spawn")
     mine, theirs = context.Pipe(duplex=False)
-    process = context.Process(target=_child, args=(theirs, function, args), daemon=True)
-    with _no_main_module():
+    process = context.Process(target=_child, args=(theirs, order), daemon=True)
+    with no_main_module():
         process.start()
     theirs.close()
     try:
@@ -114,7 +124,7 @@ def in_child(function: Callable[..., Any], *args: Any, progress: Progress = SILE
 
 
 @contextlib.contextmanager
-def _no_main_module() -> Iterator[None]:
+def no_main_module() -> Iterator[None]:
     """Keep the child from running the caller's script again: plain scripts have no guard against that."""
     main = sys.modules["__main__"]
     sys.modules["__main__"] = types.ModuleType("__main__")
@@ -124,8 +134,10 @@ def _no_main_module() -> Iterator[None]:
         sys.modules["__main__"] = main
 
 
-def _child(pipe, function: Callable[..., Any], args: tuple) -> None:
+def _child(pipe, order: Path) -> None:
     try:
+        with open(order, "rb") as file:
+            function, args = pickle.load(file)
         answer: tuple[bool, Any] = (True, function(*args))
     except HingelightError as error:
         answer = (False, error)
