@@ -15,6 +15,8 @@ from viewer.model.arrays import Array
 
 _DENSER = 2.5  # times what lies beside it: as far the strip along the line belongs to the band
 _OWN = 0.1  # of the band's own density, likewise
+_FAINT = 0.15  # of the band's mean density: strips at its ends below that are none of it
+_STRIPS = 24
 _GAPS = 2  # strips that may be missing in between
 
 
@@ -108,6 +110,7 @@ def _measured(field: Field, cells: Array, frame: Frame) -> Draft | None:
     edges = found.low, found.high
     inside = (frame.across > edges[0]) & (frame.across < edges[1])
     if not frame.blob or abs(frame.about[0] @ frame.curve.tangent(np.zeros(1))[0]) > 0.8:
+        ends = _trimmed(field, frame, inside, ends)
         ends = _stretched(field, frame, inside, edges, ends, grain)
     band = inside & _within(frame, ends)
     if not band.any():
@@ -154,6 +157,20 @@ def _within(frame: Frame, ends: tuple[float, float]) -> Array:
         return np.ones(len(frame.near), bool)
     slack = 1e-9 * (ends[1] - ends[0])
     return (frame.along > ends[0] - slack) & (frame.along < ends[1] + slack)
+
+
+def _trimmed(field: Field, frame: Frame, inside: Array, ends: tuple[float, float]) -> tuple[float, float]:
+    """Ends without cells that hold next to nothing: what a candidate took in beyond the end of a slit."""
+    core = np.nonzero(inside & _within(frame, ends))[0]
+    if len(core) == 0:
+        return ends
+    index = np.minimum(((frame.along[core] - ends[0]) / (ends[1] - ends[0]) * _STRIPS).astype(int), _STRIPS - 1)
+    strain, volume = (
+        np.bincount(index, values[frame.near[core]], minlength=_STRIPS) for values in (field.strain, field.volume)
+    )
+    full = np.nonzero((strain > _FAINT * volume * strain.sum() / volume.sum()) & (volume > 0))[0]
+    kept = core[(index >= full.min()) & (index <= full.max())]
+    return float(frame.along_low[kept].min()), float(frame.along_high[kept].max())
 
 
 def _stretched(field: Field, frame: Frame, inside: Array, edges, ends, grain: float) -> tuple[float, float]:
