@@ -45,7 +45,7 @@ def test_a_veering_narrower_than_the_step_is_unresolved_and_the_proposed_step_re
 
 def test_uncoupled_pendula_cross_and_keep_their_names():
     values = np.linspace(-0.43, 0.4, 6)
-    finding = follow(values, *pendula(values, 0.0), names=["left", "right"])
+    finding = follow(values, *pendula(values, 0.0), names=[{1: "left", 2: "right"}])
     (encounter,) = finding.encounters
     assert encounter.kind == "crossing"
     assert encounter.at == pytest.approx(0, abs=1e-9)

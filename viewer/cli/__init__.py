@@ -7,6 +7,7 @@ import typer
 from viewer.cli.animate import animate
 from viewer.cli.check import check
 from viewer.cli.hinges import hinges
+from viewer.cli.lineage import lineage
 from viewer.cli.modes import modes
 from viewer.cli.pair import pair
 from viewer.cli.review import review
@@ -20,7 +21,7 @@ app = typer.Typer(
     pretty_exceptions_enable=False,
     context_settings={"help_option_names": ["-h", "--help"]},
 )
-for command in (review, modes, hinges, struts, pair, animate, check):
+for command in (review, modes, hinges, struts, pair, lineage, animate, check):
     app.command()(command)
 
 

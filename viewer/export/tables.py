@@ -29,7 +29,7 @@ _UNITS = {
 }  # fmt: skip
 _PREFIXES = ((1.0, "m"), (1e-3, "mm"), (1e-6, "µm"), (1e-9, "nm"))
 _IDENTITY = (
-    "design", "mode", "group", "point", "hinge", "flap", "strut",
+    "design", "mode", "group", "point", "hinge", "flap", "strut", "lineage", "step",
     "first_design", "first_mode", "second_design", "second_mode",
 )  # fmt: skip
 _NOTHING = "–"

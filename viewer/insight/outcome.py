@@ -10,6 +10,7 @@ import numpy as np
 from viewer.insight.character import Character
 from viewer.insight.hinges import Hinge, HingeFinding
 from viewer.insight.pairing import ModePair
+from viewer.model.written import GAP, change, hertz
 
 NEAR = 0.03  # of the diagonal: hinges farther apart are two
 ALONG = np.cos(np.radians(30))
@@ -68,7 +69,7 @@ class Outcome:
             "second_name": self.names[1] or None,
             "first_does": self.characters[0] or None,
             "second_does": self.characters[1] or None,
-            "hinges": None if self.hinges is None else [change.to_dict() for change in self.hinges],
+            "hinges": None if self.hinges is None else [hinge.to_dict() for hinge in self.hinges],
         }
 
 
@@ -127,9 +128,9 @@ def sentence_of(facts: dict[str, Any]) -> str:
         return f"{head} has no counterpart among the modes of {two} (best agreement {facts['mac']:.2f} of 1)."
     if facts["kind"] == "merged":
         return f"{head} is taken up by mode {facts['merged_into']} of {two} (agreement {facts['mac']:.2f} of 1)."
-    words = f"{head} becomes mode {facts['second_mode']} of {two} at {facts['second_hz']:.4g} Hz"
+    words = f"{head} becomes mode {facts['second_mode']} of {two} at {_hz(facts['second_hz'])}"
     if facts["change_percent"] is not None:
-        words += f" ({facts['change_percent']:+.2g} %)".replace("-", "−")
+        words += f" ({change(facts['second_hz'], facts['first_hz'])})"
     agreement = facts["mac"] if facts["subspace_agreement"] is None else facts["subspace_agreement"]
     words += f", {_alike(agreement)} ({agreement:.2f} of 1"
     if facts["subspace_agreement"] is not None:
@@ -138,8 +139,8 @@ def sentence_of(facts: dict[str, Any]) -> str:
             f", modes {listed(facts['close_modes_first'])} against {listed(facts['close_modes_second'])} as a group"
         )
     words += ")"
-    for change in facts["hinges"] or ():
-        words += _hinge_words(change)
+    for hinge in facts["hinges"] or ():
+        words += _hinge_words(hinge)
     if facts["first_does"] and facts["second_does"] and facts["first_does"] != facts["second_does"]:
         words += f"; what was “{facts['first_does']}” is now “{facts['second_does']}”"
     return words + "."
@@ -147,25 +148,29 @@ def sentence_of(facts: dict[str, Any]) -> str:
 
 def _mode(design: str, facts: dict[str, Any], which: str) -> str:
     name = f" ({facts[f'{which}_name']})" if facts[f"{which}_name"] else ""
-    return f"Mode {facts[f'{which}_mode']} of {design}{name}, {facts[f'{which}_hz']:.4g} Hz,"
+    return f"Mode {facts[f'{which}_mode']} of {design}{name}, {_hz(facts[f'{which}_hz'])},"
+
+
+def _hz(value: float) -> str:
+    return hertz(value) if value >= 0.01 else f"0{GAP}Hz"
 
 
 def _alike(agreement: float) -> str:
     return "the same shape" if agreement >= 0.95 else "much the same shape" if agreement >= 0.8 else "a changed shape"
 
 
-def _hinge_words(change: dict[str, Any]) -> str:
-    at = f" at {change['place']}" if change["place"] else ""
-    if change["second_hinge"] is None:
-        held = "" if change["first_share"] is None else f", which held {change['first_share']:.0%} of the energy,"
-        return f"; hinge {change['first_hinge']}{at}{held} is gone"
-    if change["first_hinge"] is None:
-        holds = "" if change["second_share"] is None else f" with {change['second_share']:.0%} of the energy"
+def _hinge_words(hinge: dict[str, Any]) -> str:
+    at = f" at {hinge['place']}" if hinge["place"] else ""
+    if hinge["second_hinge"] is None:
+        held = "" if hinge["first_share"] is None else f", which held {hinge['first_share']:.0%} of the energy,"
+        return f"; hinge {hinge['first_hinge']}{at}{held} is gone"
+    if hinge["first_hinge"] is None:
+        holds = "" if hinge["second_share"] is None else f" with {hinge['second_share']:.0%} of the energy"
         return f"; a new hinge{at}{holds}"
-    if change["share_change"] is None or abs(change["share_change"]) < NOTABLE:
-        return f"; hinge {change['first_hinge']}{at} stays"
-    verb = "lost" if change["share_change"] < 0 else "gained"
+    if hinge["share_change"] is None or abs(hinge["share_change"]) < NOTABLE:
+        return f"; hinge {hinge['first_hinge']}{at} stays"
+    verb = "lost" if hinge["share_change"] < 0 else "gained"
     return (
-        f"; hinge {change['first_hinge']}{at} {verb} {abs(change['share_change']):.0%} of its share of the energy "
-        f"({change['first_share']:.0%} to {change['second_share']:.0%})"
+        f"; hinge {hinge['first_hinge']}{at} {verb} {abs(hinge['share_change']):.0%} of its share of the energy "
+        f"({hinge['first_share']:.0%} to {hinge['second_share']:.0%})"
     )

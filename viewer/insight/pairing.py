@@ -54,7 +54,7 @@ class ModePair:
 
     def to_dict(self) -> dict[str, Any]:
         change = None
-        if self.first_hz and self.second_hz is not None:
+        if self.first_hz and self.second_hz:  # a rigid motion has no frequency to change
             change = 100 * (self.second_hz / self.first_hz - 1)
         return {
             "kind": self.kind,
@@ -134,7 +134,7 @@ def pair(
     # the cube sharpens: one excellent pair and one poor are better than two middling ones
     rows, columns = linear_sum_assignment(-(matrix**3))
     partner = {int(i): int(j) for i, j in zip(rows, columns, strict=True)}
-    groups = _groups(first_modes.freq_hz), _groups(second_modes.freq_hz)
+    groups = close_groups(first_modes.freq_hz), close_groups(second_modes.freq_hz)
     pairs = []
     for i in range(first_modes.count):
         pairs.append(_became(i, partner.get(i), matrix, groups, (one, two), (first_modes, second_modes)))
@@ -147,11 +147,16 @@ def pair(
 
 
 def cross_products(
-    first: Design, first_modes: ModeSet, second: Design, second_modes: ModeSet, progress: Progress = SILENT
+    first: Design,
+    first_modes: ModeSet,
+    second: Design,
+    second_modes: ModeSet,
+    support: CommonSupport | None = None,
+    progress: Progress = SILENT,
 ) -> Array:
     """(modes of first, modes of second) products of shapes over the common support, weighted by mass, of shapes of
     unit size: their squares are MAC, their signs tell how the shapes turn into one another."""
-    support = common_support(first, second, progress)
+    support = common_support(first, second, progress) if support is None else support
     one, two = _vectors(first_modes, support, 0, progress), _vectors(second_modes, support, 1, progress)
     one, two = (v / np.maximum(np.linalg.norm(v, axis=1, keepdims=True), 1e-300) for v in (one, two))
     return np.asarray(one.conj() @ two.T)
@@ -174,11 +179,12 @@ def _vectors(modes: ModeSet, support: CommonSupport, which: int, progress: Progr
     return np.array(out)
 
 
-def _groups(freq_hz: Array) -> list[tuple[int, ...]]:
-    """By mode the modes (indices) that lie close to it in frequency, itself included."""
+def close_groups(freq_hz: Array, near: float = CLOSE) -> list[tuple[int, ...]]:
+    """By mode the modes (indices) that lie within a relative difference of ``near`` in frequency of it or of others
+    that do, itself included."""
     label, out = 0, np.zeros(len(freq_hz), int)
     for i in range(1, len(freq_hz)):
-        label += bool(freq_hz[i] - freq_hz[i - 1] > CLOSE * max(freq_hz[i], 1e-300))
+        label += bool(freq_hz[i] - freq_hz[i - 1] > near * max(freq_hz[i], 1e-300))
         out[i] = label
     return [tuple(int(j) for j in np.nonzero(out == out[i])[0]) for i in range(len(freq_hz))]
 

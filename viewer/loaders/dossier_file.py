@@ -5,7 +5,6 @@ The layout stands in :mod:`viewer.loaders.dossier_schema`.
 
 from __future__ import annotations
 
-import difflib
 import os
 from collections.abc import Iterable
 from pathlib import Path
@@ -15,7 +14,8 @@ import numpy as np
 
 from viewer.errors import DossierError
 from viewer.loaders import dossier_schema as schema
-from viewer.loaders.dossier_parse import parsed, short
+from viewer.loaders.dossier_parse import parsed
+from viewer.loaders.dossier_parts import Parts
 from viewer.model.design import (
     DIRECTIONS,
     Assignment,
@@ -28,26 +28,18 @@ from viewer.model.design import (
     Physics,
     Ply,
     Section,
-    Selector,
     Spring,
     Strut,
     Support,
     Tie,
 )
-from viewer.model.dossier import DesignPlan, Dossier, ModePair, StatedAmplitude
+from viewer.model.dossier import DesignPlan, Dossier, ModePair, StatedAmplitude, SweepPlan
 from viewer.model.matrices import MatrixFiles
+from viewer.model.variation import Unit, Variation
 
 DEFAULT_MODE_COUNT = 6
-# Outside these bounds a value is no error but is flagged: most often a unit was mixed up. Softest foams lie near
-# 1e4 Pa and 10 kg/m³, diamond near 1.2e12 Pa, osmium near 22 600 kg/m³ (handbook values, rounded outwards).
-_PLAUSIBLE = {
-    "youngs_modulus": (1e4, 1.3e12, "Pa"),
-    "density": (5.0, 23_000.0, "kg/m³"),
-    "thickness": (1e-5, 0.2, "m"),
-    "mass": (1e-6, 1e5, "kg"),
-    "radius_of_gyration": (1e-4, 20.0, "m"),
-    "amplitude": (1e-12, 0.1, "m"),
-}
+# How units are written to be read, where the dossier's way is meant for typing.
+_SIGNS = {"um": "µm", "N/mm2": "N/mm²", "kg/m3": "kg/m³", "g/cm3": "g/cm³", "t/m3": "t/m³", "t/mm3": "t/mm³"}
 
 
 def read_dossier(path: str | os.PathLike[str]) -> Dossier:
@@ -66,13 +58,13 @@ def read_dossier_report(path: str | os.PathLike[str]) -> tuple[Dossier, tuple[st
     return reader.dossier(), tuple(reader.warnings)
 
 
-class _Reader:
-    """One pass over the tables; collects warnings."""
+class _Reader(Parts):
+    """One pass over the tables."""
 
     def __init__(self, path: Path, table: schema.DossierTable) -> None:
-        self.path, self.table, self.warnings = path, table, []  # type: ignore[var-annotated]
         units = table.units
-        self.length = schema.LENGTHS[units.length]
+        super().__init__(path, schema.LENGTHS[units.length])
+        self.table = table
         self.amplitude_unit = schema.LENGTHS[units.amplitude or units.length]
         self.mass_unit = schema.MASSES[units.mass]
         self.stiffness_unit = schema.STIFFNESSES[units.stiffness]
@@ -94,7 +86,11 @@ class _Reader:
         )
         self.no_duplicates("amplitudes", [f"{a.design}, mode {a.mode}" for a in amplitudes])
         pairs = tuple(self.pair(item, f"pairs {n}", plans) for n, item in enumerate(table.pairs, 1))
-        return Dossier(table.title, self.path, plans, amplitudes, pairs, table.condition)
+        self.no_duplicates("sweeps", [sweep.name for sweep in table.sweeps])
+        sweeps = tuple(
+            self.sweep(item, f'sweeps {n} ("{item.name}")', plans) for n, item in enumerate(table.sweeps, 1)
+        )
+        return Dossier(table.title, self.path, plans, amplitudes, pairs, table.condition, sweeps)
 
     def plan(
         self, item: schema.DesignTable, place: str, materials: dict[str, Material], points: dict[str, FunctionalPoint]
@@ -263,28 +259,6 @@ class _Reader:
             inertia,
         )
 
-    def inertia(self, given: Any, place: str) -> np.ndarray:
-        values = np.zeros(3) if given is None else np.asarray(given, float)
-        matrix = np.diag(values) if values.shape == (3,) else values
-        if matrix.shape != (3, 3):
-            raise DossierError(
-                "wrong number of values",
-                file=self.path,
-                place=place,
-                found=short(given),
-                expected="three values about x, y, z, or a 3 × 3 matrix",
-            )
-        moments = np.linalg.eigvalsh((matrix + matrix.T) / 2)
-        if not np.allclose(matrix, matrix.T) or moments[0] < -1e-9 * max(moments[-1], 0.0) or moments[0] < -1e-300:
-            raise DossierError(
-                "is no inertia of a real body",
-                file=self.path,
-                place=place,
-                found=short(given),
-                expected="a symmetric matrix without negative principal moments",
-            )
-        return matrix
-
     def point(self, item: schema.PointTable, place: str) -> FunctionalPoint:
         return FunctionalPoint(
             item.name,
@@ -322,49 +296,38 @@ class _Reader:
             self.mode_of(end.design, end.mode, plans, f"{place}, {word}")
         return ModePair(item.first.design, item.first.mode, item.second.design, item.second.mode)
 
-    # --- parts ---
-
-    def selector(self, item: schema.Place, place: str) -> Selector:
-        box = None if item.box is None else self.box(item.box, place)
-        near = None if item.near is None else np.array(item.near) * self.length
-        return Selector(item.group or "", item.nodes, box, near)  # type: ignore[arg-type]
-
-    def box(self, given: list[list[float]], place: str) -> np.ndarray:
-        box = np.array(given) * self.length
-        if (box[0] > box[1]).any():
+    def sweep(self, item: schema.SweepTable, place: str, plans: tuple[DesignPlan, ...]) -> SweepPlan:
+        known = {plan.name: plan for plan in plans}
+        name = item.design or plans[0].name
+        self.known("design", name, known, f"{place}, design")
+        plan = known[name]
+        if not any(a.material or a.plies for a in plan.physics.assignments):
             raise DossierError(
-                "the lower corner of the box lies above the upper one",
+                f"design '{name}' cannot be solved anew: it has no material that is assigned to its cells",
                 file=self.path,
-                place=f"{place}, box",
-                found=short(given),
-                expected="[[xmin, ymin, zmin], [xmax, ymax, zmax]]",
+                place=f"{place}, design",
+                do="give it assign with materials, or sweep another design",
             )
-        return box
+        variation = Variation(item.what, item.target, self.unit(item.what))
+        self.known(variation.kind, item.target, variation.targets(plan.physics), f"{place}, target")
+        values = item.values or np.linspace(item.from_ or 0, item.to or 0, item.steps or 0).tolist()
+        values = sorted(value * variation.unit.si for value in values)
+        if variation.unit.name:
+            for value in (values[0], values[-1]):
+                self.plausible(item.what, value, place)
+        return SweepPlan(item.name, name, variation, tuple(values), item.count or plan.mode_count, item.insert)
 
-    def position(self, given: list[float] | None) -> np.ndarray | None:
-        return None if given is None else np.array(given) * self.length
-
-    def direction(self, given: Any, place: str) -> np.ndarray:
-        if isinstance(given, str):
-            word = given.strip().lower()
-            sign, axis = (-1.0 if word[:1] == "-" else 1.0), word.lstrip("+-")
-            if axis not in ("x", "y", "z") or len(word) - len(axis) > 1:
-                raise DossierError(
-                    "is no direction",
-                    file=self.path,
-                    place=place,
-                    found=short(given),
-                    expected='three components, or a word such as "x", "-z"',
-                )
-            return sign * np.eye(3)["xyz".index(axis)]
-        vector = np.asarray(given, float)
-        size = float(np.linalg.norm(vector))
-        if not size > 0 or not np.isfinite(size):
-            raise DossierError("a direction has no length", file=self.path, place=place, found=short(given))
-        return vector / size
-
-    def vector(self, given: list[float] | None, place: str) -> tuple[float, ...] | None:
-        return None if given is None else tuple(self.direction(given, place).tolist())
+    def unit(self, what: str) -> Unit:
+        """The unit that the dossier gives a swept quantity in; none for factors."""
+        units = self.table.units
+        names = {
+            "thickness": units.length,
+            "youngs_modulus": units.modulus,
+            "density": units.density,
+            "mass": units.mass,
+        }
+        sizes = {**schema.LENGTHS, **schema.MODULI, **schema.DENSITIES, **schema.MASSES}
+        return Unit(_SIGNS.get(names[what], names[what]), sizes[names[what]]) if what in names else Unit()
 
     def mode_names(self, item: schema.DesignTable, place: str) -> dict[int, str]:
         names = {}
@@ -393,48 +356,3 @@ class _Reader:
                 do=f"raise solve in that design to {mode} or more",
             )
         return plan
-
-    def existing(self, name: str, place: str) -> Path:
-        path = self.path.parent / name
-        if not path.is_file():
-            raise DossierError(
-                "is a folder" if path.is_dir() else "there is no such file",
-                file=self.path,
-                place=place,
-                found=str(path),
-                expected="a file; paths are relative to the dossier",
-                do="check the path",
-            )
-        return path
-
-    def known(self, word: str, name: str, among: Iterable[str], place: str) -> None:
-        among = list(among)
-        if name not in among:
-            close = difflib.get_close_matches(name, among, 1)
-            raise DossierError(
-                f"no {word} named '{name}'",
-                file=self.path,
-                place=place,
-                expected=f"one of: {', '.join(among)}" if among else f"a {word}, none is declared",
-                do=f"did you mean '{close[0]}'?" if close else "",
-            )
-
-    def no_duplicates(self, place: str, names: list[str]) -> None:
-        for i, name in enumerate(names):
-            if name in names[:i]:
-                raise DossierError(
-                    f"'{name}' is given twice",
-                    file=self.path,
-                    place=place,
-                    expected="each once",
-                    do="rename one",
-                )
-
-    def plausible(self, what: str, value: float, place: str) -> float:
-        low, high, unit = _PLAUSIBLE[what]
-        if not low <= value <= high:
-            self.warnings.append(
-                f"{place}: {what.replace('_', ' ')} of {value:.3g} {unit} is implausible "
-                f"(usual: {low:.3g} to {high:.3g} {unit}); check [units]"
-            )
-        return value

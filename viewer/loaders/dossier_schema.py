@@ -70,6 +70,15 @@ turning springs N·m/rad::
     [[pairs]]
     first = {design = "baseline", mode = 1}
     second = {design = "modified", mode = 2}
+
+    [[sweeps]]                  # followed by the command lineage
+    name = "sheet"
+    design = "baseline"         # default: the first
+    what = "thickness"          # "youngs_modulus", "density", "mass"; factors: "spring" (stiffness), "scale" (size)
+    target = "*"                # as in assign; the name of a material, mass, spring; of axes to scale: "x", "xy", …
+    values = [1.5, 2, 2.5]      # or: from = 1.5, to = 2.5, steps = 3
+    count = 8                   # modes; default: as the design's
+    insert = true               # further steps where modes pass one another too fast for these
 """
 
 from __future__ import annotations
@@ -371,6 +380,34 @@ class PairTable(Table):
     second: ModeReference
 
 
+_SPAN = ("from_", "to", "steps")
+
+
+class SweepTable(Table):
+    name: Name
+    design: Name | None = None
+    what: Literal["thickness", "youngs_modulus", "density", "spring", "mass", "scale"]
+    target: Name
+    values: Annotated[list[Positive], Field(min_length=2, max_length=1000)] | None = None
+    from_: Annotated[Positive | None, Field(alias="from")] = None
+    to: Positive | None = None
+    steps: Annotated[int, Field(ge=2, le=1000)] | None = None
+    count: ModeNumber | None = None
+    insert: bool = False
+
+    @model_validator(mode="after")
+    def _one_list(self):
+        span = [getattr(self, key) for key in _SPAN]
+        given = sum(value is not None for value in span)
+        if (self.values is None) == (given == 0) or 0 < given < len(span):
+            raise ValueError("expected either values = [a, b, c], or from = a, to = b and steps = n")
+        if given and self.from_ == self.to:
+            raise ValueError("from and to are the same, expected two ends")
+        if self.values is not None and len(set(self.values)) < len(self.values):
+            raise ValueError("a value is given twice, expected each once")
+        return self
+
+
 class ClearanceTable(Table):
     name: Name | None = None
     box: Annotated[list[Vector], Field(min_length=2, max_length=2)]
@@ -387,3 +424,4 @@ class DossierTable(Table):
     clearances: list[ClearanceTable] = []
     amplitudes: list[AmplitudeTable] = []
     pairs: list[PairTable] = []
+    sweeps: list[SweepTable] = []

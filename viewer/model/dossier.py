@@ -13,6 +13,7 @@ from viewer.model.arrays import Array, frozen, frozen_map
 from viewer.model.design import Clearance, Design, FunctionalPoint, Physics, Selector
 from viewer.model.matrices import GivenMatrices, MatrixFiles
 from viewer.model.mesh import Mesh
+from viewer.model.variation import Variation
 
 
 @dataclass(frozen=True, eq=False)
@@ -75,9 +76,24 @@ class ModePair:
     second_mode: int
 
 
+@dataclass(frozen=True)
+class SweepPlan:
+    """A design to be solved at several ``values`` (SI, ascending) of one of its quantities, ``count`` modes each.
+
+    insert  put further steps where modes pass one another too fast for the given ones
+    """
+
+    name: str
+    design: str
+    variation: Variation
+    values: tuple[float, ...]
+    count: int
+    insert: bool = False
+
+
 @dataclass(frozen=True, eq=False)
 class Dossier:
-    """One product's designs, functional points, stated amplitudes and pairs of modes."""
+    """One product's designs, functional points, stated amplitudes, pairs of modes and sweeps."""
 
     title: str
     path: Path
@@ -85,6 +101,7 @@ class Dossier:
     amplitudes: tuple[StatedAmplitude, ...] = ()
     pairs: tuple[ModePair, ...] = ()
     condition: str = ""  # words for pictures that state no size: "clamped root, camera 1.2 kg"
+    sweeps: tuple[SweepPlan, ...] = ()
 
     def plan(self, name: str) -> DesignPlan:
         for plan in self.plans:
@@ -92,4 +109,16 @@ class Dossier:
                 return plan
         raise DossierError(
             f"no design named '{name}'", file=self.path, expected=f"one of: {', '.join(p.name for p in self.plans)}"
+        )
+
+    def sweep(self, name: str) -> SweepPlan:
+        for sweep in self.sweeps:
+            if sweep.name == name:
+                return sweep
+        names = ", ".join(s.name for s in self.sweeps)
+        raise DossierError(
+            f"no sweep named '{name}'",
+            file=self.path,
+            expected=f"one of: {names}" if names else "a sweep, none is declared",
+            do="" if names else "add [[sweeps]] to the dossier",
         )

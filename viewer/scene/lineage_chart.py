@@ -4,14 +4,15 @@ from __future__ import annotations
 
 import numpy as np
 
-from viewer.insight.lineage import Encounter, LineageFinding
+from viewer.insight.encounters import Encounter
+from viewer.insight.lineage import LineageFinding
 from viewer.scene.chart import HEIGHT, apart, chart_sheet, fitted, ticks
 from viewer.scene.figures import hertz
 from viewer.scene.primitives import Disc, Line, Primitive, Ring, Sheet, Text
 from viewer.scene.tokens import BAND_HEIGHT, BASE_WIDTH, MARGIN, TEXT_SMALL, THEMES, Tokens
 
 LEFT, RIGHT, TOP, FOOT = 84.0, BASE_WIDTH - 236.0, 56.0, HEIGHT - BAND_HEIGHT - 58
-_WORDS = {"crossing": "cross", "veering": "veer", "unresolved": "?"}
+_WORDS = {"crossing": "cross", "veering": "veer", "unresolved": "?", "swapped": ""}
 
 
 def lineage_chart(finding: LineageFinding, title: str = "", theme: str = "light") -> Sheet:
@@ -22,7 +23,7 @@ def lineage_chart(finding: LineageFinding, title: str = "", theme: str = "light"
     for line in finding.lines:
         items += _line(finding, line.freq_hz, x, y, tokens)
     items += [mark for e in finding.encounters for mark in _mark(e, finding, x, y, tokens)]
-    items += _names(finding, y, tokens)
+    items += _names(finding, x, y, tokens)
     kinds = {e.kind for e in finding.encounters}
     legend = [
         words
@@ -30,11 +31,13 @@ def lineage_chart(finding: LineageFinding, title: str = "", theme: str = "light"
             ("crossing", "× cross: shapes pass unchanged"),
             ("veering", "○ veer: frequencies turn away, shapes are traded"),
             ("unresolved", "? steps too coarse to tell"),
+            ("swapped", "× change places from one design to the next"),
         )
         if kind in kinds
     ]
     notes = (" · ".join(legend) or "no two modes meet", finding.sentence.removesuffix("."))
-    return chart_sheet(tokens, title or f"natural frequencies against {finding.parameter}", notes, items)
+    against = f"natural frequencies against {finding.parameter}" if finding.unit else "natural frequencies by design"
+    return chart_sheet(tokens, title or against, notes, items)
 
 
 def _axes(finding: LineageFinding):
@@ -54,15 +57,16 @@ def _grid(finding: LineageFinding, x, y, tokens: Tokens) -> list[Primitive]:
     for value in ticks(y.low, y.high, 7):
         items.append(Line(((LEFT, y(value)), (RIGHT, y(value))), tokens.rule, 1.0))
         items.append(Text(LEFT - 12, y(value) + 5, f"{value:g}", tokens.soft, TEXT_SMALL, False, "right"))
-    numeric = all(label == f"{value:g}" for label, value in zip(finding.labels, finding.values, strict=True))
-    if numeric:
-        places = [(v, f"{v:g}") for v in ticks(float(finding.values[0]), float(finding.values[-1]), 6)]
-    else:
-        places = list(zip(finding.values, finding.labels, strict=True))
+    si, below = (finding.unit.si, finding.parameter) if finding.unit else (1.0, "")
+    places = list(zip(finding.values, finding.labels, strict=True))
+    if finding.unit:
+        low, high = finding.values[0] / si, finding.values[-1] / si
+        places = [(si * value, f"{value:g}") for value in ticks(float(low), float(high), 6)]
+        below += f", {finding.unit.name}" if finding.unit.name else ""
     for value, words in places:
         items.append(Line(((x(value), FOOT), (x(value), FOOT + 6)), tokens.soft, 1.0))
         items.append(Text(x(value), FOOT + 24, fitted(words, 150), tokens.soft, TEXT_SMALL, False, "middle"))
-    items.append(Text((LEFT + RIGHT) / 2, FOOT + 46, finding.parameter, tokens.ink, TEXT_SMALL, False, "middle"))
+    items.append(Text((LEFT + RIGHT) / 2, FOOT + 46, below, tokens.ink, TEXT_SMALL, False, "middle"))
     return items
 
 
@@ -78,24 +82,26 @@ def _mark(e: Encounter, finding: LineageFinding, x, y, tokens: Tokens) -> list[P
     at = [float(np.interp(e.at, finding.values, lines[n])) for n in (e.first, e.second)]
     cx, cy = float(x(e.at)), float(y(sum(at) / 2))
     words = Text(cx, cy - 18, _WORDS[e.kind], tokens.accent, TEXT_SMALL, True, "middle")
-    if e.kind == "crossing":
+    if e.kind in ("crossing", "swapped"):
         arms = [((cx - 7, cy - 7), (cx + 7, cy + 7)), ((cx - 7, cy + 7), (cx + 7, cy - 7))]
         return [*(Line(arm, tokens.accent, 2.4) for arm in arms), words]
     return [Ring(cx, cy, 11.0, tokens.accent, 2.4), words]
 
 
-def _names(finding: LineageFinding, y, tokens: Tokens) -> list[Primitive]:
-    """Number and name of each lineage at its end, kept apart."""
-    ends = []
+def _names(finding: LineageFinding, x, y, tokens: Tokens) -> list[Primitive]:
+    """Frequency and name of each lineage at its end: beside the chart, kept apart, or where it ends before that."""
+    ends, items = [], list[Primitive]()
     for line in finding.lines:
-        known = np.nonzero(np.isfinite(line.freq_hz))[0]
-        if len(known) and known[-1] == len(line.freq_hz) - 1:
-            ends.append((float(y(line.freq_hz[-1])), line))
+        last = int(np.nonzero(np.isfinite(line.freq_hz))[0][-1])
+        at = float(y(line.freq_hz[last]))
+        if last == len(line.freq_hz) - 1:
+            ends.append((at, line))
+        else:
+            place = float(x(finding.values[last]))
+            items.append(Text(place + 8, at - 6, fitted(finding.called(line), 150), tokens.soft, TEXT_SMALL))
     ends.sort(key=lambda end: end[0])
-    items: list[Primitive] = []
     for (wished, line), at in zip(ends, apart([e[0] for e in ends], 19.0, TOP, FOOT), strict=True):
         items.append(Line(((RIGHT + 4, wished), (RIGHT + 20, float(at))), tokens.soft, 1.0))
-        words = line.name or f"mode {line.modes[0] or line.number}"
-        text = f"{words}, {hertz(float(line.freq_hz[-1]))}"
+        text = f"{hertz(float(line.freq_hz[-1]))} {finding.called(line)}"
         items.append(Text(RIGHT + 26, float(at) + 5, fitted(text, 236 - 26 - MARGIN / 2), tokens.ink, TEXT_SMALL))
     return items

@@ -8,13 +8,18 @@ from __future__ import annotations
 
 import multiprocessing
 import os
+import signal
 from collections.abc import Sequence
 from concurrent.futures import FIRST_COMPLETED, Executor, Future, ProcessPoolExecutor, wait
 from dataclasses import dataclass
+from itertools import pairwise
 
-from viewer.insight.lineage import Encounter, LineageFinding, follow
+import numpy as np
+
+from viewer.insight.encounters import Encounter
+from viewer.insight.lineage import LineageFinding, follow, successors
 from viewer.insight.pairing import cross_products
-from viewer.jobs import SILENT, Progress
+from viewer.jobs import SILENT, Progress, no_main_module
 from viewer.mechanics.eigen import solve
 from viewer.model.design import Design
 from viewer.model.modes import ModeSet
@@ -57,11 +62,10 @@ def sweep(
     varied = {v: variation.apply(design, v) for v in steps}
     solved = solve_all(workspace, [varied[v] for v in steps], count, executor, progress)
     modes = dict(zip(steps, solved, strict=True))
-    words = variation.what.replace("_", " ") + f" of {variation.target}"
-    for last in [not insert] * (not insert) + [k == _ROUNDS for k in range(_ROUNDS + 1)] * insert:
+    for rounds_left in range(_ROUNDS if insert else 0, -1, -1):
         steps = sorted(modes)
-        found = _followed([varied[v] for v in steps], [modes[v] for v in steps], steps, words, design, progress)
-        more = [] if last else sorted({v for e in found.encounters for v in _between(e)} - set(steps))
+        found = _followed(design, variation, varied, modes, count, workspace, progress)
+        more = sorted({v for e in found.encounters for v in _between(e)} - set(steps)) if rounds_left else []
         if not more:
             break
         varied |= {v: variation.apply(design, v) for v in more}
@@ -85,10 +89,12 @@ def solve_all(
     own = None
     if executor is None:
         context = multiprocessing.get_context("spawn")
-        executor = own = ProcessPoolExecutor(min(len(missing), os.cpu_count() or 1), mp_context=context)
+        size = min(len(missing), os.cpu_count() or 1)
+        executor = own = ProcessPoolExecutor(size, context, signal.signal, (signal.SIGINT, signal.SIG_IGN))
     waiting: dict[Future, int] = {}
     try:
-        waiting = {executor.submit(solve, designs[k], count): k for k in missing}
+        with no_main_module():
+            waiting = {executor.submit(solve, designs[k], count): k for k in missing}
         while waiting:
             progress.tick("solving the steps", len(found), len(designs))
             done, _ = wait(waiting, timeout=_LOOK, return_when=FIRST_COMPLETED)
@@ -112,14 +118,33 @@ def _end(pool: ProcessPoolExecutor, kill: bool) -> None:
 
 
 def _followed(
-    designs: list[Design], modes: list[ModeSet], values: list[float], words: str, design: Design, progress: Progress
+    design: Design,
+    variation: Variation,
+    varied: dict[float, Design],
+    modes: dict[float, ModeSet],
+    count: int,
+    workspace: Workspace,
+    progress: Progress,
 ) -> LineageFinding:
-    crosses = []
-    for k in range(len(designs) - 1):
-        progress.tick("following the modes", k, len(designs) - 1)
-        crosses.append(cross_products(designs[k], modes[k], designs[k + 1], modes[k + 1]))
-    names = [design.mode_names.get(number, "") for number in range(1, modes[0].count + 1)]
-    return follow(values, [m.freq_hz for m in modes], crosses, parameter=words, names=names)
+    steps, crosses = sorted(modes), []
+    for k, (a, b) in enumerate(pairwise(steps)):
+        progress.tick("following the modes", k, len(steps) - 1)
+        crosses.append(cross_products(varied[a], modes[a], varied[b], modes[b]))
+    names: list[dict[int, str]] = [{} for _ in steps]
+    if design.mode_names:  # they are those of the design as it stands
+        at = int(np.argmin(np.abs(np.array(steps) - variation.own_value(design))))
+        own = workspace.solve(design, count, progress)
+        near = varied[steps[at]], modes[steps[at]]
+        to = successors(cross_products(design, own, *near), own.freq_hz, near[1].freq_hz)
+        names[at] = {to[number - 1] + 1: name for number, name in design.mode_names.items() if number - 1 in to}
+    return follow(
+        steps,
+        [modes[v].freq_hz for v in steps],
+        crosses,
+        parameter=variation.words,
+        unit=variation.unit,
+        names=names,
+    )
 
 
 def _between(encounter: Encounter) -> list[float]:
