@@ -1,8 +1,8 @@
 """Score the search for hinge lines: ``python -m tests.collection.score --families tuning|held|unseen|scored|all``.
 
-Prints totals and the rows that went wrong; ``--write`` puts all rows into table.csv and the totals into totals.csv.
-``--fine`` adds the doubled density, ``--noise`` the run with noisy shapes, ``--invariance`` that with other meshes of
-the same parts.
+Prints totals and the rows that went wrong. ``--runs coarse,fine,noise,invariance`` says what is done: the parts, the
+parts at twice the density, noisy shapes, other meshes of the same parts. ``--write`` puts rows into table.csv and
+totals into totals.csv; those of other runs stay, so that all must be run again after a change of the search.
 """
 
 from __future__ import annotations
@@ -34,6 +34,7 @@ HERE = Path(__file__).parent
 TABLE = HERE / "table.csv"
 TOTALS = HERE / "totals.csv"
 LARGEST = {"quad4": 6_500, "tri3": 7_500, "quad8": 3_500, "hex8": 4_000, "hex20": 2_800, "tet10": 6_000}  # cells
+OTHER_RUNS = ("noise", "invariance")  # modules of this package
 DIRECTION_DEG, POSITION, SHARE_OFF = 3.0, 0.01, 0.15  # what a strong hinge must keep to
 
 
@@ -130,6 +131,12 @@ def read_table(path: Path = TABLE) -> tuple[str, list[dict[str, str]]]:
     return first, list(csv.DictReader(io.StringIO(rest)))
 
 
+def _row(texts: dict[str, str]) -> Row:
+    """A row as it was before it was written."""
+    read = {"str": str, "int": int, "bool": lambda text: text == "1", "float": lambda text: float(text or "nan")}
+    return Row(**{f.name: read[f.type](texts[f.name]) for f in fields(Row)})
+
+
 def run(parts: Sequence[Part], say: Callable[[str], None], each: Each = map, density: int = 1) -> list[Row]:
     """All parts scored, those of more cells than ``LARGEST`` at the coarse density only; ``say`` hears what went
     wrong."""
@@ -165,49 +172,68 @@ def show(title: str, figures: dict[str, float], say: Callable[[str], None]) -> N
         say(f"    {name:34s} {value if isinstance(value, int) else format(value, '.4g')}")
 
 
+def results_of(rows: Sequence[Row]) -> dict[str, dict[str, float]]:
+    """Totals by density and group of families, of the scored half (all but tuning), and of everything."""
+    names = {group: {p.name for p in parts_of(group)} for group in GROUPS}
+    names["scored half"] = names["held"] | names["unseen"]
+    names["all"] = names["tuning"] | names["scored half"]
+    out = {}
+    for density, word in ((1, ""), (2, "twice as dense: ")):
+        for group, members in names.items():
+            picked = [r for r in rows if r.density == density and r.part in members]
+            if picked:
+                out[word + group] = totals(picked)
+    return out
+
+
+def _merged(old: Sequence[Row], new: Sequence[Row]) -> list[Row]:
+    """The new rows with the old ones of other parts and densities, in the order of the parts."""
+    done = {(r.part, r.density) for r in new}
+    order = {p.name: i for i, p in enumerate(p for group in GROUPS for p in parts_of(group))}
+    kept = [r for r in old if (r.part, r.density) not in done and r.part in order]
+    return sorted([*kept, *new], key=lambda r: (r.density, order[r.part], r.mode, r.band))
+
+
+def _write(rows: Sequence[Row], others: dict[str, dict[str, float]]) -> None:
+    """Put rows into the table and totals beside it; those of other runs of the same generator stay."""
+    head, kept = f"# seed {SEED}, generator version {VERSION}", {}
+    same = TABLE.exists() and TABLE.read_text("utf-8").startswith(head + "\n")
+    rows = _merged([_row(r) for r in read_table()[1]] if same else [], rows)
+    if same and TOTALS.exists():
+        for line in TOTALS.read_text("utf-8").splitlines()[2:]:
+            run_name, name, value = line.split(",")
+            if run_name.startswith(OTHER_RUNS):
+                kept.setdefault(run_name, {})[name] = value
+    results = results_of(rows) | kept | others
+    write_text(TABLE, text_of(rows))
+    lines = [f"{title},{name},{cell(value)}" for title, figures in results.items() for name, value in figures.items()]
+    write_text(TOTALS, "\n".join([head, "run,figure,value", *lines]) + "\n")
+
+
 def main(arguments: Sequence[str] | None = None) -> int:
     parser = argparse.ArgumentParser(prog="python -m tests.collection.score", description=__doc__)
     parser.add_argument("--families", choices=[*GROUPS, "scored", "all"], default="tuning")
+    parser.add_argument("--runs", default="coarse", help="some of coarse, fine, noise, invariance, with commas")
     parser.add_argument("--part", default="", help="only parts whose names contain this")
-    parser.add_argument("--fine", action="store_true", help="score the doubled density as well")
-    parser.add_argument("--noise", action="store_true")
-    parser.add_argument("--invariance", action="store_true")
     parser.add_argument("--jobs", type=int, default=1, help="processes")
-    parser.add_argument("--write", action="store_true", help="write table.csv and totals.csv (with --families all)")
+    parser.add_argument("--write", action="store_true", help="update table.csv and totals.csv")
     given = parser.parse_args(arguments)
     say = lambda line: print(line, flush=True)  # noqa: E731, T201
+    each: Each = map
     if given.jobs > 1:
-        pool = ProcessPoolExecutor(given.jobs, multiprocessing.get_context("forkserver"))
-        each: Each = pool.map
-    else:
-        each = map
+        each = ProcessPoolExecutor(given.jobs, multiprocessing.get_context("forkserver")).map
     chosen = {"scored": ["held", "unseen"], "all": list(GROUPS)}.get(given.families, [given.families])
-    parts = {name: [p for p in parts_of(name) if given.part in p.name] for name in chosen}
-    rows = {name: run(parts[name], say, each) for name in chosen}
-    results = {name: totals(rows[name]) for name in chosen}
-    if "held" in rows and "unseen" in rows:
-        results["scored half"] = totals(rows["held"] + rows["unseen"])
-    if len(chosen) == len(GROUPS):
-        results["all"] = totals([r for group in rows.values() for r in group])
-    everything = [p for name in chosen for p in parts[name]]
-    if given.fine:
-        rows["fine"] = run(everything, say, each, 2)
-        results["fine: all" if len(chosen) == len(GROUPS) else "fine"] = totals(rows["fine"])
-        if "held" in chosen and "unseen" in chosen:
-            half = {p.name for name in ("held", "unseen") for p in parts[name]}
-            results["fine: scored half"] = totals([r for r in rows["fine"] if r.part in half])
-    if given.noise:
-        results["noise"] = import_module("tests.collection.noise").run(everything, say, each)
-    if given.invariance:
-        results["invariance"] = import_module("tests.collection.invariance").run(everything, say, each)
-    for title, figures in results.items():
+    parts = [p for name in chosen for p in parts_of(name) if given.part in p.name]
+    rows, others = [], {}
+    for name in given.runs.split(","):
+        if name in OTHER_RUNS:
+            others[f"{name}: {given.families}"] = import_module(f"tests.collection.{name}").run(parts, say, each)
+        else:
+            rows += run(parts, say, each, {"coarse": 1, "fine": 2}[name])
+    for title, figures in (results_of(rows) | others).items():
         show(title, figures, say)
     if given.write:
-        write_text(TABLE, text_of([r for group in rows.values() for r in group]))
-        lines = [f"# seed {SEED}, generator version {VERSION}", "run,figure,value"]
-        for title, figures in results.items():
-            lines += [f"{title},{name},{cell(value)}" for name, value in figures.items()]
-        write_text(TOTALS, "\n".join(lines) + "\n")
+        _write(rows, others)
     return 0
 
 
