@@ -3,6 +3,8 @@ against the factorised figure, and what is said where it falls short or is cance
 
 from __future__ import annotations
 
+import gc
+import weakref
 from dataclasses import replace
 
 import numpy as np
@@ -140,6 +142,26 @@ def test_another_librarys_modes_are_trusted_by_search(monkeypatch):
     assert energies(design(BAR, supports=(CLAMP,)), modes).trusted.all()
     wrong = modes.with_(shapes=ArrayShapes(modes.shapes.moved + modes.shapes.moved[[1, 2, 0]]))
     assert not energies(design(BAR, supports=(CLAMP,)), wrong).trusted.any()
+
+
+def test_matrices_are_let_go_at_once(monkeypatch):
+    """A circle of references would hold gigabytes until the collector runs."""
+    monkeypatch.setattr(closure, "FACTOR_LIMIT", 10)
+    alive = []
+    made = LeanMatrices.__init__
+
+    def noted(self, *args):
+        alive.append(weakref.ref(self))
+        made(self, *args)
+
+    monkeypatch.setattr(LeanMatrices, "__init__", noted)
+    modes = independent.modes(BAR, STEEL, 3, degree=2, held="x0")
+    gc.disable()
+    try:
+        energies(design(BAR, supports=(CLAMP,)), modes)
+        assert [held() for held in alive] == [None]
+    finally:
+        gc.enable()
 
 
 def test_what_the_search_leaves_open_is_said_and_not_trusted(monkeypatch):

@@ -166,7 +166,7 @@ class _Lean(LeanMatrices):
         self._layout, self._zones = layout, Zones(layout, self, progress)
 
     def solver(self, alpha: float, progress: Progress) -> Solver:
-        correct = self._zones.correction(alpha, progress)
+        correct = self._zones.correction(self, alpha, progress)
 
         def push(way: Array) -> Array:
             return self._layout.force(self.shifted(self._layout.extend(way.T).T, alpha).T).T

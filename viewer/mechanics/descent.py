@@ -75,7 +75,7 @@ class Zones:
     """The preconditioner of one layout: blocks of triples and rigid motions of zones, for any α."""
 
     def __init__(self, layout: Layout, matrices: LeanMatrices, progress: Progress = SILENT) -> None:
-        self._layout, self._matrices = layout, matrices
+        self._layout = layout
         progress.tick("zones")
         triple_node = np.empty(layout.n_dof // 3, np.int64)
         for numbers in layout.dof[:, ::3].T:
@@ -86,13 +86,13 @@ class Zones:
             self._mixed.T @ matrix @ self._mixed for matrix in matrices.onto(_lifted(layout, self._motions))
         )
 
-    def correction(self, alpha: float, progress: Progress = SILENT) -> Columns:
+    def correction(self, matrices: LeanMatrices, alpha: float, progress: Progress = SILENT) -> Columns:
         """What brings columns (n_free, k) near A⁻¹ of them."""
         progress.tick("factorising zones")
         coarse = sp.csr_array(self._stiffness + alpha * self._mass)
         coarse.sort_indices()
         factor = factorise(coarse, definite=True)
-        local, place = _local_inverses(self._layout, self._matrices, alpha)
+        local, place = _local_inverses(self._layout, matrices, alpha)
         motions, mixed = self._motions, self._mixed
 
         def correct(rest: Array) -> Array:
