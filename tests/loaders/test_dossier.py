@@ -352,6 +352,85 @@ def test_implausible_values_are_flagged_not_refused(write, change, words):
     assert words in warnings[0]
 
 
+SWEEP = (
+    FULL
+    + """
+[[sweeps]]
+name = "sheet"
+what = "thickness"
+target = "*"
+values = [2.5, 1.5, 2]
+count = 3
+insert = true
+"""
+)
+
+SWEEPS = {
+    "span": (("values = [2.5, 1.5, 2]", "from = 1.5\nto = 2.5\nsteps = 3"), (0.0015, 0.002, 0.0025), "mm"),
+    "modulus": (('"thickness"\ntarget = "*"', '"youngs_modulus"\ntarget = "steel"'), (1.5e9, 2e9, 2.5e9), "GPa"),
+    "density": (('"thickness"\ntarget = "*"', '"density"\ntarget = "steel"'), (1500, 2000, 2500), "g/cm³"),
+    "mass": (('"thickness"\ntarget = "*"', '"mass"\ntarget = "camera"'), (0.0015, 0.002, 0.0025), "g"),
+    "spring": (('"thickness"\ntarget = "*"', '"spring"\ntarget = "strap"'), (1.5, 2, 2.5), ""),
+    "scale": (('"thickness"\ntarget = "*"', '"scale"\ntarget = "xz"'), (1.5, 2, 2.5), ""),
+}
+
+
+@pytest.mark.parametrize("case", SWEEPS)
+def test_a_sweep_comes_out_in_si_ascending(write, case):
+    change, values, unit = SWEEPS[case]
+    (sweep,) = read_dossier(write(SWEEP, change)).sweeps
+    assert (sweep.name, sweep.design, sweep.count, sweep.insert) == ("sheet", "baseline", 3, True)
+    assert sweep.values == pytest.approx(values)
+    assert sweep.variation.unit.name == unit
+    assert (sweep.variation.unit.si == 1) == (not unit)
+
+
+def test_what_a_sweep_leaves_out(write):
+    (sweep,) = read_dossier(write(SWEEP, ("count = 3\ninsert = true", ""))).sweeps
+    assert (sweep.design, sweep.count, sweep.insert) == ("baseline", 8, False)
+
+
+WRONG_SWEEPS = {
+    "unknown quantity": (('what = "thickness"', 'what = "length"'), r'\("sheet"\), what: .*found: \'length\''),
+    "unknown target": (('target = "*"', 'target = "lid"'), r'\("sheet"\), target: no sheet assignment named'),
+    "unknown material": (
+        ('"thickness"\ntarget = "*"', '"density"\ntarget = "stel"'),
+        r"target: no material named 'stel'.*did you mean 'steel'",
+    ),
+    "unknown axes": (('"thickness"\ntarget = "*"', '"scale"\ntarget = "xw"'), r"target: no axes named 'xw'"),
+    "unknown design": (('name = "sheet"', 'name = "sheet"\ndesign = "base"'), r"design: no design named 'base'"),
+    "design without material": (
+        ('name = "sheet"', 'name = "sheet"\ndesign = "modified"'),
+        r"design: design 'modified' cannot be solved anew",
+    ),
+    "no values": (("values = [2.5, 1.5, 2]", ""), r'sweeps 1 \("sheet"\): .*expected: either values ='),
+    "half a span": (("values = [2.5, 1.5, 2]", "from = 1\nto = 2"), r"expected: either values ="),
+    "both": (("count = 3", "steps = 3"), r"expected: either values ="),
+    "one value": (("[2.5, 1.5, 2]", "[2.5]"), r"values: .*at least 2 items"),
+    "a value twice": (("[2.5, 1.5, 2]", "[2, 1.5, 2]"), r"a value is given twice"),
+    "value of nothing": (("[2.5, 1.5, 2]", "[0, 1]"), r"values 1: .*greater than 0"),
+    "span of nothing": (("values = [2.5, 1.5, 2]", "from = 1\nto = 1\nsteps = 3"), r"from and to are the same"),
+    "no modes": (("count = 3", "count = 0"), r"count: .*greater than or equal to 1"),
+    "name twice": (
+        ("[[sweeps]]", '[[sweeps]]\nname = "sheet"\nwhat = "scale"\ntarget = "x"\nvalues = [1, 2]\n[[sweeps]]'),
+        r"sweeps: 'sheet' is given twice",
+    ),
+}  # fmt: skip
+
+
+@pytest.mark.parametrize("case", WRONG_SWEEPS)
+def test_one_clear_message_about_a_sweep(write, case):
+    change, message = WRONG_SWEEPS[case]
+    path = write(SWEEP, change)
+    with pytest.raises(DossierError, match=message) as caught:
+        read_dossier(path)
+    assert str(caught.value).startswith(str(path)) and "\n" not in str(caught.value)
+
+
+def test_a_sweep_over_implausible_values_is_flagged(write):
+    assert any("sweeps 1" in words for words in read_dossier_report(write(SWEEP, ("2.5, 1.5, 2", "2, 2500")))[1])
+
+
 def test_byte_order_mark_and_foreign_letters(write, tmp_path):
     (tmp_path / "größe.vtu").write_text("mesh")
     path = write("\ufeff" + FULL, ('mesh = "boom.vtu"', 'mesh = "größe.vtu"'))

@@ -31,9 +31,9 @@ _BULGE = 1.25  # a curved cell stays within this many times the reach of its nod
 class Places:
     """The nearest place for each of q points.
 
-    cell      (q,) cell row, counted through the blocks in order
+    cell      (q,) cell row, counted through the blocks in order; −1 where there is none within reach
     xi        (q, 3) reference coordinates there; columns beyond the kind's dimension are 0
-    distance  (q,) m; 0 inside a solid
+    distance  (q,) m; 0 inside a solid, infinite where there is none within reach
     position  (q, 3) m
     """
 
@@ -43,9 +43,10 @@ class Places:
     position: Array
 
 
-def nearest(blocks: Sequence[tuple[str, Array]], points: Array, queries: Array) -> Places:
+def nearest(blocks: Sequence[tuple[str, Array]], points: Array, queries: Array, reach: float = np.inf) -> Places:
     """The nearest place of the cells in ``blocks`` (kind, nodes (n, nodes per cell)) of ``points`` (p, 3), m, to each
-    of the ``queries`` (q, 3), m. ``ValueError`` when there is no cell."""
+    of the ``queries`` (q, 3), m; places beyond ``reach``, m, need not be found. ``ValueError`` when there is no
+    cell."""
     points, queries = np.asarray(points, float), np.asarray(queries, float).reshape(-1, 3)
     starts = np.cumsum([0, *(len(nodes) for _, nodes in blocks)])
     if starts[-1] == 0:
@@ -68,30 +69,39 @@ def nearest(blocks: Sequence[tuple[str, Array]], points: Array, queries: Array) 
     if outside.any():
         thin = [part for part in rows if KINDS[part[0]].dim < 2]
         # surface cells come out with the faces of solids
-        _sweep([*outer_faces(blocks), *thin], points, queries, best)
+        _sweep([*outer_faces(blocks), *thin], points, queries, best, reach)
     _into_solids(solids, points, best, outside)
     return best
 
 
 def _sweep(
-    parts: list[tuple[str, Array, Array]], points: Array, queries: Array, best: Places, *, within: bool = False
+    parts: list[tuple[str, Array, Array]],
+    points: Array,
+    queries: Array,
+    best: Places,
+    reach: float = np.inf,
+    *,
+    within: bool = False,
 ) -> None:
-    """Improve ``best`` of the queries without a place by the cells ``parts`` (kind, nodes, cell rows); ``within``:
-    only solids that hold the query count."""
+    """Improve ``best`` of the queries without a place by the cells ``parts`` (kind, nodes, cell rows) up to ``reach``
+    away; ``within``: only solids that hold the query count."""
     spheres = [_spheres(points[nodes]) for _, nodes, _ in parts if len(nodes)]
     centre, radius = (np.concatenate(part) for part in zip(*spheres, strict=True))
     tree, largest = cKDTree(centre), radius.max()
     open_rows = np.nonzero(np.isinf(best.distance))[0]
+    bounded = lambda distance: np.minimum(distance, reach)  # noqa: E731
     count, done = 4, 0
     while len(open_rows):
         count = min(count, len(centre))
         away, cells = tree.query(queries[open_rows], k=count)
         away, cells = away.reshape(len(open_rows), -1), cells.reshape(len(open_rows), -1)
         for column in range(done, count):  # nearest centre first, so that most others can be dropped
-            bound = np.where(np.isinf(best.distance[open_rows]), 0, -1) if within else best.distance[open_rows]
+            bound = (
+                np.where(np.isinf(best.distance[open_rows]), 0, -1) if within else bounded(best.distance[open_rows])
+            )
             wanted = away[:, column] - radius[cells[:, column]] <= bound
             _improve(best, parts, points, queries, open_rows[wanted], cells[wanted, column], within)
-        bound = np.zeros(len(open_rows)) if within else best.distance[open_rows]
+        bound = np.zeros(len(open_rows)) if within else bounded(best.distance[open_rows])
         settled = (bound <= away[:, -1] - largest) | (best.distance[open_rows] == 0)
         open_rows = open_rows[~settled] if count < len(centre) else open_rows[:0]
         done, count = count, 2 * count

@@ -25,8 +25,10 @@ from viewer.mechanics.sums import cell_volumes
 from viewer.model.arrays import Array
 from viewer.model.design import Design, LumpedMass
 from viewer.model.mesh import Mesh
+from viewer.model.written import GAP, digits
 
 NEAR = 0.01  # a place farther from the other design than this share of the smaller diagonal is not in it
+_ROUNDING = 1e-9  # of the diagonal: what the search for a place leaves
 
 
 @dataclass(frozen=True, eq=False)
@@ -80,8 +82,8 @@ class CommonSupport:
         if not facts["largest_distance_m"] and not facts["regions"]:
             return f"Shapes are compared at {facts['places']} nodes that both designs share."
         words = (
-            f"Shapes are compared at {facts['places']} places, at most {1000 * facts['largest_distance_m']:.2g} mm "
-            f"from the other design's mesh"
+            f"Shapes are compared at {facts['places']} places, at most {digits(1000 * facts['largest_distance_m'])}"
+            f"{GAP}mm from the other design's mesh"
         )
         for region in facts["regions"]:
             words += f"; {region['place']} is in {region['design']} only ({region['mass_share']:.1%} of its mass)"
@@ -112,7 +114,8 @@ def common_support(first: Design, second: Design, progress: Progress = SILENT) -
     near = NEAR * min(first.mesh.diagonal, second.mesh.diagonal)
     rows = _places(coarse.mesh)
     progress.tick("common support", 0, 3)
-    carried, distances = _looked_up(fine.mesh, coarse.mesh.points[rows])
+    carried, distances = _looked_up(fine.mesh, coarse.mesh.points[rows], near)
+    distances[distances < _ROUNDING * fine.mesh.diagonal] = 0
     shared = distances <= near
     if shared.sum() < 3:
         raise RefusedError(
@@ -160,15 +163,16 @@ def _places(mesh: Mesh) -> Array:
     return mesh.used_nodes if mesh.n_cells else np.arange(mesh.n_nodes)
 
 
-def _looked_up(mesh: Mesh, queries: Array) -> tuple[sp.csr_array, Array]:
-    """The operator (q, n_nodes) that carries nodal values of ``mesh`` to the nearest places, and distances (q,)."""
+def _looked_up(mesh: Mesh, queries: Array, near: float) -> tuple[sp.csr_array, Array]:
+    """The operator (q, n_nodes) that carries nodal values of ``mesh`` to the nearest places, and distances (q,);
+    rows of queries farther than ``near`` may be empty, their distance infinite."""
     blocks = [(block.kind, block.nodes) for block in mesh.blocks]
     if not mesh.n_cells:  # points alone, as of a test
         distance, row_of = cKDTree(mesh.points).query(queries)
         ones = np.ones(len(queries))
         return sp.csr_array((ones, (np.arange(len(queries)), row_of)), shape=(len(queries), mesh.n_nodes)), distance
-    places = nearest(blocks, mesh.points, queries)
-    data, row, column = [], [], []
+    places = nearest(blocks, mesh.points, queries, near)
+    data, row, column = [np.empty(0)], [np.empty(0, int)], [np.empty(0, int)]
     for mine, nodes, weights in interpolation(blocks, places):
         data.append(weights.ravel())
         row.append(np.repeat(mine, nodes.shape[1]))
@@ -185,7 +189,7 @@ def _far_nodes(mesh: Mesh, other: Mesh, near: float) -> Array:
     far = np.zeros(mesh.n_nodes, bool)
     open_rows = rows[distance > near]
     if len(open_rows):
-        far[open_rows] = _looked_up(other, mesh.points[open_rows])[1] > near
+        far[open_rows] = _looked_up(other, mesh.points[open_rows], near)[1] > near
     return far
 
 
@@ -256,5 +260,5 @@ def _place(mesh: Mesh, cells: Array) -> str:
     named = {n: len(mesh.cell_groups[n]) for n, both in inside.items() if both >= 0.9 * len(cells)}
     if named:
         return min(named, key=lambda n: named[n])
-    x, y, z = 1000 * mesh.points[mesh.nodes_of_cells(cells)].mean(axis=0)
-    return f"a region about ({x:.0f}, {y:.0f}, {z:.0f}) mm"
+    x, y, z = (round(1000 * c) for c in mesh.points[mesh.nodes_of_cells(cells)].mean(axis=0).tolist())
+    return f"a region about ({x}, {y}, {z}) mm"

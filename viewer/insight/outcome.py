@@ -121,18 +121,24 @@ def _change(a: Hinge | None, b: Hinge | None) -> HingeChange:
 def sentence_of(facts: dict[str, Any]) -> str:
     """The plain sentence made of the figures of ``Outcome.to_dict``."""
     one, two = facts["first_design"], facts["second_design"]
+    if facts["kind"] == "beyond":
+        which, other = ("first", two) if facts["first_mode"] else ("second", one)
+        return (
+            f"{_mode(facts[f'{which}_design'], facts, which)} lies so near the end of the modes compared that its "
+            f"counterpart in {other} may lie beyond them (best agreement {facts['mac']:.0%})."
+        )
     if facts["kind"] == "new":
         return f"{_mode(two, facts, 'second')} is new: no mode of {one} among those compared looks like it."
     head = _mode(one, facts, "first")
     if facts["kind"] == "vanished":
-        return f"{head} has no counterpart among the modes of {two} (best agreement {facts['mac']:.2f} of 1)."
+        return f"{head} has no counterpart among the modes of {two} (best agreement {facts['mac']:.0%})."
     if facts["kind"] == "merged":
-        return f"{head} is taken up by mode {facts['merged_into']} of {two} (agreement {facts['mac']:.2f} of 1)."
+        return f"{head} is taken up by mode {facts['merged_into']} of {two} (agreement {facts['mac']:.0%})."
     words = f"{head} becomes mode {facts['second_mode']} of {two} at {_hz(facts['second_hz'])}"
     if facts["change_percent"] is not None:
         words += f" ({change(facts['second_hz'], facts['first_hz'])})"
     agreement = facts["mac"] if facts["subspace_agreement"] is None else facts["subspace_agreement"]
-    words += f", {_alike(agreement)} ({agreement:.2f} of 1"
+    words += f", {_alike(agreement)} (agreement {agreement:.0%}"
     if facts["subspace_agreement"] is not None:
         listed = lambda modes: " and ".join(str(n) for n in modes)  # noqa: E731
         words += (

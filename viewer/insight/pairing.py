@@ -20,8 +20,10 @@ from viewer.model.arrays import Array, frozen
 from viewer.model.design import Design
 from viewer.model.modes import ModeSet
 
+KINDS = ("paired", "vanished", "new", "merged", "beyond")
 PAIRED = 0.5  # MAC: less than half of the shape in common is another mode
 CLOSE = 0.02  # relative difference of frequencies up to which modes of one design count as a group
+EDGE = 0.9  # of the other design's highest frequency compared: a partner of a mode from there on may lie beyond it
 MERGED = 0.25  # least MAC with the mode that took a mode up, when that mode lies in the span of both
 
 
@@ -29,7 +31,8 @@ MERGED = 0.25  # least MAC with the mode that took a mode up, when that mode lie
 class ModePair:
     """What became of one mode. Numbers from 1; None where there is no partner.
 
-    kind      "paired", "vanished", "new", "merged" (taken up by a mode that has another partner)
+    kind      "paired", "vanished", "new", "merged" (taken up by a mode that has another partner), "beyond" (without
+              partner, but so near the upper end of the modes compared that it may lie beyond them)
     mac       of the two shapes, weighted by mass; of the best candidate where there is no partner, 0 without any
     subspace  least cos² of the angles between the groups of close modes that both belong to; None when neither has
               close company
@@ -94,7 +97,7 @@ class Pairing:
         return sentence_of(self.to_dict())
 
     def to_dict(self) -> dict[str, Any]:
-        count = {kind: sum(p.kind == kind for p in self.pairs) for kind in ("paired", "vanished", "new", "merged")}
+        count = {kind: sum(p.kind == kind for p in self.pairs) for kind in KINDS}
         return {
             "first_design": self.first,
             "second_design": self.second,
@@ -107,15 +110,24 @@ class Pairing:
 
 def sentence_of(facts: dict[str, Any]) -> str:
     """The plain sentence made of the figures of ``Pairing.to_dict``."""
-    count, one, two = facts["counts"], facts["first_design"], facts["second_design"]
-    words = f"From {one} to {two}, {count['paired']} modes keep their shape"
+    one, two = facts["first_design"], facts["second_design"]
+
+    def modes(kind: str, which: str) -> list[int]:
+        return [p[f"{which}_mode"] for p in facts["pairs"] if p["kind"] == kind and p[f"{which}_mode"]]
+
+    words = f"From {one} to {two}, {facts['counts']['paired']} modes are found again"
     for kind, said in (("vanished", "have no counterpart"), ("merged", "are taken up by others")):
-        if count[kind]:
-            listed = [p["first_mode"] for p in facts["pairs"] if p["kind"] == kind]
-            words += f"; of {one}, {_modes(listed)} {said if len(listed) > 1 else _singular(said)}"
-    if count["new"]:
-        listed = [p["second_mode"] for p in facts["pairs"] if p["kind"] == "new"]
-        words += f"; {_modes(listed)} of {two} {'are' if len(listed) > 1 else 'is'} new among those compared"
+        if lost := modes(kind, "first"):
+            words += f"; of {one}, {_modes(lost)} {said if len(lost) > 1 else _singular(said)}"
+    if new := modes("new", "second"):
+        words += f"; {_modes(new)} of {two} {'are' if len(new) > 1 else 'is'} new among those compared"
+    ends = [
+        f"{_modes(listed)} of {design}"
+        for which, design in (("first", one), ("second", two))
+        if (listed := modes("beyond", which))
+    ]
+    if ends:
+        words += f"; counterparts of {' and of '.join(ends)} may lie beyond the modes compared"
     return words + "."
 
 
@@ -141,8 +153,7 @@ def pair(
     taken = {p.second for p in pairs}
     for j in range(second_modes.count):
         if j + 1 not in taken:
-            best = float(matrix[:, j].max(initial=0.0))
-            pairs.append(ModePair("new", None, j + 1, None, float(second_modes.freq_hz[j]), best))
+            pairs.append(alone(None, j + 1, second_modes.freq_hz[j], first_modes.freq_hz, matrix[:, j]))
     return Pairing(first.name, second.name, support, matrix, tuple(_mergers(pairs, matrix, one, two)))
 
 
@@ -168,6 +179,16 @@ def subspace_agreement(one: Array, two: Array) -> float:
     first, second = np.linalg.qr(one.T)[0], np.linalg.qr(two.T)[0]
     cosines = np.linalg.svd(first.conj().T @ second, compute_uv=False)
     return float(min(cosines.min(), 1.0) ** 2)
+
+
+def alone(first: int | None, second: int | None, hz: float, others_hz: Array, mac_with: Array) -> ModePair:
+    """A mode without partner, number ``first`` or ``second``; the frequencies of the other design's modes and the MAC
+    with each."""
+    best, hz = float(np.max(mac_with, initial=0.0)), float(hz)
+    beyond = hz >= EDGE * np.max(others_hz, initial=0.0)
+    if second is None:
+        return ModePair("beyond" if beyond else "vanished", first, None, hz, None, best)
+    return ModePair("beyond" if beyond else "new", None, second, None, hz, best)
 
 
 def _vectors(modes: ModeSet, support: CommonSupport, which: int, progress: Progress) -> Array:
@@ -199,7 +220,7 @@ def _became(
 ) -> ModePair:
     one_hz = float(modes[0].freq_hz[i])
     if j is None:
-        return ModePair("vanished", i + 1, None, one_hz, None, float(matrix[i].max(initial=0.0)))
+        return alone(i + 1, None, one_hz, modes[1].freq_hz, matrix[i])
     value, subspace = float(matrix[i, j]), None
     named: tuple[tuple[int, ...], tuple[int, ...]] = ((), ())
     mine, theirs = groups[0][i], groups[1][j]
@@ -208,7 +229,7 @@ def _became(
         subspace = subspace_agreement(vectors[0][list(mine)], vectors[1][list(theirs)])
         named = (tuple(k + 1 for k in mine), tuple(k + 1 for k in theirs))
     if max(value, subspace or 0.0) < PAIRED:
-        return ModePair("vanished", i + 1, None, one_hz, None, float(matrix[i].max()))
+        return alone(i + 1, None, one_hz, modes[1].freq_hz, matrix[i])
     return ModePair("paired", i + 1, j + 1, one_hz, float(modes[1].freq_hz[j]), value, subspace, named)
 
 
@@ -218,7 +239,7 @@ def _mergers(pairs: list[ModePair], matrix: Array, one: Array, two: Array) -> li
     by_second = {p.second: p for p in pairs if p.kind == "paired"}
     out = []
     for p in pairs:
-        if p.kind == "vanished" and p.first is not None and matrix.shape[1]:
+        if p.kind in ("vanished", "beyond") and p.first is not None and matrix.shape[1]:
             best = int(np.argmax(matrix[p.first - 1]))
             host = by_second.get(best + 1)
             if host is not None and host.first is not None and matrix[p.first - 1, best] >= MERGED:

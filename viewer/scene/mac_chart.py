@@ -52,11 +52,12 @@ def mac_chart(
         for j in range(columns):
             items += _cell(pairing, i, j, side, size, theme)
     counts = pairing.to_dict()["counts"]
-    lost = counts["vanished"] + counts["merged"]
+    alone = {"without counterpart": counts["vanished"] + counts["merged"], "new": counts["new"]}
+    alone["near the end of the modes compared"] = counts["beyond"]
+    said = "".join(f", {number} {words}" for words, number in alone.items() if number)
     notes = (
         "1 = same shape, 0 = nothing in common (modal assurance criterion, weighted by mass); framed: paired",
-        f"{counts['paired']} paired, {lost} without counterpart, {counts['new']} new "
-        f"· shapes compared at {len(pairing.support.weights)} places",
+        f"{counts['paired']} paired{said} · shapes compared at {len(pairing.support.weights)} places",
     )
     return chart_sheet(tokens, f"{pairing.first} against {pairing.second}", notes, items, height)
 

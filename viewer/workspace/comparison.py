@@ -6,9 +6,11 @@ from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from typing import Any
 
+import numpy as np
+
 from viewer.errors import InputError
 from viewer.insight.outcome import Outcome, outcome
-from viewer.insight.pairing import ModePair, Pairing, pair
+from viewer.insight.pairing import ModePair, Pairing, alone, pair
 from viewer.jobs import SILENT, Progress
 from viewer.workspace.explanation import asked
 from viewer.workspace.study import Study
@@ -86,6 +88,7 @@ def _with_stated(found: Pairing, stated: Sequence[tuple[int, int]]) -> tuple[Mod
     """The pairs with the stated ones put in; a mode that thereby loses its partner has none."""
     first = {p.first: p.first_hz for p in found.pairs if p.first}
     second = {p.second: p.second_hz for p in found.pairs if p.second}
+    first_hz, second_hz = (np.array([*hz.values()]) for hz in (first, second))
     wanted = {one: two for one, two in stated if one in first and two in second}
     out = []
     for p in found.pairs:
@@ -97,12 +100,11 @@ def _with_stated(found: Pairing, stated: Sequence[tuple[int, int]]) -> tuple[Mod
         elif p.second in wanted.values():
             if p.first is None:
                 continue
-            p = ModePair("vanished", p.first, None, p.first_hz, None, p.mac)
+            p = alone(p.first, None, first[p.first], second_hz, found.matrix[p.first - 1])
         out.append(p)
     taken = {p.second for p in out}
     for j in sorted(second.keys() - taken):
-        best = float(found.matrix[:, j - 1].max(initial=0.0))
-        out.append(ModePair("new", None, j, None, second[j], best))
+        out.append(alone(None, j, second[j], first_hz, found.matrix[:, j - 1]))
     return tuple(out)
 
 
