@@ -10,6 +10,7 @@ import scipy.sparse as sp
 from scipy.sparse.csgraph import connected_components
 
 from viewer.cells import KINDS
+from viewer.mechanics.relative import states_no_material
 from viewer.mechanics.turning import cell_rotations
 from viewer.model.arrays import Array
 from viewer.model.design import Design
@@ -127,6 +128,8 @@ def _means(mesh: Mesh, values: Array) -> Array:
 
 def _masses(design: Design, volume: Array) -> Array:
     """Shares of the cells' mass; one density where the design states none."""
+    if states_no_material(design):
+        return volume / volume.sum()
     props, index = design.properties
     densities = np.array([*(p.material.density for p in props), 0.0], float)
     mass = volume * densities[index]

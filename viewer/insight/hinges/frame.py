@@ -58,7 +58,7 @@ def frame_of(field: Field, cells: Array) -> Frame | None:
     arc = _arc(field, points, weight, spans)
     if arc is not None:
         return _kept(_frame(field, arc, near, None, None, False), slack)
-    blob = bool(spans[0] < LONG * spans[1])
+    blob = bool(spans[0] < LONG * spans[1] or (field.dim[cells] == 1).all())  # beams have no width to fold along
     close = float(max(spans[1], 2 * grain))
     if not blob:
         line = Line(centre, directions[0])
