@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from math import ceil, log10
 from types import MappingProxyType
 from typing import Any
 
@@ -71,6 +72,7 @@ class LineageFinding:
             "parameter": self.parameter,
             "unit": self.unit.name if self.unit else None,
             "si_per_unit": self.unit.si if self.unit else None,
+            "steps": len(self.values),
             "values": self.values.tolist(),
             "labels": list(self.labels),
             "followed_throughout": sum(all(line.modes) for line in self.lines),
@@ -104,9 +106,8 @@ class LineageFinding:
 def sentence_of(facts: dict[str, Any]) -> str:
     """The plain sentence made of the figures of ``LineageFinding.to_dict``."""
     names = {line["number"]: line["called"] for line in facts["lineages"]}
-    steps = "steps" if facts["si_per_unit"] else "designs"
-    count = len(facts["values"])
-    words = f"{facts['followed_throughout']} of {len(names)} modes are followed through all {count} {steps}"
+    steps = f"{facts['steps']} {'steps' if facts['si_per_unit'] else 'designs'}"
+    words = f"{facts['followed_throughout']} of {len(names)} modes are followed through all {steps}"
     if facts["followed_throughout"] < len(names):
         words += ", the others come from or go beyond the modes compared"
     for e in facts["encounters"]:
@@ -115,20 +116,28 @@ def sentence_of(facts: dict[str, Any]) -> str:
             one, two = (facts["labels"][facts["values"].index(value)] for value in e["between"])
             words += f"; {both} change places from {one} to {two}"
             continue
-        where = f"{facts['parameter']} {_told(e['at'], facts, 4)}"
+        where = f"{facts['parameter']} {_place(e['at'], facts)}"
         if e["kind"] == "crossing":
             words += f"; {both} cross at {where}"
         elif e["kind"] == "veering":
             gap = f"{digits(e['gap_hz'], 3)}{GAP}Hz"
             words += f"; {both} veer at {where}, never closer than {gap}, and trade shapes"
         else:
-            step = _told(e["proposed_step"], facts, 2)
-            words += f"; how {both} pass near {where} is unresolved: try steps of {step}"
+            step = digits(e["proposed_step"] / facts["si_per_unit"], 2)
+            words += f"; how {both} pass near {where} is unresolved: try steps of {_with_unit(step, facts)}"
     return words + "."
 
 
-def _told(value: float, facts: dict[str, Any], significant: int) -> str:
-    text = digits(value / facts["si_per_unit"], significant)
+def _place(value: float, facts: dict[str, Any]) -> str:
+    """A value of the parameter in its unit, to a thousandth of the range or finer."""
+    si = facts["si_per_unit"]
+    span = abs(facts["values"][-1] - facts["values"][0]) / si
+    text = f"{value / si:.{max(0, ceil(-log10(span / 1000)))}f}"
+    text = text.rstrip("0").rstrip(".") if "." in text else text
+    return _with_unit("0" if text == "-0" else text.replace("-", "−"), facts)
+
+
+def _with_unit(text: str, facts: dict[str, Any]) -> str:
     return f"{text}{GAP}{facts['unit']}" if facts["unit"] else text
 
 
