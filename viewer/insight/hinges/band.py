@@ -81,19 +81,20 @@ class Examiner:
 
     def __init__(self, field: Field) -> None:
         self._field = field
-        self._known: dict[bytes, Draft | None] = {}
+        self._known: dict[tuple[bytes, bool], Draft | None] = {}
 
-    def __call__(self, cells: Array) -> Draft | None:
-        """Measure the candidate ``cells``, and once more what came out as the band; None when it is no band between
-        two sides."""
-        draft = self._once(cells)
-        return None if draft is None else self._once(draft.cells)
+    def __call__(self, cells: Array) -> list[Draft]:
+        """Measure the candidate ``cells`` as a line and as a blob, and once more what came out as the band; empty
+        when it is no band between two sides."""
+        first = [draft for blob in (False, True) if (draft := self._once(cells, blob)) is not None]
+        second = [self._once(d.cells, d.frame.blob) or self._once(d.cells, not d.frame.blob) for d in first]
+        return [draft for draft in second if draft is not None]
 
-    def _once(self, cells: Array) -> Draft | None:
-        key = cells.tobytes()
+    def _once(self, cells: Array, blob: bool) -> Draft | None:
+        key = cells.tobytes(), blob
         if key not in self._known:
             field = self._field
-            frame = frame_of(field, cells) if field.strain[cells].sum() > 0 else None
+            frame = frame_of(field, cells, blob) if field.strain[cells].sum() > 0 else None
             self._known[key] = None if frame is None else _measured(field, cells, frame)
         return self._known[key]
 

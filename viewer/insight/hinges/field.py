@@ -146,6 +146,7 @@ def touching(mesh: Mesh) -> sp.csr_array:
     seen = np.zeros((mesh.n_nodes, 4), bool)
     for block, start in zip(mesh.blocks, mesh.block_starts[:-1], strict=True):
         kind, rows = KINDS[block.kind], np.arange(start, start + len(block))
+        sides: list[tuple[int, ...]]
         if kind.dim == 3:
             sides = [face[: KINDS[name].n_corners] for name, face in kind.faces]
         elif kind.dim == 2:
@@ -180,9 +181,9 @@ def _clamped(design: Design, dim: Array) -> Array:
         rows = support.where.rows(mesh)
         for name in support.held:
             held[rows, ("ux", "uy", "uz", "rx", "ry", "rz").index(name)] = True
-    still, fixed = held[:, :3].all(axis=1), held.all(axis=1)
+    still, fixed = np.all(held[:, :3], axis=1), np.all(held, axis=1)
     out = np.zeros(mesh.n_cells, bool)
     for block, start in zip(mesh.blocks, mesh.block_starts[:-1], strict=True):
-        flag = still if KINDS[block.kind].dim == 3 else fixed
+        flag: Array = np.asarray(still if KINDS[block.kind].dim == 3 else fixed)
         out[start : start + len(block)] = flag[block.nodes].sum(axis=1) >= min(3, KINDS[block.kind].dim)
     return out

@@ -34,7 +34,7 @@ class Hinge:
     cells         cell rows of the band; sides: cell rows of regions A and B (A holds the support or is the larger)
     arm           (3,) unit, from the axis into region B, square to the direction
     score         smallest gate value ÷ its threshold; gate: the name of that weakest gate
-    confidence    0 … 1, chance that this is a hinge line (``calibration`` in ``gates.py`` says how it was found)
+    confidence    0 … 1, chance that this is a hinge line (``CALIBRATION`` in ``gates.py`` says how it was found)
     label         "strong", "weak" or "undecided"
     """
 

@@ -11,7 +11,9 @@ from viewer.insight.hinges.field import Field
 from viewer.model.arrays import Array
 
 BENT = 0.02  # of the size: a centre line that misses its chord by more is a curve
-LONG = 2.5  # elongation from which the shape of a candidate tells the direction of its line
+# Elongation from which the shape of a candidate may tell the direction of its line, and from which it must: energy
+# crowds along a short neck as well as across it.
+MAY_TELL, MUST_TELL = 1.5, 6.0
 _OWN_WAY = 20.0  # degrees: a side that leaves the band askew by more goes round a fold of the sheet
 
 
@@ -42,23 +44,25 @@ class Frame:
     blob: bool
 
 
-def frame_of(field: Field, cells: Array) -> Frame | None:
-    """The frame of the candidate ``cells``; None when nothing turns around it."""
+def frame_of(field: Field, cells: Array, blob: bool) -> Frame | None:
+    """The frame of the candidate ``cells``, taken for a line or for a ``blob``; None when it cannot be that."""
     weight, points = field.strain[cells], field.middle[cells]
     centre, _, directions = principal(points, weight)
     corners = field.points[field.corners[cells]].reshape(-1, 3)
     spans = np.array([np.ptp((corners - centre) @ d) for d in directions])
     order = np.argsort(-spans)
     spans, directions = spans[order], directions[order]
+    beams = bool((field.dim[cells] == 1).all())  # which have no width to fold along
+    if (beams or spans[0] < MAY_TELL * spans[1]) if not blob else (spans[0] > MUST_TELL * spans[1] and not beams):
+        return None
     grain = field.largest_cell(cells)
     near = surroundings(field, cells, corners, float(max(0.5 * spans[0], 2.0 * spans[1], 4 * grain)))
     if len(near) < 4:
         return None
     slack = float(1.5 * spans[1])
-    arc = _arc(field, points, weight, spans)
+    arc = None if blob else _arc(field, points, weight, spans)
     if arc is not None:
         return _kept(_frame(field, arc, near, None, None, False), slack)
-    blob = bool(spans[0] < LONG * spans[1] or (field.dim[cells] == 1).all())  # beams have no width to fold along
     close = float(max(spans[1], 2 * grain))
     if not blob:
         line = Line(centre, directions[0])

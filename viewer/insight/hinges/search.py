@@ -123,18 +123,19 @@ def _doubts(given: Energies, row: int) -> list[str]:
 def _chosen(field: Field, progress: Progress) -> list[tuple[Draft, float, str]]:
     """The best of the candidates that pass, no two for one band, the strongest first."""
     found: list[tuple[Draft, float, str]] = []
-    seen: set[bytes] = set()
+    seen: set[tuple[bytes, bool]] = set()
     proposed = candidates(field, progress)
     examine = Examiner(field)
     for i, cells in enumerate(proposed):
         progress.tick("looking at bands", i, len(proposed))
-        draft = examine(cells)
-        if draft is None or draft.cells.tobytes() in seen:
-            continue
-        seen.add(draft.cells.tobytes())
-        worth, gate = score(field, draft)
-        if worth >= 1:
-            found.append((draft, worth, gate))
+        for draft in examine(cells):
+            key = draft.cells.tobytes(), draft.frame.blob
+            if key in seen:
+                continue
+            seen.add(key)
+            worth, gate = score(field, draft)
+            if worth >= 1:
+                found.append((draft, worth, gate))
     found.sort(key=lambda item: -_rank(*item[:2]))
     kept: list[tuple[Draft, float, str]] = []
     for item in found:

@@ -64,7 +64,8 @@ def local_turns(
         count, long = 1, max(long, 1e-9 * field.size)
     index = np.clip(np.floor((frame.along - ends[0]) / long * count), -1, count).astype(int)
     if count == 1:
-        index = np.where((frame.along_high > ends[0]) & (frame.along_low < ends[1] + 1e-9 * field.size), 0, -1)
+        slack = 1e-9 * field.size
+        index = np.where((frame.along_high > ends[0] - slack) & (frame.along_low < ends[1] + slack), 0, -1)
     good = np.ones(count, bool)
     values = []
     for sign, edge, side in ((-1, edges[0], sides[0]), (1, edges[1], sides[1])):
