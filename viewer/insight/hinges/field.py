@@ -152,7 +152,7 @@ def touching(mesh: Mesh) -> sp.csr_array:
         elif kind.dim == 2:
             sides = [edge[:2] for edge in kind.edges]
         else:
-            sides = [(0,), (1,)][: kind.n_corners]
+            sides = [(i,) for i in range(min(2, kind.n_corners))]
         for side in sides:  # the sum of random numbers names a set of nodes in whatever order
             keys.append(random[block.nodes[:, list(side)]].sum(axis=1, dtype=np.uint64))
             cells.append(rows)
