@@ -44,7 +44,7 @@ def test_a_linear_field_is_carried_exactly(swap):
 def test_the_same_cells_share_every_node():
     support = common_support(sheet("a", "quad4", (8, 4)), sheet("b", "quad4", (8, 4)))
     assert not support.distances.any()
-    assert support.sentence == "Shapes are compared at 45 nodes that both designs share."
+    assert support.sentence == "Shapes are compared at 45 places that both designs share."
 
 
 def test_a_region_that_only_one_design_has_is_left_out_with_its_share():

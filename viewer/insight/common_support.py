@@ -79,12 +79,11 @@ class CommonSupport:
     @property
     def sentence(self) -> str:
         facts = self.to_dict()
-        if not facts["largest_distance_m"] and not facts["regions"]:
-            return f"Shapes are compared at {facts['places']} nodes that both designs share."
-        words = (
-            f"Shapes are compared at {facts['places']} places, at most {digits(1000 * facts['largest_distance_m'])}"
-            f"{GAP}mm from the other design's mesh"
-        )
+        words = f"Shapes are compared at {facts['places']} places "
+        if facts["largest_distance_m"]:
+            words += f"at most {digits(1000 * facts['largest_distance_m'])}{GAP}mm from the other design's mesh"
+        else:
+            words += "that both designs share"
         for region in facts["regions"]:
             words += f"; {region['place']} is in {region['design']} only ({region['mass_share']:.1%} of its mass)"
         return words + "."
@@ -196,12 +195,11 @@ def _far_nodes(mesh: Mesh, other: Mesh, near: float) -> Array:
 def cell_masses(design: Design) -> Array:
     """(n_cells,) kg; the cells' own measures where the design assigns no material anywhere."""
     mesh = design.mesh
-    sizes = np.concatenate([np.abs(measures(b.kind, mesh.points[b.nodes])) for b in mesh.blocks] or [np.empty(0)])
     try:
         properties, which = design.properties
         volumes = cell_volumes(lay_out(design))
     except ModelError:
-        return sizes
+        return np.concatenate([np.abs(measures(b.kind, mesh.points[b.nodes])) for b in mesh.blocks] or [np.empty(0)])
     return volumes * np.array([*(p.material.density for p in properties), 0.0])[which]
 
 

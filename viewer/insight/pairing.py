@@ -127,7 +127,8 @@ def sentence_of(facts: dict[str, Any]) -> str:
         if (listed := modes("beyond", which))
     ]
     if ends:
-        words += f"; counterparts of {' and of '.join(ends)} may lie beyond the modes compared"
+        what = "counterparts" if facts["counts"]["beyond"] > 1 else "the counterpart"
+        words += f"; {what} of {' and of '.join(ends)} may lie beyond the modes compared"
     return words + "."
 
 
