@@ -6,7 +6,7 @@ same size, in the same run.
 
 Wanted: 60 s and 4 GB for 1 000 000 against 800 000 nodes and 20 modes each; MAC within twice the BLAS product.
 Measured on one core, blocks of hexahedra (995 112 nodes) against tetrahedra (793 800): mapping 25.5 s, pairing 4.9 s,
-peak 1.72 GB with both meshes in memory, all 20 paired with a least MAC of 0.999996; MAC 1.32 to 1.46 times the product.
+peak 1.72 GB with both meshes in memory, all 20 paired, least MAC 0.999996; MAC 1.32 to 1.46 times the product.
 """
 
 from __future__ import annotations

@@ -30,6 +30,9 @@ def animate(
     design: Annotated[str, typer.Option(help="Design to draw; the dossier's first by default.")] = "",
     against: Annotated[str, typer.Option(help="Compare with this design: NAME, or NAME:MODE.")] = "",
     overlay: Annotated[bool, typer.Option(help="Draw compared designs over one another, not side by side.")] = False,
+    difference: Annotated[
+        bool, typer.Option("--difference", help="Colour the compared design by how far its motion departs.")
+    ] = False,
     true_scale: Annotated[bool, typer.Option("--true-scale", help="Draw at ×1; needs a stated amplitude.")] = False,
     phase: Annotated[float, typer.Option(help="Phase of a still, degrees.")] = 0.0,
     strip: Annotated[bool, typer.Option("--strip", help="Draw a strip of five phases (.png).")] = False,
@@ -59,6 +62,7 @@ def animate(
     from viewer.errors import InputError
     from viewer.export import save_gif, save_mp4, save_png, save_strip
     from viewer.scene.compose import pair_picture, single_picture
+    from viewer.scene.difference_picture import difference_picture
     from viewer.scene.showing import Showing
     from viewer.workspace.comparison import partner
 
@@ -74,6 +78,8 @@ def animate(
             found=f"the ending '{target.suffix}'",
             expected=".png for a strip" if strip else ".gif or .mp4 for a loop, .png for a still",
         )
+    if difference and (not against or node_lines):
+        raise InputError("a difference is of two designs, without node lines", do="say --against DESIGN --difference")
     if against and energy == "given":
         raise InputError("given energies are of one design's own unit", do="leave out --energy given, or --against")
     options: dict[str, Any] = {
@@ -92,17 +98,21 @@ def animate(
             other, _, number = against.partition(":")
             second = opened.study(other, None, progress)
             theirs = _number(number) if number else partner(opened, study, mode, second, progress)
-            picture = pair_picture(
-                study,
-                mode,
-                second,
-                theirs,
-                layout="overlay" if overlay else "side",
-                true_scale=true_scale,
-                energy=not no_energy,
-                findings=(_hinges(study, mode, hinges), _hinges(second, theirs, hinges)),
-                **options,
-            )
+            if difference:
+                del options["node_lines"]
+                picture = difference_picture(study, mode, second, theirs, true_scale=true_scale, **options)
+            else:
+                picture = pair_picture(
+                    study,
+                    mode,
+                    second,
+                    theirs,
+                    layout="overlay" if overlay else "side",
+                    true_scale=true_scale,
+                    energy=not no_energy,
+                    findings=(_hinges(study, mode, hinges), _hinges(second, theirs, hinges)),
+                    **options,
+                )
         else:
             picture = single_picture(
                 study,

@@ -14,6 +14,7 @@ from viewer.export.stills import save_png
 from viewer.insight.outcome import Outcome
 from viewer.jobs import SILENT, Progress
 from viewer.scene.compose import pair_picture
+from viewer.scene.difference_picture import difference_picture
 from viewer.workspace import OpenDossier, Study
 from viewer.workspace.comparison import Comparison, compare
 
@@ -80,11 +81,14 @@ def _pair_loop(desk: Desk, comparison: Comparison, item: Outcome, progress: Prog
     save_png(side, desk.folder / f"{stem}_side.png", progress=progress)
     overlay = pair_picture(*arguments, layout="overlay", paired_by=paired_by, **desk.look)
     save_png(overlay, desk.folder / f"{stem}_overlay.png", progress=progress)
+    difference = difference_picture(*arguments, paired_by=paired_by, **desk.look)
+    save_png(difference, desk.folder / f"{stem}_difference.png", progress=progress)
     return PageLoop(
         title=side.note.title,
         gif=f"{stem}_side.gif",
         still=f"{stem}_side.png",
         overlay=f"{stem}_overlay.png",
         caption=item.sentence,
+        findings=(("where the motions differ", f"{stem}_difference.png"),),
         alt=f"{first.design.name} beside {second.design.name}, {side.note.title}: {', '.join(side.note.drawing)}",
     )

@@ -142,6 +142,16 @@ def common_support(first: Design, second: Design, progress: Progress = SILENT) -
     )
 
 
+def carried_over(first: Mesh, second: Mesh) -> tuple[sp.csr_array, Array]:
+    """What carries nodal values of ``first`` to the nodes of ``second``: an operator (nodes of second, nodes of
+    first), and which nodes (nodes of second,) bool lie in ``first``; rows of others mean nothing."""
+    if _same_cells(first, second):
+        return sp.eye_array(first.n_nodes, format="csr"), np.ones(first.n_nodes, bool)
+    near = NEAR * min(first.diagonal, second.diagonal)
+    operator, distance = _looked_up(first, second.points, near)
+    return operator, distance <= near
+
+
 def _same_cells(first: Mesh, second: Mesh) -> bool:
     return (
         first.n_nodes == second.n_nodes

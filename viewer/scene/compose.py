@@ -120,10 +120,7 @@ def pair_picture(
     """
     studies, modes = (first, second), (first_mode, second_mode)
     indices = [mode_index(study, mode) for study, mode in zip(studies, modes, strict=True)]
-    found = [study.scale(i, true_scale=true_scale) for study, i in zip(studies, indices, strict=True)]
-    masses, basis = _sizes(studies, indices)
-    turn = first.turn_of(indices[0], second, indices[1])
-    scales = common_scale(found, masses, [1.0, turn])
+    scales, basis = compared_scales(studies, indices, true_scale)
     energy = energy and layout == "side"  # an overlay shows form; two energy fields would hide one another
     bodies = tuple(
         mode_body(study, i, scale, scale.turn, energy)
@@ -199,6 +196,16 @@ def _shown(
         told = [lines_words(body.node_lines) for body in bodies]
         said += told[:1] if len(set(told)) == 1 else [f"{b.name}: {t}" for b, t in zip(bodies, told, strict=True)]
     return showing.parts(bodies, look.get("view", View()).toward_eye), tuple(said)
+
+
+def compared_scales(
+    studies: tuple[Study, Study], indices: Sequence[int], true_scale: bool
+) -> tuple[tuple[Scale, ...], str]:
+    """The scales at which two modes are comparable, and what is made equal where their sizes are unknown."""
+    found = [study.scale(i, true_scale=true_scale) for study, i in zip(studies, indices, strict=True)]
+    masses, basis = _sizes(studies, indices)
+    turn = studies[0].turn_of(indices[0], studies[1], indices[1])
+    return common_scale(found, masses, [1.0, turn]), basis
 
 
 def _sizes(studies: Sequence[Study], indices: Sequence[int]) -> tuple[list[float], str]:
