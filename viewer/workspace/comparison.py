@@ -86,8 +86,8 @@ def partner(opened: OpenDossier, first: Study, mode: int, second: Study, progres
 
 def _with_stated(found: Pairing, stated: Sequence[tuple[int, int]]) -> tuple[ModePair, ...]:
     """The pairs with the stated ones put in; a mode that thereby loses its partner has none."""
-    first = {p.first: p.first_hz for p in found.pairs if p.first}
-    second = {p.second: p.second_hz for p in found.pairs if p.second}
+    first = {p.first: p.first_hz or 0.0 for p in found.pairs if p.first}
+    second = {p.second: p.second_hz or 0.0 for p in found.pairs if p.second}
     first_hz, second_hz = (np.array([*hz.values()]) for hz in (first, second))
     wanted = {one: two for one, two in stated if one in first and two in second}
     out = []
