@@ -28,9 +28,7 @@ def hinges(
     design: Annotated[list[str] | None, typer.Option(help="Only this design; may be repeated.")] = None,
     count: Annotated[int | None, typer.Option(min=1, help="How many modes to solve.")] = None,
     out: Annotated[Path | None, typer.Option(help="Also write the table to this .csv or .json file.")] = None,
-    pictures: Annotated[
-        Path | None, typer.Option(help="Also write a still of every hinge to this folder.")
-    ] = None,
+    pictures: Annotated[Path | None, typer.Option(help="Also write a still of every hinge to this folder.")] = None,
     theme: Theme = "light",
     width: Width = 960,
     as_json: Json = False,

@@ -29,7 +29,8 @@ def sentence_of(facts: dict[str, Any]) -> str:
 
 def callout_words(verb: str, place: dict[str, Any]) -> str:
     """A few words at an extreme: "add material here: +14 Hz per kg"."""
-    return f"{verb} material here: +{plain(abs(place['hz_per_kg']))} Hz per kg"
+    done = "added" if verb == "add" else "removed"
+    return f"{verb} material here: +{plain(abs(place['hz_per_kg']))} Hz per kg {done}"
 
 
 def plain(value: float, significant: int = 2) -> str:
