@@ -100,7 +100,9 @@ class Examiner:
 
 
 def _measured(field: Field, cells: Array, frame: Frame) -> Draft | None:
-    mine = np.isin(frame.near, cells)
+    flags = np.zeros(len(field.strain), bool)
+    flags[cells] = True
+    mine = flags[frame.near]
     if not mine.any():
         return None
     grain = float(np.median(frame.high[mine] - frame.low[mine]))
@@ -222,7 +224,7 @@ def _draft(
     about = frame.about[middle]
     inner = inner_turn(field, frame, band, width)
     slopes = [abs(float(side.slope @ about)) for side in sides]
-    rest = np.setdiff1d(frame.near, cells)
+    rest = frame.near[~band]
     density = strain / volume
     strips = [_strip(field, frame, ends, edges, sign) for sign in (-1, 1)]
     return Draft(

@@ -55,7 +55,7 @@ def find_flaps(field: Field, hinges: tuple[Hinge, ...], region: Array) -> tuple[
         touching = tuple(h.number for h in hinges if any(number in region[side] for side in h.sides if len(side)))
         fit = rigid_fit(field, cells)
         if touching and fit >= FIT:
-            size = float(np.linalg.norm(np.ptp(field.points[np.unique(field.corners[cells])], axis=0)))
+            size = float(np.linalg.norm(np.ptp(field.points[field.corners[cells].ravel()], axis=0)))
             found.append((kinetic, touching, cells, float(field.strain[cells].sum()), fit, size))
     found.sort(key=lambda item: -item[0])
     return tuple(Flap(i + 1, t, c, k, s, f, z) for i, (k, t, c, s, f, z) in enumerate(found))

@@ -123,16 +123,15 @@ def _doubts(given: Energies, row: int) -> list[str]:
 def _chosen(field: Field, progress: Progress) -> list[tuple[Draft, float, str]]:
     """The best of the candidates that pass, no two for one band, the strongest first."""
     found: list[tuple[Draft, float, str]] = []
-    seen: set[tuple[bytes, bool]] = set()
+    seen: set[int] = set()
     proposed = candidates(field, progress)
     examine = Examiner(field)
     for i, cells in enumerate(proposed):
         progress.tick("looking at bands", i, len(proposed))
         for draft in examine(cells):
-            key = draft.cells.tobytes(), draft.frame.blob
-            if key in seen:
+            if id(draft) in seen:  # the examiner keeps its drafts and gives the same one again
                 continue
-            seen.add(key)
+            seen.add(id(draft))
             worth, gate = score(field, draft)
             if worth >= 1:
                 found.append((draft, worth, gate))
@@ -152,7 +151,7 @@ def _rank(draft: Draft, worth: float) -> float:
 
 
 def _apart(field: Field, one: Draft, other: Draft) -> bool:
-    common = field.strain[np.intersect1d(one.cells, other.cells)].sum()
+    common = field.strain[np.intersect1d(one.cells, other.cells, assume_unique=True)].sum()
     if common > _SAME * min(one.strain, other.strain):
         return False
     # A candidate that lies beside a band, within its own width, only sees the band's flank.
