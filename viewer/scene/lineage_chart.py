@@ -12,7 +12,6 @@ from viewer.scene.primitives import Disc, Line, Primitive, Ring, Sheet, Text
 from viewer.scene.tokens import BAND_HEIGHT, BASE_WIDTH, MARGIN, TEXT_SMALL, THEMES, Tokens
 
 LEFT, RIGHT, TOP, FOOT = 84.0, BASE_WIDTH - 236.0, 56.0, HEIGHT - BAND_HEIGHT - 58
-_WORDS = {"crossing": "cross", "veering": "veer", "unresolved": "?", "swapped": ""}
 
 
 def lineage_chart(finding: LineageFinding, title: str = "", theme: str = "light") -> Sheet:
@@ -81,11 +80,11 @@ def _mark(e: Encounter, finding: LineageFinding, x, y, tokens: Tokens) -> list[P
     lines = {line.number: line.freq_hz for line in finding.lines}
     at = [float(np.interp(e.at, finding.values, lines[n])) for n in (e.first, e.second)]
     cx, cy = float(x(e.at)), float(y(sum(at) / 2))
-    words = Text(cx, cy - 18, _WORDS[e.kind], tokens.accent, TEXT_SMALL, True, "middle")
     if e.kind in ("crossing", "swapped"):
         arms = [((cx - 7, cy - 7), (cx + 7, cy + 7)), ((cx - 7, cy + 7), (cx + 7, cy - 7))]
-        return [*(Line(arm, tokens.accent, 2.4) for arm in arms), words]
-    return [Ring(cx, cy, 11.0, tokens.accent, 2.4), words]
+        return [Line(arm, tokens.accent, 2.4) for arm in arms]
+    ring = Ring(cx, cy, 11.0, tokens.accent, 2.4)
+    return [ring, Text(cx, cy - 18, "?", tokens.accent, TEXT_SMALL, True, "middle")] if e.step else [ring]
 
 
 def _names(finding: LineageFinding, x, y, tokens: Tokens) -> list[Primitive]:
