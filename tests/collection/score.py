@@ -181,7 +181,7 @@ def results_of(rows: Sequence[Row]) -> dict[str, dict[str, float]]:
     for density, word in ((1, ""), (2, "twice as dense: ")):
         for group, members in names.items():
             picked = [r for r in rows if r.density == density and r.part in members]
-            if picked:
+            if picked and (density > 1 or {r.part for r in picked} == members):
                 out[word + group] = totals(picked)
     return out
 
@@ -230,7 +230,8 @@ def main(arguments: Sequence[str] | None = None) -> int:
             others[f"{name}: {given.families}"] = import_module(f"tests.collection.{name}").run(parts, say, each)
         else:
             rows += run(parts, say, each, {"coarse": 1, "fine": 2}[name])
-    for title, figures in (results_of(rows) | others).items():
+    results = {"picked": totals(rows)} if rows and given.part else results_of(rows)
+    for title, figures in (results | others).items():
         show(title, figures, say)
     if given.write:
         _write(rows, others)
