@@ -63,6 +63,26 @@ def test_the_veering_of_a_clamped_plate_is_unresolved_by_coarse_steps_and_found_
     assert passage.gap_hz == pytest.approx(square[5] - square[4], rel=0.05)
 
 
+def test_a_step_right_on_the_square_plate():
+    """Simply supported, modes (2,1) and (1,2) are equal there and come out in any mixture, yet cross; clamped, 5
+    and 6 are coupled: the mixed shapes at that step tell a veering."""
+    values = np.linspace(0.9, 1.1, 5)
+    free_to_turn = swept(plate(12, (), simply=True), Variation("scale", "x"), values, 4)
+    (passage,) = [e for e in free_to_turn.lineage.encounters if {e.first, e.second} == {2, 3}]
+    assert (passage.kind, passage.gap_hz) == ("crossing", 0)
+    assert passage.at == pytest.approx(1)
+    clamped = swept(plate(12, ("uz", "rx", "ry"), simply=False), Variation("scale", "x"), values, 6)
+    kinds = {(e.first, e.second): e.kind for e in clamped.lineage.encounters}
+    assert kinds == {(2, 3): "crossing", (5, 6): "veering"}
+
+
+def test_rigid_motions_and_equal_frequencies_meet_nobody():
+    free = design(plate_mesh("quad4", (8, 8), (0.3, 0.3)), thickness=0.003)
+    found = swept(free, Variation("thickness", "*"), (0.002, 0.003, 0.004), 11)
+    assert not found.lineage.encounters
+    assert all(all(line.modes) for line in found.lineage.lines)
+
+
 def sprung():
     mesh = plate_mesh("quad4", (6, 3), (0.3, 0.1))
     return design(
