@@ -5,6 +5,22 @@ with three modes is written as an interchange file by a process of its own; then
 most memory that was held in it above the file's size. Without ``--material`` energies are relative, as for a mesh and
 modes alone; with it closure and residual are formed as well. Leaves with 1 when a stage goes above the goal. Memory
 is read from Linux's /proc.
+
+Measured on two cores shared with others, therefore in seconds that the process was busy (NumPy 2.4), and GB above
+the file (of 0.01, 0.05, 0.19 and 1.8 GB)::
+
+    cells        30 000      238 000     1 000 000   9 800 000   1 000 000 with material
+    load        0.1 s 0.2    0.5 s 0.3   1.9 s 0.4    16 s  1.9     1.9 s 0.4
+    skin        0.0 s 0.2    0.3 s 0.4   1.4 s 0.8    18 s  5.6     1.4 s 0.8
+    energies    1.2 s 0.2     10 s 0.5    48 s 1.5   344 s  5.5     209 s 2.9
+    picture     0.1 s 0.2    1.0 s 0.6   5.1 s 1.7    55 s 13.6     5.1 s 1.7
+    still       1.5 s 0.5    1.6 s 0.6   1.6 s 0.6     4 s  1.1     1.6 s 0.8
+
+From a million to ten, n·log n grows 11.4-fold: load grew 9-fold, skin 12.6 (sorting faces, within what repeats
+differ by here), energies 7, picture 11, still 2. Nothing grew markedly faster. (The energies of a million without
+material were taken before the rigid share was formed in slices; its memory is lower now.) With material three modes,
+each with a search of its own, took 19 steps each of 1.3 s; beyond about 3.5 million 8-node hexahedra
+``closure.MOST_ROOM`` leaves the residual out.
 """
 
 from __future__ import annotations
