@@ -18,6 +18,7 @@ _OWN = 0.1  # of the band's own density, likewise
 _FAINT = 0.15  # of the band's mean density: strips at its ends below that are none of it
 _STRIPS = 24
 _GAPS = 2  # strips that may be missing in between
+_BEYOND = 1.5  # cells next to a band, where they are larger than its own, that its surroundings reach over
 
 
 @dataclass(frozen=True, eq=False)
@@ -120,7 +121,7 @@ def _measured(field: Field, cells: Array, frame: Frame) -> Draft | None:
         return None
     ends = float(frame.along_low[band].min()), float(frame.along_high[band].max())
     within = _within(frame, ends)
-    window = max(edges[1] - edges[0], 3 * grain)
+    window = max(edges[1] - edges[0], 3 * grain, _BEYOND * _beside(frame, within, edges, grain))
     sides = []
     for sign, edge in ((-1, edges[0]), (1, edges[1])):
         away = sign * (frame.across - edge)
@@ -133,6 +134,14 @@ def _measured(field: Field, cells: Array, frame: Frame) -> Draft | None:
     if all(side.ground for side in sides):
         return None
     return _draft(field, frame, band, ends, found, (sides[0], sides[1]), window)
+
+
+def _beside(frame: Frame, within: Array, edges: tuple[float, float], grain: float) -> float:
+    """Size of the cells next to the edges, across the line: where the mesh grades, larger than the band's own."""
+    start = np.maximum(edges[0] - frame.high, frame.low - edges[1])
+    outside = within & ((frame.across < edges[0]) | (frame.across > edges[1]))
+    touching = outside & (start <= 0.5 * grain)
+    return float(np.median((frame.high - frame.low)[touching])) if touching.any() else 0.0
 
 
 def _edges(field: Field, frame: Frame, mine: Array, ends: tuple[float, float], grain: float) -> Edges | None:

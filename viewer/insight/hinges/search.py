@@ -2,9 +2,11 @@
 
 from __future__ import annotations
 
+from typing import Any
+
 import numpy as np
 
-from viewer.errors import HingelightError, RefusedError
+from viewer.errors import ModelError, RefusedError
 from viewer.insight.hinges.band import Draft, Examiner
 from viewer.insight.hinges.candidates import candidates
 from viewer.insight.hinges.curve import Line
@@ -13,7 +15,7 @@ from viewer.insight.hinges.finding import Hinge, HingeFinding
 from viewer.insight.hinges.flaps import find_flaps, regions
 from viewer.insight.hinges.gates import confidence, is_joint, label, score
 from viewer.jobs import SILENT, Progress
-from viewer.mechanics.energy import RELATIVE, Energies
+from viewer.mechanics.energy import CLOSURE_BOUND, RELATIVE, Energies
 from viewer.mechanics.energy import energies as form_energies
 from viewer.mechanics.relative import relative_energies, states_no_material
 from viewer.model.arrays import Array
@@ -39,17 +41,23 @@ def find_hinges(
     """
     index = number - 1
     freq = float(modes.freq_hz[index])
-    modes, index, basis, noise, cautions = _without_noise(design, modes, index, progress)
-    if basis == "smoothed":
-        energies = None
     given, row = _energies(design, modes, index, energies, progress)
-    cautions += _doubts(given, row)
+    cleaned, basis, noise, cautions = _without_noise(design, modes, index, float(given.closure[row]), progress)
+    if cleaned is not None:
+        # the model made this shape smooth, so that its residual says nothing: closure alone is looked at
+        modes, index, row = cleaned, 0, 0
+        given = (
+            relative_energies(design, modes, progress)
+            if states_no_material(design)
+            else form_energies(design, modes, [0], progress, judged=False)
+        )
+    cautions += _doubts(given, row, basis)
     moved, turned = modes.shape(index), modes.rotations(index)
     if np.iscomplexobj(moved):
         phase = np.exp(-0.5j * np.angle((moved**2).sum()))
         moved, turned = (moved * phase).real, None if turned is None else (turned * phase).real
         cautions.append("the shape is complex: rotations are those at the phase of largest motion")
-    answer = {"mode": number, "freq_hz": freq, "basis": basis, "noise": noise}
+    answer: dict[str, Any] = {"mode": number, "freq_hz": freq, "basis": basis, "noise": noise}
     whole = given.total_strain[row]
     if np.isnan(given.closure[row]) and not given.relative:
         return HingeFinding(verdict="rigid-body mode", cautions=tuple(cautions), **answer)
@@ -73,21 +81,24 @@ def find_hinges(
     )
 
 
-def _without_noise(design, modes, index, progress):
-    """The mode set and index to look at, its basis, the share of noise, and cautions."""
+def _without_noise(
+    design: Design, modes: ModeSet, index: int, closure: float, progress: Progress
+) -> tuple[ModeSet | None, str, float, list[str]]:
+    """The mode without its noise, alone in a set (None where it needs no cleaning), the basis that makes, the share
+    of noise, and cautions."""
     if modes.origin == "computed":
-        return modes, index, "energies", 0.0, []
-    from viewer.insight.smoothing import NOISE_BOUND, noise_estimate, smoothed
+        return None, "energies", 0.0, []
+    from viewer.insight.smoothing import needs_smoothing, noise_estimate, smoothed
 
     shape = modes.shape(index)
     noise = float(np.nan_to_num(noise_estimate(design, shape.real if np.iscomplexobj(shape) else shape, progress)))
-    if noise <= NOISE_BOUND:
-        return modes, index, "energies", noise, []
+    if not needs_smoothing(noise, closure):
+        return None, "energies", noise, []
     try:
         found = smoothed(design, modes, index + 1, progress)
-    except (RefusedError, HingelightError) as error:
-        return modes, index, "energies", noise, [f"the shape holds noise that could not be taken out: {error}"]
-    return found.modes, 0, "smoothed", found.noise, [found.caution]
+    except (RefusedError, ModelError) as error:
+        return None, "energies", noise, [f"the shape holds noise that could not be taken out: {error}"]
+    return found.modes, "smoothed", found.noise, [found.caution]
 
 
 def _energies(design, modes, index, given: Energies | None, progress) -> tuple[Energies, int]:
@@ -109,11 +120,12 @@ def _one(modes: ModeSet, index: int) -> ModeSet:
     return modes.with_(freq_hz=modes.freq_hz[index : index + 1], shapes=shapes, damping=None, cell_energy=None)
 
 
-def _doubts(given: Energies, row: int) -> list[str]:
+def _doubts(given: Energies, row: int, basis: str) -> list[str]:
     if given.relative:
         return [f"energies are {RELATIVE}"]
     words = []
-    if not given.trusted[row] and np.isfinite(given.closure[row]):
+    closes = basis == "smoothed" and abs(given.closure[row] - 1) <= CLOSURE_BOUND
+    if not (given.trusted[row] or closes) and np.isfinite(given.closure[row]):
         words.append("the energies are not to be trusted for absolute figures")
     if given.spring_share(row) > 0.05:
         words.append(f"springs hold {given.spring_share(row):.0%} of the strain energy")
