@@ -25,6 +25,7 @@ def flap_rows(design: str, finding: dict[str, Any]) -> list[Row]:
             "design": design,
             "mode": finding["mode"],
             "flap": flap["number"],
+            "place": flap["place"],
             "hangs_on_hinge": " and ".join(str(number) for number in flap["hinges"]),
             "kinetic_energy_percent": 100 * flap["kinetic_share"],
             "strain_energy_percent": 100 * flap["strain_share"],
@@ -75,6 +76,7 @@ def _hinge(facts: dict[str, Any]) -> Row:
     along = facts["direction"]
     row = {
         "hinge": facts["number"],
+        "place": facts["place"],
         "kind": facts["kind"],
         "label": facts["label"],
         "confidence_percent": 100 * facts["confidence"],
@@ -99,7 +101,7 @@ def _hinge(facts: dict[str, Any]) -> Row:
 
 
 _HINGE = (
-    "hinge", "kind", "label", "confidence_percent", "strain_energy_percent", "volume_percent", "fold_drawn_deg",
-    "fold_real_deg", "stiffness_nmrad", "length_m", "width_m", "at_x_m", "at_y_m", "at_z_m", "along", "contrast",
+    "hinge", "place", "kind", "label", "confidence_percent", "strain_energy_percent", "volume_percent",
+    "fold_drawn_deg", "fold_real_deg", "stiffness_nmrad", "length_m", "width_m", "at_x_m", "at_y_m", "at_z_m", "along", "contrast",
     "turn_percent", "weakest_gate", "score",
 )  # fmt: skip

@@ -126,7 +126,8 @@ def _try_struts(
     spreading = [t.number for t in told if t.character is not None and t.character.spreads]
     progress = desk.steps.next(f"trying struts on {name}")
     try:
-        trial = try_struts(opened, name, spreading[0] if spreading else None, progress=progress)
+        mode = spreading[0] if spreading else None
+        trial = try_struts(opened, name, mode, top=5, resolve=1, progress=progress)  # each new solution takes long
         picture = strut_picture(study, trial.mode, trial, **desk.look)
     except (RefusedError, ModelError):
         return None, ()

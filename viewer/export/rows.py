@@ -27,8 +27,8 @@ _SHORT = (
     "first_design", "first_mode", "first_name", "second_design", "second_mode", "first_hz", "second_hz",
     "change_percent", "became", "mac", "close_group_agreement", "hinge_change",
     "group", "strain_energy_percent", "kinetic_energy_percent", "volume_percent",
-    "verdict", "hinge", "kind", "label", "confidence_percent", "fold_drawn_deg", "fold_real_deg", "stiffness_nmrad",
-    "length_m",
+    "verdict", "hinge", "place", "kind", "label", "confidence_percent", "fold_drawn_deg", "fold_real_deg",
+    "stiffness_nmrad", "length_m",
 )  # fmt: skip
 
 

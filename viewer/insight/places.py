@@ -119,6 +119,17 @@ def _pieces(mesh: Mesh, height: Array, weights: Array, edge: float) -> list[_Pie
     ]
 
 
+def place_of(mesh: Mesh, cells: Array, weights: Array) -> str:
+    """Words for where ``cells`` (rows) are: the groups that say so, else a position. ``weights`` (n_cells,) ≥ 0."""
+    if not weights[cells].sum() > 0:
+        return ""
+    groups = _groups_of(mesh, cells, weights)
+    if groups:
+        return _listed(groups)
+    centres = cell_centres(mesh)
+    return f"{_coordinates(centres[nearest_cell(cells, weights, centres)], mesh.diagonal)} mm"
+
+
 def _groups_of(mesh: Mesh, cells: Array, weights: Array) -> tuple[str, ...]:
     """The smallest group that holds nearly all of these cells, else those into which they reach."""
     whole, own = weights.sum(), weights[cells].sum()

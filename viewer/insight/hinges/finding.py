@@ -36,6 +36,7 @@ class Hinge:
     score         smallest gate value ÷ its threshold; gate: the name of that weakest gate
     confidence    0 … 1, chance that this is a hinge line (``CALIBRATION`` in ``gates.py`` says how it was found)
     label         "strong", "weak" or "undecided"
+    place         words: the group or groups in which it lies, else a position
     """
 
     number: int
@@ -59,6 +60,7 @@ class Hinge:
     gate: str
     confidence: float
     label: str
+    place: str = ""
 
     def __post_init__(self) -> None:
         for name in ("axis", "motion", "position", "direction", "fold", "cells", "arm"):
@@ -77,7 +79,7 @@ class Flap:
 
     number         from 1; hinges: numbers of the hinges it hangs on
     cells          cell rows; kinetic_share, strain_share: of the whole; rigid_fit: share of its motion that is rigid
-    size           m, largest extent of the region
+    size           m, largest extent of the region; place: words for where it is
     """
 
     number: int
@@ -87,6 +89,7 @@ class Flap:
     strain_share: float
     rigid_fit: float
     size: float
+    place: str = ""
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "cells", frozen(self.cells, np.int64))
@@ -141,6 +144,7 @@ class HingeFinding:
         return {
             "number": hinge.number,
             "kind": hinge.kind,
+            "place": hinge.place or None,
             "label": hinge.label,
             "confidence": hinge.confidence,
             "weakest_gate": hinge.gate,
@@ -166,6 +170,7 @@ class HingeFinding:
 def _flap(flap: Flap) -> dict[str, Any]:
     return {
         "number": flap.number,
+        "place": flap.place or None,
         "hinges": list(flap.hinges),
         "kinetic_share": flap.kinetic_share,
         "strain_share": flap.strain_share,
@@ -193,6 +198,10 @@ def sentence_of(facts: dict[str, Any]) -> str:
 def _hinge_words(facts: dict[str, Any]) -> str:
     what = "joint" if facts["kind"] == "joint" else "curved hinge" if facts["kind"] == "curve" else "hinge"
     words = f"{what} {facts['number']}"
+    if facts["place"]:
+        words += f" ({facts['place']})"
+    if facts["kind"] != "joint":
+        words += f", {1000 * facts['length_m']:.3g} mm long"
     if facts["strain_share"] is not None:
         words += (
             f", with {facts['strain_share']:.0%} of the energy in {100 * facts['volume_share']:.2g}% of the material"
@@ -204,7 +213,8 @@ def _hinge_words(facts: dict[str, Any]) -> str:
 
 def _flap_words(facts: dict[str, Any]) -> str:
     hinges = " and ".join(str(n) for n in facts["hinges"])
+    place = f" ({facts['place']})" if facts["place"] else ""
     return (
-        f"flap {facts['number']} beyond hinge {hinges} carries {facts['kinetic_share']:.0%} of the kinetic energy "
-        f"and turns as one piece"
+        f"flap {facts['number']}{place} beyond hinge {hinges} carries {facts['kinetic_share']:.0%} of the kinetic "
+        f"energy and turns as one piece"
     )

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from typing import Any
 
 import numpy as np
@@ -14,6 +15,7 @@ from viewer.insight.hinges.field import Field, make_field
 from viewer.insight.hinges.finding import Hinge, HingeFinding
 from viewer.insight.hinges.flaps import find_flaps, regions
 from viewer.insight.hinges.gates import confidence, is_joint, label, score
+from viewer.insight.places import place_of
 from viewer.jobs import SILENT, Progress
 from viewer.mechanics.energy import CLOSURE_BOUND, RELATIVE, Energies
 from viewer.mechanics.energy import energies as form_energies
@@ -72,6 +74,9 @@ def find_hinges(
     absolute = None if given.relative else whole
     hinges = tuple(_hinge(field, region, i + 1, *found, absolute) for i, found in enumerate(drafts))
     flaps = find_flaps(field, hinges, region)
+    where = lambda cells: place_of(design.mesh, cells, given.volumes)  # noqa: E731
+    hinges = tuple(replace(hinge, place=where(hinge.cells)) for hinge in hinges)
+    flaps = tuple(replace(flap, place=where(flap.cells)) for flap in flaps)
     return HingeFinding(
         verdict="hinges" if hinges else "bending is spread",
         hinges=hinges,
