@@ -33,7 +33,7 @@ Each = Callable[..., Iterable]  # map, or that of a pool of processes
 HERE = Path(__file__).parent
 TABLE = HERE / "table.csv"
 TOTALS = HERE / "totals.csv"
-LARGEST = {"quad4": 6_500, "tri3": 7_500, "quad8": 3_500, "hex8": 4_000, "hex20": 2_800, "tet10": 6_000}  # cells
+LARGEST = {"quad4": 6_500, "tri3": 7_500, "quad8": 2_000, "hex8": 2_500, "hex20": 1_500, "tet10": 4_000}  # cells
 OTHER_RUNS = ("noise", "invariance")  # modules of this package
 DIRECTION_DEG, POSITION, SHARE_OFF = 3.0, 0.01, 0.15  # what a strong hinge must keep to
 
