@@ -72,7 +72,7 @@ def test_still_sections():
 
 
 def test_a_body_askew_and_complex_shapes():
-    """Shares do not depend on where the body points (points on the edge of a slice may change sides), nor on phase."""
+    """Shares do not depend on where the body points (points on the edge of a slice may change), nor on phase."""
     turn, _ = np.linalg.qr(np.random.default_rng(1).normal(size=(3, 3)))
     shape = np.outer(ALONG**2, [0, 1, 0]) + 5 * turned_about_x(POINTS, ALONG)
     plain = long_axis(POINTS, MASSES, shape)

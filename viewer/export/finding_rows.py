@@ -102,6 +102,6 @@ def _hinge(facts: dict[str, Any]) -> Row:
 
 _HINGE = (
     "hinge", "place", "kind", "label", "confidence_percent", "strain_energy_percent", "volume_percent",
-    "fold_drawn_deg", "fold_real_deg", "stiffness_nmrad", "length_m", "width_m", "at_x_m", "at_y_m", "at_z_m", "along", "contrast",
-    "turn_percent", "weakest_gate", "score",
+    "fold_drawn_deg", "fold_real_deg", "stiffness_nmrad", "length_m", "width_m", "at_x_m", "at_y_m", "at_z_m",
+    "along", "contrast", "turn_percent", "weakest_gate", "score",
 )  # fmt: skip
