@@ -67,7 +67,7 @@ def write_review(
     _check_place(Path(folder))
     studies = [opened.study(name, count, progress) for name in opened.names]
     comparisons, apart = compared(opened, studies, progress)
-    steps = Steps(progress, sum(s.count + 1 for s in studies) + sum(len(c.outcomes) for c in comparisons))
+    steps = Steps(progress, 1 + sum(s.count for s in studies) + sum(len(c.outcomes) for c in comparisons))
     with _aside(Path(folder)) as part:
         desk = Desk(part, theme, width, steps, slugs(opened.names))
         sections = [comparison_section(desk, comparison) for comparison in comparisons]
@@ -121,13 +121,16 @@ def _try_struts(
     desk: Desk, opened: OpenDossier, study: Study, told: list[Explanation]
 ) -> tuple[StrutTrial | None, tuple[PageLoop, ...]]:
     """A strut trial on the lowest mode in which facing surfaces move apart, else on the lowest elastic one, with a
-    picture of the best strut; nothing where struts cannot be told."""
+    picture of the best strut; nothing where struts cannot be told. Of the dossier's first design alone: it is the one
+    to be changed, and each new solution takes long."""
     name = study.design.name
+    if name != opened.names[0]:
+        return None, ()
     spreading = [t.number for t in told if t.character is not None and t.character.spreads]
     progress = desk.steps.next(f"trying struts on {name}")
     try:
         mode = spreading[0] if spreading else None
-        trial = try_struts(opened, name, mode, top=5, resolve=1, progress=progress)  # each new solution takes long
+        trial = try_struts(opened, name, mode, top=5, resolve=1, progress=progress)
         picture = strut_picture(study, trial.mode, trial, **desk.look)
     except (RefusedError, ModelError):
         return None, ()
