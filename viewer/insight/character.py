@@ -10,7 +10,6 @@ from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from typing import Any
 
-from viewer.errors import InputError
 from viewer.insight.character_parts import (
     Concentration,
     GroupShare,
@@ -149,10 +148,9 @@ def describe(
     scale      gives motions in m where the real size is known
     Raises ``InputError`` for a mode that is not there. What cannot be known is None, with a caution that says why.
     """
-    if not 1 <= number <= modes.count:
-        raise InputError(f"design '{design.name}' has no mode {number}", expected=f"1 to {modes.count}")
-    shape = modes.shape(number - 1)
-    moving, cautions = moving_mass(design, modes, number - 1, energies, progress)
+    index = modes.index_of(number, design.name)
+    shape = modes.shape(index)
+    moving, cautions = moving_mass(design, modes, index, energies, progress)
     if effective is None or effective.row(number) is None:
         effective = masses_of(design, modes, progress, indices=[number - 1])
     row = None if effective is None else effective.row(number)

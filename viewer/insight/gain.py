@@ -28,7 +28,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from viewer.errors import InputError, RefusedError
+from viewer.errors import RefusedError
 from viewer.insight.gain_finding import GainMap, MassGain, Place, SpringGain
 from viewer.insight.places import Patch, cell_centres, nearest_cell, peak_patches
 from viewer.jobs import SILENT, Progress
@@ -84,12 +84,7 @@ def gain_maps(
     if not numbers:
         return []
     for number in numbers:
-        if not 1 <= number <= modes.count:
-            raise InputError(
-                f"design '{design.name}' has no mode {number}",
-                expected=f"1 to {modes.count}",
-                do="choose another mode",
-            )
+        modes.index_of(number, design.name)
     if design.physics.matrices is not None:
         raise RefusedError(
             f"design '{design.name}': {NO_CELLS}, and where to change it cannot be told",

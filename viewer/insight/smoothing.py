@@ -107,7 +107,7 @@ def smoothed(design: Design, modes: ModeSet, number: int, progress: Progress = S
     Raises ``RefusedError`` beyond 200 000 free directions and where no matrices can be formed, ``ModelError`` as
     ``assemble`` does, ``SolveError`` when memory runs out.
     """
-    index = number - 1
+    index = modes.index_of(number, design.name)
     system = _system(design, progress)
     if len(system.free) > FACTOR_LIMIT:
         raise RefusedError(

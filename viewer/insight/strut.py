@@ -105,10 +105,7 @@ def _beyond(struts: Sequence[TrialStrut], known: _Known) -> bool:
 
 
 def _checked(design: Design, modes: ModeSet, number: int, stiffness: float | None, top: int) -> int:
-    if not 1 <= number <= modes.count:
-        raise InputError(
-            f"design '{design.name}' has no mode {number}", expected=f"1 to {modes.count}", do="solve more modes"
-        )
+    modes.index_of(number, design.name)
     if stiffness is not None and not (np.isfinite(stiffness) and stiffness > 0):
         raise InputError("a strut needs a positive stiffness", found=f"{stiffness:g}", expected="N/m above 0")
     if top < 1:

@@ -15,7 +15,7 @@ import scipy.sparse as sp
 from viewer.errors import ModelError
 from viewer.mechanics.patch import RigidPatch
 from viewer.model.arrays import Array
-from viewer.model.design import DIRECTIONS, Design, LumpedMass, Spring, Support
+from viewer.model.design import DIRECTIONS, Design, LumpedMass, Selector, Spring, Support
 from viewer.model.mesh import Mesh
 
 MAX_FOOTPRINT = 1500  # nodes; a footprint fills its square of the mass matrix: 20 million entries at this size
@@ -47,6 +47,27 @@ def some_ids(ids: Array, limit: int = 5) -> str:
     """ "3, 4, 5 and 12 more" for messages."""
     shown = ", ".join(str(int(i)) for i in ids[:limit])
     return shown + (f" and {len(ids) - limit} more" if len(ids) > limit else "")
+
+
+def footprint(where: Selector, what: str, mesh: Mesh, dof: Array, bare: str) -> Array:
+    """The nodes (rows) of ``where`` that have motion in ``dof``; ``ModelError``, in which ``what`` is told to be as
+    ``bare`` says, when none has, or when they are too many for one rigid patch."""
+    rows = where.rows(mesh, what)
+    attached = rows[dof[rows, 0] >= 0]
+    if len(attached) == 0:
+        raise ModelError(
+            f"{what} {bare}",
+            found=f"nodes {some_ids(mesh.node_ids[rows])}",
+            do="select nodes of the structure",
+        )
+    if len(attached) > MAX_FOOTPRINT:
+        raise ModelError(
+            f"{what} has too large a footprint",
+            found=f"{len(attached)} nodes",
+            expected=f"up to {MAX_FOOTPRINT}",
+            do="select fewer nodes, spread over the same area",
+        )
+    return attached
 
 
 def spring_nodes(spring: Spring, mesh: Mesh) -> tuple[Array, Array | None]:
@@ -143,21 +164,9 @@ def mass_attachment(mass: LumpedMass, design: Design, dof: Array) -> tuple[Attac
             found=f"{inertia.tolist()} kg·m²",
             expected="a symmetric matrix without negative principal moments",
         )
-    rows = mass.where.rows(mesh, what)
-    attached = rows[dof[rows, 0] >= 0]
-    if len(attached) == 0:
-        raise ModelError(
-            f"{what} sits on nodes that belong to no cell with a material and to no spring",
-            found=f"nodes {some_ids(mesh.node_ids[rows])}",
-            do="select nodes of the structure",
-        )
-    if len(attached) > MAX_FOOTPRINT:
-        raise ModelError(
-            f"{what} has too large a footprint",
-            found=f"{len(attached)} nodes",
-            expected=f"up to {MAX_FOOTPRINT}",
-            do="select fewer nodes, spread over the same area",
-        )
+    attached = footprint(
+        mass.where, what, mesh, dof, "sits on nodes that belong to no cell with a material and to no spring"
+    )
     patch = RigidPatch(mesh.points[attached], mass.position)
     rotating = bool((dof[attached] >= 0).all())
     if patch.rank < 6 and rotating:

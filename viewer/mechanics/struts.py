@@ -11,9 +11,9 @@ import numpy as np
 import scipy.sparse as sp
 
 from viewer.errors import ModelError
-from viewer.mechanics.constraints import MAX_FOOTPRINT, Attachment, some_ids
+from viewer.mechanics.constraints import Attachment, footprint
 from viewer.model.arrays import Array
-from viewer.model.design import Design, Selector, Strut
+from viewer.model.design import Design, Strut
 
 
 def strut_attachments(strut: Strut, design: Design, dof: Array) -> tuple[Attachment, list[Attachment], str]:
@@ -28,7 +28,10 @@ def strut_attachments(strut: Strut, design: Design, dof: Array) -> tuple[Attachm
     ):
         if not (np.isfinite(value) and good):
             raise ModelError(f"{what} has no usable {word}", found=f"{value:g}", expected="a positive number")
-    first, second = _end(strut.where, what, design, dof), _end(strut.other, f"{what}, to", design, dof)
+    first, second = (
+        footprint(where, words, design.mesh, dof, "ends on nodes of no cell with a material")
+        for where, words in ((strut.where, what), (strut.other, f"{what}, to"))
+    )
     points = design.mesh.points
     line = points[second].mean(axis=0) - points[first].mean(axis=0)
     length = float(np.linalg.norm(line))
@@ -40,25 +43,6 @@ def strut_attachments(strut: Strut, design: Design, dof: Array) -> tuple[Attachm
     spring = Attachment(strut.name, dofs, sp.csr_array(row[None]), sp.diags_array([strut.stiffness]))
     masses = [_half_mass(strut, rows, dof) for rows in (first, second)] if strut.mass else []
     return spring, masses, _bare(strut, (first, second), design, dof)
-
-
-def _end(where: Selector, what: str, design: Design, dof: Array) -> Array:
-    rows = where.rows(design.mesh, what)
-    attached = rows[dof[rows, 0] >= 0]
-    if len(attached) == 0:
-        raise ModelError(
-            f"{what} ends on nodes of no cell with a material",
-            found=f"nodes {some_ids(design.mesh.node_ids[rows])}",
-            do="select nodes of the structure",
-        )
-    if len(attached) > MAX_FOOTPRINT:
-        raise ModelError(
-            f"{what} has too large a footprint",
-            found=f"{len(attached)} nodes",
-            expected=f"up to {MAX_FOOTPRINT}",
-            do="select fewer nodes, spread over the same area",
-        )
-    return attached
 
 
 def _half_mass(strut: Strut, rows: Array, dof: Array) -> Attachment:

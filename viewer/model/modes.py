@@ -7,6 +7,7 @@ from typing import Protocol
 
 import numpy as np
 
+from viewer.errors import InputError
 from viewer.model.arrays import Array, frozen
 
 
@@ -119,6 +120,16 @@ class ModeSet:
     def omega(self, index: int) -> float:
         """Circular frequency, rad/s."""
         return float(2 * np.pi * self.freq_hz[self._checked(index)])
+
+    def index_of(self, number: int, design: str) -> int:
+        """Index of mode ``number`` (from 1); ``InputError``, which names the ``design``, when it is not there."""
+        if not 1 <= number <= self.count:
+            raise InputError(
+                f"design '{design}' has no mode {number}",
+                expected=f"1 to {self.count}",
+                do="choose another mode, or raise solve in the dossier",
+            )
+        return number - 1
 
     def with_(self, **changes) -> ModeSet:
         """A copy with some fields replaced."""

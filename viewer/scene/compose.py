@@ -8,7 +8,6 @@ from typing import Any
 
 import numpy as np
 
-from viewer.errors import InputError
 from viewer.insight.given_energy import given_density
 from viewer.insight.hinges import HingeFinding
 from viewer.insight.scale import Scale, common_scale
@@ -61,7 +60,7 @@ def single_picture(
 
     ``RefusedError`` when true scale is asked for and no size is known; ``InputError`` for a mode that is not there.
     """
-    index = mode_index(study, mode)
+    index = study.index_of(mode)
     scale = study.scale(index, true_scale=true_scale, peak_percent=peak_percent)
     body = mode_body(study, index, scale, scale.turn, energy and not given_energy)
     if given_energy:
@@ -119,7 +118,7 @@ def pair_picture(
     ``paired_by`` says in the note who or what decided that these two correspond.
     """
     studies, modes = (first, second), (first_mode, second_mode)
-    indices = [mode_index(study, mode) for study, mode in zip(studies, modes, strict=True)]
+    indices = [study.index_of(mode) for study, mode in zip(studies, modes, strict=True)]
     scales, basis = compared_scales(studies, indices, true_scale)
     energy = energy and layout == "side"  # an overlay shows form; two energy fields would hide one another
     bodies = tuple(
@@ -215,17 +214,6 @@ def _sizes(studies: Sequence[Study], indices: Sequence[int]) -> tuple[list[float
         return [float(mass or 0.0) for mass in masses], "modal mass"
     moved = [s.modes.shape(i)[s.design.mesh.used_nodes] for s, i in zip(studies, indices, strict=True)]
     return [float(np.mean(np.sum(np.abs(m) ** 2, axis=1))) for m in moved], "mean square motion"
-
-
-def mode_index(study: Study, mode: int) -> int:
-    """The index of mode number ``mode``; ``InputError`` when it is not there."""
-    if not 1 <= mode <= study.count:
-        raise InputError(
-            f"design '{study.design.name}' has no mode {mode}",
-            expected=f"1 to {study.count}",
-            do="choose another mode, or raise solve in the dossier",
-        )
-    return mode - 1
 
 
 def mode_body(study: Study, index: int, scale: Scale, turn: complex, energy: bool) -> Body:

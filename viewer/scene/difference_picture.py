@@ -9,7 +9,7 @@ import numpy as np
 
 from viewer.insight.difference import difference_by_cell
 from viewer.model.cycle import cycle_peaks
-from viewer.scene.compose import SINGLE, WHOLE, compared_scales, mode_body, mode_index, picture_height
+from viewer.scene.compose import SINGLE, WHOLE, compared_scales, mode_body, picture_height
 from viewer.scene.figures import hertz
 from viewer.scene.note_layout import scale_note
 from viewer.scene.palette import energy_top
@@ -37,7 +37,7 @@ def difference_picture(
     ``first_mode`` of the first, in percent of the largest of both; sizes, signs and phases as in a comparison.
     ``look``: theme, ghost, mesh_edges, view of ``Picture``."""
     studies, modes = (first, second), (first_mode, second_mode)
-    indices = [mode_index(study, mode) for study, mode in zip(studies, modes, strict=True)]
+    indices = [study.index_of(mode) for study, mode in zip(studies, modes, strict=True)]
     scales, basis = compared_scales(studies, indices, true_scale)
     one, two = (
         scale.factor * study.turned_shape(i, scale.turn)

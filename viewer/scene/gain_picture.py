@@ -10,7 +10,7 @@ import numpy as np
 from viewer.errors import RefusedError
 from viewer.insight.gain import GainMap
 from viewer.model.arrays import Array
-from viewer.scene.compose import SINGLE, WHOLE, mode_body, mode_index, picture_height
+from viewer.scene.compose import SINGLE, WHOLE, mode_body, picture_height
 from viewer.scene.figures import hertz
 from viewer.scene.note_layout import mode_title
 from viewer.scene.palette import gain_top
@@ -32,7 +32,7 @@ def gain_picture(
     ``RefusedError`` when the map has no figures in Hz: a rigid-body mode, or energies that are relative or not
     trusted.
     """
-    index = mode_index(study, mode)
+    index = study.index_of(mode)
     top = gain_top(gain.per_kg, drawn_areas(study.design.mesh))
     if not top > 0:
         raise RefusedError(

@@ -9,7 +9,7 @@ from typing import Any, cast
 
 import numpy as np
 
-from viewer.errors import InputError, ModelError, RefusedError
+from viewer.errors import ModelError, RefusedError
 from viewer.insight.character import Character, describe, masses_of
 from viewer.insight.common_support import CommonSupport, common_support
 from viewer.insight.correlate import modal_scale_factor
@@ -86,13 +86,7 @@ class Study:
 
     def index_of(self, number: int) -> int:
         """Index of mode ``number`` (from 1); ``InputError`` for a mode that is not there."""
-        if not 1 <= number <= self.count:
-            raise InputError(
-                f"design '{self.design.name}' has no mode {number}",
-                expected=f"1 to {self.count}",
-                do="choose another mode, or raise solve in the dossier",
-            )
-        return number - 1
+        return self.modes.index_of(number, self.design.name)
 
     def has_strain(self, index: int) -> bool:
         """Whether mode ``index`` has strain energy to show: it has physics and is no rigid-body mode."""
@@ -182,8 +176,8 @@ class Study:
 
     def support_with(self, other: Study, progress: Progress = SILENT) -> CommonSupport:
         """The places that this design and ``other``'s share; found once."""
-        find = lambda: common_support(self.design, other.design, progress)  # noqa: E731
-        return self._once("support", id(other), find)
+        find = lambda: (other, common_support(self.design, other.design, progress))  # noqa: E731
+        return self._once("support", id(other), find)[1]  # ``other`` is kept, so that its id stays its own
 
     def turn_of(self, index: int, other: Study, theirs: int) -> complex:
         """Unit complex factor that brings mode ``theirs`` of ``other`` into sign and phase with mode ``index``."""

@@ -16,13 +16,14 @@ from viewer.insight.hinges.finding import Hinge, HingeFinding
 from viewer.insight.hinges.flaps import find_flaps, regions
 from viewer.insight.hinges.gates import confidence, is_joint, label, score
 from viewer.insight.places import place_of
+from viewer.insight.smoothing import needs_smoothing, noise_estimate, smoothed
 from viewer.jobs import SILENT, Progress
 from viewer.mechanics.energy import CLOSURE_BOUND, RELATIVE, Energies
 from viewer.mechanics.energy import energies as form_energies
 from viewer.mechanics.relative import relative_energies, states_no_material
 from viewer.model.arrays import Array
 from viewer.model.design import Design
-from viewer.model.modes import ModeSet
+from viewer.model.modes import ArrayShapes, ModeSet
 
 _CURVE_POINTS = 17
 _SAME = 0.3  # share of the smaller band's energy in common from which two candidates are one
@@ -39,9 +40,10 @@ def find_hinges(
 
     energies  of any modes that include this one; formed for it alone when None
     Method: dense strain energy proposes bands (``candidates``), each is measured (``band``) and must pass gates.
-    Raises ``ModelError`` as ``energies`` does, ``RefusedError`` when no energies can be formed, ``Cancelled``.
+    Raises ``InputError`` for a mode that is not there, ``ModelError`` as ``energies`` does,
+    ``RefusedError`` when no energies can be formed, ``Cancelled``.
     """
-    index = number - 1
+    index = modes.index_of(number, design.name)
     freq = float(modes.freq_hz[index])
     given, row = _energies(design, modes, index, energies, progress)
     cleaned, basis, noise, cautions = _without_noise(design, modes, index, float(given.closure[row]), progress)
@@ -93,8 +95,6 @@ def _without_noise(
     of noise, and cautions."""
     if modes.origin == "computed":
         return None, "energies", 0.0, []
-    from viewer.insight.smoothing import needs_smoothing, noise_estimate, smoothed
-
     shape = modes.shape(index)
     noise = float(np.nan_to_num(noise_estimate(design, shape.real if np.iscomplexobj(shape) else shape, progress)))
     if not needs_smoothing(noise, closure):
@@ -118,8 +118,6 @@ def _energies(design, modes, index, given: Energies | None, progress) -> tuple[E
 
 
 def _one(modes: ModeSet, index: int) -> ModeSet:
-    from viewer.model.modes import ArrayShapes
-
     turned = modes.rotations(index)
     shapes = ArrayShapes(modes.shape(index)[None], None if turned is None else turned[None])
     return modes.with_(freq_hz=modes.freq_hz[index : index + 1], shapes=shapes, damping=None, cell_energy=None)
