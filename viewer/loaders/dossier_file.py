@@ -16,6 +16,7 @@ from viewer.errors import DossierError
 from viewer.loaders import dossier_schema as schema
 from viewer.loaders.dossier_parse import parsed
 from viewer.loaders.dossier_parts import Parts
+from viewer.loaders.dossier_test_plans import plan_of_test
 from viewer.model.design import (
     DIRECTIONS,
     Assignment,
@@ -90,7 +91,11 @@ class _Reader(Parts):
         sweeps = tuple(
             self.sweep(item, f'sweeps {n} ("{item.name}")', plans) for n, item in enumerate(table.sweeps, 1)
         )
-        return Dossier(table.title, self.path, plans, amplitudes, pairs, table.condition, sweeps)
+        self.no_duplicates("tests", [test.name for test in table.tests])
+        tests = tuple(
+            plan_of_test(self, item, f'tests {n} ("{item.name}")', plans) for n, item in enumerate(table.tests, 1)
+        )
+        return Dossier(table.title, self.path, plans, amplitudes, pairs, table.condition, sweeps, tests)
 
     def plan(
         self, item: schema.DesignTable, place: str, materials: dict[str, Material], points: dict[str, FunctionalPoint]

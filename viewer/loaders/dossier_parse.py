@@ -31,12 +31,17 @@ def parsed(path: Path) -> tuple[str, schema.DossierTable]:
         raise DossierError("is not UTF-8 text", file=path, place=f"byte {error.start}", do="save as UTF-8") from None
     except OSError as error:
         raise DossierError("cannot be opened", file=path, found=error.strerror or str(error)) from None
+    return text, checked(path, text)
+
+
+def checked(path: Path, text: str) -> schema.DossierTable:
+    """The checked tables of a dossier's text; ``path`` is for messages."""
     try:
         data = tomllib.loads(text)
     except (tomllib.TOMLDecodeError, RecursionError) as error:
         raise DossierError("is not valid TOML", file=path, found=str(error), do="mend the line named") from None
     try:
-        return text, schema.DossierTable.model_validate(data)
+        return schema.DossierTable.model_validate(data)
     except ValidationError as error:
         _raise_translated(path, data, error)
 

@@ -79,48 +79,41 @@ turning springs N·m/rad::
     values = [1.5, 2, 2.5]      # or: from = 1.5, to = 2.5, steps = 3
     count = 8                   # modes; default: as the design's
     insert = true               # further steps where modes pass one another too fast for these
+
+    [[tests]]                   # hammer tests; their layout: viewer/loaders/dossier_test_tables.py
+    name = "hammer"
+    file = "hammer.unv"
 """
 
 from __future__ import annotations
 
 from typing import Annotated, Literal
 
-from pydantic import BaseModel, ConfigDict, Field, model_validator
+from pydantic import Field, model_validator
 
-Name = Annotated[str, Field(min_length=1)]
-Positive = Annotated[float, Field(gt=0)]
-NotNegative = Annotated[float, Field(ge=0)]
-Vector = Annotated[list[float], Field(min_length=3, max_length=3)]
-ModeNumber = Annotated[int, Field(ge=1)]
-Held = Literal["ux", "uy", "uz", "rx", "ry", "rz"]
+from viewer.loaders.dossier_test_tables import TestTable
+from viewer.loaders.dossier_values import (
+    DENSITIES,
+    LENGTHS,
+    MASSES,
+    MODULI,
+    STIFFNESSES,
+    Held,
+    Length,
+    ModeNumber,
+    Name,
+    NotNegative,
+    OtherPlace,
+    Place,
+    Positive,
+    Table,
+    Units,
+    Vector,
+)
 
-LENGTHS = {"m": 1.0, "cm": 1e-2, "mm": 1e-3, "um": 1e-6, "in": 0.0254, "ft": 0.3048}
-MODULI = {"Pa": 1.0, "kPa": 1e3, "MPa": 1e6, "N/mm2": 1e6, "GPa": 1e9}
-DENSITIES = {"kg/m3": 1.0, "g/cm3": 1e3, "t/m3": 1e3, "t/mm3": 1e12}
-MASSES = {"kg": 1.0, "g": 1e-3, "t": 1e3}
-STIFFNESSES = {"N/m": 1.0, "kN/m": 1e3, "N/mm": 1e3, "kN/mm": 1e6}
-
-Length = Literal["m", "cm", "mm", "um", "in", "ft"]
-
-
-class Table(BaseModel):
-    """Strict: unknown keys, wrong types, NaN and infinities are errors."""
-
-    model_config = ConfigDict(extra="forbid", strict=True, allow_inf_nan=False, frozen=True)
-
+__all__ = ["DENSITIES", "LENGTHS", "MASSES", "MATRIX_ORDERS", "MODULI", "STIFFNESSES", "DossierTable", "Place"]
 
 MATRIX_ORDERS = ("by node", "by direction")
-
-
-class Units(Table):
-    length: Length = "m"
-    amplitude: Length | None = None
-    modulus: Literal["Pa", "kPa", "MPa", "N/mm2", "GPa"] = "Pa"
-    density: Literal["kg/m3", "g/cm3", "t/m3", "t/mm3"] = "kg/m3"
-    mass: Literal["kg", "g", "t"] = "kg"
-    stiffness: Literal["N/m", "kN/m", "N/mm", "kN/mm"] = "N/m"
-
-
 _ISOTROPIC, _DIRECTIONAL = ("youngs_modulus", "poisson"), ("e1", "e2", "nu12", "g12", "g13", "g23")
 _ACROSS = ("e3", "nu13", "nu23")  # of directional material that solids are made of
 
@@ -160,35 +153,6 @@ class MaterialTable(Table):
 
 def _said(names) -> str:
     return ", ".join(f"'{name}'" for name in names)
-
-
-class Place(Table):
-    """Which nodes: at most one of the four; the tables that need one say so."""
-
-    group: Name | None = None
-    nodes: Annotated[list[int], Field(min_length=1)] | None = None
-    box: Annotated[list[Vector], Field(min_length=2, max_length=2)] | None = None
-    near: Vector | None = None
-
-    @model_validator(mode="after")
-    def _one_place(self):
-        given = self.given_places()
-        if len(given) > 1:
-            raise ValueError(f"says {' and '.join(given)}, expected only one of group, nodes, box, near")
-        if not given and self._needs_place:
-            raise ValueError("says no place, expected one of group, nodes, box, near")
-        return self
-
-    @property
-    def _needs_place(self) -> bool:
-        return True
-
-    def given_places(self) -> list[str]:
-        return [name for name in ("group", "nodes", "box", "near") if getattr(self, name) is not None]
-
-
-class OtherPlace(Place):
-    """A place in a table of its own: the second end of a spring, an end of a link, a side of a tie."""
 
 
 class SectionTable(Table):
@@ -425,3 +389,4 @@ class DossierTable(Table):
     amplitudes: list[AmplitudeTable] = []
     pairs: list[PairTable] = []
     sweeps: list[SweepTable] = []
+    tests: list[TestTable] = []

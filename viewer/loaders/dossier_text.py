@@ -1,19 +1,14 @@
-"""Text of a dossier: a ready one for a mesh that has none, and names of modes written into an existing one."""
+"""Text of a ready dossier for a mesh that has none."""
 
 from __future__ import annotations
 
 import os
 from collections.abc import Mapping
 from pathlib import Path
-from typing import Any
 
 import numpy as np
-import tomlkit
 
 from viewer.cells import KINDS
-from viewer.errors import DossierError
-from viewer.jobs import write_text
-from viewer.loaders.dossier_parse import parsed
 from viewer.model.arrays import Array
 from viewer.model.mesh import Mesh
 
@@ -122,33 +117,6 @@ def _beside(path: str | os.PathLike[str], folder: Path) -> str:
         return Path(os.path.relpath(path, folder)).as_posix()
     except ValueError:  # another drive
         return Path(path).resolve().as_posix()
-
-
-def save_mode_name(path: str | os.PathLike[str], design: str, mode: int, name: str) -> None:
-    """Write the user's name for mode ``mode`` (number from 1) of ``design`` into the dossier, keeping comments,
-    order and layout; an empty name removes it. Atomic. Raises ``DossierError``."""
-    path = Path(path)
-    text, _ = parsed(path)
-    if mode < 1:
-        raise DossierError("a mode number counts from 1", file=path, found=str(mode))
-    document = tomlkit.parse(text)
-    tables: Any = document["designs"]
-    for table in tables:
-        if table["name"] == design:
-            break
-    else:
-        names = ", ".join(str(t["name"]) for t in tables)
-        raise DossierError(f"no design named '{design}'", file=path, expected=f"one of: {names}")
-    if "mode_names" not in table:
-        if not name:
-            return
-        table["mode_names"] = tomlkit.inline_table()
-    names_table = table["mode_names"]
-    if name:
-        names_table[str(mode)] = name
-    elif str(mode) in names_table:
-        del names_table[str(mode)]
-    write_text(path, tomlkit.dumps(document))
 
 
 def _group_lines(word: str, groups: Mapping[str, Array]) -> list[str]:

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, field, replace
 from pathlib import Path
+from typing import TypeVar
 
 import numpy as np
 
@@ -13,6 +14,7 @@ from viewer.model.arrays import Array, frozen, frozen_map
 from viewer.model.design import Clearance, Design, FunctionalPoint, Physics, Selector
 from viewer.model.matrices import GivenMatrices, MatrixFiles
 from viewer.model.mesh import Mesh
+from viewer.model.testset import Correction, Placement
 from viewer.model.variation import Variation
 
 
@@ -92,8 +94,59 @@ class SweepPlan:
 
 
 @dataclass(frozen=True, eq=False)
+class Landmark:
+    """A point of a test and where it lies on the mesh: at ``near`` (3,) m, or at the node with the id ``node``."""
+
+    point: str
+    near: Array | None = None
+    node: int | None = None
+
+    def __post_init__(self) -> None:
+        if self.near is not None:
+            object.__setattr__(self, "near", frozen(self.near, float, shape=(3,)))
+
+    def place(self, mesh: Mesh) -> Array:
+        """(3,) m. ``DossierError`` when the mesh has no such node."""
+        if self.near is not None:
+            return self.near
+        try:
+            return mesh.points[mesh.node_rows(np.array([self.node]))[0]]
+        except KeyError:
+            raise DossierError(
+                f"the landmark of point {self.point} names a node that does not exist",
+                found=f"node {self.node}",
+                expected="an id of a node of the mesh",
+            ) from None
+
+
+@dataclass(frozen=True, eq=False)
+class TestPlan:
+    """One hammer test before its files are read; with several ``files`` they are runs of one test.
+
+    length_unit  metres per unit of length in the files; None: they say it themselves
+    design       the design that the test is set beside
+    landmarks    named places for laying the test onto the mesh; () finds the placement from the geometry
+    placement    an accepted placement, which stands instead of the landmarks
+    corrections  what was accepted as wrong in the test, in the order in which it is put right
+    """
+
+    name: str
+    files: tuple[Path, ...]
+    length_unit: float | None = None
+    design: str = ""
+    landmarks: tuple[Landmark, ...] = ()
+    placement: Placement | None = None
+    corrections: tuple[Correction, ...] = ()
+
+    __test__ = False  # not a test case of pytest's
+
+
+_Plan = TypeVar("_Plan", SweepPlan, TestPlan)
+
+
+@dataclass(frozen=True, eq=False)
 class Dossier:
-    """One product's designs, functional points, stated amplitudes, pairs of modes and sweeps."""
+    """One product's designs, functional points, stated amplitudes, pairs of modes, sweeps and hammer tests."""
 
     title: str
     path: Path
@@ -102,6 +155,7 @@ class Dossier:
     pairs: tuple[ModePair, ...] = ()
     condition: str = ""  # words for pictures that state no size: "clamped root, camera 1.2 kg"
     sweeps: tuple[SweepPlan, ...] = ()
+    tests: tuple[TestPlan, ...] = ()
 
     def plan(self, name: str) -> DesignPlan:
         for plan in self.plans:
@@ -112,13 +166,19 @@ class Dossier:
         )
 
     def sweep(self, name: str) -> SweepPlan:
-        for sweep in self.sweeps:
-            if sweep.name == name:
-                return sweep
-        names = ", ".join(s.name for s in self.sweeps)
+        return self._named(self.sweeps, name, "sweep", "sweeps")
+
+    def test(self, name: str) -> TestPlan:
+        return self._named(self.tests, name, "test", "tests")
+
+    def _named(self, among: tuple[_Plan, ...], name: str, word: str, table: str) -> _Plan:
+        for plan in among:
+            if plan.name == name:
+                return plan
+        names = ", ".join(plan.name for plan in among)
         raise DossierError(
-            f"no sweep named '{name}'",
+            f"no {word} named '{name}'",
             file=self.path,
-            expected=f"one of: {names}" if names else "a sweep, none is declared",
-            do="" if names else "add [[sweeps]] to the dossier",
+            expected=f"one of: {names}" if names else f"a {word}, none is declared",
+            do="" if names else f"add [[{table}]] to the dossier",
         )
