@@ -143,19 +143,22 @@ def pair(
     """Pair the modes of two designs, whose meshes need not be alike. Raises what ``common_support`` raises."""
     support = common_support(first, second, progress) if support is None else support
     one, two = _vectors(first_modes, support, 0, progress), _vectors(second_modes, support, 1, progress)
+    matrix, pairs = pair_vectors(one, two, first_modes.freq_hz, second_modes.freq_hz)
+    return Pairing(first.name, second.name, support, matrix, tuple(_mergers(pairs, matrix, one, two)))
+
+
+def pair_vectors(one: Array, two: Array, one_hz: Array, two_hz: Array) -> tuple[Array, list[ModePair]]:
+    """MAC (a, b) of shapes given as rows of ``one`` (a, n) and ``two`` (b, n), and their pairs by optimal assignment:
+    first the modes of ``one`` in order, then what is left of ``two``."""
     matrix = mac(one, two)
     # the cube sharpens: one excellent pair and one poor are better than two middling ones
     rows, columns = linear_sum_assignment(-(matrix**3))
     partner = {int(i): int(j) for i, j in zip(rows, columns, strict=True)}
-    groups = close_groups(first_modes.freq_hz), close_groups(second_modes.freq_hz)
-    pairs = []
-    for i in range(first_modes.count):
-        pairs.append(_became(i, partner.get(i), matrix, groups, (one, two), (first_modes, second_modes)))
+    groups = close_groups(one_hz), close_groups(two_hz)
+    pairs = [_became(i, partner.get(i), matrix, groups, (one, two), (one_hz, two_hz)) for i in range(len(one))]
     taken = {p.second for p in pairs}
-    for j in range(second_modes.count):
-        if j + 1 not in taken:
-            pairs.append(alone(None, j + 1, second_modes.freq_hz[j], first_modes.freq_hz, matrix[:, j]))
-    return Pairing(first.name, second.name, support, matrix, tuple(_mergers(pairs, matrix, one, two)))
+    pairs += [alone(None, j + 1, two_hz[j], one_hz, matrix[:, j]) for j in range(len(two)) if j + 1 not in taken]
+    return matrix, pairs
 
 
 def cross_products(
@@ -203,11 +206,11 @@ def _vectors(modes: ModeSet, support: CommonSupport, which: int, progress: Progr
 
 def close_groups(freq_hz: Array, near: float = CLOSE) -> list[tuple[int, ...]]:
     """By mode the modes (indices) that lie within a relative difference of ``near`` in frequency of it or of others
-    that do, itself included."""
-    label, out = 0, np.zeros(len(freq_hz), int)
-    for i in range(1, len(freq_hz)):
-        label += bool(freq_hz[i] - freq_hz[i - 1] > near * max(freq_hz[i], 1e-300))
-        out[i] = label
+    that do, itself included; in whatever order the modes are given."""
+    freq_hz, order = np.asarray(freq_hz), np.argsort(freq_hz, kind="stable")
+    ascending = freq_hz[order]
+    out = np.zeros(len(freq_hz), int)
+    out[order[1:]] = np.cumsum(np.diff(ascending) > near * np.maximum(ascending[1:], 1e-300))
     return [tuple(int(j) for j in np.nonzero(out == out[i])[0]) for i in range(len(freq_hz))]
 
 
@@ -217,11 +220,11 @@ def _became(
     matrix: Array,
     groups: tuple[list[tuple[int, ...]], list[tuple[int, ...]]],
     vectors: tuple[Array, Array],
-    modes: tuple[ModeSet, ModeSet],
+    freq_hz: tuple[Array, Array],
 ) -> ModePair:
-    one_hz = float(modes[0].freq_hz[i])
+    one_hz = float(freq_hz[0][i])
     if j is None:
-        return alone(i + 1, None, one_hz, modes[1].freq_hz, matrix[i])
+        return alone(i + 1, None, one_hz, freq_hz[1], matrix[i])
     value, subspace = float(matrix[i, j]), None
     named: tuple[tuple[int, ...], tuple[int, ...]] = ((), ())
     mine, theirs = groups[0][i], groups[1][j]
@@ -230,8 +233,8 @@ def _became(
         subspace = subspace_agreement(vectors[0][list(mine)], vectors[1][list(theirs)])
         named = (tuple(k + 1 for k in mine), tuple(k + 1 for k in theirs))
     if max(value, subspace or 0.0) < PAIRED:
-        return alone(i + 1, None, one_hz, modes[1].freq_hz, matrix[i])
-    return ModePair("paired", i + 1, j + 1, one_hz, float(modes[1].freq_hz[j]), value, subspace, named)
+        return alone(i + 1, None, one_hz, freq_hz[1], matrix[i])
+    return ModePair("paired", i + 1, j + 1, one_hz, float(freq_hz[1][j]), value, subspace, named)
 
 
 def _mergers(pairs: list[ModePair], matrix: Array, one: Array, two: Array) -> list[ModePair]:
