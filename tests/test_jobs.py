@@ -7,7 +7,7 @@ import time
 import pytest
 
 from viewer.errors import Cancelled, ExportError, ModelError, SolveError
-from viewer.jobs import Progress, atomic_path, in_child
+from viewer.jobs import SILENT, Crew, Progress, atomic_path, in_child
 
 
 def test_atomic_write_leaves_nothing_on_failure(tmp_path):
@@ -69,3 +69,65 @@ def test_a_child_that_cannot_read_a_large_order_does_not_leave_us_waiting():
 
 def test_child_returns_its_answer():
     assert in_child(divmod, 17, 5) == (3, 2)
+
+
+def _write(path, text, progress=SILENT):
+    path.write_text(text)
+
+
+def _write_slowly(path, progress=SILENT):
+    path.with_suffix(".begun").write_text("")
+    for _ in range(600):
+        progress.tick("waiting")
+        time.sleep(0.1)
+    path.write_text("")
+
+
+def _refuse_order(text, progress=SILENT):
+    raise ModelError(text)
+
+
+def _die_of_order(progress=SILENT):
+    import multiprocessing
+    import os
+
+    while multiprocessing.parent_process() is None:  # the caller must not carry this one out himself
+        time.sleep(0.01)
+    os._exit(9)
+
+
+@pytest.mark.parametrize("helpers", [0, 1, 2])
+def test_a_crew_carries_out_every_order_once(tmp_path, helpers):
+    with Crew(helpers) as crew:
+        for number in range(30):
+            crew.give(_write, tmp_path / f"{number}.txt", text=str(number))
+        crew.finish()
+        assert sorted(int(path.read_text()) for path in tmp_path.iterdir()) == list(range(30))
+
+
+@pytest.mark.parametrize("helpers", [0, 1])
+def test_a_failed_order_raises_its_own_error(helpers):
+    with pytest.raises(ModelError, match="no material"), Crew(helpers) as crew:  # noqa: PT012 (anywhere in the crew's life)
+        crew.give(_refuse_order, "no material")
+        crew.finish()
+
+
+def test_a_helper_that_dies_is_an_error_and_no_hang(tmp_path):
+    with pytest.raises(SolveError, match="without an answer"), Crew(1) as crew:  # noqa: PT012 (anywhere in the crew's life)
+        crew.give(_write, tmp_path / "first", "")
+        while not (tmp_path / "first").exists():  # the helper has come to work
+            time.sleep(0.02)
+        crew.give(_die_of_order)
+        while crew._processes[0].is_alive():
+            time.sleep(0.02)
+        crew.finish()
+
+
+def test_cancelling_stops_caller_and_helpers_and_leaves_no_order(tmp_path):
+    progress = Progress(stop=lambda: (tmp_path / "one.begun").exists() and (tmp_path / "two.begun").exists())
+    with pytest.raises(Cancelled), Crew(1, progress) as crew:  # noqa: PT012 (anywhere in the crew's life)
+        crew.give(_write_slowly, tmp_path / "one")
+        crew.give(_write_slowly, tmp_path / "two")
+        crew.finish()
+    assert not any(process.is_alive() for process in crew._processes)
+    assert sorted(path.name for path in tmp_path.iterdir()) == ["one.begun", "two.begun"]

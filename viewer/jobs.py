@@ -13,6 +13,7 @@ import os
 import pickle
 import sys
 import tempfile
+import time
 import traceback
 import types
 from collections.abc import Callable, Iterator
@@ -38,6 +39,10 @@ class Progress:
             raise Cancelled()
         if self._show is not None:
             self._show(stage, done, total)
+
+    def quiet(self) -> Progress:
+        """One that stops when this one is asked to, and shows nothing."""
+        return Progress(stop=self._stop)
 
 
 SILENT = Progress()
@@ -144,8 +149,136 @@ def _child(pipe, order: Path) -> None:
     except KeyboardInterrupt:
         answer = (False, Cancelled())
     except BaseException as error:
-        trace = traceback.format_exc(limit=-3)
-        answer = (False, SolveError(f"{type(error).__name__}: {error}", found=trace))
+        answer = (False, _as_ours(error))
     with contextlib.suppress(OSError):
         pipe.send(answer)
     pipe.close()
+
+
+_WAIT = 0.02  # s between two looks
+Give = Callable[..., None]  # give(function, *args, **options)
+
+
+def at_once(function: Callable[..., Any], *args: Any, **options: Any) -> None:
+    """Carry out an order here and now: what ``Crew.give`` is without a crew."""
+    function(*args, **options)
+
+
+class Crew:
+    """Orders that other processes carry out beside the caller: ``with Crew() as crew: crew.give(function, *args)``.
+
+    Orders are files in a folder of the crew's own; whoever renames one first has it, and nobody waits for anybody.
+    A caller who has more than ``BACKLOG`` orders waiting carries one out himself. ``finish`` joins in until all are
+    done and raises what the first failed order raised; leaving the block early kills the others at once. Functions
+    must be importable, take ``progress``, and write files; arguments must be picklable.
+    """
+
+    BACKLOG = 12
+
+    def __init__(self, helpers: int | None = None, progress: Progress = SILENT) -> None:
+        """``helpers`` 0: all is done by the caller; None: by the number of processors, 3 at the most."""
+        self._progress = progress
+        if multiprocessing.current_process().daemon:  # such a process may not have children
+            helpers = 0
+        self._size = min((os.cpu_count() or 1) - 1, 3) if helpers is None else helpers
+        self._folder = tempfile.TemporaryDirectory(prefix="hingelight-")
+        self._processes: list[Any] = []
+        self._given = 0
+
+    def __enter__(self) -> Crew:
+        return self
+
+    def __exit__(self, *_: object) -> None:
+        for process in self._processes:
+            process.terminate()
+        for process in self._processes:
+            process.join()
+        self._folder.cleanup()
+
+    def give(self, function: Callable[..., Any], *args: Any, **options: Any) -> None:
+        """Have ``function(*args, **options)`` carried out by somebody, some time before ``finish`` returns."""
+        if self._size == 0:
+            function(*args, **options, progress=self._progress.quiet())
+            return
+        folder = Path(self._folder.name)
+        _put(folder / f"{self._given:06d}.order", (function, args, options))
+        self._given += 1
+        if len(self._processes) < self._size:
+            process = multiprocessing.get_context("spawn").Process(target=_serve, args=(folder,), daemon=True)
+            with no_main_module():
+                process.start()
+            self._processes.append(process)
+        if len(_waiting(folder)) > self.BACKLOG:
+            self._join_in()
+
+    def finish(self, stage: str = "") -> None:
+        """Return when all orders are carried out."""
+        folder = Path(self._folder.name)
+        while self._given:
+            self._progress.tick(stage, len(list(folder.glob("*.done"))), self._given)
+            if self._join_in():
+                continue
+            if len(list(folder.glob("*.done"))) == self._given:
+                break
+            time.sleep(_WAIT)
+        self._raise_failure()
+
+    def _join_in(self) -> bool:
+        """Carry out one order here; False when none waits."""
+        self._raise_failure()
+        return _carry_out_one(Path(self._folder.name), self._progress.quiet())
+
+    def _raise_failure(self) -> None:
+        ended = not all(process.is_alive() for process in self._processes)  # they end of themselves only by failing
+        for path in Path(self._folder.name).glob("*.failed"):
+            raise pickle.loads(path.read_bytes())
+        if ended:
+            raise SolveError(
+                "a process at work beside this one ended without an answer",
+                do="most often memory ran out: use a coarser mesh or a smaller picture",
+            )
+
+
+def _waiting(folder: Path) -> list[Path]:
+    return sorted(folder.glob("*.order"))
+
+
+def _carry_out_one(folder: Path, progress: Progress = SILENT) -> bool:
+    """Take the oldest order that nobody has taken, and carry it out."""
+    for order in _waiting(folder):
+        taken = order.with_suffix(".taken")
+        try:
+            order.rename(taken)
+        except OSError:  # somebody else was faster
+            continue
+        function, args, options = pickle.loads(taken.read_bytes())
+        function(*args, **options, progress=progress)
+        taken.rename(order.with_suffix(".done"))
+        return True
+    return False
+
+
+def _serve(folder: Path) -> None:
+    """A helper's life: ended by its crew."""
+    parent = multiprocessing.parent_process()
+    try:
+        while parent is not None and parent.is_alive():
+            if not _carry_out_one(folder):
+                time.sleep(_WAIT)
+    except KeyboardInterrupt:  # the caller has heard it too
+        return
+    except BaseException as error:
+        told = error if isinstance(error, HingelightError) else _as_ours(error)
+        with contextlib.suppress(OSError):
+            _put(folder / f"{os.getpid()}.failed", told)
+
+
+def _put(path: Path, what: Any) -> None:
+    """Pickle into a file that appears under its name when it is whole."""
+    part = path.with_suffix(".part")
+    part.write_bytes(pickle.dumps(what, protocol=pickle.HIGHEST_PROTOCOL))
+    part.rename(path)
+
+
+def _as_ours(error: BaseException) -> HingelightError:
+    return SolveError(f"{type(error).__name__}: {error}", found=traceback.format_exc(limit=-3))

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from pathlib import Path
-from typing import Annotated
+from typing import Annotated, Any
 
 import typer
 
@@ -41,7 +41,7 @@ def hinges(
     from viewer.export.rows import short
     from viewer.export.tables import readable, write_table
 
-    look = {"theme": theme_checked(theme), "width": width}
+    look: dict[str, Any] = {"theme": theme_checked(theme), "width": width}
     opened = workspace(no_cache).open(dossier)
     stems = slugs(opened.names)
     found, rows, flaps, cautions = [], [], [], list(opened.warnings)
@@ -57,7 +57,7 @@ def hinges(
                 flaps += flap_rows(name, facts)
                 if pictures is not None:
                     stem = f"{stems[name]}_mode_{number:02d}"
-                    write_hinge_stills(pictures, stem, study, number, finding, progress=progress, **look)
+                    write_hinge_stills(pictures, stem, study, number, finding, **look)
     if out is not None:
         write_table(out, rows)
     cautions = list(dict.fromkeys([*cautions, *(words for facts in found for words in facts["cautions"])]))

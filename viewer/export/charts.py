@@ -7,9 +7,9 @@ from pathlib import Path
 from typing import Any
 
 import numpy as np
-from PIL import Image
 
-from viewer.jobs import SILENT, Progress, atomic_path
+from viewer.export.stills import write_png
+from viewer.jobs import SILENT, Give, Progress, at_once
 from viewer.model.arrays import Array
 from viewer.scene.ladder_chart import ladder_chart
 from viewer.scene.mac_chart import mac_chart
@@ -26,21 +26,24 @@ def save_chart(
 ) -> Path:
     """Write a sheet as PNG, ``width`` pixels wide; returns the path. Raises ``ExportError``."""
     progress.tick("drawing", 0, 1)
-    with atomic_path(path) as part:
-        Image.fromarray(sheet_image(sheet, width / sheet.width)).save(part, format="PNG")
-    return Path(path)
+    return write_png(sheet_image(sheet, width / sheet.width), path)
 
 
 def save_pairing_charts(
-    comparison: Comparison, folder: Path, stem: str, theme: str = "light", width: int = BASE_WIDTH
+    comparison: Comparison,
+    folder: Path,
+    stem: str,
+    theme: str = "light",
+    width: int = BASE_WIDTH,
+    give: Give = at_once,
 ) -> tuple[Path, Path]:
     """The ladder of frequencies and the field of agreement of a comparison; returns both paths."""
     first, second = comparison.first.names, comparison.second.names
     ladder, field = (chart(comparison.pairing, first, second, theme) for chart in (ladder_chart, mac_chart))
-    return (
-        save_chart(ladder, folder / f"{stem}_ladder.png", width=width),
-        save_chart(field, folder / f"{stem}_agreement.png", width=width),
-    )
+    paths = folder / f"{stem}_ladder.png", folder / f"{stem}_agreement.png"
+    for sheet, path in zip((ladder, field), paths, strict=True):
+        give(save_chart, sheet, path, width=width)
+    return paths
 
 
 def sheet_image(sheet: Sheet, scale: float = 1.0) -> Array:

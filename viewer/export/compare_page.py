@@ -45,9 +45,9 @@ def comparison_section(desk: Desk, comparison: Comparison) -> PageSection:
     )
     loops = [_charts(desk, comparison, stem)]
     for item in comparison.outcomes:
-        progress = desk.steps.next(f"comparing {one} with {two}")
+        desk.steps.next(f"comparing {one} with {two}")
         if item.pair.kind == "paired":
-            loops.append(_pair_loop(desk, comparison, item, progress))
+            loops.append(_pair_loop(desk, comparison, item))
     lost = [item.sentence for item in comparison.outcomes if item.pair.kind != "paired"]
     text = (
         comparison.sentence,
@@ -59,7 +59,7 @@ def comparison_section(desk: Desk, comparison: Comparison) -> PageSection:
 
 
 def _charts(desk: Desk, comparison: Comparison, stem: str) -> PageLoop:
-    ladder, agreement = save_pairing_charts(comparison, desk.folder, stem, desk.theme, desk.width)
+    ladder, agreement = save_pairing_charts(comparison, desk.folder, stem, desk.theme, desk.width, desk.give)
     return PageLoop(
         "Which mode became which",
         still=ladder.name,
@@ -69,7 +69,7 @@ def _charts(desk: Desk, comparison: Comparison, stem: str) -> PageLoop:
     )
 
 
-def _pair_loop(desk: Desk, comparison: Comparison, item: Outcome, progress: Progress) -> PageLoop:
+def _pair_loop(desk: Desk, comparison: Comparison, item: Outcome) -> PageLoop:
     first, second = comparison.first, comparison.second
     one, two = item.pair.first or 1, item.pair.second or 1
     stem = f"{desk.slugs[first.design.name]}_{one:02d}_{desk.slugs[second.design.name]}_{two:02d}"
@@ -77,12 +77,11 @@ def _pair_loop(desk: Desk, comparison: Comparison, item: Outcome, progress: Prog
     arguments = (first, one, second, two)
     findings = (first.hinges_if_known(one - 1), second.hinges_if_known(two - 1))
     side = pair_picture(*arguments, layout="side", paired_by=paired_by, findings=findings, **desk.look)
-    save_gif(side, desk.folder / f"{stem}_side.gif", progress)
-    save_png(side, desk.folder / f"{stem}_side.png", progress=progress)
+    desk.give(save_gif, side, desk.folder / f"{stem}_side.gif", still=desk.folder / f"{stem}_side.png")
     overlay = pair_picture(*arguments, layout="overlay", paired_by=paired_by, **desk.look)
-    save_png(overlay, desk.folder / f"{stem}_overlay.png", progress=progress)
+    desk.give(save_png, overlay, desk.folder / f"{stem}_overlay.png")
     difference = difference_picture(*arguments, paired_by=paired_by, **desk.look)
-    save_png(difference, desk.folder / f"{stem}_difference.png", progress=progress)
+    desk.give(save_png, difference, desk.folder / f"{stem}_difference.png")
     return PageLoop(
         title=side.note.title,
         gif=f"{stem}_side.gif",

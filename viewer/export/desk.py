@@ -10,7 +10,7 @@ from viewer.export.index_page import PageTable
 from viewer.export.rows import Row, short
 from viewer.export.tables import write_table
 from viewer.insight.strut_finding import StrutTrial
-from viewer.jobs import Progress
+from viewer.jobs import Give, Progress
 from viewer.workspace.comparison import Comparison
 from viewer.workspace.explanation import Explanation
 
@@ -31,13 +31,14 @@ class Steps:
 
 @dataclass
 class Desk:
-    """Where a review writes, and what it has written so far."""
+    """Where a review writes, who draws for it (``give``), and what it has written so far."""
 
     folder: Path
     theme: str
     width: int
     steps: Steps
     slugs: dict[str, str]
+    give: Give
     printed: list[tuple[str, list[Row]]] = field(default_factory=list)
     tables: dict[str, list[Row]] = field(default_factory=dict)
     findings: dict[str, list[Explanation]] = field(default_factory=dict)

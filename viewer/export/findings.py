@@ -9,7 +9,7 @@ from viewer.errors import RefusedError
 from viewer.export.stills import save_png
 from viewer.insight.gain_finding import GainMap
 from viewer.insight.hinges import HingeFinding
-from viewer.jobs import SILENT, Progress
+from viewer.jobs import Give, at_once
 from viewer.scene.compose import single_picture
 from viewer.scene.gain_picture import gain_picture
 from viewer.workspace import Study
@@ -24,7 +24,7 @@ def write_hinge_stills(
     number: int,
     finding: HingeFinding,
     *,
-    progress: Progress = SILENT,
+    give: Give = at_once,
     **look: Any,
 ) -> Pictures:
     """A still of mode ``number`` for each hinge of ``finding``, that hinge set off."""
@@ -32,7 +32,7 @@ def write_hinge_stills(
     for hinge in finding.hinges:
         name = f"{stem}_hinge_{hinge.number}.png"
         picture = single_picture(study, number, finding=finding, chosen=hinge.number, **look)
-        save_png(picture, folder / name, progress=progress)
+        give(save_png, picture, folder / name)
         written.append((f"hinge {hinge.number}", name))
     return tuple(written)
 
@@ -44,7 +44,7 @@ def write_gain_still(
     number: int,
     gain: GainMap,
     *,
-    progress: Progress = SILENT,
+    give: Give = at_once,
     **look: Any,
 ) -> Pictures:
     """A still of the gain map of mode ``number``; nothing where it has no figures in hertz."""
@@ -52,5 +52,5 @@ def write_gain_still(
         picture = gain_picture(study, number, gain, **look)
     except RefusedError:
         return ()
-    save_png(picture, folder / f"{stem}_gain.png", progress=progress)
+    give(save_png, picture, folder / f"{stem}_gain.png")
     return (("where to stiffen and to lighten", f"{stem}_gain.png"),)

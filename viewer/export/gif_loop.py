@@ -10,6 +10,7 @@ from PIL import Image
 from viewer.errors import ExportError
 from viewer.export.frames import drawings, source_frames
 from viewer.export.shared_palette import SharedPalette
+from viewer.export.stills import write_png
 from viewer.jobs import SILENT, Progress, atomic_path
 from viewer.model.arrays import Array
 from viewer.scene.picture import Picture
@@ -19,9 +20,16 @@ from viewer.stage import Stage
 PALETTE_PHASES = (0.0, 0.125, 0.25, 0.625, 0.75)  # of a cycle: both extremes, both directions, rest
 
 
-def save_gif(picture: Picture, path: str | os.PathLike[str], progress: Progress = SILENT) -> Path:
+def save_gif(
+    picture: Picture,
+    path: str | os.PathLike[str],
+    progress: Progress = SILENT,
+    *,
+    still: str | os.PathLike[str] | None = None,
+) -> Path:
     """Write one cycle, 40 frames of 40 ms, repeating for ever; returns the path.
 
+    still  also write the first frame, in all its colours, to this PNG file
     Raises ``ExportError`` when the file cannot be written, ``Cancelled`` (nothing is left) when asked to stop.
     """
     source = source_frames(picture)
@@ -32,6 +40,8 @@ def save_gif(picture: Picture, path: str | os.PathLike[str], progress: Progress 
         palette: SharedPalette | None = None
         with Stage(picture) as stage:
             for frame, image in drawings(picture, stage.image, tasters, progress):
+                if frame == 0 and still is not None:
+                    write_png(image, still)
                 waiting[frame] = image
                 if palette is None and all(taster in waiting for taster in tasters):
                     palette = SharedPalette([waiting[taster] for taster in tasters])

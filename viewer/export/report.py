@@ -30,7 +30,7 @@ from viewer.export.stills import save_png
 from viewer.export.strip import save_strip
 from viewer.export.strut_rows import strut_rows
 from viewer.insight.strut_finding import StrutTrial
-from viewer.jobs import SILENT, Progress, write_text
+from viewer.jobs import SILENT, Crew, Progress, write_text
 from viewer.model.plain import plain
 from viewer.scene.compose import single_picture
 from viewer.scene.strut_picture import strut_picture
@@ -39,6 +39,7 @@ from viewer.workspace.explanation import Explanation
 from viewer.workspace.trials import try_struts
 
 SUMMARY = "summary.json"
+DRAWN_ALONE_ABOVE = 500_000  # nodes: pictures of larger designs take gigabytes, one at a time is enough
 
 
 @dataclass(frozen=True)
@@ -68,13 +69,15 @@ def write_review(
     studies = [opened.study(name, count, progress) for name in opened.names]
     comparisons, apart = compared(opened, studies, progress)
     steps = Steps(progress, 1 + sum(s.count for s in studies) + sum(len(c.outcomes) for c in comparisons))
-    with _aside(Path(folder)) as part:
-        desk = Desk(part, theme, width, steps, slugs(opened.names))
+    large = sum(study.design.mesh.n_nodes for study in studies) > DRAWN_ALONE_ABOVE
+    with _aside(Path(folder)) as part, Crew(0 if large else None, progress) as crew:
+        desk = Desk(part, theme, width, steps, slugs(opened.names), crew.give)
         sections = [comparison_section(desk, comparison) for comparison in comparisons]
         sections += [_explain(desk, opened, study) for study in studies]
         doubts = [words for s in studies for words in (*opened.doubts(s.design.name), *s.cautions)]
         doubts += [f"{name}: {words}" for name, told in desk.findings.items() for t in told for words in t.cautions]
         cautions = tuple(dict.fromkeys((*opened.warnings, *doubts, *apart)))
+        crew.finish("drawing")
         write_index(part, opened.dossier.title, sections, condition=opened.dossier.condition, cautions=cautions)
         summary = _summary(opened, studies, desk, cautions)
         write_text(part / SUMMARY, json.dumps(plain(summary), indent=1, ensure_ascii=False, allow_nan=False) + "\n")
@@ -90,7 +93,7 @@ def _explain(desk: Desk, opened: OpenDossier, study: Study) -> PageSection:
     for index, row in enumerate(rows):
         progress = desk.steps.next(f"{name} mode {index + 1}")
         told.append(study.explain(index, progress))
-        loops.append(_explain_mode(desk, study, index, row, told[-1], progress))
+        loops.append(_explain_mode(desk, study, index, row, told[-1]))
     desk.findings[name] = told
     trial, pictured = _try_struts(desk, opened, study, told)
     folds = [explained.hinges.to_dict() for explained in told if explained.hinges is not None]
@@ -135,28 +138,27 @@ def _try_struts(
     except (RefusedError, ModelError):
         return None, ()
     still = f"{desk.slugs[name]}_mode_{trial.mode:02d}_strut.png"
-    save_png(picture, desk.folder / still, progress=progress)
+    desk.give(save_png, picture, desk.folder / still)
     title = f"A strut that would raise mode {trial.mode}"
     loop = PageLoop(title, still=still, sentences=(trial.sentence,), alt=f"{name}, {title}: {trial.sentence}")
     return trial, (loop,)
 
 
-def _explain_mode(desk: Desk, study: Study, index: int, row: Row, told: Explanation, progress: Progress) -> PageLoop:
+def _explain_mode(desk: Desk, study: Study, index: int, row: Row, told: Explanation) -> PageLoop:
     number, slug = index + 1, desk.slugs[study.design.name]
     stem = f"{slug}_mode_{number:02d}"
     picture = single_picture(study, number, finding=told.hinges, **desk.look)
-    save_gif(picture, desk.folder / f"{stem}.gif", progress)
-    save_png(picture, desk.folder / f"{stem}.png", progress=progress)
-    save_strip(picture, desk.folder / f"{stem}_phases.png", progress)
+    desk.give(save_gif, picture, desk.folder / f"{stem}.gif", still=desk.folder / f"{stem}.png")
+    desk.give(save_strip, picture, desk.folder / f"{stem}_phases.png")
     true_scale = f"{stem}_true_scale.png" if number in study.amplitudes else ""
     if true_scale:
         true = single_picture(study, number, true_scale=True, **desk.look)
-        save_png(true, desk.folder / true_scale, progress=progress)
+        desk.give(save_png, true, desk.folder / true_scale)
     pictures: Pictures = ()
     if told.hinges is not None:
-        pictures += write_hinge_stills(desk.folder, stem, study, number, told.hinges, progress=progress, **desk.look)
+        pictures += write_hinge_stills(desk.folder, stem, study, number, told.hinges, give=desk.give, **desk.look)
     if told.gain is not None:
-        pictures += write_gain_still(desk.folder, stem, study, number, told.gain, progress=progress, **desk.look)
+        pictures += write_gain_still(desk.folder, stem, study, number, told.gain, give=desk.give, **desk.look)
     return PageLoop(
         title=picture.note.title,
         gif=f"{stem}.gif",

@@ -22,7 +22,13 @@ def image(picture: Picture, phase: float = 0.0) -> Array:
 def save_png(picture: Picture, path: str | os.PathLike[str], phase: float = 0.0, progress: Progress = SILENT) -> Path:
     """Write one phase as PNG; returns the path. Raises ``ExportError`` when the file cannot be written."""
     progress.tick("drawing", 0, 1)
-    with atomic_path(path) as part:
-        Image.fromarray(image(picture, phase)).save(part, format="PNG")
+    write_png(image(picture, phase), path)
     progress.tick("drawing", 1, 1)
+    return Path(path)
+
+
+def write_png(image: Array, path: str | os.PathLike[str], dpi: int | None = None) -> Path:
+    """Write (h, w, 3) uint8 as PNG, atomically; returns the path."""
+    with atomic_path(path) as part:
+        Image.fromarray(image).save(part, format="PNG", **({"dpi": (dpi, dpi)} if dpi else {}))
     return Path(path)

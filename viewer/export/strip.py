@@ -7,10 +7,10 @@ from collections.abc import Sequence
 from pathlib import Path
 
 import numpy as np
-from PIL import Image
 
 from viewer.export.charts import sheet_image
-from viewer.jobs import SILENT, Progress, atomic_path
+from viewer.export.stills import write_png
+from viewer.jobs import SILENT, Progress
 from viewer.model.arrays import Array
 from viewer.scene import view
 from viewer.scene.picture import Picture
@@ -31,9 +31,7 @@ def save_strip(
     bodies when they are compared side by side.
     Raises ``ExportError`` when the file cannot be written, ``Cancelled`` when asked to stop.
     """
-    with atomic_path(path) as part:
-        Image.fromarray(strip_image(picture, progress, width=width)).save(part, format="PNG", dpi=(300, 300))
-    return Path(path)
+    return write_png(strip_image(picture, progress, width=width), path, dpi=300)
 
 
 def strip_image(picture: Picture, progress: Progress = SILENT, *, width: int = WIDTH) -> Array:
