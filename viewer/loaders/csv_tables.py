@@ -119,7 +119,7 @@ def read_modes(path: Path, progress: Progress = SILENT) -> RawModes:
     mode, node = table.integers("mode"), table.integers("node")
     if not len(table):
         raise table.error("holds no mode")
-    count = _mode_count(table, mode)
+    count = table.count_of_modes(mode)
     order = np.argsort(mode, kind="stable")
     per_mode = len(table) // count
     ids = node[order].reshape(count, per_mode) if per_mode * count == len(table) else None
@@ -168,7 +168,7 @@ def read_frequencies(path: Path, count: int) -> tuple[Array, Array | None]:
     table = Table(path)
     table.need("mode", "freq_hz")
     mode = table.integers("mode")
-    if _mode_count(table, mode) != count or len(mode) != count:
+    if table.count_of_modes(mode) != count or len(mode) != count:
         raise table.error(
             "the frequencies do not fit the modes", found=f"{len(mode)} lines", expected=f"{count} modes"
         )
@@ -180,22 +180,6 @@ def read_frequencies(path: Path, count: int) -> tuple[Array, Array | None]:
 def _mass_normalised(path: Path) -> bool:
     table = Table(path)
     return "mass_normalised" in table.columns and bool(table.numbers("mass_normalised").all())
-
-
-def _mode_count(table: Table, mode: Array) -> int:
-    """Number of modes, which must be numbered 1, 2, 3 …"""
-    numbers = np.unique(mode)
-    wrong = numbers != np.arange(1, len(numbers) + 1)
-    if wrong.any():
-        number = numbers[np.argmax(wrong)]
-        line = table.line_numbers[int(np.argmax(mode == number))]
-        raise table.error(
-            "modes are not numbered 1, 2, 3 …",
-            line,
-            found=f"mode {number}",
-            expected=f"mode {int(np.argmax(wrong)) + 1}",
-        )
-    return len(numbers)
 
 
 def write(path: str | os.PathLike[str], mesh: Mesh, modes: ModeSet | None, progress: Progress = SILENT) -> None:

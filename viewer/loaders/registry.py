@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import importlib
 import os
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import replace
 from pathlib import Path
 from types import ModuleType
@@ -13,9 +13,12 @@ from typing import Any
 from viewer.errors import HingelightError, LoadError
 from viewer.jobs import SILENT, Progress
 from viewer.loaders.raw_data import RawMesh, RawModes, ReadReport, finish_mesh, finish_modes
+from viewer.loaders.raw_tests import finish_test
+from viewer.loaders.test_runs import merge_runs
 from viewer.loaders.vtu_xml import OtherReaderNeeded
 from viewer.model.mesh import Mesh
 from viewer.model.modes import ModeSet
+from viewer.model.testset import TestSet
 
 # Modules with SUFFIXES, read_mesh(path, progress), read_modes(path, progress) and perhaps write(path, mesh, modes,
 # progress). They are imported when their suffix turns up. Plug-ins come after them, formats of the worker last.
@@ -38,6 +41,8 @@ _OWN = {
     ".exo": "exodus_files",
     ".ex2": "exodus_files",
 }
+# Modules with read_runs(path, progress) for test sets.
+_TESTS = {".csv": "test_tables", ".unv": "test_universal", ".uff": "test_universal"}
 _WRITTEN = (".vtu", ".vtkhdf", ".npz", ".h5", ".hdf5", ".csv", ".unv", ".uff")
 _WORKER = "meshio_files"
 # First bytes that give a container away, whatever the suffix says; some formats come in either container.
@@ -87,6 +92,34 @@ def read_modes(
         return finish_modes(raw, mesh, file, length_unit)
 
     return _guarded(path, work)
+
+
+def read_test(
+    path: str | os.PathLike[str] | Sequence[str | os.PathLike[str]],
+    length_unit: float | None = None,
+    progress: Progress = SILENT,
+) -> TestSet:
+    """Read a test set from a universal file or a set of tables; of several, which are runs of one test, merge them.
+
+    ``length_unit`` metres per unit of length of the points; None where the files state it. The set is named after
+    the (first) file. Raises ``LoadError``.
+    """
+    files = [path] if isinstance(path, str | os.PathLike) else list(path)
+    runs = [run for file in files for run in _guarded(file, lambda p: _runs(p, length_unit, progress))]
+    return _guarded(files[0], lambda _: merge_runs(runs))
+
+
+def _runs(file: Path, length_unit: float | None, progress: Progress) -> list[TestSet]:
+    suffix = file.suffix.lower()
+    progress.tick(f"reading {file.name}")
+    if suffix not in _TESTS:
+        raise LoadError(
+            "unknown format of a test",
+            file=file,
+            found=suffix or "no suffix",
+            expected=f"one of: {', '.join(_TESTS)}",
+        )
+    return [finish_test(raw, file, length_unit) for raw in _module(_TESTS[suffix]).read_runs(file, progress)]
 
 
 def write_interchange(
@@ -163,9 +196,13 @@ def _guarded(path: str | os.PathLike[str], work: Callable[[Path], Any]) -> Any:
         ) from error
 
 
+def _is_set_of_tables(file: Path) -> bool:
+    return _module("csv_tables").has_tables(file) or _module("test_tables").set_exists(file)
+
+
 def _check_file(file: Path) -> None:
-    if file.suffix.lower() == ".csv" and not file.exists() and _module("csv_tables").has_tables(file):
-        return  # a set of tables is named by what their names have in common
+    if file.suffix.lower() == ".csv" and not file.exists() and _is_set_of_tables(file):
+        return  # named by what the names of its tables have in common
     if file.is_dir():
         raise LoadError("is a folder", expected="a file", do="name a file in it")
     if not file.exists():

@@ -16,6 +16,7 @@ from viewer.model.arrays import Array
 
 _DELIMITERS = (";", "\t", "|", ",")
 _LARGEST_FILE = 2_000_000_000
+_WORDS = ("kind", "point", "from", "to", "direction")  # columns in which a mark is no decimal mark
 
 
 class Table:
@@ -44,7 +45,7 @@ class Table:
         twice = next((name for i, name in enumerate(names) if name in names[:i]), None)
         if twice is not None:
             raise self.error(f"two columns are called '{twice}'", self.line_numbers[0])
-        del self.line_numbers[0]
+        self.header_line = self.line_numbers.pop(0)
         for row, line in zip(rows[1:], self.line_numbers, strict=True):
             if len(row) != len(names):
                 raise self.error(
@@ -70,6 +71,7 @@ class Table:
             if name not in self.columns:
                 raise self.error(
                     f"column '{name}' is missing",
+                    self.header_line,
                     found=", ".join(self.columns) or "no columns",
                     expected=", ".join(names),
                 )
@@ -109,6 +111,20 @@ class Table:
                 ) from None
             return values.astype(np.int64)
 
+    def count_of_modes(self, mode: Array) -> int:
+        """Number of modes in the column ``mode``, which must number them 1, 2, 3 …"""
+        numbers = np.unique(mode)
+        wrong = numbers != np.arange(1, len(numbers) + 1)
+        if wrong.any():
+            number = numbers[np.argmax(wrong)]
+            raise self.error(
+                "modes are not numbered 1, 2, 3 …",
+                self.line_numbers[int(np.argmax(mode == number))],
+                found=f"mode {number}",
+                expected=f"mode {int(np.argmax(wrong)) + 1}",
+            )
+        return len(numbers)
+
     @property
     def decimal_comma(self) -> bool:
         """Whether numbers have a decimal comma, from all fields together."""
@@ -120,7 +136,7 @@ class Table:
         number = re.compile(r"[+-]?[\d.,]+([eE][+-]?\d+)?")
         comma = point = None
         for name, texts in self.columns.items():
-            if name == "kind":
+            if name in _WORDS:
                 continue
             for text, line in zip(texts, self.line_numbers, strict=True):
                 if ("," in text or "." in text) and number.fullmatch(text):

@@ -56,7 +56,7 @@ def read_mesh(path: Path, progress: Progress = SILENT) -> RawMesh:
         listed = ", ".join(f"{n} of descriptor {d} with {c} nodes" for (d, c), n in unknown.items())
         warnings.append(f"elements left out, their kind is not known here: {listed}")
     if not blocks and parts.trace_lines:
-        blocks = [_lines(parts, node_ids)]
+        blocks = [RawBlock(KINDS["line2"].name, strokes(parts, node_ids))]
         notes.append("the file has no elements: its trace lines are shown as lines")
     raw = RawMesh(points, blocks, node_ids, notes=notes, warnings=warnings)
     raw.node_groups, raw.cell_groups = _groups(parts, node_ids, blocks)
@@ -114,7 +114,7 @@ def mode_results(parts: Universal) -> list[ResultData]:
 
 def part_points(parts: Universal) -> tuple[Array, Array]:
     """Labels (n,) and points (n, 3) of all nodes in the part's system, in the file's unit. Raises ``LoadError``."""
-    chosen = _newest(parts)
+    chosen = newest_nodes(parts)
     if not chosen:
         others = ", ".join(f"{number} ({times} times)" for number, times in parts.left_out.items())
         raise LoadError(
@@ -156,7 +156,7 @@ def rows_of(labels: Array, known: Array) -> tuple[Array, Array]:
     return rows, known[rows] == labels
 
 
-def _newest(parts: Universal) -> list[Nodes]:
+def newest_nodes(parts: Universal) -> list[Nodes]:
     for number in (2411, 781, 15):
         chosen = [section for section in parts.nodes if section.number == number and len(section.labels)]
         if chosen:
@@ -186,18 +186,22 @@ def _blocks(parts: Universal, node_ids: Array) -> tuple[list[RawBlock], dict[tup
     return blocks, unknown
 
 
-def _lines(parts: Universal, node_ids: Array) -> RawBlock:
-    pairs = [pair for line in parts.trace_lines for pair in line.strokes()]
-    labels = np.unique(np.sort(np.reshape(pairs, (-1, 2)).astype(np.int64), axis=1), axis=0)
-    rows, there = rows_of(labels, node_ids)
-    if not there.all():
-        raise LoadError(
-            "a trace line names a node that does not exist",
-            file=parts.path,
-            found=f"node {labels[~there][0]}",
-            expected="a node of the file",
-        )
-    return RawBlock(KINDS["line2"].name, rows)
+def strokes(parts: Universal, node_ids: Array) -> Array:
+    """(k, 2) rows of nodes that trace lines join, each pair once. Raises ``LoadError``."""
+    found = [np.empty((0, 2), np.int64)]
+    for line in parts.trace_lines:
+        labels = np.reshape(line.strokes(), (-1, 2)).astype(np.int64)
+        rows, there = rows_of(labels, node_ids)
+        if not there.all():
+            raise LoadError(
+                "a trace line names a node that does not exist",
+                file=parts.path,
+                place=line.place,
+                found=f"node {labels[~there][0]}",
+                expected="a node of the file",
+            )
+        found.append(rows)
+    return np.unique(np.sort(np.concatenate(found), axis=1), axis=0)
 
 
 def _groups(parts: Universal, node_ids: Array, blocks: list[RawBlock]) -> tuple[dict[str, Array], dict[str, Array]]:
@@ -217,10 +221,10 @@ def _remarks(parts: Universal) -> tuple[list[str], list[str]]:
     if parts.left_out:
         listed = ", ".join(f"{number} ({times} times)" for number, times in parts.left_out.items())
         notes.append(f"data sets left out: {listed}")
-    systems = {label for s in _newest(parts) for label in np.unique(s.systems).tolist() if s.number != 2411}
+    systems = {label for s in newest_nodes(parts) for label in np.unique(s.systems).tolist() if s.number != 2411}
     if any(label in parts.frames and parts.frames[label].kind != "cartesian" for label in systems):
         notes.append("angles of cylindrical and spherical coordinates were taken as degrees")
-    local = {label for section in _newest(parts) for label in np.unique(section.moves_in).tolist()}
+    local = {label for section in newest_nodes(parts) for label in np.unique(section.moves_in).tolist()}
     local = {label for label in local if label in parts.frames and _is_turned(parts, label)}
     if local:
         listed = ", ".join(str(label) for label in sorted(local))
@@ -239,9 +243,9 @@ def _is_turned(parts: Universal, label: int) -> bool:
 def _nodes_of_modes(parts: Universal, found: list[ResultData]) -> Array:
     """Labels of all nodes: those of the file in its order, then those that only the shapes name."""
     in_results = np.unique(np.concatenate([item.labels for item in found]))
-    if not _newest(parts):
+    if not newest_nodes(parts):
         return found[0].labels if len(found[0].labels) == len(in_results) else in_results
-    labels = np.concatenate([section.labels for section in _newest(parts)])
+    labels = np.concatenate([section.labels for section in newest_nodes(parts)])
     return np.concatenate([labels, np.setdiff1d(in_results, labels)])
 
 

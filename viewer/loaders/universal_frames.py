@@ -36,6 +36,23 @@ class Frame:
         """(n, 3) points in the part's system of ``coordinates`` (n, 3) in this one."""
         return self.origin + self._straight(np.asarray(coordinates, float)) @ self.axes
 
+    def directions(self, points: Array) -> Array:
+        """(n, 3, 3) unit vectors, one a row, in which the first, second and third coordinate grow at ``points``
+        (n, 3): all in the part's system."""
+        if self.kind == "cartesian":
+            return np.broadcast_to(self.axes, (len(points), 3, 3))
+        local = (np.asarray(points, float) - self.origin) @ self.axes.T
+        flat = np.hypot(local[:, 0], local[:, 1])
+        turn, tilt = np.arctan2(local[:, 1], local[:, 0]), np.arctan2(flat, local[:, 2])
+        zero, one = np.zeros(len(points)), np.ones(len(points))
+        out = np.stack([np.cos(turn), np.sin(turn), zero], axis=-1)
+        around = np.stack([-np.sin(turn), np.cos(turn), zero], axis=-1)
+        up = np.stack([zero, zero, one], axis=-1)
+        if self.kind == "cylindrical":
+            return np.stack([out, around, up], axis=1) @ self.axes
+        sine, cosine = np.sin(tilt)[:, None], np.cos(tilt)[:, None]
+        return np.stack([sine * out + cosine * up, around, cosine * out - sine * up], axis=1) @ self.axes
+
     def _straight(self, given: Array) -> Array:
         if self.kind == "cartesian":
             return given

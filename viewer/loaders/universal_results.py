@@ -41,6 +41,7 @@ class ResultData:
     freq_hz     Hz: as stated, of complex modes |λ| / 2π with the eigenvalue λ in rad/s
     damping     ratio to critical: viscous as stated, else half the hysteretic one; of complex modes −Re λ / |λ|
     modal_mass  as stated, 0 when not
+    entries     line of the file at which the first entry stands, and how many lines each has
     """
 
     number: int
@@ -55,10 +56,15 @@ class ResultData:
     damping: float
     modal_mass: float
     titles: tuple[str, ...]
+    entries: tuple[int, int] = (0, 1)
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "labels", frozen(self.labels, np.int64, shape=(len(self.values),)))
         object.__setattr__(self, "values", frozen(self.values, shape=(None, None)))
+
+    def place_of(self, row: int) -> str:
+        """Where the entry in ``row`` stands, for messages."""
+        return f"line {self.entries[0] + row * self.entries[1]} (data set {self.number})"
 
     @property
     def is_mode(self) -> bool:
@@ -86,9 +92,9 @@ def result_55(records: Records) -> ResultData:
     else:
         freq, mass = _at(real, 0), _at(real, 1)
         damping = _ratio(_at(real, 2), _at(real, 3)) if analysis == NORMAL_MODE else 0.0
-    labels, values = _entries(records, count, is_complex, (10,), 13)
+    labels, values, entries = _entries(records, count, is_complex, (10,), 13)
     return ResultData(
-        55, _place(records), AT_NODES, analysis, quantity, labels, values, mode, freq, damping, mass, titles
+        55, _place(records), AT_NODES, analysis, quantity, labels, values, mode, freq, damping, mass, titles, entries
     )
 
 
@@ -108,12 +114,12 @@ def result_2414(records: Records) -> ResultData:
         freq, damping = _of_eigenvalue(records, real[6], real[7])
     else:
         freq, damping = real[1], _ratio(real[4], real[5])
-    labels, values = np.empty(0, np.int64), np.empty((0, count))
+    labels, values, entries = np.empty(0, np.int64), np.empty((0, count)), (0, 1)
     if location in _LOCATIONS:
         heads = (10,) if location == AT_NODES else (10, 10)
-        labels, values = _entries(records, count, is_complex, heads, 25 if data_type in (4, 6) else 13)
+        labels, values, entries = _entries(records, count, is_complex, heads, 25 if data_type in (4, 6) else 13)
     return ResultData(
-        2414, place, location, analysis, quantity, labels, values, whole[5], freq, damping, real[3], titles
+        2414, place, location, analysis, quantity, labels, values, whole[5], freq, damping, real[3], titles, entries
     )
 
 
@@ -147,8 +153,9 @@ def _of_eigenvalue(records: Records, real: float, imaginary: float) -> tuple[flo
 
 def _entries(
     records: Records, count: int, is_complex: bool, heads: tuple[int, ...], width: int
-) -> tuple[Array, Array]:
-    """Labels and values: a line with the label, then ``count`` numbers (pairs when complex), over and over."""
+) -> tuple[Array, Array, tuple[int, int]]:
+    """Labels, values and where they stand: a line with the label, then ``count`` numbers (pairs when complex), over
+    and over."""
     if not 1 <= count <= 1000:
         raise records.error("the number of values is beyond reason", found=str(count), expected="1 to 1000")
     numbers = count * (2 if is_complex else 1)
@@ -176,4 +183,4 @@ def _entries(
     values = records.values([rows[1 + i :: step] for i in range(step - 1)], numbers, per_line, width)
     if is_complex:
         values = values[:, ::2] + 1j * values[:, 1::2]
-    return labels[:, 0], values
+    return labels[:, 0], values, (records.first + rows.start, step)

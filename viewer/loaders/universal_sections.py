@@ -39,18 +39,24 @@ class Units:
 @dataclass(frozen=True, eq=False)
 class Nodes:
     """Nodes of one data set: ``labels`` (n,), ``points`` (n, 3) in their ``systems`` (n,), ``moves_in`` (n,) the
-    system of their displacements. Points of data set 2411 are in the part's system whatever ``systems`` says."""
+    system of their displacements. Points of data set 2411 are in the part's system whatever ``systems`` says.
+    ``line`` of the file at which the first stands."""
 
     number: int
     labels: Array
     systems: Array
     moves_in: Array
     points: Array
+    line: int = 0
 
     def __post_init__(self) -> None:
         for name in ("labels", "systems", "moves_in"):
             object.__setattr__(self, name, frozen(getattr(self, name), np.int64, shape=(len(self.points),)))
         object.__setattr__(self, "points", frozen(self.points, np.float64, shape=(None, 3)))
+
+    def place(self, row: int) -> str:
+        """Where the node in ``row`` stands, for messages."""
+        return f"line {self.line + row * (1 if self.number == 15 else 2)} (data set {self.number})"
 
 
 @dataclass(frozen=True, eq=False)
@@ -73,6 +79,7 @@ class TraceLine:
     number: int
     name: str
     nodes: tuple[int, ...]
+    place: str = ""  # in the file, for messages
 
     def strokes(self) -> list[tuple[int, int]]:
         """Pairs of labels to join."""
@@ -193,7 +200,7 @@ def _nodes(records: Records) -> Nodes:
         raise records.error(
             "a node's label is not above zero", row if number == 15 else 2 * row, found=str(heads[row, 0])
         )
-    return Nodes(number, heads[:, 0], heads[:, 1], heads[:, 2], points)
+    return Nodes(number, heads[:, 0], heads[:, 1], heads[:, 2], points, records.first)
 
 
 def _elements(records: Records, found: dict[tuple[int, int], tuple[list[int], list[list[int]]]]) -> None:
@@ -221,7 +228,7 @@ def _trace_line(records: Records) -> TraceLine:
         nodes += records.integers(row, (10,) * (-(-len(line) // 10) if touching else len(words)))[0].tolist()
     if len(nodes) < count:
         raise records.error("the data set ends inside a trace line", found=f"{len(nodes)} nodes", expected=str(count))
-    return TraceLine(number, name, tuple(nodes))
+    return TraceLine(number, name, tuple(nodes), f"line {records.first} (data set 82)")
 
 
 def _groups(records: Records) -> list[Group]:

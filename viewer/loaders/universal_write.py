@@ -5,6 +5,7 @@ from __future__ import annotations
 
 import os
 from collections.abc import Callable, Iterable, Sequence
+from typing import TextIO
 
 import numpy as np
 
@@ -12,31 +13,39 @@ from viewer.errors import LoadError
 from viewer.jobs import SILENT, Progress, atomic_path
 from viewer.loaders.universal_cells import DESCRIPTORS, ORDER
 from viewer.loaders.universal_results import COMPLEX_MODES, DISPLACEMENT, NORMAL_MODE
+from viewer.model.arrays import Array
 from viewer.model.mesh import Mesh
 from viewer.model.modes import ModeSet
 
-_LARGEST_LABEL = 10**9  # ten columns, one of them a blank
+LARGEST_LABEL = 10**9  # ten columns, one of them a blank
+_UNITS = {1.0: (1, "SI: Meter (newton)"), 1e-3: (10, "MN: mm (newton)")}  # codes from the data set's description
 
 
 def write(path: str | os.PathLike[str], mesh: Mesh, modes: ModeSet | None, progress: Progress = SILENT) -> None:
     """Atomic. Raises ``LoadError`` for kinds of cells and ids that the format has no place for."""
     _check(path, mesh)
     with atomic_path(path) as part, part.open("w", encoding="latin-1", errors="replace", newline="\n") as stream:
-
-        def data_set(number: int, lines: Iterable[str]) -> None:
-            stream.write(f"    -1\n{number:6d}\n")
-            stream.writelines(f"{line}\n" for line in lines)
-            stream.write("    -1\n")
-
-        data_set(164, [f"{1:10d}{'SI: Meter (newton)':<20}{2:10d}", _long([1, 1, 1]), _long([273.15])])
-        data_set(2411, _nodes(mesh))
-        data_set(2412, _elements(mesh))
+        put_data_set(stream, 164, unit_lines(1.0))
+        put_data_set(stream, 2411, _nodes(mesh))
+        put_data_set(stream, 2412, _elements(mesh))
         if mesh.node_groups or mesh.cell_groups:
-            data_set(2467, _groups(mesh))
+            put_data_set(stream, 2467, _groups(mesh))
         if modes is not None:
             for index in range(modes.count):
                 progress.tick(f"writing {os.path.basename(path)}", index, modes.count)
-                data_set(55, _mode(modes, index))
+                put_data_set(stream, 55, _mode(modes, index))
+
+
+def put_data_set(stream: TextIO, number: int, lines: Iterable[str]) -> None:
+    stream.write(f"    -1\n{number:6d}\n")
+    stream.writelines(f"{line}\n" for line in lines)
+    stream.write("    -1\n")
+
+
+def unit_lines(length_unit: float) -> Iterable[str]:
+    """Lines of a data set 164: lengths in units of ``length_unit`` metres, forces in newtons."""
+    code, words = _UNITS.get(length_unit, (9, "USER_DEFINED"))
+    return [f"{code:10d}{words:<20}{2:10d}", long_line([1 / length_unit, 1, 1]), long_line([273.15])]
 
 
 def _check(path: object, mesh: Mesh) -> None:
@@ -49,19 +58,19 @@ def _check(path: object, mesh: Mesh) -> None:
                 do="write .vtu or .npz",
             )
     for word, ids in (("node", mesh.node_ids), ("element", mesh.cell_ids)):
-        if len(ids) and (ids.min() < 1 or ids.max() >= _LARGEST_LABEL):
+        if len(ids) and (ids.min() < 1 or ids.max() >= LARGEST_LABEL):
             raise LoadError(
                 f"{word} ids do not fit a universal file",
                 file=path,
                 found=f"{ids.min()} to {ids.max()}",
-                expected=f"1 to {_LARGEST_LABEL - 1}",
+                expected=f"1 to {LARGEST_LABEL - 1}",
             )
 
 
 def _nodes(mesh: Mesh) -> Iterable[str]:
     for label, point in zip(mesh.node_ids.tolist(), mesh.points.tolist(), strict=True):
         yield f"{label:10d}{1:10d}{1:10d}{11:10d}"
-        yield _long(point)
+        yield long_line(point)
 
 
 def _elements(mesh: Mesh) -> Iterable[str]:
@@ -69,59 +78,68 @@ def _elements(mesh: Mesh) -> Iterable[str]:
         count = block.nodes.shape[1]
         back = np.argsort(ORDER.get(block.kind, range(count)))
         for label, nodes in zip(block.ids.tolist(), mesh.node_ids[block.nodes[:, back]].tolist(), strict=True):
-            yield _whole([label, DESCRIPTORS[block.kind], 1, 1, 7, count])
+            yield whole_line([label, DESCRIPTORS[block.kind], 1, 1, 7, count])
             if block.kind.startswith("line"):
-                yield _whole([0, 1, 1])
-            yield from _in_lines(nodes, 8, _whole)
+                yield whole_line([0, 1, 1])
+            yield from in_lines(nodes, 8, whole_line)
 
 
 def _groups(mesh: Mesh) -> Iterable[str]:
     found = [(name, 7, mesh.node_ids[rows]) for name, rows in mesh.node_groups.items()]
     found += [(name, 8, mesh.cell_ids[rows]) for name, rows in mesh.cell_groups.items()]
     for number, (name, kind, labels) in enumerate(found, 1):
-        yield _whole([number, 0, 0, 0, 0, 0, 0, len(labels)])
+        yield whole_line([number, 0, 0, 0, 0, 0, 0, len(labels)])
         yield " ".join(name.split())[:80] or "none"
-        yield from _in_lines([x for label in labels.tolist() for x in (kind, label, 0, 0)], 8, _whole)
+        yield from in_lines([x for label in labels.tolist() for x in (kind, label, 0, 0)], 8, whole_line)
 
 
 def _mode(modes: ModeSet, index: int) -> Iterable[str]:
     shape, turned = modes.shape(index), modes.rotations(index)
     values = shape if turned is None else np.hstack([shape, turned])
-    freq, ratio = float(modes.freq_hz[index]), 0.0 if modes.damping is None else float(modes.damping[index])
-    is_complex, count = modes.is_complex, values.shape[1]
+    ratio = 0.0 if modes.damping is None else float(modes.damping[index])
+    mass = 1.0 if modes.normalisation == "mass" else 0.0
+    return mode_lines(index + 1, modes.node_ids, values, float(modes.freq_hz[index]), ratio, mass)
+
+
+def mode_lines(
+    number: int, labels: Array, values: Array, freq: float, ratio: float, mass: float = 0.0
+) -> Iterable[str]:
+    """Lines of a data set 55: mode ``number`` with ``values`` (n, 3 or 6) at the nodes ``labels``, a complex mode
+    when they are complex; ``freq`` in Hz, damping ``ratio``, modal ``mass`` (0: not known)."""
+    is_complex, count = np.iscomplexobj(values), values.shape[1]
     yield "Mode shape"
     yield from ["NONE"] * 3
-    yield f"MODE SAME {index + 1:10d}FREQUENCY {freq:13.5E}"
+    yield f"MODE SAME {number:10d}FREQUENCY {freq:13.5E}"
     analysis = COMPLEX_MODES[0] if is_complex else NORMAL_MODE
-    yield _whole([1, analysis, 2 if count == 3 else 3, DISPLACEMENT, 5 if is_complex else 2, count])
+    yield whole_line([1, analysis, 2 if count == 3 else 3, DISPLACEMENT, 5 if is_complex else 2, count])
     if is_complex:
         omega = 2 * np.pi * freq
-        yield _whole([2, 6, 1, index + 1])
-        yield _short([-ratio * omega, omega * np.sqrt(max(0.0, 1 - ratio**2)), 0, 0, 0, 0])
+        yield whole_line([2, 6, 1, number])
+        yield short_line([-ratio * omega, omega * np.sqrt(max(0.0, 1 - ratio**2)), 0, 0, 0, 0])
         pairs = np.empty((len(values), 2 * count))
         pairs[:, ::2], pairs[:, 1::2] = values.real, values.imag
         values = pairs
     else:
-        yield _whole([2, 4, 1, index + 1])
-        yield _short([freq, 1.0 if modes.normalisation == "mass" else 0.0, ratio, 0])
-    for label, row in zip(modes.node_ids.tolist(), values.tolist(), strict=True):
+        yield whole_line([2, 4, 1, number])
+        yield short_line([freq, mass, ratio, 0])
+    for label, row in zip(labels.tolist(), values.tolist(), strict=True):
         yield f"{label:10d}"
-        yield from _in_lines(row, 6, _short)
+        yield from in_lines(row, 6, short_line)
 
 
-def _in_lines(values: Sequence, per_line: int, line: Callable[[Sequence], str]) -> Iterable[str]:
+def in_lines(values: Sequence, per_line: int, line: Callable[[Sequence], str]) -> Iterable[str]:
     return (line(values[i : i + per_line]) for i in range(0, len(values), per_line))
 
 
-def _whole(values: Sequence[int]) -> str:
+def whole_line(values: Sequence[int]) -> str:
     return "".join(f"{value:10d}" for value in values)
 
 
-def _short(values: Sequence[float]) -> str:
+def short_line(values: Sequence[float]) -> str:
     return "".join(_fitting(value, 13, 5) for value in values)
 
 
-def _long(values: Sequence[float]) -> str:
+def long_line(values: Sequence[float]) -> str:
     return "".join(_fitting(value, 25, 16).replace("E", "D") for value in values)
 
 
