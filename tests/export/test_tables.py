@@ -128,3 +128,8 @@ def test_empty_and_bad_input(tmp_path):
     with pytest.raises(TypeError):
         json_text([{"a": [1]}])
     assert not list(tmp_path.iterdir())
+
+
+def test_a_small_share_is_not_printed_as_nothing():
+    table = text_table([{"mode": m, "strain_percent": v} for m, v in enumerate((0.0, 0.03, -0.03, 0.06, 12.0), 1)])
+    assert [cells[1] for cells in table.cells] == ["0.0", "<0.1", ">-0.1", "0.1", "12.0"]

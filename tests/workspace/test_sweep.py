@@ -17,7 +17,7 @@ from viewer.model.design import LumpedMass, Selector, Spring, Support
 from viewer.model.variation import Variation
 from viewer.workspace import Workspace
 from viewer.workspace.store import Cache
-from viewer.workspace.sweep import renamed, sweep
+from viewer.workspace.sweep import sweep
 
 EDGES = ("x0", "x1", "y0", "y1")
 
@@ -121,7 +121,8 @@ def test_what_is_not_there_cannot_be_swept(variation):
 def test_names_follow_their_modes():
     model = sprung().with_(mode_names={1: "nods", 2: "twists"})
     found = swept(model, Variation("thickness", "*"), (0.002, 0.0021), 3)
-    assert renamed(found.modes[1], found, 1) == {1: "nods", 2: "twists"}
+    names = {line.modes[1]: line.name for line in found.lineage.lines if line.name}
+    assert names == {1: "nods", 2: "twists"}
 
 
 def test_a_stopped_sweep_goes_on_where_it_was(tmp_path, monkeypatch):

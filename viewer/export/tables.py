@@ -160,8 +160,16 @@ def _text(value: Any, unit: str) -> str:
     if isinstance(value, int):
         return str(value)
     if unit in _DECIMALS:
-        return f"{value:.{_DECIMALS[unit]}f}"
+        return _fixed(value, _DECIMALS[unit])
     return rounded(value)
+
+
+def _fixed(value: float, decimals: int) -> str:
+    """``decimals`` places; what would print as nothing though it is something is said to be less than the last."""
+    least = 0.1**decimals
+    if 0 < abs(value) < least / 2:
+        return f"<{least:.{decimals}f}" if value > 0 else f">-{least:.{decimals}f}"
+    return f"{value:.{decimals}f}"
 
 
 def rounded(value: float, digits: int = _DIGITS) -> str:

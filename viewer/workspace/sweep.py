@@ -154,9 +154,3 @@ def _between(encounter: Encounter) -> list[float]:
     low, high = encounter.between
     around = [encounter.at + k * encounter.step for k in range(-_INSERTED // 2, _INSERTED // 2 + 1)]
     return [v for v in around if low < v < high]
-
-
-def renamed(modes: ModeSet, sweep_: Sweep, step: int) -> dict[int, str]:
-    """Names of the modes at a step, carried over from the first one along their lineages."""
-    names = {line.modes[step]: line.name for line in sweep_.lineage.lines if line.name and line.modes[step]}
-    return {number: name for number, name in sorted(names.items()) if number <= modes.count}
