@@ -15,6 +15,7 @@ from viewer.insight.hinges.field import Field, make_field
 from viewer.insight.hinges.finding import Hinge, HingeFinding
 from viewer.insight.hinges.flaps import find_flaps, regions
 from viewer.insight.hinges.gates import confidence, is_joint, label, score
+from viewer.insight.hinges.moment import moment_through
 from viewer.insight.places import place_of
 from viewer.insight.smoothing import needs_smoothing, noise_estimate, smoothed
 from viewer.jobs import SILENT, Progress
@@ -26,6 +27,7 @@ from viewer.model.design import Design
 from viewer.model.modes import ArrayShapes, ModeSet
 
 _CURVE_POINTS = 17
+_ONE_SENSE = 0.5  # share of the squared turn that is the mean turn, from which a band has one stiffness
 _SAME = 0.3  # share of the smaller band's energy in common from which two candidates are one
 
 
@@ -73,8 +75,11 @@ def find_hinges(
     )
     drafts = _chosen(field, progress)
     region = regions(field, [draft.cells for draft, _, _ in drafts])
-    absolute = None if given.relative else whole
-    hinges = tuple(_hinge(field, region, i + 1, *found, absolute) for i, found in enumerate(drafts))
+    stiffness = [
+        None if given.relative else stiffness_of(design, draft, moved, turned, whole, given.formulations)
+        for draft, _, _ in drafts
+    ]
+    hinges = tuple(_hinge(field, region, i + 1, *drafts[i], stiffness[i]) for i in range(len(drafts)))
     flaps = find_flaps(field, hinges, region)
     where = lambda cells: place_of(design.mesh, cells, given.volumes)  # noqa: E731
     hinges = tuple(replace(hinge, place=where(hinge.cells)) for hinge in hinges)
@@ -175,7 +180,7 @@ def _apart(field: Field, one: Draft, other: Draft) -> bool:
 
 
 def _hinge(
-    field: Field, region: Array, number: int, draft: Draft, worth: float, gate: str, whole: float | None
+    field: Field, region: Array, number: int, draft: Draft, worth: float, gate: str, stiffness: float | None
 ) -> Hinge:
     curve, joint = draft.frame.curve, is_joint(draft)
     straight = isinstance(curve, Line)
@@ -206,7 +211,7 @@ def _hinge(
         length=draft.length,
         width=draft.width,
         fold=fold,
-        stiffness=None if whole is None else stiffness_of(draft, whole),
+        stiffness=stiffness,
         strain_share=draft.strain,
         volume_share=draft.volume,
         contrast=draft.contrast,
@@ -221,10 +226,16 @@ def _hinge(
     )
 
 
-def stiffness_of(draft: Draft, whole: float) -> float:
-    """N·m/rad: moment over turn. The energy is half of moment times the turn that the band's own cells show; the
-    edges turn more where the ends of a notch give way, too."""
-    return 2 * draft.strain * whole / (draft.bend**2 * float(np.clip(draft.inner, 0.3, 1.2)))
+def stiffness_of(
+    design: Design, draft: Draft, moved: Array, turned: Array | None, whole: float, formulations: tuple[str, ...]
+) -> float:
+    """N·m/rad: the moment that passes through the band over the mean turn of its edges. Where the turn changes its
+    sense along the line, or the moment cannot be told, 2U/θ² of the band's cells. ``whole`` J of all of them."""
+    if draft.even >= _ONE_SENSE:
+        moment = moment_through(design, draft, moved, turned, formulations)
+        if moment is not None:
+            return moment / (draft.bend * float(np.sqrt(draft.even)))
+    return 2 * draft.strain * whole / draft.bend**2
 
 
 def _regions_joined(field, region, draft, near_a, near_b):
