@@ -1,0 +1,125 @@
+"""Hammer tests of real articles with noise and with 0 to 3 faults that are known."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cache
+
+import numpy as np
+import scipy.sparse as sp
+
+from tests.faults.articles import ARTICLES, TESTED, design, real
+from viewer.model.arrays import Array
+from viewer.model.testset import Correction, Placement, TestSet
+
+POINTS = {"boom": 22, "fork": 18}
+NOISE = 0.02  # standard deviation, of the largest reading of the mode: alike in all channels
+KINDS = ("flip", "swap", "exchange", "elsewhere", "dead channel", "dead point")
+SEEN = 6.0  # a fault is detectable when it changes some reading of its point by that many times the noise (rms of modes)
+HERE = Placement(np.eye(3), np.zeros(3))
+
+
+@dataclass(frozen=True, eq=False)
+class Fault:
+    """What is wrong, as the correction that would put it right; ``change`` in noise levels."""
+
+    kind: str
+    correction: Correction
+    change: float
+
+    @property
+    def detectable(self) -> bool:
+        return self.change >= SEEN
+
+
+@dataclass(frozen=True, eq=False)
+class Case:
+    """A test with faults; ``right`` the same readings without faults, ``true`` without noise too (m, c)."""
+
+    part: str
+    seed: int
+    article: int
+    test: TestSet
+    right: TestSet
+    true: Array
+    sensing: sp.csr_array
+    faults: tuple[Fault, ...]
+
+
+@cache
+def nodes_of(part: str) -> Array:
+    """Nodes that carry a sensor: spread over the skin, each as far from the ones before as can be, the first at the
+    node farthest from the support."""
+    mesh = design(part).mesh
+    rows = mesh.skin.nodes
+    root = mesh.points[mesh.node_groups["root"]]
+    away = np.linalg.norm(mesh.points[rows][:, None] - root.mean(axis=0), axis=2).ravel()
+    free = rows[away > 0.1 * mesh.diagonal]
+    points = mesh.points[free]
+    chosen = [int(np.argmax(np.linalg.norm(points - root.mean(axis=0), axis=1)))]
+    distance = np.linalg.norm(points - points[chosen[0]], axis=1)
+    while len(chosen) < POINTS[part]:
+        chosen.append(int(distance.argmax()))
+        distance = np.minimum(distance, np.linalg.norm(points - points[chosen[-1]], axis=1))
+    return free[chosen]
+
+
+def case(part: str, seed: int, count: int | None = None, article: int | None = None) -> Case:
+    """``count`` faults at as many different points; None: seed modulo 4. The article goes by the seed too."""
+    rng = np.random.default_rng([seed, *part.encode()])
+    article = (seed // 4) % ARTICLES if article is None else article
+    mesh, modes, nodes = design(part).mesh, real(part, article), nodes_of(part)
+    p, m = len(nodes), TESTED[part]
+    moved = np.stack([modes.shape(i) for i in range(m)])
+    true = moved[:, nodes].reshape(m, 3 * p)
+    size = np.abs(true).max(axis=1)
+    true = true / size[:, None]
+    noise = NOISE * rng.standard_normal(true.shape)
+    columns = (3 * nodes[:, None] + np.arange(3)).ravel()
+    sensing = sp.csr_array((np.ones(3 * p), (np.arange(3 * p), columns)), shape=(3 * p, 3 * mesh.n_nodes))
+    right = TestSet(
+        name=f"{part} {seed}",
+        labels=tuple(str(i + 1) for i in range(p)),
+        points=mesh.points[nodes],
+        lines=np.empty((0, 2), int),
+        sensor=np.repeat(np.arange(p), 3),
+        directions=np.tile(np.eye(3), (p, 1)),
+        freq_hz=modes.freq_hz,
+        shapes=true + noise,
+    )
+    wrong, faults = true.copy(), []
+    free = list(range(p))
+    for _ in range(seed % 4 if count is None else count):
+        at = free.pop(int(rng.integers(len(free))))
+        other = free.pop(int(rng.integers(len(free))))
+        kind = str(rng.choice(KINDS))
+        rows, theirs = 3 * at + np.arange(3), 3 * other + np.arange(3)
+        label, axis = str(at + 1), int(rng.integers(3))
+        before = wrong.copy()
+        if kind == "flip":
+            wrong[:, rows[axis]] *= -1
+            fix = Correction("flip", label, "xyz"[axis])
+        elif kind == "swap":
+            one, two = sorted(rng.permutation(3)[:2])
+            wrong[:, [rows[one], rows[two]]] = wrong[:, [rows[two], rows[one]]]
+            fix = Correction("swap axes", label, "xyz"[one], "xyz"[two])
+        elif kind == "exchange":
+            wrong[:, rows], wrong[:, theirs] = before[:, theirs], before[:, rows]
+            fix = Correction("move", label, other=str(other + 1))
+        elif kind == "elsewhere":
+            skin = mesh.skin.nodes
+            node = int(skin[rng.integers(len(skin))])
+            wrong[:, rows] = moved[:, node] / size[:, None]
+            fix = Correction("move", label, position=tuple(mesh.points[node]))
+        elif kind == "dead channel":
+            wrong[:, rows[axis]] = 0.0
+            fix = Correction("leave out", label, "xyz"[axis])
+        else:
+            wrong[:, rows] = 0.0
+            fix = Correction("leave out", label)
+        if kind != "exchange":
+            free.append(other)
+        change = float(np.sqrt(((wrong - before) ** 2).mean(axis=0)).max() / NOISE)
+        faults.append(Fault(kind, fix, change))
+    # noise belongs to the recording: it stays where it is whatever was wrong
+    return Case(part, seed, article, right.with_(shapes=wrong + noise), right, true, sensing, tuple(faults))
