@@ -19,10 +19,11 @@ from viewer.scene import view
 from viewer.scene.forms import Piece
 from viewer.scene.marks import facing_pieces, standing_pieces
 from viewer.scene.picture import Body, Picture, View
+from viewer.scene.primitives import Box
 from viewer.scene.sheet import SheetPlan, note_height, plan_sheet
 from viewer.scene.surface import Surface, surface_of
 from viewer.scene.tokens import BASE_WIDTH, THEMES, rgb
-from viewer.stage.body_actors import BodyActors, DashedBody
+from viewer.stage.body_actors import BodyActors, DashedBody, GhostBody
 from viewer.stage.mark_actors import MarkActors
 from viewer.stage.sheet_actors import SheetActors
 from viewer.stage.windows import off_screen, pixels
@@ -62,7 +63,7 @@ class Stage:
         self.picture = picture
         self._build(known)
         if camera is not None:
-            self._aim(camera)
+            self.aim(camera)
 
     def draw(self, phase: float) -> None:
         """Move everything to ``phase`` (rad), without rendering."""
@@ -107,6 +108,11 @@ class Stage:
         scale = 2 * camera.GetParallelScale() / (bottom - top)
         return view.Camera(np.array(camera.GetFocalPoint()), right, up, toward, scale)
 
+    @property
+    def boxes(self) -> tuple[Box, ...]:
+        """The viewport of each body, sheet pixels."""
+        return self._boxes
+
     # ------------------------------------------------------------------ building
 
     def _build(self, known: dict[tuple[int, int], Surface]) -> None:
@@ -119,10 +125,10 @@ class Stage:
             picture, note_height(picture) if self._bare is None else 0.0, bare=self._bare is not None
         )
         self._lay_renderers()
-        self._aim(camera)
+        self.aim(camera)
         width = picture.width if self._bare is None else self._bare * BASE_WIDTH
         self._scale = self._window.GetSize()[0] / picture.width * width / BASE_WIDTH
-        self._bodies: list[BodyActors | DashedBody] = []
+        self._bodies: list[BodyActors | DashedBody | GhostBody] = []
         scale, surfaces = self._scale, self._surfaces
         if self._overlaid:
             theme = THEMES[picture.theme]
@@ -132,7 +138,8 @@ class Stage:
             self._bodies.append(DashedBody(pane, over, baseline, surfaces[0], scale, theme.baseline))
         else:
             for pane, body, surface in zip(self._panes, picture.bodies, surfaces, strict=True):
-                self._bodies.append(BodyActors(pane, picture, body, surface, scale))
+                make = GhostBody if body.form == "ghost" else BodyActors
+                self._bodies.append(make(pane, picture, body, surface, scale))
         self._marks = self._mark_actors(standing_pieces(picture))
         self._facing: list[MarkActors] = []
         self._faced = np.zeros(3)
@@ -194,7 +201,7 @@ class Stage:
         self.plotter.renderer.RemoveAllViewProps()
         self.plotter.renderer.SetViewport(0, 0, 1, 1)
 
-    def _aim(self, camera: view.Camera) -> None:
+    def aim(self, camera: view.Camera) -> None:
         """Point the shared camera; its clipping planes hold both extremes from any side."""
         low, high = view.shown_box(self.picture)
         radius = float(np.linalg.norm(high - low) + np.linalg.norm((high + low) / 2 - camera.focus)) or 1.0
