@@ -11,6 +11,7 @@ from viewer.cli.lineage import lineage
 from viewer.cli.modes import modes
 from viewer.cli.pair import pair
 from viewer.cli.review import review
+from viewer.cli.show import show
 from viewer.cli.struts import struts
 
 app = typer.Typer(
@@ -21,7 +22,7 @@ app = typer.Typer(
     pretty_exceptions_enable=False,
     context_settings={"help_option_names": ["-h", "--help"]},
 )
-for command in (review, modes, hinges, struts, pair, lineage, animate, check):
+for command in (review, show, modes, hinges, struts, pair, lineage, animate, check):
     app.command()(command)
 
 

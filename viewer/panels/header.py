@@ -1,0 +1,84 @@
+"""The header: what is open, which design, how designs are compared, and the one menu."""
+
+from __future__ import annotations
+
+from PySide6.QtCore import Qt, Signal
+from PySide6.QtWidgets import QButtonGroup, QFrame, QHBoxLayout, QLabel, QMenu, QPushButton, QToolButton, QWidget
+
+from viewer.panels.theme import HEADER, MARGIN
+
+LAYOUT_WORDS = {"side": "side by side", "overlay": "overlay", "difference": "difference"}
+
+
+class HeaderPanel(QWidget):
+    """``design_chosen(name)``, ``layout_chosen(layout)``."""
+
+    design_chosen = Signal(str)
+    layout_chosen = Signal(str)
+
+    def __init__(self, menu: QMenu, parent: QWidget | None = None) -> None:
+        super().__init__(parent)
+        self.setObjectName("header")
+        self.setAttribute(Qt.WidgetAttribute.WA_StyledBackground)
+        self.setFixedHeight(HEADER)
+        self._title = QLabel("Hingelight", self)
+        self._title.setObjectName("title")
+        self._title.setTextInteractionFlags(Qt.TextInteractionFlag.NoTextInteraction)
+        self._segments = QFrame(self)
+        self._segments.setObjectName("segments")
+        self._segments.setAccessibleName("What is on the stage")
+        self._row = QHBoxLayout(self._segments)
+        self._row.setContentsMargins(3, 3, 3, 3)
+        self._row.setSpacing(2)
+        self._group = QButtonGroup(self)
+        self._group.setExclusive(True)
+        self._made: tuple[str, ...] | None = None
+        more = QToolButton(self)
+        more.setText("≡")
+        more.setAccessibleName("All commands")
+        more.setToolTip("All commands (F10)")
+        more.setPopupMode(QToolButton.ToolButtonPopupMode.InstantPopup)
+        more.setMenu(menu)
+        self.more = more
+        box = QHBoxLayout(self)
+        box.setContentsMargins(MARGIN, 0, 12, 0)
+        box.addWidget(more)
+        box.addSpacing(6)
+        box.addWidget(self._title, 1)
+        box.addWidget(self._segments)
+
+    def show_project(self, title: str, designs: tuple[str, ...], shown: str, layout: str, unsaved: bool) -> None:
+        """``shown``: the chosen design; ``unsaved``: names wait to be saved."""
+        self._title.setText(f"{title}{'  •' if unsaved else ''}")
+        self._title.setToolTip("names not saved yet (Ctrl+S)" if unsaved else "")
+        if designs != self._made:
+            self._make(designs)
+        key = f"design:{shown}" if layout == "single" else f"layout:{layout}"
+        for button in self._group.buttons():
+            button.setChecked(button.property("key") == key)
+        self._segments.setVisible(bool(designs))
+
+    def _make(self, designs: tuple[str, ...]) -> None:
+        for button in self._group.buttons():
+            self._group.removeButton(button)
+            self._row.removeWidget(button)
+            button.deleteLater()
+        self._made = designs
+        for name in designs:
+            self._add(name, f"design:{name}", f"Design {name}")
+        if len(designs) > 1:
+            for layout, words in LAYOUT_WORDS.items():
+                self._add(words, f"layout:{layout}", f"Compare designs: {words}")
+
+    def _add(self, words: str, key: str, spoken: str) -> None:
+        button = QPushButton(words, self._segments)
+        button.setCheckable(True)
+        button.setProperty("key", key)
+        button.setAccessibleName(spoken)
+        button.clicked.connect(self._clicked)
+        self._group.addButton(button)
+        self._row.addWidget(button)
+
+    def _clicked(self) -> None:
+        kind, _, name = str(self.sender().property("key")).partition(":")
+        (self.design_chosen if kind == "design" else self.layout_chosen).emit(name)
