@@ -182,5 +182,6 @@ def _entries(
         )
     values = records.values([rows[1 + i :: step] for i in range(step - 1)], numbers, per_line, width)
     if is_complex:
-        values = values[:, ::2] + 1j * values[:, 1::2]
+        parts, values = values, np.empty((len(values), count), complex)
+        values.real, values.imag = parts[:, ::2], parts[:, 1::2]  # infinities stay where they are
     return labels[:, 0], values, (records.first + rows.start, step)

@@ -18,7 +18,6 @@ from viewer.model.mesh import Mesh
 from viewer.model.modes import ModeSet
 
 LARGEST_LABEL = 10**9  # ten columns, one of them a blank
-_UNITS = {1.0: (1, "SI: Meter (newton)"), 1e-3: (10, "MN: mm (newton)")}  # codes from the data set's description
 
 
 def write(path: str | os.PathLike[str], mesh: Mesh, modes: ModeSet | None, progress: Progress = SILENT) -> None:
@@ -44,7 +43,7 @@ def put_data_set(stream: TextIO, number: int, lines: Iterable[str]) -> None:
 
 def unit_lines(length_unit: float) -> Iterable[str]:
     """Lines of a data set 164: lengths in units of ``length_unit`` metres, forces in newtons."""
-    code, words = _UNITS.get(length_unit, (9, "USER_DEFINED"))
+    code, words = (1, "SI: Meter (newton)") if length_unit == 1.0 else (9, "USER_DEFINED")
     return [f"{code:10d}{words:<20}{2:10d}", long_line([1 / length_unit, 1, 1]), long_line([273.15])]
 
 
