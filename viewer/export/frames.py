@@ -8,7 +8,6 @@ import numpy as np
 
 from viewer.jobs import SILENT, Progress
 from viewer.model.arrays import Array
-from viewer.scene.motion import is_standing
 from viewer.scene.picture import Picture
 from viewer.scene.tokens import FRAMES
 
@@ -23,7 +22,7 @@ def source_frames(picture: Picture) -> list[int]:
 
     When every body stands (all nodes in phase), phase −p looks like phase p: 21 drawings make 40 frames.
     """
-    if all(is_standing(body.shape) for body in picture.bodies):
+    if all(body.standing for body in picture.bodies):
         return [min(frame, FRAMES - frame) for frame in range(FRAMES)]
     return list(range(FRAMES))
 

@@ -24,6 +24,7 @@ class Piece:
     normals    (n, 3) for smooth shading, or None for flat faces
     on_top     drawn over the body even where the body is nearer
     opacity    of the triangles; lines are never see-through
+    strength   share of the fill laid over the body's own colour, 1: the fill as it is
     inside_out only triangles that look away from the eye are drawn: a hull around another piece that rims it
     """
 
@@ -39,6 +40,7 @@ class Piece:
     shaded: bool = True
     opacity: float = 1.0
     inside_out: bool = False
+    strength: float = 1.0
 
     @property
     def moves(self) -> bool:

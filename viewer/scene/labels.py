@@ -13,11 +13,11 @@ from itertools import pairwise
 import numpy as np
 
 from viewer.model.arrays import Array
-from viewer.scene import hinge_marks, marks
+from viewer.scene import hinge_marks, marks, trace_marks
 from viewer.scene.figures import kilograms
-from viewer.scene.motion import displacement, is_standing, positions
-from viewer.scene.picture import Body, Picture
-from viewer.scene.primitives import Box, Disc, Frame, Line, Point, Primitive, Text, bounds, grown
+from viewer.scene.motion import displacement, positions
+from viewer.scene.picture import Body, Picture, TraceMark
+from viewer.scene.primitives import Box, Disc, Frame, Line, Point, Primitive, Ring, Text, bounds, grown
 from viewer.scene.surface import Surface, surface_of
 from viewer.scene.tokens import THEMES, Tokens
 from viewer.scene.typeface import text_width
@@ -32,6 +32,8 @@ _PAD = 5.0  # free border of a label
 _LEADER = 1.3
 DOT = 3.0  # radius of the dot in which a leader to an area ends
 SIGN = 8.5  # radius of the disc that holds a sign
+TAG, TAG_PULL = 5.0, 6.0  # wished distance of a test point's bare label from its bead, and how much it matters
+AROUND, RING_LINE = 5.5, 2.6  # a ring stands so far out from a bead; its line
 
 
 @dataclass(frozen=True, eq=False)
@@ -63,7 +65,8 @@ class Label:
     """Lines of (words, bold) that belong to an anchor.
 
     colour   of the first line and the leader; ``further`` of the other lines, empty: the same
-    end      what the leader ends in: "" nothing, "dot", or the sign "+" or "−" in a disc
+    end      what the leader ends in: "" nothing, "dot", "ring" around the mark, or the sign "+" or "−" in a disc
+    near     wished distance from the rim of the mark, px; ``pull``: how much more than usual it matters
     """
 
     lines: tuple[tuple[str, bool], ...]
@@ -71,6 +74,8 @@ class Label:
     anchor: Anchor
     further: str = ""
     end: str = ""
+    near: float = NEAR
+    pull: float = 1.0
 
     @property
     def size(self) -> tuple[float, float]:
@@ -121,6 +126,9 @@ def _end(label: Label, frame: Frame, phase: float, halo: str) -> list[Primitive]
     x, y = label.anchor.seen(frame, phase)
     if label.end == "dot":
         return [Disc(x, y, DOT, label.colour)]
+    if label.end == "ring":
+        size = label.anchor.clear - RING_LINE
+        return [Ring(x, y, size, halo, RING_LINE + 2.6), Ring(x, y, size, label.colour, RING_LINE)]
     arm, thick = 0.55 * SIGN, 2.4
     bars = [Line(((x - arm, y), (x + arm, y)), halo, thick)]
     if label.end == "+":
@@ -174,6 +182,32 @@ def _found_labels(body: Body, index: int, frame: Frame, diagonal: float, tokens:
         anchor = Anchor(index, call.position, body.factor * call.motion, SIGN + 1.6)
         colour, end = (tokens.gain[-1], "+") if call.sign > 0 else (tokens.gain[0], "−")
         found.append(Label(_lines(call.lines[0], call.lines[1:]), colour, anchor, tokens.ink, end))
+    for trace in body.traces:
+        found += _test_labels(trace, body.factor, index, frame, diagonal, tokens)
+    return found
+
+
+def _test_labels(
+    trace: TraceMark, factor: float, index: int, frame: Frame, diagonal: float, tokens: Tokens
+) -> list[Label]:
+    """Words about points of a test: those set off with a ring first, bare labels last, since they fit anywhere."""
+    radii = trace_marks.bead_radii(trace, diagonal) / frame.metres_per_pixel
+    found = []
+    for call in sorted(trace.calls, key=lambda call: (not call.ringed, len(call.lines) < 2)):
+        clear = float(radii[call.row]) + (AROUND + RING_LINE if call.ringed else 0.0)
+        anchor = Anchor(index, trace.points[call.row], factor * trace.motion[call.row], clear)
+        colour = tokens.ink if call.ringed else tokens.test
+        bare = len(call.lines) < 2 and not call.ringed
+        found.append(
+            Label(
+                _lines(call.lines[0], call.lines[1:]),
+                colour,
+                anchor,
+                tokens.ink,
+                "ring" if call.ringed else "",
+                *((TAG, TAG_PULL) if bare else ()),
+            )
+        )
     return found
 
 
@@ -184,6 +218,7 @@ def marked_lines(picture: Picture, frame: Frame) -> list[Line]:
     for index, body in enumerate(picture.bodies):
         paths = [hinge_marks.middle_line(mark, diagonal) for mark in body.hinges]
         paths += [mark.ends for mark in body.struts]
+        paths += [trace.points[line] for trace in body.traces for line in trace.lines]
         for point in body.points:
             tip = diagonal * marks.ARROW * np.asarray(point.direction) / np.linalg.norm(point.direction)
             paths += [point.position + sign * np.array([[0.5], [1.0]]) * tip for sign in (-1, 1)]
@@ -249,7 +284,7 @@ def cover(picture: Picture, frame: Frame, surfaces: Sequence[Surface] | None = N
 
 def cycle_phases(body: Body) -> tuple[float, ...]:
     """Rest and the extremes of a standing mode; four quarters of a travelling one."""
-    if is_standing(body.shape):
+    if body.standing:
         return 0.0, np.pi / 2, np.pi
     return 0.0, np.pi / 2, np.pi, 3 * np.pi / 2
 
@@ -287,7 +322,7 @@ class Wish:
     """A box of ``size`` px to be placed near ``target``.
 
     hub    where in the box the leader starts, as shares of its size; None: the nearest point of its border
-    near   wished distance from the target; ``clear`` px of it are the mark itself
+    near   wished distance from the target; ``clear`` px of it are the mark itself; ``pull``: its weight
     """
 
     size: tuple[float, float]
@@ -295,6 +330,7 @@ class Wish:
     clear: float
     near: float = NEAR
     hub: Point | None = None
+    pull: float = 1.0
 
 
 def choose_place(wish: Wish, region: Box, covered: Cover, taken: Sequence[Box], leaders: Sequence[Line]) -> Box:
@@ -310,8 +346,8 @@ def choose_place(wish: Wish, region: Box, covered: Cover, taken: Sequence[Box], 
     padded = boxes + np.array([-_PAD, -_PAD, _PAD, _PAD])
     start = leader_start(boxes, wish.target, wish.hub)
     away = np.hypot(start[:, 0] - wish.target[0], start[:, 1] - wish.target[1])
-    cost = np.abs(away - wish.clear - wish.near)
-    cost += 60.0 * (away < wish.clear + 8)
+    cost = wish.pull * np.abs(away - wish.clear - wish.near)
+    cost += 60.0 * (away < wish.clear + min(8, wish.near - 1))
     cost += 12.0 * covered.cells(padded)
     cost += 10.0 * (y + height / 2 < wish.target[1])
     for box in taken:
@@ -392,7 +428,7 @@ def place_label(
     """Place one label, off the marks of ``others`` too, and note its box and leader among those taken."""
     marked = [bounds((other.anchor.rest(frame),), other.anchor.clear) for other in others if other is not label]
     target = label.anchor.rest(frame)
-    wish = Wish(label.size, target, label.anchor.clear)
+    wish = Wish(label.size, target, label.anchor.clear, label.near, pull=label.pull)
     box = choose_place(wish, region, covered, [*taken, *marked], leaders)
     x, y = leader_start(np.array([box]), target)[0]
     placed = Placed(label, box, (float(x), float(y)))

@@ -14,6 +14,7 @@ from viewer.scene.hinge_marks import fans, pins
 from viewer.scene.pegs import PEG, peg_places, pegs, spread
 from viewer.scene.picture import Body, MassMark, Picture, PointMark
 from viewer.scene.strut_marks import bars
+from viewer.scene.trace_marks import traces
 
 BEAD = 0.036  # radius of the heaviest bead of a picture
 LEAST_BEAD = 0.008
@@ -43,7 +44,7 @@ def standing_pieces(picture: Picture) -> tuple[tuple[Piece, ...], ...]:
 
 
 def facing_pieces(picture: Picture, toward_eye: Array | None = None) -> tuple[tuple[Piece, ...], ...]:
-    """By body the marks that face the eye: rims of beads, fans of hinges, functional points."""
+    """By body the marks that face the eye: rims of beads, fans of hinges, functional points, tests."""
     diagonal, heaviest = _common(picture)
     eye = np.asarray(picture.view.toward_eye if toward_eye is None else toward_eye, float)
     eye = eye / np.linalg.norm(eye)
@@ -71,12 +72,13 @@ def standing_marks(body: Body, diagonal: float, heaviest: float) -> tuple[Piece,
 
 
 def facing_marks(body: Body, diagonal: float, heaviest: float, toward_eye: Array) -> tuple[Piece, ...]:
-    """Rims of beads, fans of hinges, then functional points; they face the unit vector ``toward_eye``."""
+    """Rims of beads, fans of hinges, functional points, then tests; they face the unit vector ``toward_eye``."""
     pieces: list[Piece] = []
     for mass in body.masses:
         pieces += _rims(body, mass, bead_radius(mass.mass, heaviest, diagonal), toward_eye)
     pieces += fans(body, diagonal, toward_eye)
-    return (*pieces, *(_point(body, mark, diagonal, toward_eye) for mark in body.points))
+    pieces += [_point(body, mark, diagonal, toward_eye) for mark in body.points]
+    return (*pieces, *traces(body, diagonal, toward_eye))
 
 
 def bead_radius(mass: float, heaviest: float, diagonal: float) -> float:

@@ -6,13 +6,14 @@ phase. Drawn displacement of a body at phase p is ``factor * Re(shape * exp(1j *
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
 from viewer.cells import Skin
 from viewer.model.arrays import Array, frozen
 from viewer.model.mesh import Mesh
+from viewer.scene.motion import is_standing
 
 
 @dataclass(frozen=True, eq=False)
@@ -129,12 +130,70 @@ class CallOut:
 
 
 @dataclass(frozen=True, eq=False)
+class TestCall:
+    """Words about one point of a test; ``ringed`` sets the point off with a ring.
+
+    row     of the point
+    lines   the first is a title; "" as a title: the point's label alone
+    target  (3,) m at rest of another place that the words speak of: a dashed line leads there, or None
+    """
+
+    row: int
+    lines: tuple[str, ...]
+    ringed: bool = False
+    target: Array | None = None
+
+    __test__ = False  # not a test case of pytest's
+
+
+@dataclass(frozen=True, eq=False)
+class TraceMark:
+    """A test on a body: beads at its points, trace lines between them, ticks along its channels.
+
+    name     in the title key; ``freq_hz`` stands beside it
+    labels   (p,) of the points
+    points   (p, 3) m at rest, in the mesh's axes
+    lines    (l, 2) rows of points
+    motion   (p, 3) in units of the body's shape, complex for phases that are kept
+    sensor   (c,) row of the point that each channel sits on; points without one are drawn hollow
+    ticks    (c, 3) unit vectors, the way each channel measures as plus, drawn as arrows; (0, 3): not drawn
+    weights  (p,) 0 … 1: a figure that sizes and darkens the beads; NaN: unknown, an empty ring; None: all alike
+    stems    lines from where points rest to where they are; at_rest: the resting trace lines too, dashed
+    calls    words about points
+    """
+
+    name: str
+    labels: tuple[str, ...]
+    points: Array
+    lines: Array
+    motion: Array
+    freq_hz: float | None = None
+    sensor: Array = field(default_factory=lambda: np.empty(0, np.int64))
+    ticks: Array = field(default_factory=lambda: np.empty((0, 3)))
+    weights: Array | None = None
+    stems: bool = False
+    at_rest: bool = False
+    calls: tuple[TestCall, ...] = ()
+
+    def __post_init__(self) -> None:
+        count = len(self.labels)
+        object.__setattr__(self, "points", frozen(self.points, float, shape=(count, 3)))
+        object.__setattr__(self, "lines", frozen(np.reshape(self.lines, (-1, 2)), np.int64, shape=(None, 2)))
+        object.__setattr__(self, "motion", frozen(self.motion, shape=(count, 3)))
+        object.__setattr__(self, "sensor", frozen(self.sensor, np.int64, shape=(None,)))
+        object.__setattr__(self, "ticks", frozen(self.ticks, float, shape=(len(self.ticks) and len(self.sensor), 3)))
+        if self.weights is not None:
+            object.__setattr__(self, "weights", frozen(self.weights, float, shape=(count,)))
+
+
+@dataclass(frozen=True, eq=False)
 class Body:
     """One design in one mode.
 
     shape    (n_nodes, 3) float64 or complex128, rows as in ``mesh.points``
     factor   drawn metres per unit of the shape
     density  (n_cells,) strain-energy density ÷ the body's mean by cell row, or None: plain body
+    form     "solid", or "ghost": the undeformed contour alone, for what moves on it
     gain     (n_cells,) Hz per kg put into the cell, NaN where none, in place of the density, or None
     skin     what is drawn, over rows of ``mesh.points``; None: the skin of the whole mesh (see ``drawn``)
     """
@@ -155,6 +214,13 @@ class Body:
     struts: tuple[StrutMark, ...] = ()
     gain: Array | None = None
     call_outs: tuple[CallOut, ...] = ()
+    traces: tuple[TraceMark, ...] = ()
+    form: str = "solid"
+
+    @property
+    def standing(self) -> bool:
+        """Whether everything moves in phase, so that the second half of a cycle mirrors the first."""
+        return is_standing(self.shape) and all(is_standing(trace.motion) for trace in self.traces)
 
     @property
     def drawn(self) -> Skin:
@@ -207,6 +273,8 @@ class Picture:
     energy_top     top of the colour scale (a perfect square), one for all bodies; None: no colour bar
     gain_top       the same for bodies coloured by gain, from −gain_top to +gain_top
     energy_words   title of the colour bar
+    roles          names of the ``Tokens`` in whose colours the title keys of compared bodies are set
+    bead_scale     what the sizes of test points mean: (words, ((weight 0 … 1 or NaN, words), …)), or None
     """
 
     bodies: tuple[Body, ...]
@@ -224,6 +292,8 @@ class Picture:
     height: int = 720
     ghost: bool = True
     mesh_edges: bool = False
+    roles: tuple[str, str] = ("baseline", "modified")
+    bead_scale: tuple[str, tuple[tuple[float, str], ...]] | None = None
 
     def with_(self, **changes) -> Picture:
         """A copy with some fields replaced."""

@@ -9,6 +9,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 
+from viewer.scene.bead_scale import bead_scale_items
 from viewer.scene.colour_bar import picture_bar
 from viewer.scene.labels import Placed, cover, marked_lines, picture_labels, place_label
 from viewer.scene.magnifier import Magnifier, place_magnifier
@@ -77,7 +78,9 @@ def plan_sheet(picture: Picture, frame: Frame, surfaces: Sequence[Surface] | Non
     """Compose everything that stands still. ``surfaces`` of the bodies spare finding them again."""
     band_top = frame.height - note_height(picture)
     furniture = [*picture_bar(picture, frame, band_top)]
-    furniture += ruler_items(picture, frame) if picture.layout == "single" else title_key_items(picture, frame)
+    furniture += title_key_items(picture, frame)
+    furniture += bead_scale_items(picture, frame)
+    furniture += ruler_items(picture, frame) if picture.layout == "single" else []
     wanted = picture_labels(picture, frame)
     labels: list[Placed] = []
     magnifier = None

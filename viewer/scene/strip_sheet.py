@@ -14,7 +14,6 @@ from viewer.model.arrays import Array
 from viewer.model.cycle import cycle_peaks
 from viewer.scene import view
 from viewer.scene.colour_bar import colour_bar_items, energy_scale
-from viewer.scene.motion import is_standing
 from viewer.scene.note_layout import gauge, is_true, knob
 from viewer.scene.picture import Picture
 from viewer.scene.primitives import Box, Line, Primitive, Sheet, Text
@@ -93,7 +92,7 @@ def strip_layout(picture: Picture) -> Strip:
 def strip_phases(picture: Picture) -> tuple[tuple[float, ...], tuple[str, ...]]:
     """Phases and their words. A standing mode goes from one extreme over rest to the other, at even steps of swing;
     a travelling one never rests: half a cycle at even steps of time."""
-    if all(is_standing(body.shape) for body in picture.bodies):
+    if all(body.standing for body in picture.bodies):
         one, other = _ways(picture)
         phases = tuple(float(np.arccos(share)) for share in (-1.0, -0.5, 0.0, 0.5, 1.0))
         return phases, (

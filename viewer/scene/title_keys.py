@@ -3,22 +3,23 @@
 from __future__ import annotations
 
 from viewer.scene.figures import change, hertz
-from viewer.scene.picture import Picture
-from viewer.scene.primitives import Frame, Line, Primitive, Text
-from viewer.scene.tokens import BASE_WIDTH, THEMES, Tokens
+from viewer.scene.picture import Body, Picture, TraceMark
+from viewer.scene.primitives import Disc, Frame, Line, Polygon, Primitive, Text
+from viewer.scene.tokens import BASE_WIDTH, CONTOUR, THEMES, TOP, TRACE, Tokens
 from viewer.scene.typeface import wrap
 
 SIZE, SMALL = 17.0, 16.0
 LEFT, SAMPLE, TEXT_AT = 22.0, 32.0, 64.0
 _FIRST, _LINE = 30.0, 24.0
 _DASH = (13.0, 6.0)
+_TEST_FIRST = 82.0  # baseline of a test's key, below the ruler
 
 
 def title_key_items(picture: Picture, frame: Frame) -> list[Primitive]:
     """One key at the top left of each viewport (name, frequency below); in an overlay one line for each body."""
-    if picture.layout == "single":
-        return []
     tokens = THEMES[picture.theme]
+    if picture.layout == "single":
+        return _test_keys(picture, tokens)
     if picture.layout == "overlay":
         items: list[Primitive] = []
         y = frame.boxes[0][1] + _FIRST
@@ -31,7 +32,7 @@ def title_key_items(picture: Picture, frame: Frame) -> list[Primitive]:
     for index, body in enumerate(picture.bodies):
         left, top, right, _ = frame.boxes[index]
         lines = wrap((body.name,), right - left - TEXT_AT - LEFT, SIZE, True)
-        items += _key(tokens, index, left + LEFT, top + _FIRST, lines, 1.0)
+        items += _key(tokens, picture.roles[index], left + LEFT, top + _FIRST, lines, 1.0)
         frequency = frequency_words(picture, index)
         items.append(Text(left + TEXT_AT, top + _FIRST + _LINE * len(lines), frequency, tokens.ink, SMALL))
     left, top, right, foot = frame.boxes[1]
@@ -43,7 +44,7 @@ def key(picture: Picture, index: int, left: float, y: float, scale: float = 1.0)
     """The key of one body with its frequency in the same line: the sample, then the lines of text."""
     words = f"{picture.bodies[index].name}  {frequency_words(picture, index)}"
     lines = wrap((words,), BASE_WIDTH - TEXT_AT - LEFT, SIZE, True)
-    return _key(THEMES[picture.theme], index, left, y, lines, scale)
+    return _key(THEMES[picture.theme], picture.roles[index], left, y, lines, scale)
 
 
 def frequency_words(picture: Picture, index: int) -> str:
@@ -53,12 +54,47 @@ def frequency_words(picture: Picture, index: int) -> str:
     return hertz(freq_hz) + (f"  ({shift})" if shift else "")
 
 
-def _key(tokens: Tokens, index: int, left: float, y: float, lines: list[str], scale: float) -> list[Primitive]:
-    colour = (tokens.baseline, tokens.modified)[index]
-    level = y - 4.5 * scale
-    dash = tuple(part * scale for part in _DASH) if index == 0 else ()
+def test_key_room(picture: Picture) -> float:
+    """Height that the keys of a test and the body it moves on take below the ruler, sheet px."""
+    return _TEST_FIRST + _LINE - TOP + 12.0 if _shown_tests(picture) else 0.0
+
+
+def _shown_tests(picture: Picture) -> list[tuple[Body, TraceMark]]:
+    """Tests that move on a body that is drawn itself."""
+    if picture.layout != "single":
+        return []
+    return [(b, t) for b in picture.bodies if b.form == "solid" for t in b.traces if t.freq_hz is not None]
+
+
+def _test_keys(picture: Picture, tokens: Tokens) -> list[Primitive]:
+    """Below the ruler: the test, then the body it is drawn on with its frequency against the test's."""
+    items: list[Primitive] = []
+    for body, test in _shown_tests(picture)[:1]:
+        tested = test.freq_hz or 0.0
+        shift = change(body.freq_hz, tested) if body.freq_hz != tested else ""
+        rows = (("test", f"{test.name}  {hertz(tested)}"), ("ink", f"{body.name}  {hertz(body.freq_hz)}"))
+        for k, (role, words) in enumerate(rows):
+            words += f"  ({shift})" if k and shift else ""
+            items += _key(tokens, role, LEFT, _TEST_FIRST + _LINE * k, [words], 1.0)
+    return items
+
+
+def _key(tokens: Tokens, role: str, left: float, y: float, lines: list[str], scale: float) -> list[Primitive]:
+    """Sample and words in the colour ``role`` of ``tokens``: dashed for a first design, a line with beads for a
+    test, a patch of the body where the words are in ink."""
+    colour = getattr(tokens, role)
+    level, end = y - 5.5 * scale, left + SAMPLE * scale
+    dash = tuple(part * scale for part in _DASH) if role == "baseline" else ()
+    sample: list[Primitive] = [Line(((left, level), (end, level)), colour, 4.0 * scale, dash)]
+    if role == "test":
+        sample = [Line(((left, level), (end, level)), colour, TRACE * scale)]
+        sample += [Disc(x, level, 5.0 * scale, colour) for x in (left + 5 * scale, end - 5 * scale)]
+    elif role == "ink":
+        half = 7.0 * scale
+        box = ((left, level - half), (end, level - half), (end, level + half), (left, level + half))
+        sample = [Polygon(box, tokens.body), Line((*box, box[0]), tokens.body_edge, CONTOUR * scale)]
     at = left + (TEXT_AT - LEFT) * scale
     return [
-        Line(((left, level), (left + SAMPLE * scale, level)), colour, 4.0 * scale, dash),
+        *sample,
         *(Text(at, y + _LINE * scale * k, words, colour, SIZE * scale, True) for k, words in enumerate(lines)),
     ]

@@ -34,6 +34,7 @@ class Tokens:
     point: str  # functional point
     baseline: str
     modified: str
+    test: str  # what a hammer test measured
     halo: str  # casing of pins and pegs
     energy: tuple[str, ...]
     gain: tuple[str, ...]
@@ -61,6 +62,7 @@ THEMES: Mapping[str, Tokens] = MappingProxyType(
             point="#A3156F",
             baseline="#5A2F96",
             modified="#0A8066",
+            test="#536400",
             halo="#FFFFFF",
             energy=_stops("D4D8DB DAC295 E2A256 E27A26 D75118 BC2F1E 991A31 750837 4E0E38"),
             gain=_stops("193978 2B62A7 568DC7 8DB7D7 D4D8DB D6B279 BE803E 97540B 653312"),
@@ -81,6 +83,7 @@ THEMES: Mapping[str, Tokens] = MappingProxyType(
             point="#FF7CC8",
             baseline="#A283E6",
             modified="#5FE3C4",
+            test="#B9D736",
             halo="#0B0E11",
             energy=_stops("444A4F 764557 A4415C CF444A E66437 F18937 F3B046 F8D577 F7F3BD"),
             gain=_stops("A8EBFB 66C1F1 4493CB 3B679A 444A4F 8B5738 C17B32 EAAC56 FBE3A3"),
@@ -104,6 +107,8 @@ OVERLAY_GHOST = 1.3
 FLAP_LINE = 2.4
 BEAM = 3.0
 NODE_LINE, NODE_CASING = 3.0, 6.4
+TRACE, TRACE_CASING = 2.8, 5.6  # trace lines of a test
+STEM = 1.6  # from where a test point rests to where it is
 HIDDEN_OPACITY = 0.45  # hidden parts of the overlay's dashed contour
 OVERLAY_TINT = 0.30  # teal in body base
 FLAP_TINT = 0.30
@@ -115,6 +120,7 @@ FAN_OPACITY = 0.22
 DASH, DASH_GAP = 0.017, 0.012
 DOT, DOT_GAP = 0.004, 0.010
 PIN_RADIUS = 0.0042
+TEST_BEAD = 0.0070  # radius of a test point
 
 CREASE_DEGREES = 32.0
 

@@ -194,6 +194,30 @@ class BodyActors:
             self._ghost.show(dashes.segments(self._motion.rest) + np.float32(GHOST_LIFT / LIFT) * lift)
 
 
+class GhostBody:
+    """A body of which only the undeformed contour is drawn, dashed; its own faces hide what is behind them."""
+
+    def __init__(self, renderer: vtkRenderer, picture: Picture, body: Body, surface: Surface, scale: float) -> None:
+        theme = THEMES[picture.theme]
+        self._surface, self._diagonal = surface, body.mesh.diagonal
+        motion = Motion(body, surface)
+        self._rest = motion.rest
+        self._faces = SurfaceActor(renderer, surface, motion, theme.background)
+        self._faces.actor.GetProperty().LightingOff()
+        self._faces.move(motion.rest, surface.face_normals(motion.rest))
+        self._ghost = Segments(renderer, theme.ghost, scale * tokens.GHOST, motion.origin)
+        self._eye = np.zeros(3)
+
+    def draw(self, phase: float, camera: Camera) -> None:
+        """Nothing moves; the contour is chosen anew when the camera has turned."""
+        if np.allclose(self._eye, camera.toward_eye, atol=1e-9):
+            return
+        self._eye = camera.toward_eye
+        dashes = rest_dashes(self._surface, self._rest, camera, self._diagonal, dotted=False)
+        lift = (GHOST_LIFT * camera.metres_per_pixel * camera.toward_eye).astype(np.float32)
+        self._ghost.show(dashes.segments(self._rest) + lift)
+
+
 class DashedBody:
     """A compared design drawn as dashed contour only; hidden parts show faintly, over everything.
 

@@ -12,6 +12,7 @@ from vtkmodules.vtkRenderingCore import vtkActor, vtkPolyDataMapper, vtkRenderer
 
 from viewer.model.arrays import Array
 from viewer.scene.forms import Piece
+from viewer.scene.palette import mix
 from viewer.scene.tokens import THEMES, rgb
 
 _LIFT = 1.5  # depth units and slope factor by which lines stand before their faces
@@ -51,7 +52,7 @@ class _PieceActors:
         self._actors: list[vtkActor] = []
         tokens = THEMES[theme]
         if len(piece.triangles):
-            actor = self._add(piece.triangles, getattr(tokens, piece.fill))
+            actor = self._add(piece.triangles, mix(tokens.body, getattr(tokens, piece.fill), piece.strength))
             paint = actor.GetProperty()
             paint.SetAmbient(0.70)
             paint.SetDiffuse(0.30)
