@@ -43,6 +43,18 @@ point = "q"
 [[pairs]]
 first = {design = "a", mode = 1}
 second = {design = "b", mode = 2}
+[[tests]]
+name = "hammer"
+file = ["a.vtu"]
+length_unit = "in"
+landmarks = [{point = "1", near = [1, 2, 3]}, {point = "9", node = 7}]
+placement = {rotation = [[0, -1, 0], [1, 0, 0], [0, 0, 1]], shift = [1000, 0, 5], scale = 1}
+corrections = [
+    {kind = "flip", point = "12", axis = "x"},
+    {kind = "swap axes", point = "3", axis = "x", other_axis = "z"},
+    {kind = "move", point = "7", other = "9"},
+    {kind = "move", point = "8", position = [1, 2, 3]},
+]
 """
 
 

@@ -73,6 +73,8 @@ def instrumented() -> None:
         import viewer.loaders.hdf5_files
         import viewer.loaders.npz_files
         import viewer.loaders.registry
+        import viewer.loaders.test_tables
+        import viewer.loaders.test_universal
         import viewer.loaders.universal_files
         import viewer.loaders.vtkhdf_files
         import viewer.loaders.vtu_files
@@ -108,6 +110,34 @@ def read_all(path: Path) -> None:
     for index in range(min(modes.count, 50)):
         assert modes.shape(index).shape == (mesh.n_nodes, 3)
         assert np.isfinite(modes.shape(index)).all()
+
+
+def read_hammer_test(path: Path) -> None:
+    """A test set; everything promised is checked, and what is written of it reads the same."""
+    import numpy as np
+
+    from viewer.loaders import read_test, write_test
+
+    test = read_test(path, None if path.suffix == ".unv" else 0.001)
+    assert all(np.isfinite(array).all() for array in (test.points, test.directions, test.freq_hz, test.shapes))
+    assert np.allclose(np.linalg.norm(test.directions, axis=1), 1, atol=1e-9)
+    assert (test.freq_hz > 0).all() and (np.diff(test.freq_hz) >= 0).all()
+    assert ((test.lines >= 0) & (test.lines < len(test.labels))).all()
+    again = read_test(write_test(path.with_name("again.csv"), test), 1.0)
+    assert np.array_equal(again.shapes, test.shapes) and np.array_equal(again.sensor, test.sensor)
+
+
+def small_tests():
+    """A hammer test of two modes, real and complex."""
+    from viewer.model.testset import TestSet
+
+    for factor in (1, 1 + 0.1j):
+        shapes = [[factor, 2, 3], [1, -2 * factor, 0.5]]
+        directions = [[1, 0, 0], [0, 0, -1], [0, 1, 0]]
+        points = [[0, 0, 0], [0.5, 0, 0], [0.5, 0.25, 1]]
+        yield TestSet(
+            "a", ("1", "2", "5"), points, [[0, 1], [1, 2]], [0, 1, 1], directions, [5.0, 9], shapes, [0.01, 0.02]
+        )
 
 
 def _our_own_slip(error: BaseException) -> bool:
