@@ -21,6 +21,7 @@ LEAST_SHARE = 0.025  # of the strain energy of the whole, for a set to be looked
 MOST_VOLUME = 0.3  # share of the volume: no band is larger
 BRIDGES = (0.0, 0.03, 0.07)  # of the size: gaps within one band
 _ALIKE = 0.85  # share of energy in common from which two sets are one candidate
+_ROOM = 0.5  # and share of the volume in common
 _LEVELS = 12
 _NEAR = 0.08  # of the size: boxes of the neighbourhood
 
@@ -45,11 +46,13 @@ def candidates(field: Field, progress: Progress) -> list[Array]:
 
 
 def _add(found: list[tuple[Array, Array]], field: Field, cells: Array) -> None:
-    """Keep a set unless it is nearly one of those kept."""
-    whole = field.strain[cells].sum()
+    """Keep a set unless it is nearly one of those kept: in energy, and in volume too, since the energy of a tongue is
+    that of its root whether the whole tongue is taken or the root alone."""
+    whole, room = field.strain[cells].sum(), field.volume[cells].sum()
     for other, inside in found:
-        common = field.strain[cells[inside[cells]]].sum()
-        if common > _ALIKE * max(whole, field.strain[other].sum()):
+        common = cells[inside[cells]]
+        alike = field.strain[common].sum() > _ALIKE * max(whole, field.strain[other].sum())
+        if alike and field.volume[common].sum() > _ROOM * max(room, field.volume[other].sum()):
             return
     inside = np.zeros(len(field.strain), bool)
     inside[cells] = True

@@ -10,6 +10,7 @@ from viewer.model.arrays import Array
 
 _BINS = 160
 _POWER = 0.75
+_SLOPED = 4  # strips from which a band's own slope is looked at
 
 
 @dataclass(frozen=True, eq=False)
@@ -78,8 +79,16 @@ def edges_of(found: Profile) -> Edges | None:
     with np.errstate(invalid="ignore", divide="ignore"):
         before = np.where(start > 0, total[start] / start, 0.0)
         after = np.where(stop < n, (total[n] - total[stop]) / (n - stop), 0.0)
-    gain = (stop - start) * inside**2 + start * before**2 + (n - stop) * after**2
-    good = (inside > before) & (inside > after) & (stop - start < 0.9 * n)
+    # The moment may change across the band, so that inside the level is a straight line; both its ends must be steps up.
+    place = np.arange(n + 1)
+    moment = np.concatenate([[0.0], np.cumsum(y * (place[:-1] + 0.5))])
+    count = stop - start
+    spread = np.maximum(count * (count**2 - 1.0) / 12, 1e-12)
+    slope = (moment[stop] - moment[start] - inside * count * (start + stop) / 2) / spread
+    slope = np.where(count >= _SLOPED, slope, 0.0)
+    rise = slope * count / 2
+    gain = count * inside**2 + slope**2 * spread + start * before**2 + (n - stop) * after**2
+    good = (inside - rise > before) & (inside + rise > after) & (count < 0.9 * n)
     if not good.any():
         return None
     best = int(np.argmax(np.where(good, gain, -np.inf)))

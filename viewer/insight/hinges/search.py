@@ -15,7 +15,8 @@ from viewer.insight.hinges.field import Field, make_field
 from viewer.insight.hinges.finding import Hinge, HingeFinding
 from viewer.insight.hinges.flaps import find_flaps, regions
 from viewer.insight.hinges.gates import confidence, is_joint, label, score
-from viewer.insight.hinges.moment import moment_through
+from viewer.insight.hinges.lines import unions
+from viewer.insight.hinges.seam import moment_through, seams_of, turn_between
 from viewer.insight.places import place_of
 from viewer.insight.smoothing import needs_smoothing, noise_estimate, smoothed
 from viewer.jobs import SILENT, Progress
@@ -75,18 +76,22 @@ def find_hinges(
     )
     drafts = _chosen(field, progress)
     region = regions(field, [draft.cells for draft, _, _ in drafts])
-    stiffness = [
-        None if given.relative else stiffness_of(design, draft, moved, turned, whole, given.formulations)
-        for draft, _, _ in drafts
-    ]
-    hinges = tuple(_hinge(field, region, i + 1, *drafts[i], stiffness[i]) for i in range(len(drafts)))
-    flaps = find_flaps(field, hinges, region)
+    hinges = []
+    for draft, worth, gate in drafts:
+        seams = seams_of(design.mesh, draft)
+        turn = turn_between(design.mesh, seams, bool((field.dim[draft.cells] == 3).any()), moved, turned)
+        draft = draft if turn is None else _turned_as(draft, turn)
+        stiffness = None
+        if not given.relative:
+            moment = moment_through(design, draft, seams, moved, turned, given.formulations)
+            stiffness = stiffness_of(draft, moment, whole)
+        hinges.append(_hinge(field, region, len(hinges) + 1, draft, worth, gate, stiffness))
+    flaps = find_flaps(field, tuple(hinges), region)
     where = lambda cells: place_of(design.mesh, cells, given.volumes)  # noqa: E731
-    hinges = tuple(replace(hinge, place=where(hinge.cells)) for hinge in hinges)
     flaps = tuple(replace(flap, place=where(flap.cells)) for flap in flaps)
     return HingeFinding(
         verdict="hinges" if hinges else "bending is spread",
-        hinges=hinges,
+        hinges=tuple(replace(hinge, place=where(hinge.cells)) for hinge in hinges),
         flaps=flaps,
         cautions=tuple(cautions),
         **answer,
@@ -142,19 +147,16 @@ def _doubts(given: Energies, row: int, basis: str) -> list[str]:
 
 def _chosen(field: Field, progress: Progress) -> list[tuple[Draft, float, str]]:
     """The best of the candidates that pass, no two for one band, the strongest first."""
-    found: list[tuple[Draft, float, str]] = []
-    seen: set[int] = set()
+    measured: dict[int, Draft] = {}  # the examiner keeps its drafts and gives the same one again
     proposed = candidates(field, progress)
     examine = Examiner(field)
     for i, cells in enumerate(proposed):
         progress.tick("looking at bands", i, len(proposed))
-        for draft in examine(cells):
-            if id(draft) in seen:  # the examiner keeps its drafts and gives the same one again
-                continue
-            seen.add(id(draft))
-            worth, gate = score(field, draft)
-            if worth >= 1:
-                found.append((draft, worth, gate))
+        measured |= {id(draft): draft for draft in examine(cells)}
+    for cells in unions(field, list(measured.values())):
+        measured |= {id(draft): draft for draft in examine(cells)}
+    scored = [(draft, *score(field, draft)) for draft in measured.values()]
+    found = [item for item in scored if item[1] >= 1]
     found.sort(key=lambda item: -_rank(*item[:2]))
     kept: list[tuple[Draft, float, str]] = []
     for item in found:
@@ -226,15 +228,25 @@ def _hinge(
     )
 
 
-def stiffness_of(
-    design: Design, draft: Draft, moved: Array, turned: Array | None, whole: float, formulations: tuple[str, ...]
-) -> float:
-    """N·m/rad: the moment that passes through the band over the mean turn of its edges. Where the turn changes its
-    sense along the line, or the moment cannot be told, 2U/θ² of the band's cells. ``whole`` J of all of them."""
-    if draft.even >= _ONE_SENSE:
-        moment = moment_through(design, draft, moved, turned, formulations)
-        if moment is not None:
-            return moment / (draft.bend * float(np.sqrt(draft.even)))
+def _turned_as(draft: Draft, turn: Array) -> Draft:
+    """The draft with the fold that its seams show. About a line, the sides' rotations carried on to the edges are the
+    better measure of size (a seam of a one-sided groove turns less than the full section), the seams of direction. A
+    joint's surroundings give way, so that only the seams tell how far it turns itself."""
+    if is_joint(draft):
+        axis = draft.frame.about[0]
+        return replace(draft, fold=turn, bend=abs(float(turn @ axis)), even=1.0)
+    if not isinstance(draft.frame.curve, Line) or not np.linalg.norm(turn) > 0:
+        return draft
+    return replace(draft, fold=turn * np.linalg.norm(draft.fold) / np.linalg.norm(turn))
+
+
+def stiffness_of(draft: Draft, moment: float | None, whole: float) -> float | None:
+    """N·m/rad: the moment that passes through the band over the mean turn of its edges. Where the moment cannot be
+    told, or the turn changes its sense along the line, 2U/θ² of the band's cells (``whole`` J of all)."""
+    if not draft.bend > 0:
+        return None
+    if moment is not None and draft.even >= _ONE_SENSE:
+        return moment / (draft.bend * float(np.sqrt(draft.even)))
     return 2 * draft.strain * whole / draft.bend**2
 
 
