@@ -20,6 +20,7 @@ from viewer.session.gallery import passing
 from viewer.session.pictures import scale_of
 from viewer.session.rail import rail_of
 from viewer.session.saving import save_names
+from viewer.session.state import Band
 from viewer.session.words import as_text, entries
 
 if TYPE_CHECKING:
@@ -76,7 +77,12 @@ class Deeds(QObject):
         self._window.notice.show_message("Names are saved", str(project.opened.dossier.path))
 
     def export(self, kind: str) -> None:
-        """Export what is on the stage."""
+        """Ask where to, and write what is on the stage (``gif``, ``png``) or the ``tables``."""
+        self._window.exporting.ask(kind)
+
+    def export_to(self, kind: str, path: Path) -> None:
+        """The same without asking."""
+        self._window.exporting.write(kind, path)
 
     def copy_words(self) -> None:
         """What is said about the mode, as text on the clipboard."""
@@ -118,6 +124,16 @@ class Deeds(QObject):
 
     def filter_modes(self) -> None:
         """Go to the gallery's filter."""
+        self._window.filter_bar.ask()
+
+    def set_band(self, band: Band) -> None:
+        self._session.do(actions.set_band, band, join="band")
+
+    def show_all_modes(self) -> None:
+        """Close the gallery's filter."""
+        self._window.filter_bar.hide()
+        self._session.do(actions.set_band, Band())
+        self._window.gallery.setFocus()
 
     def choose_design(self, design: str) -> None:
         self._session.do(actions.choose_design, design, self._session.project)
@@ -280,8 +296,10 @@ class Deeds(QObject):
             self._pick_largest()
 
     def dismiss(self) -> None:
-        """Close the notice; with none, light nothing."""
-        if self._window.notice.kind in ("error", "message"):
+        """Close the filter or the notice; with none, light nothing."""
+        if self._window.filter_bar.written_into:
+            self.show_all_modes()
+        elif self._window.notice.kind in ("error", "message"):
             self._window.notice.dismiss()
         elif self._session.state.page != "stage":
             self._session.do(actions.turn_page, "stage")
@@ -298,6 +316,3 @@ class Deeds(QObject):
         if self._keys is None:
             self._keys = KeySheet(self._window)
         self._keys.setVisible(not self._keys.isVisible())
-
-
-

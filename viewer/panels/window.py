@@ -13,6 +13,9 @@ from viewer.panels.canvas import Canvas
 from viewer.panels.commands import COMMANDS
 from viewer.panels.conductor import Conductor
 from viewer.panels.deeds import Deeds
+from viewer.panels.export_strip import ExportStrip
+from viewer.panels.exporting import Exporting
+from viewer.panels.filter_bar import FilterBar
 from viewer.panels.gallery import PICTURE, GalleryPanel
 from viewer.panels.header import HeaderPanel
 from viewer.panels.notice import Notice
@@ -22,9 +25,9 @@ from viewer.panels.theme import palette, sheet
 from viewer.panels.words import WordsPanel
 from viewer.scene.picture import Picture
 from viewer.session import Session, State, actions
-from viewer.session.gallery import items
-from viewer.session.pictures import heading, scale_of
+from viewer.session.gallery import items, point_names
 from viewer.session.picking import read_off
+from viewer.session.pictures import heading, scale_of
 from viewer.session.rail import rail_of
 from viewer.session.settings import read_settings, write_settings
 from viewer.session.words import entries
@@ -40,6 +43,7 @@ class Window(QMainWindow):
         self.session = Session(State(theme=self.settings.theme))
         self.conductor = Conductor(self.session, (2 * PICTURE.width(), 2 * PICTURE.height()), self)
         self._build()
+        self.exporting = Exporting(self)
         self.deeds = Deeds(self)
         self._bind_commands()
         self._connect()
@@ -54,7 +58,7 @@ class Window(QMainWindow):
         self.menu.setAccessibleName("All commands")
         self.header = HeaderPanel(self.menu, self)
         self.rail, self.canvas, self.gallery = RailPanel(self), Canvas(self), GalleryPanel(self)
-        self.words = WordsPanel(self)
+        self.words, self.filter_bar, self.export_strip = WordsPanel(self), FilterBar(self), ExportStrip(self)
         self.pages = QStackedWidget(self)
         self.pages.addWidget(self.canvas)
         self.notice = Notice(self.canvas)
@@ -62,8 +66,8 @@ class Window(QMainWindow):
         left = QVBoxLayout()
         left.setContentsMargins(0, 0, 0, 0)
         left.setSpacing(0)
-        for panel, stretch in ((self.header, 0), (self.rail, 0), (self.pages, 1), (self.gallery, 0)):
-            left.addWidget(panel, stretch)
+        for panel in (self.header, self.rail, self.pages, self.export_strip, self.filter_bar, self.gallery):
+            left.addWidget(panel, 1 if panel is self.pages else 0)
         centre = QWidget(self)
         box = QHBoxLayout(centre)
         box.setContentsMargins(0, 0, 0, 0)
@@ -107,6 +111,8 @@ class Window(QMainWindow):
         self.rail.let_go.connect(deeds.let_go)
         self.gallery.chosen.connect(deeds.choose_mode)
         self.gallery.renamed.connect(deeds.take_name)
+        self.filter_bar.wished.connect(deeds.set_band)
+        self.filter_bar.closed.connect(deeds.show_all_modes)
         self.words.lit.connect(deeds.light)
         self.canvas.settled.connect(self._settled)
         self.canvas.picked.connect(deeds.pick)
@@ -169,7 +175,10 @@ class Window(QMainWindow):
             return
         self.setWindowTitle(f"{project.title} · Hingelight")
         self.header.show_project(project.title, project.designs, state.design, state.layout, bool(state.named))
-        self.gallery.show_items(items(project, state), state.mode, state.theme)
+        shown = items(project, state)
+        self.gallery.show_items(shown, state.mode, state.theme)
+        points = point_names(project.study(state.design))
+        self.filter_bar.show_band(state.band, points, len(shown), project.count(state.design))
         self.words.show_entries(entries(project, state), heading(project, state), state.subject, state.theme)
         self._show_reading()
 
