@@ -5,8 +5,9 @@ import difflib
 import numpy as np
 import pytest
 
+from tests.loaders.test_hammer_tests import tables
 from viewer.errors import DossierError
-from viewer.loaders import read_dossier, write_test_changes
+from viewer.loaders import read_dossier, read_planned_test, write_test_changes
 from viewer.model.mesh import Mesh
 from viewer.model.testset import Correction, Placement
 
@@ -155,6 +156,24 @@ def test_what_is_wrong_is_said_where(written, line, words):
 def test_two_tests_of_one_name(written):
     with pytest.raises(DossierError, match="tests: 'a' is given twice"):
         read_dossier(written('[[tests]]\nname = "a"\nfile = "run_1.unv"\n' * 2))
+
+
+@pytest.mark.parametrize(
+    ("line", "words"),
+    [
+        ('landmarks = [{point = "3", node = 1}]', "landmarks 1: the test has no point '3'; expected: one of: 1, 2"),
+        ('corrections = [{kind = "flip", point = "x"}]', "corrections 1: the test has no point 'x'"),
+        ('corrections = [{kind = "move", point = "1", other = "9"}]', "corrections 1: the test has no point '9'"),
+    ],
+)
+def test_points_that_the_dossier_names_must_be_in_the_test(written, tmp_path, line, words):
+    tables(tmp_path, "arm")
+    path = written('[[tests]]\nname = "a"\nfile = "arm_points.csv"\nlength_unit = "mm"\n')
+    assert read_planned_test(read_dossier(path), "a").name == "a"
+    path.write_text(path.read_text("utf-8") + line, "utf-8")
+    with pytest.raises(DossierError) as caught:
+        read_planned_test(read_dossier(path), "a")
+    assert f'{path}, tests "a", {words}' in str(caught.value)
 
 
 def test_corrections_and_a_placement_are_written_and_all_else_stays(written):

@@ -10,10 +10,11 @@ import numpy as np
 
 from viewer.errors import HingelightError, LoadError, ModelError
 from viewer.jobs import SILENT, Progress
-from viewer.loaders import bare_dossier, read_mesh_report, read_modes
+from viewer.loaders import bare_dossier, read_mesh_report, read_modes, read_planned_test
 from viewer.mechanics.assembly import assemble
 from viewer.mechanics.relative import states_no_material
 from viewer.model.mesh import Mesh
+from viewer.model.testset import TestSet
 from viewer.workspace import OpenDossier, better_formulation
 
 
@@ -63,6 +64,13 @@ def check_dossier(opened: OpenDossier, progress: Progress = SILENT) -> Checkup:
             cautions += doubts
         except HingelightError as error:
             errors.append(f"design '{name}': {error}")
+    for plan in opened.dossier.tests:
+        try:
+            test = read_planned_test(opened.dossier, plan.name, progress)
+            statements.append(f"test {plan.name}: {words_of_test(test)}")
+            cautions += [f"test {plan.name}: {remark}" for remark in test.remarks]
+        except HingelightError as error:
+            errors.append(f"test '{plan.name}': {error}")
     return Checkup(tuple(statements), tuple(dict.fromkeys(cautions)), tuple(errors))
 
 
@@ -118,6 +126,13 @@ def check_mesh(path: Path, modes_path: Path | None, progress: Progress = SILENT)
         except LoadError as error:  # as for most meshes; the reason tells a broken mode set from none
             statements.append(f"no modes taken from the same file: {error.problem}")
     return Checkup(tuple(statements), (*report.warnings, *report.notes), (), bare_dossier(mesh, path, modes_path))
+
+
+def words_of_test(test: TestSet) -> str:
+    """ "22 points, 31 channels, 6 complex modes, 82.5 to 280.1 Hz" """
+    kind = "complex modes" if test.is_complex else "modes"
+    span = f"{test.freq_hz.min():.4g} to {test.freq_hz.max():.4g} Hz"
+    return f"{len(test.labels)} points, {test.n_channels} channels, {test.count} {kind}, {span}"
 
 
 def mesh_words(mesh: Mesh) -> str:
