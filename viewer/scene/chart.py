@@ -7,7 +7,7 @@ from collections.abc import Sequence
 import numpy as np
 
 from viewer.model.arrays import Array
-from viewer.scene.primitives import Box, Polygon, Primitive, Sheet, Text
+from viewer.scene.primitives import Box, Point, Polygon, Primitive, Sheet, Spot, Text
 from viewer.scene.tokens import (
     BAND_HEIGHT,
     BASE_WIDTH,
@@ -26,7 +26,12 @@ HEIGHT = 720.0
 
 
 def chart_sheet(
-    tokens: Tokens, title: str, notes: Sequence[str], items: Sequence[Primitive], height: float = HEIGHT
+    tokens: Tokens,
+    title: str,
+    notes: Sequence[str],
+    items: Sequence[Primitive],
+    height: float = HEIGHT,
+    spots: Sequence[Spot] = (),
 ) -> Sheet:
     """A sheet 960 wide: ``items`` above the note band that every picture has, with its title and notes, the first in
     ink. ``height`` is meant for two lines of notes; each further one adds a line below."""
@@ -41,7 +46,7 @@ def chart_sheet(
     ]
     for k, (words, colour) in enumerate(lines):
         band.append(Text(MARGIN, top + BASELINES[1] + (BASELINES[2] - BASELINES[1]) * k, words, colour, TEXT))
-    return Sheet(BASE_WIDTH, height, (*band, *items))
+    return Sheet(BASE_WIDTH, height, (*band, *items), spots=tuple(spots))
 
 
 def _broken(words: str) -> list[str]:
@@ -57,8 +62,13 @@ def _broken(words: str) -> list[str]:
 
 
 def rectangle(box: Box, colour: str) -> Polygon:
+    return Polygon(corners(box), colour)
+
+
+def corners(box: Box) -> tuple[Point, ...]:
+    """The four corners of a box, around it."""
     left, top, right, foot = box
-    return Polygon(((left, top), (right, top), (right, foot), (left, foot)), colour)
+    return (left, top), (right, top), (right, foot), (left, foot)
 
 
 def blend(low: str, high: str, share: float) -> str:

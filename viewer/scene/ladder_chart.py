@@ -10,7 +10,7 @@ from viewer.model.arrays import Array
 from viewer.scene.chart import HEIGHT, apart, blend, chart_sheet, fitted, ticks
 from viewer.scene.chart_side import Side
 from viewer.scene.figures import change, hertz
-from viewer.scene.primitives import Line, Polygon, Primitive, Sheet, Text
+from viewer.scene.primitives import Line, Polygon, Primitive, Sheet, Spot, Text
 from viewer.scene.tokens import BAND_HEIGHT, BASE_WIDTH, MARGIN, TEXT, TEXT_SMALL, THEMES, Tokens
 
 RAILS = (352.0, 608.0)  # x of the two ladders
@@ -47,7 +47,8 @@ def ladder_chart(
 
 
 def ladders(rungs: Sequence[Rung], one: Side, other: Side, said: str, title: str, theme: str = "light") -> Sheet:
-    """Both ladders on one linear scale; ribbons are as wide as the shapes agree, with the change in frequency."""
+    """Both ladders on one linear scale; ribbons are as wide as the shapes agree, with the change in frequency. Spots
+    stand for (mode of one, mode of other), numbers from 1, None where there is no counterpart."""
     tokens = THEMES[theme]
     first = [p for p in rungs if p.first is not None]
     second = sorted((p for p in rungs if p.second is not None), key=lambda p: p.second or 0)
@@ -67,7 +68,7 @@ def ladders(rungs: Sequence[Rung], one: Side, other: Side, said: str, title: str
         *_changes(rungs, y, tokens),
     ]
     legend = "a ribbon joins a mode to its counterpart, the wider the more alike the shapes; dashed end: none"
-    return chart_sheet(tokens, title, (legend, said), items)
+    return chart_sheet(tokens, title, (legend, said), items, spots=_spots(rungs, y, one.name, other.name))
 
 
 def _range(values: Sequence[float]) -> tuple[float, float]:
@@ -108,6 +109,23 @@ def _ribbons(rungs: Sequence[Rung], y: Place, own: str, others: str, tokens: Tok
             target = y(p.second_hz or 0.0)
             items.append(Line(((RAILS[1] - 46, target), (RAILS[1], target)), others, 2.4, (6.0, 5.0)))
     return items
+
+
+def _spots(rungs: Sequence[Rung], y: Place, one: str, other: str) -> list[Spot]:
+    """A strip from rung to rung, or at the rung that stands alone."""
+    middle, half = sum(RAILS) / 2, 9.0
+    found = []
+    for p in rungs:
+        left = RAILS[0] - RUNG if p.first is not None else middle
+        right = RAILS[1] + RUNG if p.second is not None else middle
+        at = [
+            y(hz if hz is not None else alone or 0.0)
+            for hz, alone in ((p.first_hz, p.second_hz), (p.second_hz, p.first_hz))
+        ]
+        outline = ((left, at[0] - half), (right, at[1] - half), (right, at[1] + half), (left, at[0] + half))
+        sides = [f"mode {number} of {name}" for number, name in ((p.first, one), (p.second, other)) if number]
+        found.append(Spot(outline, (p.first, p.second), " and ".join(sides)))
+    return found
 
 
 def _labels(modes: Sequence[tuple[int, float]], y: Place, which: Side, tokens: Tokens, side: int) -> list[Primitive]:

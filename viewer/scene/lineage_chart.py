@@ -6,9 +6,9 @@ import numpy as np
 
 from viewer.insight.encounters import Encounter
 from viewer.insight.lineage import LineageFinding
-from viewer.scene.chart import HEIGHT, apart, chart_sheet, fitted, ticks
+from viewer.scene.chart import HEIGHT, apart, chart_sheet, corners, fitted, ticks
 from viewer.scene.figures import hertz
-from viewer.scene.primitives import Disc, Line, Primitive, Ring, Sheet, Text
+from viewer.scene.primitives import Disc, Line, Primitive, Ring, Sheet, Spot, Text, bounds
 from viewer.scene.tokens import BAND_HEIGHT, BASE_WIDTH, MARGIN, TEXT_SMALL, THEMES, Tokens
 
 LEFT, RIGHT, TOP, FOOT = 84.0, BASE_WIDTH - 236.0, 56.0, HEIGHT - BAND_HEIGHT - 58
@@ -36,7 +36,18 @@ def lineage_chart(finding: LineageFinding, title: str = "", theme: str = "light"
     ]
     notes = (" · ".join(legend) or "no two modes meet", finding.sentence.removesuffix("."))
     against = f"natural frequencies against {finding.parameter}" if finding.unit else "natural frequencies by design"
-    return chart_sheet(tokens, title or against, notes, items)
+    return chart_sheet(tokens, title or against, notes, items, spots=_spots(finding, x, y))
+
+
+def _spots(finding: LineageFinding, x, y) -> list[Spot]:
+    """Around each mode of each step; they stand for (step from 0, number of the mode)."""
+    found = []
+    for line in finding.lines:
+        for step, (number, hz) in enumerate(zip(line.modes, line.freq_hz, strict=True)):
+            if number:
+                box = bounds(((float(x(finding.values[step])), float(y(hz))),), 10.0)
+                found.append(Spot(corners(box), (step, number), f"mode {number} of {finding.labels[step]}"))
+    return found
 
 
 def _axes(finding: LineageFinding):

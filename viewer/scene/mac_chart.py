@@ -6,10 +6,10 @@ from collections.abc import Collection, Sequence
 
 from viewer.insight.pairing import Pairing
 from viewer.model.arrays import Array
-from viewer.scene.chart import blend, chart_sheet, fitted, readable_on, rectangle
+from viewer.scene.chart import blend, chart_sheet, corners, fitted, readable_on, rectangle
 from viewer.scene.chart_side import Side
 from viewer.scene.figures import hertz
-from viewer.scene.primitives import Line, Primitive, Sheet, Text
+from viewer.scene.primitives import Line, Primitive, Sheet, Spot, Text
 from viewer.scene.tokens import BAND_HEIGHT, BASE_WIDTH, MARGIN, TEXT, TEXT_SMALL, THEMES
 
 LEFT, TOP = 330.0, 96.0  # px kept for names at the side and above
@@ -47,7 +47,8 @@ def field_chart(
     title: str = "",
     theme: str = "light",
 ) -> Sheet:
-    """A field of MAC, ``matrix`` (modes of rows, of columns), with the cells ``framed`` (row, column from 0)."""
+    """A field of MAC, ``matrix`` (modes of rows, of columns), with the cells ``framed`` (row, column from 0). Spots
+    stand for (mode of rows, mode of columns), numbers from 1."""
     tokens = THEMES[theme]
     down, across = matrix.shape
     side = min(CELL[1], max(CELL[0], min((BASE_WIDTH - LEFT - MARGIN) / max(across, 1), 500.0 / max(down, 1))))
@@ -74,7 +75,16 @@ def field_chart(
     for i in range(down):
         for j in range(across):
             items += _cell(float(matrix[i, j]), i, j, (i, j) in framed, side, size, theme)
-    return chart_sheet(tokens, title, notes, items, height)
+    spots = [
+        Spot(
+            corners((LEFT + j * side, TOP + i * side, LEFT + (j + 1) * side, TOP + (i + 1) * side)),
+            (i + 1, j + 1),
+            f"mode {i + 1} of {rows.name} and mode {j + 1} of {columns.name}: {matrix[i, j]:.2f}",
+        )
+        for i in range(down)
+        for j in range(across)
+    ]
+    return chart_sheet(tokens, title, notes, items, height, spots)
 
 
 def _cell(value: float, i: int, j: int, framed: bool, side: float, size: float, theme: str) -> list[Primitive]:
@@ -87,8 +97,8 @@ def _cell(value: float, i: int, j: int, framed: bool, side: float, size: float, 
         items.append(Text(*middle, f"{value:.2f}", readable_on(colour, tokens), size, value >= 0.5, "middle"))
     if framed:
         low, high = 2.5, side - 2.5
-        corners = ((low, low), (high, low), (high, high), (low, high), (low, low))
-        items.append(Line(tuple((left + x, top + y) for x, y in corners), tokens.accent, 3.0))
+        around = (*corners((left + low, top + low, left + high, top + high)), (left + low, top + low))
+        items.append(Line(around, tokens.accent, 3.0))
     return items
 
 

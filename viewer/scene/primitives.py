@@ -136,14 +136,30 @@ class Frame:
     toward_eye: Array
 
 
+@dataclass(frozen=True)
+class Spot:
+    """A place of a sheet that stands for something: a convex outline, what it stands for (its numbers and names, as
+    the chart says), and that in words."""
+
+    outline: tuple[Point, ...]
+    what: tuple[object, ...]
+    words: str
+
+    @property
+    def box(self) -> Box:
+        return bounds(self.outline)
+
+
 @dataclass(frozen=True, eq=False)
 class Sheet:
-    """What is drawn over one frame: ``fixed`` is the same object at every phase, ``moving`` follows the phase."""
+    """What is drawn over one frame: ``fixed`` is the same object at every phase, ``moving`` follows the phase;
+    ``spots`` are the places that stand for something."""
 
     width: float
     height: float
     fixed: tuple[Primitive, ...]
     moving: tuple[Primitive, ...] = ()
+    spots: tuple[Spot, ...] = ()
 
     @property
     def items(self) -> tuple[Primitive, ...]:
