@@ -7,6 +7,7 @@ from functools import cache
 
 import numpy as np
 import scipy.sparse as sp
+from scipy.spatial import cKDTree
 
 from tests.faults.articles import ARTICLES, TESTED, design, real
 from viewer.model.arrays import Array
@@ -15,7 +16,7 @@ from viewer.model.testset import Correction, Placement, TestSet
 POINTS = {"boom": 22, "fork": 18}
 NOISE = 0.02  # standard deviation, of the largest reading of the mode: alike in all channels
 KINDS = ("flip", "swap", "exchange", "elsewhere", "dead channel", "dead point")
-SEEN = 6.0  # a fault is detectable when it changes some reading of its point by that many times the noise (rms of modes)
+SEEN = 6.0  # a fault is detectable when it changes a reading of its point by so many times the noise (rms of the modes)
 HERE = Placement(np.eye(3), np.zeros(3))
 
 
@@ -47,15 +48,20 @@ class Case:
 
 
 @cache
+def free_nodes(part: str) -> Array:
+    """Nodes of the skin at least a tenth of the part's size away from its support: nobody measures on a clamp."""
+    mesh = design(part).mesh
+    rows = mesh.skin.nodes
+    away, _ = cKDTree(mesh.points[mesh.node_groups["root"]]).query(mesh.points[rows])
+    return rows[away > 0.1 * mesh.diagonal]
+
+
+@cache
 def nodes_of(part: str) -> Array:
     """Nodes that carry a sensor: spread over the skin, each as far from the ones before as can be, the first at the
     node farthest from the support."""
-    mesh = design(part).mesh
-    rows = mesh.skin.nodes
-    root = mesh.points[mesh.node_groups["root"]]
-    away = np.linalg.norm(mesh.points[rows][:, None] - root.mean(axis=0), axis=2).ravel()
-    free = rows[away > 0.1 * mesh.diagonal]
-    points = mesh.points[free]
+    mesh, free = design(part).mesh, free_nodes(part)
+    points, root = mesh.points[free], mesh.points[mesh.node_groups["root"]]
     chosen = [int(np.argmax(np.linalg.norm(points - root.mean(axis=0), axis=1)))]
     distance = np.linalg.norm(points - points[chosen[0]], axis=1)
     while len(chosen) < POINTS[part]:
@@ -107,8 +113,7 @@ def case(part: str, seed: int, count: int | None = None, article: int | None = N
             wrong[:, rows], wrong[:, theirs] = before[:, theirs], before[:, rows]
             fix = Correction("move", label, other=str(other + 1))
         elif kind == "elsewhere":
-            skin = mesh.skin.nodes
-            node = int(skin[rng.integers(len(skin))])
+            node = int(rng.choice(free_nodes(part)))
             wrong[:, rows] = moved[:, node] / size[:, None]
             fix = Correction("move", label, position=tuple(mesh.points[node]))
         elif kind == "dead channel":

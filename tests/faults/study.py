@@ -9,11 +9,11 @@ fault       0, 1, 2 or 3 (seed modulo 4) at as many different points, kind and p
 detectable  by truth: without noise the fault changes at least one reading of its point by ``SEEN`` noise levels or
             more, root mean square over the modes. Found is also counted over all faults, detectable or not.
 found       a proposal of the same kind at the same place: point and axis; both axes; both points; for a point measured
-            elsewhere a place within ``NEAR`` of the size of the part; for dead ones every channel that is dead and
+            elsewhere a place within ``NEAR`` of the size of the part; of a dead point every channel whose loss is
             detectable by itself, and none that is alive. The kind must be right: "left out" for a wrong sign is a miss
             and a false proposal. A proposal that names alternatives counts by its first cause.
-false       a proposal that matches no fault at all, detectable or not; as a share of the proposals made, of the runs
-            with one at least, and of the runs of tests without faults with one at least.
+false       a proposal that is true of no fault, detectable or not; as a share of the proposals made, of the runs with
+            one at least, and of the runs of tests without faults with one at least.
 """
 
 from __future__ import annotations
@@ -50,19 +50,18 @@ def rows_of(one: Case, found: Faults) -> list[dict[str, object]]:
     """One row for every fault, then one for every false proposal, at least one for every run."""
     rows, matched = [], set()
     for fault in one.faults:
-        right = next((p for p in found.proposals if p.number not in matched and matches(one, fault, p)), None)
-        if right is not None:
-            matched.add(right.number)
+        right = [p for p in found.proposals if p.number not in matched and true_of(one, fault, p)]
+        matched |= {p.number for p in right}
         rows.append(
             {
                 "kind": fault.kind,
                 "fault": told(fault.correction),
                 "change": f"{fault.change:.1f}",
                 "detectable": int(fault.detectable),
-                "found": int(right is not None),
-                "alone": int(right is not None and right.certain),
-                "proposal": "" if right is None else told(right.correction),
-                "place_error": "" if right is None or right.reach is None else f"{error(one, fault, right):.3f}",
+                "found": int(bool(right) and complete(one, fault, right)),
+                "alone": int(bool(right) and all(p.certain for p in right)),
+                "proposal": " + ".join(told(p.correction) for p in right),
+                "place_error": f"{error(one, fault, right[0]):.3f}" if right and right[0].reach is not None else "",
                 "false": 0,
             }
         )
@@ -75,20 +74,28 @@ def rows_of(one: Case, found: Faults) -> list[dict[str, object]]:
     return [{**dict.fromkeys(FIELDS, ""), **head, **row} for row in rows or [{"kind": "none", "false": 0}]]
 
 
-def matches(one: Case, fault: Fault, proposal: Proposal) -> bool:
+def true_of(one: Case, fault: Fault, proposal: Proposal) -> bool:
+    """Whether what is proposed is true of the fault."""
     truth, said = fault.correction, proposal.correction
     if truth.kind != said.kind:
         return False
     if truth.kind == "leave out":
-        dead, out = _channels(one, truth), _channels(one, said)
-        loss = np.sqrt((one.true[:, sorted(dead)] ** 2).mean(axis=0)) / NOISE
-        needed = {c for c, n in zip(sorted(dead), loss, strict=True) if n >= SEEN} or dead
-        return out <= dead and needed <= out
+        return _channels(one, said) <= _channels(one, truth)
     if truth.position is not None:
         return said.point == truth.point and said.position is not None and error(one, fault, proposal) <= NEAR
     if truth.other:
         return {truth.point, truth.other} == {said.point, said.other}
     return (truth.point, {truth.axis, truth.other_axis}) == (said.point, {said.axis, said.other_axis})
+
+
+def complete(one: Case, fault: Fault, proposals: list[Proposal]) -> bool:
+    """Whether all of a fault is said: of a dead point, every channel whose loss is detectable by itself."""
+    if fault.correction.kind != "leave out":
+        return True
+    dead = sorted(_channels(one, fault.correction))
+    loss = np.sqrt((one.true[:, dead] ** 2).mean(axis=0)) / NOISE
+    out = set().union(*(_channels(one, p.correction) for p in proposals))
+    return {c for c, n in zip(dead, loss, strict=True) if n >= SEEN} <= out
 
 
 def error(one: Case, fault: Fault, proposal: Proposal) -> float:

@@ -25,6 +25,7 @@ SEARCH = 10.0  # more is asked of a place found among thousands
 MARGIN = 12.0  # two causes whose gains differ by less explain equally well
 PART = 0.2  # a cause that leaves more than this share of the surprise explains nothing by itself
 WIDE = 0.15  # of the size of the part: places that fit equally well may not lie farther apart
+TRIED = 8  # causes that are tried on all channels
 MOST = 40  # corrections tried: no test is wrong in more and still a test
 
 
@@ -47,6 +48,11 @@ class Hypothesis:
     @property
     def explains(self) -> bool:
         return self.gain >= GAIN and self.left <= PART * self.before
+
+    @property
+    def complete(self) -> bool:
+        """Whether nothing is left to explain in its channels."""
+        return self.left <= 0
 
     def made(self, y: Array, phi: Array, allowed: Array) -> tuple[Array, Array, Array]:
         """Readings (m, c), analysis modes (k, c) and channels in use (c,) with the cause put right."""
@@ -92,14 +98,13 @@ def search(
         progress.tick("looking for wrong channels", len(taken), None)
         believed = mixture.weights > 0
         sizes = expected_sizes(y[:, believed], phi[:, believed], freq_hz, own_modes(y[:, believed], phi[:, believed]))
-        mixture = settled(y, phi, sizes, mixture.weights, mixture.spread, allowed)
-        best = _best(test, y, phi, allowed, mixture, places, taken)
+        mixture = robust_fit(y, phi, sizes, test.sensor, allowed, mixture)
+        best = _best(test, y, phi, allowed, sizes, mixture, places, taken)
         if best is None:
             break
         y, phi, allowed = best.made(y, phi, allowed)
         taken.append(best)
-        weights = np.where(allowed, mixture.weights, 0.0)
-        mixture = settled(y, phi, sizes, weights, mixture.spread, allowed)
+        mixture = settled(y, phi, sizes, np.where(allowed, mixture.weights, 0.0), mixture.spread, allowed)
     return Found(tuple(taken), y, phi, allowed, mixture)
 
 
@@ -108,37 +113,51 @@ def suspected(mixture: Mixture, y: Array, allowed: Array) -> Array:
     return allowed & (mixture.surprise(y) > bound(len(y)))
 
 
-def _best(test, y, phi, allowed, mixture: Mixture, places: Places, taken: list[Hypothesis]) -> Hypothesis | None:
-    """The cause that explains most, with those that explain it equally well."""
+def _best(
+    test, y, phi, allowed, sizes, mixture: Mixture, places: Places, taken: list[Hypothesis]
+) -> Hypothesis | None:
+    """The cause that explains most, with those that explain it equally well. The likeliest ones are tried: each is
+    made, and all channels are fitted anew."""
     suspects = suspected(mixture, y, allowed)
     done = {h.correction for h in taken}
     found: list[Hypothesis] = []
     for point in np.unique(test.sensor[suspects]):
         own = [h for h in _causes(test, y, allowed, mixture, suspects, int(point)) if h.explains]
-        simple = max((h.gain for h in own), default=0.0)
+        simple = max((h.gain for h in own if h.complete), default=0.0)
         place = _elsewhere(test, y, allowed, mixture, int(point), places)
-        if place is not None and place.explains and place.gain >= max(GAIN + SEARCH, simple + SEARCH + MARGIN):
+        if place is not None and place.explains and place.complete and place.gain >= simple + SEARCH + MARGIN:
             own.append(place)
         found += [h for h in own if h.correction not in done]
-    if not found:
+    found.sort(key=lambda h: (h.complete, h.gain), reverse=True)
+    tried = [(h, _cost_with(h, y, phi, allowed, sizes, mixture)) for h in found[:TRIED]]
+    if not tried:
         return None
-    best = max(found, key=lambda h: h.gain)
+    best, least = min(tried, key=lambda pair: pair[1])
     about = {best.correction.point, best.correction.other} - {""}
     others = tuple(
         h.correction
-        for h in sorted(found, key=lambda h: -h.gain)
-        if h is not best
-        and h.gain > best.gain - MARGIN
-        and about & {h.correction.point, h.correction.other}
-        and not _same(h, best)
+        for h, cost in sorted(tried, key=lambda pair: pair[1])
+        if cost < least + MARGIN and about & {h.correction.point, h.correction.other} and not _same(h, best)
     )
     return replace(best, others=others)
 
 
+def _cost_with(made: Hypothesis, y, phi, allowed, sizes, mixture: Mixture) -> float:
+    """What the readings cost when the cause is put right. A dead channel reads noise about nothing."""
+    y, phi, still = made.made(y, phi, allowed)
+    weights = np.where(still, mixture.weights, 0.0)
+    weights[made.columns[still[made.columns]]] = 1.0
+    fitted = settled(y, phi, sizes, weights, mixture.spread, still)
+    dead = y[:, allowed & ~still]
+    noise = (np.abs(dead) ** 2 / fitted.spread[:, None] ** 2 + 2 * np.log(fitted.spread[:, None])).sum()
+    search = SEARCH if made.rows is not None else 0.0
+    return fitted.cost(y, still) + float(noise) + search
+
+
 def _same(one: Hypothesis, two: Hypothesis) -> bool:
-    """Whether two hypotheses are one: the exchange of two points, seen from either."""
+    """Whether two hypotheses are one; the exchange of two points is seen from either."""
     a, b = one.correction, two.correction
-    return a.kind == b.kind == "move" and bool(a.other) and {a.point, a.other} == {b.point, b.other}
+    return a == b or a.kind == b.kind == "move" and bool(a.other) and {a.point, a.other} == {b.point, b.other}
 
 
 def _causes(test, y, allowed, mixture: Mixture, suspects: Array, point: int) -> Iterator[Hypothesis]:
@@ -187,9 +206,8 @@ def _weighed(correction: Correction, y: Array, mixture: Mixture, columns: Array,
 
 def _dead(test, y, mixture: Mixture, rows: Array, wrong: Array) -> Iterator[Hypothesis]:
     """Channels that read nothing where there is something to read; the whole point when none of it is alive."""
-    modes = len(y)
     predicted, variance = mixture.without(y, rows)
-    quiet = (np.abs(y[:, rows]) ** 2 / mixture.spread[:, None] ** 2).mean(axis=0) <= bound(modes)
+    quiet = _quiet(y[:, rows], mixture)
     gain = (np.abs(y[:, rows] - predicted) ** 2 / variance - np.abs(y[:, rows]) ** 2 / variance).sum(axis=0)
     dead = quiet & np.isin(rows, wrong)
     label = test.labels[test.sensor[rows[0]]]
@@ -201,11 +219,18 @@ def _dead(test, y, mixture: Mixture, rows: Array, wrong: Array) -> Iterator[Hypo
         yield Hypothesis(fix, rows[[i]], float(gain[i]), 0.0, 1.0)
 
 
+def _quiet(readings: Array, mixture: Mixture) -> Array:
+    """(n,) bool: readings (m, n) are no larger than noise."""
+    return (np.abs(readings) ** 2 / mixture.spread[:, None] ** 2).mean(axis=0) <= bound(len(readings))
+
+
 def _elsewhere(test, y, allowed, mixture: Mixture, point: int, places: Places) -> Hypothesis | None:
     """The place of the structure that the point's readings fit best; None when they fit in too many."""
     rows = test.channels_of(point)
     rows = rows[allowed[rows]]
     modes = len(y)
+    if _quiet(y[:, rows], mixture).all():
+        return None  # a place that does not move and a dead point read the same
     predicted, variance = mixture.without(y, rows)
     before = (np.abs(y[:, rows] - predicted) ** 2 / variance).sum(axis=0)
     after = np.zeros((len(rows), len(places.points)))

@@ -27,7 +27,8 @@ MOST = 1.0  # of a mode's own size, the share that another may have whose freque
 LEAST = 0.01  # and the share that any may have
 KNOWN = 0.25  # MAC below which a measured mode has no analysis mode of its own
 EXACT = 0.005  # of a mode's rms: no reading is taken to be better than that
-STARTS = 40
+STARTS = 24
+SETTLED = 5  # of the starts are carried to their end
 KEPT = 0.7  # share of the channels that the best start is judged by
 DOUBT = 2e-5  # chance that a right channel would be set aside if readings were normal
 SLACK = 1.6  # times what that chance allows, since a model's errors are no noise
@@ -78,6 +79,14 @@ class Mixture:
         variance = square + np.where(self.weights > 0, reach / (1 - share), reach)
         return (np.abs(residual) ** 2 / variance).mean(axis=0)
 
+    def cost(self, y: Array, allowed: Array) -> float:
+        """−2 ln of the likelihood of the readings (but for a constant): those believed are normal about the fit, the
+        others could be anything of the size of the mode, rms 1."""
+        far = np.minimum(self.surprise(y), 2 * bound(len(y)))
+        believed = self.weights > 0
+        tight = 2 * np.log(self.spread).sum()
+        return float(len(y) * far[believed].sum() + believed.sum() * tight + len(y) * (allowed & ~believed).sum())
+
     def reach(self, rows: Array) -> Array:
         """(m, n) variance of a right reading at n places whose analysis modes are ``rows`` (k, n)."""
         return self.spread[:, None] ** 2 + np.einsum("kn,mkl,ln->mn", rows, self.inverse, rows)
@@ -124,33 +133,45 @@ def fit(y: Array, phi: Array, sizes: Array, weights: Array, spread: Array) -> Mi
     return Mixture(phi, inverse, weights, np.einsum("mkl,ml->mk", inverse, pull), spread)
 
 
-def robust_fit(y: Array, phi: Array, sizes: Array, points: Array, allowed: Array) -> Mixture:
-    """The fit that the most channels agree upon. ``points`` (c,) the point of each channel, ``allowed`` (c,) bool."""
+def robust_fit(
+    y: Array, phi: Array, sizes: Array, points: Array, allowed: Array, known: Mixture | None = None
+) -> Mixture:
+    """The fit that explains the readings best. ``points`` (c,) the point of each channel, ``allowed`` (c,) bool,
+    ``known`` a fit to start from too."""
     rng = np.random.default_rng(0)  # fixed: the same test gives the same answer
     labels = np.unique(points[allowed])
     rough = np.sqrt((np.abs(y[:, allowed]) ** 2).mean(axis=1))
-    kept = max(int(np.ceil(KEPT * allowed.sum())), 1)
-    best, least = None, np.inf
+    drafts: dict[bytes, tuple[float, Array, Array]] = {}
     for start in range(STARTS):
         chosen = labels if start == 0 else rng.permutation(labels)[: max((len(labels) + 1) // 2, 1)]
         weights = (allowed & np.isin(points, chosen)).astype(float)
-        spread = 0.2 * rough
-        for _ in range(8):
-            mixture = fit(y, phi, sizes, weights, spread)
-            residual = np.abs(y - mixture.coefficients @ phi) ** 2
-            far = np.where(allowed, (residual / spread[:, None] ** 2).mean(axis=0), np.inf)
-            took = np.argsort(far, kind="stable")[:kept]
-            again = np.zeros(len(far))
-            again[took] = 1.0
-            spread = np.sqrt(residual[:, took].mean(axis=1)) + EXACT * rough
-            if np.array_equal(again, weights):
-                break
-            weights = again
-        cost = float(np.log(spread).sum())
-        if cost < least:
-            best, least = (weights, spread), cost
-    assert best is not None
-    return settled(y, phi, sizes, *best, allowed)
+        weights, spread = _concentrated(y, phi, sizes, weights, 0.2 * rough, allowed)
+        drafts[weights.tobytes()] = (float(np.log(spread).sum()), weights, spread)
+    best = sorted(drafts.values(), key=lambda draft: draft[0])[:SETTLED]
+    starts = [(weights, spread) for _, weights, spread in best]
+    if known is not None:
+        starts.append((np.where(allowed, known.weights, 0.0), known.spread))
+    fits = [settled(y, phi, sizes, weights, spread, allowed) for weights, spread in starts]
+    return min(fits, key=lambda found: found.cost(y, allowed))
+
+
+def _concentrated(
+    y: Array, phi: Array, sizes: Array, weights: Array, spread: Array, allowed: Array
+) -> tuple[Array, Array]:
+    """Channels (c,) and spread (m,) after a few steps that each keep the channels nearest to the fit."""
+    kept = max(int(np.ceil(KEPT * allowed.sum())), 1)
+    floor = EXACT * np.sqrt((np.abs(y[:, allowed]) ** 2).mean(axis=1))
+    for _ in range(8):
+        residual = np.abs(y - fit(y, phi, sizes, weights, spread).coefficients @ phi) ** 2
+        far = np.where(allowed, (residual / spread[:, None] ** 2).mean(axis=0), np.inf)
+        took = np.argsort(far, kind="stable")[:kept]
+        spread = np.sqrt(residual[:, took].mean(axis=1)) + floor
+        again = np.zeros(len(far))
+        again[took] = 1.0
+        if np.array_equal(again, weights):
+            break
+        weights = again
+    return weights, spread
 
 
 def settled(y: Array, phi: Array, sizes: Array, weights: Array, spread: Array, allowed: Array) -> Mixture:
