@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 from PySide6.QtCore import Qt, Signal
+from PySide6.QtGui import QFontMetrics
 from PySide6.QtWidgets import QButtonGroup, QFrame, QHBoxLayout, QLabel, QMenu, QPushButton, QToolButton, QWidget
 
-from viewer.panels.theme import HEADER, MARGIN
+from viewer.panels.theme import HEADER, LABEL, MARGIN, face
 
 LAYOUT_WORDS = {"side": "side by side", "overlay": "overlay", "difference": "difference"}
 
@@ -28,7 +29,8 @@ class HeaderPanel(QWidget):
         self._segments.setObjectName("segments")
         self._segments.setAccessibleName("What is on the stage")
         self._row = QHBoxLayout(self._segments)
-        self._row.setContentsMargins(3, 3, 3, 3)
+        self._row.setContentsMargins(3, 2, 3, 2)
+        self._segments.setFixedHeight(HEADER - 14)
         self._row.setSpacing(2)
         self._group = QButtonGroup(self)
         self._group.setExclusive(True)
@@ -73,6 +75,8 @@ class HeaderPanel(QWidget):
     def _add(self, words: str, key: str, spoken: str) -> None:
         button = QPushButton(words, self._segments)
         button.setCheckable(True)
+        bold = QFontMetrics(face(LABEL, True))
+        button.setMinimumWidth(bold.horizontalAdvance(words) + 26)  # the checked one is bold
         button.setProperty("key", key)
         button.setAccessibleName(spoken)
         button.clicked.connect(self._clicked)

@@ -63,7 +63,7 @@ def sheet(theme: str) -> str:
     #gallery {{ border: none; border-top: 1px solid {t.rule}; }}
     #segments {{ background: {t.band}; border-radius: 8px; }}
     #segments QPushButton {{ background: transparent; border: 1px solid transparent; border-radius: 6px;
-        padding: 4px 10px; color: {t.soft}; }}
+        padding: 3px 10px; color: {t.soft}; }}
     #segments QPushButton:checked {{ background: {t.background}; color: {t.ink}; font-weight: bold; }}
     #segments QPushButton:disabled {{ color: {t.rule}; }}
     QPushButton:focus, QToolButton:focus, QLineEdit:focus, QComboBox:focus, QAbstractSpinBox:focus

@@ -4,13 +4,18 @@ from __future__ import annotations
 
 import os
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 import numpy as np
 
 from viewer.jobs import SILENT, Progress, in_child
 from viewer.model.arrays import Array
+from viewer.scene.motion import is_standing
 from viewer.scene.picture import Picture
 from viewer.scene.tokens import THEMES, rgb
+
+if TYPE_CHECKING:
+    from viewer.stage import Stage
 
 FRAMES = 20  # of one cycle
 _BARE = 0.45  # line widths are those of a picture this many times 960 wide
@@ -28,25 +33,33 @@ def ready(folder: Path) -> dict[int, Path]:
 
 
 def _draw_all(pictures: dict[int, Picture], folder: Path) -> None:
-    os.nice(5)  # the stage goes first
-    for mode, picture in pictures.items():
-        part = folder / f"{mode}.part"
-        with open(part, "wb") as file:
-            np.save(file, frames(picture))
-        part.replace(folder / f"{mode}.npy")
-
-
-def frames(picture: Picture) -> Array:
-    """(FRAMES, h, w, 4) uint8 of one cycle, the ground transparent."""
     from viewer.stage import Stage
 
+    os.nice(5)  # the window goes first
+    stage: Stage | None = None
+    try:
+        for mode, picture in pictures.items():
+            if stage is None:
+                stage = Stage(picture, bare=_BARE)
+            else:
+                stage.show(picture)
+            part = folder / f"{mode}.part"
+            with open(part, "wb") as file:
+                np.save(file, _frames(stage, picture))
+            part.replace(folder / f"{mode}.npy")
+    finally:
+        if stage is not None:
+            stage.close()
+
+
+def _frames(stage: Stage, picture: Picture) -> Array:
+    """(FRAMES, h, w, 4) uint8 of one cycle, the ground transparent."""
     ground = THEMES[picture.theme].background
-    drawn: dict[int, Array] = {}
-    with Stage(picture, bare=_BARE) as stage:
-        stage.plotter.renderer.SetBackground(*rgb(ground))
-        for frame in range(FRAMES // 2 + 1):
-            drawn[frame] = _clear(stage.image(2 * np.pi * frame / FRAMES), ground)
-    return np.stack([drawn[min(frame, FRAMES - frame)] for frame in range(FRAMES)])
+    stage.plotter.renderer.SetBackground(*rgb(ground))
+    standing = all(is_standing(body.shape) for body in picture.bodies)
+    source = [min(frame, FRAMES - frame) if standing else frame for frame in range(FRAMES)]
+    drawn = {frame: _clear(stage.image(2 * np.pi * frame / FRAMES), ground) for frame in sorted(set(source))}
+    return np.stack([drawn[frame] for frame in source])
 
 
 def _clear(image: Array, ground: str) -> Array:

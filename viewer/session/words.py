@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from dataclasses import dataclass
 
 from viewer.export.rows import point_rows
@@ -82,7 +83,7 @@ def _does(project: Project, state: State) -> Entry:
         return Entry("does", LOOKING, False)
     if told.character is None:
         return Entry("does", _refusal(told.refused), False)
-    return Entry("does", told.character.sentence)
+    return Entry("does", _after_title(told.character.sentence, state.mode))
 
 
 def _folds(project: Project, state: State) -> Entry:
@@ -185,7 +186,14 @@ def _change(project: Project, state: State) -> Entry:
         return Entry("change", LOOKING, False)
     if told.gain is None:
         return Entry("change", _refusal(told.refused), False)
-    return Entry("change", told.gain.sentence)
+    return Entry("change", _after_title(told.gain.sentence, state.mode))
+
+
+def _after_title(sentence: str, mode: int) -> str:
+    """A sentence without "Mode 1 (boom nods): " or "Mode 1 (84.79 Hz): " in front, which stands over it already."""
+    found = re.match(rf"Mode {mode}(?: \([^()]*\))?: ", sentence)
+    said = sentence[found.end() :] if found else sentence
+    return said[:1].upper() + said[1:]
 
 
 def _refusal(reasons: tuple[str, ...]) -> str:
