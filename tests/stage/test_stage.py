@@ -224,7 +224,7 @@ def test_rings_face_a_turned_camera():
     scene = picture(shown, view=first)
     with Stage(scene) as stage, Stage(scene.with_(view=turned)) as other:
         stage.image(0.0)
-        stage._aim(other.camera())
+        stage.aim(other.camera())
         assert stage.image(0.0).tobytes() == other.image(0.0).tobytes()
 
 

@@ -42,7 +42,8 @@ class Kind:
 KINDS = {
     "comac": Kind(
         "Where test and analysis agree",
-        "each channel over all paired modes, signs aside (COMAC): 1 agrees, 0 has nothing in common",
+        "each channel over all paired modes, signs aside (COMAC): 1 agrees, 0 does not, and it says little where "
+        "a point hardly moves",
         "COMAC, worst channel of the point",
         1.0,
         0.0,

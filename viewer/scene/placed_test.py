@@ -8,7 +8,7 @@ from functools import cached_property
 
 import numpy as np
 
-from viewer.cells.locate import interpolation, nearest
+from viewer.cells.locate import Places, interpolation, nearest
 from viewer.errors import InputError
 from viewer.insight.corrections import correction_words
 from viewer.model.arrays import Array, frozen
@@ -22,11 +22,13 @@ SMALL = 0.1  # share of the largest channel below which a channel's phase is mos
 
 @dataclass(frozen=True, eq=False)
 class PlacedTest:
-    """A test with its placement; ``used`` (c,) bool: the channels that comparisons use."""
+    """A test with its placement; ``used`` (c,) bool: the channels that comparisons use; ``places`` of the mesh that
+    the points lie in or nearest to, when they are known."""
 
     test: TestSet
     placement: Placement
     used: Array
+    places: Places | None = None
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "used", frozen(self.used, bool, shape=(self.test.n_channels,)))
@@ -76,7 +78,7 @@ class PlacedTest:
         if not mesh.n_cells:
             return motion
         blocks = [(block.kind, block.nodes) for block in mesh.blocks]
-        found = nearest(blocks, mesh.points, self.points)
+        found = nearest(blocks, mesh.points, self.points) if self.places is None else self.places
         carried = np.zeros((len(self.points), 3), np.result_type(shape, motion))
         for rows, nodes, weights in interpolation(blocks, found):
             carried[rows] = np.einsum("kn,knd->kd", weights, shape[nodes])
@@ -114,10 +116,12 @@ class PlacedTest:
         return corrections_said(self.test)
 
 
-def place(test: TestSet, placement: Placement | None = None, used: Array | None = None) -> PlacedTest:
+def place(
+    test: TestSet, placement: Placement | None = None, used: Array | None = None, places: Places | None = None
+) -> PlacedTest:
     """A test in a mesh's axes; no placement: its axes are the mesh's. ``used`` (c,) bool, None: all channels."""
     still = Placement(np.eye(3), np.zeros(3))
-    return PlacedTest(test, placement or still, np.ones(test.n_channels, bool) if used is None else used)
+    return PlacedTest(test, placement or still, np.ones(test.n_channels, bool) if used is None else used, places)
 
 
 def steadiest(values: Array) -> complex:

@@ -16,7 +16,6 @@ import numpy as np
 from viewer.errors import RefusedError
 from viewer.insight.correlate import modal_scale_factor
 from viewer.insight.hinges import HingeFinding
-from viewer.insight.phase import phase_deviation_deg
 from viewer.insight.scale import DRAWN_PEAK, Scale
 from viewer.model.arrays import Array
 from viewer.model.cycle import cycle_peaks
@@ -30,9 +29,10 @@ from viewer.scene.tokens import BASE_WIDTH
 from viewer.scene.view import side_height
 from viewer.workspace import Study
 
-PHASES_SEEN = 5.0  # mean phase deviation, degrees, from which on a travelling motion can be told from a standing one
+PHASES_SEEN = 10.0  # degrees of phase scatter from which on a travelling motion can be told from a standing one
 ROLES = ("test", "ink")
 NO_TICKS = np.empty((0, 3))
+ALMOST_ONE = 0.995  # a MAC that two digits would call 1.00
 MEASURED_ONLY = "points move in the measured directions only"
 FOLLOWING = "unmeasured directions follow the drawn body"
 
@@ -56,7 +56,7 @@ def over_picture(
 
     analysis     (c,) motion of the analysis mode along every channel of the test, in units of its shape
     mac          of the pair, said in the note
-    keep_phases  None: where the mean phase deviation is 5° or more
+    keep_phases  None: where the phase scatter is 10° or more
     labels       of the points to write; "all"
     ``look``: theme, ghost, mesh_edges, view of ``Picture``. ``RefusedError`` when nothing measured moves.
     """
@@ -164,8 +164,10 @@ def expanded_picture(
     study: Study,
     test_mode: int,
     placed: PlacedTest,
-    said: str,
+    said: str = "",
     *,
+    name: str = "",
+    keep_phases: bool | None = None,
     energy: bool = True,
     finding: HingeFinding | None = None,
     labels: Sequence[str] | str = (),
@@ -176,18 +178,21 @@ def expanded_picture(
 
     study  of the expanded shapes, which are in the units of the test's and have its numbers
     said   where they come from, for the note: "expanded from 34 channels on 6 analysis modes"
+    name   of the mode
     """
     picture = single_picture(study, test_mode, energy=energy, finding=finding, width=width, **look)
     (body,) = picture.bodies
-    motion, phases = _phased(placed, test_mode, study.scale(test_mode - 1).turn, np.iscomplexobj(body.shape) or None)
+    motion, phases = _phased(placed, test_mode, study.scale(test_mode - 1).turn, keep_phases)
+    if not np.iscomplexobj(motion):
+        body = _in_phase(body)
     motion = placed.completed(motion, body.mesh, body.shape)
     test = placed.mark(*_named(placed, test_mode, motion), calls=placed.tags(labels), ticks=NO_TICKS)
     note = picture.note
     note = replace(
         note,
-        title=note.title.replace("Mode", "Test mode", 1),
+        title=" · ".join(part for part in (f"Test mode {test_mode}", name) if part),
         frequency="",
-        drawing=(said, *note.drawing, *phases),
+        drawing=(*([said] if said else []), *note.drawing, *phases),
         condition=(*note.condition, *placed.corrections_said),
     )
     name = f"expanded onto {body.name}"
@@ -201,6 +206,15 @@ def _analysis(study: Study, mode: int, true_scale: bool) -> tuple[Body, Scale]:
     index = study.index_of(mode)
     scale = study.scale(index, true_scale=true_scale)
     return mode_body(study, index, scale, scale.turn, energy=False), scale
+
+
+def _in_phase(body: Body) -> Body:
+    """The body with the real part of its motion alone."""
+    if not np.iscomplexobj(body.shape):
+        return body
+    masses = tuple(replace(mark, motion=np.real(mark.motion)) for mark in body.masses)
+    hinges = tuple(replace(mark, motion=np.real(mark.motion), fold=np.real(mark.fold)) for mark in body.hinges)
+    return replace(body, shape=np.real(body.shape), masses=masses, hinges=hinges)
 
 
 def _turn(values: Array, scale: Scale) -> complex | float:
@@ -226,10 +240,10 @@ def _phased(placed: PlacedTest, test_mode: int, factor: complex, keep: bool | No
     motion = placed.motion(test_mode)
     if not np.iscomplexobj(motion):
         return motion * np.real(factor), []
-    values = placed.test.shapes[test_mode - 1, placed.used]
-    scatter = f"phase scatter up to {digits(placed.phase_scatter_deg(test_mode), trim=True)}°"
+    degrees = placed.phase_scatter_deg(test_mode)
+    scatter = f"phase scatter up to {digits(degrees, trim=True)}°"
     if keep is None:
-        keep = bool(phase_deviation_deg(values)[0] >= PHASES_SEEN)
+        keep = degrees >= PHASES_SEEN
     if keep:
         return motion * factor, [f"measured phases kept: {scatter}"]
     return np.real(motion * factor), [f"drawn in phase: {scatter} left out"]
@@ -256,7 +270,7 @@ def _paired_note(
     return replace(
         note,
         title=f"Test mode {test_mode} · analysis {note.title[0].lower()}{note.title[1:]}",
-        frequency="" if mac is None else f"MAC {mac:.2f}",
+        frequency="" if mac is None else f"MAC {mac:.{2 if mac < ALMOST_ONE else 3}f}",
         drawing=tuple(drawing),
     )
 
