@@ -23,10 +23,10 @@ SURE = (
 )
 FAR = 6 * SURE  # farther from the body a point is not on it
 SAME_GAP, SAME_TURN = 0.05, 20.0  # of the diagonal, degrees: two placements closer than both are the same
-STARTS = 600  # turns: neighbours are about 20° apart
+STARTS = 400  # turns: neighbours are about 25° apart
 _SLACK = 0.15  # of the diagonal: room around the points, from which on shifted starts are tried
 # Steps with the coarse surface, the distance beyond which points weigh little, and how many poses go on.
-_ROUNDS = ((4, 0.3, 200), (6, 0.1, 60), (8, 0.03, 24))
+_ROUNDS = ((4, 0.3, 120), (6, 0.1, 40), (6, 0.03, 16))
 _GROUP = 24  # placements of a symmetric body that are told apart at most
 _SHAKEN = 6  # of the best placements, so many are looked around for a better one
 
@@ -159,7 +159,9 @@ def with_symmetries(
         moves += [(turns[i] @ turns[0].T, shifts[i] - turns[i] @ turns[0].T @ shifts[0]) for i in fitting[1:]]
         tried = [(turn @ turns[i], turn @ shifts[i] + shift) for turn, shift in moves for i in fitting]
         fresh_turns, fresh_shifts = (np.array(part) for part in zip(*tried, strict=True))
-        fresh = distinct(fit, fresh_turns, fresh_shifts, fit.cost(fresh_turns, fresh_shifts), 2 * _GROUP)
+        raw = fit.cost(fresh_turns, fresh_shifts)
+        close = raw <= 3 * cost[0] + 2 * SURE * fit.size  # a symmetry leaves little to refine
+        fresh = distinct(fit, fresh_turns[close], fresh_shifts[close], raw[close], 2 * _GROUP)
         both = [np.concatenate(part) for part in zip((turns, shifts, cost), fit.refined(*fresh[:2]), strict=True)]
         turns, shifts, cost = distinct(fit, both[0], both[1], both[2], len(both[0]))
         moves = []
