@@ -95,7 +95,7 @@ class _Reader(Parts):
         tests = tuple(
             plan_of_test(self, item, f'tests {n} ("{item.name}")', plans) for n, item in enumerate(table.tests, 1)
         )
-        return Dossier(table.title, self.path, plans, amplitudes, pairs, table.condition, sweeps, tests)
+        return Dossier(table.title, self.path, plans, amplitudes, pairs, table.condition, sweeps, tests, self.length)
 
     def plan(
         self, item: schema.DesignTable, place: str, materials: dict[str, Material], points: dict[str, FunctionalPoint]

@@ -156,6 +156,7 @@ class Dossier:
     condition: str = ""  # words for pictures that state no size: "clamped root, camera 1.2 kg"
     sweeps: tuple[SweepPlan, ...] = ()
     tests: tuple[TestPlan, ...] = ()
+    length_unit: float = 1.0  # m per unit of length in the file
 
     def plan(self, name: str) -> DesignPlan:
         for plan in self.plans:

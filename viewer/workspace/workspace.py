@@ -5,21 +5,35 @@ from __future__ import annotations
 import tempfile
 from dataclasses import dataclass, field, replace
 from pathlib import Path
+from typing import TYPE_CHECKING
 
-from viewer.errors import RefusedError
+import numpy as np
+
+from viewer.errors import HingelightError, RefusedError
 from viewer.jobs import SILENT, Progress, in_child
-from viewer.loaders import ReadReport, read_dossier_report, read_matrices, read_mesh_report, read_modes
+from viewer.loaders import (
+    ReadReport,
+    read_dossier_report,
+    read_matrices,
+    read_mesh_report,
+    read_modes,
+    read_planned_test,
+)
 from viewer.mechanics.eigen import solve
 from viewer.model.design import Design
 from viewer.model.dossier import DesignPlan, Dossier, StatedAmplitude
-from viewer.model.modes import ModeSet
+from viewer.model.modes import ArrayShapes, ModeSet
 from viewer.workspace.keys import design_key
 from viewer.workspace.store import Cache, read_modes_npz, write_modes_npz
 from viewer.workspace.study import Study, study
 
+if TYPE_CHECKING:
+    from viewer.workspace.testing import TestStudy
+
 # Nodes. A factorisation hears neither Ctrl-C nor a cancel, so that larger designs are solved in a process that can be
 # killed; a block of 8 000 nodes (24 000 directions) keeps SuperLU busy for seconds at a stretch.
 IN_CHILD_ABOVE = 4_000
+BEYOND = 2  # times as many modes of a design as of a test beside it: some lie between those measured, some beyond
 
 
 @dataclass
@@ -123,8 +137,12 @@ class OpenDossier:
 
     def modes(self, name: str, count: int | None = None, progress: Progress = SILENT) -> ModeSet:
         """The mode set of the named design: from its file, or solved."""
-        design = self.design(name, progress)
-        return self.workspace.modes(design, self.dossier.plan(name), count, progress)
+        design, plan = self.design(name, progress), self.dossier.plan(name)
+        wanted = count or plan.mode_count
+        if plan.modes_file is None and any(test.design == name for test in self.dossier.tests):
+            # a test needs modes beyond its own: solved once for both
+            return _first(self.workspace.modes(design, plan, BEYOND * wanted, progress), wanted)
+        return self.workspace.modes(design, plan, count, progress)
 
     def study(
         self, name: str, count: int | None = None, progress: Progress = SILENT, *, energy: bool = True
@@ -140,6 +158,23 @@ class OpenDossier:
             except RefusedError as error:
                 raise error.at(file=self.dossier.path, place="amplitudes") from None
         return found
+
+    def test(self, name: str, design: str = "", count: int | None = None, progress: Progress = SILENT) -> TestStudy:
+        """The named test beside the design that the dossier says, or beside ``design``; ``count`` modes of it are
+        asked for at least. Raises what reading, solving and registration raise."""
+        from viewer.workspace.testing import lay_beside  # heavy, and most runs have no test
+
+        plan, recorded = self.dossier.test(name), read_planned_test(self.dossier, name, progress)
+        beside = design or plan.design
+        own = self.dossier.plan(beside)
+        wanted = BEYOND * max(count or own.mode_count, recorded.count)
+        modes = self.workspace.modes(self.design(beside, progress), own, wanted, progress)
+        amplitudes = self._amplitudes(beside, modes)
+        found = study(self.design(beside), modes, amplitudes, self.dossier.condition, progress, energy=False)
+        try:
+            return lay_beside(found, plan, recorded, self.dossier.length_unit, progress)
+        except HingelightError as error:
+            raise error.at(file=self.dossier.path, place=f'tests "{name}"') from None
 
     def doubts(self, name: str) -> tuple[str, ...]:
         """What reading the named design's mesh found hard to believe: an implausible size, nodes far off."""
@@ -169,6 +204,16 @@ def dossier_file(path: str | Path) -> Path:
     """The dossier that ``path`` names: the file itself, or ``dossier.toml`` in a folder."""
     path = Path(path)
     return path / "dossier.toml" if path.is_dir() else path
+
+
+def _first(modes: ModeSet, count: int) -> ModeSet:
+    """The first ``count`` modes of a solved set."""
+    if modes.count <= count:
+        return modes
+    moved = np.array([modes.shape(i) for i in range(count)])
+    turns = [modes.rotations(i) for i in range(count)]
+    turned = None if any(turn is None for turn in turns) else np.array(turns)
+    return modes.with_(freq_hz=modes.freq_hz[:count], shapes=ArrayShapes(moved, turned))
 
 
 def _solve_into(design: Design, count: int, path: Path) -> Path:
