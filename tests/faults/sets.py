@@ -16,7 +16,9 @@ from viewer.model.testset import Correction, Placement, TestSet
 POINTS = {"boom": 22, "fork": 18}
 NOISE = 0.02  # standard deviation, of the largest reading of the mode: alike in all channels
 KINDS = ("flip", "swap", "exchange", "elsewhere", "dead channel", "dead point")
-SEEN = 6.0  # a fault is detectable when it changes a reading of its point by so many times the noise (rms of the modes)
+SEEN = (
+    6.0  # a fault is detectable when it changes a reading of its point by so many times the noise (rms of the modes)
+)
 HERE = Placement(np.eye(3), np.zeros(3))
 
 

@@ -293,7 +293,9 @@ def _sentence(facts: dict[str, Any]) -> str:
     if not many:
         text = f"none of {_count(facts['channels_checked'], 'channel')} contradicts the others"
         if facts["unexplained_count"]:
-            text = f"no cause was found for {_count(facts['unexplained_count'], 'channel')} that contradict the others"
+            text = (
+                f"no cause was found for {_count(facts['unexplained_count'], 'channel')} that contradict the others"
+            )
     else:
         listed = "; ".join(f"({p['number']}) {p['words']}" for p in facts["proposals"])
         text = f"{_count(many, 'thing')} {'seems' if many == 1 else 'seem'} wrong: {listed}"

@@ -78,6 +78,7 @@ class ModeSet:
     origin         "computed", "imported", "measured"
     cell_energy    (m, n_cells) strain energy by cell row that the source of the modes gave along, in its own unit and
                    at the size of its shapes, NaN where it gave none; None: nothing given
+    caution        what every figure and picture of these shapes must say, empty when nothing: "expanded from …"
     """
 
     node_ids: Array
@@ -88,6 +89,7 @@ class ModeSet:
     origin: str = "imported"
     source: str = ""
     cell_energy: Array | None = None
+    caution: str = ""
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "node_ids", frozen(self.node_ids, np.int64, shape=(None,)))
