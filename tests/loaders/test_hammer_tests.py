@@ -297,6 +297,14 @@ def test_a_mode_that_a_run_lacks_is_left_out_and_named():
     assert any("modes of run 1 that are not in every run were left out: 20.25 Hz" in r for r in merged.remarks)
 
 
+def test_close_modes_keep_their_order():
+    """The sum of differences is the same either way round; squared, only the one in order is least."""
+    test = small_test().with_(freq_hz=[12.5, 12.6, 31.0])
+    merged = merge_runs([test, test.with_(freq_hz=[13.0, 13.2, 31.0])])
+    np.testing.assert_allclose(merged.freq_hz, [12.75, 12.9, 31.0])
+    np.testing.assert_allclose(merged.shapes, test.shapes)
+
+
 def test_runs_that_cannot_be_merged():
     test = small_test()
     with pytest.raises(LoadError, match=r"run 2 has no channel in common with the others.*reference point"):
@@ -308,7 +316,7 @@ def test_runs_that_cannot_be_merged():
         merge_runs([test, test.with_(freq_hz=test.freq_hz * 10)])
     still = test.shapes.copy()
     still[1, 2] = 0
-    with pytest.raises(LoadError, match="shared channels of run 2 do not move in mode 2"):
+    with pytest.raises(LoadError, match=r"shared channels of run 2 do not move in the mode at 20\.25 Hz"):
         merge_runs([test.only([0, 1, 2]), test.with_(shapes=still).only([2, 3])])
 
 
@@ -317,7 +325,7 @@ def test_a_faint_reference_is_remarked_upon():
     shapes = test.shapes.copy()
     shapes[0, 2] = 0.01
     merged = merge_runs([s.only(c) for s, c in ((test, [0, 1, 2]), (test.with_(shapes=shapes), [2, 3, 4, 5, 6]))])
-    assert any("run 2 hardly move in mode 1" in remark for remark in merged.remarks)
+    assert any("run 2 hardly move in the mode at 12.5 Hz" in remark for remark in merged.remarks)
 
 
 def test_runs_in_several_files_and_in_one(tmp_path):

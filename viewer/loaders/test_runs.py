@@ -2,11 +2,11 @@
 
 Two runs share a channel where they measured at the same point in the same or the opposite direction. The first run
 leads: a mode of another run belongs to that mode of the first whose frequency lies nearest (all at once, by the
-least sum of relative differences, none above 10 %: common practice, no source); modes that a run lacks are left out.
-The shapes of a run are multiplied by the factor, complex when shapes are, by which they come closest, in the sense of
-least squares, to what the runs merged before it have on the shared channels (modal scale factor, Allemang & Brown
-1982); there the mean of all runs is kept. Frequencies and damping ratios are means over the runs. How far the runs
-differ is reported in the remarks.
+least sum of squared relative differences, so that close modes keep their order, none above 10 %: common practice, no
+source); modes that a run lacks are left out. The shapes of a run are multiplied by the factor, complex when shapes
+are, by which they come closest, in the sense of least squares, to what the runs merged before it have on the shared
+channels (modal scale factor, Allemang & Brown 1982); there the mean of all runs is kept. Frequencies and damping
+ratios are means over the runs. How far the runs differ is reported in the remarks.
 """
 
 from __future__ import annotations
@@ -104,7 +104,7 @@ class _Merged:
             if apart > _APART:
                 self.remarks.append(
                     f"run {number + 1} differs from the others by {apart:.0%} on the channels that they share "
-                    f"in mode {mode + 1}"
+                    f"in {self._mode_words(mode)}"
                 )
         np.add.at(self.sums.T, at[mine], (shapes[:, mine] * sign[mine]).T)
         np.add.at(self.counts, at[mine], 1)
@@ -117,24 +117,30 @@ class _Merged:
         share = np.abs(shared).max() / np.abs(shape).max() if shape.any() else 0.0
         if not share > 1e-9:
             raise LoadError(
-                f"the shared channels of run {number + 1} do not move in mode {mode + 1}",
+                f"the shared channels of run {number + 1} do not move in {self._mode_words(mode)}",
                 file=_sources(self.sets),
                 expected="motion in every mode, by which the runs are scaled",
                 do="choose a reference point that moves in all modes",
             )
         if share < _FAINT:
             self.remarks.append(
-                f"the shared channels of run {number + 1} hardly move in mode {mode + 1} ({share:.1%} of the largest "
-                "motion): the run is scaled by little more than noise there"
+                f"the shared channels of run {number + 1} hardly move in {self._mode_words(mode)} ({share:.1%} of "
+                "the largest motion): the run is scaled by little more than noise there"
             )
+
+    def _mode_words(self, mode: int) -> str:
+        """By frequency: numbers change as modes are left out."""
+        return f"the mode at {self.sets[0].freq_hz[self.modes[0][mode]]:.4g} Hz"
 
     def result(self) -> TestSet:
         sets, first = self.sets, self.sets[0]
         freq = np.array([run.freq_hz[modes] for run, modes in zip(sets, self.modes, strict=True)])
-        spread = np.ptp(freq, axis=0) / freq.mean(axis=0)
+        means = freq.mean(axis=0)
+        spread = np.ptp(freq, axis=0) / means
         worst = int(np.argmax(spread))
         remarks = [
-            f"frequencies are means over the runs, which differ by at most {spread[worst]:.2%} (mode {worst + 1})"
+            f"frequencies are means over the runs, which differ by at most {spread[worst]:.2%} in "
+            f"{self._mode_words(worst)}"
         ]
         for number, (run, modes) in enumerate(zip(sets, self.modes, strict=True), 1):
             lost = np.setdiff1d(np.arange(run.count), modes)
@@ -150,7 +156,7 @@ class _Merged:
             lines=np.unique(np.sort(lines, axis=1), axis=0),
             sensor=self.sensor,
             directions=self.directions,
-            freq_hz=freq.mean(axis=0),
+            freq_hz=means,
             shapes=self.sums / self.counts,
             damping=self._damping(),
             source=_sources(sets),
@@ -176,7 +182,7 @@ class _Merged:
 def _modes_of(first: TestSet, run: TestSet) -> Array:
     """(m,) the mode of ``run`` that belongs to each mode of ``first``, or −1."""
     apart = np.abs(np.log(run.freq_hz[None, :] / first.freq_hz[:, None]))
-    rows, columns = linear_sum_assignment(np.minimum(apart, 10.0))
+    rows, columns = linear_sum_assignment(np.minimum(apart, 10.0) ** 2)
     out = np.full(first.count, -1)
     near = apart[rows, columns] <= np.log1p(_SAME_MODE)
     out[rows[near]] = columns[near]
