@@ -10,7 +10,7 @@ from viewer.insight.hinges.curve import Line
 from viewer.insight.hinges.field import Field
 from viewer.insight.hinges.frame import Frame, frame_of
 from viewer.insight.hinges.profile import Edges, edges_of, profile
-from viewer.insight.hinges.sides import GROUND, Side, inner_turn, local_turns, side_of
+from viewer.insight.hinges.sides import GROUND, Side, local_turns, side_of
 from viewer.model.arrays import Array
 
 _DENSER = 2.5  # times what lies beside it: as far the strip along the line belongs to the band
@@ -31,7 +31,6 @@ class Draft:
     fold       (3,) mean rotation of B relative to A, extrapolated to the edges
     bend       rad, the turn about the line, root mean square along it
     even       share of the squared turn that is the mean turn
-    inner      turn that the band's own cells show over the turn of its edges
     aligned    share of the fold that is about the line (or about the axis of a blob)
     steep      slope of the rotation in the band over the larger slope beside it
     turn_share fold over fold and variation of rotation on both sides
@@ -53,7 +52,6 @@ class Draft:
     fold: Array
     bend: float
     even: float
-    inner: float
     aligned: float
     steep: float
     turn_share: float
@@ -231,7 +229,6 @@ def _draft(
     fold = sides[1].edge - sides[0].edge
     middle = int(np.argmin(np.abs(frame.along - sum(ends) / 2) + np.abs(frame.across - edges[1])))
     about = frame.about[middle]
-    inner = inner_turn(field, frame, band, width)
     slopes = [abs(float(side.slope @ about)) for side in sides]
     rest = frame.near[~band]
     density = strain / volume
@@ -248,7 +245,6 @@ def _draft(
         fold=fold,
         bend=bend,
         even=even,
-        inner=1.0 if inner is None else inner / bend,
         aligned=float(abs(fold @ about) / max(np.linalg.norm(fold), 1e-300)),
         steep=bend / width / max(*slopes, 1e-12 * bend / width),
         turn_share=bend / (bend + sides[0].variation + sides[1].variation),

@@ -7,6 +7,7 @@ import numpy as np
 from viewer.insight.hinges.band import Draft
 from viewer.insight.hinges.field import Field
 
+_NECK = "the only way across"
 JOINT = 1.6  # elongation below which a band has no line
 
 # Least value of each figure; a figure that must be small is given as its reciprocal.
@@ -32,10 +33,16 @@ AT_JOINT = {
     "steepness": 1.8,
     "abrupt edges": 2.0,
     "turn against the bending beside it": 0.3,
+    _NECK: 1.0,
 }
 STRONG_SCORE, STRONG_TURN = 1.5, 0.35
 _JOINT_SIZE = 0.65  # a joint as large as this share over the bound on slenderness, 1/10 of the part, is none
-_CAPPED = {"turn about the line", "one sense along the line", "even density across"}  # shares: they say no more
+_CAPPED = {
+    "turn about the line",
+    "one sense along the line",
+    "even density across",
+    _NECK,
+}  # shares: they say no more
 
 
 def is_joint(draft: Draft) -> bool:
@@ -45,10 +52,20 @@ def is_joint(draft: Draft) -> bool:
     )
 
 
+def only_way(field: Field, draft: Draft) -> bool:
+    """Whether the two sides do not hang together around the band in its surroundings. A joint is a neck; where stress
+    crowds in the middle of a sheet, at a corner or on the back of a rib, material goes past it."""
+    near = np.setdiff1d(draft.frame.near, draft.cells)
+    number = np.full(len(field.volume), -1)
+    number[near] = field.pieces(near)
+    first, second = (number[side.cells] for side in draft.sides)
+    return not np.intersect1d(first[first >= 0], second[second >= 0]).size
+
+
 def values(field: Field, draft: Draft) -> dict[str, float]:
     """The figure of every gate."""
     joint = is_joint(draft)
-    return {
+    return ({_NECK: float(only_way(field, draft))} if joint else {}) | {
         "share of the energy": draft.strain,
         "contrast": draft.contrast,
         "sharp edges": draft.step,

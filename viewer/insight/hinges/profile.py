@@ -10,6 +10,8 @@ from viewer.model.arrays import Array
 
 _BINS = 160
 _POWER = 0.75
+_STEP = 1.5  # of the levels, at either edge: a line that only falls from its neighbour's level is no band
+_CLEARLY = 0.5  # of the squares that a level leaves: a slope that leaves no less than this share is not believed
 _SLOPED = 4  # strips from which a band's own slope is looked at
 
 
@@ -79,19 +81,23 @@ def edges_of(found: Profile) -> Edges | None:
     with np.errstate(invalid="ignore", divide="ignore"):
         before = np.where(start > 0, total[start] / start, 0.0)
         after = np.where(stop < n, (total[n] - total[stop]) / (n - stop), 0.0)
-    # The moment may change across the band, so that inside the level is a straight line; both its ends must be steps up.
-    place = np.arange(n + 1)
-    moment = np.concatenate([[0.0], np.cumsum(y * (place[:-1] + 0.5))])
     count = stop - start
-    spread = np.maximum(count * (count**2 - 1.0) / 12, 1e-12)
-    slope = (moment[stop] - moment[start] - inside * count * (start + stop) / 2) / spread
-    slope = np.where(count >= _SLOPED, slope, 0.0)
+    flat = count * inside**2 + start * before**2 + (n - stop) * after**2
+    place = np.arange(n) + 0.5
+    moment = np.concatenate([[0.0], np.cumsum(y * place)])
+    spread = count * (count**2 - 1.0) / 12
+    first = moment[stop] - moment[start] - inside * count * (start + stop) / 2
+    slope = np.where(count >= _SLOPED, first / np.maximum(spread, 1.0), 0.0)
     rise = slope * count / 2
-    gain = count * inside**2 + slope**2 * spread + start * before**2 + (n - stop) * after**2
-    good = (inside - rise > before) & (inside + rise > after) & (count < 0.9 * n)
-    if not good.any():
+    usable = count < 0.9 * n
+    best, left = _best(flat, usable & (inside > before) & (inside > after), y)
+    other, less = _best(
+        flat + slope**2 * spread, usable & (inside - rise > _STEP * before) & (inside + rise > _STEP * after), y
+    )
+    if less < _CLEARLY * left:
+        best = other
+    if best < 0:
         return None
-    best = int(np.argmax(np.where(good, gain, -np.inf)))
     a, b = int(start[best]), int(stop[best])
     inner = density[a:b]
     width, edge = max(1, (b - a) // 6), max(1, (b - a) // 4)
@@ -108,3 +114,11 @@ def edges_of(found: Profile) -> Edges | None:
         float(smooth.min() / max(inner.mean(), 1e-300)),
         float(min(jumps, default=np.inf)),
     )
+
+
+def _best(gain: Array, good: Array, y: Array) -> tuple[int, float]:
+    """The fit of most gain among the good ones and the squares it leaves; −1 when there is none."""
+    if not good.any():
+        return -1, np.inf
+    best = int(np.argmax(np.where(good, gain, -np.inf)))
+    return best, float(y @ y - gain[best])

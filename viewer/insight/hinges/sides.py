@@ -82,14 +82,3 @@ def local_turns(
         values.append(np.divide(total, amount, out=np.zeros(count), where=amount > 0))
     theta = (values[1] - values[0])[good]
     return theta if len(theta) else np.zeros(1)
-
-
-def inner_turn(field: Field, frame: Frame, band: Array, width: float) -> float | None:
-    """Turn across the band as its own cells (flags) show it: slope of their rotation times the width, rad. None when
-    it has only one row of cells."""
-    w, x, spin = field.volume[frame.near[band]], frame.across[band], frame.spin[band]
-    centre = w @ x / w.sum()
-    square = w @ (x - centre) ** 2
-    if square < 0.01 * w.sum() * width**2:
-        return None
-    return float(abs((w * (x - centre)) @ (spin - w @ spin / w.sum()) / square) * width)
