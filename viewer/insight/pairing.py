@@ -24,6 +24,7 @@ KINDS = ("paired", "vanished", "new", "merged", "beyond")
 PAIRED = 0.5  # MAC: less than half of the shape in common is another mode
 CLOSE = 0.02  # relative difference of frequencies up to which modes of one design count as a group
 EDGE = 0.9  # of the other design's highest frequency compared: a partner of a mode from there on may lie beyond it
+_WITHIN = 0.3  # weight of the single shapes' agreement where groups agree equally well
 MERGED = 0.25  # least MAC with the mode that took a mode up, when that mode lies in the span of both
 
 
@@ -150,15 +151,36 @@ def pair(
 def pair_vectors(one: Array, two: Array, one_hz: Array, two_hz: Array) -> tuple[Array, list[ModePair]]:
     """MAC (a, b) of shapes given as rows of ``one`` (a, n) and ``two`` (b, n), and their pairs by optimal assignment:
     first the modes of ``one`` in order, then what is left of ``two``."""
-    matrix = mac(one, two)
+    matrix, groups = mac(one, two), (close_groups(one_hz), close_groups(two_hz))
+    # within a group the shapes are any mixture: what counts first is how much of a mode the other side's group holds
+    held = np.maximum(_held(one, two, groups[1]), _held(two, one, groups[0]).T)
     # the cube sharpens: one excellent pair and one poor are better than two middling ones
-    rows, columns = linear_sum_assignment(-(matrix**3))
+    rows, columns = linear_sum_assignment(-(held**3) - _WITHIN * matrix**3)
     partner = {int(i): int(j) for i, j in zip(rows, columns, strict=True)}
-    groups = close_groups(one_hz), close_groups(two_hz)
     pairs = [_became(i, partner.get(i), matrix, groups, (one, two), (one_hz, two_hz)) for i in range(len(one))]
     taken = {p.second for p in pairs}
     pairs += [alone(None, j + 1, two_hz[j], one_hz, matrix[:, j]) for j in range(len(two)) if j + 1 not in taken]
     return matrix, pairs
+
+
+def group_shares(shapes: Array, others: Array, groups: list[tuple[int, ...]]) -> Array:
+    """(a, b) share of each of the ``shapes`` (a, n) in the span of the group to which each of the ``others`` (b, n)
+    belongs: MAC where it is alone."""
+    out = mac(shapes, others)
+    size = np.maximum((np.abs(shapes) ** 2).sum(axis=1), 1e-300)
+    for members in (list(m) for m in set(groups) if len(m) > 1):
+        left, strength, _ = np.linalg.svd(others[members].T, full_matrices=False)
+        basis = left[:, strength > 1e-9 * strength.max(initial=0.0)]
+        out[:, members] = ((np.abs(shapes @ basis.conj()) ** 2).sum(axis=1) / size)[:, None]
+    return out
+
+
+def _held(shapes: Array, others: Array, groups: list[tuple[int, ...]]) -> Array:
+    """The same, less what any shape has in a span of that size by chance; at least MAC."""
+    chance = np.array([len(m) if len(m) > 1 else 0 for m in groups]) / shapes.shape[1]
+    share = group_shares(shapes, others, groups)
+    rest = np.where(chance < 1, 1 - chance, np.inf)
+    return np.maximum(mac(shapes, others), (share - chance) / rest)
 
 
 def cross_products(
