@@ -8,6 +8,7 @@ from tests.loaders import universal_samples as sample
 from tests.loaders.hammer_sets import ROOT_HALF, as_pyuff, same, small_test
 from viewer.errors import LoadError
 from viewer.loaders import merge_runs, read_test, write_test
+from viewer.loaders.universal_frames import KINDS_OF_FRAME, Frame
 
 POINTS = "point,x,y,z\n1,0,0,0\n2,1000,0,0\n"
 SHAPES = "mode,point,direction,value\n1,1,+X,1\n1,1,-Z,0.5\n1,2,y,-2\n"
@@ -195,6 +196,19 @@ def test_displacement_systems_of_points_are_applied(tmp_path):
     assert test.damping.tolist() == [0.02]  # half the hysteretic one
     assert "points with a coordinate system of their own measure along its axes: 1, 2" in test.remarks
     assert any("4 directions at points are zero in every mode" in remark for remark in test.remarks)
+
+
+@pytest.mark.parametrize("kind", KINDS_OF_FRAME)
+def test_directions_of_a_system_are_those_in_which_its_coordinates_grow(kind):
+    """Against differences of the coordinates themselves."""
+    axes = np.linalg.qr(np.random.default_rng(2).normal(size=(3, 3)))[0]
+    frame = Frame(5, kind, "a", [1.0, 2, 3], axes * np.sign(np.linalg.det(axes)))
+    at = np.array([[2.0, 30, 50], [1.5, -120, 100], [0.7, 200, 20]])
+    for axis in range(3):
+        step = np.eye(3)[axis] * 1e-4
+        grown = frame.to_part(at + step) - frame.to_part(at - step)
+        wanted = grown / np.linalg.norm(grown, axis=1, keepdims=True)
+        np.testing.assert_allclose(frame.directions(frame.to_part(at))[:, axis], wanted, atol=1e-7)
 
 
 def test_turning_at_points_is_left_out(tmp_path):
