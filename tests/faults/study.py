@@ -2,16 +2,18 @@
 
     python -m tests.faults.study
 
-Definitions, made before the method was run:
-fault       0, 1, 2 or 3 (seed modulo 4) at as many different points, kind and place at random: a sign flipped, two axes
-            of a point exchanged, two points exchanged, a point that was measured elsewhere (any node of the skin), a
-            channel or a whole point that reads noise only. Nothing is done to choose faults that show.
+The method was tuned on seeds 0 to 199; the table is of 200 others, which it had not seen. Definitions:
+
+fault       0, 1, 2 or 3 (seed modulo 4) at as many different points, kind and place at random: a sign flipped, two
+            axes of a point exchanged, two points exchanged, a point that was measured elsewhere (any node of the skin
+            where a sensor could sit), a channel or a whole point that reads noise only. Nothing is done to choose
+            faults that show.
 detectable  by truth: without noise the fault changes at least one reading of its point by ``SEEN`` noise levels or
             more, root mean square over the modes. Found is also counted over all faults, detectable or not.
-found       a proposal of the same kind at the same place: point and axis; both axes; both points; for a point measured
-            elsewhere a place within ``NEAR`` of the size of the part; of a dead point every channel whose loss is
-            detectable by itself, and none that is alive. The kind must be right: "left out" for a wrong sign is a miss
-            and a false proposal. A proposal that names alternatives counts by its first cause.
+found       a proposal of the same kind at the same place: point and axis; both axes; both points; for a point
+            measured elsewhere a place within ``NEAR`` of the size of the part; of a dead point every channel whose
+            loss is detectable by itself, and none that is alive. The kind must be right: "left out" for a wrong sign
+            is a miss and a false proposal. A proposal that names alternatives counts by its first cause.
 false       a proposal that is true of no fault, detectable or not; as a share of the proposals made, of the runs with
             one at least, and of the runs of tests without faults with one at least.
 """
@@ -31,7 +33,7 @@ from viewer.insight.wrong_channels import Faults, Proposal, find_faults
 from viewer.jobs import atomic_path
 from viewer.model.testset import Correction
 
-SEEDS = 200
+SEEDS = range(5000, 5200)
 NEAR = 0.05
 TABLE = Path(__file__).parent / "table.csv"
 TOTALS = Path(__file__).parent / "totals.csv"
@@ -162,7 +164,7 @@ def write(path: Path, rows: list[dict]) -> None:
 def main() -> None:
     rows = []
     for part in ("boom", "fork"):
-        for seed in range(SEEDS):
+        for seed in SEEDS:
             one = case(part, seed)
             rows += rows_of(one, run(one))
     write(TABLE, rows)

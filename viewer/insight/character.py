@@ -151,6 +151,7 @@ def describe(
     index = modes.index_of(number, design.name)
     shape = modes.shape(index)
     moving, cautions = moving_mass(design, modes, index, energies, progress)
+    cautions = [*modes.cautions, *cautions]
     if effective is None or effective.row(number) is None:
         effective = masses_of(design, modes, progress, indices=[number - 1])
     row = None if effective is None else effective.row(number)

@@ -140,7 +140,7 @@ def effective_masses(
     motion = base_motion(inertia, about, progress)
     values, modal = np.zeros((len(picked), 6)), np.zeros(len(picked))
     rigid, direction = np.zeros((len(picked), 6)), np.zeros((len(picked), 4))
-    cautions: tuple[str, ...] = ()
+    cautions = modes.cautions
     for j, index in enumerate(picked):  # one at a time: few modes in memory
         progress.tick("effective masses", j, len(picked))
         (vector,), doubts = mode_vectors(layout, modes, np.array([index]))

@@ -1,17 +1,17 @@
-"""A measured shape on the whole mesh: least squares on analysis modes, with what its own channels say about its error.
+"""A measured shape on the whole mesh: least squares on analysis modes, and what its channels say about its error.
 
 Expansion with the modes of the analysis as a basis: O'Callahan J., Avitabile P., Riemer R., System equivalent
 reduction expansion process (SEREP), IMAC 7 (1989) 29. The measured coordinates give the shape's share of every basis
 mode; these shares then hold on all nodes. What the basis cannot show is missing in the expanded shape.
 
 Which modes, and how many, is chosen for every measured mode by its left-out error: each channel is predicted from all
-the others, which least squares gives without fitting anew, r / (1 − h) with the leverage h of the channel (Allen D.M.,
-The relationship between variable selection and data augmentation and a method for prediction, Technometrics 16 (1974)
-125; from memory). To its mean square is added what the uncertainty of the coefficients makes of it on the mesh, so
-that a mode which the channels hardly see, but which moves elsewhere, must earn its place. Modes are added one by one
-as long as the best of them lowers this by more than the best of K unrelated ones would, a share 2 ln K / c for c
-channels (Foster D.P., George E.I., The risk inflation criterion for multiple regression, Ann. Stat. 22 (1994) 1947;
-from memory); never more than half as many as there are channels.
+the others, which least squares gives without fitting anew, r / (1 − h) with the leverage h of the channel (Allen
+D.M., The relationship between variable selection and data augmentation and a method for prediction, Technometrics 16
+(1974) 125; from memory). To its mean square is added what the uncertainty of the coefficients makes of it on the
+mesh, so that a mode which the channels hardly see, but which moves elsewhere, must earn its place. Modes are added
+one by one as long as the best of them lowers this by more than the best of K unrelated ones would, a share 2 ln K / c
+for c channels (Foster D.P., George E.I., The risk inflation criterion for multiple regression, Ann. Stat. 22 (1994)
+1947; from memory); never more than half as many as there are channels.
 
 The left-out error tells how far a further reading of the same quality, at a place like the ones measured, would lie
 from the expanded shape. Where noise rules, the shape itself is nearer to the truth than that. Of a region that no
@@ -86,7 +86,7 @@ class Expansion:
         return tuple(sorted({step.number for steps in self.choice for step in steps if step.taken}))
 
     def basis_of(self, index: int) -> tuple[int, ...]:
-        """Numbers of the analysis modes that measured mode ``index`` (from 0) stands on, the weightiest choice first."""
+        """Numbers of the analysis modes that measured mode ``index`` (from 0) stands on, best first."""
         return tuple(step.number for step in self.choice[index] if step.taken)
 
     @cached_property
@@ -98,7 +98,7 @@ class Expansion:
 
     @cached_property
     def residual_by_channel(self) -> Array:
-        """(c,) root mean square over the modes of the residual as a share of each mode's rms reading; NaN as above."""
+        """(c,) root mean square over the modes of the residual as a share of the mode's rms reading; NaN as above."""
         return np.sqrt((np.abs(self.residual / self._rms[:, None]) ** 2).mean(axis=0))
 
     @cached_property
@@ -312,8 +312,8 @@ def _sentence(facts: dict[str, Any]) -> str:
     how = "named" if facts["basis_given"] else f"chosen one by one, at most {facts['most_used']} for a shape"
     text = (
         f"Test {facts['test']}: {facts['mode_count']} measured shapes are expanded from {facts['channels']} channels "
-        f"on {facts['basis_count']} {modes} ({how}; {facts['most_basis_modes']} would be allowed); a channel left out "
-        f"is predicted to within {facts['left_out_error']:.1%} of the mode's typical reading"
+        f"on {facts['basis_count']} {modes} ({how}; {facts['most_basis_modes']} would be allowed); a channel left "
+        f"out is predicted to within {facts['left_out_error']:.1%} of the mode's typical reading"
     )
     if facts["worst_channels"]:
         worst = facts["worst_channels"][0]

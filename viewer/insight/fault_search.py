@@ -90,12 +90,12 @@ class Found:
 def search(
     test: TestSet, y: Array, phi: Array, freq_hz: Array, allowed: Array, places: Places, progress: Progress
 ) -> Found:
-    """``y`` (m, c) readings with each mode at rms 1, ``phi`` (k, c) analysis modes, ``allowed`` (c,) channels in use."""
+    """``y`` (m, c) readings, each mode at rms 1, ``phi`` (k, c) analysis modes, ``allowed`` (c,) channels in use."""
     sizes = expected_sizes(y[:, allowed], phi[:, allowed], freq_hz, own_modes(y[:, allowed], phi[:, allowed]))
     mixture = robust_fit(y, phi, sizes, test.sensor, allowed)
     taken: list[Hypothesis] = []
     while len(taken) < MOST:
-        progress.tick("looking for wrong channels", len(taken), None)
+        progress.tick("looking for wrong channels")
         believed = mixture.weights > 0
         sizes = expected_sizes(y[:, believed], phi[:, believed], freq_hz, own_modes(y[:, believed], phi[:, believed]))
         mixture = robust_fit(y, phi, sizes, test.sensor, allowed, mixture)
@@ -157,7 +157,7 @@ def _cost_with(made: Hypothesis, y, phi, allowed, sizes, mixture: Mixture) -> fl
 def _same(one: Hypothesis, two: Hypothesis) -> bool:
     """Whether two hypotheses are one; the exchange of two points is seen from either."""
     a, b = one.correction, two.correction
-    return a == b or a.kind == b.kind == "move" and bool(a.other) and {a.point, a.other} == {b.point, b.other}
+    return a == b or (a.kind == b.kind == "move" and bool(a.other) and {a.point, a.other} == {b.point, b.other})
 
 
 def _causes(test, y, allowed, mixture: Mixture, suspects: Array, point: int) -> Iterator[Hypothesis]:
@@ -245,7 +245,7 @@ def _elsewhere(test, y, allowed, mixture: Mixture, point: int, places: Places) -
     if far > WIDE * places.size:
         return None
     return Hypothesis(
-        Correction("move", test.labels[point], position=tuple(float(x) for x in places.points[best])),
+        Correction("move", test.labels[point], position=_three(places.points[best])),
         rows,
         float(before.sum() - whole[best]),
         max(float(after[:, best].max()) / modes - bound(modes), 0.0),
@@ -253,3 +253,7 @@ def _elsewhere(test, y, allowed, mixture: Mixture, point: int, places: Places) -
         rows=np.stack([places.motion[:, best] @ test.directions[c] for c in rows], axis=1),
         reach=float(far),
     )
+
+
+def _three(point: Array) -> tuple[float, float, float]:
+    return float(point[0]), float(point[1]), float(point[2])

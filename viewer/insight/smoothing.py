@@ -135,6 +135,7 @@ def smoothed(design: Design, modes: ModeSet, number: int, progress: Progress = S
         shapes=ArrayShapes(shape[None], None if rotations is None else rotations[None]),
         origin="measured" if modes.origin == "measured" else "imported",
         source=modes.source,
+        caution=modes.caution,
     )
     return Smoothed(number, shape, rotations, noise, expected, one)
 

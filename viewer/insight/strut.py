@@ -64,7 +64,7 @@ def strut_trial(
     index = _checked(design, modes, number, stiffness, top)
     system, cautions = _system(design, modes, progress)
     known = _known_modes(design, modes, system, progress)
-    cautions += known.cautions  # of the shapes as given
+    cautions = [*modes.cautions, *cautions, *known.cautions]  # of the shapes as given
     rod, words = _rod(system, design) if stiffness is None else ({}, "as given")
     if candidates is None:
         usable = None if system is None else system.dof[:, 0] >= 0

@@ -14,8 +14,8 @@ import numpy as np
 import scipy.sparse as sp
 
 from viewer.errors import RefusedError
-from viewer.insight.correlate import mac
 from viewer.insight.corrections import correction_words
+from viewer.insight.correlate import mac
 from viewer.insight.fault_search import Found, Hypothesis, Places, search, suspected
 from viewer.insight.mixed_fit import KNOWN, bound, own_modes
 from viewer.jobs import SILENT, Progress
@@ -178,7 +178,7 @@ def find_faults(
         pairs = [(int(picked[i]), int(j)) for i, j in enumerate(own) if j >= 0]
     row = {int(i): n for n, i in enumerate(picked)}
     told = tuple((int(i), int(j)) for i, j in pairs if int(i) in row)
-    effect = _Effect(y, phi, allowed, [row[i] for i, _ in told], [j for _, j in told])
+    effect = _Effect(y, phi, allowed, np.array([row[i] for i, _ in told], int), np.array([j for _, j in told], int))
     proposals = tuple(
         Proposal(
             number=n + 1,
@@ -216,16 +216,16 @@ class _Effect:
     y: Array
     phi: Array
     allowed: Array
-    tests: list[int]
-    analyses: list[int]
+    tests: Array
+    analyses: Array
 
     def of(self, made: tuple[Hypothesis, ...]) -> Array:
         y, phi, allowed = self.y, self.phi, self.allowed
         for hypothesis in made:
             y, phi, allowed = hypothesis.made(y, phi, allowed)
-        if not self.tests:
+        if not len(self.tests):
             return np.empty(0)
-        return np.diag(mac(y[np.ix_(self.tests, allowed)], phi[np.ix_(self.analyses, allowed)])).copy()
+        return np.diag(mac(y[self.tests][:, allowed], phi[self.analyses][:, allowed])).copy()
 
 
 def _places(mesh: Mesh, moved: Array, placement: Placement) -> Places:
@@ -294,7 +294,7 @@ def _sentence(facts: dict[str, Any]) -> str:
         text = f"none of {_count(facts['channels_checked'], 'channel')} contradicts the others"
         if facts["unexplained_count"]:
             text = (
-                f"no cause was found for {_count(facts['unexplained_count'], 'channel')} that contradict the others"
+                f"{_count(facts['unexplained_count'], 'channel')} contradict the others for no cause that was tried"
             )
     else:
         listed = "; ".join(f"({p['number']}) {p['words']}" for p in facts["proposals"])

@@ -60,7 +60,8 @@ class Energies:
                    modes computed from this very design, whose residual the eigen-solver has checked, and for models
                    too large to form it; from below in models too large to factorise
     residual_cells (k, n_cells) where the residual sits: share by cell, NaN as above
-    trusted        (k,) bool; formulations: names of the element formulations used
+    trusted        (k,) bool, False for shapes that come with a caution
+    formulations   names of the element formulations used
     cautions       what the model itself warns of
     relative       one uniform material was assumed (``relative.py``): strain and kinetic are shares of each mode's
                    whole instead of J, closure and residual NaN
@@ -217,6 +218,7 @@ def energies(
         unsettled = found.cautions(picked[unknown], RESIDUAL_BOUND)
     with np.errstate(invalid="ignore"):
         trusted = (np.abs(closure - 1) <= CLOSURE_BOUND) & (own | (residual + missing <= RESIDUAL_BOUND))
+    trusted &= not modes.caution  # shapes made up from a basis close by themselves, whatever is missing in them
     return Energies(
         indices=picked,
         freq_hz=modes.freq_hz[picked],
@@ -232,7 +234,7 @@ def energies(
         spring_names=tuple(item.name for item in layout.springs),
         mass_names=tuple(item.name for item in layout.masses),
         formulations=tuple(dict.fromkeys(group.formulation.name for group in layout.blocks)),
-        cautions=layout.cautions + doubts + unsettled,
+        cautions=modes.cautions + layout.cautions + doubts + unsettled,
     )
 
 

@@ -128,7 +128,7 @@ def totals(
         modal_mass,
         closure,
         residual,
-        (np.abs(closure - 1) <= CLOSURE_BOUND) & (residual + missing <= RESIDUAL_BOUND),
+        (np.abs(closure - 1) <= CLOSURE_BOUND) & (residual + missing <= RESIDUAL_BOUND) & (not modes.caution),
     )
 
 

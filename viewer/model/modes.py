@@ -111,6 +111,11 @@ class ModeSet:
     def is_complex(self) -> bool:
         return self.shapes.is_complex
 
+    @property
+    def cautions(self) -> tuple[str, ...]:
+        """The caution alone, or nothing: to go before the cautions of whatever is found about these shapes."""
+        return (self.caution,) if self.caution else ()
+
     def shape(self, index: int) -> Array:
         """(n_nodes, 3) translations of mode ``index`` (from 0), read-only, rows as in ``node_ids``."""
         return self.shapes.translations(self._checked(index))

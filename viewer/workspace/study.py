@@ -62,7 +62,7 @@ class Study:
     @property
     def cautions(self) -> tuple[str, ...]:
         """What a reader of any figure of this study must know."""
-        words = list(self.energies.cautions) if self.energies is not None else [self.no_energies]
+        words = [self.no_energies, *self.modes.cautions] if self.energies is None else list(self.energies.cautions)
         if self.relative:
             words.insert(0, f"energies are {RELATIVE}; {_WANTED}")
         figures = self.figures
@@ -209,7 +209,9 @@ def study(
     energy: bool = True,
 ) -> Study:
     """Form the energies of all modes; a design without materials is still studied, with relative energies where its
-    mesh allows them. ``energy`` False forms none: for a large mesh most of the time goes into them."""
+    mesh allows them. ``energy`` False forms none: for a large mesh most of the time goes into them. What the shapes
+    come with as a caution (expanded ones do) stands in every scale note beside the condition."""
+    condition = "; ".join(words for words in (condition, modes.caution) if words)
     found, whole, why = None, None, ""
     if not energy:
         why = "energies were not asked for"

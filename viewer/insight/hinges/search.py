@@ -58,7 +58,7 @@ def find_hinges(
             if states_no_material(design)
             else form_energies(design, modes, [0], progress, judged=False)
         )
-    cautions += _doubts(given, row, basis)
+    cautions = [*modes.cautions, *cautions, *_doubts(given, row, basis)]
     moved, turned = modes.shape(index), modes.rotations(index)
     if np.iscomplexobj(moved):
         phase = np.exp(-0.5j * np.angle((moved**2).sum()))
