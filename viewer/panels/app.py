@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import sys
 from pathlib import Path
+from typing import cast
 
 from PySide6.QtWidgets import QApplication
 
@@ -13,7 +14,7 @@ from viewer.session.loading import sample
 
 def run(path: Path | None, modes: Path | None = None) -> int:
     """Show a window until it is closed; returns the exit code. Nothing given: the sample boom."""
-    app = QApplication.instance() or QApplication(sys.argv[:1])
+    app = cast(QApplication, QApplication.instance() or QApplication(sys.argv[:1]))
     app.setApplicationName("Hingelight")
     app.setStyle("Fusion")
     window = Window()

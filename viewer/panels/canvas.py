@@ -1,12 +1,15 @@
 """The canvas: a pyvista plotter off the screen whose picture is painted into the window, and the mouse on it.
 
-Off the screen, since a window of VTK's own inside one of Qt's does not follow scaled displays, does not exist on every
-window system, is slower where the processor draws (measured: half the frames), and dies first when closing.
+Off the screen, since a window of VTK's own inside one of Qt's does not follow scaled displays, is not to be had on
+every window system, shows half the frames where the processor draws (measured), and is fragile in closing.
 """
 
 from __future__ import annotations
 
+from typing import Any, cast
+
 import numpy as np
+import pyvista as pv
 from PySide6.QtCore import QPointF, Qt, QTimer, Signal
 from PySide6.QtGui import QImage, QMouseEvent, QPainter, QPaintEvent, QPen, QPolygonF, QResizeEvent, QWheelEvent
 from PySide6.QtWidgets import QWidget
@@ -14,7 +17,7 @@ from PySide6.QtWidgets import QWidget
 from viewer.model.arrays import Array
 from viewer.panels.theme import KEY, colour, face
 from viewer.panels.turning import Turning
-from viewer.scene.picture import Picture, View
+from viewer.scene.picture import Picture
 from viewer.scene.tokens import BASE_WIDTH, THEMES
 from viewer.session.camera import view_of
 from viewer.session.picking import Reading, nearest_node
@@ -46,7 +49,7 @@ class Canvas(QWidget):
         self.setFocusPolicy(Qt.FocusPolicy.StrongFocus)
         self.setMinimumSize(320, 240)
         self._stage: Stage | None = None
-        self._plotter = None
+        self._plotter: pv.Plotter | None = None
         self._image: QImage | None = None
         self._frames: dict[int, QImage] = {}
         self._phase = 0.0
@@ -78,11 +81,11 @@ class Canvas(QWidget):
         self._frames.clear()
         self._theme = picture.theme
         size = SUPERSAMPLE * picture.width, SUPERSAMPLE * picture.height
-        if self._stage is None:
+        if self._stage is None or self._plotter is None:
             self._plotter = off_screen(*size)
             self._stage = Stage(picture, self._plotter)
         else:
-            self._plotter.window_size = size
+            self._plotter.window_size = list(size)
             self._stage.show(picture, keep_camera=keep_camera)
 
     def clear(self) -> None:
@@ -108,7 +111,7 @@ class Canvas(QWidget):
         kept = None if frame is None else self._frames.get(frame)
         if kept is None:
             self._stage.draw(phase)
-            kept = _as_image(reduce(pixels(self._plotter.render_window)))
+            kept = _as_image(reduce(pixels(cast(Any, self._plotter).render_window)))
             if frame is not None and kept.sizeInBytes() * (len(self._frames) + 1) <= ROOM:
                 self._frames[frame] = kept
         self._image = kept
@@ -122,7 +125,7 @@ class Canvas(QWidget):
 
     def _release(self) -> None:
         self._frames.clear()
-        if self._stage is not None:
+        if self._stage is not None and self._plotter is not None:
             self._stage.close()
             self._plotter.close()
         self._stage = self._plotter = None
@@ -186,7 +189,7 @@ class Canvas(QWidget):
     def mouseMoveEvent(self, event: QMouseEvent) -> None:
         if self._stage is None:
             return
-        camera = self._turning.drag(event, self._stage.camera(), self._stage.picture, BASE_WIDTH / self.width())
+        camera = self._turning.drag(event, self._stage.camera(), self._stage.reach, BASE_WIDTH / self.width())
         if camera is not None:
             self._go(camera)
 
@@ -204,7 +207,7 @@ class Canvas(QWidget):
     def wheelEvent(self, event: QWheelEvent) -> None:
         if self._stage is None or not event.angleDelta().y():
             return
-        at = BASE_WIDTH / self.width() * event.position()
+        at = self._on_sheet(event.position())
         self.zoom(1.0015 ** event.angleDelta().y(), at)
         event.accept()
 
@@ -221,7 +224,7 @@ class Canvas(QWidget):
         """Turn by angles in rad, from the keyboard."""
         if self._stage is None:
             return
-        self._go(self._turning.turned(self._stage.camera(), self._stage.picture, across, down))
+        self._go(self._turning.turned(self._stage.camera(), self._stage.reach, across, down))
         self.turned.emit(view_of(self._stage.camera()))
 
     def _go(self, camera) -> None:
@@ -229,6 +232,10 @@ class Canvas(QWidget):
         self._stage.aim(camera)
         self._frames.clear()
         self.draw(self._phase)
+
+    def _on_sheet(self, position: QPointF) -> QPointF:
+        """Sheet pixels of a place in logical ones."""
+        return position * (BASE_WIDTH / self.width())
 
     def _pane(self, at: QPointF | None) -> int:
         """The viewport that holds a place in sheet pixels."""
@@ -241,7 +248,7 @@ class Canvas(QWidget):
 
     def _pick(self, position: QPointF) -> None:
         assert self._stage is not None
-        at = BASE_WIDTH / self.width() * position
+        at = self._on_sheet(position)
         pane = self._pane(at)
         body = self._stage.picture.bodies[pane]
         box = self._stage.boxes[pane]
@@ -254,6 +261,3 @@ def _as_image(image: Array) -> QImage:
     packed = np.full((height, width, 4), 255, np.uint8)
     packed[:, :, :3] = image[:, :, ::-1]
     return QImage(packed.data, width, height, 4 * width, QImage.Format.Format_RGB32).copy()
-
-
-__all__ = ["Canvas", "View"]

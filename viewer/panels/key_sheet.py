@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from html import escape
 from itertools import groupby
 
 from PySide6.QtCore import Qt
@@ -26,8 +27,12 @@ class KeySheet(QDialog):
         for number, (group, commands) in enumerate(groupby(COMMANDS, lambda command: command.group)):
             lines = [f"<b>{group}</b>"]
             for command in commands:
-                keys = " or ".join(QKeySequence(k).toString(QKeySequence.SequenceFormat.NativeText) for k in command.keys)
-                lines.append(f"{keys.replace('<', '&lt;')} &nbsp; {command.words}")
+                lines.append(f"{_spoken(command.keys)} &nbsp; {command.words}")
             label = QLabel("<br>".join(lines), self)
             label.setTextFormat(Qt.TextFormat.RichText)
             grid.addWidget(label, number // _COLUMNS, number % _COLUMNS, Qt.AlignmentFlag.AlignTop)
+
+
+def _spoken(keys: tuple[str, ...]) -> str:
+    native = QKeySequence.SequenceFormat.NativeText
+    return escape(" or ".join(QKeySequence(key).toString(native) for key in keys))

@@ -27,8 +27,8 @@ class Ticket:
 
 
 class Lane(QObject):
-    """Carries out orders one after the other. ``progressed(stage, done, total)``, ``idle()`` are heard in the window's
-    thread, as are the answers; nothing is heard of an order that was dropped."""
+    """Carries out orders one after the other. ``progressed(stage, done, total)`` and ``idle()`` are heard in the
+    window's thread, as are the answers; nothing is heard of an order that was dropped."""
 
     progressed = Signal(str, int, int)
     idle = Signal()

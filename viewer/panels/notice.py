@@ -1,4 +1,4 @@
-"""A notice over the stage: what is being done, with a way to stop it; or what went wrong, in the error tree's words."""
+"""A notice over the stage: what is being done, and how to stop it; or what went wrong, in the words of the error tree."""
 
 from __future__ import annotations
 
@@ -19,6 +19,7 @@ class Notice(QFrame):
 
     def __init__(self, parent: QWidget) -> None:
         super().__init__(parent)
+        self._over = parent
         self.setObjectName("notice")
         self.setProperty("kind", "progress")
         self._heading, self._text = QLabel(self), QLabel(self)
@@ -44,7 +45,7 @@ class Notice(QFrame):
     @property
     def kind(self) -> str:
         """ "error", "message" or "progress"; empty while hidden."""
-        return str(self.property("kind")) if self.isVisibleTo(self.parentWidget()) else ""
+        return str(self.property("kind")) if self.isVisibleTo(self._over) else ""
 
     @property
     def words(self) -> str:
@@ -82,10 +83,10 @@ class Notice(QFrame):
 
     def place(self) -> None:
         """Stand at the top of the parent, in its middle."""
-        width = min(620, self.parentWidget().width() - 40)
+        width = min(620, self._over.width() - 40)
         self.setFixedWidth(max(width, 200))
         self.adjustSize()
-        self.move((self.parentWidget().width() - self.width()) // 2, 16)
+        self.move((self._over.width() - self.width()) // 2, 16)
         self.raise_()
 
     def _fill(self, kind: str, heading: str, text: str, button: str) -> None:

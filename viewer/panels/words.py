@@ -122,7 +122,7 @@ class WordsPanel(QWidget):
         top.addWidget(title)
         top.addStretch(1)
         top.addWidget(self._heading)
-        inner = QWidget()
+        self._inner = inner = QWidget()
         self._list = QVBoxLayout(inner)
         self._list.setContentsMargins(8, 4, 8, 4)
         self._list.setSpacing(4)
@@ -155,7 +155,7 @@ class WordsPanel(QWidget):
         """Show what is said, ``subject`` lit."""
         self._heading.setText(heading)
         while len(self.entries) < len(entries):
-            widget = EntryWidget(self._list.parentWidget())
+            widget = EntryWidget(self._inner)
             widget.pressed.connect(self.lit)
             self._list.insertWidget(self._list.count() - 1, widget)
             self.entries.append(widget)

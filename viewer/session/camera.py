@@ -17,8 +17,8 @@ _Z = np.array([0.0, 0.0, 1.0])
 
 
 def orbit(camera: Camera, across: float, down: float, centre: Array) -> Camera:
-    """Turn about the upright line through ``centre`` (3,) and about the camera's own horizontal, by angles in rad; the
-    part that would stand the body on its head is left out."""
+    """Turn about the upright line through ``centre`` (3,) and about the camera's own horizontal, by angles in rad;
+    the part that would stand the body on its head is left out."""
     turned = _turned(camera, _rotation(_Z, -across), centre)
     tipped = _turned(turned, _rotation(turned.right, -down), centre)
     return turned if tipped.up @ _Z < min(turned.up @ _Z, 0.0) - 1e-12 else tipped

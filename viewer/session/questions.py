@@ -23,45 +23,51 @@ class Question:
 def next_question(project: Project, state: State, asked: frozenset[Question]) -> Question | None:
     """The most urgent question that is neither answered nor among those ``asked`` in vain; None: all is known."""
     for question in _urgent_first(project, state):
-        if question not in asked:
+        if question not in asked and not _answered(project, question):
             return question
     return None
 
 
 def _urgent_first(project: Project, state: State) -> Iterator[Question]:
-    design, other = state.design, project.other_of(state.design, state.other)
-    if project.study(design) is None:
-        yield Question("study", design)
+    other = project.other_of(state.design, state.other)
+    if project.study(state.design) is None:
+        yield Question("study", state.design)
         return
-    if other and state.compared:
-        if project.study(other) is None:
-            yield Question("study", other)
-        elif project.comparison(design, other) is None and second_mode(project, state) is None:
-            yield Question("pair", design, other=other)
-    if state.page in ("pairing", "ladder") and other and project.study(other) is not None:
-        if project.comparison(design, other) is None:
-            yield Question("pair", design, other=other)
-    if state.page == "lineage" and project.lineage is None:
-        yield Question("lineage")
-    if (design, state.mode) not in project.told:
-        yield Question("explain", design, state.mode)
+    yield from _for_the_stage(project, state, other)
+    yield Question("explain", state.design, state.mode)
     if other:
-        if project.study(other) is None:
-            yield Question("study", other)
-        elif (design, other) not in project.close:
-            if project.comparison(design, other) is None and not isinstance(
-                project.comparisons.get((design, other)), str
-            ):
-                yield Question("pair", design, other=other)
-            yield Question("compare", design, other=other)
-    for mode in range(1, project.count(design) + 1):
-        if (design, mode) not in project.told:
-            yield Question("explain", design, mode)
+        yield Question("study", other)
+        if project.study(other) is not None:
+            yield Question("pair", state.design, other=other)
+            yield Question("compare", state.design, other=other)
+    yield from _every_mode(project, state.design)
     for name in project.designs:
-        if name == design:
-            continue
-        if project.study(name) is None:
-            yield Question("study", name)
-        for mode in range(1, project.count(name) + 1):
-            if (name, mode) not in project.told:
-                yield Question("explain", name, mode)
+        yield Question("study", name)
+        yield from _every_mode(project, name)
+
+
+def _for_the_stage(project: Project, state: State, other: str) -> Iterator[Question]:
+    """What the stage, or a chart in its place, waits for."""
+    if state.page == "lineage":
+        yield Question("lineage")
+    charted = state.page in ("pairing", "ladder")
+    if other and (charted or state.compared):
+        yield Question("study", other)
+        if project.study(other) is not None and (charted or second_mode(project, state) is None):
+            yield Question("pair", state.design, other=other)
+
+
+def _every_mode(project: Project, design: str) -> Iterator[Question]:
+    for mode in range(1, project.count(design) + 1):
+        yield Question("explain", design, mode)
+
+
+def _answered(project: Project, question: Question) -> bool:
+    pair = (question.design, question.other)
+    return {
+        "study": project.study(question.design) is not None,
+        "explain": (question.design, question.mode) in project.told,
+        "pair": pair in project.comparisons,
+        "compare": pair in project.close,
+        "lineage": project.lineage is not None,
+    }[question.kind]

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import replace
 from typing import Any
 
 from viewer.session.history import History
@@ -43,6 +44,10 @@ class Session:
     def do(self, action: Callable[..., State], *given: Any, join: str = "") -> None:
         """Carry out a pure action ``(state, *given) -> state``."""
         self._go(self._history.then(action(self.state, *given), join))
+
+    def end_step(self) -> None:
+        """What is done next is another step, even if it continues the last one."""
+        self._history = replace(self._history, joined="")
 
     def undo(self) -> None:
         self._go(self._history.undone())

@@ -125,6 +125,7 @@ class Stage:
             picture, note_height(picture) if self._bare is None else 0.0, bare=self._bare is not None
         )
         self._lay_renderers()
+        self.reach = view.shown_box(picture)  # (2, 3) m, of everything drawn over a cycle
         self.aim(camera)
         width = picture.width if self._bare is None else self._bare * BASE_WIDTH
         self._scale = self._window.GetSize()[0] / picture.width * width / BASE_WIDTH
@@ -203,7 +204,7 @@ class Stage:
 
     def aim(self, camera: view.Camera) -> None:
         """Point the shared camera; its clipping planes hold both extremes from any side."""
-        low, high = view.shown_box(self.picture)
+        low, high = self.reach
         radius = float(np.linalg.norm(high - low) + np.linalg.norm((high + low) / 2 - camera.focus)) or 1.0
         _, top, _, bottom = self._boxes[0]
         eye = self._panes[0].GetActiveCamera()
