@@ -11,7 +11,7 @@ from viewer.insight.pairing import ModePair, Pairing
 from viewer.model.variation import Unit
 from viewer.scene.chart import apart, blend, contrast, fitted, readable_on, ticks
 from viewer.scene.ladder_chart import RAILS, ladder_chart
-from viewer.scene.lineage_chart import FOOT, LEFT, RIGHT, TOP, lineage_chart
+from viewer.scene.lineage_chart import FOOT, LEFT, RIGHT, TOP, dash_of, lineage_chart, marker
 from viewer.scene.mac_chart import mac_chart
 from viewer.scene.primitives import Line, Polygon, Ring, Text
 from viewer.scene.tokens import THEMES
@@ -142,3 +142,28 @@ def test_words_are_cut_to_fit():
     assert fitted("short", 200) == "short"
     cut = fitted(NAMES[0], 100)
     assert cut.endswith("…") and text_width(cut, 14) <= 115 and NAMES[0].startswith(cut[:-1])
+
+
+def test_lineages_are_told_apart_without_colour():
+    looks = []
+    for order in range(24):
+        drawn = [
+            (type(part).__name__, tuple(np.round(getattr(part, "points", ()), 3).ravel()))
+            for part in marker(0.0, 0.0, order, THEMES["light"])
+        ]
+        looks.append((dash_of(order), tuple(drawn)))
+    assert len(set(looks)) == 24
+    assert all(len({looks[k][0], looks[k + 1][0]}) == 2 for k in range(23))  # neighbours differ in both
+    assert all(looks[k][1] != looks[k + 1][1] for k in range(23))
+
+
+def test_each_lineage_has_its_dash_and_its_marker_beside_its_name():
+    sheet, tokens = charts()["lineage"], THEMES["light"]
+    lines = [i for i in sheet.items if isinstance(i, Line) and i.colour == tokens.baseline]
+    assert len({line.dash for line in lines}) == 3
+    squares = [
+        i for i in sheet.items if isinstance(i, Polygon) and i.colour == tokens.baseline and len(i.points) == 4
+    ]
+    level = next(i.y for i in sheet.items if isinstance(i, Text) and "mode 2" in i.words and i.x > RIGHT)
+    assert any(box.box[0] > RIGHT and abs((box.box[1] + box.box[3]) / 2 - level) < 8 for box in squares)
+    assert len(squares) == 5  # at each of the four steps, and beside the name

@@ -4,6 +4,7 @@ import numpy as np
 import pytest
 
 from viewer.scene import palette
+from viewer.scene.chart import contrast
 from viewer.scene.tokens import THEMES, rgb
 
 # Full-strength simulation in linear RGB: G. M. Machado, M. M. Oliveira, L. A. F. Fernandes, "A physiologically-based
@@ -71,6 +72,19 @@ def test_lightness_is_monotone_for_every_eye(theme, eye):
     one_byte = np.diff(palette.to_oklab(np.array([[64, 64, 64], [65, 65, 65]]) / 255)[:, 0])[0]
     assert step.min() > -one_byte, "neighbouring entries may wobble by rounding to bytes, not more"
     assert np.all((lightness[8:] - lightness[:-8]) * (-1 if theme == "light" else 1) > 0)
+
+
+@pytest.mark.parametrize("theme", THEMES)
+def test_the_colour_of_a_test_is_told_from_all_others_by_every_eye(theme):
+    tokens = THEMES[theme]
+    assert contrast(tokens.test, tokens.body) >= 3  # of a mark: WCAG 2.2, 1.4.11
+    assert contrast(tokens.test, tokens.background) >= 4.5  # of words: WCAG 2.2, 1.4.3
+    others = [tokens.accent, tokens.point, tokens.baseline, tokens.modified, tokens.ink, tokens.ghost, tokens.body]
+    colours = np.array([rgb(colour) for colour in (tokens.test, *others)])
+    for matrix in (np.eye(3), *map(np.array, DEFICIENCIES.values())):
+        lab = palette.to_oklab(encoded(linear(colours) @ matrix.T))
+        # the other marks are 0.06 apart at least for these eyes; energy, a warm ramp, never carries test marks alone
+        assert np.linalg.norm(lab[1:] - lab[0], axis=1).min() > 0.06
 
 
 def test_top_is_an_area_weighted_percentile_rounded_to_a_square():

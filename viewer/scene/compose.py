@@ -22,6 +22,8 @@ from viewer.scene.node_lines import words as lines_words
 from viewer.scene.note_layout import note_height, scale_note
 from viewer.scene.palette import energy_top
 from viewer.scene.picture import Body, Magnified, MassMark, Picture, PointMark, SupportMark, View
+from viewer.scene.region_marks import SAID as ONE_SIDED
+from viewer.scene.region_marks import region_marks
 from viewer.scene.showing import Showing
 from viewer.scene.strut_marks import Strut, strut_marks
 from viewer.scene.surface import drawn_areas
@@ -130,6 +132,8 @@ def pair_picture(
             _with_finding(body, finding, scale, brief=True)
             for body, finding, scale in zip(bodies, findings, scales, strict=True)
         )
+    alone = first.support_with(second).regions if layout == "overlay" else ()
+    bodies = tuple(replace(body, regions=region_marks(alone, body.name)) for body in bodies)
     coloured = [body for body in bodies if body.density is not None]
     remarks = [first.condition, second.condition, paired_by]
     remarks += [
@@ -148,6 +152,7 @@ def pair_picture(
         size_basis=basis,
     )
     shown, said = _shown(bodies, showing, node_lines, look)
+    said = (*said, ONE_SIDED) if alone else said
     picture = Picture(
         bodies=shown,
         note=replace(note, drawing=(*note.drawing, *said)),

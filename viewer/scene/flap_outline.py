@@ -1,13 +1,14 @@
-"""Which triangles and edges of a drawn surface belong to flaps."""
+"""Which triangles and edges of a drawn surface belong to marked regions: flaps, and what one design has alone."""
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
 
 from viewer.model.arrays import Array
-from viewer.scene.picture import FlapMark
+from viewer.scene.picture import FlapMark, RegionMark
 from viewer.scene.surface import Surface
 
 
@@ -26,8 +27,8 @@ class FlapOutline:
     border: Array
 
 
-def flap_outline(surface: Surface, flaps: tuple[FlapMark, ...]) -> FlapOutline:
-    """The outline of all ``flaps`` on ``surface``."""
+def flap_outline(surface: Surface, flaps: Sequence[FlapMark | RegionMark]) -> FlapOutline:
+    """The outline of all ``flaps``, or other regions, on ``surface``."""
     cells = np.concatenate([np.empty(0, np.int64), *(flap.cells for flap in flaps)])
     inside = np.isin(surface.cells, cells)
     faces = surface.edges.faces

@@ -137,8 +137,8 @@ def _end(label: Label, frame: Frame, phase: float, halo: str) -> list[Primitive]
 
 
 def picture_labels(picture: Picture, frame: Frame) -> list[Label]:
-    """Flaps, hinges, struts and call-outs of every body; functional points, then masses, of two compared bodies only
-    the first's, or in an overlay of the one in front."""
+    """Flaps, hinges, struts, call-outs, tests and regions of every body; functional points, then masses, of two
+    compared bodies only the first's, or in an overlay of the one in front."""
     tokens = THEMES[picture.theme]
     diagonal = max(b.mesh.diagonal for b in picture.bodies)
     unit = diagonal / frame.metres_per_pixel
@@ -182,6 +182,12 @@ def _found_labels(body: Body, index: int, frame: Frame, diagonal: float, tokens:
         anchor = Anchor(index, call.position, body.factor * call.motion, SIGN + 1.6)
         colour, end = (tokens.gain[-1], "+") if call.sign > 0 else (tokens.gain[0], "−")
         found.append(Label(_lines(call.lines[0], call.lines[1:]), colour, anchor, tokens.ink, end))
+    own = tokens.baseline if index == 0 else tokens.modified
+    for region in body.regions:
+        row = _middle_node(body, region.cells)
+        anchor = Anchor(index, body.mesh.points[row], body.factor * body.shape[row], 0.0)
+        if region.title:
+            found.append(Label(_lines(region.title, region.lines), own, anchor, tokens.ink, "dot"))
     for trace in body.traces:
         found += _test_labels(trace, body.factor, index, frame, diagonal, tokens)
     return found

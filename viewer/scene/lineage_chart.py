@@ -8,10 +8,22 @@ from viewer.insight.encounters import Encounter
 from viewer.insight.lineage import LineageFinding
 from viewer.scene.chart import HEIGHT, apart, chart_sheet, corners, fitted, ticks
 from viewer.scene.figures import hertz
-from viewer.scene.primitives import Disc, Line, Primitive, Ring, Sheet, Spot, Text, bounds
+from viewer.scene.primitives import Disc, Line, Polygon, Primitive, Ring, Sheet, Spot, Text, bounds
 from viewer.scene.tokens import BAND_HEIGHT, BASE_WIDTH, MARGIN, TEXT_SMALL, THEMES, Tokens
 
 LEFT, RIGHT, TOP, FOOT = 84.0, BASE_WIDTH - 236.0, 56.0, HEIGHT - BAND_HEIGHT - 58
+DASHES: tuple[tuple[float, ...], ...] = ((), (11.0, 5.0), (4.0, 4.0), (14.0, 4.0, 3.0, 4.0))
+MARKERS = 20  # most markers of one line
+SIZE = 4.4  # of a marker, px from its middle
+# corners of markers, in sizes; none: a disc, the middle alone: a ring
+_FORMS: tuple[tuple[tuple[float, float], ...], ...] = (
+    (),
+    ((-0.9, -0.9), (0.9, -0.9), (0.9, 0.9), (-0.9, 0.9)),
+    ((0.0, -1.1), (0.95, 0.7), (-0.95, 0.7)),
+    ((0.0, 0.0),),
+    ((0.0, -1.2), (1.2, 0.0), (0.0, 1.2), (-1.2, 0.0)),
+    ((0.0, 1.1), (0.95, -0.7), (-0.95, -0.7)),
+)
 
 
 def lineage_chart(finding: LineageFinding, title: str = "", theme: str = "light") -> Sheet:
@@ -19,8 +31,8 @@ def lineage_chart(finding: LineageFinding, title: str = "", theme: str = "light"
     tokens = THEMES[theme]
     x, y = _axes(finding)
     items: list[Primitive] = [*_grid(finding, x, y, tokens)]
-    for line in finding.lines:
-        items += _line(finding, line.freq_hz, x, y, tokens)
+    for order, line in enumerate(finding.lines):
+        items += _line(finding, line.freq_hz, x, y, order, tokens)
     items += [mark for e in finding.encounters for mark in _mark(e, finding, x, y, tokens)]
     items += _names(finding, x, y, tokens)
     kinds = {e.kind for e in finding.encounters}
@@ -80,11 +92,29 @@ def _grid(finding: LineageFinding, x, y, tokens: Tokens) -> list[Primitive]:
     return items
 
 
-def _line(finding: LineageFinding, hz, x, y, tokens: Tokens) -> list[Primitive]:
+def _line(finding: LineageFinding, hz, x, y, order: int, tokens: Tokens) -> list[Primitive]:
+    """One lineage in its own dash, with its own marker at every step, or at every few of very many."""
     known = np.isfinite(hz)
     points = tuple((float(x(v)), float(y(f))) for v, f in zip(finding.values[known], hz[known], strict=True))
-    dots: list[Primitive] = [Disc(*p, 2.6, tokens.baseline) for p in points] if len(finding.values) <= 40 else []
-    return [Line(points, tokens.baseline, 2.4), *dots] if len(points) > 1 else dots
+    every = max(round(len(points) / MARKERS), 1)
+    dots = [part for p in points[::every] for part in marker(*p, order, tokens)]
+    return [Line(points, tokens.baseline, 2.4, dash_of(order)), *dots] if len(points) > 1 else dots
+
+
+def dash_of(order: int) -> tuple[float, ...]:
+    """The dash of the lineage in place ``order`` (from 0): it and the marker tell 24 lineages apart."""
+    return DASHES[(order + order // len(_FORMS)) % len(DASHES)]
+
+
+def marker(x: float, y: float, order: int, tokens: Tokens) -> list[Primitive]:
+    """The marker of the lineage in place ``order`` (from 0), cased in the background."""
+    form = _FORMS[order % len(_FORMS)]
+    colour = tokens.baseline
+    if len(form) < 3:
+        inner = Ring(x, y, SIZE - 0.8, colour, 1.8) if form else Disc(x, y, SIZE, colour)
+        return [Disc(x, y, SIZE + 1.4, tokens.background), inner]
+    sized = [tuple((x + size * u, y + size * v) for u, v in form) for size in (SIZE + 2.4, SIZE + 0.6)]
+    return [Polygon(sized[0], tokens.background), Polygon(sized[1], colour)]
 
 
 def _mark(e: Encounter, finding: LineageFinding, x, y, tokens: Tokens) -> list[Primitive]:
@@ -101,17 +131,19 @@ def _mark(e: Encounter, finding: LineageFinding, x, y, tokens: Tokens) -> list[P
 def _names(finding: LineageFinding, x, y, tokens: Tokens) -> list[Primitive]:
     """Frequency and name of each lineage at its end: beside the chart, kept apart, or where it ends before that."""
     ends, items = [], list[Primitive]()
-    for line in finding.lines:
+    for order, line in enumerate(finding.lines):
         last = int(np.nonzero(np.isfinite(line.freq_hz))[0][-1])
         at = float(y(line.freq_hz[last]))
         if last == len(line.freq_hz) - 1:
-            ends.append((at, line))
+            ends.append((at, order, line))
         else:
             place = float(x(finding.values[last]))
-            items.append(Text(place + 8, at - 6, fitted(finding.called(line), 150), tokens.soft, TEXT_SMALL))
+            items += marker(place + 12, at - 11, order, tokens)
+            items.append(Text(place + 22, at - 6, fitted(finding.called(line), 136), tokens.soft, TEXT_SMALL))
     ends.sort(key=lambda end: end[0])
-    for (wished, line), at in zip(ends, apart([e[0] for e in ends], 19.0, TOP, FOOT), strict=True):
-        items.append(Line(((RIGHT + 4, wished), (RIGHT + 20, float(at))), tokens.soft, 1.0))
+    for (wished, order, line), at in zip(ends, apart([e[0] for e in ends], 19.0, TOP, FOOT), strict=True):
+        items.append(Line(((RIGHT + 4, wished), (RIGHT + 18, float(at))), tokens.soft, 1.0))
+        items += marker(RIGHT + 22, float(at), order, tokens)
         text = f"{hertz(float(line.freq_hz[-1]))} {finding.called(line)}"
-        items.append(Text(RIGHT + 26, float(at) + 5, fitted(text, 236 - 26 - MARGIN / 2), tokens.ink, TEXT_SMALL))
+        items.append(Text(RIGHT + 33, float(at) + 5, fitted(text, 236 - 33 - MARGIN / 2), tokens.ink, TEXT_SMALL))
     return items

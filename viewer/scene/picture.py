@@ -101,6 +101,19 @@ class FlapMark:
 
 
 @dataclass(frozen=True, eq=False)
+class RegionMark:
+    """A region that only this one of two overlaid designs has: filled deeper and outlined in the design's colour.
+
+    title   "only in modified"; ``lines`` are what its label says below; an empty title: no label
+    cells   cell rows
+    """
+
+    title: str
+    lines: tuple[str, ...]
+    cells: Array
+
+
+@dataclass(frozen=True, eq=False)
 class StrutMark:
     """A strut on trial: a dashed bar between two places of the body.
 
@@ -215,6 +228,7 @@ class Body:
     gain: Array | None = None
     call_outs: tuple[CallOut, ...] = ()
     traces: tuple[TraceMark, ...] = ()
+    regions: tuple[RegionMark, ...] = ()
     form: str = "solid"
 
     @property

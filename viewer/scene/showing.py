@@ -132,6 +132,7 @@ def _marked(body: Body, alive: Array, kept: Array) -> Body:
     for _, nodes, rows in _by_block(body.mesh, kept):
         cells[rows] = alive[nodes].any(axis=1)
     flaps = [replace(mark, cells=mark.cells[cells[mark.cells]]) for mark in body.flaps]
+    regions = [replace(mark, cells=mark.cells[cells[mark.cells]]) for mark in body.regions]
     supports = [replace(mark, rows=mark.rows[alive[mark.rows]]) for mark in body.supports]
     masses = [replace(mark, footprint=mark.footprint[alive[mark.footprint]]) for mark in body.masses]
     return replace(
@@ -141,5 +142,6 @@ def _marked(body: Body, alive: Array, kept: Array) -> Body:
         points=tuple(mark for mark in body.points if mark.footprint is None or alive[mark.footprint].any()),
         hinges=tuple(mark for mark in body.hinges if cells[mark.cells].any()),
         flaps=tuple(mark for mark in flaps if len(mark.cells)),
+        regions=tuple(mark for mark in regions if len(mark.cells)),
         call_outs=tuple(mark for mark in body.call_outs if cells[mark.cells].any()),
     )

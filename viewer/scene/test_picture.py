@@ -32,6 +32,7 @@ from viewer.workspace import Study
 PHASES_SEEN = 10.0  # degrees of phase scatter from which on a travelling motion can be told from a standing one
 ROLES = ("test", "ink")
 NO_TICKS = np.empty((0, 3))
+LEAST_SCATTER = 0.1  # degrees that are worth a figure
 ALMOST_ONE = 0.995  # a MAC that two digits would call 1.00
 MEASURED_ONLY = "points move in the measured directions only"
 FOLLOWING = "unmeasured directions follow the drawn body"
@@ -241,12 +242,18 @@ def _phased(placed: PlacedTest, test_mode: int, factor: complex, keep: bool | No
     if not np.iscomplexobj(motion):
         return motion * np.real(factor), []
     degrees = placed.phase_scatter_deg(test_mode)
-    scatter = f"phase scatter up to {digits(degrees, trim=True)}°"
+    scatter = f"phase scatter {_up_to(degrees)}"
     if keep is None:
         keep = degrees >= PHASES_SEEN
     if keep:
         return motion * factor, [f"measured phases kept: {scatter}"]
     return np.real(motion * factor), [f"drawn in phase: {scatter} left out"]
+
+
+def _up_to(degrees: float) -> str:
+    if degrees < LEAST_SCATTER:
+        return f"below {LEAST_SCATTER:g}°"
+    return f"up to {digits(degrees, trim=True)}°"
 
 
 def _named(placed: PlacedTest, test_mode: int, motion: Array) -> tuple[str, Array, float]:

@@ -111,6 +111,7 @@ TRACE, TRACE_CASING = 2.8, 5.6  # trace lines of a test
 STEM = 1.6  # from where a test point rests to where it is
 HIDDEN_OPACITY = 0.45  # hidden parts of the overlay's dashed contour
 OVERLAY_TINT = 0.30  # teal in body base
+REGION_TINT, REGION_LINE = 0.45, 3.8  # what only one of two overlaid designs has
 FLAP_TINT = 0.30
 MESH_EDGE_OPACITY = 0.55
 MESH_EDGE_MEDIAN = 8  # px: mesh edges are drawn only when the median edge is longer

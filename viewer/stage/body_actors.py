@@ -20,6 +20,7 @@ from viewer.scene.surface import Surface
 from viewer.scene.tokens import THEMES, rgb
 from viewer.scene.view import Camera
 from viewer.stage.flap_actors import FlapActors
+from viewer.stage.region_actors import RegionActors
 from viewer.stage.segments import Segments
 
 LIFT = 1.5  # px: lines stand this far before the surface, so that they do not sink into it
@@ -151,6 +152,11 @@ class BodyActors:
             rest = self._motion.rest
             self._flaps = FlapActors(renderer, surface, outline, rest, origin, self._diagonal, theme, scale)
             self._own = ~outline.owned
+        self._regions: RegionActors | None = None
+        if body.regions:
+            outline = flap_outline(surface, body.regions)
+            self._solid.tint(outline.inside, edge, tokens.REGION_TINT)
+            self._regions = RegionActors(renderer, None, surface, outline, origin, edge, scale)
         self._mesh = None
         if picture.mesh_edges:
             self._mesh = Segments(renderer, theme.mesh_edge, scale, origin, tokens.MESH_EDGE_OPACITY)
@@ -180,6 +186,8 @@ class BodyActors:
         self._contour.show(raised[surface.edges.nodes[drawn & self._own]])
         if self._flaps is not None:
             self._flaps.draw(raised, drawn)
+        if self._regions is not None:
+            self._regions.draw(raised, drawn)
         if self._beams is not None:
             self._beams.show(raised[surface.lines], self._beam_colours)
         for line, height in zip(self._still_lines, CASED_LIFT, strict=False):
@@ -236,6 +244,10 @@ class DashedBody:
         edges = surface.edges
         pairs = np.concatenate([edges.nodes[edges.feature], surface.lines])
         self._fixed = self._cut(self._motion.rest, pairs)
+        self._regions: RegionActors | None = None
+        if body.regions:
+            outline = flap_outline(surface, body.regions)
+            self._regions = RegionActors(renderer, above, surface, outline, origin, colour, scale)
 
     def _cut(self, points: Array, pairs: Array) -> ghost.Dashes:
         return ghost.cut(points, pairs, tokens.DASH * self._diagonal, tokens.DASH_GAP * self._diagonal)
@@ -250,6 +262,9 @@ class DashedBody:
         ends = np.concatenate([self._fixed.segments(points), moving.segments(points)]) + lift
         self._seen.show(ends)
         self._hidden.show(ends)
+        if self._regions is not None:
+            drawn = contour.drawn(edges, surface.face_normals(points), camera.toward_eye)
+            self._regions.draw(points + lift, drawn)
 
 
 def rest_dashes(surface: Surface, rest: Array, camera: Camera, diagonal: float, *, dotted: bool) -> ghost.Dashes:
