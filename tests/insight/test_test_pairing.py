@@ -123,6 +123,8 @@ def test_a_flipped_channel_stands_out_in_the_enhanced_criterion_and_in_words():
     found = correlated(measured_set(measured, HZ), shapes(), HZ)
     facts = found.to_dict()
     assert facts["worst_channel"] == "point 8, +Z" and int(np.argmax(found.ecomac)) == 7
+    assert found.sentence.endswith("; they differ most at point 8, +Z.")
+    assert "differ most" not in correlated(measured_set(shapes(), HZ), shapes(), HZ).sentence
 
 
 def test_channels_not_used_do_not_count():

@@ -222,7 +222,7 @@ def _worst(matrix: Array, numbers: Sequence[int]) -> tuple[float | None, list[in
     if len(matrix) < 2:
         return None, []
     beside = np.where(np.eye(len(matrix), dtype=bool), -1.0, matrix)
-    i, j = np.unravel_index(int(np.argmax(beside)), beside.shape)
+    i, j = divmod(int(np.argmax(beside)), len(beside))
     return float(beside[i, j]), sorted((int(numbers[i]), int(numbers[j])))
 
 
@@ -231,13 +231,15 @@ def _sentence(facts: dict[str, Any]) -> str:
         return "There is only one mode, so that there is nothing to tell apart."
     words = f"At the {facts['channels']} channels of the test the {facts['mode_count']} modes can be told apart"
     if facts["enough"]:
-        return f"{words}: the most alike, {mode_numbers(facts['worst_pair'])}, share {facts['worst_auto_mac']:.0%}."
+        return (
+            f"{words}: the most alike, {mode_numbers(facts['worst_pair'])}, agree to {facts['worst_auto_mac']:.0%}."
+        )
     if facts["told_apart"]:
-        words += f", with some risk: {mode_numbers(facts['worst_pair'])} share {facts['worst_auto_mac']:.0%}"
+        words += f", with some risk: {mode_numbers(facts['worst_pair'])} agree to {facts['worst_auto_mac']:.0%}"
     else:
         words = (
             f"At the {facts['channels']} channels of the test {mode_numbers(facts['worst_pair'])} look alike "
-            f"({facts['worst_auto_mac']:.0%} in common) and cannot be told apart"
+            f"(they agree to {facts['worst_auto_mac']:.0%}) and cannot be told apart"
         )
     if not facts["asked"]:
         return words + "."
@@ -246,6 +248,6 @@ def _sentence(facts: dict[str, Any]) -> str:
     more, first = facts["new_count"], facts["new_channels"][0]
     what = "one more channel" if more == 1 else f"{more} more channels"
     return (
-        f"{words}; {what} would bring the largest share down to "
+        f"{words}; {what} would bring the largest agreement down to "
         f"{facts['worst_auto_mac_after']:.0%}, the first at node {first['node']} along {first['direction']}."
     )

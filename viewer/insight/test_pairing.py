@@ -27,6 +27,8 @@ from viewer.model.testset import TestSet
 ALIKE = 0.9
 RUNNER_UP = 0.9  # of the agreement with the partner: another mode that agrees so well makes the pair doubtful
 _RIGID = 1e-3  # of the highest computed frequency, below which a computed mode is a motion of the whole body
+# of the scale on which 1 is the other way at full size, and times the median: a channel that stands out
+_POOR, _OUTSTANDING = 0.1, 4.0
 CLEAN = 0.1  # product through the reduced mass between different modes, at most (common practice, no source)
 
 
@@ -189,6 +191,8 @@ class TestCorrelation:
             "alike_limit": ALIKE,
             "measured_looking_alike": [list(group) for group in _groups(self.test_auto > ALIKE)],
             "worst_channel": None if worst is None else self.channels[worst],
+            "worst_channel_stands_out": worst is not None
+            and bool(self.ecomac[worst] >= max(_POOR, _OUTSTANDING * float(np.nanmedian(self.ecomac)))),
             "worst_channel_ecomac": None if worst is None else float(self.ecomac[worst]),
             "largest_phase_deviation_deg": max(scatter, default=None),
             "worst_cross_orthogonality": _beside_the_pairs(self.orthogonality, self.paired),

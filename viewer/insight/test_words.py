@@ -40,6 +40,8 @@ def sentence_of(facts: dict[str, Any]) -> str:
         words += f"; at these points {listed} of {design} look alike, so that the choice between them is open"
     elif open_ := facts["doubtful"]:
         words += f"; for measured {numbers(open_)} another mode of {design} agrees nearly as well"
+    if facts["worst_channel_stands_out"]:
+        words += f"; they differ most at {facts['worst_channel']}"
     if facts["reduction_is_fair"] is False:
         words += (
             f"; products through the reduced mass mean little, since the points mix modes of {design} there by up to "
