@@ -196,9 +196,7 @@ class Conductor(QObject):
             self.working.emit(stage, done, total)
         elif self._question is not None and self._waits_for(self._question, project, state):
             question = self._question
-            words = _WORDS[question.kind].format(
-                design=question.design, mode=question.mode, other=question.other
-            )
+            words = _WORDS[question.kind].format(design=question.design, mode=question.mode, other=question.other)
             self.working.emit(f"{words}: {stage}" if stage not in words else words, done, total)
 
     def _waits_for(self, question: Question, project: Project, state: State) -> bool:
@@ -206,7 +204,8 @@ class Conductor(QObject):
             return question.design in wanted(project, state)
         if question.kind == "lineage":
             return state.page == "lineage"
-        return question.kind in ("pair", "compare") and (state.compared or state.page in ("pairing", "ladder"))
+        shown = state.compared or state.page in ("pairing", "ladder")
+        return question.kind == "pair" and shown  # "compare" only adds words to what is shown by then
 
     # ---- pictures
 

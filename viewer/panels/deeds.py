@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from math import tau
 from pathlib import Path
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, cast
 
 from PySide6.QtCore import QObject
 from PySide6.QtGui import QAction
@@ -13,9 +13,11 @@ from PySide6.QtWidgets import QApplication, QFileDialog
 from viewer.errors import HingelightError, RefusedError
 from viewer.panels.key_sheet import KeySheet
 from viewer.scene.picture import View
+from viewer.scene.primitives import Spot
 from viewer.scene.tokens import FRAMES
 from viewer.session import actions
 from viewer.session.camera import STEP
+from viewer.session.charts import put_spot
 from viewer.session.gallery import passing
 from viewer.session.pictures import scale_of
 from viewer.session.rail import rail_of
@@ -62,7 +64,7 @@ class Deeds(QObject):
             self._recent.append(action)
 
     def _open_recent(self) -> None:
-        self._window.open(Path(self.sender().data()))
+        self._window.open(Path(cast(QAction, self.sender()).data()))
 
     def save_names(self) -> None:
         """Write the names given here into the dossier."""
@@ -159,6 +161,12 @@ class Deeds(QObject):
     def turn_page(self, page: str) -> None:
         self._session.do(actions.turn_page, page)
 
+    def put_spot(self, spot: Spot) -> None:
+        """What a chart's spot stands for, onto the stage."""
+        project = self._session.project
+        if project is not None:
+            self._session.do(put_spot, project, spot)
+
     # ---- motion
 
     def toggle_play(self) -> None:
@@ -216,7 +224,7 @@ class Deeds(QObject):
 
     def let_go(self) -> None:
         """The handle stays: the next drag is another step."""
-        self._session.do(lambda state: state.with_(), join="")
+        self._session.end_step()
 
     # ---- look
 

@@ -38,7 +38,7 @@ class GalleryModel(QAbstractListModel):
         self.items: tuple[Item, ...] = ()
         self.frames: dict[int, list[QImage]] = {}
 
-    def rowCount(self, parent: _Index = QModelIndex()) -> int:  # noqa: B008
+    def rowCount(self, parent: _Index = QModelIndex()) -> int:
         return 0 if parent.isValid() else len(self.items)
 
     def data(self, index: _Index, role: int = Qt.ItemDataRole.DisplayRole):
@@ -162,7 +162,7 @@ class GalleryPanel(QListView):
                 self.scrollTo(index)
         self.viewport().update()
 
-    def currentChanged(self, current: QModelIndex, previous: QModelIndex) -> None:
+    def currentChanged(self, current: _Index, previous: _Index) -> None:
         super().currentChanged(current, previous)
         if current.isValid() and current.row() < len(self.items.items):
             self.chosen.emit(self.items.items[current.row()].mode)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from pathlib import Path
+from typing import cast
 
 from PySide6.QtCore import QUrl
 from PySide6.QtGui import QAction, QCloseEvent, QDragEnterEvent, QDropEvent, QKeySequence
@@ -10,6 +11,7 @@ from PySide6.QtWidgets import QHBoxLayout, QMainWindow, QMenu, QStackedWidget, Q
 
 from viewer.errors import HingelightError
 from viewer.panels.canvas import Canvas
+from viewer.panels.chart_page import ChartPage
 from viewer.panels.commands import COMMANDS
 from viewer.panels.conductor import Conductor
 from viewer.panels.deeds import Deeds
@@ -24,10 +26,13 @@ from viewer.panels.rail import RailPanel
 from viewer.panels.theme import palette, sheet
 from viewer.panels.words import WordsPanel
 from viewer.scene.picture import Picture
+from viewer.scene.primitives import Sheet
 from viewer.session import Session, State, actions
+from viewer.session.charts import chart_of, shown_spot
 from viewer.session.gallery import items, point_names
 from viewer.session.picking import read_off
 from viewer.session.pictures import heading, scale_of
+from viewer.session.project import Project
 from viewer.session.rail import rail_of
 from viewer.session.settings import read_settings, write_settings
 from viewer.session.words import entries
@@ -61,7 +66,9 @@ class Window(QMainWindow):
         self.words, self.filter_bar, self.export_strip = WordsPanel(self), FilterBar(self), ExportStrip(self)
         self.pages = QStackedWidget(self)
         self.pages.addWidget(self.canvas)
-        self.notice = Notice(self.canvas)
+        self.chart = ChartPage(self)
+        self.pages.addWidget(self.chart)
+        self.notice = Notice(self.pages)
         self.playback = Playback(self.canvas, self)
         left = QVBoxLayout()
         left.setContentsMargins(0, 0, 0, 0)
@@ -90,7 +97,7 @@ class Window(QMainWindow):
             self.menu.addAction(action)
 
     def _carry_out(self) -> None:
-        command = self.sender().data()
+        command = cast(QAction, self.sender()).data()
         getattr(self.deeds, command.name)(*command.given)
 
     def _connect(self) -> None:
@@ -113,6 +120,7 @@ class Window(QMainWindow):
         self.gallery.renamed.connect(deeds.take_name)
         self.filter_bar.wished.connect(deeds.set_band)
         self.filter_bar.closed.connect(deeds.show_all_modes)
+        self.chart.taken.connect(deeds.put_spot)
         self.words.lit.connect(deeds.light)
         self.canvas.settled.connect(self._settled)
         self.canvas.picked.connect(deeds.pick)
@@ -180,7 +188,25 @@ class Window(QMainWindow):
         points = point_names(project.study(state.design))
         self.filter_bar.show_band(state.band, points, len(shown), project.count(state.design))
         self.words.show_entries(entries(project, state), heading(project, state), state.subject, state.theme)
+        self._show_page(project, state)
         self._show_reading()
+
+    def _show_page(self, project: Project, state: State) -> None:
+        """The stage, or a chart in its place, which then has the keyboard."""
+        if state.page == "stage":
+            if self.pages.currentWidget() is not self.canvas:
+                self.pages.setCurrentWidget(self.canvas)
+                self.canvas.setFocus()
+                self.notice.raise_()
+            return
+        sheet = chart_of(project, state)
+        self.chart.show_chart(
+            sheet, shown_spot(project, state, sheet) if isinstance(sheet, Sheet) else -1, state.theme
+        )
+        if self.pages.currentWidget() is not self.chart:
+            self.pages.setCurrentWidget(self.chart)
+            self.chart.setFocus()
+            self.notice.raise_()
 
     def _play(self, state: State) -> None:
         self.gallery.play(state.playing)
