@@ -59,17 +59,38 @@ def free_nodes(part: str) -> Array:
 
 
 @cache
-def nodes_of(part: str) -> Array:
-    """Nodes that carry a sensor: spread over the skin, each as far from the ones before as can be, the first at the
-    node farthest from the support."""
+def nodes_of(part: str, count: int | None = None) -> Array:
+    """``count`` nodes that carry a sensor (None: as in the study): spread over the skin, each as far from the ones
+    before as can be, the first at the node farthest from the support."""
+    count = POINTS[part] if count is None else count
     mesh, free = design(part).mesh, free_nodes(part)
     points, root = mesh.points[free], mesh.points[mesh.node_groups["root"]]
     chosen = [int(np.argmax(np.linalg.norm(points - root.mean(axis=0), axis=1)))]
     distance = np.linalg.norm(points - points[chosen[0]], axis=1)
-    while len(chosen) < POINTS[part]:
+    while len(chosen) < count:
         chosen.append(int(distance.argmax()))
         distance = np.minimum(distance, np.linalg.norm(points - points[chosen[-1]], axis=1))
     return free[chosen]
+
+
+def sensing_at(part: str, nodes: Array) -> sp.csr_array:
+    """Nodal translations to the motion of ``nodes`` along X, Y and Z each."""
+    columns, size = (3 * nodes[:, None] + np.arange(3)).ravel(), 3 * design(part).mesh.n_nodes
+    return sp.csr_array((np.ones(len(columns)), (np.arange(len(columns)), columns)), shape=(len(columns), size))
+
+
+def triaxial(part: str, nodes: Array, shapes: Array, freq_hz: Array) -> TestSet:
+    """A test with three channels on every node, shapes (m, 3·nodes)."""
+    return TestSet(
+        name=part,
+        labels=tuple(str(i + 1) for i in range(len(nodes))),
+        points=design(part).mesh.points[nodes],
+        lines=np.empty((0, 2), int),
+        sensor=np.repeat(np.arange(len(nodes)), 3),
+        directions=np.tile(np.eye(3), (len(nodes), 1)),
+        freq_hz=freq_hz,
+        shapes=shapes,
+    )
 
 
 def case(part: str, seed: int, count: int | None = None, article: int | None = None) -> Case:
@@ -83,18 +104,8 @@ def case(part: str, seed: int, count: int | None = None, article: int | None = N
     size = np.abs(true).max(axis=1)
     true = true / size[:, None]
     noise = NOISE * rng.standard_normal(true.shape)
-    columns = (3 * nodes[:, None] + np.arange(3)).ravel()
-    sensing = sp.csr_array((np.ones(3 * p), (np.arange(3 * p), columns)), shape=(3 * p, 3 * mesh.n_nodes))
-    right = TestSet(
-        name=f"{part} {seed}",
-        labels=tuple(str(i + 1) for i in range(p)),
-        points=mesh.points[nodes],
-        lines=np.empty((0, 2), int),
-        sensor=np.repeat(np.arange(p), 3),
-        directions=np.tile(np.eye(3), (p, 1)),
-        freq_hz=modes.freq_hz,
-        shapes=true + noise,
-    )
+    sensing = sensing_at(part, nodes)
+    right = triaxial(part, nodes, true + noise, modes.freq_hz).with_(name=f"{part} {seed}")
     wrong, faults = true.copy(), []
     free = list(range(p))
     for _ in range(seed % 4 if count is None else count):
