@@ -15,6 +15,9 @@ _WHERE = {
     "open_dossier": "viewer.script",
     "read_mesh": "viewer.script",
     "read_modes": "viewer.script",
+    "read_test": "viewer.script",
+    "register": "viewer.insight.register",
+    "correlate": "viewer.script",
     "solve": "viewer.script",
     "energies": "viewer.script",
     "animate": "viewer.script",
@@ -41,6 +44,8 @@ _WHERE = {
     "CellBlock": "viewer.model.mesh",
     "ModeSet": "viewer.model.modes",
     "ArrayShapes": "viewer.model.modes",
+    "TestSet": "viewer.model.testset",
+    "Placement": "viewer.model.testset",
     "write_interchange": "viewer.loaders",
 }
 
@@ -52,6 +57,7 @@ if TYPE_CHECKING:
     from viewer.insight.correlate import mac
     from viewer.insight.gain import gain_map
     from viewer.insight.hinges import find_hinges
+    from viewer.insight.register import register
     from viewer.insight.strut import strut_trial
     from viewer.loaders import write_interchange
     from viewer.model.design import (
@@ -68,9 +74,21 @@ if TYPE_CHECKING:
     )
     from viewer.model.mesh import CellBlock, Mesh
     from viewer.model.modes import ArrayShapes, ModeSet
+    from viewer.model.testset import Placement, TestSet
     from viewer.scene.section import Plane
     from viewer.scene.showing import Showing
-    from viewer.script import animate, energies, open_dossier, pair, read_mesh, read_modes, solve, still
+    from viewer.script import (
+        animate,
+        correlate,
+        energies,
+        open_dossier,
+        pair,
+        read_mesh,
+        read_modes,
+        read_test,
+        solve,
+        still,
+    )
 
 
 def __getattr__(name: str) -> object:

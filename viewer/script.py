@@ -6,22 +6,40 @@ import os
 from collections.abc import Sequence
 from dataclasses import dataclass
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
 
 from viewer.errors import InputError
 from viewer.jobs import SILENT, Progress
-from viewer.loaders import read_mesh, read_modes
+from viewer.loaders import read_mesh, read_modes, read_test
 from viewer.mechanics.energy import Energies
 from viewer.mechanics.energy import energies as form_energies
 from viewer.mechanics.relative import relative_energies, states_no_material
 from viewer.model.design import Design
 from viewer.model.dossier import StatedAmplitude
 from viewer.model.modes import ModeSet
+from viewer.model.testset import TestSet
 from viewer.scene.picture import Picture
 from viewer.workspace import OpenDossier, Study, Workspace, study
 from viewer.workspace.comparison import Comparison, compare
 
-__all__ = ["animate", "energies", "open_dossier", "pair", "read_mesh", "read_modes", "solve", "still"]
+if TYPE_CHECKING:
+    from viewer.insight.registration import Registration
+    from viewer.insight.test_pairing import TestCorrelation
+
+__all__ = [
+    "animate",
+    "correlate",
+    "energies",
+    "open_dossier",
+    "pair",
+    "read_mesh",
+    "read_modes",
+    "read_test",
+    "solve",
+    "still",
+]
 
 
 def open_dossier(path: str | os.PathLike[str], *, cache: bool = True) -> OpenDossier:
@@ -45,6 +63,24 @@ def energies(design: Design, modes: ModeSet, progress: Progress = SILENT) -> Ene
 def pair(first: Study, second: Study, progress: Progress = SILENT) -> Comparison:
     """Which mode of one study became which of another, by shape: ``pair(opened.study("a"), opened.study("b"))``."""
     return compare(first, second, progress=progress)
+
+
+def correlate(
+    test: TestSet,
+    design: Design,
+    modes: ModeSet,
+    registration: Registration | None = None,
+    progress: Progress = SILENT,
+) -> TestCorrelation:
+    """Which measured mode is which of ``modes``, and how well they agree, at the channels of ``test``; laid onto the
+    mesh from its geometry when no ``registration`` is given. ``RefusedError`` when that is not settled."""
+    from viewer.insight.register import register
+    from viewer.insight.test_pairing import correlate_test
+
+    placed = (registration or register(test, design.mesh, progress=progress)).require()
+    seen = np.array([placed.seen(modes.shape(i)) for i in range(modes.count)])
+    names = tuple(design.mode_names.get(i + 1, "") for i in range(modes.count))
+    return correlate_test(test, seen, modes.freq_hz, design=design.name, names=names, used=placed.used)
 
 
 @dataclass(frozen=True, eq=False)

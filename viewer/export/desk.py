@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass, field
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from viewer.export.index_page import PageTable
 from viewer.export.rows import Row, short
@@ -13,6 +13,9 @@ from viewer.insight.strut_finding import StrutTrial
 from viewer.jobs import Give, Progress
 from viewer.workspace.comparison import Comparison
 from viewer.workspace.explanation import Explanation
+
+if TYPE_CHECKING:
+    from viewer.workspace.testing import TestExplanation, TestStudy
 
 
 @dataclass
@@ -44,6 +47,7 @@ class Desk:
     findings: dict[str, list[Explanation]] = field(default_factory=dict)
     struts: dict[str, StrutTrial] = field(default_factory=dict)
     comparisons: list[Comparison] = field(default_factory=list)
+    tests: dict[str, tuple[TestStudy, TestExplanation]] = field(default_factory=dict)
 
     @property
     def look(self) -> dict[str, Any]:

@@ -29,13 +29,16 @@ from viewer.export.rows import Row, group_rows, mode_caption, mode_rows, point_r
 from viewer.export.stills import save_png
 from viewer.export.strip import save_strip
 from viewer.export.strut_rows import strut_rows
+from viewer.export.test_page import beside_designs, slug_key, summary_of, test_section
 from viewer.insight.strut_finding import StrutTrial
 from viewer.jobs import SILENT, Crew, Progress, write_text
 from viewer.model.plain import plain
 from viewer.scene.compose import single_picture
 from viewer.scene.strut_picture import strut_picture
 from viewer.workspace import OpenDossier, Study
+from viewer.workspace.comparison import Comparison
 from viewer.workspace.explanation import Explanation
+from viewer.workspace.testing import TestStudy
 from viewer.workspace.trials import try_struts
 
 SUMMARY = "summary.json"
@@ -68,20 +71,29 @@ def write_review(
     _check_place(Path(folder))
     studies = [opened.study(name, count, progress) for name in opened.names]
     comparisons, apart = compared(opened, studies, progress)
-    steps = Steps(progress, 1 + sum(s.count for s in studies) + sum(len(c.outcomes) for c in comparisons))
+    tests, unplaced = beside_designs(opened, count, progress)
+    steps = Steps(progress, _drawn(studies, comparisons, tests))
     large = sum(study.design.mesh.n_nodes for study in studies) > DRAWN_ALONE_ABOVE
     with _aside(Path(folder)) as part, Crew(0 if large else None, progress) as crew:
-        desk = Desk(part, theme, width, steps, slugs(opened.names), crew.give)
+        desk = Desk(part, theme, width, steps, slugs((*opened.names, *(slug_key(t.name) for t in tests))), crew.give)
         sections = [comparison_section(desk, comparison) for comparison in comparisons]
+        sections += [test_section(desk, test) for test in tests]
         sections += [_explain(desk, opened, study) for study in studies]
         doubts = [words for s in studies for words in (*opened.doubts(s.design.name), *s.cautions)]
         doubts += [f"{name}: {words}" for name, told in desk.findings.items() for t in told for words in t.cautions]
-        cautions = tuple(dict.fromkeys((*opened.warnings, *doubts, *apart)))
+        doubts += [words for test in tests for words in test.cautions]
+        cautions = tuple(dict.fromkeys((*opened.warnings, *doubts, *apart, *unplaced)))
         crew.finish("drawing")
         write_index(part, opened.dossier.title, sections, condition=opened.dossier.condition, cautions=cautions)
         summary = _summary(opened, studies, desk, cautions)
         write_text(part / SUMMARY, json.dumps(plain(summary), indent=1, ensure_ascii=False, allow_nan=False) + "\n")
     return Review(Path(folder) / "index.html", summary, tuple(desk.printed), cautions)
+
+
+def _drawn(studies: list[Study], comparisons: list[Comparison], tests: list[TestStudy]) -> int:
+    """How many steps the bar will show."""
+    paired = sum(len(c.outcomes) for c in comparisons) + sum(1 + t.test.count for t in tests)
+    return 1 + sum(s.count for s in studies) + paired
 
 
 def _explain(desk: Desk, opened: OpenDossier, study: Study) -> PageSection:
@@ -191,6 +203,7 @@ def _summary(opened: OpenDossier, studies: list[Study], desk: Desk, cautions: tu
             for s in studies
         },
         "comparisons": [c.to_dict() for c in desk.comparisons],
+        "tests": {name: summary_of(*found) for name, found in desk.tests.items()},
         "cautions": list(cautions),
         "files": sorted({SUMMARY, *(path.name for path in desk.folder.iterdir())}),
     }

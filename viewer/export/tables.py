@@ -30,7 +30,8 @@ _UNITS = {
 _PREFIXES = ((1.0, "m"), (1e-3, "mm"), (1e-6, "µm"), (1e-9, "nm"))
 _IDENTITY = (
     "design", "mode", "group", "point", "hinge", "flap", "strut", "lineage", "step",
-    "first_design", "first_mode", "second_design", "second_mode",
+    "first_design", "first_mode", "second_design", "second_mode", "test", "test_mode", "channel", "correction",
+    "placement",
 )  # fmt: skip
 _NOTHING = "–"
 _DIGITS = 4  # significant digits of a number in text, when its key has no rule below

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
 from functools import cached_property
-from typing import TYPE_CHECKING, Any, cast
+from typing import Any, cast
 
 import numpy as np
 import scipy.sparse as sp
@@ -15,6 +15,8 @@ from viewer.insight.corrections import apply_corrections, correction_words
 from viewer.insight.expand import Expansion, expand
 from viewer.insight.register import register
 from viewer.insight.registration import Registration
+from viewer.insight.sensor_choice import SensorChoice, extra_points
+from viewer.insight.soft_support import SoftSupport, soft_support
 from viewer.insight.test_pairing import TestCorrelation, correlate_test
 from viewer.insight.wrong_channels import Faults, find_faults
 from viewer.jobs import SILENT, Progress
@@ -24,10 +26,6 @@ from viewer.model.dossier import TestPlan
 from viewer.model.testset import Correction, TestSet
 from viewer.workspace.explanation import Answer, Finding, asked
 from viewer.workspace.study import Study, study
-
-if TYPE_CHECKING:
-    from viewer.insight.sensor_choice import SensorChoice
-    from viewer.insight.soft_support import SoftSupport
 
 
 @dataclass(frozen=True, eq=False)
@@ -168,21 +166,29 @@ class TestStudy:
         """Whether the points are enough to tell the modes apart, and which ``count`` more would help most."""
 
         def find() -> SensorChoice:
-            from viewer.insight.sensor_choice import extra_points
-
             measured = [p.analysis for p in self.correlation(progress).paired if p.analysis]
-            mesh, modes = self.study.design.mesh, self.study.modes
-            kept = np.where(self.registration.used, self.analysis, 0.0)
-            return extra_points(mesh, modes, kept, count=count, numbers=measured or None, progress=progress)
+            placed, there = self.registration, self.registration.used
+            return extra_points(
+                self.study.design.mesh,
+                self.study.modes,
+                self.analysis[:, there],
+                count=count,
+                numbers=measured,
+                points=placed.points[self.test.sensor[there]],
+                along=placed.directions[there],
+                progress=progress,
+            )
 
         return self._once(f"points {count}", find)
 
+    @property
+    def held(self) -> bool:
+        """Whether the design is held somewhere: then there is no soft support to ask about."""
+        return bool(self.study.design.physics.supports)
+
     def support(self) -> SoftSupport:
         """Whether the part hung softly enough, where the test was made on a free part."""
-        from viewer.insight.soft_support import soft_support
-
-        physics = self.study.design.physics
-        free = not physics.supports if physics.assignments else None
+        free = None if not self.study.design.physics.assignments else not self.held
         return self._once("support", lambda: soft_support(self.test, free=free, used=self.registration.used))
 
     def expansion(self, progress: Progress = SILENT) -> Expansion:
@@ -211,7 +217,7 @@ class TestStudy:
             asked(lambda: self.correlation(progress), refused),
             asked(lambda: self.faults(progress), refused),
             asked(lambda: self.points(progress, extra), refused),
-            asked(self.support, refused),
+            None if self.held else asked(self.support, refused),
             asked(lambda: self.expansion(progress), refused),
             tuple(dict.fromkeys(refused)),
         )
