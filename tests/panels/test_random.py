@@ -9,9 +9,9 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from tests.panels.conftest import SAMPLES
+from tests.session_parts import write_strip
 
-ACTIONS, WARM, EVERY = 1000, 400, 100
+ACTIONS, WARM, EVERY = 1000, 300, 100
 GROWTH = 0.10
 LEFT_OUT = {"open_file", "export", "close_window", "show_menu", "save_names"}  # ask the user, or end the test
 
@@ -23,7 +23,7 @@ def _resident() -> int:
 
 
 @pytest.mark.skipif(not sys.platform.startswith("linux"), reason="memory is read from /proc")
-def test_a_thousand_actions(make_window, until, settled, app, monkeypatch):
+def test_a_thousand_actions(make_window, until, settled, app, monkeypatch, tmp_path):
     from PySide6.QtCore import QPoint, QPointF, Qt
     from PySide6.QtGui import QWheelEvent
     from PySide6.QtTest import QTest
@@ -31,7 +31,7 @@ def test_a_thousand_actions(make_window, until, settled, app, monkeypatch):
     errors: list[object] = []
     monkeypatch.setattr(sys, "excepthook", lambda *found: errors.append(found))
     monkeypatch.setattr(sys, "unraisablehook", lambda found: errors.append(found))
-    window = make_window(SAMPLES / "boom")
+    window = make_window(write_strip(tmp_path / "strip"))
     settled(window)
     draw = np.random.default_rng(7)
     commands = [a for a in window.actions() if a.data() is not None and a.data().name not in LEFT_OUT]
