@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from importlib.util import find_spec
 from pathlib import Path
 from typing import Annotated
 
@@ -10,7 +9,7 @@ import typer
 
 from viewer.cli.shell import command
 
-INSTALL = 'pip install "hingelight[window]"'
+INSTALL = 'pip install "hingelight[window]"; on a bare system also the packages that README.md lists'
 
 
 @command
@@ -23,8 +22,8 @@ def show(
     """Open the window: stage, magnification rail, gallery and everything in words."""
     from viewer.errors import InputError
 
-    if find_spec("PySide6") is None:
-        raise InputError("the window needs PySide6, which is not installed", do=f"install it: {INSTALL}")
-    from viewer.panels.app import run
-
+    try:
+        from viewer.panels.app import run
+    except ImportError as error:  # Qt's wheel, or a library of the system that it looks for
+        raise InputError("the window cannot start", found=str(error), expected="Qt", do=INSTALL) from None
     raise typer.Exit(run(path, modes))

@@ -19,10 +19,12 @@ from viewer.session import actions
 from viewer.session.camera import STEP
 from viewer.session.charts import put_spot
 from viewer.session.gallery import passing
-from viewer.session.pictures import scale_of
+from viewer.session.model_words import ACCEPT
+from viewer.session.pictures import against, require_size, scale_of, test_of
 from viewer.session.rail import rail_of
 from viewer.session.saving import save_names
 from viewer.session.state import Band
+from viewer.session.test_changes import accepted, correct
 from viewer.session.words import as_text, entries
 
 if TYPE_CHECKING:
@@ -158,6 +160,46 @@ class Deeds(QObject):
     def next_layout(self) -> None:
         self.choose_layout(actions.next_layout(self._session.state).layout)
 
+    def next_test_layout(self) -> None:
+        """The hammer test over the design, beside it, alone, away."""
+        project, state = self._session.project, self._session.state
+        if project is None:
+            return
+        if not test_of(project, state):
+            tests = project.opened.dossier.tests
+            do = f"choose design {tests[0].design}" if tests else "add [[tests]] to the dossier"
+            self._window.show_error(RefusedError(f"design '{state.design}' has no hammer test", do=do))
+            return
+        self._session.do(actions.next_test_layout)
+
+    def set_beside(self, name: str) -> None:
+        """Have another design, or another test, beside the design."""
+        self._session.do(actions.set_beside, name)
+
+    def next_beside(self) -> None:
+        project, state = self._session.project, self._session.state
+        names, chosen = ((), "") if project is None else against(project, state)
+        if chosen in names:
+            self.set_beside(names[(names.index(chosen) + 1) % len(names)])
+
+    def take_up(self, subject: str) -> None:
+        """Do what is offered with what is said: corrections of the test, into the dossier or out of it."""
+        project, state = self._session.project, self._session.state
+        entry = None if project is None else next((e for e in entries(project, state) if e.subject == subject), None)
+        if project is None or entry is None or not entry.offer:
+            return
+        name = test_of(project, state)
+        try:
+            now = accepted(project, name) if entry.offer == ACCEPT else ()
+            self._window.conductor.replace_project(correct(project, name, now))
+        except HingelightError as error:
+            self._window.show_error(error)
+            return
+        done = "written into" if now else "taken out of"
+        self._window.notice.show_message(
+            f"Corrections of test {name} are {done} the dossier", str(project.opened.dossier.path)
+        )
+
     def turn_page(self, page: str) -> None:
         self._session.do(actions.turn_page, page)
 
@@ -190,7 +232,7 @@ class Deeds(QObject):
             return
         if scale.magnification is None:
             try:
-                project.studies[state.design].scale(state.mode - 1, true_scale=True)
+                require_size(project, state)
             except HingelightError as error:
                 self._window.show_error(error)
             return
@@ -259,7 +301,8 @@ class Deeds(QObject):
         entry = next((e for e in entries(project, state) if e.subject == subject), None)
         if entry is None:
             return
-        self._session.do(actions.light, subject, entry.steps if subject == "folds" and entry.bars else 0)
+        hinges = entry.steps if subject == "folds" and entry.bars else 0
+        self._session.do(actions.light, subject, hinges, bool(test_of(project, state)))
         self._pick_subject(subject)
 
     def _pick_subject(self, subject: str) -> None:
