@@ -82,7 +82,7 @@ def test_channels_on_degrees_of_freedom_give_guyans_matrices(mesh, thickness, su
     expected = guyan(
         system.restrict(system.K), system.restrict(system.M), np.searchsorted(system.free, dofs).tolist()
     )
-    assert found.rank == len(dofs) and not found.unseen and not found.statements
+    assert found.rank == len(dofs) and not found.unseen and not found.repeated
     assert found.mass == pytest.approx(expected.mass, abs=1e-9 * np.abs(expected.mass).max())
     assert found.stiffness == pytest.approx(expected.stiffness, abs=1e-9 * np.abs(expected.stiffness).max())
 
@@ -145,6 +145,33 @@ def test_two_channels_at_one_place_count_once_and_say_so():
     assert both @ found.mass @ both == pytest.approx(shape @ once.mass @ shape, rel=1e-9)
     both[[0, 9]] = shape[0] + 0.1, -shape[0] + 0.1  # contradicting: the mean counts
     assert both @ found.mass @ both == pytest.approx(shape @ once.mass @ shape, rel=1e-9)
+
+
+def in_cells(cells, places):
+    """Channels along z in square cells of SHEET at local places (−1…1, −1…1): bilinear shape functions."""
+    out = np.zeros((len(cells), SHEET.n_nodes, 3))
+    for channel, (cell, (x, y)) in enumerate(zip(cells, places, strict=True)):
+        weights = [(1 - x) * (1 - y), (1 + x) * (1 - y), (1 + x) * (1 + y), (1 - x) * (1 + y)]
+        out[channel, SHEET.blocks[0].nodes[cell], 2] = np.array(weights) / 4
+    return sp.csr_array(out.reshape(len(cells), -1))
+
+
+def test_channels_crowded_together_are_one_or_are_named():
+    """Near neighbours differ by noise alone, which would bend the sheet between them: at a tenth of its half width they
+    count as one, and noise of 3 % then leaves the products of modes as they are; a little farther they are named."""
+    system = assemble(design(SHEET, thickness=0.01, supports=(CLAMP,)))
+    cells = [3, 7, 12, 15, 18, 22, 26, 29, 34, 37]
+    alone = reduce_to_channels(system, in_cells(cells, [(0, 0)] * 10))
+    assert not alone.crowded.any() and alone.rank == 10
+    near = reduce_to_channels(system, in_cells([*cells, 15, 22], [(0, 0)] * 10 + [(0.1, 0), (0, 0.1)]))
+    assert near.repeated == ((3, 10), (5, 11)) and near.rank == 10 and not near.crowded.any()
+    farther = reduce_to_channels(system, in_cells([*cells, 15], [(0, 0)] * 10 + [(0.5, 0)]))
+    assert not farther.repeated and farther.crowded[[3, 10]].all() and farther.crowded.sum() == 2
+    assert "2 channels sit so near others" in farther.statements[0]
+    random, shape = np.random.default_rng(3), np.ones(12)
+    for _ in range(20):
+        noisy = shape + 0.03 * random.normal(size=12)
+        assert noisy @ near.mass @ noisy == pytest.approx(shape @ near.mass @ shape, rel=0.15)
 
 
 def test_a_channel_where_the_model_is_held_counts_for_nothing():

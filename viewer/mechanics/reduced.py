@@ -26,6 +26,7 @@ from dataclasses import dataclass
 import numpy as np
 import scipy.linalg as sl
 import scipy.sparse as sp
+from scipy.sparse.csgraph import connected_components
 
 from viewer.errors import ModelError
 from viewer.jobs import SILENT, Progress
@@ -37,7 +38,11 @@ from viewer.mechanics.settle import rounding_of
 from viewer.model.arrays import Array, frozen
 from viewer.model.design import Design
 
-_SAME = 1e-4  # share of a channel's motion, squared, that is not that of others, below which it tells nothing new
+# Share of a channel's motion, squared, that is not that of others, below which it counts as theirs: two channels at
+# one place, or within about a fifth of a cell. What they differ by is noise, which would have to bend the cell.
+_SAME = 0.05
+_PART = 0.05  # least part of two channels in a combination without motion for them to belong together
+_CROWDED = 1.0  # of the body's mass: what moves when such a channel alone moves, its neighbours held
 _ROUNDING = 1e-12  # of the largest: what sums over the channels leave
 
 
@@ -88,6 +93,8 @@ class ChannelMass:
     still       (c,) bool: the channel cannot move in the model (its point is held)
     repeated    groups of channels that see one motion between them: two at one place in one direction, or more
                 channels at a point than directions. Of values that contradict one another the mean counts
+    crowded     (c,) bool: channels so near others that moving one alone by 1 m at 1 rad/s takes more kinetic energy
+                than moving the whole body so: errors of measurement there count many times over
     unseen      number of motions of the whole body without strain that no channel sees: they stay at rest
     statements  the same in words
     """
@@ -96,11 +103,12 @@ class ChannelMass:
     stiffness: Array
     rank: int
     still: Array
+    crowded: Array
     repeated: tuple[tuple[int, ...], ...] = ()
     unseen: int = 0
 
     def __post_init__(self) -> None:
-        for name in ("mass", "stiffness", "still"):
+        for name in ("mass", "stiffness", "still", "crowded"):
             object.__setattr__(self, name, frozen(getattr(self, name)))
 
     @property
@@ -112,6 +120,11 @@ class ChannelMass:
             out.append(
                 f"{sum(len(group) for group in self.repeated)} channels repeat what others see; of channels that see "
                 "one motion the mean counts"
+            )
+        if self.crowded.any():
+            out.append(
+                f"{int(self.crowded.sum())} channels sit so near others that small errors of measurement there count "
+                "many times in products through the reduced mass"
             )
         if self.unseen:
             out.append(f"{self.unseen} motions of the whole body are seen by no channel and stay out of the mass")
@@ -142,9 +155,9 @@ def reduce_to_channels(
     progress.tick("reducing to channels", 2, 3)
     transform, unseen = _least_strain(few, answer, motions, mass)
     small = _onto(stiffness, mass, transform)
-    return ChannelMass(
-        seen @ small.mass @ seen.T, seen @ small.stiffness @ seen.T, seen.shape[1], still, repeated, unseen
-    )
+    by_channel = seen @ small.mass @ seen.T
+    crowded = by_channel.diagonal() > _CROWDED * _whole_mass(system)
+    return ChannelMass(by_channel, seen @ small.stiffness @ seen.T, seen.shape[1], still, crowded, repeated, unseen)
 
 
 def _system(design: Design, progress: Progress) -> System:
@@ -184,6 +197,12 @@ def _strainless(system: System, stiffness: sp.csr_array) -> Array:
     return basis[:, strain <= rounding_of(stiffness, basis)]
 
 
+def _whole_mass(system: System) -> float:
+    """kg, of the body moving along an axis; the largest where masses differ by axis."""
+    pushed = rigid_vectors(system, system.points.mean(axis=0))[:3]
+    return float(np.einsum("ai,ia->a", pushed, system.M @ pushed.T).max())
+
+
 def _pinned(stiffness: sp.csr_array, motions: Array) -> sp.csr_array:
     """The stiffness with as many springs to ground as there are motions without strain, at degrees of freedom far
     apart: just enough to hold the body, so that loads in balance leave them without force."""
@@ -204,19 +223,12 @@ def _independent(looks: Array, still: Array) -> tuple[Array, tuple[tuple[int, ..
     overlap = unit @ unit.T
     strength, axes = np.linalg.eigh(overlap)
     kept = strength > _SAME
-    tells_nothing = axes[:, ~kept]
-    # channels that take part in a combination without motion belong together where they see the same
-    part = (np.abs(tells_nothing) > 1e-3).any(axis=1) & ~still
-    groups: list[tuple[int, ...]] = []
-    left = np.nonzero(part)[0].tolist()
-    while left:
-        members, grown = {left[0]}, True
-        while grown:
-            near = {j for j in left if any(abs(overlap[i, j]) > 1e-6 for i in members)}
-            grown, members = not near <= members, members | near
-        groups.append(tuple(sorted(members)))
-        left = [j for j in left if j not in members]
-    return axes[:, kept] * scale[:, None], tuple(groups)
+    # channels belong together that take part in the same combinations without motion of their own
+    together = np.abs(axes[:, ~kept] @ axes[:, ~kept].T) > _PART
+    together[still] = together[:, still] = False
+    count, label = connected_components(together, directed=False)
+    groups = (np.nonzero(label == g)[0].tolist() for g in range(count))
+    return axes[:, kept] * scale[:, None], tuple(tuple(g) for g in groups if len(g) > 1)
 
 
 def _least_strain(looks: Array, answer: Array, motions: Array, mass: sp.csr_array) -> tuple[Array, int]:
