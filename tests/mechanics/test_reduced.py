@@ -157,7 +157,7 @@ def in_cells(cells, places):
 
 
 def test_channels_crowded_together_are_one_or_are_named():
-    """Near neighbours differ by noise alone, which would bend the sheet between them: at a tenth of its half width they
+    """Near neighbours differ by noise alone, which would bend the sheet between them: so near they
     count as one, and noise of 3 % then leaves the products of modes as they are; a little farther they are named."""
     system = assemble(design(SHEET, thickness=0.01, supports=(CLAMP,)))
     cells = [3, 7, 12, 15, 18, 22, 26, 29, 34, 37]
