@@ -12,7 +12,7 @@ from viewer.insight.test_pairing import ALIKE, correlate_test
 from viewer.scene.correlation_charts import correlation_field, correlation_ladder, own_field
 from viewer.scene.ladder_chart import RAILS
 from viewer.scene.phase_chart import CENTRE, RADIUS, WEDGE, phase_chart
-from viewer.scene.primitives import Disc, Line, Polygon, Ring, Text
+from viewer.scene.primitives import Disc, Line, Polygon, Ring, Text, overlap
 from viewer.scene.tokens import THEMES
 
 NAMES = ("bends", "twists and nods with a name that is far too long for its place beside the field", "", "")
@@ -131,6 +131,15 @@ def test_only_so_many_are_named():
     sheet = phases(values, told=3)
     assert sum(words.startswith("point ") for words in texts(sheet)) == 3
     assert any("the 3 farthest from it named" in words for words in texts(sheet))
+
+
+@pytest.mark.parametrize("seed", range(6))
+def test_names_of_channels_keep_off_each_other_and_off_all_other_words(seed):
+    rng = np.random.default_rng(seed)
+    sheet = phases(rng.uniform(0.3, 1, 20) * rng.choice([-1, 1], 20) * np.exp(1j * rng.normal(0, 0.4, 20)))
+    top = 620 - 96
+    boxes = [item.box for item in sheet.items if isinstance(item, Text) and item.y < top]
+    assert not any(overlap(a, b) for k, a in enumerate(boxes) for b in boxes[:k])
 
 
 def test_a_mode_in_phase_names_no_channel():

@@ -316,7 +316,7 @@ def test_what_may_be_wrong_is_ringed_and_asked():
     assert first.ringed and first.lines[0] == "point 3, +Z: sign flipped?"
     assert second.lines[0] == "points 5 and 9: readings exchanged?"
     assert second.target == pytest.approx(placed().points[8])
-    assert picture.note.title == "2 channels may be wrong"
+    assert picture.note.title == "2 corrections proposed"
     assert any("not applied" in words for words in picture.note.drawing)
     moved = Correction("move", "2", position=tuple(placed().test.points[6]))
     (call,) = trace(faults_picture(plate(), placed(), [(moved, ())])).calls

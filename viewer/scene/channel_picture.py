@@ -32,7 +32,7 @@ class Kind:
     (None: the largest, rounded up), and whether it is told in percent."""
 
     title: str
-    meaning: str
+    meaning: tuple[str, ...]
     scale: str
     good: float
     bad: float | None
@@ -42,22 +42,24 @@ class Kind:
 KINDS = {
     "comac": Kind(
         "Where test and analysis agree",
-        "each channel over all paired modes, signs aside (COMAC): 1 agrees, 0 does not, and it says little where "
-        "a point hardly moves",
+        (
+            "each channel over all paired modes, signs aside (COMAC): 1 agrees, 0 does not",
+            "it says little where a point hardly moves",
+        ),
         "COMAC, worst channel of the point",
         1.0,
         0.0,
     ),
     "ecomac": Kind(
         "Where test and analysis disagree",
-        "each channel over all paired modes, signs included (enhanced COMAC): 0 agrees, larger is worse",
+        ("each channel over all paired modes, signs included (enhanced COMAC): 0 agrees, larger is worse",),
         "enhanced COMAC, worst channel",
         0.0,
         None,
     ),
     "residual": Kind(
         "What the expansion cannot explain",
-        "each channel predicted from all others, and missed by this share of the mode's rms reading",
+        ("each channel predicted from all others, and missed by this share of the mode's rms reading",),
         "left-out error, worst channel",
         0.0,
         None,
@@ -99,7 +101,7 @@ def channel_picture(
     samples = [(share, _figure(value, kinds)) for share, value in zip((0.0, 0.5, 1.0), ends, strict=True)]
     if np.isnan(weights).any():
         samples.append((float("nan"), "not used"))
-    note = Note(kinds.title, "", (kinds.meaning, *said), (AT_REST, *_tested(placed)))
+    note = Note(kinds.title, "", (*kinds.meaning, *said), (AT_REST, *_tested(placed)))
     scale = (kinds.scale, tuple(samples))
     return _resting(study, replace(mark, freq_hz=None), note, width, look).with_(bead_scale=scale)
 
@@ -128,8 +130,8 @@ def faults_picture(
         calls.append(TestCall(placed.row(correction.point), words, True, target))
     mark = placed.mark(placed.test.name, _still(placed), calls=tuple(calls))
     count = len(calls)
-    title = f"{count} channel{'s' if count != 1 else ''} may be wrong" if count else "No channel seems wrong"
-    asked = ("proposed, not applied: one correction for all modes",) if count else ()
+    title = f"{count} correction{'s' if count != 1 else ''} proposed" if count else "No channel seems wrong"
+    asked = ("not applied: each would hold for all modes",) if count else ()
     note = Note(
         title, "", (*asked, "arrows: the way each channel measures as plus", *said), (AT_REST, *_tested(placed))
     )

@@ -105,6 +105,7 @@ def pair_picture(
     *,
     layout: str = "side",
     true_scale: bool = False,
+    enlarge: float = 1.0,
     energy: bool = True,
     width: int = 960,
     paired_by: str = "",
@@ -117,11 +118,12 @@ def pair_picture(
 
     ``showing`` and ``node_lines`` as for one mode.
     ``findings`` mark hinges and flaps of designs side by side, named only; an overlay shows form alone.
+    ``enlarge`` draws both that many times as large as they are drawn by themselves.
     ``paired_by`` says in the note who or what decided that these two correspond.
     """
     studies, modes = (first, second), (first_mode, second_mode)
     indices = [study.index_of(mode) for study, mode in zip(studies, modes, strict=True)]
-    scales, basis = compared_scales(studies, indices, true_scale)
+    scales, basis = compared_scales(studies, indices, true_scale, enlarge)
     energy = energy and layout == "side"  # an overlay shows form; two energy fields would hide one another
     bodies = tuple(
         mode_body(study, i, scale, scale.turn, energy)
@@ -203,13 +205,25 @@ def _shown(
 
 
 def compared_scales(
-    studies: tuple[Study, Study], indices: Sequence[int], true_scale: bool
+    studies: tuple[Study, Study], indices: Sequence[int], true_scale: bool = False, enlarge: float = 1.0
 ) -> tuple[tuple[Scale, ...], str]:
-    """The scales at which two modes are comparable, and what is made equal where their sizes are unknown."""
+    """The scales at which two modes are comparable, ``enlarge`` times as large as they are drawn by themselves, and
+    what is made equal where their sizes are unknown."""
+    turn = studies[0].turn_of(indices[0], studies[1], indices[1])
+    scales, basis = equal_scales(studies, indices, true_scale, [1.0, turn])
+    return tuple(scale.enlarged(enlarge) for scale in scales), basis
+
+
+def equal_scales(
+    studies: tuple[Study, Study],
+    indices: Sequence[int],
+    true_scale: bool = False,
+    turns: Sequence[complex] = (1.0, 1.0),
+) -> tuple[tuple[Scale, ...], str]:
+    """The same, with given signs and phases: what can be had at once."""
     found = [study.scale(i, true_scale=true_scale) for study, i in zip(studies, indices, strict=True)]
     masses, basis = _sizes(studies, indices)
-    turn = studies[0].turn_of(indices[0], studies[1], indices[1])
-    return common_scale(found, masses, [1.0, turn]), basis
+    return common_scale(found, masses, turns), basis
 
 
 def _sizes(studies: Sequence[Study], indices: Sequence[int]) -> tuple[list[float], str]:

@@ -28,6 +28,7 @@ def difference_picture(
     second_mode: int,
     *,
     true_scale: bool = False,
+    enlarge: float = 1.0,
     width: int = 960,
     paired_by: str = "",
     showing: Showing = WHOLE,
@@ -38,7 +39,7 @@ def difference_picture(
     ``look``: theme, ghost, mesh_edges, view of ``Picture``."""
     studies, modes = (first, second), (first_mode, second_mode)
     indices = [study.index_of(mode) for study, mode in zip(studies, modes, strict=True)]
-    scales, basis = compared_scales(studies, indices, true_scale)
+    scales, basis = compared_scales(studies, indices, true_scale, enlarge)
     one, two = (
         scale.factor * study.turned_shape(i, scale.turn)
         for study, i, scale in zip(studies, indices, scales, strict=True)

@@ -18,6 +18,8 @@ CIRCLES = (1.0, 0.5)  # of the largest channel
 WEDGE = 10.0  # degrees beside the line that count as in phase
 TOLD, LEAST = 5, 0.1  # channels named: so many of those that leave the wedge and have this share of the largest
 _LINE = 21.0
+# first baselines of names above and below the words at the ends of the common line
+_ABOVE, _BELOW = (MARGIN + 30.0, CENTRE[1] - 34.0), (CENTRE[1] + 28.0, HEIGHT - BAND_HEIGHT - 24.0)
 
 
 def phase_chart(
@@ -98,12 +100,12 @@ def _plane(tokens: Tokens) -> list[Primitive]:
 def _names(rows: Sequence[int], at: Array, away: Array, channels: Sequence[str], tokens: Tokens) -> list[Primitive]:
     """Names of outlying channels at the side they lie on, kept apart, with leaders."""
     items: list[Primitive] = []
-    for side in (-1, 1):
-        mine = sorted((k for k in rows if (at[k, 0] >= CENTRE[0]) == (side > 0)), key=lambda k: at[k, 1])
-        foot = HEIGHT - BAND_HEIGHT - 24
+    for side, below in ((-1, False), (-1, True), (1, False), (1, True)):
+        here = [k for k in rows if (at[k, 0] >= CENTRE[0]) == (side > 0) and (at[k, 1] > CENTRE[1]) == below]
+        mine = sorted(here, key=lambda k: at[k, 1])
         x = BASE_WIDTH - MARGIN - 200 if side > 0 else MARGIN + 200
-        wished = [_clear_of_axis(float(at[k, 1])) for k in mine]
-        for k, level in zip(mine, apart(wished, 2 * _LINE, MARGIN + 30, foot), strict=True):
+        room = _BELOW if below else _ABOVE
+        for k, level in zip(mine, apart([float(at[k, 1]) for k in mine], 2 * _LINE, *room), strict=True):
             place = float(at[k, 0]), float(at[k, 1])
             end = (x - 6 * side, float(level) - 4)
             long = float(np.hypot(end[0] - place[0], end[1] - place[1])) or 1.0
@@ -116,11 +118,3 @@ def _names(rows: Sequence[int], at: Array, away: Array, channels: Sequence[str],
                 Text(x, float(level) + 17, f"{digits(away[k])}° off", tokens.soft, TEXT_SMALL, False, anchor)
             )
     return items
-
-
-def _clear_of_axis(level: float) -> float:
-    """A label's level off the words at the end of the common line."""
-    middle = CENTRE[1]
-    if abs(level - middle) > 2 * _LINE:
-        return level
-    return middle - 2 * _LINE if level <= middle else middle + 1.4 * _LINE

@@ -49,6 +49,7 @@ def over_picture(
     keep_phases: bool | None = None,
     labels: Sequence[str] | str = (),
     true_scale: bool = False,
+    enlarge: float = 1.0,
     width: int = BASE_WIDTH,
     paired_by: str = "",
     **look: Any,
@@ -58,10 +59,11 @@ def over_picture(
     analysis     (c,) motion of the analysis mode along every channel of the test, in units of its shape
     mac          of the pair, said in the note
     keep_phases  None: where the phase scatter is 10° or more
+    enlarge      draw that many times as large as the analysis mode is drawn by itself
     labels       of the points to write; "all"
     ``look``: theme, ghost, mesh_edges, view of ``Picture``. ``RefusedError`` when nothing measured moves.
     """
-    body, scale = _analysis(study, mode, true_scale)
+    body, scale = _analysis(study, mode, true_scale, enlarge)
     motion, said = _scaled_test(placed, test_mode, analysis * _turn(analysis, scale), keep_phases)
     motion = placed.completed(motion, study.design.mesh, body.shape)
     if len(placed.partly) and placed.partly.any():
@@ -89,13 +91,14 @@ def beside_picture(
     keep_phases: bool | None = None,
     labels: Sequence[str] | str = (),
     true_scale: bool = False,
+    enlarge: float = 1.0,
     width: int = BASE_WIDTH,
     paired_by: str = "",
     **look: Any,
 ) -> Picture:
     """The test's points and lines over the undeformed contour at the left, the analysis mode at the right, with one
     camera, phase and magnification. Arguments as for :func:`over_picture`."""
-    body, scale = _analysis(study, mode, true_scale)
+    body, scale = _analysis(study, mode, true_scale, enlarge)
     motion, said = _scaled_test(placed, test_mode, analysis * _turn(analysis, scale), keep_phases)
     if placed.partly.any():
         said = [*said, MEASURED_ONLY]
@@ -130,6 +133,7 @@ def alone_picture(
     *,
     keep_phases: bool | None = None,
     labels: Sequence[str] | str = (),
+    enlarge: float = 1.0,
     width: int = BASE_WIDTH,
     **look: Any,
 ) -> Picture:
@@ -145,12 +149,12 @@ def alone_picture(
         mark.name,
         mesh,
         np.zeros((mesh.n_nodes, 3)),
-        DRAWN_PEAK * mesh.diagonal / peak,
+        enlarge * DRAWN_PEAK * mesh.diagonal / peak,
         float(test.freq_hz[index]),
         traces=(mark,),
         form="ghost",
     )
-    drawn = f"size arbitrary, peak drawn at {digits(100 * DRAWN_PEAK, trim=True)} % of the diagonal"
+    drawn = f"size arbitrary, peak drawn at {digits(100 * enlarge * DRAWN_PEAK, trim=True)} % of the diagonal"
     measured = [MEASURED_ONLY] if placed.partly.any() else []
     note = Note(
         f"Test mode {test_mode}",
@@ -189,11 +193,12 @@ def expanded_picture(
     motion = placed.completed(motion, body.mesh, body.shape)
     test = placed.mark(*_named(placed, test_mode, motion), calls=placed.tags(labels), ticks=NO_TICKS)
     note = picture.note
+    told = any(said in words for words in note.condition)  # the study's own condition says it already
     note = replace(
         note,
         title=" · ".join(part for part in (f"Test mode {test_mode}", name) if part),
         frequency="",
-        drawing=(*([said] if said else []), *note.drawing, *phases),
+        drawing=(*([said] if said and not told else []), *note.drawing, *phases),
         condition=(*note.condition, *placed.corrections_said),
     )
     name = f"expanded onto {body.name}"
@@ -203,9 +208,9 @@ def expanded_picture(
 # ---- parts
 
 
-def _analysis(study: Study, mode: int, true_scale: bool) -> tuple[Body, Scale]:
+def _analysis(study: Study, mode: int, true_scale: bool, enlarge: float) -> tuple[Body, Scale]:
     index = study.index_of(mode)
-    scale = study.scale(index, true_scale=true_scale)
+    scale = study.scale(index, true_scale=true_scale).enlarged(enlarge)
     return mode_body(study, index, scale, scale.turn, energy=False), scale
 
 

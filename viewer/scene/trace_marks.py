@@ -26,7 +26,7 @@ TICK, TICK_LINE = 0.030, 2.0  # length of a tick from the point's middle, of the
 HEAD, HEAD_RADIUS = 0.012, 0.0048
 DASH, GAP = 0.007, 0.006  # of hidden trace lines
 LIFT = (0.014, 0.0146, 0.018, 0.0186)  # toward the eye, of the diagonal: casing and core of lines, then of beads
-FIGURE_LIFT = (0.40, 0.4006)  # of beads that carry figures: no line of the test runs over them
+OVER_LIFT = (0.40, 0.4006)  # of beads that nothing hides: no line of the test runs over them either
 _SIDES = 24
 _NONE3, _NONE2 = np.empty((0, 3), np.int64), np.empty((0, 2), np.int64)
 
@@ -107,7 +107,7 @@ def _dashes(dashes: ghost.Dashes, points: Array, move: Array, colour: str, width
 def _beads(mark: TraceMark, move: Array, diagonal: float, eye: Array, over: bool) -> list[Piece]:
     found: list[Piece] = []
     radii, empty = bead_radii(mark, diagonal), hollow(mark)
-    low, high = (LIFT[2:] if mark.weights is None else FIGURE_LIFT) * np.full(2, diagonal)
+    low, high = (OVER_LIFT if over else LIFT[2:]) * np.full(2, diagonal)
     discs = partial(_discs, mark.points, move, eye=eye, over=over)
     solid = np.flatnonzero(~empty)
     if len(solid):
