@@ -7,7 +7,10 @@ from importlib import import_module
 
 from tests.collection.parts import Part
 
-GROUPS = {"tuning": "tuning", "held": "held_out", "unseen": "unseen"}  # group → module
+NAMES = ("tuning", "held", "unseen", "held2", "unseen2")
+GROUPS = {name: name for name in NAMES} | {"held": "held_out"}  # group → module
+DEVELOPMENT = ("tuning", "held", "unseen")  # seen while the search was made
+SCORED = ("held2", "unseen2")  # never looked at before the final scoring
 
 
 def parts_of(group: str) -> list[Part]:

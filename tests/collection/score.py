@@ -1,4 +1,4 @@
-"""Score the search for hinge lines: ``python -m tests.collection.score --families tuning|held|unseen|scored|all``.
+"""Score the search for hinge lines: ``python -m tests.collection.score --families development|scored|all``.
 
 Prints totals and the rows that went wrong. ``--runs coarse,fine,noise,invariance`` says what is done: the parts, the
 parts at twice the density, noisy shapes, other meshes of the same parts. ``--write`` puts rows into table.csv and
@@ -10,6 +10,7 @@ from __future__ import annotations
 import argparse
 import csv
 import io
+import math
 import multiprocessing
 import sys
 import time
@@ -23,7 +24,7 @@ from pathlib import Path
 import numpy as np
 
 from tests.collection.parts import SEED, VERSION, Part
-from tests.collection.registry import GROUPS, part_named, parts_of
+from tests.collection.registry import DEVELOPMENT, GROUPS, SCORED, part_named, parts_of
 from tests.collection.scoring import Row, score
 from tests.collection.sheets import build
 from tests.collection.solved import solved
@@ -74,6 +75,10 @@ def totals(rows: Sequence[Row]) -> dict[str, float]:
             out[f"{name} {word}"] = float(figure(values)) if len(values) else float("nan")
         bound = {"position": POSITION, "direction": DIRECTION_DEG, "axis": DIRECTION_DEG}.get(name, SHARE_OFF)
         out[f"{name} beyond {bound:g}"] = int((values > bound).sum())
+        if name in ("fold", "stiffness"):
+            out[f"{name} judged"] = len(values)
+    out["stiffness without a settled truth"] = sum(math.isnan(r.mesh) for r in hits)
+    out["mesh worst"] = max((abs(r.mesh) for r in hits if not math.isnan(r.mesh)), default=float("nan"))
     return out
 
 
@@ -173,10 +178,12 @@ def show(title: str, figures: dict[str, float], say: Callable[[str], None]) -> N
 
 
 def results_of(rows: Sequence[Row]) -> dict[str, dict[str, float]]:
-    """Totals by density and group of families, of the scored half (all but tuning), and of everything."""
+    """Totals by density and group of families, of the half seen while the search was made, of the scored half, and of
+    everything."""
     names = {group: {p.name for p in parts_of(group)} for group in GROUPS}
-    names["scored half"] = names["held"] | names["unseen"]
-    names["all"] = names["tuning"] | names["scored half"]
+    names["development half"] = set().union(*(names[group] for group in DEVELOPMENT))
+    names["scored half"] = set().union(*(names[group] for group in SCORED))
+    names["all"] = names["development half"] | names["scored half"]
     out = {}
     for density, word in ((1, ""), (2, "twice as dense: ")):
         for group, members in names.items():
@@ -212,7 +219,7 @@ def _write(rows: Sequence[Row], others: dict[str, dict[str, float]]) -> None:
 
 def main(arguments: Sequence[str] | None = None) -> int:
     parser = argparse.ArgumentParser(prog="python -m tests.collection.score", description=__doc__)
-    parser.add_argument("--families", choices=[*GROUPS, "scored", "all"], default="tuning")
+    parser.add_argument("--families", choices=[*GROUPS, "development", "scored", "all"], default="tuning")
     parser.add_argument("--runs", default="coarse", help="some of coarse, fine, noise, invariance, with commas")
     parser.add_argument("--part", default="", help="only parts whose names contain this")
     parser.add_argument("--jobs", type=int, default=1, help="processes")
@@ -222,7 +229,8 @@ def main(arguments: Sequence[str] | None = None) -> int:
     each: Each = map
     if given.jobs > 1:
         each = ProcessPoolExecutor(given.jobs, multiprocessing.get_context("forkserver")).map
-    chosen = {"scored": ["held", "unseen"], "all": list(GROUPS)}.get(given.families, [given.families])
+    several = {"development": DEVELOPMENT, "scored": SCORED, "all": tuple(GROUPS)}
+    chosen = several.get(given.families, (given.families,))
     parts = [p for name in chosen for p in parts_of(name) if given.part in p.name]
     rows, others = [], {}
     for name in given.runs.split(","):

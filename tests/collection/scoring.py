@@ -30,7 +30,10 @@ class Row:
     position distance of the position from the true centre line in the plane of the sheet ÷ diagonal (curves: mean
              along the axis, since no arc holds its own centroid)
     direction degrees between direction and true turn; axis degrees between the axis's ends and the true line (lines)
-    fold     |fold| ÷ true turn − 1; stiffness k ÷ static solution − 1; NaN where there is no one angle or no k
+    fold     |fold| ÷ true turn − 1; stiffness k ÷ static solution − 1; NaN where there is no one angle or no k, or
+             where the static solution does not settle
+    mesh     static solution on the mesh of the modes ÷ settled one − 1: so much is the mesh's, not the search's
+    settled  by what share the static solution still changed when the cells were last halved
     free     the mode has no hinge; false: findings off every band in this mode (counted in the mode's first row)
     idle     findings on bands of the part although the mode is free of hinges
     """
@@ -55,6 +58,8 @@ class Row:
     free: bool = False
     false: int = 0
     idle: int = 0
+    mesh: float = NAN
+    settled: float = NAN
 
 
 def named(finding: HingeFinding) -> tuple[Hinge, ...]:
@@ -105,6 +110,8 @@ def score_mode(solved: Solved, j: int, hinges: Sequence[Hinge]) -> list[Row]:
             "contrast": t.contrast,
             "evenness": t.evenness,
         }
+        if t.level == "strong" and bands[i].cut is not None:
+            facts |= {"mesh": solved.own_stiffness[i] / solved.stiffness[i] - 1, "settled": solved.change[i]}
         best = hinges[taken[i]] if i in taken and gaps[i, taken[i]] <= NEAR else None
         errors = {} if best is None else compare(built, bands[i], t, best, solved.stiffness[i])
         rows.append(Row(**base, **facts, **errors, **(counts if i == 0 else {})))

@@ -94,6 +94,7 @@ class Sheet:
     scale      (s, t) → factor on every thickness there (tapers)
     clamp      rectangles of (s, t) that are held; none: a free body
     least      cells at least across anything built in, at the coarse density
+    layers     cells of a solid through each of its levels
     """
 
     size: tuple[float, float]
@@ -107,6 +108,7 @@ class Sheet:
     scale: Callable[[Array, Array], Array] | None = None
     clamp: tuple[tuple[float, float, float, float], ...] = ()
     least: int = 2
+    layers: int = 1
 
     def lines(self, axis: int, density: int) -> Array:
         """Values of s (0) or t (1) between which cells lie; twice the density halves every cell."""
@@ -190,12 +192,13 @@ class Built:
         return self.sheet.place(s, t, np.zeros(count))
 
 
-def build(name: str, sheet: Sheet, kind: str, density: int = 1) -> Built:
-    """Mesh the sheet with cells of ``kind``; ``density`` 2 halves every side of every cell in the sheet's plane."""
+def build(name: str, sheet: Sheet, kind: str, density: int = 1, through: int = 1) -> Built:
+    """Mesh the sheet with cells of ``kind``; ``density`` 2 halves every side of every cell in the sheet's plane,
+    ``through`` 2 every cell of a solid through the thickness."""
     cell = KINDS[kind]
     s, t = sheet.lines(0, density), sheet.lines(1, density)
     solid = cell.dim == 3
-    levels = _levels(sheet) if solid else np.array([0.0])
+    levels = _levels(sheet, through) if solid else np.array([0.0])
     shape = (len(s), len(t), len(levels))
     grid = np.stack(np.meshgrid(s, t, levels, indexing="ij"), axis=-1).reshape(-1, 3)
     number = np.arange(len(grid)).reshape(shape)
@@ -227,11 +230,12 @@ def build(name: str, sheet: Sheet, kind: str, density: int = 1) -> Built:
     return Built(sheet, kind, design, where, middle[:, :2], rib)
 
 
-def _levels(sheet: Sheet) -> Array:
+def _levels(sheet: Sheet, through: int) -> Array:
     """Layers of a solid: every thickness in use ends one; material goes from the top."""
     used = {round(p.thickness, 12) for p in sheet.patches if p.thickness > 0} | {round(sheet.thickness, 12)}
-    ends = np.array([0.0, *sorted(used)])
-    return ends - sheet.thickness / 2
+    ends, each = np.array([0.0, *sorted(used)]), sheet.layers * through
+    split = np.interp(np.arange((len(ends) - 1) * each + 1) / each, np.arange(len(ends)), ends)
+    return split - sheet.thickness / 2
 
 
 def _blade(blade, sheet, grid, s, column, number, density):

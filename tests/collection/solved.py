@@ -7,7 +7,7 @@ import os
 import tempfile
 import zlib
 from dataclasses import dataclass
-from functools import cached_property
+from functools import cache, cached_property
 from pathlib import Path
 
 import numpy as np
@@ -24,17 +24,31 @@ from viewer.model.modes import ArrayShapes, ModeSet
 
 @dataclass(frozen=True, eq=False)
 class Solved:
-    """A part at one density: ``first`` is the index of the first elastic mode; stiffness (bands,) N·m/rad."""
+    """A part at one density: ``first`` is the index of the first elastic mode."""
 
     part: Part
     density: int
     built: Built
     modes: ModeSet
-    stiffness: Array
 
     @property
     def first(self) -> int:
         return 6 if self.part.free else 0
+
+    @cached_property
+    def stiffness(self) -> Array:
+        """(bands,) N·m/rad, settled whatever the mesh of the modes; NaN where there is none."""
+        return _settled(self.part)[:, 0]
+
+    @cached_property
+    def change(self) -> Array:
+        """(bands,) by what share the last halving of the cells changed the stiffness."""
+        return _settled(self.part)[:, 1]
+
+    @cached_property
+    def own_stiffness(self) -> Array:
+        """(bands,) N·m/rad on the mesh of the modes."""
+        return np.array([statics.stiffness(self.built, band) for band in self.part.sheet.bands])
 
     @cached_property
     def energies(self) -> Energies:
@@ -63,15 +77,28 @@ def solved(part: Part, density: int = 1) -> Solved:
         with np.load(path) as kept:
             shapes = ArrayShapes(kept["moved"], kept.get("turned"))
             modes = ModeSet(ids, kept["freq"], shapes, None, "mass", "computed", part.name)
-            return Solved(part, density, built, modes, kept["stiffness"])
+            return Solved(part, density, built, modes)
     modes = solve(built.design, part.modes + 6 * part.free)
-    stiffness = np.array([statics.stiffness(built, band) for band in part.sheet.bands])
     arrays = {"freq": modes.freq_hz, "moved": np.stack([modes.shape(i) for i in range(modes.count)])}
     if modes.shapes.has_rotations:
         arrays["turned"] = np.stack([modes.rotations(i) for i in range(modes.count)])
     with atomic_path(path) as target:
-        np.savez(target, stiffness=stiffness, **arrays)
-    return Solved(part, density, built, modes, stiffness)
+        np.savez(target, **arrays)
+    return Solved(part, density, built, modes)
+
+
+@cache
+def _settled(part: Part) -> Array:
+    """(bands, 2) settled stiffness and last change of a part, kept beside its modes."""
+    path = _folder() / f"{part.name.replace('>', '_')}-static-{_key(build(part.name, part.sheet, part.kind), 0)}.npz"
+    if path.exists():
+        with np.load(path) as kept:
+            return kept["settled"]
+    found = [(s.value, s.change) for s in statics.settled(part.name, part.sheet, part.kind)]
+    values = np.array(found).reshape(len(found), 2)
+    with atomic_path(path) as target:
+        np.savez(target, settled=values)
+    return values
 
 
 def _key(built: Built, modes: int) -> str:

@@ -3,24 +3,70 @@
 The band is cut out with a margin of its surroundings; the face before it is held, the face behind it moves as a rigid
 body, free to shift, and carries a unit moment about the line. The turn between the band's true edges under this load
 is read off as it is in a mode (:func:`tests.collection.truth.fold`), so that k = moment / turn.
+
+The truth is no property of a mesh: the solution is repeated with every cell halved in every direction, through the
+thickness of solids too, until two in a row agree within ``SETTLED``; the last one counts. Where they do not agree
+before the mesh grows too large, there is no truth and the stiffness is not judged.
 """
 
 from __future__ import annotations
+
+from dataclasses import dataclass
 
 import numpy as np
 import scipy.sparse as sp
 
 from tests.collection import truth
-from tests.collection.sheets import Band, Built, inside
+from tests.collection.sheets import Band, Built, Sheet, build, inside
+from viewer.cells import KINDS
 from viewer.mechanics.assembly import assemble
 from viewer.mechanics.factor import factorise
 from viewer.mechanics.patch import rigid_fields
 from viewer.model.arrays import Array
 from viewer.model.mesh import CellBlock
 
+SETTLED = 0.05
+HALVINGS, LARGEST = 3, {2: 60_000, 3: 12_000}  # at most so often, and so many cells of the whole part
+
+
+@dataclass(frozen=True)
+class Settled:
+    """What a band's stiffness settles to, N·m/rad (NaN: it does not); what share of it the last halving changed."""
+
+    value: float
+    change: float
+
+
+def settled(name: str, sheet: Sheet, kind: str) -> list[Settled]:
+    """The true stiffness of every band of a sheet."""
+    ladders: list[list[float]] = [[] for _ in sheet.bands]
+    for halving in range(HALVINGS + 1):
+        left = [
+            (band, ladder)
+            for band, ladder in zip(sheet.bands, ladders, strict=True)
+            if band.cut is not None and not agree(ladder)
+        ]
+        if not left:
+            break
+        built = build(name, sheet, kind, 2**halving, 2**halving)
+        if halving > 1 and built.mesh.n_cells > LARGEST[KINDS[kind].dim]:
+            break
+        for band, ladder in left:
+            ladder.append(stiffness(built, band))
+    nan = float("nan")
+    return [
+        Settled(ladder[-1] if agree(ladder) else nan, ladder[-1] / ladder[-2] - 1) if ladder else Settled(nan, nan)
+        for ladder in ladders
+    ]
+
+
+def agree(ladder: list[float]) -> bool:
+    """Whether the last two of a row are near enough for the last to count."""
+    return len(ladder) > 1 and abs(ladder[-1] / ladder[-2] - 1) <= SETTLED
+
 
 def stiffness(built: Built, band: Band) -> float:
-    """N·m/rad; NaN for bands without a cut."""
+    """N·m/rad on the mesh that is given; NaN for bands without a cut."""
     if band.cut is None:
         return float("nan")
     system, rows = _cut_out(built, band)

@@ -6,8 +6,9 @@ from dataclasses import asdict
 
 import pytest
 
-from tests.collection import held_out, score, tuning, unseen
+from tests.collection import score
 from tests.collection.parts import SEED, VERSION
+from tests.collection.registry import GROUPS, SCORED, parts_of
 from tests.collection.scoring import score as score_part
 from tests.collection.solved import solved
 
@@ -17,7 +18,7 @@ FIXED = (
     "root_groove-0-quad4", "two_grooves-0-quad4", "fold_groove-0-quad4", "arc_groove-0-quad4", "square_neck-0-quad4",
     "groove-3-hex8", "even_taper-2-quad4", "cylinder_groove-0-quad4", "step_groove-0-quad4",
 )  # fmt: skip
-PARTS = {p.name: p for p in (*tuning.parts(), *held_out.parts(), *unseen.parts())}
+PARTS = {p.name: p for group in GROUPS for p in parts_of(group)}
 
 
 def test_the_committed_table_is_of_this_generator_and_large_enough():
@@ -26,9 +27,10 @@ def test_the_committed_table_is_of_this_generator_and_large_enough():
     assert {r["part"] for r in rows} == set(PARTS) and len(PARTS) >= 60
     free = {(r["part"], r["mode"]) for r in rows if r["free"] == "1" and r["density"] == "1"}
     assert len(free) >= 150
-    scored = {p.name for p in (*held_out.parts(), *unseen.parts())}
+    scored = {p.name for group in SCORED for p in parts_of(group)}
     coarse = [r for r in rows if r["density"] == "1" and r["part"] in scored and r["kind"] != "joint"]
     assert sum(r["level"] == "strong" for r in coarse) >= 40
+    assert len([f for f in free if f[0] in scored]) >= 100
     assert len({f for f in free if f[0] in FIXED}) >= 40
 
 

@@ -7,14 +7,15 @@ from dataclasses import replace
 import numpy as np
 import pytest
 
-from tests.collection import held_out, statics, truth, tuning, unseen
+from tests.collection import statics, truth
 from tests.collection.parts import line_across
+from tests.collection.registry import GROUPS, parts_of
 from tests.collection.scoring import named, score_mode
 from tests.collection.sheets import STEEL, Patch, Sheet, build
 from tests.collection.solved import solved
 from viewer.insight.hinges import find_hinges
 
-PARTS = {p.name: p for p in (*tuning.parts(), *held_out.parts(), *unseen.parts())}
+PARTS = {p.name: p for group in GROUPS for p in parts_of(group)}
 
 
 def _plate(depth=0.3, width=0.004, h=0.004):
@@ -31,6 +32,51 @@ def test_static_stiffness_of_a_shell_groove_is_that_of_a_plate_strip(kind, off):
     h, width = 0.3 * sheet.thickness, band.sides[1] - band.sides[0]
     plain = STEEL.youngs_modulus * h**3 / 12 / (1 - STEEL.poisson**2) * sheet.size[1] / width
     assert statics.stiffness(build("strip", sheet, kind), band) == pytest.approx(plain, rel=off)
+
+
+def test_a_settled_stiffness_is_that_of_finer_cells_and_of_other_cells():
+    # A groove from one face of a solid: bricks and tetrahedra must settle to the same.
+    sheet, band = _plate(width=0.006)
+    sheet = replace(sheet, size=(0.2, 0.03), bands=(), patches=())
+    band = line_across(sheet.size, 0.1, 0.006, 0.006)
+    sheet = replace(
+        sheet,
+        patches=(Patch(band.box, 0.0014),),
+        bands=(band,),
+        cell=0.01,
+        clamp=((0, 0, 0, 0.03),),
+        layers=2,
+        least=4,
+    )
+    found = {kind: statics.settled("strip", sheet, kind)[0] for kind in ("hex20", "tet10", "quad8")}
+    assert all(abs(s.change) <= statics.SETTLED and s.value > 0 for s in found.values())
+    assert found["tet10"].value == pytest.approx(found["hex20"].value, rel=statics.SETTLED)
+    own = statics.stiffness(build("strip", sheet, "quad8"), band)
+    assert own == pytest.approx(found["quad8"].value, rel=0.01)
+
+
+def test_a_stiffness_that_does_not_settle_is_none():
+    assert statics.agree([3.0, 2.9]) and not statics.agree([3.0]) and not statics.agree([3.0, 2.8])
+    assert statics.agree([3.0, 2.7, 2.6])
+
+
+def test_parts_without_bands_have_no_narrow_weak_place():
+    # Any strip across the part, as narrow as a strong hinge may be, along either side: none is what a band must be.
+    for name in ("waffle-1-quad4", "comb-0-quad4", "pocket-1-quad4", "doubler-0-quad4", "ladder-0-quad4"):
+        ready = solved(PARTS[name])
+        for j in range(ready.first, ready.modes.count):
+            strain, whole = ready.energies.strain[j], ready.energies.total_strain[j]
+            for on in _strips(ready.built):
+                share, volumes = strain[on].sum() / whole, ready.energies.volumes
+                contrast = strain[on].sum() / volumes[on].sum() / (strain[~on].sum() / volumes[~on].sum())
+                assert share < truth.STRONG_SHARE or contrast < truth.STRONG_CONTRAST, (name, j)
+
+
+def _strips(built):
+    for axis in (0, 1):
+        width = truth.STRONG_WIDTH * built.sheet.size[1 - axis]
+        for start in np.unique(built.middle[:, axis].round(7)):
+            yield (built.middle[:, axis] >= start - 1e-7) & (built.middle[:, axis] <= start + width)
 
 
 def test_turn_of_a_band_is_what_rigid_sides_make_it():
