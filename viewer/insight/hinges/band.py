@@ -18,6 +18,8 @@ _OWN = 0.1  # of the band's own density, likewise
 _FAINT = 0.15  # of the band's mean density: strips at its ends below that are none of it
 _STRIPS = 24
 _GAPS = 2  # strips that may be missing in between
+_ONE_SENSE = 0.5  # share of the squared turn that is the mean turn: below, parts of a line fold in different senses
+_PIECE = 0.2  # of a band's energy in a piece of it that is looked at alone
 _BEYOND = 1.5  # cells next to a band, where they are larger than its own, that its surroundings reach over
 
 
@@ -38,6 +40,7 @@ class Draft:
     step       the same over the denser of the two strips of the same width beside it
     jump       density just inside over just outside of an edge, the smaller of both
     filled     least density across the band over its mean
+    rows       width over the size across the line of its own cells or of those beside it, whichever is larger
     strain, volume   shares of the whole
     """
 
@@ -59,6 +62,7 @@ class Draft:
     step: float
     jump: float
     filled: float
+    rows: float
     strain: float
     volume: float
 
@@ -80,25 +84,34 @@ class Examiner:
 
     def __init__(self, field: Field) -> None:
         self._field = field
-        self._known: dict[tuple[bytes, bool], Draft | None] = {}
+        self._known: dict[tuple[bytes, bool, bool], Draft | None] = {}
 
     def __call__(self, cells: Array) -> list[Draft]:
         """Measure the candidate ``cells`` as a line and as a blob, and once more what came out as the band; empty
-        when it is no band between two sides."""
+        when it is no band between two sides. Pieces that do not touch and fold in different senses, tongues beside
+        one another, are measured apart as well."""
         first = [draft for blob in (False, True) if (draft := self._once(cells, blob)) is not None]
         second = [self._once(d.cells, d.frame.blob) or self._once(d.cells, not d.frame.blob) for d in first]
-        return [draft for draft in second if draft is not None]
+        found = [draft for draft in second if draft is not None]
+        for draft in found[:]:
+            if draft.even < _ONE_SENSE and not draft.frame.blob:
+                piece = self._field.pieces(draft.cells)
+                each = [draft.cells[piece == i] for i in range(piece.max() + 1)] if piece.any() else []
+                enough = _PIECE * draft.strain
+                each = [part for part in each if self._field.strain[part].sum() >= enough]
+                found += [alone for part in each if (alone := self._once(part, False, False)) is not None]
+        return found
 
-    def _once(self, cells: Array, blob: bool) -> Draft | None:
-        key = cells.tobytes(), blob
+    def _once(self, cells: Array, blob: bool, stretch: bool = True) -> Draft | None:
+        key = cells.tobytes(), blob, stretch
         if key not in self._known:
             field = self._field
             frame = frame_of(field, cells, blob) if field.strain[cells].sum() > 0 else None
-            self._known[key] = None if frame is None else _measured(field, cells, frame)
+            self._known[key] = None if frame is None else _measured(field, cells, frame, stretch)
         return self._known[key]
 
 
-def _measured(field: Field, cells: Array, frame: Frame) -> Draft | None:
+def _measured(field: Field, cells: Array, frame: Frame, stretch: bool) -> Draft | None:
     flags = np.zeros(len(field.strain), bool)
     flags[cells] = True
     mine = flags[frame.near]
@@ -113,13 +126,14 @@ def _measured(field: Field, cells: Array, frame: Frame) -> Draft | None:
     inside = (frame.across > edges[0]) & (frame.across < edges[1])
     if not frame.blob or abs(frame.about[0] @ frame.curve.tangent(np.zeros(1))[0]) > 0.8:
         ends = _trimmed(field, frame, inside, ends)
-        ends = _stretched(field, frame, inside, edges, ends, grain)
+        ends = _stretched(field, frame, inside, edges, ends, grain) if stretch else ends
     band = inside & _within(frame, ends)
     if not band.any():
         return None
     ends = float(frame.along_low[band].min()), float(frame.along_high[band].max())
     within = _within(frame, ends)
-    window = max(edges[1] - edges[0], 3 * grain, _BEYOND * _beside(frame, within, edges, grain))
+    beside = _beside(frame, within, edges, grain)
+    window = max(edges[1] - edges[0], 3 * grain, _BEYOND * beside)
     sides = []
     for sign, edge in ((-1, edges[0]), (1, edges[1])):
         away = sign * (frame.across - edge)
@@ -131,7 +145,8 @@ def _measured(field: Field, cells: Array, frame: Frame) -> Draft | None:
         sides.append(side)
     if all(side.ground for side in sides):
         return None
-    return _draft(field, frame, band, ends, found, (sides[0], sides[1]), window)
+    own = float(np.median((frame.high - frame.low)[band]))
+    return _draft(field, frame, band, ends, found, (sides[0], sides[1]), window, max(own, beside))
 
 
 def _beside(frame: Frame, within: Array, edges: tuple[float, float], grain: float) -> float:
@@ -215,7 +230,14 @@ def _stretched(field: Field, frame: Frame, inside: Array, edges, ends, grain: fl
 
 
 def _draft(
-    field: Field, frame: Frame, band: Array, ends, found: Edges, sides: tuple[Side, Side], window: float
+    field: Field,
+    frame: Frame,
+    band: Array,
+    ends: tuple[float, float],
+    found: Edges,
+    sides: tuple[Side, Side],
+    window: float,
+    cell: float,
 ) -> Draft | None:
     cells, edges = frame.near[band], (found.low, found.high)
     width = edges[1] - edges[0]
@@ -252,6 +274,7 @@ def _draft(
         step=density / max(*strips, 1e-300),
         jump=found.jump,
         filled=found.filled,
+        rows=width / cell,
         strain=strain,
         volume=volume / field.volume.sum(),
     )

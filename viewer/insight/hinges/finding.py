@@ -10,6 +10,7 @@ from typing import Any
 
 import numpy as np
 
+from viewer.insight.hinges.gates import CALIBRATION
 from viewer.insight.scale import Scale
 from viewer.model.arrays import Array, frozen
 
@@ -26,7 +27,8 @@ class Hinge:
     direction     (3,) unit, along the relative rotation
     length, width m, of the band along the axis and across it
     fold          (3,) rad per unit of the shape: rotation of region B relative to region A at the band's edges
-    stiffness     N·m/rad, 2U/θ² of the band; None without absolute energies
+    stiffness     N·m/rad, moment that passes through the band over the mean turn of its edges (2U/θ² of its cells
+                  where rotations are unknown or the turn changes its sense); None without absolute energies
     strain_share  share of the strain energy of the whole (springs included) in the band, NaN without energies
     volume_share  share of the volume in the band
     contrast      energy density of the band ÷ that of the rest of both regions, NaN without energies
@@ -35,7 +37,7 @@ class Hinge:
     arm           (3,) unit, from the axis into region B, square to the direction
     score         smallest gate value ÷ its threshold; gate: the name of that weakest gate
     confidence    0 … 1, chance that this is a hinge line (``CALIBRATION`` in ``gates.py`` says how it was found)
-    label         "strong", "weak" or "undecided"
+    label         "strong", "weak", or "undecided" (``gates.label``)
     place         words: the group or groups in which it lies, else a position
     """
 
@@ -100,7 +102,9 @@ class HingeFinding:
     """Where one mode folds and what flaps.
 
     mode       number from 1; freq_hz as given
-    verdict    "hinges", "bending is spread" (a full answer), "rigid-body mode", "does not bend", "undecided"
+    verdict    "hinges", "bending is spread" (a full answer), "rigid-body mode", "does not bend", "undecided": no line
+               passes every gate, but one comes near
+    doubtful   the lines that come near, when no other does; never among ``hinges``
     basis      "energies", or "smoothed" when noise was taken out of the shape by the model before looking
     noise      estimated share of noise in the shape (0 for a clean one)
     cautions   what a reader of the figures must know
@@ -112,6 +116,7 @@ class HingeFinding:
     verdict: str
     hinges: tuple[Hinge, ...] = ()
     flaps: tuple[Flap, ...] = ()
+    doubtful: tuple[Hinge, ...] = ()
     basis: str = "energies"
     noise: float = 0.0
     cautions: tuple[str, ...] = ()
@@ -134,6 +139,8 @@ class HingeFinding:
             "noise": self.noise,
             "hinges": [self._hinge(h) for h in self.hinges],
             "flaps": [_flap(f) for f in self.flaps],
+            "doubtful": [self._hinge(h) for h in self.doubtful],
+            "confidence_basis": CALIBRATION if self.hinges or self.doubtful else None,
             "cautions": list(self.cautions),
         }
 
@@ -183,6 +190,10 @@ def _flap(flap: Flap) -> dict[str, Any]:
 def sentence_of(facts: dict[str, Any]) -> str:
     """The plain sentence made of the figures of ``HingeFinding.to_dict``."""
     head = f"Mode {facts['mode']}"
+    if facts["doubtful"]:
+        best = facts["doubtful"][0]
+        doubt = f"but that is not certain: of lines that score like it {best['confidence']:.0%} were hinges"
+        return f"{head} may fold at {_hinge_words(best)}, {doubt}."
     if facts["verdict"] != "hinges":
         words = {
             "bending is spread": "has no hinge line: bending is spread",

@@ -14,7 +14,7 @@ from viewer.insight.hinges.curve import Line
 from viewer.insight.hinges.field import Field, make_field
 from viewer.insight.hinges.finding import Hinge, HingeFinding
 from viewer.insight.hinges.flaps import find_flaps, regions
-from viewer.insight.hinges.gates import confidence, is_joint, label, score
+from viewer.insight.hinges.gates import DOUBTFUL, confidence, is_joint, label, score
 from viewer.insight.hinges.lines import unions
 from viewer.insight.hinges.seam import moment_through, seams_of, turn_between
 from viewer.insight.places import place_of
@@ -76,7 +76,7 @@ def find_hinges(
     )
     drafts = _chosen(field, progress)
     region = regions(field, [draft.cells for draft, _, _ in drafts])
-    hinges = []
+    hinges: list[Hinge] = []
     for draft, worth, gate in drafts:
         seams = seams_of(design.mesh, draft)
         turn = turn_between(design.mesh, seams, bool((field.dim[draft.cells] == 3).any()), moved, turned)
@@ -86,13 +86,15 @@ def find_hinges(
             moment = moment_through(design, draft, seams, moved, turned, given.formulations)
             stiffness = stiffness_of(draft, moment, whole)
         hinges.append(_hinge(field, region, len(hinges) + 1, draft, worth, gate, stiffness))
-    flaps = find_flaps(field, tuple(hinges), region)
     where = lambda cells: place_of(design.mesh, cells, given.volumes)  # noqa: E731
-    flaps = tuple(replace(flap, place=where(flap.cells)) for flap in flaps)
+    placed = tuple(replace(hinge, place=where(hinge.cells)) for hinge in hinges)
+    if any(hinge.label == "undecided" for hinge in placed):
+        return HingeFinding(verdict="undecided", doubtful=placed, cautions=tuple(cautions), **answer)
+    flaps = (replace(flap, place=where(flap.cells)) for flap in find_flaps(field, placed, region))
     return HingeFinding(
-        verdict="hinges" if hinges else "bending is spread",
-        hinges=tuple(replace(hinge, place=where(hinge.cells)) for hinge in hinges),
-        flaps=flaps,
+        verdict="hinges" if placed else "bending is spread",
+        hinges=placed,
+        flaps=tuple(flaps),
         cautions=tuple(cautions),
         **answer,
     )
@@ -146,7 +148,8 @@ def _doubts(given: Energies, row: int, basis: str) -> list[str]:
 
 
 def _chosen(field: Field, progress: Progress) -> list[tuple[Draft, float, str]]:
-    """The best of the candidates that pass, no two for one band, the strongest first."""
+    """The best of the candidates that pass, no two for one band, the strongest first; if none passes, those in
+    doubt."""
     measured: dict[int, Draft] = {}  # the examiner keeps its drafts and gives the same one again
     proposed = candidates(field, progress)
     examine = Examiner(field)
@@ -156,7 +159,7 @@ def _chosen(field: Field, progress: Progress) -> list[tuple[Draft, float, str]]:
     for cells in unions(field, list(measured.values())):
         measured |= {id(draft): draft for draft in examine(cells)}
     scored = [(draft, *score(field, draft)) for draft in measured.values()]
-    found = [item for item in scored if item[1] >= 1]
+    found = [item for item in scored if item[1] >= 1] or [item for item in scored if item[1] >= DOUBTFUL]
     found.sort(key=lambda item: -_rank(*item[:2]))
     kept: list[tuple[Draft, float, str]] = []
     for item in found:
