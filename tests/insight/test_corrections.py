@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 
 from viewer.errors import InputError
-from viewer.insight.corrections import apply_corrections, correction_words
+from viewer.insight.corrections import apply_corrections, correction_words, fault_words
 from viewer.model.testset import Correction, TestSet
 
 
@@ -114,3 +114,5 @@ def test_words_name_the_channel_as_it_was_measured():
     assert correction_words(Correction("move", "a", other="b"), test) == "points a and b: readings exchanged"
     assert correction_words(Correction("move", "a", position=(1.0, 2.0, 3.0)), test) == "point a: in the wrong place"
     assert correction_words(Correction("leave out", "c"), test) == "point c: left out"
+    assert fault_words(Correction("leave out", "c"), test) == "point c: reads nothing"
+    assert fault_words(Correction("flip", "a", "z"), test) == "point a, −Z: sign flipped"

@@ -100,7 +100,7 @@ def test_the_left_out_residual_predicts_the_true_error_within_a_factor_of_two(pa
         said = found.residual_by_mode * np.sqrt((test.shapes**2).mean(axis=1))
         single.append(said / np.sqrt((missed**2).mean(axis=1)))
         whole.append(np.sqrt((said**2).mean() / (missed**2).mean()))
-    assert 0.5 <= min(whole) and max(whole) <= 2.0
+    assert min(whole) >= 0.5 and max(whole) <= 2.0
     assert np.mean(np.abs(np.log2(single)) <= 1) >= 0.99
 
 

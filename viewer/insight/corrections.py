@@ -39,6 +39,12 @@ def correction_words(correction: Correction, test: TestSet | None = None) -> str
     return f"{who}: {what}"
 
 
+def fault_words(correction: Correction, test: TestSet | None = None) -> str:
+    """What is wrong, where a correction is proposed: as :func:`correction_words`, but "reads nothing" for what is to
+    be left out."""
+    return correction_words(correction, test).replace(_DONE["leave out"], "reads nothing")
+
+
 def exchanged(test: TestSet, one: int, two: int) -> tuple[Array, Array]:
     """(n,) and (n,) channels of the points in rows ``one`` and ``two`` that answer to one another, by the least angle
     between their directions: these exchange readings when the points do. The rest of the longer list has no
@@ -161,4 +167,4 @@ def _only(test: TestSet, label: str, axis: str) -> int:
     return int(rows[0])
 
 
-__all__ = ["apply_corrections", "axis_of", "correction_words", "exchanged"]
+__all__ = ["apply_corrections", "axis_of", "correction_words", "exchanged", "fault_words"]

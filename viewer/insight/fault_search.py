@@ -21,7 +21,8 @@ from viewer.model.arrays import Array
 from viewer.model.testset import Correction, TestSet
 
 GAIN = 40.0  # least gain of a hypothesis: 2 ln of the odds, over every cause that is tried
-SEARCH = 10.0  # more is asked of a place found among thousands
+SEARCH = 10.0  # more is asked of a place found among thousands when it stands against a simple cause
+PLACE = 150.0  # least gain of a place: a model off by a third of its thickness makes up to 100 of a right point
 MARGIN = 12.0  # two causes whose gains differ by less explain equally well
 PART = 0.2  # a cause that leaves more than this share of the surprise explains nothing by itself
 WIDE = 0.15  # of the size of the part: places that fit equally well may not lie farther apart
@@ -125,21 +126,29 @@ def _best(
         own = [h for h in _causes(test, y, allowed, mixture, suspects, int(point)) if h.explains]
         simple = max((h.gain for h in own if h.complete), default=0.0)
         place = _elsewhere(test, y, allowed, mixture, int(point), places)
-        if place is not None and place.explains and place.complete and place.gain >= simple + SEARCH + MARGIN:
+        if (
+            place is not None
+            and place.explains
+            and place.complete
+            and place.gain >= max(PLACE, simple + SEARCH + MARGIN)
+        ):
             own.append(place)
         found += [h for h in own if h.correction not in done]
     found.sort(key=lambda h: (h.complete, h.gain), reverse=True)
     tried = [(h, _cost_with(h, y, phi, allowed, sizes, mixture)) for h in found[:TRIED]]
     if not tried:
         return None
-    best, least = min(tried, key=lambda pair: pair[1])
+    best, _ = min(tried, key=lambda pair: pair[1])
     about = {best.correction.point, best.correction.other} - {""}
-    others = tuple(
-        h.correction
-        for h, cost in sorted(tried, key=lambda pair: pair[1])
-        if cost < least + MARGIN and about & {h.correction.point, h.correction.other} and not _same(h, best)
-    )
-    return replace(best, others=others)
+    others = {
+        h.correction: None
+        for h, _ in sorted(tried, key=lambda pair: pair[1])
+        if abs(h.gain - best.gain) < MARGIN
+        and h.complete == best.complete
+        and about & {h.correction.point, h.correction.other}
+        and h.correction != best.correction
+    }
+    return replace(best, others=tuple(others))
 
 
 def _cost_with(made: Hypothesis, y, phi, allowed, sizes, mixture: Mixture) -> float:
@@ -152,12 +161,6 @@ def _cost_with(made: Hypothesis, y, phi, allowed, sizes, mixture: Mixture) -> fl
     noise = (np.abs(dead) ** 2 / fitted.spread[:, None] ** 2 + 2 * np.log(fitted.spread[:, None])).sum()
     search = SEARCH if made.rows is not None else 0.0
     return fitted.cost(y, still) + float(noise) + search
-
-
-def _same(one: Hypothesis, two: Hypothesis) -> bool:
-    """Whether two hypotheses are one; the exchange of two points is seen from either."""
-    a, b = one.correction, two.correction
-    return a == b or (a.kind == b.kind == "move" and bool(a.other) and {a.point, a.other} == {b.point, b.other})
 
 
 def _causes(test, y, allowed, mixture: Mixture, suspects: Array, point: int) -> Iterator[Hypothesis]:
@@ -184,7 +187,7 @@ def _causes(test, y, allowed, mixture: Mixture, suspects: Array, point: int) -> 
         if not allowed[second].all():
             continue
         both = np.concatenate([first, second])
-        fix = Correction("move", label, other=test.labels[other])
+        fix = Correction("move", test.labels[min(point, other)], other=test.labels[max(point, other)])
         yield _weighed(fix, y, mixture, both, y[:, np.concatenate([second, first])])
     yield from _dead(test, y, mixture, rows, wrong)
 

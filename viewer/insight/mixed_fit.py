@@ -2,7 +2,7 @@
 
 A structure that differs a little from its model has the model's modes, each mixed with a little of the others: to the
 first order in the difference, mode p takes up of mode j a share of the size ε·√(λp λj) / |λp − λj| (Rayleigh, The
-Theory of Sound, 2nd ed. 1894, § 90: corrections of the second kind to the normal types). That is what is assumed
+Theory of Sound, 2nd ed. 1894, § 90, of small changes of a system; from memory). That is what is assumed
 beforehand about the mixture: its own analysis mode at any size, of every other mode a share of about that size. So a
 channel that alone carries a mode is still contradicted by the others, and no reading can be explained by a mode that
 has no business there.
@@ -38,10 +38,11 @@ SLACK = 1.6  # times what that chance allows, since a model's errors are no nois
 class Mixture:
     """A fit of c channels in m measured modes by k analysis modes.
 
-    phi       (k, c) analysis modes at the channels; analysis (i) has its own ``inverse[i]`` (k, k), the covariance of
-              its coefficients
-    weights   (c,) 1 for channels that the fit believes, 0 for those it does not use
-    coefficients (m, k); spread (m,) standard deviation of a right reading about the fit
+    phi           (k, c) analysis modes at the channels
+    inverse       (m, k, k) covariance of each measured mode's coefficients
+    weights       (c,) 1 for channels that the fit believes, 0 for those that it does not use
+    coefficients  (m, k)
+    spread        (m,) standard deviation of a right reading about the fit
     """
 
     phi: Array

@@ -14,7 +14,7 @@ import numpy as np
 import scipy.sparse as sp
 
 from viewer.errors import RefusedError
-from viewer.insight.corrections import correction_words
+from viewer.insight.corrections import fault_words
 from viewer.insight.correlate import mac
 from viewer.insight.fault_search import Found, Hypothesis, Places, search, suspected
 from viewer.insight.mixed_fit import KNOWN, bound, own_modes
@@ -60,7 +60,7 @@ class Proposal:
             "number": self.number,
             **correction_dict(self.correction),
             "words": self.words,
-            "alternatives": [{**correction_dict(a), "words": correction_words(a)} for a in self.alternatives],
+            "alternatives": [{**correction_dict(a), "words": fault_words(a)} for a in self.alternatives],
             "pairs": len(self.before),
             "mac_before": self.before.tolist(),
             "mac_after": self.after.tolist(),
@@ -183,7 +183,7 @@ def find_faults(
         Proposal(
             number=n + 1,
             correction=h.correction,
-            words=correction_words(h.correction, test),
+            words=fault_words(h.correction, test),
             alternatives=h.others,
             before=effect.of(()),
             after=effect.of((h,)),
@@ -276,9 +276,9 @@ def _rise(facts: dict[str, Any], pairs: int) -> str:
 def _proposal_words(facts: dict[str, Any]) -> str:
     text = facts["words"]
     if facts["reach"] is not None:
-        x, y, z = (1e3 * v for v in facts["position"])
-        text += f", its readings belong near ({x:.0f}, {y:.0f}, {z:.0f}) mm"
-        if facts["reach"] > 0:
+        where = ", ".join(f"{axis} = {1e3 * v:.0f} mm" for axis, v in zip("xyz", facts["position"], strict=True))
+        text += f", its readings belong near {where} in the test's axes"
+        if facts["reach"] >= 1e-3:
             text += f", within {1e3 * facts['reach']:.0f} mm"
     text += "; " + _rise(facts, facts["pairs"]) if facts["pairs"] else ""
     if facts["alternatives"]:
@@ -305,6 +305,10 @@ def _sentence(facts: dict[str, Any]) -> str:
             text += f"; {_count(many - facts['certain'], 'proposal')} could as well have another cause"
         if facts["unexplained_count"]:
             text += f"; no cause was found for {_count(facts['unexplained_count'], 'channel')} more"
+    if facts["modes_like_none"]:
+        listed = ", ".join(map(str, facts["modes_like_none"]))
+        one = len(facts["modes_like_none"]) == 1
+        text += f"; mode{'' if one else 's'} {listed} {'is' if one else 'are'} like none of the design and say little"
     if facts["unseen_count"]:
         text += f"; {_count(facts['unseen_count'], 'channel')} move too little for a fault to be seen"
     return head + text + "."
