@@ -11,7 +11,7 @@ from viewer.model.testset import Correction, TestSet
 
 
 def small(**changes) -> TestSet:
-    """Point a along +X, +Y, −Z; b along +X, +Y, +Z; c along −Z only; d without a channel. Reading = channel number."""
+    """Point a along +X, +Y, −Z; b along +X, +Y, +Z; c along −Z only; d without a channel. Each reads its number."""
     given = {
         "name": "small",
         "labels": ("a", "b", "c", "d"),
