@@ -15,6 +15,7 @@ from viewer.export.stills import save_png
 from viewer.insight.hinges import HingeFinding
 from viewer.insight.phase import turned_real
 from viewer.insight.test_pairing import TestPair
+from viewer.insight.test_words import numbers
 from viewer.jobs import Give, at_once
 from viewer.model.written import digits
 from viewer.scene.channel_picture import channel_picture, faults_picture
@@ -133,7 +134,7 @@ def expanded_still(
 ) -> tuple[str, str]:
     """A still of a measured mode expanded onto the mesh; returns words and file."""
     spread = study.expansion()
-    said = f"expanded from {spread.n_channels} channels on {len(spread.basis)} analysis modes"
+    said = f"expanded from {spread.n_channels} channels on analysis {numbers(spread.basis_of(test_mode - 1))}"
     picture = expanded_picture(
         study.expanded(), test_mode, placed_of(study), said, finding=finding, theme=theme, width=width
     )

@@ -92,20 +92,26 @@ def proposal_rows(test: str, faults: dict[str, Any]) -> list[Row]:
 
 
 def expansion_rows(expansion: dict[str, Any]) -> list[Row]:
-    """One row a measured mode, of ``Expansion.to_dict``: how well the other channels foretell each one."""
+    """One row a measured mode, of ``Expansion.to_dict``: the analysis modes it is spread on, and how well
+    the other channels foretell each one."""
     return [
         {
             "test": expansion["test"],
             "test_mode": facts["mode"],
             "frequency_hz": facts["frequency_hz"],
+            "on_modes": ", ".join(str(n) for n in facts["basis"]),
             "left_out_error_percent": 100 * facts["left_out_error"],
-            **{
-                f"part_of_mode_{number}_percent": 100 * share
-                for number, share in zip(expansion["basis"], facts["shares"], strict=True)
-            },
+            "expected_error_percent": _step(facts["choice"], taken=True),
+            "with_one_more_percent": _step(facts["choice"], taken=False),
         }
         for facts in expansion["modes"]
     ]
+
+
+def _step(choice: list[dict[str, Any]], *, taken: bool) -> float | None:
+    """Error expected on the mesh, percent, with the modes taken or with the next one: why the basis ends there."""
+    errors = [100 * step["error"] for step in choice if step["taken"] == taken]
+    return errors[-1] if errors else None
 
 
 def placement_rows(registration: dict[str, Any]) -> list[Row]:
