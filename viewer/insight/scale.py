@@ -69,6 +69,16 @@ class Scale:
         """Real metres per unit of the shape, or None."""
         return None if self.magnification is None else self.factor / self.magnification
 
+    def enlarged(self, factor: float) -> Scale:
+        """The same mode drawn ``factor`` times as large."""
+        return replace(
+            self,
+            factor=self.factor * factor,
+            magnification=None if self.magnification is None else self.magnification * factor,
+            drawn_percent=self.drawn_percent * factor,
+            limited_by=self.limited_by if factor == 1.0 else "given",
+        )
+
     @property
     def sentence(self) -> str:
         if self.largest_real is None:

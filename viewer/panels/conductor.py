@@ -8,23 +8,23 @@ from __future__ import annotations
 
 import shutil
 import tempfile
-from collections.abc import Callable
 from functools import partial
 from pathlib import Path
 from typing import Any
 
 from PySide6.QtCore import QObject, Signal
 
-from viewer.errors import HingelightError, RefusedError
+from viewer.errors import HingelightError
 from viewer.jobs import Progress
 from viewer.panels.lanes import Lane
 from viewer.scene.picture import Picture
 from viewer.session import Session, State
 from viewer.session.gallery import thumbnail
-from viewer.session.loading import compare_studies, explain, follow, open_project, read_study
-from viewer.session.pictures import fitted_by, picture_of, wanted
+from viewer.session.loading import open_project
+from viewer.session.pictures import fitted_by, picture_of, second_mode, test_of, waiting, wanted
 from viewer.session.project import Project
-from viewer.session.questions import Question, next_question
+from viewer.session.questions import Question, find, learn, learn_why_not, next_question
+from viewer.session.state import TEST_PAGES
 from viewer.session.thumbnails import draw_thumbnails, ready
 from viewer.workspace import Workspace
 
@@ -34,6 +34,8 @@ _WORDS = {
     "pair": "pairing the modes of {design} and {other}",
     "compare": "comparing {design} and {other}",
     "lineage": "following the modes",
+    "test": "laying test {other} beside {design}",
+    "faults": "looking for wrong channels of test {other}",
 }
 
 
@@ -94,6 +96,12 @@ class Conductor(QObject):
             instead=True,
         )
 
+    def replace_project(self, project: Project) -> None:
+        """Go on from a project whose dossier was written: what it no longer knows is asked anew."""
+        self._lanes["finding"].drop()
+        self._asked, self._question = frozenset(), None
+        self._learn(project)
+
     def stop(self) -> None:
         """Stop what the user waits for; what is known stays."""
         if self._question is not None:
@@ -148,7 +156,7 @@ class Conductor(QObject):
             self.waited.emit()
             return
         self._lanes["finding"].run(
-            _job(project, question),
+            partial(find, project, question),
             partial(self._answered, question),
             partial(self._unanswered, question),
         )
@@ -158,16 +166,7 @@ class Conductor(QObject):
         self._question = None
         if project is None:
             return
-        if question.kind == "study":
-            project = project.with_study(question.design, answer)
-        elif question.kind == "explain":
-            project = project.with_told(question.design, answer)
-        elif question.kind in ("pair", "compare"):
-            pair = (question.design, question.other)
-            project = project.with_comparison(pair, answer, closely=question.kind == "compare")
-        elif question.kind == "lineage":
-            project = project.with_lineage(answer)
-        self._learn(project)
+        self._learn(learn(project, question, answer))
 
     def _unanswered(self, question: Question, error: HingelightError) -> None:
         project = self._session.project
@@ -175,13 +174,10 @@ class Conductor(QObject):
         self._asked |= {question}
         if project is None:
             return
-        if question.kind in ("pair", "compare") and isinstance(error, RefusedError):
-            project = project.with_comparison((question.design, question.other), str(error))
-        elif question.kind == "lineage":
-            project = project.with_lineage(str(error))
-        else:
+        informed = learn_why_not(project, question, error)
+        if informed is None:
             self.failed.emit(error)
-        self._learn(project)
+        self._learn(informed or project)
 
     def _learn(self, project: Project) -> None:
         self._session.project = project
@@ -204,6 +200,8 @@ class Conductor(QObject):
             return question.design in wanted(project, state)
         if question.kind == "lineage":
             return state.page == "lineage"
+        if question.kind == "test":
+            return state.tested or state.page in TEST_PAGES
         shown = state.compared or state.page in ("pairing", "ladder")
         return question.kind == "pair" and shown  # "compare" only adds words to what is shown by then
 
@@ -214,7 +212,7 @@ class Conductor(QObject):
     def compose(self) -> None:
         """Compose the picture that is wished, unless it is on the stage or under way."""
         project, state = self._session.project, self._session.state
-        if project is None or wanted(project, state):
+        if project is None or waiting(project, state):
             return
         wish = self._wish_of(project, state)
         if wish == self._wish:
@@ -232,8 +230,9 @@ class Conductor(QObject):
         """What decides the picture."""
         told = project.told.get((state.design, state.mode))
         other = project.other_of(state.design, state.other) if state.compared else ""
-        partner = project.partner(state.design, state.mode, other) if other else None
-        theirs = project.told.get((other, state.other_mode or partner or 0)) if other else None
+        partner = second_mode(project, state) if other else None
+        theirs = project.told.get((other, partner or 0))
+        tested = project.tested(test_of(project, state)) if state.tested else None
         look = (state.true_scale, state.enlarge, state.energy, state.ghost, state.hinges, state.mesh_edges)
         name = state.named.get((state.design, state.mode))
         return (
@@ -246,6 +245,7 @@ class Conductor(QObject):
             self.size,
             id(told),
             id(theirs),
+            id(tested),
             other,
             partner,
         )
@@ -300,17 +300,3 @@ def _stopped(progress: Progress) -> bool:
     except HingelightError:
         return True
     return False
-
-
-def _job(project: Project, question: Question) -> Callable[[Progress], Any]:
-    """What answers a question, from what is known now."""
-    opened = project.opened
-    if question.kind == "study":
-        return partial(read_study, opened, question.design)
-    if question.kind == "explain":
-        return partial(explain, project.studies[question.design], question.mode)
-    if question.kind == "lineage":
-        return partial(follow, opened)
-    first, second = project.studies[question.design], project.studies[question.other]
-    closely = question.kind == "compare"
-    return lambda progress: compare_studies(opened, first, second, progress, closely=closely)

@@ -20,7 +20,7 @@ from viewer.session.camera import STEP
 from viewer.session.charts import put_spot
 from viewer.session.gallery import passing
 from viewer.session.model_words import ACCEPT
-from viewer.session.pictures import against, require_size, scale_of, test_of
+from viewer.session.pictures import against, has_test_shape, require_size, scale_of, test_of
 from viewer.session.rail import rail_of
 from viewer.session.saving import save_names
 from viewer.session.state import Band
@@ -302,7 +302,7 @@ class Deeds(QObject):
         if entry is None:
             return
         hinges = entry.steps if subject == "folds" and entry.bars else 0
-        self._session.do(actions.light, subject, hinges, bool(test_of(project, state)))
+        self._session.do(actions.light, subject, hinges, has_test_shape(project, state))
         self._pick_subject(subject)
 
     def _pick_subject(self, subject: str) -> None:
@@ -348,7 +348,9 @@ class Deeds(QObject):
 
     def dismiss(self) -> None:
         """Close the filter or the notice; with none, light nothing."""
-        if self._window.filter_bar.written_into:
+        if self._keys is not None and self._keys.isVisible():
+            self._keys.hide()
+        elif self._window.filter_bar.written_into:
             self.show_all_modes()
         elif self._window.notice.kind in ("error", "message"):
             self._window.notice.dismiss()

@@ -4,18 +4,33 @@ from __future__ import annotations
 
 from PySide6.QtCore import Qt, Signal
 from PySide6.QtGui import QFontMetrics
-from PySide6.QtWidgets import QButtonGroup, QFrame, QHBoxLayout, QLabel, QMenu, QPushButton, QToolButton, QWidget
+from PySide6.QtWidgets import (
+    QButtonGroup,
+    QComboBox,
+    QFrame,
+    QHBoxLayout,
+    QLabel,
+    QMenu,
+    QPushButton,
+    QSizePolicy,
+    QToolButton,
+    QWidget,
+)
 
 from viewer.panels.theme import HEADER, LABEL, MARGIN, face
 
 LAYOUT_WORDS = {"side": "side by side", "overlay": "overlay", "difference": "difference"}
+TEST_WORDS = {"test over": "test on top", "test beside": "test beside", "test alone": "test alone"}
 
 
 class HeaderPanel(QWidget):
-    """``design_chosen(name)``, ``layout_chosen(layout)``."""
+    """``design_chosen(name)``, ``layout_chosen(layout)``, ``test_wished()`` (once more: the next of its layouts),
+    ``beside_chosen(name)`` of what is to be beside the design."""
 
     design_chosen = Signal(str)
     layout_chosen = Signal(str)
+    test_wished = Signal()
+    beside_chosen = Signal(str)
 
     def __init__(self, menu: QMenu, parent: QWidget | None = None) -> None:
         super().__init__(parent)
@@ -25,6 +40,7 @@ class HeaderPanel(QWidget):
         self._title = QLabel("Hingelight", self)
         self._title.setObjectName("title")
         self._title.setTextInteractionFlags(Qt.TextInteractionFlag.NoTextInteraction)
+        self._title.setSizePolicy(QSizePolicy.Policy.Ignored, QSizePolicy.Policy.Preferred)  # buttons come first
         self._segments = QFrame(self)
         self._segments.setObjectName("segments")
         self._segments.setAccessibleName("What is on the stage")
@@ -34,7 +50,13 @@ class HeaderPanel(QWidget):
         self._row.setSpacing(2)
         self._group = QButtonGroup(self)
         self._group.setExclusive(True)
-        self._made: tuple[str, ...] | None = None
+        self._made: tuple[tuple[str, ...], bool] | None = None
+        self._test: QPushButton | None = None
+        self.beside = QComboBox(self)
+        self.beside.setAccessibleName("What is beside the design")
+        self.beside.setToolTip("what is beside the design (V: the next)")
+        self.beside.textActivated.connect(self.beside_chosen)
+        self.beside.hide()
         more = QToolButton(self)
         more.setText("≡")
         more.setAccessibleName("All commands")
@@ -47,32 +69,51 @@ class HeaderPanel(QWidget):
         box.addWidget(more)
         box.addSpacing(6)
         box.addWidget(self._title, 1)
+        box.addWidget(self.beside)
         box.addWidget(self._segments)
 
-    def show_project(self, title: str, designs: tuple[str, ...], shown: str, layout: str, unsaved: bool) -> None:
-        """``shown``: the chosen design; ``unsaved``: names wait to be saved."""
+    def show_project(
+        self, title: str, designs: tuple[str, ...], shown: str, layout: str, unsaved: bool, tested: bool = False
+    ) -> None:
+        """``shown``: the chosen design; ``unsaved``: names wait to be saved; ``tested``: some design has a test."""
         self._title.setText(f"{title}{'  •' if unsaved else ''}")
         self._title.setToolTip("names not saved yet (Ctrl+S)" if unsaved else "")
-        if designs != self._made:
-            self._make(designs)
+        if (designs, tested) != self._made:
+            self._make(designs, tested)
         key = f"design:{shown}" if layout == "single" else f"layout:{layout}"
+        if self._test is not None:
+            self._test.setText(TEST_WORDS.get(layout, "test"))
+        if layout in TEST_WORDS:
+            key = "test:"
         for button in self._group.buttons():
             button.setChecked(button.property("key") == key)
         self._segments.setVisible(bool(designs))
 
-    def _make(self, designs: tuple[str, ...]) -> None:
+    def show_beside(self, names: tuple[str, ...], chosen: str) -> None:
+        """What can be beside the design; nothing to choose from is not shown."""
+        if names != tuple(self.beside.itemText(i) for i in range(self.beside.count())):
+            self.beside.clear()
+            self.beside.addItems(names)
+        self.beside.setCurrentText(chosen)
+        self.beside.setVisible(len(names) > 1)
+
+    def _make(self, designs: tuple[str, ...], tested: bool) -> None:
         for button in self._group.buttons():
             self._group.removeButton(button)
             self._row.removeWidget(button)
             button.deleteLater()
-        self._made = designs
+        self._made = designs, tested
+        self._test = None
         for name in designs:
             self._add(name, f"design:{name}", f"Design {name}")
         if len(designs) > 1:
             for layout, words in LAYOUT_WORDS.items():
                 self._add(words, f"layout:{layout}", f"Compare designs: {words}")
+        if tested:
+            self._test = self._add("test beside", "test:", "Hammer test with the design; again: laid out otherwise")
+            self._test.setToolTip("hammer test: on top, beside, alone (X)")
 
-    def _add(self, words: str, key: str, spoken: str) -> None:
+    def _add(self, words: str, key: str, spoken: str) -> QPushButton:
         button = QPushButton(words, self._segments)
         button.setCheckable(True)
         bold = QFontMetrics(face(LABEL, True))
@@ -82,7 +123,11 @@ class HeaderPanel(QWidget):
         button.clicked.connect(self._clicked)
         self._group.addButton(button)
         self._row.addWidget(button)
+        return button
 
     def _clicked(self) -> None:
         kind, _, name = str(self.sender().property("key")).partition(":")
-        (self.design_chosen if kind == "design" else self.layout_chosen).emit(name)
+        if kind == "test":
+            self.test_wished.emit()
+        else:
+            (self.design_chosen if kind == "design" else self.layout_chosen).emit(name)

@@ -1,4 +1,4 @@
-"""A notice over the stage: what is being done, and how to stop it; or what went wrong, in the words of the error tree."""
+"""A notice over the stage: what is being done and how to stop it, or what went wrong, in the error tree's words."""
 
 from __future__ import annotations
 

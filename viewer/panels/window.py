@@ -31,7 +31,7 @@ from viewer.session import Session, State, actions
 from viewer.session.charts import chart_of, shown_spot
 from viewer.session.gallery import items, point_names
 from viewer.session.picking import read_off
-from viewer.session.pictures import heading, scale_of
+from viewer.session.pictures import against, heading, scale_of
 from viewer.session.project import Project
 from viewer.session.rail import rail_of
 from viewer.session.settings import read_settings, write_settings
@@ -114,6 +114,8 @@ class Window(QMainWindow):
         self.notice.stopped.connect(deeds.stop)
         self.header.design_chosen.connect(deeds.choose_design)
         self.header.layout_chosen.connect(deeds.choose_layout)
+        self.header.test_wished.connect(deeds.next_test_layout)
+        self.header.beside_chosen.connect(deeds.set_beside)
         self.rail.moved.connect(deeds.move_handle)
         self.rail.let_go.connect(deeds.let_go)
         self.gallery.chosen.connect(deeds.choose_mode)
@@ -122,6 +124,7 @@ class Window(QMainWindow):
         self.filter_bar.closed.connect(deeds.show_all_modes)
         self.chart.taken.connect(deeds.put_spot)
         self.words.lit.connect(deeds.light)
+        self.words.taken_up.connect(deeds.take_up)
         self.canvas.settled.connect(self._settled)
         self.canvas.picked.connect(deeds.pick)
         self.canvas.turned.connect(deeds.turned)
@@ -182,7 +185,11 @@ class Window(QMainWindow):
             self.words.show_entries((), "", "", state.theme)
             return
         self.setWindowTitle(f"{project.title} · Hingelight")
-        self.header.show_project(project.title, project.designs, state.design, state.layout, bool(state.named))
+        tested = bool(project.opened.dossier.tests)
+        self.header.show_project(
+            project.title, project.designs, state.design, state.layout, bool(state.named), tested
+        )
+        self.header.show_beside(*against(project, state))
         shown = items(project, state)
         self.gallery.show_items(shown, state.mode, state.theme)
         points = point_names(project.study(state.design))

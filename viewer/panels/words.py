@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from PySide6.QtCore import QRectF, Qt, Signal
 from PySide6.QtGui import QKeyEvent, QMouseEvent, QPainter, QPaintEvent
-from PySide6.QtWidgets import QFrame, QHBoxLayout, QLabel, QScrollArea, QVBoxLayout, QWidget
+from PySide6.QtWidgets import QFrame, QHBoxLayout, QLabel, QPushButton, QScrollArea, QVBoxLayout, QWidget
 
 from viewer.panels.theme import LABEL, MARGIN, WORDS, colour, face
 from viewer.scene.tokens import THEMES
@@ -58,6 +58,7 @@ class EntryWidget(QFrame):
     """One question and its answer: a press lights it up."""
 
     pressed = Signal(str)
+    taken_up = Signal(str)
 
     def __init__(self, parent: QWidget) -> None:
         super().__init__(parent)
@@ -74,6 +75,9 @@ class EntryWidget(QFrame):
         box.setSpacing(3)
         for part in (self._heading, self._sentence, self._bars):
             box.addWidget(part)
+        self.offer = QPushButton(self)
+        self.offer.clicked.connect(self._take_up)
+        box.addWidget(self.offer, 0, Qt.AlignmentFlag.AlignLeft)
         self.entry: Entry | None = None
 
     def show_entry(self, entry: Entry, lit: bool, theme: str) -> None:
@@ -81,6 +85,8 @@ class EntryWidget(QFrame):
         self._heading.setText(entry.heading)
         self._sentence.setText(entry.sentence)
         self._bars.show_bars(entry.bars if lit else (), theme)
+        self.offer.setText(entry.offer)
+        self.offer.setVisible(bool(entry.offer))
         self.setAccessibleName(f"{entry.heading}: {entry.sentence}")
         state = (lit, entry.known)
         if (self.property("lit"), self.property("known")) != state:
@@ -89,6 +95,10 @@ class EntryWidget(QFrame):
             for widget in (self, self._heading, self._sentence):
                 widget.style().unpolish(widget)
                 widget.style().polish(widget)
+
+    def _take_up(self) -> None:
+        if self.entry is not None:
+            self.taken_up.emit(self.entry.subject)
 
     def mousePressEvent(self, event: QMouseEvent) -> None:
         if event.button() == Qt.MouseButton.LeftButton and self.entry is not None:
@@ -104,9 +114,10 @@ class EntryWidget(QFrame):
 
 
 class WordsPanel(QWidget):
-    """``lit(subject)``: a sentence was pressed."""
+    """``lit(subject)``: a sentence was pressed; ``taken_up(subject)``: what it offers is wished."""
 
     lit = Signal(str)
+    taken_up = Signal(str)
 
     def __init__(self, parent: QWidget | None = None) -> None:
         super().__init__(parent)
@@ -157,6 +168,7 @@ class WordsPanel(QWidget):
         while len(self.entries) < len(entries):
             widget = EntryWidget(self._inner)
             widget.pressed.connect(self.lit)
+            widget.taken_up.connect(self.taken_up)
             self._list.insertWidget(self._list.count() - 1, widget)
             self.entries.append(widget)
         for widget, entry in zip(self.entries, entries, strict=False):

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from viewer.scene.picture import View
 from viewer.session.project import Project
-from viewer.session.state import LAYOUTS, PAGES, SUBJECTS, Band, Picked, State
+from viewer.session.state import DESIGN_LAYOUTS, LAYOUTS, PAGES, SUBJECTS, TEST_LAYOUTS, Band, Picked, State
 
 LEAST_ENLARGED, MOST_ENLARGED = 1e-9, 5.0
 
@@ -27,7 +27,9 @@ def choose_mode(state: State, mode: int, project: Project | None = None) -> Stat
     count = project.count(state.design) if project is not None else 0
     if mode == state.mode or not 1 <= mode <= (count or mode):
         return state
-    return state.with_(mode=mode, hinge=0, other_mode=None, subject=_kept_subject(state), page="stage")
+    return state.with_(
+        mode=mode, hinge=0, other_mode=None, test_mode=None, subject=_kept_subject(state), page="stage"
+    )
 
 
 def step_mode(state: State, step: int, shown: tuple[int, ...]) -> State:
@@ -50,6 +52,8 @@ def choose_design(state: State, design: str, project: Project | None = None) -> 
         mode=mode,
         other="",
         other_mode=None,
+        test="",
+        test_mode=None,
         layout="single",
         page="stage",
         hinge=0,
@@ -63,13 +67,23 @@ def _kept_subject(state: State) -> str:
 
 
 def compare(state: State, layout: str) -> State:
-    """Put the other design beside this one, over it, or take it away (``single``)."""
+    """Put the other design, or a hammer test, beside this one or over it, or take it away (``single``)."""
     return state if layout not in LAYOUTS else state.with_(layout=layout, page="stage")
 
 
 def next_layout(state: State) -> State:
     """The next of single, side by side, overlay and difference."""
-    return compare(state, LAYOUTS[(LAYOUTS.index(state.layout) + 1) % len(LAYOUTS)])
+    return compare(state, _next(("single", *DESIGN_LAYOUTS), state.layout))
+
+
+def next_test_layout(state: State) -> State:
+    """The next of single, the test over the design, beside it, and alone."""
+    return compare(state, _next(("single", *TEST_LAYOUTS), state.layout))
+
+
+def _next(layouts: tuple[str, ...], now: str) -> str:
+    at = layouts.index(now) if now in layouts else 0
+    return layouts[(at + 1) % len(layouts)]
 
 
 def put_pair(state: State, first: int | None, second: int | None, layout: str = "side") -> State:
@@ -82,9 +96,30 @@ def put_pair(state: State, first: int | None, second: int | None, layout: str = 
     return compare(shown, layout).with_(other_mode=second)
 
 
+def put_test_pair(state: State, test_mode: int | None, mode: int | None) -> State:
+    """Put a test mode and a mode of the design on the stage; one without counterpart is shown alone."""
+    if mode is None:
+        return compare(state, "test alone").with_(test_mode=test_mode)
+    shown = choose_mode(state, mode)
+    if test_mode is None:
+        return compare(shown, "single")
+    layout = shown.layout if shown.layout in ("test over", "test beside") else "test over"
+    return compare(shown, layout).with_(test_mode=test_mode)
+
+
 def compare_with(state: State, other: str) -> State:
     """Compare with the design ``other``."""
     return state if other == state.design else state.with_(other=other, other_mode=None)
+
+
+def choose_test(state: State, test: str) -> State:
+    """Set the hammer test ``test`` beside the design."""
+    return state.with_(test=test, test_mode=None)
+
+
+def set_beside(state: State, name: str) -> State:
+    """Have ``name`` beside the design: a test where tests are shown, else another design."""
+    return choose_test(state, name) if state.tested else compare_with(state, name)
 
 
 def turn_page(state: State, page: str) -> State:
@@ -127,8 +162,9 @@ def set_theme(state: State, theme: str) -> State:
 # ---- what is lit
 
 
-def light(state: State, subject: str, hinges: int = 0) -> State:
-    """Light up what a sentence speaks of; the lit one again: the next of its ``hinges``, then none."""
+def light(state: State, subject: str, hinges: int = 0, tested: bool = False) -> State:
+    """Light up what a sentence speaks of; the lit one again: the next of its ``hinges``, then none. ``tested``: the
+    design has a hammer test, which stands beside it while that is spoken of."""
     if subject not in SUBJECTS:
         return state
     if subject == "folds":
@@ -141,12 +177,14 @@ def light(state: State, subject: str, hinges: int = 0) -> State:
         return unlight(state)
     lit = state.with_(subject=subject, hinge=0, page="stage")
     if subject == "redesign":
-        return lit.with_(layout="side" if state.layout == "single" else state.layout)
+        return lit.with_(layout=state.layout if state.compared else "side")
+    if subject == "model" and tested:
+        return lit.with_(layout=state.layout if state.tested else "test over")
     return lit.with_(layout="single")
 
 
 def unlight(state: State) -> State:
-    single = state.subject == "redesign"
+    single = state.subject == "redesign" or (state.subject == "model" and state.tested)
     return state.with_(subject="", hinge=0, picked=None, layout="single" if single else state.layout)
 
 

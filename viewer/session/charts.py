@@ -2,17 +2,19 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from math import hypot
 
 from viewer.insight.lineage import LineageFinding
+from viewer.scene.correlation_charts import correlation_field, correlation_ladder
 from viewer.scene.ladder_chart import ladder_chart
 from viewer.scene.lineage_chart import lineage_chart
 from viewer.scene.mac_chart import mac_chart
 from viewer.scene.primitives import Point, Sheet, Spot
 from viewer.session import actions
-from viewer.session.pictures import name_of
-from viewer.session.project import Project
-from viewer.session.state import State
+from viewer.session.pictures import name_of, test_mode_of, test_of
+from viewer.session.project import Project, Tested
+from viewer.session.state import TEST_PAGES, State
 from viewer.workspace.comparison import Comparison
 
 
@@ -23,6 +25,8 @@ def chart_of(project: Project, state: State) -> Sheet | str:
         if isinstance(found, LineageFinding):
             return lineage_chart(found, theme=state.theme)
         return "following the modes through all designs …" if found is None else found
+    if state.page in TEST_PAGES:
+        return _test_chart(project, state)
     other = project.other_of(state.design, state.other)
     if not other:
         return "There is one design only, so nothing to compare. To do: add another [[designs]] to the dossier."
@@ -37,10 +41,29 @@ def chart_of(project: Project, state: State) -> Sheet | str:
     return chart(paired.pairing, one, two, state.theme)
 
 
+def _test_chart(project: Project, state: State) -> Sheet | str:
+    """A test against the design; spots of modes beyond those that the window shows lead nowhere and are left out."""
+    name = test_of(project, state)
+    if not name:
+        return "This design has no hammer test. To do: add [[tests]] with name and file to the dossier."
+    tested = project.tests.get(name)
+    if not isinstance(tested, Tested):
+        return f"laying test {name} beside {state.design} …" if tested is None else tested
+    count = project.count(state.design)
+    names = [name_of(project, state, state.design, mode) for mode in range(1, count + 1)]
+    chart = correlation_field if state.page == "test pairing" else correlation_ladder
+    sheet = chart(tested.correlation, names, state.theme)
+    return replace(sheet, spots=tuple(spot for spot in sheet.spots if (_number(spot.what[1]) or 0) <= count))
+
+
 def shown_spot(project: Project, state: State, sheet: Sheet) -> int:
     """Which spot stands for what is on the stage; −1: none."""
     if isinstance(project.lineage, LineageFinding) and state.page == "lineage":
         wish: tuple[object, ...] = (project.lineage.labels.index(state.design), state.mode)
+    elif state.page in TEST_PAGES:
+        tested = project.tested(test_of(project, state))
+        own = None if tested is None else test_mode_of(tested, state)
+        wish = (state.test_mode or own, None if state.layout == "test alone" else state.mode)
     else:
         other = project.other_of(state.design, state.other)
         wish = (state.mode, state.other_mode or project.partner(state.design, state.mode, other))
@@ -54,9 +77,14 @@ def put_spot(state: State, project: Project, spot: Spot) -> State:
         design = project.lineage.labels[int(str(first))]
         shown = state if design == state.design else actions.choose_design(state, design)
         return actions.choose_mode(actions.compare(shown, "single"), int(str(second)))
+    if state.page in TEST_PAGES:
+        return actions.put_test_pair(state, _number(first), _number(second))
     chosen = state.with_(other=project.other_of(state.design, state.other))
-    one, two = (None if number is None else int(str(number)) for number in (first, second))
-    return actions.put_pair(chosen, one, two)
+    return actions.put_pair(chosen, _number(first), _number(second))
+
+
+def _number(value: object) -> int | None:
+    return None if value is None else int(str(value))
 
 
 def spot_at(sheet: Sheet, point: Point) -> int:

@@ -5,11 +5,11 @@ from __future__ import annotations
 import importlib.resources
 from pathlib import Path
 
-from viewer.errors import HingelightError, InputError
+from viewer.errors import Cancelled, HingelightError, InputError
 from viewer.jobs import SILENT, Progress
 from viewer.loaders import read_modes
 from viewer.model.dossier import DesignPlan, Dossier
-from viewer.session.project import Project
+from viewer.session.project import Project, Tested
 from viewer.workspace import OpenDossier, Study, Workspace
 from viewer.workspace.comparison import Comparison, compare
 from viewer.workspace.explanation import Explanation
@@ -73,6 +73,22 @@ def compare_studies(
     """Which mode became which; ``closely``: and what changed in each, which takes longer."""
     stated = opened.stated_pairs(first.design.name, second.design.name)
     return compare(first, second, stated, progress, explain=closely)
+
+
+def lay_test(opened: OpenDossier, name: str, progress: Progress = SILENT) -> Tested:
+    """A hammer test laid beside its design, and which mode is which."""
+    found = opened.test(name, progress=progress)
+    return Tested(found, found.correlation(progress))
+
+
+def look_for_faults(tested: Tested, progress: Progress = SILENT) -> Tested:
+    """The same, with the channels that seem wrong, or why that cannot be told."""
+    try:
+        return tested.with_faults(tested.found.faults(progress))
+    except Cancelled:
+        raise
+    except HingelightError as error:
+        return tested.with_faults(str(error))
 
 
 def follow(opened: OpenDossier, progress: Progress = SILENT):

@@ -5,14 +5,42 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, field, replace
 from types import MappingProxyType
-from typing import Any
 
 from viewer.insight.lineage import LineageFinding
+from viewer.insight.test_pairing import TestCorrelation, TestPair
+from viewer.insight.wrong_channels import Faults
+from viewer.scene.placed_test import PlacedTest, place
 from viewer.workspace import OpenDossier, Study
 from viewer.workspace.comparison import Comparison
 from viewer.workspace.explanation import Explanation
+from viewer.workspace.testing import TestStudy
 
 Pair = tuple[str, str]
+
+
+@dataclass(frozen=True, eq=False)
+class Tested:
+    """What is known of a hammer test: it is laid beside its design, and which mode is which.
+
+    faults  None while nobody has looked for wrong channels; a string says why there are none to be had
+    """
+
+    found: TestStudy
+    correlation: TestCorrelation
+    faults: Faults | str | None = None
+
+    @property
+    def placed(self) -> PlacedTest:
+        """The test in the mesh's axes."""
+        at = self.found.registration
+        return place(self.found.test, at.placement, at.used, at.places)
+
+    def pair_of(self, mode: int) -> TestPair | None:
+        """The pair that mode ``mode`` of the design is in."""
+        return next((p for p in self.correlation.paired if p.analysis == mode), None)
+
+    def with_faults(self, faults: Faults | str) -> Tested:
+        return replace(self, faults=faults)
 
 
 @dataclass(frozen=True, eq=False)
@@ -25,7 +53,7 @@ class Project:
     comparisons  by the names of both designs; a string says why there is none
     close        the pairs whose comparison also tells what changed in each mode, or that cannot be had
     lineage      of the dossier's designs, or why there is none
-    tests        by name: whatever the workspace knows of a hammer test beside its design
+    tests        by name: a hammer test beside its design; a string says why there is none
     """
 
     opened: OpenDossier
@@ -35,7 +63,7 @@ class Project:
     comparisons: Mapping[Pair, Comparison | str] = field(default_factory=dict)
     close: frozenset[Pair] = frozenset()
     lineage: LineageFinding | str | None = None
-    tests: Mapping[str, Any] = field(default_factory=dict)
+    tests: Mapping[str, Tested | str] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
         for name in ("studies", "told", "comparisons", "tests"):
@@ -79,6 +107,14 @@ class Project:
             return next((o.pair.first for o in found.outcomes if o.pair.second == mode), None)
         return dict(self.opened.stated_pairs(first, second)).get(mode)
 
+    def tests_of(self, design: str) -> tuple[str, ...]:
+        """Names of the hammer tests that the dossier sets beside a design."""
+        return tuple(plan.name for plan in self.opened.dossier.tests if plan.design == design)
+
+    def tested(self, name: str) -> Tested | None:
+        found = self.tests.get(name)
+        return found if isinstance(found, Tested) else None
+
     def with_study(self, design: str, study: Study) -> Project:
         return replace(self, studies={**self.studies, design: study})
 
@@ -92,5 +128,5 @@ class Project:
     def with_lineage(self, found: LineageFinding | str) -> Project:
         return replace(self, lineage=found)
 
-    def with_test(self, name: str, found: Any) -> Project:
+    def with_test(self, name: str, found: Tested | str) -> Project:
         return replace(self, tests={**self.tests, name: found})

@@ -8,8 +8,11 @@ from types import MappingProxyType
 
 from viewer.scene.picture import View
 
-LAYOUTS = ("single", "side", "overlay", "difference")
-PAGES = ("stage", "pairing", "ladder", "lineage")
+DESIGN_LAYOUTS = ("side", "overlay", "difference")
+TEST_LAYOUTS = ("test over", "test beside", "test alone")
+LAYOUTS = ("single", *DESIGN_LAYOUTS, *TEST_LAYOUTS)
+TEST_PAGES = ("test pairing", "test ladder")
+PAGES = ("stage", "pairing", "ladder", "lineage", *TEST_PAGES)
 SUBJECTS = ("does", "folds", "size", "matters", "model", "redesign", "change")
 Vector = tuple[float, float, float]
 
@@ -47,6 +50,8 @@ class State:
     design, mode   what is chosen
     other          design it is compared with; empty: the next one of the dossier
     other_mode     its mode; None: the one that ``mode`` became
+    test           hammer test beside the design; empty: the first of it
+    test_mode      its mode; None: the one that was paired with ``mode``
     layout         one of ``LAYOUTS``; page: one of ``PAGES``
     true_scale     drawn at ×1; else ``enlarge`` times the size that is drawn by itself
     subject        which sentence is lit, one of ``SUBJECTS`` or empty; ``hinge``: number of the hinge set off
@@ -59,6 +64,8 @@ class State:
     mode: int = 1
     other: str = ""
     other_mode: int | None = None
+    test: str = ""
+    test_mode: int | None = None
     layout: str = "single"
     page: str = "stage"
     true_scale: bool = False
@@ -89,4 +96,9 @@ class State:
     @property
     def compared(self) -> bool:
         """Whether two designs are on the stage."""
-        return self.layout != "single"
+        return self.layout in DESIGN_LAYOUTS
+
+    @property
+    def tested(self) -> bool:
+        """Whether a hammer test is on the stage."""
+        return self.layout in TEST_LAYOUTS

@@ -9,6 +9,7 @@ from viewer.export.rows import point_rows
 from viewer.insight.outcome import Outcome
 from viewer.insight.scale import Scale
 from viewer.scene.figures import digits, length
+from viewer.session.model_words import LOOKING, model_words
 from viewer.session.pictures import heading, name_of
 from viewer.session.project import Project
 from viewer.session.state import State
@@ -22,7 +23,6 @@ HEADINGS = {
     "redesign": "What the redesign did",
     "change": "Where to stiffen or lighten next",
 }
-LOOKING = "looking …"
 
 
 @dataclass(frozen=True)
@@ -40,6 +40,7 @@ class Entry:
 
     known   False: the sentence says what would answer it
     steps   how many things clicking lights up one after the other
+    offer   what can be done about it, in words; empty: nothing
     """
 
     subject: str
@@ -47,6 +48,7 @@ class Entry:
     known: bool = True
     bars: tuple[Bar, ...] = ()
     steps: int = 1
+    offer: str = ""
 
     @property
     def heading(self) -> str:
@@ -144,20 +146,8 @@ def _matters(project: Project, state: State) -> Entry:
 
 
 def _model(project: Project, state: State) -> Entry:
-    study = project.studies[state.design]
-    figures = study.figures
-    said = ""
-    if figures is not None and study.modes.origin == "imported":
-        index = state.mode - 1
-        closure, trusted = float(figures.closure[index]), bool(figures.trusted[index])
-        if closure == closure:
-            verdict = "the energies are trusted" if trusted else "the energies are not trusted"
-            said = f"From its own energies the frequency comes out {closure:.2f} times that given: {verdict}. "
-    if not project.opened.dossier.tests:
-        return Entry(
-            "model", f"{said}Not tested: add a hammer test to the dossier ([[tests]] with name and file).", False
-        )
-    return Entry("model", f"{said}{LOOKING}", False)
+    sentence, known, offer = model_words(project, state)
+    return Entry("model", sentence, known, offer=offer)
 
 
 def outcome_of(project: Project, state: State) -> Outcome | None:
