@@ -126,4 +126,5 @@ def ticks(low: float, high: float, count: int = 6) -> list[float]:
     power = 10.0 ** np.floor(np.log10(raw)) if raw > 0 else 1.0
     step = next(power * m for m in (1, 2, 2.5, 5, 10) if power * m >= raw * (1 - 1e-9))
     first = np.ceil(low / step - 1e-9)
-    return [float(step * k) for k in np.arange(first, np.floor(high / step + 1e-9) + 1)]
+    # + 0.0: what is rounded up from just below nothing is no negative nothing
+    return [float(step * k) + 0.0 for k in np.arange(first, np.floor(high / step + 1e-9) + 1)]
