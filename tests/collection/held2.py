@@ -282,7 +282,7 @@ def doubler(rng: np.random.Generator, i: int) -> Sheet:
     """A plate with a thick pad on its middle."""
     s, t, h = plate(rng)
     box = (s * rng.uniform(0.25, 0.35), s * rng.uniform(0.6, 0.75), t * 0.2, t * 0.8)
-    pad = Patch(box, h * rng.uniform(1.6, 2.5))
+    pad = Patch(box, h * rng.uniform(1.5, 2.0))
     return Sheet((s, t), h, s / 20, (pad,), clamp=((), root((s, t)), around((s, t)))[i % 3])
 
 
@@ -317,7 +317,7 @@ def waffle(rng: np.random.Generator, i: int) -> Sheet:
 def comb(rng: np.random.Generator, i: int) -> Sheet:
     """Fingers of even thickness and unlike length on a common back."""
     s, t, h = plate(rng, (1.0, 1.3))
-    count, back, slit = 4, s * rng.uniform(0.4, 0.5), t * 0.03
+    count, back, slit = 4, s * rng.uniform(0.22, 0.32), t * 0.03
     wide = (t - (count - 1) * slit) / count
     patches = []
     for j, share in enumerate(rng.uniform(0.7, 1.0, count)):

@@ -77,7 +77,7 @@ def ladder(rng: np.random.Generator, i: int) -> Sheet:
     s, t, h = plate(rng, (1.8, 2.4))
     rail, count = t * rng.uniform(0.18, 0.25), 4
     pitch = s / count
-    rung = pitch * rng.uniform(0.25, 0.35)
+    rung = pitch * rng.uniform(0.42, 0.52)
     spans = ((j * pitch + rung / 2, (j + 1) * pitch - rung / 2) for j in range(count))
     openings = tuple(Patch((*span, rail, t - rail), 0) for span in spans)
     return Sheet((s, t), h, s / 28, openings, clamp=() if i % 2 else root((s, t)))
