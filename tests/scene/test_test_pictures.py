@@ -18,6 +18,7 @@ from viewer.scene.note_layout import note_height
 from viewer.scene.placed_test import place
 from viewer.scene.primitives import Disc, Line, Polygon, Text, overlap
 from viewer.scene.sheet import plan_sheet
+from viewer.scene.strip_sheet import strip_layout
 from viewer.scene.test_picture import (
     FOLLOWING,
     MEASURED_ONLY,
@@ -330,3 +331,13 @@ def test_other_pictures_have_no_keys_of_tests():
     items = plan_sheet(bare, frame_of(bare)).at(0.0).fixed
     assert not any("test:" in item.words for item in items if isinstance(item, Text))
     assert sum(isinstance(item, Line | Polygon) for item in items) > 0
+
+
+def test_the_strip_names_both_sides_too():
+    strip = strip_layout(over())
+    words = [item.words for item in strip.sheet.items if isinstance(item, Text)]
+    hz = plate().modes.freq_hz[0]
+    assert any(f"test: hammer  {1.02 * hz:.1f}" in said for said in words)
+    assert any(f"{hz:.1f}" in said and said.startswith("analysis") for said in words)
+    lowest = max(item.y for item in strip.sheet.items if isinstance(item, Text) and "hammer" in item.words)
+    assert lowest < strip.cells[0][0][1]

@@ -165,3 +165,11 @@ def test_a_design_without_tests_is_drawn_as_ever():
     bare = picture.with_(bodies=(replace(picture.bodies[0], traces=()),))
     image, _ = drawn(bare)
     assert near(image, THEMES["light"].test, 12).sum() == 0
+
+
+def test_a_ghost_on_white_paper_stays_white():
+    picture = box("ghost")
+    with Stage(picture, bare=1.0) as stage:
+        image = stage.image(0.0)
+    assert near(image, THEMES["light"].background, 2).sum() == 0
+    assert near(image, "#FFFFFF", 0).mean() > 0.8

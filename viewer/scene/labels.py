@@ -33,6 +33,7 @@ _LEADER = 1.3
 DOT = 3.0  # radius of the dot in which a leader to an area ends
 SIGN = 8.5  # radius of the disc that holds a sign
 TAG, TAG_PULL = 5.0, 6.0  # wished distance of a test point's bare label from its bead, and how much it matters
+TAG_REACH = 90.0  # no bare label stands farther from its bead
 AROUND, RING_LINE = 5.5, 2.6  # a ring stands so far out from a bead; its line
 
 
@@ -422,6 +423,18 @@ def _touches(boxes: Array, line: Array) -> Array:
     return inside.any(axis=1)
 
 
+def _near(region: Box, target: Point, label: Label) -> Box:
+    """The part of ``region`` in which a label is sought: near its mark for those that matter there alone."""
+    if label.pull <= 1:
+        return region
+    reach = label.anchor.clear + TAG_REACH
+    wide, high = reach + label.size[0], reach + label.size[1]
+    near = target[0] - wide, target[1] - high, target[0] + wide, target[1] + high
+    left, top = max(region[0], near[0]), max(region[1], near[1])
+    right, foot = min(region[2], near[2]), min(region[3], near[3])
+    return (left, top, right, foot) if right - left > label.size[0] and foot - top > label.size[1] else region
+
+
 def place_label(
     label: Label,
     frame: Frame,
@@ -435,7 +448,7 @@ def place_label(
     marked = [bounds((other.anchor.rest(frame),), other.anchor.clear) for other in others if other is not label]
     target = label.anchor.rest(frame)
     wish = Wish(label.size, target, label.anchor.clear, label.near, pull=label.pull)
-    box = choose_place(wish, region, covered, [*taken, *marked], leaders)
+    box = choose_place(wish, _near(region, target, label), covered, [*taken, *marked], leaders)
     x, y = leader_start(np.array([box]), target)[0]
     placed = Placed(label, box, (float(x), float(y)))
     line = leader(placed.start, target, label.anchor.clear, label.colour)

@@ -17,7 +17,7 @@ from viewer.scene.colour_bar import colour_bar_items, energy_scale
 from viewer.scene.note_layout import gauge, is_true, knob
 from viewer.scene.picture import Picture
 from viewer.scene.primitives import Box, Line, Primitive, Sheet, Text
-from viewer.scene.title_keys import key
+from viewer.scene.title_keys import key, keys_of_test
 from viewer.scene.tokens import BAR_WIDTH, TEXT, TEXT_NAME, TEXT_SMALL, THEMES
 from viewer.scene.typeface import wrap
 
@@ -58,7 +58,8 @@ def strip_layout(picture: Picture) -> Strip:
     compared = picture.layout != "single"
     phases, words = strip_phases(picture)
     wide = WIDTH / len(phases)
-    keys = _KEY_LINE * (1 if picture.layout == "side" else len(picture.bodies)) if compared else 0.0
+    tested = keys_of_test(picture, _SIDE, _KEY, _KEY_LINE, TYPE)
+    keys = _KEY_LINE * (1 if picture.layout == "side" else len(picture.bodies) if compared else 2 * bool(tested))
     note_height = _note(picture, 0.0, [])
     if compared:
         low, high = view.scene_box(picture)
@@ -66,7 +67,7 @@ def strip_layout(picture: Picture) -> Strip:
         tall = float(round(min(max(drawn, LEAST_COMPARED), ROW)))
     else:
         tall = min(max(HEIGHT - _RULE - note_height, LEAST_ROW), ROW)
-    items: list[Primitive] = []
+    items: list[Primitive] = [*tested]
     cells = []
     y = 0.0
     for row in range(rows):

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from viewer.scene.figures import change, hertz
-from viewer.scene.picture import Body, Picture, TraceMark
+from viewer.scene.picture import Picture
 from viewer.scene.primitives import Disc, Frame, Line, Polygon, Primitive, Text
 from viewer.scene.tokens import BASE_WIDTH, CONTOUR, THEMES, TOP, TRACE, Tokens
 from viewer.scene.typeface import wrap
@@ -19,7 +19,7 @@ def title_key_items(picture: Picture, frame: Frame) -> list[Primitive]:
     """One key at the top left of each viewport (name, frequency below); in an overlay one line for each body."""
     tokens = THEMES[picture.theme]
     if picture.layout == "single":
-        return _test_keys(picture, tokens)
+        return keys_of_test(picture, LEFT, _TEST_FIRST, _LINE)
     if picture.layout == "overlay":
         items: list[Primitive] = []
         y = frame.boxes[0][1] + _FIRST
@@ -54,29 +54,28 @@ def frequency_words(picture: Picture, index: int) -> str:
     return hertz(freq_hz) + (f"  ({shift})" if shift else "")
 
 
-def test_key_room(picture: Picture) -> float:
+def key_room_of_test(picture: Picture) -> float:
     """Height that the keys of a test and the body it moves on take below the ruler, sheet px."""
-    return _TEST_FIRST + _LINE - TOP + 12.0 if _shown_tests(picture) else 0.0
+    return _TEST_FIRST + _LINE - TOP + 12.0 if _test_rows(picture) else 0.0
 
 
-def _shown_tests(picture: Picture) -> list[tuple[Body, TraceMark]]:
-    """Tests that move on a body that is drawn itself."""
-    if picture.layout != "single":
-        return []
-    return [(b, t) for b in picture.bodies if b.form == "solid" for t in b.traces if t.freq_hz is not None]
+def keys_of_test(picture: Picture, left: float, y: float, step: float, scale: float = 1.0) -> list[Primitive]:
+    """Of a test that moves on a body: its key with ``y`` for a baseline, then, ``step`` below, that of the body with
+    its frequency against the test's. Empty for other pictures."""
+    tokens = THEMES[picture.theme]
+    rows = enumerate(_test_rows(picture))
+    return [item for k, (role, words) in rows for item in _key(tokens, role, left, y + step * k, [words], scale)]
 
 
-def _test_keys(picture: Picture, tokens: Tokens) -> list[Primitive]:
-    """Below the ruler: the test, then the body it is drawn on with its frequency against the test's."""
-    items: list[Primitive] = []
-    for body, test in _shown_tests(picture)[:1]:
-        tested = test.freq_hz or 0.0
-        shift = change(body.freq_hz, tested) if body.freq_hz != tested else ""
-        rows = (("test", f"{test.name}  {hertz(tested)}"), ("ink", f"{body.name}  {hertz(body.freq_hz)}"))
-        for k, (role, words) in enumerate(rows):
-            words += f"  ({shift})" if k and shift else ""
-            items += _key(tokens, role, LEFT, _TEST_FIRST + _LINE * k, [words], 1.0)
-    return items
+def _test_rows(picture: Picture) -> list[tuple[str, str]]:
+    """Role and words of the keys of the first test that moves on a body that is drawn itself."""
+    for body in picture.bodies if picture.layout == "single" else ():
+        for test in body.traces if body.form == "solid" else ():
+            if test.freq_hz is not None:
+                shift = change(body.freq_hz, test.freq_hz) if body.freq_hz != test.freq_hz else ""
+                own = f"{body.name}  {hertz(body.freq_hz)}" + (f"  ({shift})" if shift else "")
+                return [("test", f"{test.name}  {hertz(test.freq_hz)}"), ("ink", own)]
+    return []
 
 
 def _key(tokens: Tokens, role: str, left: float, y: float, lines: list[str], scale: float) -> list[Primitive]:

@@ -12,7 +12,7 @@ from viewer.scene.marks import mark_pieces
 from viewer.scene.motion import swing
 from viewer.scene.picture import Picture, View
 from viewer.scene.primitives import Box, Frame, sheet_size
-from viewer.scene.title_keys import test_key_room
+from viewer.scene.title_keys import key_room_of_test
 
 Drawn = list[tuple[Array, Array]]  # points and drawn amplitudes, both (n, 3) m
 
@@ -159,7 +159,7 @@ def _furniture(picture: Picture, wide: bool) -> tuple[float, float]:
     caution = colour_bar.caution_room(picture)
     if picture.layout == "side" and not wide:
         return float(KEY_TOP), float(tokens.MARGIN) if picture.energy_top is None else colour_bar.ROOM + caution
-    return tokens.TOP + max(caution, test_key_room(picture)), float(tokens.MARGIN)
+    return tokens.TOP + max(caution, key_room_of_test(picture)), float(tokens.MARGIN)
 
 
 def frame(picture: Picture, camera: Camera, boxes: tuple[Box, ...]) -> Frame:

@@ -210,7 +210,8 @@ class GhostBody:
         self._surface, self._diagonal = surface, body.mesh.diagonal
         motion = Motion(body, surface)
         self._rest = motion.rest
-        self._faces = SurfaceActor(renderer, surface, motion, theme.background)
+        self._faces = SurfaceActor(renderer, surface, motion, theme.body)
+        self._faces.actor.GetProperty().SetColor(*renderer.GetBackground())
         self._faces.actor.GetProperty().LightingOff()
         self._faces.move(motion.rest, surface.face_normals(motion.rest))
         self._ghost = Segments(renderer, theme.ghost, scale * tokens.GHOST, motion.origin)
