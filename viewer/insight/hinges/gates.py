@@ -110,9 +110,9 @@ def label(score_: float, draft: Draft) -> str:
 
 CALIBRATION = (
     "chance from a logistic curve in the logarithm of the score, fitted to 571 candidates with a score of at least "
-    "0.5 (the best of each place) in 100 generated parts of 36 families, 390 of them on a line or neck that was built "
-    "in; foretold for each family from all others it agrees within 2 percentage points on average; no candidate is "
-    "given more than 98 percent, since parts of other sorts may do worse"
+    "0.5 (the best of each place) in 100 generated parts of 36 families, 390 of them on a line or neck that was "
+    "built in; foretold for each family from all others it agrees within 2 percentage points on average; no "
+    "candidate is given more than 98 percent, since parts of other sorts may do worse"
 )
 _LOGIT, _MOST = (2.14, 5.11), 0.98
 
