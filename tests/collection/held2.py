@@ -215,7 +215,9 @@ def swept_fin(rng: np.random.Generator, i: int) -> Sheet:
         return Sheet((s, t), h, s / 20, place=place, clamp=root((s, t)))
     band = line_across((s, t), at, width, max(1.5 * h, width))
     patch = Patch(band.box, _thin(rng, h))
-    return Sheet((s, t), h, s / 20, (patch,), (band,), place=place, clamp=root((s, t)), least=3, layers=2)
+    cell, layers = (s / 17, 3) if i == 1 else (s / 20, 1)
+    held = root((s, t))
+    return Sheet((s, t), h, cell, (patch,), (band,), place=place, clamp=held, least=3, layers=layers)
 
 
 def _saddle(size: tuple[float, float], rise: float):
