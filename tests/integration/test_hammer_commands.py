@@ -108,6 +108,7 @@ def test_an_open_placement_is_chosen_with_an_option(tmp_path):
     path = write_square(tmp_path / "square")
     refused = run("pair", path, "hammer")
     assert refused.exit_code == 1 and "8 placements that fit equally well" in refused.output
+    assert "--place NUMBER" in refused.output and refused.output.count("placement = {rotation") == 8
     out = good("pair", path, "hammer", "--place", "2")
     assert f"written into {path}: placement 2 of test hammer" in out
     assert "where the dossier places them" in good("pair", path, "hammer")

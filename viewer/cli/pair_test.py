@@ -42,7 +42,7 @@ def pair_test(opened: OpenDossier, test: str, design: str, wish: Wish) -> None:
     with progress_bar() as progress:
         opened, done = _written(opened, test, design, wish, progress)
         study = opened.test(test, design, wish.count, progress)
-        study.analysis  # noqa: B018 - refuses while the placement is not settled
+        _settled(study)
         told = study.explain(progress, extra=wish.extra)
         if wish.extra_points is not None:
             write_table(wish.extra_points, extra_point_rows(test, study.points(progress, wish.extra)))
@@ -68,6 +68,17 @@ def pair_test(opened: OpenDossier, test: str, design: str, wish: Wish) -> None:
         typer.echo("\nNot used:\n" + readable(doubtful))
     for caution in cautions:
         typer.echo(f"caution: {caution}")
+
+
+def _settled(study: TestStudy) -> None:
+    """Refuse while the placement is not settled, with the option that settles it."""
+    from viewer.errors import RefusedError
+
+    try:
+        study.registration.require(study.length_unit)
+    except RefusedError as error:
+        error.do += f"; hingelight pair DOSSIER {study.name} --place NUMBER writes the line for you"
+        raise
 
 
 def _written(
@@ -119,7 +130,7 @@ def _numbers(text: str, study: TestStudy, progress: Progress) -> list[int]:
 def _pictures(study: TestStudy, told: TestExplanation, wish: Wish, progress: Progress) -> None:
     """Charts, stills and loops into a folder."""
     from viewer.export.file_names import slugs
-    from viewer.export.test_pictures import pair_loop, write_test_charts
+    from viewer.export.test_pictures import expanded_still, pair_loop, write_test_charts
 
     assert wish.pictures is not None and told.correlation is not None
     folder, stem = wish.pictures, slugs([f"test {study.name}"])[f"test {study.name}"]
@@ -129,3 +140,6 @@ def _pictures(study: TestStudy, told: TestExplanation, wish: Wish, progress: Pro
     for done, pair in enumerate(paired):
         progress.tick("drawing", done, len(paired))
         pair_loop(folder, stem, study, pair, **look)
+        if told.expansion is not None and pair.test is not None:
+            hinges = study.expanded(progress).hinges_if_known(pair.test - 1)
+            expanded_still(folder, stem, study, pair.test, hinges, **look)
