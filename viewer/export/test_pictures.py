@@ -12,6 +12,7 @@ from viewer.export.findings import Pictures
 from viewer.export.gif_loop import save_gif
 from viewer.export.index_page import PageLoop
 from viewer.export.stills import save_png
+from viewer.insight.correlate import mac
 from viewer.insight.hinges import HingeFinding
 from viewer.insight.phase import turned_real
 from viewer.insight.test_pairing import TestPair
@@ -23,6 +24,7 @@ from viewer.scene.correlation_charts import correlation_field, correlation_ladde
 from viewer.scene.phase_chart import phase_chart
 from viewer.scene.placed_test import PlacedTest, place
 from viewer.scene.test_picture import beside_picture, expanded_picture, over_picture
+from viewer.workspace.mixed import mixed
 from viewer.workspace.testing import TestExplanation, TestStudy
 
 LOOP_WIDTH = (
@@ -99,13 +101,18 @@ def pair_loop(
 ) -> PageLoop:
     """The loop of a measured mode beside its counterpart, with a still of both in one place and its phases."""
     assert pair.test is not None and pair.analysis is not None
-    placed, analysis = placed_of(study), study.analysis[pair.analysis - 1]
+    placed = placed_of(study)
+    beside, analysis = mixed(study.study, pair.analysis, pair.mixture, study.analysis)
+    alike = pair.mac
+    if beside is not study.study:
+        measured = study.test.shapes[pair.test - 1, placed.used]
+        alike = float(mac(measured, analysis[placed.used])[0, 0])
     look: dict[str, Any] = {"theme": theme, "width": min(width, LOOP_WIDTH)}
-    arguments = (study.study, pair.analysis, placed, pair.test, analysis)
+    arguments = (beside, pair.analysis, placed, pair.test, analysis)
     name = f"{stem}_mode_{pair.test:02d}"
-    side = beside_picture(*arguments, mac=pair.mac, **look)
+    side = beside_picture(*arguments, mac=alike, **look)
     give(save_gif, side, folder / f"{name}_beside.gif", still=folder / f"{name}_beside.png")
-    over = over_picture(*arguments, mac=pair.mac, theme=theme, width=width)
+    over = over_picture(*arguments, mac=alike, theme=theme, width=width)
     give(save_png, over, folder / f"{name}_over.png")
     findings: Pictures = ()
     if study.test.is_complex:
