@@ -62,6 +62,8 @@ class Conductor(QObject):
             self._lanes[name].progressed.connect(partial(self._progressed, name))
         self._asked: frozenset[Question] = frozenset()
         self._question: Question | None = None
+        self._failures: dict[Question, HingelightError] = {}
+        self._told: tuple[Any, ...] | None = None
         self._wish: tuple[Any, ...] | None = None
         self._shown: tuple[Any, ...] | None = None
         self._thumbed: tuple[str, str] | None = None
@@ -100,6 +102,7 @@ class Conductor(QObject):
         """Go on from a project whose dossier was written: what it no longer knows is asked anew."""
         self._lanes["finding"].drop()
         self._asked, self._question = frozenset(), None
+        self._failures, self._told = {}, None
         self._learn(project)
 
     def stop(self) -> None:
@@ -123,6 +126,7 @@ class Conductor(QObject):
         for name in ("finding", "composing", "thumbing"):
             self._lanes[name].drop()
         self._asked, self._question, self._wish, self._shown = frozenset(), None, None, None
+        self._failures, self._told = {}, None
         self._forget_thumbnails()
         self.waited.emit()
         state = State(design=project.designs[0], theme=theme, playing=self._session.state.playing)
@@ -146,6 +150,7 @@ class Conductor(QObject):
             return
         if self._question is None:
             self._ask(project, state)
+        self._tell_failure(project, state)
         self.compose()
         self._draw_thumbnails(project, state)
 
@@ -176,8 +181,21 @@ class Conductor(QObject):
             return
         informed = learn_why_not(project, question, error)
         if informed is None:
-            self.failed.emit(error)
+            self._failures[question] = error
         self._learn(informed or project)
+
+    def _tell_failure(self, project: Project, state: State) -> None:
+        """What failed in the background is told when it is asked for, once each time."""
+        missed = [q for q in self._failures if self._asks_for(q, project, state)]
+        wish = (state.design, state.mode, state.layout, state.other, state.page) if missed else None
+        if wish != self._told:
+            self._told = wish
+            if missed:
+                self.failed.emit(self._failures[missed[0]])
+
+    def _asks_for(self, question: Question, project: Project, state: State) -> bool:
+        chosen = question == Question("explain", state.design, state.mode)
+        return chosen or self._waits_for(question, project, state)
 
     def _learn(self, project: Project) -> None:
         self._session.project = project

@@ -86,7 +86,7 @@ def _scale(low: float, high: float, y, tokens: Tokens) -> list[Primitive]:
     middle = sum(RAILS) / 2
     items: list[Primitive] = []
     for value in ticks(low, high, 7):
-        items.append(Text(middle, y(value) + 5, f"{value:g}", tokens.soft, TEXT_SMALL, False, "middle"))
+        items.append(Text(middle, y(value) + 5, f"{value + 0.0:g}", tokens.soft, TEXT_SMALL, False, "middle"))
         items.append(Line(((RAILS[0], y(value)), (RAILS[0] + 8, y(value))), tokens.soft, 1.0))
         items.append(Line(((RAILS[1] - 8, y(value)), (RAILS[1], y(value))), tokens.soft, 1.0))
     return [*items, Text(middle, 50, "Hz", tokens.soft, TEXT_SMALL, False, "middle")]
