@@ -243,6 +243,28 @@ def test_a_test_of_something_else_does_not_fit():
         register(test, bracket())
 
 
+def test_points_of_another_part_of_that_size_are_refused():
+    """Places on a sphere are on no bracket of its size."""
+    points = np.random.default_rng(3).normal(size=(20, 3))
+    points *= 0.075 / np.linalg.norm(points, axis=1, keepdims=True)
+    with pytest.raises(InputError, match="do not lie on the mesh, however it is turned"):
+        register(points_test(points), bracket())
+
+
+def test_a_disc_can_turn():
+    """A round plate: its axis is found, what turns about it is not."""
+    square = plate_mesh("quad4", (16, 16), (2.0, 2.0))
+    x, y = (square.points[:, :2] - 1).T
+    reach, round_ = np.maximum(np.abs(x), np.abs(y)), np.hypot(x, y)
+    scale = 0.1 * np.divide(reach, round_, out=np.zeros_like(reach), where=round_ > 0)
+    mesh = square.with_(points=np.stack([x * scale, y * scale, 0 * x], axis=1))
+    moved = strewn(mesh, 30, np.random.default_rng(4)) + np.array([1.0, 2.0, 3.0])
+    found = register(points_test(moved), mesh)
+    assert not found.settled
+    assert any("turned about the part's thinnest direction (z)" in words for words in found.free), found.free
+    assert not unfounded(found.sentence, found.to_dict()), found.sentence
+
+
 def test_too_few_points_for_the_geometry():
     with pytest.raises(RefusedError, match="cannot be placed by its geometry"):
         register(points_test(np.eye(3)), bracket())

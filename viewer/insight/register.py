@@ -35,6 +35,7 @@ _LIKELY = 6.0  # twice the logarithm of 20: a placement less than 20 times less 
 _MISFIT = 0.1  # of the part's size: named points that miss their places by more are not those points
 # Span of the points by that of the part: what needs no explanation, and what a mixed-up unit must lead to.
 LEAST_COVER, MOST_COVER, _SLIP_COVER = 0.15, 1.15, 0.35
+_MISPLACED = FAR / 2  # of the part's size: root mean square distance from which on points do not lie on the part
 _SCALE = 1.25  # a scale of named points beyond this is no scatter
 
 
@@ -148,6 +149,13 @@ def _by_geometry(test: TestSet, mesh: Mesh, surface: NearSurface, progress: Prog
         )
     slip, fit, found = _at_right_size(test, mesh, surface, progress)
     factor = 1.0 if slip is None else slip.factor
+    if found[2][0] > _MISPLACED * mesh.diagonal:
+        raise InputError(
+            f"the points of test '{test.name}' do not lie on the mesh, however it is turned",
+            found=f"{_millimetres(float(found[2][0]))} off on average (root mean square) in the best placement found",
+            expected=f"less than {_millimetres(_MISPLACED * mesh.diagonal)}",
+            do="check the test's length_unit and the design it is set beside, or name landmarks",
+        )
     turns, shifts, cost = with_symmetries(fit, *found, lambda costs: _as_good(fit, costs))
     good = _as_good(fit, cost)
     first = placement_of(turns[0], shifts[0], factor)
