@@ -4,7 +4,8 @@ import numpy as np
 import pytest
 
 from tests.scene.sheets import frame_of, known, overlay, side, true
-from viewer.scene.labels import CELL, Cover, Wish, choose_place, cover, leader, leader_start, picture_labels
+from viewer.scene.cover import CELL, Cover, cover
+from viewer.scene.labels import Wish, choose_place, leader, leader_start, picture_labels
 from viewer.scene.motion import positions
 from viewer.scene.primitives import Line, overlap
 from viewer.scene.sheet import plan_sheet

@@ -7,8 +7,9 @@ from math import cos
 
 import numpy as np
 
+from viewer.scene.cover import Cover
 from viewer.scene.figures import GAP, length
-from viewer.scene.labels import LEADING, SIZE, Cover, Wish, choose_place, leader
+from viewer.scene.labels import LEADING, SIZE, Wish, choose_place, leader
 from viewer.scene.picture import Picture
 from viewer.scene.primitives import Box, Disc, Frame, Line, Point, Primitive, Ring, Text
 from viewer.scene.tokens import THEMES

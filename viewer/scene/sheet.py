@@ -11,7 +11,8 @@ from dataclasses import dataclass
 
 from viewer.scene.bead_scale import bead_scale_items
 from viewer.scene.colour_bar import picture_bar
-from viewer.scene.labels import Placed, cover, marked_lines, picture_labels, place_label
+from viewer.scene.cover import cover
+from viewer.scene.labels import Placed, marked_lines, picture_labels, place_label
 from viewer.scene.magnifier import Magnifier, place_magnifier
 from viewer.scene.note_layout import note_height, note_items, note_knob, swings
 from viewer.scene.picture import Picture
