@@ -71,7 +71,8 @@ class Study:
             doubtful = [i + 1 for i in range(self.count) if elastic[i] and not figures.trusted[i]]
             if doubtful:
                 listed = ", ".join(str(n) for n in doubtful)
-                words.append(f"energies of mode {listed} are not trusted: see closure and residual")
+                why = "the shapes are not whole" if self.modes.caution else "see closure and residual"
+                words.append(f"energies of mode {listed} are not trusted: {why}")
         return tuple(f"{self.design.name}: {w}" for w in words)
 
     @property
