@@ -14,7 +14,7 @@ import numpy as np
 
 from viewer.model.arrays import Array
 from viewer.scene import hinge_marks, marks, trace_marks
-from viewer.scene.cover import Cover
+from viewer.scene.cover import CELL, Cover
 from viewer.scene.figures import kilograms
 from viewer.scene.motion import displacement
 from viewer.scene.picture import Body, Picture, TraceMark
