@@ -6,6 +6,8 @@ from pathlib import Path
 
 from tests.meshes import plate_mesh
 from viewer.loaders import write_interchange
+from viewer.session import Project, State
+from viewer.session.questions import find, learn, next_question
 
 DOSSIER = """
 title = "Strip (invented)"
@@ -62,3 +64,13 @@ def write_strip(folder: Path) -> Path:
     write_interchange(folder / "strip.npz", plate_mesh("quad4", (20, 4), (0.3, 0.06)))
     (folder / "dossier.toml").write_text(DOSSIER, encoding="utf-8")
     return folder / "dossier.toml"
+
+
+def answer_all(project: Project, state: State) -> tuple[Project, list[str]]:
+    """Ask and answer until all is known, as the window does; returns the kinds of questions in order, too."""
+    asked: list[str] = []
+    while (question := next_question(project, state, frozenset())) is not None:
+        asked.append(question.kind)
+        assert len(asked) < 60
+        project = learn(project, question, find(project, question))
+    return project, asked

@@ -12,7 +12,7 @@ from viewer.errors import InputError, RefusedError
 from viewer.scene.compose import single_picture
 from viewer.session import Project, State, actions
 from viewer.session.gallery import items, passing
-from viewer.session.loading import compare_studies, explain, open_project, read_study, sample
+from viewer.session.loading import open_project, read_study, sample
 from viewer.session.picking import nearest_node, read_off
 from viewer.session.pictures import fitted_by, picture_of, wanted
 from viewer.session.questions import next_question
@@ -21,45 +21,6 @@ from viewer.session.saving import save_names
 from viewer.session.state import Band, Picked
 from viewer.session.words import as_text, entries
 from viewer.stage import Stage
-
-
-@pytest.fixture(scope="module")
-def folder(tmp_path_factory):
-    return write_strip(tmp_path_factory.mktemp("strip")).parent
-
-
-def answer_all(project: Project, state: State) -> tuple[Project, list[str]]:
-    """Ask and answer until all is known, as the window does."""
-    asked = []
-    while (question := next_question(project, state, frozenset())) is not None:
-        asked.append(question.kind)
-        assert len(asked) < 60
-        if question.kind == "study":
-            project = project.with_study(question.design, read_study(project.opened, question.design))
-        elif question.kind == "explain":
-            project = project.with_told(question.design, explain(project.studies[question.design], question.mode))
-        else:
-            first, second = project.studies[question.design], project.studies[question.other]
-            found = compare_studies(project.opened, first, second, closely=question.kind == "compare")
-            pair = (question.design, question.other)
-            project = project.with_comparison(pair, found, closely=question.kind == "compare")
-    return project, asked
-
-
-@pytest.fixture(scope="module")
-def known(folder):
-    project = open_project(folder)
-    return answer_all(project, State(design="thin"))
-
-
-@pytest.fixture
-def project(known):
-    return known[0]
-
-
-@pytest.fixture
-def state():
-    return State(design="thin")
 
 
 def test_what_is_seen_is_asked_first(known):
