@@ -72,10 +72,11 @@ def test_the_other_design_may_be_bad(make_window, until, strip, settled):
         'name = "thick"\nmesh = "strip.npz"', 'name = "thick"\nmesh = "no.npz"'
     )
     strip.write_text(text, encoding="utf-8")
+    (strip.parent / "no.npz").write_bytes(b"not a mesh")
     window = make_window(strip)
     settled(window)
-    assert window.canvas.image is not None
-    window.deeds.dismiss()
+    until(lambda: window.canvas.image is not None, "the first plays")
+    assert window.notice.kind == "", "nobody asked for the other yet"
     QTest.keyClick(window, Qt.Key.Key_C)
     until(lambda: window.notice.kind == "error", "told")
     assert "no.npz" in window.notice.words

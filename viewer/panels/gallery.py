@@ -186,7 +186,7 @@ class GalleryPanel(QListView):
 
     def rename_chosen(self) -> None:
         """Edit the chosen mode's name in place."""
-        if self.currentIndex().isValid():
+        if self.currentIndex().isValid() and self.state() != QListView.State.EditingState:
             self.edit(self.currentIndex())
 
     def _step(self) -> None:

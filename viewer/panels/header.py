@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from PySide6.QtCore import Qt, Signal
-from PySide6.QtGui import QFontMetrics
+from PySide6.QtGui import QFontMetrics, QResizeEvent
 from PySide6.QtWidgets import (
     QButtonGroup,
     QComboBox,
@@ -23,6 +23,27 @@ LAYOUT_WORDS = {"side": "side by side", "overlay": "overlay", "difference": "dif
 TEST_WORDS = {"test over": "test on top", "test beside": "test beside", "test alone": "test alone"}
 
 
+class _Title(QLabel):
+    """Words that are shortened to the room there is; a tail stays whole."""
+
+    def __init__(self, parent: QWidget) -> None:
+        super().__init__(parent)
+        self._words, self._tail = "", ""
+
+    def say(self, words: str, tail: str) -> None:
+        self._words, self._tail = words, tail
+        self._fit()
+
+    def resizeEvent(self, event: QResizeEvent) -> None:
+        super().resizeEvent(event)
+        self._fit()
+
+    def _fit(self) -> None:
+        metrics = self.fontMetrics()
+        room = self.width() - metrics.horizontalAdvance(self._tail)
+        self.setText(metrics.elidedText(self._words, Qt.TextElideMode.ElideRight, room) + self._tail)
+
+
 class HeaderPanel(QWidget):
     """``design_chosen(name)``, ``layout_chosen(layout)``, ``test_wished()`` (once more: the next of its layouts),
     ``beside_chosen(name)`` of what is to be beside the design."""
@@ -37,7 +58,7 @@ class HeaderPanel(QWidget):
         self.setObjectName("header")
         self.setAttribute(Qt.WidgetAttribute.WA_StyledBackground)
         self.setFixedHeight(HEADER)
-        self._title = QLabel("Hingelight", self)
+        self._title = _Title(self)
         self._title.setObjectName("title")
         self._title.setTextInteractionFlags(Qt.TextInteractionFlag.NoTextInteraction)
         self._title.setSizePolicy(QSizePolicy.Policy.Ignored, QSizePolicy.Policy.Preferred)  # buttons come first
@@ -76,8 +97,8 @@ class HeaderPanel(QWidget):
         self, title: str, designs: tuple[str, ...], shown: str, layout: str, unsaved: bool, tested: bool = False
     ) -> None:
         """``shown``: the chosen design; ``unsaved``: names wait to be saved; ``tested``: some design has a test."""
-        self._title.setText(f"{title}{'  •' if unsaved else ''}")
-        self._title.setToolTip("names not saved yet (Ctrl+S)" if unsaved else "")
+        self._title.say(title, "  • not saved" if unsaved else "")
+        self._title.setToolTip(f"{title}: names not saved yet (Ctrl+S)" if unsaved else title)
         if (designs, tested) != self._made:
             self._make(designs, tested)
         key = f"design:{shown}" if layout == "single" else f"layout:{layout}"

@@ -36,7 +36,7 @@ class Notice(QFrame):
         words = QVBoxLayout()
         for part in (self._heading, self._text, self._bar):
             words.addWidget(part)
-        box = QHBoxLayout(self)
+        box = self._box = QHBoxLayout(self)
         box.setContentsMargins(16, 12, 12, 12)
         box.addLayout(words, 1)
         box.addWidget(self._button, 0, Qt.AlignmentFlag.AlignTop)
@@ -85,7 +85,8 @@ class Notice(QFrame):
         """Stand at the top of the parent, in its middle."""
         width = min(620, self._over.width() - 40)
         self.setFixedWidth(max(width, 200))
-        self.adjustSize()
+        self._box.activate()
+        self.setFixedHeight(self._box.heightForWidth(self.width()))
         self.move((self._over.width() - self.width()) // 2, 16)
         self.raise_()
 

@@ -10,7 +10,7 @@ from viewer.panels.theme import KEY, LABEL, MARGIN, RAIL, WARNING, colour, face
 from viewer.scene.tokens import THEMES
 from viewer.session.rail import Rail
 
-_LEFT, _RIGHT, _LINE = 138.0, 60.0, 50.0
+_LEFT, _RIGHT, _LINE = 138.0, 60.0, 45.0
 _STEP = 0.02
 _KEYS = {Qt.Key.Key_Left: -_STEP, Qt.Key.Key_Right: _STEP}
 
@@ -64,17 +64,10 @@ class RailPanel(QWidget):
             painter.setPen(QPen(colour(tokens.soft), 1.0))
             painter.drawLine(QPointF(x, _LINE - half), QPointF(x, _LINE + half))
             if tick.words:
-                painter.drawText(QRectF(x - 60, _LINE + 6, 120, 18), Qt.AlignmentFlag.AlignHCenter, tick.words)
+                painter.drawText(QRectF(x - 60, _LINE + 12, 120, 18), Qt.AlignmentFlag.AlignHCenter, tick.words)
         own = self._x(rail.drawn)  # where it stands by itself
         painter.setPen(QPen(colour(tokens.soft), 1.4))
         painter.drawEllipse(QPointF(own, _LINE), 4.5, 4.5)
-        if rail.hint:
-            painter.setPen(colour(WARNING[self._theme]))
-            painter.setFont(face(LABEL))
-            room = QRectF(self._x(0), 4, self._x(1) - self._x(0), 20)
-            align = Qt.AlignmentFlag.AlignLeft if rail.at > 0.6 else Qt.AlignmentFlag.AlignRight
-            words = painter.fontMetrics().elidedText(rail.hint, Qt.TextElideMode.ElideRight, int(room.width() * 0.62))
-            painter.drawText(room, align | Qt.AlignmentFlag.AlignVCenter, words)
 
     def _paint_handle(self, painter: QPainter, rail: Rail) -> None:
         tokens = THEMES[self._theme]
@@ -87,6 +80,20 @@ class RailPanel(QWidget):
         width = painter.fontMetrics().horizontalAdvance(rail.label)
         left = min(max(x - width + 12, MARGIN), self.width() - MARGIN - width)
         painter.drawText(QPointF(left, _LINE - 18), rail.label)
+        if rail.hint:
+            self._paint_hint(painter, rail.hint, left - 18, left + width + 18)
+
+    def _paint_hint(self, painter: QPainter, hint: str, before: float, behind: float) -> None:
+        """What would make the size known, on that side of the label where there is more room: up to ``before`` it, or
+        from ``behind`` it on."""
+        right = self.width() - MARGIN
+        first = before - MARGIN > right - behind
+        room = QRectF(MARGIN, 8, before - MARGIN, 24) if first else QRectF(behind, 8, right - behind, 24)
+        painter.setPen(colour(WARNING[self._theme]))
+        painter.setFont(face(LABEL))
+        words = painter.fontMetrics().elidedText(hint, Qt.TextElideMode.ElideRight, int(room.width()))
+        align = Qt.AlignmentFlag.AlignRight if first else Qt.AlignmentFlag.AlignLeft
+        painter.drawText(room, align | Qt.AlignmentFlag.AlignVCenter, words)
 
     def _x(self, at: float) -> float:
         return _LEFT + at * (self.width() - _LEFT - _RIGHT)

@@ -81,7 +81,8 @@ def sheet(theme: str) -> str:
     QScrollBar:horizontal {{ height: 8px; background: transparent; }}
     QScrollBar::handle {{ background: {t.rule}; border-radius: 4px; min-width: 24px; min-height: 24px; }}
     QScrollBar::add-line, QScrollBar::sub-line {{ width: 0; height: 0; }}
-    #entry {{ border: none; border-left: 4px solid transparent; border-radius: 8px; background: transparent; }}
+    #entry {{ border: none; border-left: 4px solid transparent;
+        border-top-right-radius: 8px; border-bottom-right-radius: 8px; background: transparent; }}
     #entry:focus {{ border-left: 4px solid {t.soft}; }}
     #entry[lit="true"] {{ background: {tint}; border-left: 4px solid {t.accent}; }}
     #entry #entry_heading {{ color: {t.soft}; font-size: {LABEL}px; }}

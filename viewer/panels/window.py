@@ -56,6 +56,7 @@ class Window(QMainWindow):
         self.resize(*self.settings.size)
         self.setMinimumSize(900, 600)
         self._dress(self.settings.theme)
+        self.canvas.setFocus()
         self.refresh()
 
     def _build(self) -> None:

@@ -160,6 +160,7 @@ class WordsPanel(QWidget):
         sides.setContentsMargins(MARGIN, 0, MARGIN, 0)
         sides.addWidget(foot)
         box.addLayout(sides)
+        self._lit = ""
         self.entries: list[EntryWidget] = []
 
     def show_entries(self, entries: tuple[Entry, ...], heading: str, subject: str, theme: str) -> None:
@@ -171,8 +172,13 @@ class WordsPanel(QWidget):
             widget.taken_up.connect(self.taken_up)
             self._list.insertWidget(self._list.count() - 1, widget)
             self.entries.append(widget)
+        lit = next((w for w, e in zip(self.entries, entries, strict=False) if e.subject == subject), None)
         for widget, entry in zip(self.entries, entries, strict=False):
             widget.show_entry(entry, entry.subject == subject, theme)
             widget.show()
         for widget in self.entries[len(entries) :]:
             widget.hide()
+        if lit is not None and subject != self._lit:
+            self._list.activate()
+            self._area.ensureWidgetVisible(lit, 0, 12)
+        self._lit = subject
