@@ -40,6 +40,7 @@ AT_JOINT = {
 }
 STRONG_SCORE, STRONG_TURN, STRONG_SHARE = 1.5, 0.35, 0.15
 DOUBTFUL = 0.8  # score from which a mode without a hinge may fold: 35 of 42 such candidates were lines
+DOUBTFUL_SHARE = 0.1  # of the energy in it: a doubt about less is not worth a sentence
 _JOINT_SIZE = 0.65  # a joint as large as this share over the bound on slenderness, 1/10 of the part, is none
 _CAPPED = {
     "turn about the line",
