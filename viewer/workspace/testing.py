@@ -229,7 +229,7 @@ class TestStudy:
             "files": [path.name for path in self.plan.files],
             "modes": self.test.count,
             "channels": self.test.n_channels,
-            "points": len(self.test.labels),
+            "point_count": len(self.test.labels),
             "complex": self.test.is_complex,
             "corrections": list(self.corrected),
             "remarks": list(self.test.remarks),
