@@ -14,8 +14,10 @@ for c channels (Foster D.P., George E.I., The risk inflation criterion for multi
 1947; from memory); never more than half as many as there are channels.
 
 The left-out error tells how far a further reading of the same quality, at a place like the ones measured, would lie
-from the expanded shape. Where noise rules, the shape itself is nearer to the truth than that. Of a region that no
-channel sees, such as a flap without a sensor, it knows nothing.
+from the expanded shape. Where noise rules, the shape itself is nearer to the truth than that: ``shape_error`` carries
+the left-out residuals through the coefficients onto all nodes (the jackknife's variance, in its form HC3: MacKinnon
+J.G., White H., J. Econometrics 29 (1985) 305; from memory). Of a region that no channel sees, such as a flap without
+a sensor, and of what the basis cannot show, neither knows anything.
 """
 
 from __future__ import annotations
@@ -61,6 +63,8 @@ class Expansion:
     predicted    (m, c) what the other channels say about each; NaN where a channel was not used, or no other one says
                  anything about it
     residual     (m, c) reading − predicted, real or complex
+    shape_error  (m,) root mean square error to be expected of the shape over all nodes and directions, share of the
+                 mode's rms reading, by the left-out residuals; NaN where a channel stands alone
     """
 
     test: TestSet
@@ -71,9 +75,10 @@ class Expansion:
     coefficients: Array
     predicted: Array
     residual: Array
+    shape_error: Array
 
     def __post_init__(self) -> None:
-        for name in ("used", "coefficients", "predicted", "residual"):
+        for name in ("used", "coefficients", "predicted", "residual", "shape_error"):
             object.__setattr__(self, name, frozen(getattr(self, name)))
 
     @property
@@ -129,6 +134,7 @@ class Expansion:
                     "frequency_hz": float(self.modes.freq_hz[i]),
                     "basis": list(self.basis_of(i)),
                     "left_out_error": float(by_mode[i]),
+                    "shape_error": float(self.shape_error[i]),
                     "choice": [{"mode": s.number, "error": s.error, "taken": s.taken} for s in self.choice[i]],
                 }
                 for i in range(self.modes.count)
@@ -178,6 +184,7 @@ def expand(
     coefficients = np.zeros((test.count, modes.count), np.result_type(readings, rows))
     predicted = np.full(test.shapes.shape, np.nan, coefficients.dtype)
     choice = []
+    shape_error = np.zeros(test.count)
     for i in range(test.count):
         progress.tick("expanding measured shapes", i, test.count)
         y = readings[i] / rms[i]
@@ -186,6 +193,7 @@ def expand(
         left, weights = _left_out(y, rows[taken])
         if named is not None:
             steps = tuple(Step(s.number, float(np.sqrt(np.nanmean(np.abs(left) ** 2))), True) for s in steps)
+        shape_error[i] = _error_on_mesh(rows[taken], left, gram[np.ix_(taken, taken)])
         coefficients[i, taken] = weights * rms[i]
         predicted[i, where] = readings[i] - left * rms[i]
         choice.append(steps)
@@ -207,8 +215,9 @@ def expand(
         source=modes.source,
         caution=caution,
     )
+    residual = test.shapes - predicted
     return Expansion(
-        test, expanded, tuple(choice), basis is not None, where, coefficients, predicted, test.shapes - predicted
+        test, expanded, tuple(choice), basis is not None, where, coefficients, predicted, residual, shape_error
     )
 
 
@@ -293,6 +302,13 @@ def _left_out(y: Array, part: Array) -> tuple[Array, Array]:
     alone = free <= _ALONE
     left = np.where(alone, np.nan, (y - axes @ along) / np.where(alone, 1.0, free))
     return left, scale * np.linalg.solve(upper, along)
+
+
+def _error_on_mesh(part: Array, left: Array, gram: Array) -> float:
+    """Root mean square on the mesh of what the left-out residuals ``left`` (c,) say of the error of the coefficients
+    of the modes ``part`` (k, c); ``gram`` (k, k) as of ``_gram``."""
+    moved = np.linalg.pinv(part.T) * left  # (k, c): by how much the coefficients change when a channel is left out
+    return float(np.sqrt(max(np.einsum("kc,kl,lc->", moved.conj(), gram, moved).real, 0.0)))
 
 
 def _gram(moved: Array) -> Array:
