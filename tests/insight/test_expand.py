@@ -107,8 +107,8 @@ def test_the_left_out_residual_predicts_the_true_error_within_a_factor_of_two(pa
 @pytest.mark.parametrize("part", PARTS)
 def test_the_left_out_residuals_predict_the_error_against_the_truth_without_noise(part):
     """True error: of the expanded shape on all nodes against the shape without noise, root mean square. Of each mode
-    over 50 seeds, within a factor of two. A shape on one or two basis modes has an error of one or two random numbers,
-    and single seeds scatter as such numbers do: of each over its modes in 85 of 100 (found: 90 and 96)."""
+    over 50 seeds, within a factor of two. The error of a shape on one or two basis modes is one or two random
+    numbers, and single seeds scatter as such do: of each over its modes in 85 of 100 (found: 90 and 96)."""
     shapes = stacked(modelled(part))[: TESTED[part]]
     true, said = [], []
     for seed in range(50):
