@@ -13,6 +13,7 @@ import pytest
 
 from tests.insight.test_hinges import CLAMP, GROOVE, LENGTH, STEEL, THICK, WIDTH, grooved, middles, sheet, without
 from tests.meshes import plate_mesh
+from tests.sentences import unfounded
 from viewer.insight.hinges import find_hinges
 from viewer.insight.hinges.gates import DOUBTFUL, DOUBTFUL_SHARE, confidence
 from viewer.insight.hinges.profile import edges_of, profile
@@ -110,7 +111,7 @@ def test_between_a_hinge_and_none_it_is_undecided():
             (line,) = finding.doubtful
             assert line.label == "undecided" and DOUBTFUL <= line.score < 1
             assert finding.to_dict()["doubtful"][0]["confidence"] == line.confidence
-            assert "not certain" in finding.sentence
+            assert "not certain" in finding.sentence and not unfounded(finding.sentence, finding.to_dict())
     steps = [order[verdict] for verdict in verdicts]
     assert steps == sorted(steps) and {0, 1, 2} == set(steps), verdicts
 
