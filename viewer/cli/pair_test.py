@@ -37,7 +37,7 @@ def pair_test(opened: OpenDossier, test: str, design: str, wish: Wish) -> None:
     from viewer.export.rows import short
     from viewer.export.tables import readable, write_table
     from viewer.export.test_page import summary_of
-    from viewer.export.test_rows import accept_words, channel_rows, extra_point_rows, proposal_rows, test_pair_rows
+    from viewer.export.test_rows import accept_words, channel_rows, proposal_rows, test_pair_rows
 
     with progress_bar() as progress:
         opened, done = _written(opened, test, design, wish, progress)
@@ -45,7 +45,7 @@ def pair_test(opened: OpenDossier, test: str, design: str, wish: Wish) -> None:
         _settled(study)
         told = study.explain(progress, extra=wish.extra)
         if wish.extra_points is not None:
-            write_table(wish.extra_points, extra_point_rows(test, study.points(progress, wish.extra)))
+            done += _extra(study, wish.extra_points, wish.extra, progress)
         if wish.pictures is not None:
             _pictures(study, told, wish, progress)
     assert told.correlation is not None
@@ -68,6 +68,18 @@ def pair_test(opened: OpenDossier, test: str, design: str, wish: Wish) -> None:
         typer.echo("\nNot used:\n" + readable(doubtful))
     for caution in cautions:
         typer.echo(f"caution: {caution}")
+
+
+def _extra(study: TestStudy, path: Path, count: int, progress: Progress) -> list[str]:
+    """The points that would help most, into a table; what was done in words."""
+    from viewer.export.tables import write_table
+    from viewer.export.test_rows import extra_point_rows
+
+    rows = extra_point_rows(study, study.points(progress, count))
+    if not rows:
+        return [f"no further point would help: {path} is not written"]
+    write_table(path, rows)
+    return [f"written: {path}, places in metres, in the mesh's axes and in the test's"]
 
 
 def _settled(study: TestStudy) -> None:

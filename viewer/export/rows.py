@@ -31,7 +31,8 @@ _SHORT = (
     "phase_collinearity", "phase_deviation_deg", "doubtful", "correction", "what", "mean_mac_before",
     "mean_mac_after", "as_likely", "placement", "fit_m", "channel", "used", "from_surface_m", "to_normal_deg",
     "enhanced_comac", "left_out_error_percent", "on_modes", "expected_error_percent",
-    "with_one_more_percent", "x_m", "y_m", "z_m", "node", "worst_auto_mac",
+    "with_one_more_percent", "x_m", "y_m", "z_m", "node",
+    "worst_auto_mac",
     "verdict", "hinge", "place", "kind", "label", "confidence_percent", "fold_drawn_deg", "fold_real_deg",
     "stiffness_nmrad", "length_m",
 )  # fmt: skip

@@ -109,7 +109,7 @@ def _tables(desk: Desk, stem: str, study: TestStudy, told: TestExplanation) -> t
         tables += desk.table(f"{stem}_corrections", f"Corrections proposed for test {name}", rows, show=True)
     tables += desk.table(f"{stem}_channels", f"Channels of test {name}", channel_rows(study, told))
     if told.points is not None:
-        rows = extra_point_rows(study.name, told.points)
+        rows = extra_point_rows(study, told.points)
         tables += desk.table(f"{stem}_extra_points", f"Points that would help test {name} most", rows)
     if told.expansion is not None:
         rows = expansion_rows(told.expansion.to_dict())

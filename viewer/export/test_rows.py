@@ -128,9 +128,18 @@ def placement_rows(registration: dict[str, Any]) -> list[Row]:
     ]
 
 
-def extra_point_rows(test: str, choice: SensorChoice) -> list[Row]:
-    """One row for each point that would help to tell the modes apart."""
-    return [{"test": test, **row} for row in choice.rows]
+def extra_point_rows(study: TestStudy, choice: SensorChoice) -> list[Row]:
+    """One row for each point that would help to tell the modes apart: places in the mesh's axes, and in the test's
+    own, where somebody will look for them with a tape."""
+    placed, rows = study.registration.placement, []
+    for found in choice.rows:
+        row: Row = {"test": study.name, **found}
+        place = np.array([row.pop(axis) for axis in "xyz"])
+        own = (place - placed.shift) @ placed.rotation / placed.scale
+        row |= {f"{axis}_m": float(v) for axis, v in zip("xyz", place, strict=True)}
+        row |= {f"test_{axis}_m": float(v) for axis, v in zip("xyz", own, strict=True)}
+        rows.append(row)
+    return rows
 
 
 def accept_words(study: TestStudy, faults: Faults) -> str:
