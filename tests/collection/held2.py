@@ -1,4 +1,4 @@
-"""Further families held out of tuning, on which the finished search is scored."""
+"""Families of the scored half: nobody looks at single results of these while the search changes."""
 
 from __future__ import annotations
 

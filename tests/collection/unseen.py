@@ -1,4 +1,4 @@
-"""Families scored only once, when the search is finished."""
+"""Families first scored when the search was first finished; looked at since, so they count as development."""
 
 from __future__ import annotations
 

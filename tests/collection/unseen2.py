@@ -1,4 +1,4 @@
-"""Further families scored only once, when the search is finished."""
+"""Families of the scored half that were never searched before the search was finished."""
 
 from __future__ import annotations
 
