@@ -14,12 +14,12 @@ from viewer.insight.strut import strut_trial
 from viewer.scene.channel_picture import channel_picture, faults_picture
 from viewer.scene.compose import pair_picture, single_picture
 from viewer.scene.gain_picture import gain_picture
+from viewer.scene.hammer_picture import alone_picture, beside_picture, expanded_picture, over_picture
 from viewer.scene.phase_chart import phase_chart
 from viewer.scene.placed_test import PlacedTest, place
 from viewer.scene.section import Plane
 from viewer.scene.showing import Showing
 from viewer.scene.strut_picture import strut_picture
-from viewer.scene.test_picture import alone_picture, beside_picture, expanded_picture, over_picture
 from viewer.workspace import OpenDossier, Study, Workspace
 from viewer.workspace.comparison import compare, partner
 from viewer.workspace.testing import TestStudy, lay_beside, with_accepted

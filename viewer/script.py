@@ -25,8 +25,8 @@ from viewer.workspace import OpenDossier, Study, Workspace, study
 from viewer.workspace.comparison import Comparison, compare
 
 if TYPE_CHECKING:
+    from viewer.insight.hammer_pairing import TestCorrelation
     from viewer.insight.registration import Registration
-    from viewer.insight.test_pairing import TestCorrelation
 
 __all__ = [
     "animate",
@@ -74,8 +74,8 @@ def correlate(
 ) -> TestCorrelation:
     """Which measured mode is which of ``modes``, and how well they agree, at the channels of ``test``; laid onto the
     mesh from its geometry when no ``registration`` is given. ``RefusedError`` when that is not settled."""
+    from viewer.insight.hammer_pairing import correlate_test
     from viewer.insight.register import register
-    from viewer.insight.test_pairing import correlate_test
 
     placed = (registration or register(test, design.mesh, progress=progress)).require()
     seen = np.array([placed.seen(modes.shape(i)) for i in range(modes.count)])

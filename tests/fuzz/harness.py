@@ -70,11 +70,11 @@ def instrumented() -> None:
         import viewer.loaders.deck_keywords
         import viewer.loaders.dossier_file
         import viewer.loaders.exodus_files
+        import viewer.loaders.hammer_tables
+        import viewer.loaders.hammer_universal
         import viewer.loaders.hdf5_files
         import viewer.loaders.npz_files
         import viewer.loaders.registry
-        import viewer.loaders.test_tables
-        import viewer.loaders.test_universal
         import viewer.loaders.universal_files
         import viewer.loaders.vtkhdf_files
         import viewer.loaders.vtu_files

@@ -7,8 +7,8 @@ import pytest
 
 from tests.scene.hammered import analysis, hammered, plate
 from viewer.insight.correlate import auto_mac
+from viewer.insight.hammer_pairing import ALIKE, correlate_test
 from viewer.insight.phase import collinearity, phase_deviation_deg, turned_real
-from viewer.insight.test_pairing import ALIKE, correlate_test
 from viewer.scene.correlation_charts import correlation_field, correlation_ladder, own_field
 from viewer.scene.ladder_chart import RAILS
 from viewer.scene.phase_chart import CENTRE, RADIUS, WEDGE, phase_chart

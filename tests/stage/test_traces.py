@@ -11,10 +11,10 @@ from tests.stage.channel import NOTE
 from tests.stage.test_stage import byte, near
 from viewer.scene import view
 from viewer.scene.channel_picture import channel_picture
+from viewer.scene.hammer_picture import alone_picture, beside_picture, over_picture
 from viewer.scene.note_layout import note_height
 from viewer.scene.palette import mix
 from viewer.scene.picture import Body, Picture, TestCall, TraceMark, View
-from viewer.scene.test_picture import alone_picture, beside_picture, over_picture
 from viewer.scene.tokens import THEMES
 from viewer.scene.trace_marks import strength
 from viewer.stage import Stage

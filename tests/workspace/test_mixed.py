@@ -7,9 +7,9 @@ import pytest
 
 from tests.scene.hammered import FACTOR, analysis, hammered, placed, plate, rows
 from viewer.insight.correlate import mac
-from viewer.insight.test_pairing import correlate_test
+from viewer.insight.hammer_pairing import correlate_test
+from viewer.scene.hammer_picture import over_picture
 from viewer.scene.motion import displacement
-from viewer.scene.test_picture import over_picture
 from viewer.workspace.mixed import mixed
 
 ANALYSIS = np.array([analysis(mode) for mode in range(1, 5)])

@@ -65,7 +65,7 @@ def pair(
     opened = workspace(no_cache).open(dossier)
     tests = [test.name for test in opened.dossier.tests if test.name not in opened.names]
     if first in tests or second in tests:
-        from viewer.cli.pair_test import Wish, pair_test
+        from viewer.cli.pair_hammer import Wish, pair_test
 
         test, design = (first, second) if first in tests else (second, first)
         wish = Wish(count, out, pictures, accept, place, extra_points, extra, theme, width, as_json)

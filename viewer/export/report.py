@@ -24,12 +24,12 @@ from viewer.export.file_names import slugs
 from viewer.export.finding_rows import flap_rows, hinge_rows
 from viewer.export.findings import Pictures, write_gain_still, write_hinge_stills
 from viewer.export.gif_loop import save_gif
+from viewer.export.hammer_page import beside_designs, slug_key, summary_of, test_section
 from viewer.export.index_page import PageLoop, PageSection, write_index
 from viewer.export.rows import Row, group_rows, mode_caption, mode_rows, point_rows
 from viewer.export.stills import save_png
 from viewer.export.strip import save_strip
 from viewer.export.strut_rows import strut_rows
-from viewer.export.test_page import beside_designs, slug_key, summary_of, test_section
 from viewer.insight.strut_finding import StrutTrial
 from viewer.jobs import SILENT, Crew, Progress, write_text
 from viewer.model.plain import plain

@@ -16,8 +16,8 @@ import numpy as np
 
 from viewer.errors import InputError
 from viewer.insight.correlate import auto_mac
-from viewer.insight.test_pairing import ALIKE
-from viewer.insight.test_words import numbers as mode_numbers
+from viewer.insight.hammer_pairing import ALIKE
+from viewer.insight.hammer_words import numbers as mode_numbers
 from viewer.jobs import SILENT, Progress
 from viewer.model.arrays import Array, frozen
 from viewer.model.mesh import Mesh

@@ -12,7 +12,7 @@ from typing import Any
 
 import numpy as np
 
-from viewer.insight.test_words import numbers
+from viewer.insight.hammer_words import numbers
 from viewer.mechanics.patch import rigid_fields
 from viewer.model.arrays import Array, frozen
 from viewer.model.testset import TestSet

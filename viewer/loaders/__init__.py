@@ -8,12 +8,12 @@
 from viewer.loaders.dossier_changes import save_mode_name, write_test_changes
 from viewer.loaders.dossier_file import read_dossier, read_dossier_report
 from viewer.loaders.dossier_text import bare_dossier
+from viewer.loaders.hammer_runs import merge_runs
+from viewer.loaders.hammer_write import write_test
 from viewer.loaders.matrix_market import read_matrices
 from viewer.loaders.planned_test import read_planned_test
 from viewer.loaders.raw_data import ReadReport
 from viewer.loaders.registry import read_mesh, read_mesh_report, read_modes, read_test, write_interchange
-from viewer.loaders.test_runs import merge_runs
-from viewer.loaders.test_write import write_test
 
 __all__ = [
     "ReadReport",

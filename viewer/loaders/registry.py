@@ -12,9 +12,9 @@ from typing import Any
 
 from viewer.errors import HingelightError, LoadError
 from viewer.jobs import SILENT, Progress
+from viewer.loaders.hammer_runs import merge_runs
 from viewer.loaders.raw_data import RawMesh, RawModes, ReadReport, finish_mesh, finish_modes
 from viewer.loaders.raw_tests import finish_test
-from viewer.loaders.test_runs import merge_runs
 from viewer.loaders.vtu_xml import OtherReaderNeeded
 from viewer.model.mesh import Mesh
 from viewer.model.modes import ModeSet
@@ -42,7 +42,7 @@ _OWN = {
     ".ex2": "exodus_files",
 }
 # Modules with read_runs(path, progress) for test sets.
-_TESTS = {".csv": "test_tables", ".unv": "test_universal", ".uff": "test_universal"}
+_TESTS = {".csv": "hammer_tables", ".unv": "hammer_universal", ".uff": "hammer_universal"}
 _WRITTEN = (".vtu", ".vtkhdf", ".npz", ".h5", ".hdf5", ".csv", ".unv", ".uff")
 _WORKER = "meshio_files"
 # First bytes that give a container away, whatever the suffix says; some formats come in either container.
@@ -197,7 +197,7 @@ def _guarded(path: str | os.PathLike[str], work: Callable[[Path], Any]) -> Any:
 
 
 def _is_set_of_tables(file: Path) -> bool:
-    return _module("csv_tables").has_tables(file) or _module("test_tables").set_exists(file)
+    return _module("csv_tables").has_tables(file) or _module("hammer_tables").set_exists(file)
 
 
 def _check_file(file: Path) -> None:

@@ -19,12 +19,12 @@ from viewer.session import actions
 from viewer.session.camera import STEP
 from viewer.session.charts import put_spot
 from viewer.session.gallery import passing
+from viewer.session.hammer_changes import accepted, correct
 from viewer.session.model_words import ACCEPT
 from viewer.session.pictures import against, has_test_shape, require_size, scale_of, test_of
 from viewer.session.rail import rail_of
 from viewer.session.saving import save_names
 from viewer.session.state import Band
-from viewer.session.test_changes import accepted, correct
 from viewer.session.words import as_text, entries
 
 if TYPE_CHECKING:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from viewer.insight.test_pairing import ALIKE, TestCorrelation
+from viewer.insight.hammer_pairing import ALIKE, TestCorrelation
 from viewer.scene.chart_side import Side, of_analysis, of_test
 from viewer.scene.ladder_chart import Rung, ladders
 from viewer.scene.mac_chart import SCALE, field_chart

@@ -13,9 +13,9 @@ from viewer.model.written import hertz
 from viewer.scene.compose import equal_scales, pair_picture, single_picture
 from viewer.scene.difference_picture import difference_picture
 from viewer.scene.gain_picture import gain_picture
+from viewer.scene.hammer_picture import alone_picture, beside_picture, over_picture
 from viewer.scene.note_layout import mode_title
 from viewer.scene.picture import Picture, View
-from viewer.scene.test_picture import alone_picture, beside_picture, over_picture
 from viewer.session.project import Project, Tested
 from viewer.session.state import State
 from viewer.workspace import Study

@@ -6,8 +6,8 @@ from collections.abc import Mapping
 from dataclasses import dataclass, field, replace
 from types import MappingProxyType
 
+from viewer.insight.hammer_pairing import TestCorrelation, TestPair
 from viewer.insight.lineage import LineageFinding
-from viewer.insight.test_pairing import TestCorrelation, TestPair
 from viewer.insight.wrong_channels import Faults
 from viewer.scene.placed_test import PlacedTest, place
 from viewer.workspace import OpenDossier, Study

@@ -13,11 +13,11 @@ import scipy.sparse as sp
 from viewer.errors import InputError, ModelError, SolveError
 from viewer.insight.corrections import apply_corrections, correction_words
 from viewer.insight.expand import Expansion, expand
+from viewer.insight.hammer_pairing import TestCorrelation, correlate_test
 from viewer.insight.register import register
 from viewer.insight.registration import Registration
 from viewer.insight.sensor_choice import SensorChoice, extra_points
 from viewer.insight.soft_support import SoftSupport, soft_support
-from viewer.insight.test_pairing import TestCorrelation, correlate_test
 from viewer.insight.wrong_channels import Faults, find_faults
 from viewer.jobs import SILENT, Progress
 from viewer.mechanics.reduced import ChannelMass, reduce_to_channels

@@ -13,17 +13,17 @@ from viewer.export.gif_loop import save_gif
 from viewer.export.index_page import PageLoop
 from viewer.export.stills import save_png
 from viewer.insight.correlate import mac
+from viewer.insight.hammer_pairing import TestPair
+from viewer.insight.hammer_words import numbers
 from viewer.insight.hinges import HingeFinding
 from viewer.insight.phase import turned_real
-from viewer.insight.test_pairing import TestPair
-from viewer.insight.test_words import numbers
 from viewer.jobs import Give, at_once
 from viewer.model.written import digits
 from viewer.scene.channel_picture import channel_picture, faults_picture
 from viewer.scene.correlation_charts import correlation_field, correlation_ladder, own_field
+from viewer.scene.hammer_picture import beside_picture, expanded_picture, over_picture
 from viewer.scene.phase_chart import phase_chart
 from viewer.scene.placed_test import PlacedTest, place
-from viewer.scene.test_picture import beside_picture, expanded_picture, over_picture
 from viewer.workspace.mixed import mixed
 from viewer.workspace.testing import TestExplanation, TestStudy
 

@@ -1,4 +1,4 @@
-"""Test sets written as tables (:mod:`test_tables`) and as universal files (:mod:`test_universal`)."""
+"""Test sets written as tables (:mod:`hammer_tables`) and as universal files (:mod:`hammer_universal`)."""
 
 from __future__ import annotations
 
@@ -12,7 +12,7 @@ import numpy as np
 
 from viewer.errors import LoadError
 from viewer.jobs import atomic_path
-from viewer.loaders.test_tables import COMPONENTS, VALUES, table_path
+from viewer.loaders.hammer_tables import COMPONENTS, VALUES, table_path
 from viewer.loaders.universal_write import (
     LARGEST_LABEL,
     in_lines,

@@ -34,10 +34,10 @@ class Wish:
 
 def pair_test(opened: OpenDossier, test: str, design: str, wish: Wish) -> None:
     """Pair the modes of ``test`` with those of ``design`` ("": the test's own) and print all that is found."""
+    from viewer.export.hammer_page import summary_of
+    from viewer.export.hammer_rows import accept_words, channel_rows, proposal_rows, test_pair_rows
     from viewer.export.rows import short
     from viewer.export.tables import readable, write_table
-    from viewer.export.test_page import summary_of
-    from viewer.export.test_rows import accept_words, channel_rows, proposal_rows, test_pair_rows
 
     with progress_bar() as progress:
         opened, done = _written(opened, test, design, wish, progress)
@@ -72,8 +72,8 @@ def pair_test(opened: OpenDossier, test: str, design: str, wish: Wish) -> None:
 
 def _extra(study: TestStudy, path: Path, count: int, progress: Progress) -> list[str]:
     """The points that would help most, into a table; what was done in words."""
+    from viewer.export.hammer_rows import extra_point_rows
     from viewer.export.tables import write_table
-    from viewer.export.test_rows import extra_point_rows
 
     rows = extra_point_rows(study, study.points(progress, count))
     if not rows:
@@ -142,7 +142,7 @@ def _numbers(text: str, study: TestStudy, progress: Progress) -> list[int]:
 def _pictures(study: TestStudy, told: TestExplanation, wish: Wish, progress: Progress) -> None:
     """Charts, stills and loops into a folder."""
     from viewer.export.file_names import slugs
-    from viewer.export.test_pictures import expanded_still, pair_loop, write_test_charts
+    from viewer.export.hammer_pictures import expanded_still, pair_loop, write_test_charts
 
     assert wish.pictures is not None and told.correlation is not None
     folder, stem = wish.pictures, slugs([f"test {study.name}"])[f"test {study.name}"]

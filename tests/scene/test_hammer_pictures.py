@@ -13,13 +13,7 @@ from viewer.model.cycle import cycle_peaks
 from viewer.model.modes import ArrayShapes
 from viewer.model.testset import Correction
 from viewer.scene.channel_picture import KINDS, channel_picture, faults_picture
-from viewer.scene.motion import displacement
-from viewer.scene.note_layout import note_height
-from viewer.scene.placed_test import place
-from viewer.scene.primitives import Disc, Line, Polygon, Text, overlap
-from viewer.scene.sheet import plan_sheet
-from viewer.scene.strip_sheet import strip_layout
-from viewer.scene.test_picture import (
+from viewer.scene.hammer_picture import (
     FOLLOWING,
     MEASURED_ONLY,
     alone_picture,
@@ -27,6 +21,12 @@ from viewer.scene.test_picture import (
     expanded_picture,
     over_picture,
 )
+from viewer.scene.motion import displacement
+from viewer.scene.note_layout import note_height
+from viewer.scene.placed_test import place
+from viewer.scene.primitives import Disc, Line, Polygon, Text, overlap
+from viewer.scene.sheet import plan_sheet
+from viewer.scene.strip_sheet import strip_layout
 from viewer.scene.tokens import THEMES
 from viewer.scene.trace_marks import bead_radii
 from viewer.workspace.study import study

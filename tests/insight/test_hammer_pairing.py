@@ -13,8 +13,8 @@ from tests.mechanics.models import CLAMP, design
 from tests.meshes import plate_mesh
 from tests.sentences import unfounded
 from viewer.errors import InputError
+from viewer.insight.hammer_pairing import ALIKE, TestCorrelation, correlate_test, look_alike
 from viewer.insight.pairing import close_groups
-from viewer.insight.test_pairing import ALIKE, TestCorrelation, correlate_test, look_alike
 from viewer.mechanics.eigen import solve
 from viewer.mechanics.reduced import reduce_to_channels
 from viewer.model.testset import TestSet

@@ -7,9 +7,8 @@ from typing import Any
 
 from viewer.errors import RefusedError
 from viewer.export.desk import Desk
-from viewer.export.index_page import PageLoop, PageSection, PageTable
-from viewer.export.test_pictures import expanded_still, pair_loop, write_test_charts
-from viewer.export.test_rows import (
+from viewer.export.hammer_pictures import expanded_still, pair_loop, write_test_charts
+from viewer.export.hammer_rows import (
     accept_words,
     channel_rows,
     choose_words,
@@ -19,8 +18,9 @@ from viewer.export.test_rows import (
     proposal_rows,
     test_pair_rows,
 )
+from viewer.export.index_page import PageLoop, PageSection, PageTable
+from viewer.insight.hammer_pairing import TestPair
 from viewer.insight.pair_words import pair_sentence
-from viewer.insight.test_pairing import TestPair
 from viewer.jobs import SILENT, Progress
 from viewer.workspace import OpenDossier
 from viewer.workspace.explanation import asked

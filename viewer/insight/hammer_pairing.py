@@ -16,9 +16,9 @@ from scipy.sparse.csgraph import connected_components
 
 from viewer.errors import InputError
 from viewer.insight.correlate import auto_mac, comac, cross_orthogonality, ecomac, modal_scale_factor
+from viewer.insight.hammer_words import sentence_of
 from viewer.insight.pairing import ModePair, close_groups, group_shares, pair_vectors
 from viewer.insight.phase import collinearity, phase_deviation_deg
-from viewer.insight.test_words import sentence_of
 from viewer.model.arrays import Array, frozen
 from viewer.model.testset import TestSet
 
