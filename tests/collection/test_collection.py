@@ -6,7 +6,7 @@ from dataclasses import asdict
 
 import pytest
 
-from tests.collection import score
+from tests.collection import score, statics
 from tests.collection.parts import SEED, VERSION
 from tests.collection.registry import GROUPS, SCORED, parts_of
 from tests.collection.scoring import score as score_part
@@ -18,6 +18,8 @@ FIXED = (
     "arc_groove-0-quad4", "square_neck-0-quad4", "groove-3-hex8", "even_taper-2-quad4", "even_cone-0-quad4",
     "even_saddle-0-quad4", "doubler-1-hex8", "saddle_groove-1-quad4", "twisted-0-quad4",
 )  # fmt: skip
+# Parts of the scored half whose stiffness is not judged. Curved bands have no static solution at all.
+UNSETTLED = {"louvre-2-hex20": "its groove begins in the bend; the last halving of the cells still moves it by 5.4 %"}
 PARTS = {p.name: p for group in GROUPS for p in parts_of(group)}
 
 
@@ -32,6 +34,21 @@ def test_the_committed_table_is_of_this_generator_and_large_enough():
     assert sum(r["level"] == "strong" for r in coarse) >= 40
     assert len([f for f in free if f[0] in scored]) >= 100
     assert len({f for f in free if f[0] in FIXED}) >= 40
+
+
+def test_every_stiffness_of_the_scored_half_is_judged_against_a_settled_truth():
+    scored = {p.name for group in SCORED for p in parts_of(group)}
+    rows = [r for r in score.read_table()[1] if r["density"] == "1" and r["part"] in scored]
+    unsettled = set()
+    for row in rows:
+        if row["level"] == "strong" and row["kind"] == "line":
+            assert row["settled"] != ""
+            if abs(float(row["settled"])) > statics.SETTLED:
+                unsettled.add(row["part"])
+            else:
+                # The mesh of the modes itself is about as near: what is judged is the search, not the mesh.
+                assert abs(float(row["mesh"])) <= 1.1 * statics.SETTLED
+    assert unsettled == set(UNSETTLED)
 
 
 @pytest.mark.parametrize("name", FIXED)
