@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 from dataclasses import replace
 from pathlib import Path
 
@@ -119,3 +120,7 @@ def write(save, picture, name: str) -> None:
 
 if __name__ == "__main__":
     main()
+    if os.environ.get("DISPLAY"):  # the window's own: see there for a virtual screen
+        import make_window_screenshots
+
+        make_window_screenshots.main()
