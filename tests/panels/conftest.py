@@ -11,7 +11,7 @@ from pathlib import Path
 import pytest
 
 SAMPLES = Path(__file__).resolve().parents[2] / "sample_meshes"
-PATIENCE = 300.0  # s, to give up on what never happens: nothing is timed
+PATIENCE = 1200.0  # s, to give up on what never happens: nothing is timed
 
 
 @pytest.fixture(scope="session")
