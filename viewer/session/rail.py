@@ -74,7 +74,7 @@ def _unknown(scale: Scale, enlarge: float) -> Rail:
     low, high = log10(LEAST_PERCENT), log10(MOST_PERCENT)
     now = scale.drawn_percent * enlarge
     label = f"peak drawn at {digits(now)} % of the diagonal"
-    hint = "size unknown: state one measured motion in the dossier, [[amplitudes]]"
+    hint = "size unknown: give [[amplitudes]] in the dossier"
     ticks = _ticks(floor(low), ceil(high), lambda e: f"{digits(10.0**e, 1)} %")
     rail = Rail(False, 0.0, 0.0, label, hint, (), low, high, scale.drawn_percent)
     shown = [Tick((t.at * (ceil(high) - floor(low)) + floor(low) - low) / (high - low), t.words) for t in ticks]
