@@ -72,7 +72,7 @@ def main(triangles: int = 200_000) -> int:
     live, kept = (float(np.median(taken[name])) for name in ("live", "kept"))
     cycle = (
         21 * live + 19 * kept
-    ) / 40  # a standing mode's first cycle: 21 drawings make 40 frames; then all are kept
+    ) / 40  # 21 drawings make 40 frames; then all are kept
     print(f"first cycle of a standing mode: {1 / cycle:.1f} frames/s, ratio {bare / cycle:.2f}")
     return int(bare / live < LEAST)
 
