@@ -192,7 +192,7 @@ def sentence_of(facts: dict[str, Any]) -> str:
     head = f"Mode {facts['mode']}"
     if facts["doubtful"]:
         best = facts["doubtful"][0]
-        doubt = f"but that is not certain: of lines that score like it {best['confidence']:.0%} were hinges"
+        doubt = f"but that is not certain: of lines like it in generated parts {best['confidence']:.0%} were hinges"
         return f"{head} may fold at {_hinge_words(best)}, {doubt}."
     if facts["verdict"] != "hinges":
         words = {
@@ -219,7 +219,7 @@ def _hinge_words(facts: dict[str, Any]) -> str:
         )
     if facts["fold_real_deg"] is not None:
         words += f", by {facts['fold_real_deg']:.2g}° real"
-    return words + ("" if facts["label"] == "strong" else f" ({facts['label']})")
+    return words + (f" ({facts['label']})" if facts["label"] == "weak" else "")
 
 
 def _flap_words(facts: dict[str, Any]) -> str:

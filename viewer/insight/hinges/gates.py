@@ -41,6 +41,7 @@ AT_JOINT = {
 STRONG_SCORE, STRONG_TURN, STRONG_SHARE = 1.5, 0.35, 0.15
 DOUBTFUL = 0.8  # score from which a mode without a hinge may fold: 35 of 42 such candidates were lines
 DOUBTFUL_SHARE = 0.1  # of the energy in it: a doubt about less is not worth a sentence
+DOUBTFUL_VOLUME = 0.15  # of the material in it: what fills more is no narrow band, and its bending is spread
 _JOINT_SIZE = 0.65  # a joint as large as this share over the bound on slenderness, 1/10 of the part, is none
 _CAPPED = {
     "turn about the line",
@@ -98,6 +99,11 @@ def score(field: Field, draft: Draft) -> tuple[float, str]:
         ratios[name] = max(ratio, 3.0) if name in _CAPPED and ratio >= 1 else ratio
     gate = min(ratios, key=lambda name: ratios[name])
     return float(ratios[gate]), gate
+
+
+def worth_a_doubt(draft: Draft) -> bool:
+    """Whether a line that does not quite pass deserves to be spoken of: it holds energy, and is narrow."""
+    return draft.strain >= DOUBTFUL_SHARE and draft.volume <= DOUBTFUL_VOLUME
 
 
 def label(score_: float, draft: Draft) -> str:

@@ -14,7 +14,7 @@ from viewer.insight.hinges.curve import Line
 from viewer.insight.hinges.field import Field, make_field
 from viewer.insight.hinges.finding import Hinge, HingeFinding
 from viewer.insight.hinges.flaps import find_flaps, regions
-from viewer.insight.hinges.gates import DOUBTFUL, DOUBTFUL_SHARE, confidence, is_joint, label, score
+from viewer.insight.hinges.gates import DOUBTFUL, confidence, is_joint, label, score, worth_a_doubt
 from viewer.insight.hinges.lines import unions
 from viewer.insight.hinges.seam import moment_through, seams_of, turn_between
 from viewer.insight.places import place_of
@@ -160,7 +160,7 @@ def _chosen(field: Field, progress: Progress) -> list[tuple[Draft, float, str]]:
         measured |= {id(draft): draft for draft in examine(cells)}
     scored = [(draft, *score(field, draft)) for draft in measured.values()]
     found = [item for item in scored if item[1] >= 1]
-    found = found or [item for item in scored if item[1] >= DOUBTFUL and item[0].strain >= DOUBTFUL_SHARE]
+    found = found or [item for item in scored if item[1] >= DOUBTFUL and worth_a_doubt(item[0])]
     found.sort(key=lambda item: -_rank(*item[:2]))
     kept: list[tuple[Draft, float, str]] = []
     for item in found:
