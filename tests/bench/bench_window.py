@@ -70,9 +70,7 @@ def main(triangles: int = 200_000) -> int:
         middle = float(np.median(times))
         print(f"{name:8} {1e3 * middle:7.1f} ms a frame  {1 / middle:6.1f} frames/s  ratio {bare / middle:.2f}")
     live, kept = (float(np.median(taken[name])) for name in ("live", "kept"))
-    cycle = (
-        21 * live + 19 * kept
-    ) / 40  # 21 drawings make 40 frames; then all are kept
+    cycle = (21 * live + 19 * kept) / 40  # 21 drawings make 40 frames; then all are kept
     print(f"first cycle of a standing mode: {1 / cycle:.1f} frames/s, ratio {bare / cycle:.2f}")
     return int(bare / live < LEAST)
 
