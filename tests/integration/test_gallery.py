@@ -41,7 +41,7 @@ def compared(sample: str):
 
 
 @cache
-def tests_of(sample: str, name: str) -> tuple[TestStudy, TestStudy]:
+def hammer_of(sample: str, name: str) -> tuple[TestStudy, TestStudy]:
     """The test as it is, and with everything accepted that is proposed."""
     raw = opened(sample).test(name)
     accepted = with_accepted(raw, [p.number for p in raw.faults().proposals])
@@ -54,11 +54,11 @@ def sentence(sample: str, name: str, number: int, question: str) -> str:
         (found,) = [o for o in compared(sample).outcomes if o.pair.first == number]
         return found.sentence
     if question == "faults":
-        return tests_of(sample, name)[0].faults().sentence
+        return hammer_of(sample, name)[0].faults().sentence
     if question == "accepted":
-        return tests_of(sample, name)[1].correlation().sentence
+        return hammer_of(sample, name)[1].correlation().sentence
     if question == "measured":
-        (pair,) = [p for p in tests_of(sample, name)[1].correlation().paired if p.test == number]
+        (pair,) = [p for p in hammer_of(sample, name)[1].correlation().paired if p.test == number]
         return pair_sentence(pair.to_dict())
     return getattr(study(sample, name), question)(number - 1).sentence
 
