@@ -13,6 +13,7 @@ from tests.session_parts import write_strip
 
 ACTIONS, WARM, EVERY = 1000, 300, 100
 GROWTH = 0.10
+SIZE = (900, 600)  # the least: drawing without a GPU takes most of the time
 LEFT_OUT = {"open_file", "export", "close_window", "show_menu", "save_names"}  # ask the user, or end the test
 
 
@@ -31,7 +32,7 @@ def test_a_thousand_actions(make_window, until, settled, app, monkeypatch, tmp_p
     errors: list[object] = []
     monkeypatch.setattr(sys, "excepthook", lambda *found: errors.append(found))
     monkeypatch.setattr(sys, "unraisablehook", lambda found: errors.append(found))
-    window = make_window(write_strip(tmp_path / "strip"))
+    window = make_window(write_strip(tmp_path / "strip"), size=SIZE)
     settled(window)
     draw = np.random.default_rng(7)
     commands = [a for a in window.actions() if a.data() is not None and a.data().name not in LEFT_OUT]
@@ -81,9 +82,8 @@ def test_a_thousand_actions(make_window, until, settled, app, monkeypatch, tmp_p
         elif kind < 0.95:
             letter()
         else:
-            window.resize(int(draw.integers(900, 1500)), int(draw.integers(600, 950)))
-        for _ in range(3):
-            app.processEvents()
+            window.resize(*(int(draw.integers(least, least + 60)) for least in SIZE))
+        app.processEvents()
         if number % EVERY == EVERY - 1:
             settled(window)
             gc.collect()
