@@ -8,11 +8,14 @@ from __future__ import annotations
 
 import multiprocessing
 import os
+import pickle
 import signal
+import tempfile
 from collections.abc import Sequence
 from concurrent.futures import FIRST_COMPLETED, Executor, Future, ProcessPoolExecutor, wait
 from dataclasses import dataclass
 from itertools import pairwise
+from pathlib import Path
 
 import numpy as np
 
@@ -24,6 +27,7 @@ from viewer.mechanics.eigen import solve
 from viewer.model.design import Design
 from viewer.model.modes import ModeSet
 from viewer.model.variation import Variation
+from viewer.workspace.store import read_modes_npz, write_modes_npz
 from viewer.workspace.workspace import Workspace
 
 _ROUNDS = 4  # of steps put between others
@@ -86,27 +90,49 @@ def solve_all(
     missing = [k for k in range(len(designs)) if k not in found]
     if not missing:
         return [found[k] for k in range(len(designs))]
-    own = None
-    if executor is None:
-        context = multiprocessing.get_context("spawn")
-        size = min(len(missing), os.cpu_count() or 1)
-        executor = own = ProcessPoolExecutor(size, context, signal.signal, (signal.SIGINT, signal.SIG_IGN))
-    waiting: dict[Future, int] = {}
-    try:
-        with no_main_module():
-            waiting = {executor.submit(solve, designs[k], count): k for k in missing}
-        while waiting:
-            progress.tick("solving the steps", len(found), len(designs))
-            done, _ = wait(waiting, timeout=_LOOK, return_when=FIRST_COMPLETED)
-            for future in done:
-                k = waiting.pop(future)
-                found[k] = workspace.keep(designs[k], count, future.result())
-    finally:
-        for future in waiting:
-            future.cancel()
-        if own is not None:
-            _end(own, kill=bool(waiting))
+    with tempfile.TemporaryDirectory(prefix="hingelight-") as folder, no_main_module():
+        own = None
+        waiting: dict[Future, int] = {}
+        try:
+            if executor is None:
+                own = _pool(len(missing))
+                waiting = {own.submit(_solve_file, _order(Path(folder), k, designs[k]), count): k for k in missing}
+            else:
+                waiting = {executor.submit(solve, designs[k], count): k for k in missing}
+            while waiting:
+                progress.tick("solving the steps", len(found), len(designs))
+                done, _ = wait(waiting, timeout=_LOOK, return_when=FIRST_COMPLETED)
+                for future in done:
+                    k = waiting.pop(future)
+                    answer = future.result() if own is None else read_modes_npz(future.result())
+                    found[k] = workspace.keep(designs[k], count, answer)
+        finally:
+            for future in waiting:
+                future.cancel()
+            if own is not None:
+                _end(own, kill=bool(waiting))
     return [found[k] for k in range(len(designs))]
+
+
+def _pool(orders: int) -> ProcessPoolExecutor:
+    """Processes of this machine, which leave Ctrl-C to the one that ends them."""
+    context = multiprocessing.get_context("spawn")
+    return ProcessPoolExecutor(
+        min(orders, os.cpu_count() or 1), context, signal.signal, (signal.SIGINT, signal.SIG_IGN)
+    )
+
+
+def _order(folder: Path, number: int, design: Design) -> Path:
+    """Designs and modes cross between our own processes in files: one that is killed while it reads or writes a full
+    pipe would leave the other end waiting for ever."""
+    path = folder / f"{number}.design"
+    path.write_bytes(pickle.dumps(design, protocol=pickle.HIGHEST_PROTOCOL))
+    return path
+
+
+def _solve_file(order: Path, count: int) -> Path:
+    """Runs in another process."""
+    return write_modes_npz(order.with_suffix(".npz"), solve(pickle.loads(order.read_bytes()), count))
 
 
 def _end(pool: ProcessPoolExecutor, kill: bool) -> None:
