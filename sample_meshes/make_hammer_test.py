@@ -34,8 +34,8 @@ FLIPPED, EXCHANGED = ("11", "+Z"), ("9", "12")
 # The workshop's axes: X across the boom to its right, Y along it, Z up; the origin on the floor beside its root.
 WORKSHOP = Placement(np.array([[0.0, 1, 0], [-1, 0, 0], [0, 0, 1]]), np.array([-0.25, 0.4, -1.15]))
 
-# Where sensors were meant to sit, mm in the axes of the drawing (x along the boom, y across, z up), and the directions
-# in which they measure, in the workshop's axes: outwards, hence +Z on top, −Z below, −X on the left,
+# Where sensors were meant to sit, mm in the axes of the drawing (x along the boom, y across, z up), and the
+# directions in which they measure, in the workshop's axes: outwards, hence +Z on top, −Z below, −X on the left,
 # +X on the right.
 POINTS: dict[str, tuple[tuple[float, float, float], tuple[str, ...]]] = {
     "1": ((50, 65, 0), ("+Z",)),
