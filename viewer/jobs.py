@@ -92,10 +92,7 @@ def in_child(function: Callable[..., Any], *args: Any, progress: Progress = SILE
         return function(*args)
     with tempfile.TemporaryDirectory(prefix="hingelight-") as folder:
         # not through the pipe that starts the process: a child that fails before it reads would leave us writing
-        order = Path(folder) / "order"
-        with open(order, "wb") as file:
-            pickle.dump((function, args), file, protocol=pickle.HIGHEST_PROTOCOL)
-        return _answer_of(order, progress, stage)
+        return _answer_of(lay_down(Path(folder) / "order", (function, args)), progress, stage)
 
 
 def _answer_of(order: Path, progress: Progress, stage: str) -> Any:
@@ -201,7 +198,7 @@ class Crew:
             function(*args, **options, progress=self._progress.quiet())
             return
         folder = Path(self._folder.name)
-        _put(folder / f"{self._given:06d}.order", (function, args, options))
+        lay_down(folder / f"{self._given:06d}.order", (function, args, options))
         self._given += 1
         if len(self._processes) < self._size:
             process = multiprocessing.get_context("spawn").Process(target=_serve, args=(folder,), daemon=True)
@@ -270,14 +267,19 @@ def _serve(folder: Path) -> None:
     except BaseException as error:
         told = error if isinstance(error, HingelightError) else _as_ours(error)
         with contextlib.suppress(OSError):
-            _put(folder / f"{os.getpid()}.failed", told)
+            lay_down(folder / f"{os.getpid()}.failed", told)
 
 
-def _put(path: Path, what: Any) -> None:
-    """Pickle into a file that appears under its name when it is whole."""
+def lay_down(path: Path, what: Any) -> Path:
+    """Pickle for another process of ours into a file that appears under its name when it is whole; returns the path.
+
+    Not through a pipe: who is killed while a full one is read or written leaves the other end waiting for ever.
+    """
     part = path.with_suffix(".part")
-    part.write_bytes(pickle.dumps(what, protocol=pickle.HIGHEST_PROTOCOL))
+    with open(part, "wb") as file:
+        pickle.dump(what, file, protocol=pickle.HIGHEST_PROTOCOL)
     part.rename(path)
+    return path
 
 
 def _as_ours(error: BaseException) -> HingelightError:

@@ -27,9 +27,7 @@ from viewer.scene.placed_test import PlacedTest, place
 from viewer.workspace.mixed import mixed
 from viewer.workspace.testing import TestExplanation, TestStudy
 
-LOOP_WIDTH = (
-    640  # of test loops at most: there are as many as measured modes, and lines need fewer pixels than colours
-)
+LOOP_WIDTH = 640  # at most: there is a loop for each measured mode, and lines need fewer pixels than colours
 
 
 def placed_of(study: TestStudy) -> PlacedTest:

@@ -13,6 +13,7 @@ from viewer.session.model_words import LOOKING, model_words
 from viewer.session.pictures import heading, name_of
 from viewer.session.project import Project
 from viewer.session.state import State
+from viewer.workspace.explanation import Explanation
 
 HEADINGS = {
     "does": "What it does",
@@ -81,19 +82,15 @@ def as_text(project: Project, state: State) -> str:
 
 def _does(project: Project, state: State) -> Entry:
     told = project.told.get((state.design, state.mode))
-    if told is None:
-        return Entry("does", LOOKING, False)
-    if told.character is None:
-        return Entry("does", _refusal(told.refused), False)
+    if told is None or told.character is None:
+        return _unknown("does", told)
     return Entry("does", _after_title(told.character.sentence, state.mode))
 
 
 def _folds(project: Project, state: State) -> Entry:
     told = project.told.get((state.design, state.mode))
-    if told is None:
-        return Entry("folds", LOOKING, False)
-    if told.hinges is None:
-        return Entry("folds", _refusal(told.refused), False)
+    if told is None or told.hinges is None:
+        return _unknown("folds", told)
     facts = told.hinges.to_dict()
     bars: tuple[Bar, ...] = ()
     listed = facts["hinges"]
@@ -172,10 +169,8 @@ def _redesign(project: Project, state: State) -> Entry:
 
 def _change(project: Project, state: State) -> Entry:
     told = project.told.get((state.design, state.mode))
-    if told is None:
-        return Entry("change", LOOKING, False)
-    if told.gain is None:
-        return Entry("change", _refusal(told.refused), False)
+    if told is None or told.gain is None:
+        return _unknown("change", told)
     return Entry("change", _after_title(told.gain.sentence, state.mode))
 
 
@@ -186,6 +181,9 @@ def _after_title(sentence: str, mode: int) -> str:
     return said[:1].upper() + said[1:]
 
 
-def _refusal(reasons: tuple[str, ...]) -> str:
-    text = "; ".join(reasons)
-    return f"Unknown: {text}." if text else "Unknown."
+def _unknown(subject: str, told: Explanation | None) -> Entry:
+    """Still being looked for, or why it cannot be had."""
+    if told is None:
+        return Entry(subject, LOOKING, False)
+    reasons = "; ".join(told.refused)
+    return Entry(subject, f"Unknown: {reasons}." if reasons else "Unknown.", False)

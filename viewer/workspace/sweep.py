@@ -22,7 +22,7 @@ import numpy as np
 from viewer.insight.encounters import Encounter
 from viewer.insight.lineage import LineageFinding, follow, successors
 from viewer.insight.pairing import cross_products
-from viewer.jobs import SILENT, Progress, no_main_module
+from viewer.jobs import SILENT, Progress, lay_down, no_main_module
 from viewer.mechanics.eigen import solve
 from viewer.model.design import Design
 from viewer.model.modes import ModeSet
@@ -96,7 +96,10 @@ def solve_all(
         try:
             if executor is None:
                 own = _pool(len(missing))
-                waiting = {own.submit(_solve_file, _order(Path(folder), k, designs[k]), count): k for k in missing}
+                waiting = {
+                    own.submit(_solve_file, lay_down(Path(folder) / f"{k}.design", designs[k]), count): k
+                    for k in missing
+                }
             else:
                 waiting = {executor.submit(solve, designs[k], count): k for k in missing}
             while waiting:
@@ -122,16 +125,8 @@ def _pool(orders: int) -> ProcessPoolExecutor:
     )
 
 
-def _order(folder: Path, number: int, design: Design) -> Path:
-    """Designs and modes cross between our own processes in files: one that is killed while it reads or writes a full
-    pipe would leave the other end waiting for ever."""
-    path = folder / f"{number}.design"
-    path.write_bytes(pickle.dumps(design, protocol=pickle.HIGHEST_PROTOCOL))
-    return path
-
-
 def _solve_file(order: Path, count: int) -> Path:
-    """Runs in another process."""
+    """Runs in another process; designs and modes cross in files (``jobs.lay_down`` says why)."""
     return write_modes_npz(order.with_suffix(".npz"), solve(pickle.loads(order.read_bytes()), count))
 
 
